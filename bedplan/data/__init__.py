@@ -1,0 +1,1 @@
+"""Reading, cleaning, describing and estimating: from a records file to a demand."""

@@ -1,0 +1,1 @@
+"""Rules, decisions and comparisons over bed curves."""

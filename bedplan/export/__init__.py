@@ -1,0 +1,1 @@
+"""The justification: facts and sentences first, then one writer a format."""

@@ -1,0 +1,38 @@
+"""Every model, once, in order: its name -> the function ``(demand, beds) -> BedCurve``."""
+
+from __future__ import annotations
+
+from types import MappingProxyType
+from typing import TYPE_CHECKING
+
+from bedplan.models.average import average_beds, average_occupancy
+from bedplan.models.bed_curve import BedCurve, BedPoint, Waits, bed_counts
+from bedplan.models.demand import BookedList, Demand
+from bedplan.models.erlang import erlang_b, erlang_b_log, erlang_c, erlang_loss
+from bedplan.models.stay import LengthOfStay
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Mapping
+
+    from numpy.typing import ArrayLike
+
+MODELS: Mapping[str, Callable[[Demand, ArrayLike], BedCurve]] = MappingProxyType(
+    {model.__name__: model for model in (average_occupancy, erlang_loss)}
+)
+
+__all__ = [
+    "MODELS",
+    "BedCurve",
+    "BedPoint",
+    "BookedList",
+    "Demand",
+    "LengthOfStay",
+    "Waits",
+    "average_beds",
+    "average_occupancy",
+    "bed_counts",
+    "erlang_b",
+    "erlang_b_log",
+    "erlang_c",
+    "erlang_loss",
+]

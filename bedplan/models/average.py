@@ -1,0 +1,54 @@
+"""The average formula most hospitals use: bed-days ÷ 365 ÷ occupancy. It leaves chance out."""
+
+from __future__ import annotations
+
+import math
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bedplan.errors import ImpossibleFigure
+from bedplan.models.bed_curve import BedCurve, bed_counts
+
+if TYPE_CHECKING:
+    from numpy.typing import ArrayLike
+
+    from bedplan.models.demand import Demand
+
+
+def average_beds(admissions_per_year: float, mean_stay_days: float, occupancy: float = 0.85) -> float:
+    """How many beds does the average formula give, before rounding up?
+
+    Admissions × mean stay ÷ 365 ÷ occupancy, from *recorded* admissions, as hospitals do it.
+
+    Raises:
+        ImpossibleFigure: negative admissions, a stay not above 0, an occupancy outside 0–1.
+
+    Source: Farmer & Emami 1990, Journal of Epidemiology and Community Health 44; common practice.
+    Checked by: tests/models/test_average.py (10,000 × 5 days at 85 % → 161.2)
+    """
+    if not (math.isfinite(admissions_per_year) and admissions_per_year >= 0):
+        raise ImpossibleFigure(f"{admissions_per_year:g} admissions a year is not possible: give 0 or more.")
+    if not (math.isfinite(mean_stay_days) and mean_stay_days > 0):
+        raise ImpossibleFigure(f"A mean stay of {mean_stay_days:g} days is not possible: it is more than 0.")
+    if not 0 < occupancy <= 1:
+        raise ImpossibleFigure(f"An occupancy of {occupancy:g} is not possible: it is above 0 and at most 1.")
+    return admissions_per_year * mean_stay_days / 365.0 / occupancy
+
+
+def average_occupancy(demand: Demand, beds: ArrayLike) -> BedCurve:
+    """For each bed count, which share would be turned away if every day were the average day?
+
+    Nobody while beds ≥ the load, then 1 − beds/load: the no-chance model. Always too low where chance matters.
+
+    Source: Farmer & Emami 1990; common practice.
+    Checked by: tests/models/test_every_model.py, tests/models/test_average.py
+    """
+    counts = bed_counts(beds)
+    load = demand.offered_load
+    turned_away = np.maximum(0.0, 1.0 - counts / load) if load > 0 else np.zeros(counts.size)
+    occupancy = np.minimum(load, counts) / np.maximum(counts, 1)
+    note = "Average formula: leaves chance out, so real wards turn away more than this line says at every bed count."
+    return BedCurve(
+        "average_occupancy", "no chance", demand, counts, turned_away, occupancy, np.tile(turned_away, (12, 1)), (note,)
+    )
