@@ -1,1 +1,20 @@
-"""Rules, decisions and comparisons over bed curves."""
+"""Rules, decisions and comparisons over bed curves: from "what happens at each bed count" to "how many, and why"."""
+
+from bedplan.decision.comparing import WardComparison, compare_wards, patients_per_year, spared_by_next_bed
+from bedplan.decision.rules import Decision, OccupancyLimit, OverfullLimit, Rule, TurnAwayLimit, WaitLimit, decide
+from bedplan.decision.ward import Ward
+
+__all__ = [
+    "Decision",
+    "OccupancyLimit",
+    "OverfullLimit",
+    "Rule",
+    "TurnAwayLimit",
+    "WaitLimit",
+    "Ward",
+    "WardComparison",
+    "compare_wards",
+    "decide",
+    "patients_per_year",
+    "spared_by_next_bed",
+]

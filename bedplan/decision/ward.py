@@ -1,0 +1,75 @@
+"""A ward as decisions see it: its name, today's staffed beds, what it is asked for, what its patients do when full."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Literal
+
+import numpy as np
+
+from bedplan.errors import ImpossibleFigure
+from bedplan.models import MODELS, BedCurve, Demand, average_beds
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+MOST_WARD_BEDS = 2_000
+WhenWardIsFull = Literal["leaves", "waits"]
+
+
+@dataclass(frozen=True, slots=True)
+class Ward:
+    """Which ward is being planned?
+
+    ``beds`` are today's staffed beds; ``when_full`` says what its patients do when it is full: ``"leaves"`` (they go
+    elsewhere) or ``"waits"`` (they wait, or are placed elsewhere). ``admissions_per_year`` are the recorded ones, for
+    the average formula; without them the demand's own arrivals are used. ``notes`` go into the document.
+
+    Raises:
+        ImpossibleFigure: beds not whole or outside 0–2,000, negative admissions.
+
+    Checked by: tests/decision/test_ward.py
+    """
+
+    name: str
+    beds: int
+    demand: Demand
+    when_full: WhenWardIsFull = "leaves"
+    admissions_per_year: float | None = None
+    notes: tuple[str, ...] = ()
+
+    def __post_init__(self) -> None:
+        """Check every figure once, here."""
+        if self.beds != int(self.beds) or not 0 <= self.beds <= MOST_WARD_BEDS:
+            raise ImpossibleFigure(f"{self.beds:g} beds is not possible: give a whole number from 0 to {MOST_WARD_BEDS:,}.")
+        if self.when_full not in ("leaves", "waits"):
+            raise ImpossibleFigure(f"{self.when_full!r} is not an answer: patients of a full ward either 'leaves' or 'waits'.")
+        if self.admissions_per_year is not None and not self.admissions_per_year >= 0:
+            raise ImpossibleFigure(f"{self.admissions_per_year:g} admissions a year is not possible: give 0 or more.")
+
+    @property
+    def model(self) -> str:
+        """The name of the model that answers for this ward."""
+        return "seasonal_loss" if self.when_full == "leaves" else "unlimited_beds"
+
+    @property
+    def bed_counts(self) -> NDArray[np.int64]:
+        """Every bed count worth drawing: from none to well past today's beds and the busiest month's need."""
+        peak = self.demand.offered_load * max(self.demand.month_factors)
+        swing = math.sqrt(self.demand.clustering + peak * self.demand.rate_variation**2)
+        most = max(math.ceil(peak + 5.0 * swing * math.sqrt(peak) + 8), self.beds + 5)
+        return np.arange(min(most, 20_000) + 1)
+
+    @property
+    def average_formula_beds(self) -> int:
+        """The average formula's whole number of beds: recorded bed-days ÷ 365 ÷ 85 %, rounded up."""
+        if self.demand.offered_load <= 0:
+            return 0
+        arrivals = self.demand.total_arrivals_per_day
+        admissions = arrivals * 365.0 if self.admissions_per_year is None else self.admissions_per_year
+        return math.ceil(average_beds(admissions, self.demand.offered_load / arrivals) - 1e-9)
+
+    def curve(self, model: str | None = None) -> BedCurve:
+        """What does a model (by default the ward's own) say at every bed count worth drawing?"""
+        return MODELS[model or self.model](self.demand, self.bed_counts)
