@@ -1,0 +1,1 @@
+"""The demo: three years of Larkmere District Hospital, an invented hospital of eight wards."""
