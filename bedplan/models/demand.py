@@ -58,7 +58,7 @@ class BookedList:
         if len(counts) != 7:
             raise ImpossibleFigure(f"A booked list needs 7 weekday counts, Monday first, but {len(counts)} were given.")
         for count in counts:
-            if count < 0 or count != int(count):
+            if not (math.isfinite(count) and count >= 0 and count == int(count)):
                 raise ImpossibleFigure(
                     f"{count:g} booked patients on a day is not possible: give whole numbers, 0 or more."
                 )
@@ -142,6 +142,8 @@ class Demand:
             _number("A turnaround", self.turnaround_hours, 0.0, 240.0, "it lies between 0 and 240 hours"),
         )
         put(self, "booked", tuple(self.booked))
+        if len(tuple(self.weekend_slip)) != 2:
+            raise ImpossibleFigure("A weekend slip needs two chances: one for Saturday and one for Sunday.")
         put(
             self,
             "weekend_slip",
