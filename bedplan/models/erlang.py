@@ -79,12 +79,16 @@ def erlang_b_table(
     log_inverse = np.where(fraction > 0, _log_inverse_at_fraction(some, fraction), 0.0)
     state = log_inverse if in_logs else np.exp(-log_inverse)
     table = np.empty((counts.size, load.size))
-    row = 0
+    row, rounded_off = 0, 0.0
     for beds in range(int(counts[-1]) + 1):
         if beds:
             bed_number = beds + fraction
             if in_logs:
-                state = np.logaddexp(0.0, np.log(bed_number / some) + state)
+                # Kahan's sum: 20,000 rounded logarithms would otherwise add up to more than 1e-9
+                step = np.log(bed_number / some) - rounded_off
+                raised = state + step
+                rounded_off = (raised - state) - step
+                state = np.logaddexp(0.0, raised)
             else:
                 used = some * state
                 state = used / (bed_number + used)
