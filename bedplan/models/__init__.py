@@ -9,7 +9,10 @@ from bedplan.models.average import average_beds, average_occupancy
 from bedplan.models.bed_curve import BedCurve, BedPoint, Waits, bed_counts
 from bedplan.models.demand import BookedList, Demand
 from bedplan.models.erlang import erlang_b, erlang_b_log, erlang_c, erlang_loss
+from bedplan.models.seasonal import seasonal_loss
 from bedplan.models.stay import LengthOfStay
+from bedplan.models.unlimited import unlimited_beds
+from bedplan.models.year import offered_load_by_hour
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
@@ -17,7 +20,7 @@ if TYPE_CHECKING:
     from numpy.typing import ArrayLike
 
 MODELS: Mapping[str, Callable[[Demand, ArrayLike], BedCurve]] = MappingProxyType(
-    {model.__name__: model for model in (average_occupancy, erlang_loss)}
+    {model.__name__: model for model in (average_occupancy, erlang_loss, unlimited_beds, seasonal_loss)}
 )
 
 __all__ = [
@@ -35,4 +38,7 @@ __all__ = [
     "erlang_b_log",
     "erlang_c",
     "erlang_loss",
+    "offered_load_by_hour",
+    "seasonal_loss",
+    "unlimited_beds",
 ]

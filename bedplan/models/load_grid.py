@@ -1,0 +1,58 @@
+"""Average over many hours at once: hours that want nearly the same beds share a few points on a grid of loads.
+
+A formula is worked out at the points only, then read between them by six-point interpolation. The points lie evenly
+in the square root of the load, 0.14 standard deviations of a ward's census apart, at any size of ward.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    Array = NDArray[np.float64]
+
+_STEP = 0.07
+_OFFSETS = np.arange(6)
+# 1 / Π(j − i) over the other five points, for each of the six
+_SCALES = np.array([1.0 / np.prod([j - i for i in range(6) if i != j]) for j in range(6)])
+
+
+@dataclass(frozen=True, slots=True)
+class LoadGrid:
+    """Loads ``(g,)`` ascending, and for each group of hours the weight of each load, ``(groups, g)``."""
+
+    loads: Array
+    weights: Array
+
+    def mean(self, figures: Array) -> Array:
+        """Average a figure known at each load, ``(..., g)``, within each group: ``(groups, ...)``; 0 without weight."""
+        total = self.weights.sum(axis=1).reshape(-1, *[1] * (figures.ndim - 1))
+        sums = np.tensordot(self.weights, figures, axes=(1, -1))
+        return np.divide(sums, total, out=np.zeros_like(sums), where=total > 0)
+
+
+def load_grid(loads: Array, shares: Array, groups: NDArray[np.int64], group_count: int) -> LoadGrid:
+    """Which loads, with which weights, stand for these hours?
+
+    ``loads``, ``shares`` (weight of each hour) and ``groups`` (whole numbers from 0) are ``(hours,)``.
+
+    Checked by: tests/models/test_year.py (against every hour on its own, within 1e-6)
+    """
+    place = np.sqrt(loads) / _STEP
+    first = np.floor(place).astype(np.int64) - 2
+    lowest = int(first.min())
+    points = (np.arange(int(first.max()) - lowest + 6) + lowest) * _STEP
+    away = (place - first)[:, None] - _OFFSETS
+    weights = np.empty_like(away)
+    for j in range(6):
+        weights[:, j] = _SCALES[j] * np.prod(np.delete(away, j, axis=1), axis=1)
+    cells = (groups * points.size + first - lowest)[:, None] + _OFFSETS
+    summed = np.bincount(
+        cells.ravel(), weights=(weights * shares[:, None]).ravel(), minlength=group_count * points.size
+    )
+    return LoadGrid(points**2, summed.reshape(group_count, points.size))
