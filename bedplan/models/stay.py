@@ -55,6 +55,8 @@ class LengthOfStay:
             )
         if self.shape not in ("lognormal", "gamma", "two streams", "measured"):
             raise ImpossibleFigure(f"The stay shape {self.shape!r} is not known: use 'lognormal' or 'gamma'.")
+        if (self.shape == "two streams") != bool(self.streams) or (self.shape == "measured") != bool(self.points):
+            raise ImpossibleFigure("Two streams and measured curves are built by two_streams(...) and measured(...).")
 
     @classmethod
     def two_streams(cls, share_of_second: float, first: LengthOfStay, second: LengthOfStay) -> LengthOfStay:
@@ -73,15 +75,21 @@ class LengthOfStay:
         At most 60 points, days ascending from 0 on, survival from 1 falling to 0 (a curve that does not reach 0 is
         not a whole answer: the caller must close its tail first). Straight lines between the points.
         """
+        if len(days) != len(survival):
+            raise ImpossibleFigure(
+                f"A measured stay curve needs as many shares as days, but {len(days)} days and {len(survival)} shares were given."
+            )
         grid = [(float(day), float(share)) for day, share in zip(days, survival, strict=True)]
         if grid and grid[0][0] > 0:
             grid.insert(0, (0.0, 1.0))
         at, left = (np.array(column) for column in zip(*grid, strict=True)) if grid else (np.zeros(0), np.zeros(0))
         if not 2 <= at.size <= MOST_POINTS + 1:
             raise ImpossibleFigure(f"A measured stay curve needs 2 to {MOST_POINTS} points, but {at.size} were given.")
-        if (np.diff(at) <= 0).any() or not np.isfinite(at).all():
-            raise ImpossibleFigure("The days of a measured stay curve must go up.")
-        if (np.diff(left) > 0).any() or abs(left[0] - 1) > 1e-9 or abs(left[-1]) > 1e-9:
+        if not (np.diff(at) > 0).all() or not np.isfinite(at).all() or at[0] < 0:
+            raise ImpossibleFigure(
+                f"The days of a measured stay curve, from {at[0]:g} on, must be 0 or more and go up."
+            )
+        if not (np.diff(left) <= 0).all() or abs(left[0] - 1) > 1e-9 or abs(left[-1]) > 1e-9:
             raise ImpossibleFigure("A measured stay curve starts at 1, never rises and ends at 0.")
         shape = stay_shapes.Measured(at, left)
         mean, square = float(shape.days_beyond(0.0)), 2.0 * float(shape.squared_days_beyond(0.0))
@@ -107,6 +115,16 @@ class LengthOfStay:
         mu = math.log(low_days) - sigma * z_low
         return cls(math.exp(mu + sigma**2 / 2), math.sqrt(math.expm1(sigma**2)))
 
+    def scaled(self, factor: float) -> LengthOfStay:
+        """What if every stay were this many times as long? Same spread, same shape."""
+        return LengthOfStay(
+            self.mean_days * factor,
+            self.variation,
+            self.shape,
+            tuple((share, part.scaled(factor)) for share, part in self.streams),
+            tuple((days * factor, share) for days, share in self.points),
+        )
+
     @property
     def _curve(self) -> stay_shapes.Shape:
         return _shape_of(self)
@@ -123,8 +141,8 @@ class LengthOfStay:
         return self._curve.quantile(share)
 
     def sample(self, n: int, rng: np.random.Generator) -> NDArray[np.float64]:
-        """Draw ``n`` stays in days, one uniform number each (so that scenarios can share their chance)."""
-        return self._curve.quantile(rng.random(n))
+        """Draw ``n`` stays in days. The same generator gives the same patients whatever the mean stay is."""
+        return self._curve.sample(n, rng)
 
     def days_beyond(self, days: ArrayLike) -> NDArray[np.float64]:
         """How many days a patient, on average over all patients, fall after day L? ``∫ survival`` from L on."""

@@ -1,4 +1,4 @@
-"""The curves behind a length of stay: five shapes that answer the same five questions.
+"""The curves behind a length of stay: five shapes that answer the same six questions.
 
 Symbols: S(u) is the share staying longer than u days; E(L) = ∫ S from L on; E2(L) = ∫ E from L on = half the mean
 square of the days beyond L. All accept arrays of any shape, days of 0 or more.
@@ -37,6 +37,9 @@ class Shape(Protocol):
     def mean_of_shorter_of_two(self) -> float:
         """Return ∫ S²."""
 
+    def sample(self, n: int, rng: np.random.Generator) -> Array:
+        """Draw n stays."""
+
 
 @dataclass(frozen=True, slots=True)
 class Fixed:
@@ -63,6 +66,10 @@ class Fixed:
     def mean_of_shorter_of_two(self) -> float:
         """Return the one stay there is."""
         return self.mean
+
+    def sample(self, n: int, rng: np.random.Generator) -> Array:  # noqa: ARG002  every curve is asked alike
+        """Return n times the one stay there is."""
+        return np.full(n, self.mean)
 
 
 @dataclass(frozen=True, slots=True)
@@ -107,6 +114,11 @@ class Lognormal:
         """Return ∫ S² = 2·mean·Φ(−σ/√2)."""
         return 2.0 * self.mean * float(special.ndtr(-self._sigma / math.sqrt(2.0)))
 
+    def sample(self, n: int, rng: np.random.Generator) -> Array:
+        """Draw n stays."""
+        sigma = self._sigma
+        return self.mean * np.exp(sigma * rng.standard_normal(n) - sigma**2 / 2.0)
+
 
 @dataclass(frozen=True, slots=True)
 class Gamma:
@@ -144,6 +156,10 @@ class Gamma:
         k = self._order
         return self.mean * (1.0 - math.exp(special.gammaln(k + 0.5) - special.gammaln(k + 1.0)) / math.sqrt(math.pi))
 
+    def sample(self, n: int, rng: np.random.Generator) -> Array:
+        """Draw n stays."""
+        return rng.standard_gamma(self._order, n) * (self.mean / self._order)
+
 
 @dataclass(frozen=True, slots=True)
 class TwoStreams:
@@ -179,15 +195,22 @@ class TwoStreams:
         return np.where(finite, high, np.inf)
 
     def mean_of_shorter_of_two(self) -> float:
-        """Return ∫ S², each pair of parts summed over a fine grid of the longer part's own quantiles."""
-        grid = np.unique(
-            np.concatenate([part.quantile(_SHARES) for share, part in self.parts if share > 0] + [np.zeros(1)])
-        )
-        left = self.survival(grid)
-        return float(np.sum(np.diff(grid) * (left[1:] ** 2 + left[1:] * left[:-1] + left[:-1] ** 2) / 3.0))
+        """Return ∫ S², by Gauss's rule between the parts' own quantiles (where a curve may jump)."""
+        ends = np.unique(np.concatenate([part.quantile(_SHARES) for share, part in self.parts if share > 0]))
+        ends = np.concatenate([[0.0], ends[ends > 0]])
+        half = np.diff(ends)[:, None] / 2.0
+        left = self.survival(ends[:-1, None] + half * (1.0 + _NODES))
+        return float(np.sum(half * _WEIGHTS * left**2))
+
+    def sample(self, n: int, rng: np.random.Generator) -> Array:
+        """Draw n stays."""
+        (_, first), (share_of_second, second) = self.parts
+        is_second = rng.random(n) < share_of_second
+        return np.where(is_second, second.sample(n, rng), first.sample(n, rng))
 
 
-_SHARES = 1.0 - np.concatenate([np.linspace(1.0, 0.01, 4_000), np.geomspace(0.01, 1e-12, 2_000)])
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(12)
+_SHARES = 1.0 - np.concatenate([np.linspace(1.0, 0.02, 50), np.geomspace(0.02, 1e-15, 60)[1:]])
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -235,3 +258,7 @@ class Measured:
         """Return ∫ S², exactly for straight lines."""
         s0, s1 = self.left[:-1], self.left[1:]
         return float(np.sum(np.diff(self.days) * (s0**2 + s0 * s1 + s1**2) / 3.0))
+
+    def sample(self, n: int, rng: np.random.Generator) -> Array:
+        """Draw n stays."""
+        return self.quantile(rng.random(n))
