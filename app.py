@@ -1,0 +1,18 @@
+"""The dashboard's front door: which pages there are. Start it with ``streamlit run app.py``."""
+
+import streamlit as st
+
+from bedplan.pages import startup
+
+assert startup.LOADED  # noqa: S101  imported for what it does once a process
+st.set_page_config(page_title="bedplan", page_icon=":material/bed:", layout="wide")
+st.navigation(
+    [
+        st.Page("bedplan/pages/records.py", title="Records", url_path="records"),
+        st.Page("bedplan/pages/one_ward.py", title="One ward", default=True),
+        st.Page("bedplan/pages/compare.py", title="Compare wards", url_path="compare"),
+        st.Page("bedplan/pages/justification.py", title="Justification", url_path="justification"),
+        st.Page("bedplan/pages/method.py", title="Method and cautions", url_path="method"),
+    ],
+    position="top",
+).run()

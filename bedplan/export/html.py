@@ -1,0 +1,141 @@
+"""The justification as one HTML file that stands alone: no script, no network, prints on A4."""
+
+from __future__ import annotations
+
+import html
+import re
+from string import Template
+from typing import TYPE_CHECKING
+
+import vl_convert
+
+from bedplan import charts, wording
+from bedplan.export.justification import count_or_withheld
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Sequence
+
+    from bedplan.export.justification import Justification, WardCase
+
+VEGA_LITE = "6.1"
+_STYLE = """
+@page { size: A4; margin: 16mm 15mm 18mm; @bottom-right { content: "Page " counter(page) " of " counter(pages); font-size: 9pt }
+  @bottom-left { content: "$foot"; font-size: 9pt } }
+html { print-color-adjust: exact; -webkit-print-color-adjust: exact }
+body { font: 11pt/1.45 "Liberation Sans", Arial, sans-serif; color: #0f1419; max-width: 180mm; margin: 8mm auto; padding: 0 4mm }
+h1 { font-size: 20pt; margin: 0 0 2mm } h2 { font-size: 14pt; margin: 8mm 0 2mm; break-after: avoid } h3 { font-size: 11.5pt; break-after: avoid }
+.answer { font-size: 15pt; line-height: 1.35; margin: 3mm 0 }
+.box { border: 1.5pt solid #0f1419; padding: 3mm 4mm; margin: 3mm 0; break-inside: avoid } .box p { margin: 1mm 0 }
+table { border-collapse: collapse; width: 100%; font-variant-numeric: tabular-nums; font-size: 9.5pt; margin: 2mm 0 }
+th, td { text-align: left; padding: 1.2mm 2mm; border-bottom: .5pt solid #b8bec4; vertical-align: top; overflow-wrap: anywhere }
+thead { display: table-header-group } tr { break-inside: avoid } figure { margin: 3mm 0; break-inside: avoid }
+figure svg { width: 100%; height: auto } figcaption { font-size: 9.5pt }
+"""
+_PAGE = Template(
+    '<!doctype html>\n<html lang="en"><head><meta charset="utf-8"><title>$title</title>'
+    "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; style-src 'unsafe-inline'\">"
+    '<meta name="viewport" content="width=device-width"><style>$style</style></head><body>\n$body\n</body></html>\n'
+)
+_IDENTIFIER = re.compile(r'(?<=\bid=")([^"]+)(?=")|(?<=url\(#)([^)]+)(?=\))|(?<=href="#)([^"]+)(?=")')
+
+
+def as_html(justification: Justification) -> bytes:
+    """How does the justification read as a document? One HTML file, UTF-8, charts inside as drawings.
+
+    Checked by: tests/export/test_html.py
+    """
+    esc = html.escape
+    parts = [
+        f"<h1>{esc(justification.title)}</h1>",
+        f'<div class="box" id="decision">{_paragraphs(justification.decision_lines())}</div>',
+        *(_ward(case, number) for number, case in enumerate(justification.cases)),
+        _source(justification),
+        "<h2>Cautions</h2>",
+        _list(wording.CAUTIONS),
+        f'<h2>To get the same figures again</h2><div class="box">{_table(("What", "Value"), justification.reproducibility())}</div>',
+    ]
+    style = Template(_STYLE).substitute(foot=f"Figures {justification.fingerprint()}")
+    return _PAGE.substitute(title=esc(justification.title), style=style, body="\n".join(parts)).encode()
+
+
+def _ward(case: WardCase, number: int) -> str:
+    curve = drawing(case, f"curve{number}", "curve")
+    months = drawing(case, f"months{number}", "months")
+    share = wording.WHEN_FULL[case.curve.when_full][1].lower()
+    table = case.table()
+    caption = (
+        "Share of patients, averaged over the year, at each number of staffed beds. "
+        f"The ward's own line ({wording.LINES[case.ward.model]}) is the thick one."
+    )
+    parts = [
+        f"<h2>{html.escape(case.ward.name)}</h2>",
+        f'<p class="answer">{html.escape(case.sentence())}</p>',
+        f"<figure>{curve}<figcaption>{caption}</figcaption></figure>",
+        _table(tuple(table[0]), [tuple(row.values()) for row in table]),
+        f"<figure>{months}<figcaption>Share {share}, month by month.</figcaption></figure>",
+        "<h3>Every bed count near the decision</h3>",
+        _curve_table(case),
+        "<h3>What this rests on</h3>",
+        _table(("Assumption", "Value", "From"), case.assumptions),
+        _table(("Changed by the planner", "Value"), case.settings),
+        _list(case.notes()),
+    ]
+    return "\n".join(parts)
+
+
+def curve_rows(case: WardCase) -> tuple[tuple[str, ...], list[tuple[float, ...]]]:
+    """Return the heading and rows (beds, then each model's share) near the decision, as numbers.
+
+    Checked by: tests/export/test_html.py
+    """
+    counts = [count for count in case.marked().values() if count is not None]
+    beds = [int(count) for count in case.curve.beds if min(counts) - 3 <= count <= max(counts) + 3]
+    heading = ("Staffed beds", *(wording.LINES[name] for name in case.curves))
+    return heading, [
+        (count, *(curve.at(count).turn_away_probability for curve in case.curves.values())) for count in beds
+    ]
+
+
+def _curve_table(case: WardCase) -> str:
+    heading, rows = curve_rows(case)
+    return _table(heading, [(str(row[0]), *(wording.percent(share) for share in row[1:])) for row in rows])
+
+
+def _source(justification: Justification) -> str:
+    source = justification.source
+    rows = [(reason, count_or_withheld(count), f"{bed_days:,.0f}") for reason, count, bed_days in source.reasons]
+    withheld = "<p>* counts of 1 to 7 are withheld.</p>" if any(row[1] == "*" for row in rows) else ""
+    table = _table(("What was done, and why", "Rows", "Bed-days"), rows) if rows else ""
+    return f"<h2>Where the data came from</h2>{_paragraphs(source.sentences())}{table}{withheld}"
+
+
+def _paragraphs(sentences: Iterable[str]) -> str:
+    return "".join(f"<p>{html.escape(sentence)}</p>" for sentence in sentences)
+
+
+def _list(sentences: Iterable[str]) -> str:
+    return "<ul>" + "".join(f"<li>{html.escape(sentence)}</li>" for sentence in sentences) + "</ul>"
+
+
+def _table(heading: Sequence[str], rows: Iterable[Sequence[str]]) -> str:
+    head = "".join(f'<th scope="col">{html.escape(name)}</th>' for name in heading)
+    body = "".join("<tr>" + "".join(f"<td>{html.escape(cell)}</td>" for cell in row) + "</tr>" for row in rows)
+    return f"<table><thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>" if body else ""
+
+
+def drawing(case: WardCase, prefix: str, kind: str) -> str:
+    """Return one of a ward's charts as an SVG element whose ids are its own.
+
+    Checked by: tests/export/test_html.py
+    """
+    if kind == "curve":
+        data = charts.curve_data(list(case.curves.values()), case.ward.model, case.marked(), case.limit())
+        spec, title = charts.CURVE, f"{case.ward.name}: share of patients at each number of staffed beds"
+    else:
+        needed = None if case.decision is None else case.decision.point
+        data = charts.months_data(case.curve.at(case.ward.beds), needed, case.rule.most)
+        spec, title = charts.MONTHS, f"{case.ward.name}: share of patients month by month"
+    drawn = vl_convert.vegalite_to_svg(charts.printed(spec, data), vl_version=VEGA_LITE, allowed_base_urls=[])
+    drawn = _IDENTIFIER.sub(lambda found: f"{prefix}-{found.group(0)}", drawn)
+    drawn = re.sub(r'(<svg [^>]*?)width="[\d.]+" height="[\d.]+"', r"\1", drawn, count=1)
+    return drawn.replace("<svg ", f'<svg role="img" aria-label="{html.escape(title)}" ', 1)

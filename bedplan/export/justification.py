@@ -1,0 +1,223 @@
+"""The justification of a bed count: facts and sentences, no format. Writers turn it into documents."""
+
+from __future__ import annotations
+
+import hashlib
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from bedplan import wording
+from bedplan.decision import patients_per_year
+from bedplan.errors import ImpossibleFigure
+
+if TYPE_CHECKING:
+    import datetime as dt
+    from collections.abc import Mapping
+
+    from bedplan.data import Records
+    from bedplan.decision import Decision, Rule, Ward
+    from bedplan.models import BedCurve
+
+SMALLEST_COUNT_SHOWN = 8  # counts of 1 to 7 are withheld: common disclosure practice for health statistics
+
+
+@dataclass(frozen=True, slots=True)
+class Source:
+    """Where the figures came from: the file as it was read, in counts only.
+
+    ``reasons`` are (what was done and why, rows, bed-days). ``rows_in`` 0 means totals were typed, no file was read.
+    """
+
+    name: str
+    fingerprint: str = ""
+    window: str = ""
+    rows_in: int = 0
+    used: int = 0
+    repaired: int = 0
+    set_aside: int = 0
+    reasons: tuple[tuple[str, int, float], ...] = ()
+    notes: tuple[str, ...] = ()
+
+    @classmethod
+    def from_records(cls, records: Records) -> Source:
+        """Return what a document says about these records.
+
+        Checked by: tests/export/test_justification.py
+        """
+        start, end = records.window
+        report = records.report
+        dropped = ", ".join(report.dropped_columns)
+        about_dropped = (
+            (f"Dropped as the file was read, because they may identify people: {dropped}.",) if dropped else ()
+        )
+        return cls(
+            name=records.name,
+            fingerprint=records.fingerprint,
+            window=f"{start:%d %B %Y} to {end:%d %B %Y}",
+            rows_in=report.rows_in,
+            used=report.used,
+            repaired=report.repaired,
+            set_aside=report.set_aside,
+            reasons=tuple((finding.sentence, finding.rows, finding.bed_days) for finding in report.findings),
+            notes=(*about_dropped, *report.notes),
+        )
+
+    def sentences(self) -> tuple[str, ...]:
+        """Say where the data came from."""
+        if not self.rows_in:
+            return (f"{self.name}: totals typed by the planner; no records file was read.",)
+        counts = (
+            f"{self.rows_in:,} rows = {self.used:,} used + {self.repaired:,} repaired + {self.set_aside:,} set aside."
+        )
+        return (f"{self.name}, covering {self.window}. {counts}", *self.notes)
+
+
+def count_or_withheld(count: int) -> str:
+    """Write a count of rows, or * where it is 1 to 7 and could point at a person.
+
+    Checked by: tests/export/test_justification.py
+    """
+    return "*" if 0 < count < SMALLEST_COUNT_SHOWN else f"{count:,}"
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class WardCase:
+    """One ward's case: the ward, its curve, the limit, the decision (None where out of reach), and what it rests on.
+
+    ``curves`` maps every model's name to its curve, the ward's own included. ``assumptions`` are (what, value, where
+    from); ``settings`` (slider, value).
+    """
+
+    ward: Ward
+    curves: Mapping[str, BedCurve]
+    rule: Rule
+    decision: Decision | None
+    assumptions: tuple[tuple[str, str, str], ...] = ()
+    settings: tuple[tuple[str, str], ...] = ()
+
+    @property
+    def curve(self) -> BedCurve:
+        """The curve of the ward's own model."""
+        return self.curves[self.ward.model]
+
+    @property
+    def within(self) -> str:
+        """Whether the limit holds for the year or for every month."""
+        return getattr(self.rule, "within", "year")
+
+    def sentence(self) -> str:
+        """Say the answer in at most 30 words."""
+        today = self.curve.at(self.ward.beds)
+        needed = None if self.decision is None else self.decision.beds
+        return wording.answer_sentence(
+            self.ward.name,
+            (self.ward.beds, self.ward.average_formula_beds, needed),
+            (self.rule.most, self.curve.when_full, self.within),
+            (today.worst_month, float(today.by_month[today.worst_month])),
+        )
+
+    def marked(self) -> dict[str, int | None]:
+        """Return the bed counts to mark on a chart."""
+        return {
+            "today": self.ward.beds,
+            "average formula": self.ward.average_formula_beds,
+            "by the limit": None if self.decision is None else self.decision.beds,
+        }
+
+    def limit(self) -> tuple[float, str]:
+        """Return the limit as drawn: its share and its label."""
+        return self.rule.most, f"limit: {wording.one_in(self.rule.most)}"
+
+    def table(self) -> list[dict[str, str]]:
+        """Return today's, the formula's and the limit's bed counts side by side, in words."""
+        label = wording.WHEN_FULL[self.curve.when_full][1]
+        rows = []
+        for mark, beds in self.marked().items():
+            if beds is None:
+                continue
+            point = self.curve.at(beds)
+            worst, best = point.worst_month, point.best_month
+            rows.append(
+                {
+                    "": mark.capitalize(),
+                    "Staffed beds": str(beds),
+                    f"{label}, patients a year": wording.patients_per_year(patients_per_year(self.curve, beds)),
+                    "Share": f"{wording.percent(point.turn_away_probability)} ({wording.one_in(point.turn_away_probability)})",
+                    "Highest month": f"{wording.MONTHS_SHORT[worst]} {wording.percent(float(point.by_month[worst]))}",
+                    "Lowest month": f"{wording.MONTHS_SHORT[best]} {wording.percent(float(point.by_month[best]))}",
+                    "Occupancy that results": wording.percent(point.occupancy, 0),
+                }
+            )
+        return rows
+
+    def notes(self) -> tuple[str, ...]:
+        """Return the notes of the ward, of its curve and of the models drawn beside it, each once."""
+        found = [*self.ward.notes, *self.curve.notes]
+        return tuple(dict.fromkeys(found))
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Justification:
+    """Everything a bed-count justification says, ready for any format.
+
+    Raises:
+        ImpossibleFigure: no ward to justify.
+    """
+
+    cases: tuple[WardCase, ...]
+    source: Source
+    prepared: dt.date
+    checked_on_last_year: str = wording.NOT_YET_CHECKED
+
+    def __post_init__(self) -> None:
+        """A justification needs a ward."""
+        if not self.cases:
+            raise ImpossibleFigure("There is no ward to justify yet: choose one on the page One ward.")
+
+    @property
+    def title(self) -> str:
+        """The document's heading."""
+        names = ", ".join(case.ward.name for case in self.cases)
+        return f"Staffed beds: {names}" if len(self.cases) <= 3 else f"Staffed beds for {len(self.cases)} wards"
+
+    def decision_lines(self) -> tuple[str, ...]:
+        """Return the decision box: a line a ward, then whether last year was checked."""
+        return (*(self._ask(case) for case in self.cases), self.checked_on_last_year)
+
+    @staticmethod
+    def _ask(case: WardCase) -> str:
+        limit = wording.limit_text(case.rule.most, case.curve.when_full, case.within)
+        today = wording.patients_per_year(patients_per_year(case.curve, case.ward.beds))
+        verb = wording.WHEN_FULL[case.curve.when_full][0]
+        if case.decision is None:
+            return f"{case.ward.name}: no bed count looked at keeps {limit}. With today's {case.ward.beds}: {today} {verb} a year."
+        then = wording.patients_per_year(patients_per_year(case.curve, case.decision.beds))
+        return (
+            f"{case.ward.name}: approve {case.decision.beds} staffed beds (today {case.ward.beds}) to keep {limit}. "
+            f"Expected {verb} a year: {then}; with today's beds {today}."
+        )
+
+    def reproducibility(self) -> tuple[tuple[str, str], ...]:
+        """Return what an auditor needs to get the same figures again, as (what, value)."""
+        rows = [
+            ("Records", self.source.name),
+            ("Data window", self.source.window or "none: totals were typed"),
+            ("File fingerprint (SHA-256)", self.source.fingerprint or "none: totals were typed"),
+        ]
+        for case in self.cases:
+            settings = "; ".join(f"{name}: {value}" for name, value in case.settings) or "as recorded"
+            rows.append((f"Settings, {case.ward.name}", settings))
+            rows.append((f"Model, {case.ward.name}", f"{case.ward.model} ({wording.LINES[case.ward.model]})"))
+        rows.append(("Random numbers", "none used"))
+        rows.append(("Program", f"{wording.PROGRAM} {wording.VERSION}"))
+        rows.append(("Date produced", self.prepared.isoformat()))
+        rows.append(("Figures' fingerprint", self.fingerprint()))
+        return tuple(rows)
+
+    def fingerprint(self) -> str:
+        """Return a short fingerprint of every figure in the document, the date left out."""
+        digest = hashlib.sha256(self.source.fingerprint.encode())
+        for case in self.cases:
+            digest.update(f"{case.ward.name}|{case.ward.beds}|{case.rule!r}|{case.settings!r}".encode())
+            digest.update(case.curve.turn_away_probability.round(9).tobytes())
+        return digest.hexdigest()[:12]

@@ -1,0 +1,188 @@
+"""What pages share: the records in this session, each ward's settings, and the inputs of the page One ward.
+
+Nothing here computes a figure: it turns what is on screen into the value objects below, and keeps it between pages.
+"""
+
+from __future__ import annotations
+
+from functools import lru_cache
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+import pandas as pd
+import streamlit as st
+
+from bedplan import wording
+from bedplan.data import Capacity, Records, estimate_demand, read_capacity, read_records
+from bedplan.decision import TurnAwayLimit, Ward, decide
+from bedplan.errors import TargetOutOfReach
+from bedplan.export import Source, WardCase
+from bedplan.models import MODELS, BedCurve, Demand
+from bedplan.plan import Baseline, Changes, from_estimate, planned_ward
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+DEMO = Path(__file__).resolve().parents[2] / "demo_data"
+# What the wards of the invented demo hospital do when full; for other records the planner answers.
+DEMO_LEAVES = frozenset({"Merlin", "Curlew", "Dunlin", "Sandpiper"})
+
+# key -> (label, lowest, highest, start, step, format); whole numbers keep the page's address short
+SLIDERS: Mapping[str, tuple[str, int, int, int, int, str]] = {
+    "demand": ("Demand", -50, 100, 0, 1, "%+d %%"),
+    "stay": ("Mean stay", -50, 100, 0, 1, "%+d %%"),
+    "spread": ("Spread of stay", -75, 150, 0, 5, "%+d %%"),
+    "peak": ("Winter peak", 0, 250, 100, 5, "%d %% of recorded"),
+    "growth": ("Growth to the planned year", -10, 20, 0, 1, "%+d %%"),
+}
+LIMIT = ("Limit", 1, 20, 5, 1, "%d %%")
+WITHIN = {"every_month": "in every month", "year": "over the year"}
+FINGERPRINT_SHOWN = 12
+PERSIST: Mapping[str, str] = {"bind": "query-params", "persist_state": "session"}
+
+
+@st.cache_resource(max_entries=1, show_spinner="Opening the Larkmere demo…")
+def demo() -> tuple[Records, Capacity]:
+    """Return the invented hospital's records: shared by everyone, since they are nobody's."""
+    return read_records(DEMO / "stays.csv"), read_capacity(DEMO / "capacity.csv")
+
+
+def records() -> Records:
+    """Return the records of this session: the planner's own, or the demo."""
+    return st.session_state.get("records") or demo()[0]
+
+
+def is_demo() -> bool:
+    """Whether the figures on screen are the invented hospital's."""
+    return st.session_state.get("records") is None
+
+
+def capacity() -> Capacity | None:
+    """Return the capacity file of this session, where there is one."""
+    return demo()[1] if is_demo() else st.session_state.get("capacity")
+
+
+def forget_figures() -> None:
+    """Forget what was worked out from earlier records; what the planner typed stays."""
+    for key in ("baselines", "shown_ward", *SLIDERS, "beds", "full", "ward"):
+        st.session_state.pop(key, None)
+    st.session_state["settings"] = {}
+
+
+def ward_names() -> list[str]:
+    """Return every ward there is a baseline for: those typed as totals first, then those in the records."""
+    typed = st.session_state.get("typed", {})
+    return [*typed, *(name for name in records().wards if name not in typed)]
+
+
+def baseline(name: str) -> Baseline:
+    """Return where the sliders of a ward start."""
+    typed = st.session_state.get("typed", {})
+    if name in typed:
+        return typed[name]
+    if is_demo():
+        return _demo_baseline(name)
+    known: dict[str, Baseline] = st.session_state.setdefault("baselines", {})
+    if name not in known:
+        known[name] = from_estimate(estimate_demand(records(), name, capacity=capacity()), _beds_today(name))
+    return known[name]
+
+
+@st.cache_resource(max_entries=20)
+def _demo_baseline(name: str) -> Baseline:
+    stays, beds = demo()
+    return from_estimate(estimate_demand(stays, name, capacity=beds), beds.beds_today(name))
+
+
+def _beds_today(name: str) -> int | None:
+    """Return today's staffed beds from the capacity file, or None where it must be typed."""
+    beds = capacity()
+    return beds.beds_today(name) if beds is not None and name in beds.wards else None
+
+
+def starting_values(name: str) -> dict[str, Any]:
+    """Return what every input of a ward shows before anything was changed."""
+    leaves = is_demo() and name in DEMO_LEAVES
+    values: dict[str, Any] = {key: slider[3] for key, slider in SLIDERS.items()}
+    return values | {"beds": baseline(name).beds, "full": "leaves" if leaves else "waits"}
+
+
+def settings_of(name: str) -> dict[str, Any]:
+    """Return a ward's inputs as last left, or as they start."""
+    return st.session_state.setdefault("settings", {}).get(name) or starting_values(name)
+
+
+def case_of(name: str, rule: TurnAwayLimit) -> WardCase:
+    """Return one ward's case under its own settings and the limit of this session."""
+    values, base = settings_of(name), baseline(name)
+    changes = Changes(
+        demand=values["demand"] / 100,
+        stay=values["stay"] / 100,
+        spread=values["spread"] / 100,
+        peak=values["peak"] / 100,
+        growth=values["growth"] / 100,
+    )
+    ward = planned_ward(base, int(values["beds"]), values["full"], changes)
+    curves = curves_of(ward)
+    try:
+        decision = decide(curves[ward.model], rule)
+    except TargetOutOfReach:
+        decision = None
+    return WardCase(ward, curves, rule, decision, base.facts, changes.rows())
+
+
+def curves_of(ward: Ward) -> dict[str, BedCurve]:
+    """Return every model's curve that belongs on this ward's picture."""
+    return {model: _curve(model, ward.demand, int(ward.bed_counts[-1])) for model in MODELS}
+
+
+@lru_cache(maxsize=512)
+def _curve(model: str, demand: Demand, most_beds: int) -> BedCurve:
+    return MODELS[model](demand, np.arange(most_beds + 1))
+
+
+def rule() -> TurnAwayLimit:
+    """Return the limit of this session."""
+    share = st.session_state.get("limit", LIMIT[3])
+    return TurnAwayLimit(share / 100, within=st.session_state.get("within", "every_month"))
+
+
+def source(wards: list[str]) -> Source:
+    """Return where the figures of these wards come from, in counts only."""
+    typed = st.session_state.get("typed", {})
+    if wards and all(name in typed for name in wards):
+        return Source("Totals typed by the planner")
+    return Source.from_records(records())
+
+
+def facts_table(case: WardCase) -> pd.DataFrame:
+    """Return a ward's three bed counts side by side, a fact a row."""
+    return pd.DataFrame(case.table()).set_index("").T
+
+
+def small_curve(case: WardCase) -> list[float]:
+    """Return the curve from 10 beds below today's to 10 above, for a small picture on a common scale."""
+    beds = case.curve.beds
+    shown = (beds >= case.ward.beds - 10) & (beds <= case.ward.beds + 10)
+    return [float(share) for share in case.curve.turn_away_probability[shown]]
+
+
+def show_origin() -> None:
+    """Say whose figures these are, and whether the address asks for records that are not loaded."""
+    here = records().fingerprint[:FINGERPRINT_SHOWN]
+    asked = st.session_state.setdefault("asked_records", st.query_params.get("records", here))
+    if asked != here:
+        st.warning(
+            f"This address was made with records {wording.plain(asked)}, which are not loaded: the figures below come from "
+            f"{wording.plain(records().name)} ({here}). Load those records on the page Records."
+        )
+    elif is_demo():
+        st.caption("The invented Larkmere hospital. Load your own records on the page Records.")
+
+
+def keep_address() -> None:
+    """Put the records' fingerprint into the page's address, beside the inputs that keep themselves there."""
+    here = records().fingerprint[:FINGERPRINT_SHOWN]
+    if st.query_params.get("records") != here:
+        st.query_params["records"] = here

@@ -1,0 +1,61 @@
+"""Justification: the case for the bed count, to read here and to take away."""
+
+from __future__ import annotations
+
+import datetime as dt
+
+import streamlit as st
+
+from bedplan import wording
+from bedplan.errors import BedplanError
+from bedplan.export import Justification, as_html, as_xlsx
+from bedplan.pages import controls
+
+controls.show_origin()
+names = controls.ward_names()
+chosen = st.session_state.get("ward")
+st.session_state.setdefault("justified", [chosen if chosen in names else names[0]])
+st.session_state["justified"] = [name for name in st.session_state["justified"] if name in names] or names[:1]
+wards = st.multiselect("Wards in this justification", names, key="justified", persist_state="session")
+try:
+    paper = Justification(
+        tuple(controls.case_of(name, controls.rule()) for name in wards),
+        controls.source(wards),
+        dt.datetime.now().astimezone().date(),
+    )
+    st.header(wording.plain(paper.title), anchor=False)
+    for line in paper.decision_lines():
+        st.markdown(wording.plain(line))
+    mark = paper.fingerprint()
+    left, right, _ = st.columns([1, 1, 2])
+    left.download_button(
+        "Take the document (HTML)",
+        data=lambda: as_html(paper),
+        file_name=f"bed-count-justification-{mark}.html",
+        mime="text/html",
+        on_click="ignore",
+        key="take_html",
+        width="stretch",
+    )
+    right.download_button(
+        "Take the workbook (Excel)",
+        data=lambda: as_xlsx(paper),
+        file_name=f"bed-count-justification-{mark}.xlsx",
+        mime="application/vnd.openxmlformats-officedocument.spreadsheetml.sheet",
+        on_click="ignore",
+        key="take_xlsx",
+        width="stretch",
+    )
+    for case in paper.cases:
+        st.subheader(wording.plain(case.ward.name), anchor=False)
+        st.markdown(wording.plain(case.sentence()))
+        st.table(controls.facts_table(case))
+        for note in case.notes():
+            st.markdown(f"- {wording.plain(note)}")
+    st.subheader("To get the same figures again", anchor=False)
+    st.table({what: wording.plain(value) for what, value in paper.reproducibility()}, border="horizontal")
+    st.subheader("Cautions", anchor=False)
+    for line in wording.CAUTIONS:
+        st.markdown(f"- {line}")
+except BedplanError as error:
+    st.error(wording.plain(str(error)))

@@ -1,0 +1,42 @@
+"""Method and cautions: what each line on the picture computes, where it comes from, and what it leaves out."""
+
+from __future__ import annotations
+
+import streamlit as st
+
+from bedplan import wording
+
+METHODS = {
+    "average_occupancy": "Admissions × mean stay ÷ 365 ÷ 85 %. Leaves chance out: as a line it turns nobody away while beds "
+    "exceed the average load. Farmer & Emami 1990; common practice.",
+    "erlang_loss": "Erlang's loss formula (1917) at the year's mean load: independent arrivals at one steady rate, patients "
+    "who find the ward full go elsewhere. The spread of stay does not matter to it. de Bruin et al. 2010.",
+    "unlimited_beds": "Patients who want a bed if nobody were ever turned away, hour by hour through the year: a Poisson "
+    "number about the load. Eick, Massey & Whitt 1993. It answers for wards whose patients wait or are placed elsewhere.",
+    "seasonal_loss": "Erlang's loss formula on the load of each hour of the year, which follows months, weekdays and hours "
+    "with the delay that stays cause. Massey & Whitt 1994.",
+    "waiting": "Patients wait for a bed instead of leaving: Erlang's delay formula (1917), corrected for the spread of stay "
+    "by Allen & Cunneen.",
+}
+
+st.header("What each line computes, and what it leaves out", anchor=False)
+for model, line in wording.LINES.items():
+    if model in METHODS:
+        st.markdown(f"**{line.capitalize()}.** {METHODS[model]}")
+st.subheader("Words", anchor=False)
+st.markdown(
+    "- **Arrivals** need a bed; **admissions** got one. Records hold admissions only.\n"
+    "- **Beds wanted** on average: arrivals a day × mean stay in days.\n"
+    "- **Turned away**: wanted this ward, did not get it. **Finds the ward full**: came when every bed was taken, and waited "
+    "or was placed elsewhere.\n"
+    "- **Occupancy** is what results from a bed count, not a target. *Running* with 85 % of beds in use, 10 beds turn away "
+    "33 % of patients, 30 beds 11 %, 200 beds 0.25 %; *sized* at 85 % of demand they turn away 14 %, 6 % and 0.2 %."
+)
+st.subheader("Cautions", anchor=False)
+for caution in wording.CAUTIONS:
+    st.markdown(f"- {caution}")
+st.subheader("Privacy", anchor=False)
+st.markdown(
+    "Patient rows stay in this computer's memory and are forgotten when the page is closed. Names, dates of birth, addresses "
+    "and numbers that identify people are dropped as a file is read. No row is in a link, a log or a document."
+)

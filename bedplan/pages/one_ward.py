@@ -1,0 +1,131 @@
+"""One ward: the answer in a sentence, the curve behind it, and the inputs that move it."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+import streamlit as st
+
+from bedplan import charts, wording
+from bedplan.errors import BedplanError
+from bedplan.pages import controls
+
+if TYPE_CHECKING:
+    from bedplan.export import WardCase
+
+
+def load_ward() -> None:
+    """Put the chosen ward's own settings on screen, before its inputs are drawn."""
+    values = controls.settings_of(st.session_state["ward"])
+    st.session_state.update(values)
+    st.session_state["shown_ward"] = st.session_state["ward"]
+
+
+def reset() -> None:
+    """Put every input of this ward back to what its records say."""
+    st.session_state.update(controls.starting_values(st.session_state["ward"]))
+
+
+def slider_label(key: str, name: str) -> str:
+    """Say what a slider stands for now, in its own unit."""
+    base = controls.baseline(name)
+    title, value = controls.SLIDERS[key][0], st.session_state.get(key, controls.SLIDERS[key][3]) / 100
+    stay = base.demand.length_of_stay
+    now = {
+        "demand": f"{base.demand.arrivals_per_day * (1 + value):.1f} patients a day",
+        "stay": wording.days(stay.mean_days * (1 + value)),
+        "spread": f"SD is {stay.variation * (1 + value):.2f} × the mean",
+        "peak": _peak_text(base.demand.month_factors, value),
+        "growth": f"records: {wording.signed_percent(base.growth_per_year)} a year",
+    }
+    return f"{title}: {now[key]}"
+
+
+def _peak_text(factors: tuple[float, ...], size: float) -> str:
+    top = max(range(12), key=lambda month: factors[month])
+    return f"{wording.MONTHS_SHORT[top]} {wording.signed_percent(size * (factors[top] - 1))}"
+
+
+def inputs() -> str:
+    """Draw the inputs and return the ward's name."""
+    names = controls.ward_names()
+    start = next((names.index(one) for one in ("Kestrel",) if one in names), 0)
+    name = st.selectbox("Ward", names, index=start, key="ward", on_change=load_ward, **controls.PERSIST)
+    starting = controls.starting_values(name)
+    st.radio(
+        "When this ward is full, its patients…",
+        list(wording.WHEN_WARD_IS_FULL),
+        index=list(wording.WHEN_WARD_IS_FULL).index(starting["full"]),
+        format_func=wording.WHEN_WARD_IS_FULL.get,
+        key="full",
+        **controls.PERSIST,
+    )
+    st.number_input("Staffed beds today", 0, 2000, starting["beds"], 1, key="beds", **controls.PERSIST)
+    _, low, high, first, step, form = controls.LIMIT
+    share = st.session_state.get("limit", first) / 100
+    verb = wording.WHEN_FULL["leaves" if st.session_state["full"] == "leaves" else "stays anyway"][0]
+    st.slider(
+        f"Limit: {wording.one_in(share)} {verb}", low, high, first, step, format=form, key="limit", **controls.PERSIST
+    )
+    st.segmented_control(
+        "The limit holds",
+        list(controls.WITHIN),
+        default="every_month",
+        format_func=controls.WITHIN.get,
+        key="within",
+        required=True,
+        **controls.PERSIST,
+    )
+    for key, (_, low, high, first, step, form) in controls.SLIDERS.items():
+        st.slider(slider_label(key, name), low, high, first, step, format=form, key=key, **controls.PERSIST)
+    st.button("Back to what the records say", on_click=reset, width="stretch")
+    return name
+
+
+def remember(name: str) -> None:
+    """Keep this ward's inputs for when the planner comes back to it."""
+    keys = ("beds", "full", *controls.SLIDERS)
+    st.session_state.setdefault("settings", {})[name] = {key: st.session_state[key] for key in keys}
+
+
+def notes(case: WardCase, values: dict[str, Any]) -> None:
+    """Say what the figure leaves out and which way it errs."""
+    if case.ward.when_full == "leaves" and values["spread"]:
+        st.info(
+            "Spread of stay hardly moves a ward that turns patients away: in steady state only the mean counts. "
+            "It acts on winter lag, clustered arrivals and waiting."
+        )
+    with st.expander("What this figure rests on, and which way it may err"):
+        for note in (*case.notes(), wording.NOT_YET_CHECKED):
+            st.markdown(f"- {wording.plain(note)}")
+
+
+def answer(case: WardCase) -> None:
+    """Draw the sentence, the picture, the table and the months."""
+    st.header(wording.plain(case.sentence()), anchor=False)
+    label = wording.WHEN_FULL[case.curve.when_full][1].lower()
+    picture, table = st.columns([3, 2], gap="large")
+    with picture:
+        st.markdown(f"**Share of patients: {label}, over the year**")
+        data = charts.curve_data(list(case.curves.values()), case.ward.model, case.marked(), case.limit())
+        with st.container(key="curve"):
+            st.vega_lite_chart(charts.live(charts.CURVE, data), theme=None, width="stretch", alt=case.sentence())
+    with table:
+        st.table(controls.facts_table(case))
+    st.markdown(f"**Share of patients: {label}, month by month**")
+    needed = None if case.decision is None else case.decision.point
+    months = charts.months_data(case.curve.at(case.ward.beds), needed, case.rule.most)
+    st.vega_lite_chart(charts.live(charts.MONTHS, months), theme=None, width="stretch", alt="Share month by month")
+
+
+controls.show_origin()
+with st.sidebar:
+    ward_name = inputs()
+remember(ward_name)
+controls.keep_address()
+try:
+    ward_case = controls.case_of(ward_name, controls.rule())
+    answer(ward_case)
+    notes(ward_case, controls.settings_of(ward_name))
+except BedplanError as error:
+    st.error(wording.plain(str(error)))

@@ -1,0 +1,157 @@
+"""Every label, unit, number format and sentence that pages, charts and documents share.
+
+Shares are 0–1 everywhere else in the program; percent exists only here. Standard library only.
+"""
+
+from __future__ import annotations
+
+import math
+
+PROGRAM = "bedplan"
+VERSION = "0.1.0"
+
+MONTHS = (
+    "January",
+    "February",
+    "March",
+    "April",
+    "May",
+    "June",
+    "July",
+    "August",
+    "September",
+    "October",
+    "November",
+    "December",
+)
+MONTHS_SHORT = tuple(month[:3] for month in MONTHS)
+WEEKDAYS = ("Monday", "Tuesday", "Wednesday", "Thursday", "Friday", "Saturday", "Sunday")
+
+# model name -> its line's label
+LINES = {
+    "average_occupancy": "average formula",
+    "erlang_loss": "steady demand",
+    "unlimited_beds": "everyone finds a bed",
+    "seasonal_loss": "with seasons",
+    "waiting": "patients wait",
+}
+
+# what a full ward does to a patient, by the model's answer: (verb phrase for a share, short label)
+WHEN_FULL = {
+    "leaves": ("turned away", "Turned away"),
+    "no chance": ("turned away", "Turned away"),
+    "waits": ("waiting for a bed", "Waits for a bed"),
+    "stays anyway": ("finding the ward full", "Finds the ward full"),
+}
+WHEN_WARD_IS_FULL = {"leaves": "go elsewhere", "waits": "wait, or are placed elsewhere"}
+
+NOT_YET_CHECKED = "Not yet checked against last year."
+
+CAUTIONS = (
+    "This is an estimate for planning, from past records and simplified mathematics. Real days will be better and worse.",
+    "It does not decide who is admitted, clinical priorities or nurse staffing. Staffing law and licensed judgement come first.",
+    "It is about wards over a year. It is not for the care of individual patients.",
+    "Records hold admissions: patients who found a bed. Where the ward was full, true demand is higher than recorded.",
+    "The range of chance is in these figures; events outside past experience are not.",
+    "Before closing beds, look at the busiest month, at infection closures and at demand above what is assumed here.",
+)
+
+
+def percent(share: float, digits: int | None = None) -> str:
+    """Write a share as percent: 0.0666 -> "6.7 %"; below one in a thousand "under 0.1 %"."""
+    if digits is None:
+        digits = 0 if share >= 0.095 or share == 0 else 1
+    if 0 < share < 0.0005 and digits <= 1:
+        return "under 0.1 %"
+    return f"{100 * share:.{digits}f} %"
+
+
+def signed_percent(share: float) -> str:
+    """Write a change as percent with its sign: 0.05 -> "+5 %", 0 -> "no change"."""
+    text = f"{100 * share:+.1f}".removesuffix(".0")
+    return "no change" if text in {"+0", "-0"} else f"{text.replace('-', '−')} %"
+
+
+def one_in(share: float) -> str:
+    """Write a share as people say it: 0.05 -> "1 in 20", 0.4 -> "2 in 5", 0.97 -> "nearly all"."""
+    if share <= 0:
+        return "none"
+    if share >= 0.995:
+        return "everyone"
+    if share > 0.95:
+        return "nearly all"
+    if share > 0.285:
+        top = min(
+            ((n, d) for d in (2, 3, 4, 5, 10) for n in range(1, d)), key=lambda pair: abs(pair[0] / pair[1] - share)
+        )
+        common = math.gcd(*top)
+        return f"{top[0] // common} in {top[1] // common}"
+    count = 1 / share
+    if count > 1000:
+        return "almost none"
+    return f"1 in {_about(count):,}"
+
+
+def _about(count: float) -> int:
+    """Round a count to what people remember: whole up to 20, then to 5, 10, 50 or 100."""
+    step = 1 if count < 20.5 else 5 if count < 100 else 10 if count < 200 else 50
+    return int(step * round(count / step))
+
+
+def beds_text(beds: float) -> str:
+    """Write a whole bed count with its noun: "1 bed", "28 beds"."""
+    return f"{beds:,.0f} bed" if round(beds) == 1 else f"{beds:,.0f} beds"
+
+
+def beds_on_average(beds: float) -> str:
+    """Write average beds wanted or in use: one decimal and the words."""
+    return f"{beds:,.1f} beds on average"
+
+
+def patients_per_year(patients: float) -> str:
+    """Write patients a year for reading aloud: "about 120", "about 8", "under 1", "none"."""
+    if patients <= 0:
+        return "none"
+    if patients < 1:
+        return "under 1"
+    step = 1 if patients < 20 else 5 if patients < 100 else 10 if patients < 1000 else 50
+    return f"about {step * round(patients / step):,}"
+
+
+def days(value: float) -> str:
+    """Write days with one decimal: "4.2 days"."""
+    return f"{value:,.1f} days"
+
+
+def plain(text: str) -> str:
+    """Take the marks out of a name that a page would read as formatting."""
+    for mark in "\\`*_{}[]<>#|~$:":
+        text = text.replace(mark, f"\\{mark}")
+    return text
+
+
+def limit_text(share: float, when_full: str, within: str) -> str:
+    """Say a limit: "every month within 1 in 20 turned away"."""
+    span = "every month" if within == "every_month" else "the year"
+    return f"{span} within {one_in(share)} {WHEN_FULL[when_full][0]}"
+
+
+def answer_sentence(
+    name: str, beds: tuple[int, int, int | None], limit: tuple[float, str, str], worst: tuple[int, float]
+) -> str:
+    """Say the answer in at most 30 words: today's beds, the average formula's, the limit's, the worst month.
+
+    ``beds`` = (today, average formula, by the limit or None), ``limit`` = (share, when_full, within), ``worst`` =
+    (month, share there with today's beds). A name of more than two words becomes "This ward".
+    """
+    today, formula, needed = beds
+    share, when_full, within = limit
+    who = name if len(name.split()) <= 2 else "This ward"
+    span = "every month" if within == "every_month" else "the year"
+    verb = {"stays anyway": "finding it full", "waits": "waiting"}.get(when_full, "turned away")
+    takes = "more" if needed is None else str(needed)
+    month, share_there = worst
+    return (
+        f"{who} has {today} staffed {'bed' if today == 1 else 'beds'}; the average formula says {formula}. "
+        f"Keeping {span} to {one_in(share)} {verb} takes {takes}. {MONTHS[month]} is worst: {one_in(share_there)} today."
+    )

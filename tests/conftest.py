@@ -1,0 +1,47 @@
+"""What all tests share: where the project is, and skips that count as failures where everything must be installed."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import pytest
+
+if TYPE_CHECKING:
+    from collections.abc import Generator
+
+ROOT = Path(__file__).resolve().parent.parent
+NO_SKIPS = bool(os.environ.get("BEDPLAN_NO_SKIPS"))
+
+
+def _skip_is_failure(report: pytest.TestReport | pytest.CollectReport) -> None:
+    if NO_SKIPS and report.skipped and not hasattr(report, "wasxfail"):
+        report.outcome = "failed"
+        report.longrepr = f"skipped where nothing may be skipped: {report.longrepr}"
+
+
+@pytest.hookimpl(hookwrapper=True)
+def pytest_runtest_makereport() -> Generator[None]:
+    """Turn a skipped test into a failed one where everything must be installed."""
+    outcome = yield
+    _skip_is_failure(outcome.get_result())
+
+
+@pytest.hookimpl(hookwrapper=True)
+def pytest_make_collect_report() -> Generator[None]:
+    """Turn a skipped file into a failed one where everything must be installed."""
+    outcome = yield
+    _skip_is_failure(outcome.get_result())
+
+
+@pytest.fixture(scope="session")
+def root() -> Path:
+    """Return the project's folder."""
+    return ROOT
+
+
+@pytest.fixture(scope="session")
+def demo_data() -> Path:
+    """Return the folder of the invented hospital's files."""
+    return ROOT / "demo_data"

@@ -1,0 +1,69 @@
+"""A plan: sliders change the demand the records show, by exactly what they say."""
+
+from __future__ import annotations
+
+import pytest
+
+from bedplan.errors import ImpossibleFigure
+from bedplan.models import Demand, LengthOfStay
+from bedplan.plan import Baseline, Changes, changed_demand, changed_stay, from_totals, peaked, planned_ward
+
+WINTER = (1.3, 1.18, 1.06, 0.97, 0.9, 0.84, 0.8, 0.8, 0.88, 1.0, 1.1, 1.17)
+
+
+def baseline() -> Baseline:
+    """Return a ward with a winter."""
+    return Baseline("Kestrel", Demand(3.4, LengthOfStay(7.0, 0.95), month_factors=WINTER), 1200.0, 28)
+
+
+def test_no_change_is_the_records() -> None:
+    """With every slider where it starts, the demand is the one the records show."""
+    assert changed_demand(baseline(), Changes()) == baseline().demand
+
+
+def test_changes_multiply_the_load() -> None:
+    """5 % more patients, 10 % shorter stays and 2 % growth change the load by their product."""
+    changed = changed_demand(baseline(), Changes(demand=0.05, stay=-0.10, growth=0.02))
+
+    assert changed.offered_load == pytest.approx(3.4 * 7.0 * 1.05 * 0.90 * 1.02)
+
+
+def test_peak_stretches_the_season_about_its_mean() -> None:
+    """Twice the peak is twice as far from 1 in every month; no peak is a flat year; the mean stays 1."""
+    flat, double = peaked(WINTER, 0.0), peaked(WINTER, 2.0)
+
+    assert flat == pytest.approx((1.0,) * 12)
+    assert [factor - 1 for factor in double] == pytest.approx([2 * (factor - 1) for factor in WINTER])
+    assert sum(peaked(WINTER, 9.0)) == pytest.approx(12.0)
+    assert min(peaked(WINTER, 9.0)) >= 0
+
+
+def test_spread_changes_the_variation_only() -> None:
+    """Half as much again of spread keeps the mean."""
+    stay = changed_stay(LengthOfStay(7.0, 0.8, "gamma"), Changes(spread=0.5))
+
+    assert (stay.mean_days, stay.variation, stay.shape) == (7.0, pytest.approx(1.2), "gamma")
+
+
+def test_longer_stays_keep_their_shape() -> None:
+    """Two streams scaled by a tenth keep their spread and stretch every quantile by a tenth."""
+    mix = LengthOfStay.two_streams(0.12, LengthOfStay(7.8, 0.75), LengthOfStay(37, 0.6))
+    longer = changed_stay(mix, Changes(stay=0.1))
+
+    assert longer.variation == pytest.approx(mix.variation)
+    assert longer.quantile(0.9) == pytest.approx(1.1 * mix.quantile(0.9))
+
+
+def test_totals_make_a_ward() -> None:
+    """1,460 admissions of 5 days want 20 beds on average, and the notes say no season is known."""
+    ward = planned_ward(from_totals("Ward A", 1460, LengthOfStay(5.0), 24), 24, "leaves", Changes())
+
+    assert ward.demand.offered_load == pytest.approx(20.0)
+    assert ward.average_formula_beds == 24  # 1460 × 5 / 365 / 0.85 = 23.5
+    assert any("no season" in note for note in ward.notes)
+
+
+def test_impossible_changes_are_a_sentence() -> None:
+    """A stay changed to nothing is refused in words that quote the figure."""
+    with pytest.raises(ImpossibleFigure, match="mean stay of 0 days"):
+        changed_demand(baseline(), Changes(stay=-1.0))
