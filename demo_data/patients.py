@@ -80,7 +80,7 @@ def minute_at(day: date) -> int:
 def arrivals_on(ward: Ward, day: date) -> float:
     """How many emergency patients want this ward on this day, on average?
 
-    Checked by: tests/demo_data/test_demo.py
+    Checked by: tests/demo_data/test_rules.py
     """
     years = (day - NO_GROWTH_DATE).days / 365.25
     growth = exponential(years * natural_log(1.0 + ward.growth_per_year))
@@ -153,7 +153,7 @@ def draw_patients(seed: int, hospital: Hospital) -> list[Patient]:
 
     In the order in which they ask for a bed.
 
-    Checked by: tests/demo_data/test_demo.py
+    Checked by: tests/demo_data/test_rules.py
     """
     chance, patients = uniforms(seed), []
     for day_number in range((WINDOW_TO - RUN_IN_FROM).days):

@@ -105,7 +105,7 @@ def _wanted_period(want: Want, hospital: Hospital) -> tuple[int, int]:
 def daily_minutes(flow: Flow) -> DailyMinutes:
     """How long was each ward's patients' use, wait and want of a bed, day by day?
 
-    Checked by: tests/demo_data/test_demo.py
+    Checked by: tests/demo_data/test_rules.py
     """
     load = DailyMinutes(tuple(flow.hospital.by_name))
     for stay in flow.stays:
@@ -132,7 +132,7 @@ def load_rows(flow: Flow) -> Iterator[Row]:
 def write_truth(flow: Flow, folder: Path) -> None:
     """Write what really happened.
 
-    Checked by: tests/demo_data/test_demo.py
+    Checked by: tests/demo_data/test_rules.py
     """
     write_table(folder / "truth_patients.csv", WANT_COLUMNS, want_rows(flow))
     write_table(folder / "truth_daily_load.csv", LOAD_COLUMNS, load_rows(flow))
