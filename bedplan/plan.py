@@ -115,8 +115,36 @@ def from_estimate(estimate: DemandEstimate, beds: int | None) -> Baseline:
         admissions_per_year=estimate.admissions_per_year,
         beds=start,
         growth_per_year=estimate.growth_per_year,
-        facts=estimate.facts,
+        facts=_facts(estimate),
         notes=(*estimate.notes, *((unknown,) if beds is None else ())),
+    )
+
+
+def _facts(estimate: DemandEstimate) -> tuple[tuple[str, str, str], ...]:
+    """Return (what, value with its range, where from) for everything the demand rests on."""
+    demand, unsure = estimate.demand, estimate.uncertainty
+    top = max(range(12), key=lambda month: demand.month_factors[month])
+    peak = f"{wording.MONTHS[top]}, {wording.signed_percent(demand.month_factors[top] - 1.0)} against the mean month"
+    stays = f"{estimate.stays:,} stays, {estimate.unfinished:,} of them unfinished"
+    recorded = "recorded admissions, last 12 months or whole file"
+    return (
+        ("Admissions a year", f"{estimate.admissions_per_year:,.0f}", recorded),
+        ("Patients a day", wording.with_range(demand.total_arrivals_per_day, unsure.arrivals_per_day), estimate.method),
+        ("Mean stay, days", wording.with_range(estimate.mean_stay_days, unsure.mean_stay_days), stays),
+        ("Spread of stay (SD ÷ mean)", f"{estimate.variation:.2f}", stays),
+        (
+            "Beds wanted on average",
+            wording.with_range(demand.offered_load, unsure.beds_wanted),
+            "patients a day × mean stay",
+        ),
+        ("Busiest month", peak, "admissions by month, all years"),
+        ("Growth in the records", f"{wording.signed_percent(estimate.growth_per_year)} a year", "trend over the file"),
+        (
+            "Swing of daily arrivals (variance ÷ mean)",
+            f"{demand.clustering:.2f}",
+            "around rhythm and a 28-day level; 1 = chance alone",
+        ),
+        ("Drift of demand (SD ÷ mean)", f"{demand.rate_variation:.3f}", "what is slower than a stay"),
     )
 
 

@@ -123,6 +123,12 @@ def days(value: float) -> str:
     return f"{value:,.1f} days"
 
 
+def with_range(value: float, between: tuple[float, float]) -> str:
+    """Write an estimate with its range: "3.44 (3.25 to 3.64)"."""
+    digits = 2 if value < 10 else 1
+    return f"{value:,.{digits}f} ({between[0]:,.{digits}f} to {between[1]:,.{digits}f})"
+
+
 def plain(text: str) -> str:
     """Take the marks out of a name that a page would read as formatting."""
     for mark in "\\`*_{}[]<>#|~$:":

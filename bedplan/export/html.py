@@ -136,6 +136,7 @@ def drawing(case: WardCase, prefix: str, kind: str) -> str:
         data = charts.months_data(case.curve.at(case.ward.beds), needed, case.rule.most)
         spec, title = charts.MONTHS, f"{case.ward.name}: share of patients month by month"
     drawn = vl_convert.vegalite_to_svg(charts.printed(spec, data), vl_version=VEGA_LITE, allowed_base_urls=[])
-    drawn = _IDENTIFIER.sub(lambda found: f"{prefix}-{found.group(0)}", drawn)
+    numbers: dict[str, int] = {}  # the engine numbers its ids on from drawing to drawing
+    drawn = _IDENTIFIER.sub(lambda found: f"{prefix}-{numbers.setdefault(found.group(0), len(numbers))}", drawn)
     drawn = re.sub(r'(<svg [^>]*?)width="[\d.]+" height="[\d.]+"', r"\1", drawn, count=1)
     return drawn.replace("<svg ", f'<svg role="img" aria-label="{html.escape(title)}" ', 1)
