@@ -1,1 +1,17 @@
 """Reading, cleaning, describing and estimating: from a records file to a demand."""
+
+from bedplan.data.capacity import Capacity, read_capacity
+from bedplan.data.estimating import DemandEstimate, Uncertainty, estimate_demand
+from bedplan.data.records import Records, read_records
+from bedplan.data.report import IntakeReport
+
+__all__ = [
+    "Capacity",
+    "DemandEstimate",
+    "IntakeReport",
+    "Records",
+    "Uncertainty",
+    "estimate_demand",
+    "read_capacity",
+    "read_records",
+]

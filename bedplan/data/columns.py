@@ -1,0 +1,122 @@
+"""Headings as hospitals write them, and the plain names this program uses for them."""
+
+from __future__ import annotations
+
+import re
+import unicodedata
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Mapping
+
+
+def words(text: str) -> tuple[str, ...]:
+    """Return the words of a text."""
+    return tuple(text.split())
+
+
+# Canonical name -> headings met in practice, written as `plain` writes them. The order matters: the first
+# canonical name that claims a heading keeps it.
+STAY_HEADINGS: dict[str, tuple[str, ...]] = {
+    "patient_key": words(
+        "patientkey pseudoid patid patientid hospno hospitalno hospitalnumber mrn mrnhash patient patientno "
+        "patientnumber pseudonym pseudonymisedid personid personkey subjectid pid localpatientid"
+    ),
+    "spell_key": words(
+        "spellkey spell spellno spellid spellnumber admissionid admissionno encounter encounterid providerspellno "
+        "hospitalproviderspellno visitid visit csn accountno stayid episodeid"
+    ),
+    "ward": words(
+        "ward wardcode wardname location unit nursingunit clinicward wardid locationname bedward wardlocation "
+        "department wardunit careunit currentward"
+    ),
+    "start": words(
+        "start wardstart admdttm in from wardstaystart wardstaystartdatetime startdatetime starttime wardin "
+        "timein datein wardstartdatetime wardstaystartdttm arrival arrived intime transferin begin startdttm indttm "
+        "entered wardadmitted"
+    ),
+    "start_date": words("startdate wardstartdate wardstaystartdate indate fromdate arrivaldate wardstaydate"),
+    "start_time": words("wardstarttime wardstaystarttime timestart fromtime arrivaltime"),
+    "end": words(
+        "end wardend dischdttm out to wardstayend wardstayenddatetime enddatetime endtime wardout timeout "
+        "dateout wardenddatetime wardstayenddttm departure departed outtime transferout finish enddttm outdttm left"
+    ),
+    "end_date": words("enddate wardenddate wardstayenddate outdate todate departuredate"),
+    "end_time": words("wardendtime wardstayendtime timeend totime departuretime"),
+    "admitted": words("admitted admdate admissiondate admission admissiondatetime dateofadmission admissiondttm"),
+    "discharged": words("discharged disdate dischargedate discharge dischargedatetime dateofdischarge dischargedttm"),
+    "class": words("class patclass patientclass patientclassification classpat intendedclass"),
+    "method": words(
+        "method admissionmethod admmeth methodofadmission electivenonelective elecnonelec urgency admissiontype admtype"
+    ),
+    "specialty": words(
+        "specialty homespecialty spec tfc service mainspec mainspecialty treatmentfunction treatmentfunctioncode "
+        "speciality homespeciality specialtycode"
+    ),
+    "age_band": words("ageband agegrp agegroup agerange"),
+    "age": words("age ageatadmission ageyears"),
+    "ready": words(
+        "ready readydate drd mffd nctr dischargereadydate readyfordischarge medicallyfit datemedicallyready"
+    ),
+    "destination": words("destination disdest dischargedestination dischargeto"),
+    "bed": words("bed bedno bedid bay room bednumber"),
+    "planned_stay": words("plannedlos intendedlos plannedstay"),
+    "intended_management": words("intendedmgmt intman intendedmanagement"),
+}
+
+# Headings that carry a person's identity: never kept, whatever is in them.
+IDENTITY_WORDS = words(
+    "surname forename firstname lastname middlename patientname fullname familyname givenname maidenname dob "
+    "dateofbirth birthdate birthday birth postcode postalcode zip zipcode address addressline street town phone "
+    "telephone mobile tel email mail nhsnumber nhsno nhs ssn socialsecurity socialsecuritynumber nationalid "
+    "nationalinsurance nationalnumber idnumber passport chi chinumber hcn healthcard medicare medicareno insuranceno "
+    "nextofkin kin gp gpname gppractice consultantname consultant religion photo name title initials ninumber"
+)
+
+
+def plain(heading: str) -> str:
+    """Return a heading without case, spaces, accents or signs, so that spellings can be compared."""
+    decomposed = unicodedata.normalize("NFKD", heading)
+    return re.sub(r"[^a-z0-9]+", "", decomposed.encode("ascii", "ignore").decode().lower())
+
+
+def is_identity(heading: str) -> bool:
+    """Does this heading announce a name, a birth date, an address or a national number?"""
+    word = plain(heading)
+    return word in IDENTITY_WORDS or any(
+        part in word for part in ("surname", "forename", "dateofbirth", "postcode", "email", "nhsn", "telephone")
+    )
+
+
+def match_headings(
+    headings: Iterable[str],
+    known: Mapping[str, Iterable[str]],
+    chosen: Mapping[str, str] | None = None,
+) -> dict[str, str]:
+    """Which of these headings means what? Canonical name -> heading as written; the user's own choice comes first.
+
+    A heading answers one name and a name takes the first heading that fits; identity headings are never matched.
+    """
+    written = list(headings)
+    found: dict[str, str] = {name: heading for name, heading in (chosen or {}).items() if heading in written}
+    taken = set(found.values())
+    for name, words in known.items():
+        if name in found:
+            continue
+        wanted = [plain(name), *words]
+        ranked = sorted(
+            (wanted.index(plain(heading)), place)
+            for place, heading in enumerate(written)
+            if heading not in taken and plain(heading) in wanted
+        )
+        if ranked:
+            found[name] = written[ranked[0][1]]
+            taken.add(found[name])
+    return found
+
+
+def without_formula(text: str) -> str:
+    """Return text that no spreadsheet will take for a formula, without control characters or doubled spaces."""
+    printable = "".join(sign if unicodedata.category(sign)[0] != "C" else " " for sign in text.replace(" ", " "))
+    tidy = " ".join(printable.split())
+    return "'" + tidy if tidy[:1] in ("=", "+", "-", "@") else tidy

@@ -1,0 +1,178 @@
+"""Dates and times as hospitals write them, read into whole seconds since 1970 in the hospital's own clock."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+import pyarrow as pa
+import pyarrow.compute as pc
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+MISSING = np.iinfo(np.int64).min  # a blank cell
+UNREADABLE = MISSING + 1  # something is written there, but no date
+DAY_SECONDS = 86_400
+MONTHS = ("jan", "feb", "mar", "apr", "may", "jun", "jul", "aug", "sep", "oct", "nov", "dec")
+BLANK_WORDS = ("", "null", "none", "na", "n/a", "nan", "nat", "-", "--", ".", "?", "still in", "open", "current")
+
+CLOCK = (
+    r"(?:[T ]+(?P<hour>\d{1,2})[:.h](?P<minute>\d{2})(?:[:.](?P<second>\d{2})(?:[.,]\d+)?)?"
+    r"\s*(?P<half>[AaPp])?\.?[Mm]?\.?\s*(?P<offset>Z|[+-]\d{2}:?\d{2})?)?"
+)
+ISO = r"^(?P<year>\d{4})[-/.]?(?P<month>\d{2})[-/.]?(?P<day>\d{2})" + CLOCK + "$"
+NUMBERS = r"^(?P<first>\d{1,2})[/.\- ](?P<second_part>\d{1,2})[/.\- ](?P<year>\d{4}|\d{2})" + CLOCK + "$"
+NAMED = (
+    r"^(?:[A-Za-z]{2,9}\.?,? +)?(?P<day>\d{1,2})[-/ .]*(?P<name>[A-Za-z]{3})[A-Za-z]*[-/ .,]*(?P<year>\d{4}|\d{2})"
+    + CLOCK
+    + "$"
+)
+NAME_FIRST = r"^(?P<name>[A-Za-z]{3})[A-Za-z]*[-/ .]*(?P<day>\d{1,2})(?:st|nd|rd|th)?,? +(?P<year>\d{4})" + CLOCK + "$"
+SERIAL = r"^(?P<serial>[2-6]\d{4}(?:[.,]\d+)?)$"
+
+
+@dataclass(frozen=True, slots=True)
+class TimesRead:
+    """One column of times: ``seconds`` (n,) with MISSING and UNREADABLE marked, and how they were written."""
+
+    seconds: NDArray[np.int64]
+    serial: NDArray[np.bool_]
+    had_offset: bool
+    day_first_only: int
+    month_first_only: int
+    either_order: int
+    examples: tuple[str, ...] = ()
+
+    @property
+    def order_is_open(self) -> bool:
+        """Can day and month be told apart by the file alone? True = no, somebody must say."""
+        mixed = self.day_first_only > 0 and self.month_first_only > 0
+        return mixed or (self.either_order > 0 and not self.day_first_only and not self.month_first_only)
+
+
+def seconds_of(
+    year: NDArray[np.int64], month: NDArray[np.int64], day: NDArray[np.int64], clock_seconds: NDArray[np.int64]
+) -> NDArray[np.int64]:
+    """Return seconds since 1970 of calendar dates, UNREADABLE where the date is on no calendar."""
+    possible = (month >= 1) & (month <= 12) & (day >= 1) & (year >= 1) & (year <= 9998) & (clock_seconds >= 0)
+    safe_year, safe_month = np.where(possible, year, 2000), np.where(possible, month, 1)
+    months = ((safe_year - 1970) * 12 + safe_month - 1).astype("datetime64[M]")
+    first = months.astype("datetime64[D]").astype(np.int64)
+    length = (months + 1).astype("datetime64[D]").astype(np.int64) - first
+    possible &= day <= length
+    return np.where(possible, (first + day - 1) * DAY_SECONDS + clock_seconds, UNREADABLE)
+
+
+def read_times(column: pa.ChunkedArray | pa.Array, date_order: str | None = None) -> TimesRead:
+    """When was it? One column of text read into seconds; ``date_order`` is ``"day first"``, ``"month first"`` or None.
+
+    Times with an offset keep the clock shown (the hospital's local time), the offset itself is not added.
+    """
+    column = pa.chunked_array(column).combine_chunks() if isinstance(column, pa.ChunkedArray) else column
+    column = column.combine_chunks() if isinstance(column, pa.ChunkedArray) else column
+    fast = _fast_iso(column)
+    if fast is not None:
+        return TimesRead(fast, np.zeros(fast.size, bool), False, 0, 0, 0)
+    return _slow(column, date_order)
+
+
+def _fast_iso(column: pa.Array) -> NDArray[np.int64] | None:
+    """Read a column that is ISO throughout (blanks allowed) in one pass, or return None."""
+    try:
+        stamps = pc.cast(column, pa.timestamp("s"))
+    except pa.ArrowInvalid:
+        return None
+    missing = pc.is_null(stamps).to_numpy(zero_copy_only=False)
+    seconds = pc.fill_null(pc.cast(stamps, pa.int64()), 0).to_numpy(zero_copy_only=False).copy()
+    seconds[missing] = MISSING
+    return seconds
+
+
+def _slow(column: pa.Array, date_order: str | None) -> TimesRead:
+    """Read a column row by row's pattern: each pattern takes the rows that fit it."""
+    text = pc.utf8_trim_whitespace(pc.fill_null(column, ""))
+    size = len(text)
+    seconds = np.full(size, UNREADABLE, dtype=np.int64)
+    blank = pc.is_in(pc.utf8_lower(text), value_set=pa.array(BLANK_WORDS)).to_numpy(zero_copy_only=False)
+    seconds[blank] = MISSING
+    left = ~blank
+    had_offset, serial, counts = False, np.zeros(size, bool), (0, 0, 0)
+    examples: tuple[str, ...] = ()
+    for pattern in (ISO, NUMBERS, NAMED, NAME_FIRST, SERIAL):
+        rows = np.flatnonzero(left)
+        if not rows.size:
+            break
+        parts = pc.extract_regex(text.take(pa.array(rows)), pattern)
+        fits = pc.is_valid(parts).to_numpy(zero_copy_only=False)
+        if not fits.any():
+            continue
+        rows, parts = rows[fits], parts.filter(pa.array(fits))
+        left[rows] = False
+        if pattern is SERIAL:
+            seconds[rows], serial[rows] = _from_serial(parts.field("serial")), True
+            continue
+        had_offset |= pc.any(pc.not_equal(parts.field("offset"), "")).as_py() or False
+        if pattern is NUMBERS:
+            seconds[rows], counts, unsure = _from_numbers(parts, date_order)
+            examples = tuple(text.take(pa.array(rows[unsure][:3])).to_pylist())
+        else:
+            seconds[rows] = _from_names(parts) if pattern is not ISO else _from_iso(parts)
+    return TimesRead(seconds, serial, had_offset, *counts, examples)
+
+
+def _whole(strings: pa.Array) -> NDArray[np.int64]:
+    """Return digits as whole numbers, 0 where nothing is written."""
+    filled = pc.if_else(pc.equal(strings, ""), "0", strings)
+    return pc.cast(filled, pa.int64()).to_numpy(zero_copy_only=False)
+
+
+def _clock(parts: pa.StructArray) -> NDArray[np.int64]:
+    """Return seconds after midnight, −1 where the clock shows no such time; 24:00 is the day's end."""
+    hour, minute, second = (_whole(parts.field(name)) for name in ("hour", "minute", "second"))
+    half = pc.utf8_lower(parts.field("half"))
+    afternoon = pc.equal(half, "p").to_numpy(zero_copy_only=False)
+    morning = pc.equal(half, "a").to_numpy(zero_copy_only=False)
+    possible = (hour <= 24) & (minute < 60) & (second < 60) & ~((afternoon | morning) & ((hour > 12) | (hour < 1)))
+    hour = np.where(afternoon & (hour < 12), hour + 12, np.where(morning & (hour == 12), 0, hour))
+    seconds = hour * 3600 + minute * 60 + second
+    return np.where(possible & (seconds <= DAY_SECONDS), seconds, -1)
+
+
+def _four_digits(year: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return years with their century: 00–49 are 2000–2049, 50–99 are 1950–1999."""
+    return np.where(year < 50, year + 2000, np.where(year < 100, year + 1900, year))
+
+
+def _from_iso(parts: pa.StructArray) -> NDArray[np.int64]:
+    year, month, day = (_whole(parts.field(name)) for name in ("year", "month", "day"))
+    return seconds_of(year, month, day, _clock(parts))
+
+
+def _from_names(parts: pa.StructArray) -> NDArray[np.int64]:
+    found = pc.index_in(pc.utf8_lower(parts.field("name")), value_set=pa.array(MONTHS))
+    month = pc.fill_null(pc.cast(found, pa.int64()), -1).to_numpy(zero_copy_only=False) + 1
+    year, day = _four_digits(_whole(parts.field("year"))), _whole(parts.field("day"))
+    return seconds_of(year, month, day, _clock(parts))
+
+
+def _from_numbers(
+    parts: pa.StructArray, date_order: str | None
+) -> tuple[NDArray[np.int64], tuple[int, int, int], NDArray[np.bool_]]:
+    """Read dates of two small numbers and a year; count which orders they allow."""
+    first, second = _whole(parts.field("first")), _whole(parts.field("second_part"))
+    year, clock = _four_digits(_whole(parts.field("year"))), _clock(parts)
+    day_first_only, month_first_only = (first > 12) & (second <= 12), (second > 12) & (first <= 12)
+    either = (first <= 12) & (second <= 12) & (first != second)
+    counts = (int(day_first_only.sum()), int(month_first_only.sum()), int(either.sum()))
+    month_first = date_order == "month first" or (date_order is None and counts[1] > 0 and counts[0] == 0)
+    day, month = (second, first) if month_first else (first, second)
+    return seconds_of(year, month, day, clock), counts, either
+
+
+def _from_serial(serial: pa.Array) -> NDArray[np.int64]:
+    """Read spreadsheet day numbers: days since 30 December 1899, to the nearest minute."""
+    days = pc.cast(pc.replace_substring(serial, ",", "."), pa.float64()).to_numpy(zero_copy_only=False)
+    minutes = np.round((days - 25_569) * 1_440).astype(np.int64)
+    return minutes * 60

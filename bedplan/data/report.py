@@ -1,0 +1,72 @@
+"""What was done to the rows of a file, counted so that nothing can go missing."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Literal
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+REPAIRED, SET_ASIDE = "repaired", "set aside"
+
+
+@dataclass(frozen=True, slots=True)
+class Rule:
+    """One kind of dirt: what happens to a row that has it, and the reason that is printed."""
+
+    outcome: Literal["repaired", "set aside"]
+    sentence: str
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """How many rows met one rule, and the bed-days they hold as recorded."""
+
+    outcome: str
+    sentence: str
+    rows: int
+    bed_days: float
+
+
+@dataclass(frozen=True, slots=True)
+class IntakeReport:
+    """What became of every row? ``rows_in == used + repaired + set_aside``, always.
+
+    *Used* rows count as they stand, *repaired* rows count after the change named, *set aside* rows do not count.
+    Bed-days balance too: ``bed_days_in + bed_days_added == bed_days_used + bed_days_set_aside``, where
+    ``bed_days_added`` is what the repairs added (below 0: took away).
+
+    Checked by: tests/data/test_records.py
+    """
+
+    rows_in: int
+    used: int
+    repaired: int
+    set_aside: int
+    findings: tuple[Finding, ...] = ()
+    bed_days_in: float = 0.0
+    bed_days_added: float = 0.0
+    bed_days_used: float = 0.0
+    bed_days_set_aside: float = 0.0
+    dropped_columns: tuple[str, ...] = ()
+    notes: tuple[str, ...] = ()
+
+    @property
+    def reasons(self) -> Mapping[str, int]:
+        """Why were rows repaired or set aside? Reason → rows."""
+        return MappingProxyType({finding.sentence: finding.rows for finding in self.findings})
+
+    @property
+    def bed_days(self) -> Mapping[str, float]:
+        """How many bed-days do those rows hold, as recorded? Reason → bed-days."""
+        return MappingProxyType({finding.sentence: finding.bed_days for finding in self.findings})
+
+    @property
+    def summary(self) -> str:
+        """What would I say about this file in one sentence?"""
+        return (
+            f"Of {self.rows_in:,} rows, {self.used:,} are used as they stand, {self.repaired:,} after a repair and "
+            f"{self.set_aside:,} ({self.bed_days_set_aside:,.0f} bed-days) are set aside."
+        )

@@ -1,0 +1,123 @@
+"""The rows of a stay file while they are being cleaned: plain arrays, and one reason at most for each row."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE
+from bedplan.data.report import REPAIRED, SET_ASIDE, Finding, Rule
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+OPEN_END = np.int64(2**33)  # the year 2242: stands for "still in" while sorting
+SPAN = np.int64(2**34)  # more seconds than any date read here: keeps patients apart in one sorted number
+
+# Every rule in one place, in the order in which the report prints them.
+RULES: dict[str, Rule] = {
+    "misfit": Rule(SET_ASIDE, "Not a ward stay: a title, total, footer or a line with another number of cells"),
+    "no ward": Rule(SET_ASIDE, "No ward is named"),
+    "no start": Rule(SET_ASIDE, "The start is missing"),
+    "start unreadable": Rule(SET_ASIDE, "The start can't be read as a date"),
+    "end unreadable": Rule(SET_ASIDE, "The end can't be read as a date"),
+    "unlikely date": Rule(SET_ASIDE, "A date lies in the future or before 1990"),
+    "test patient": Rule(SET_ASIDE, "A test patient, or an age no person reaches"),
+    "negative": Rule(SET_ASIDE, "The stay ends before it starts"),
+    "duplicate": Rule(SET_ASIDE, "The same stay is in the file twice"),
+    "resubmitted": Rule(SET_ASIDE, "An earlier version of a stay that was sent again with another end"),
+    "zero stay": Rule(SET_ASIDE, "The stay ends in the minute it starts"),
+    "forgotten, aside": Rule(
+        SET_ASIDE, "No end, and far longer ago than stays on this ward last: a forgotten discharge"
+    ),
+    "too short": Rule(SET_ASIDE, "Less than 30 minutes on the ward, with no stay before or after to count it in"),
+    "nested": Rule(SET_ASIDE, "Inside another stay of the same patient, who can't use two beds"),
+    "virtual": Rule(SET_ASIDE, "A virtual ward or care at home: no hospital bed is used"),
+    "cot": Rule(SET_ASIDE, "A cot for a well baby: counted apart from beds"),
+    "delivery": Rule(SET_ASIDE, "A delivery suite: counted apart from ward beds"),
+    "regular": Rule(SET_ASIDE, "A regular day or night attender: counted apart"),
+    "procedure place": Rule(SET_ASIDE, "A place without ward beds, such as a theatre, a lounge or X-ray"),
+    "waiting place": Rule(SET_ASIDE, "A waiting place, such as an emergency department: not a ward"),
+    "leave": Rule(SET_ASIDE, "Home leave: the patient was not in a bed"),
+    "ward spelling": Rule(REPAIRED, "The ward's name was written with other spaces or capitals"),
+    "ward renamed": Rule(REPAIRED, "The ward's name was changed to the one you chose"),
+    "serial date": Rule(REPAIRED, "A date stood as a spreadsheet's day number"),
+    "swapped": Rule(REPAIRED, "Day and month were the wrong way round"),
+    "forgotten, closed": Rule(REPAIRED, "No end, but the patient went on: ended when the next stay starts"),
+    "joined": Rule(REPAIRED, "Went on in the same ward: joined to one stay"),
+    "bridged": Rule(REPAIRED, "Up to an hour before the next stay of the same patient: ended when that one starts"),
+    "passed through": Rule(REPAIRED, "Less than 30 minutes on the way: counted in the stay before or after"),
+    "overlap": Rule(REPAIRED, "Overlapped the patient's next stay: ended when that one starts"),
+}
+CODES = {key: np.uint8(place + 1) for place, key in enumerate(RULES)}
+
+
+@dataclass(slots=True)
+class Rows:
+    """One row a line of the file, in file order. ``-1`` = not known; ``MISSING`` end = still in.
+
+    ``start`` and ``end`` are seconds; ``first_start``, ``first_end`` keep them as recorded. ``reason`` holds 0 or a
+    code of :data:`CODES`; ``aside`` and ``merged`` rows give no stay of their own.
+    """
+
+    patient: NDArray[np.int64]
+    spell: NDArray[np.int64]
+    ward: NDArray[np.int64]
+    start: NDArray[np.int64]
+    end: NDArray[np.int64]
+    first_start: NDArray[np.int64] = field(init=False)
+    first_end: NDArray[np.int64] = field(init=False)
+    reason: NDArray[np.uint8] = field(init=False)
+    aside: NDArray[np.bool_] = field(init=False)
+    merged: NDArray[np.bool_] = field(init=False)
+
+    def __post_init__(self) -> None:
+        """Start with every row used as it stands."""
+        self.first_start, self.first_end = self.start.copy(), self.end.copy()
+        self.reason = np.zeros(self.start.size, dtype=np.uint8)
+        self.aside = np.zeros(self.start.size, dtype=bool)
+        self.merged = np.zeros(self.start.size, dtype=bool)
+
+    @property
+    def live(self) -> NDArray[np.bool_]:
+        """Rows that still stand for a stay of their own."""
+        return ~(self.aside | self.merged)
+
+    @property
+    def is_open(self) -> NDArray[np.bool_]:
+        """Rows without an end."""
+        return self.end == MISSING
+
+    def mark(self, which: NDArray, key: str) -> None:
+        """Apply one rule to rows (mask or positions). Setting aside beats a repair; else the first reason stays."""
+        rows = np.flatnonzero(which) if which.dtype == bool else which
+        rows = rows[~self.aside[rows]]
+        if RULES[key].outcome == SET_ASIDE:
+            self.aside[rows] = True
+            self.reason[rows] = CODES[key]
+        else:
+            fresh = rows[self.reason[rows] == 0]
+            self.reason[fresh] = CODES[key]
+
+    def until(self, until: int) -> NDArray[np.int64]:
+        """Return ends with unfinished stays running to ``until``."""
+        return np.where(self.is_open, np.maximum(until, self.start), self.end)
+
+    def recorded_bed_days(self, until: int) -> NDArray[np.float64]:
+        """Return the bed-days of each row as recorded, 0 where the record gives none."""
+        end = np.where(self.first_end == MISSING, until, self.first_end)
+        known = (self.first_start > UNREADABLE) & (end > UNREADABLE) & (end >= self.first_start)
+        known &= (end <= until) & (self.first_start > 0)
+        return np.where(known, end - np.where(known, self.first_start, 0), 0) / DAY_SECONDS
+
+    def findings(self, bed_days: NDArray[np.float64]) -> tuple[Finding, ...]:
+        """Return how many rows met each rule, and their recorded bed-days."""
+        counts = np.bincount(self.reason, minlength=len(RULES) + 1)
+        days = np.bincount(self.reason, weights=bed_days, minlength=len(RULES) + 1)
+        return tuple(
+            Finding(rule.outcome, rule.sentence, int(counts[CODES[key]]), float(days[CODES[key]]))
+            for key, rule in RULES.items()
+            if counts[CODES[key]]
+        )

@@ -1,0 +1,166 @@
+"""Rules about a patient's stays in a row: duplicates, forgotten ends, moves, pass-throughs, overlaps."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bedplan.data.dates import DAY_SECONDS, MISSING
+from bedplan.data.rows import OPEN_END, SPAN
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from bedplan.data.rows import Rows
+
+SAME_WARD_GAP_SECONDS = 5 * 60
+BRIDGED_GAP_SECONDS = 60 * 60
+PASS_THROUGH_SECONDS = 30 * 60
+
+
+def in_order(rows: Rows) -> NDArray[np.int64]:
+    """Return the live rows by patient, then start; of two that start together the one with the later end first."""
+    live = np.flatnonzero(rows.live)
+    place = rows.patient[live] * SPAN + rows.start[live]
+    ranks = np.argsort(place, kind="stable")
+    order, place = live[ranks], place[ranks]
+    tied = np.zeros(order.size, dtype=bool)
+    tied[1:] = place[1:] == place[:-1]
+    if tied.any():
+        tied[:-1] |= tied[1:]
+        together = order[tied]
+        order[tied] = together[np.lexsort((-_ends(rows, together), place[tied]))]
+    return order
+
+
+def _still(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return the order without rows that were set aside or merged since."""
+    return order[rows.live[order]]
+
+
+def _ends(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return ends with unfinished stays last."""
+    end = rows.end[order]
+    return np.where(end == MISSING, OPEN_END, end)
+
+
+def drop_repeats(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Keep one of the rows that show the same patient starting on the same ward at the same time.
+
+    The row sent last is kept when only one has an end or the last is the longest; else the longest.
+    """
+    patient, start = rows.patient[order], rows.start[order]
+    new_time = np.ones(order.size, dtype=bool)
+    new_time[1:] = (patient[1:] != patient[:-1]) | (start[1:] != start[:-1])
+    if new_time.all():
+        return order
+    crowded = ~new_time
+    crowded[:-1] |= ~new_time[1:]
+    busy = order[crowded]
+    finished = ~rows.is_open[busy]
+    ranked = busy[
+        np.lexsort(
+            (
+                -busy,
+                -np.where(finished, rows.end[busy], 0),
+                ~finished,
+                rows.ward[busy],
+                rows.start[busy],
+                rows.patient[busy],
+            )
+        )
+    ]
+    same = np.zeros(ranked.size, dtype=bool)
+    same[1:] = (
+        (rows.patient[ranked[1:]] == rows.patient[ranked[:-1]])
+        & (rows.start[ranked[1:]] == rows.start[ranked[:-1]])
+        & (rows.ward[ranked[1:]] == rows.ward[ranked[:-1]])
+    )
+    head = np.maximum.accumulate(np.where(same, 0, np.arange(ranked.size)))
+    equal = same & (rows.end[ranked] == rows.end[ranked[head]])
+    rows.mark(ranked[equal], "duplicate")
+    rows.mark(ranked[same & ~equal], "resubmitted")
+    return _still(rows, order)
+
+
+def close_forgotten(rows: Rows, order: NDArray[np.int64], longest: NDArray[np.int64], until: int) -> NDArray[np.int64]:
+    """End an unfinished stay where the patient's next one starts; set it aside when it is far too long ago."""
+    patient = rows.patient[order]
+    followed = np.zeros(order.size, dtype=bool)
+    followed[:-1] = patient[1:] == patient[:-1]
+    is_open = rows.is_open[order]
+    close = np.flatnonzero(followed & is_open)
+    rows.end[order[close]] = rows.start[order[close + 1]]
+    rows.mark(order[close], "forgotten, closed")
+    left = order[is_open & ~followed]
+    rows.mark(left[until - rows.start[left] > longest[rows.ward[left]]], "forgotten, aside")
+    return _still(rows, order)
+
+
+def join_same_ward(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Join stays that go on in the same ward within five minutes, or overlap there, to one ward stay."""
+    patient, ward, end = rows.patient[order], rows.ward[order], _ends(rows, order)
+    same = (patient[1:] == patient[:-1]) & (ward[1:] == ward[:-1])
+    if not same.any():
+        return order
+    goes_on = np.zeros(order.size, dtype=bool)
+    run = np.concatenate(([0], np.cumsum(~same)))
+    reach = np.maximum.accumulate(end + run * SPAN) - run * SPAN
+    goes_on[1:] = same & (rows.start[order[1:]] - reach[:-1] <= SAME_WARD_GAP_SECONDS)
+    heads = np.flatnonzero(~goes_on)
+    furthest = np.maximum.reduceat(end, heads)
+    grown = np.diff(np.append(heads, order.size)) > 1
+    rows.end[order[heads[grown]]] = np.where(furthest[grown] == OPEN_END, MISSING, furthest[grown])
+    rows.mark(order[goes_on], "joined")
+    rows.merged[order[goes_on]] = True
+    return _still(rows, order)
+
+
+def merge_pass_throughs(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Count less than 30 minutes on a ward in the patient's next stay, else the one before, else set it aside."""
+    start, end, patient = rows.start[order], _ends(rows, order), rows.patient[order]
+    short = end - start < PASS_THROUGH_SECONDS
+    if not short.any():
+        return order
+    near = np.zeros(order.size + 1, dtype=bool)
+    near[1:-1] = (patient[1:] == patient[:-1]) & (start[1:] - end[:-1] <= BRIDGED_GAP_SECONDS)
+    into_next = short & near[1:] & ~np.append(short[1:], False)
+    into_last = short & ~into_next & near[:-1] & ~np.insert(short[:-1], 0, False)
+    place = np.flatnonzero(into_next)
+    rows.start[order[place + 1]] = np.minimum(rows.start[order[place + 1]], start[place])
+    place = np.flatnonzero(into_last)
+    longer = np.maximum(_ends(rows, order[place - 1]), end[place])
+    rows.end[order[place - 1]] = np.where(longer == OPEN_END, MISSING, longer)
+    merged = order[into_next | into_last]
+    rows.mark(merged, "passed through")
+    rows.merged[merged] = True
+    rows.mark(order[short & ~into_next & ~into_last], "too short")
+    return _still(rows, order)
+
+
+def part_overlaps(rows: Rows, order: NDArray[np.int64]) -> tuple[NDArray[np.int64], int]:
+    """Give each patient one bed at a time; returns the order and how many overlaps were longer than 12 hours."""
+    order = _drop_nested(rows, order)
+    patient, start, end = rows.patient[order], rows.start[order], _ends(rows, order)
+    gap = start[1:] - end[:-1]
+    same = patient[1:] == patient[:-1]
+    cut = np.flatnonzero(same & (gap < 0))
+    rows.end[order[cut]] = rows.start[order[cut + 1]]
+    rows.mark(order[cut], "overlap")
+    bridge = np.flatnonzero(same & (gap > 0) & (gap <= BRIDGED_GAP_SECONDS))
+    rows.end[order[bridge]] = rows.start[order[bridge + 1]]
+    rows.mark(order[bridge], "bridged")
+    return order, int((gap[cut] < -DAY_SECONDS // 2).sum())
+
+
+def _drop_nested(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Set aside stays that lie wholly inside an earlier stay of the same patient."""
+    patient, end = rows.patient[order], _ends(rows, order)
+    rank = np.concatenate(([0], np.cumsum(patient[1:] != patient[:-1])))
+    shift = rank * SPAN
+    reach = np.maximum.accumulate(end + shift) - shift
+    nested = np.zeros(order.size, dtype=bool)
+    nested[1:] = (patient[1:] == patient[:-1]) & (end[1:] <= reach[:-1])
+    rows.mark(order[nested], "nested")
+    return _still(rows, order)
