@@ -1,10 +1,13 @@
 """Rules, decisions and comparisons over bed curves: from "what happens at each bed count" to "how many, and why"."""
 
+from bedplan.decision.changing_beds import BedChanges, Closure
 from bedplan.decision.comparing import WardComparison, compare_wards, patients_per_year, spared_by_next_bed
 from bedplan.decision.rules import Decision, OccupancyLimit, OverfullLimit, Rule, TurnAwayLimit, WaitLimit, decide
 from bedplan.decision.ward import Ward
 
 __all__ = [
+    "BedChanges",
+    "Closure",
     "Decision",
     "OccupancyLimit",
     "OverfullLimit",

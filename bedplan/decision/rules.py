@@ -36,7 +36,9 @@ class Rule(Protocol):
 
 def _checked_share(share: float, name: str) -> None:
     if not 0 < share < 1:
-        raise ImpossibleFigure(f"A {name} of {share:g} is not possible: give a share above 0 and below 1, such as 0.05.")
+        raise ImpossibleFigure(
+            f"A {name} of {share:g} is not possible: give a share above 0 and below 1, such as 0.05."
+        )
 
 
 def _checked_within(within: str) -> None:

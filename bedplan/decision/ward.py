@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
+from bedplan.decision.changing_beds import NO_BED_CHANGES, BedChanges, with_changing_beds
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import MODELS, BedCurve, Demand, average_beds
 
@@ -25,6 +26,8 @@ class Ward:
     ``beds`` are today's staffed beds; ``when_full`` says what its patients do when it is full: ``"leaves"`` (they go
     elsewhere) or ``"waits"`` (they wait, or are placed elsewhere). ``admissions_per_year`` are the recorded ones, for
     the average formula; without them the demand's own arrivals are used. ``notes`` go into the document.
+    ``bed_changes``: closures, winter bays, closed weekdays, beds nobody may be put in; by default none. Every bed count
+    of the ward, today's and each on its curves, is the count those changes start from.
 
     Raises:
         ImpossibleFigure: beds not whole or outside 0–2,000, negative admissions.
@@ -38,15 +41,21 @@ class Ward:
     when_full: WhenWardIsFull = "leaves"
     admissions_per_year: float | None = None
     notes: tuple[str, ...] = ()
+    bed_changes: BedChanges = NO_BED_CHANGES
 
     def __post_init__(self) -> None:
         """Check every figure once, here."""
-        if self.beds != int(self.beds) or not 0 <= self.beds <= MOST_WARD_BEDS:
-            raise ImpossibleFigure(f"{self.beds:g} beds is not possible: give a whole number from 0 to {MOST_WARD_BEDS:,}.")
+        if not (0 <= self.beds <= MOST_WARD_BEDS and self.beds == int(self.beds)):
+            raise ImpossibleFigure(
+                f"{self.beds:g} beds is not possible: give a whole number from 0 to {MOST_WARD_BEDS:,}."
+            )
         if self.when_full not in ("leaves", "waits"):
-            raise ImpossibleFigure(f"{self.when_full!r} is not an answer: patients of a full ward either 'leaves' or 'waits'.")
-        if self.admissions_per_year is not None and not self.admissions_per_year >= 0:
+            raise ImpossibleFigure(
+                f"{self.when_full!r} is not an answer: patients of a full ward either 'leaves' or 'waits'."
+            )
+        if self.admissions_per_year is not None and not 0 <= self.admissions_per_year < math.inf:
             raise ImpossibleFigure(f"{self.admissions_per_year:g} admissions a year is not possible: give 0 or more.")
+        object.__setattr__(self, "beds", int(self.beds))
 
     @property
     def model(self) -> str:
@@ -55,10 +64,14 @@ class Ward:
 
     @property
     def bed_counts(self) -> NDArray[np.int64]:
-        """Every bed count worth drawing: from none to well past today's beds and the busiest month's need."""
+        """Every bed count worth drawing: from none to well past today's beds and the busiest month's need.
+
+        Beds that closures or single-sex bays take out of use come on top, so that a rule can still be met.
+        """
         peak = self.demand.offered_load * max(self.demand.month_factors)
         swing = math.sqrt(self.demand.clustering + peak * self.demand.rate_variation**2)
-        most = max(math.ceil(peak + 5.0 * swing * math.sqrt(peak) + 8), self.beds + 5)
+        most = math.ceil(peak + 5.0 * swing * math.sqrt(peak) + 8) + self.bed_changes.most_out_of_use
+        most = max(most, self.beds + 5)
         return np.arange(min(most, 20_000) + 1)
 
     @property
@@ -71,5 +84,11 @@ class Ward:
         return math.ceil(average_beds(admissions, self.demand.offered_load / arrivals) - 1e-9)
 
     def curve(self, model: str | None = None) -> BedCurve:
-        """What does a model (by default the ward's own) say at every bed count worth drawing?"""
-        return MODELS[model or self.model](self.demand, self.bed_counts)
+        """What does a model (by default the ward's own) say at every bed count worth drawing?
+
+        Closures, winter bays and the like are in it: each count is what those changes start from.
+        """
+        beds = self.bed_counts
+        more = max(0, *self.bed_changes.extra_by_month)
+        curve = MODELS[model or self.model](self.demand, np.arange(beds[-1] + more + 1))
+        return with_changing_beds(curve, self.bed_changes, beds)
