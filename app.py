@@ -5,7 +5,7 @@ import streamlit as st
 from bedplan.pages import startup
 
 assert startup.LOADED  # noqa: S101  imported for what it does once a process
-st.set_page_config(page_title="bedplan", page_icon=":material/bed:", layout="wide")
+st.set_page_config(page_title="bedplan", layout="wide")
 st.navigation(
     [
         st.Page("bedplan/pages/records.py", title="Records", url_path="records"),

@@ -36,15 +36,14 @@ DASHES = {
     "everyone finds a bed": [10, 3, 2, 3],
     "patients wait": [10, 3],
 }
-# the share at which each line's name stands, so that names never share a height
-LABEL_SHARES = {
-    "patients wait": 0.36,
-    "everyone finds a bed": 0.30,
-    "with seasons": 0.235,
-    "steady demand": 0.17,
-    "average formula": 0.105,
+# how high up the picture each line's name stands, so that names never share a height
+NAME_HEIGHTS = {
+    "patients wait": 0.91,
+    "everyone finds a bed": 0.77,
+    "with seasons": 0.62,
+    "steady demand": 0.47,
+    "average formula": 0.32,
 }
-HIGHEST_SHARE = 0.4
 MARKS = {"today": [1, 0], "average formula": [2, 3], "by the limit": [8, 3]}
 GREY = "#767676"
 CONFIG: Spec = {
@@ -68,7 +67,7 @@ _SHARE = alt.Y(
     "share:Q",
     title=None,
     axis=alt.Axis(format=".0%", tickCount=5, grid=True, gridOpacity=0.3, domain=False, ticks=False),
-    scale=alt.Scale(domain=[0, HIGHEST_SHARE]),
+    scale=alt.Scale(zero=True, nice=False),
 )
 _LINE = alt.Color("line:N", scale=_scale(COLOURS), legend=None)
 
@@ -106,7 +105,9 @@ def _limit() -> list[alt.Chart]:
     limit = alt.Chart(alt.NamedData("limit"))
     return [
         limit.mark_rule(strokeWidth=1.5, color=GREY).encode(y=_SHARE),
-        limit.mark_text(align="left", dy=-8, color=GREY, fontSize=14).encode(x=alt.value(4), y=_SHARE, text="label:N"),
+        limit.mark_text(align="right", dy=-8, color=GREY, fontSize=14).encode(
+            x=alt.value("width"), y=_SHARE, text="label:N"
+        ),
     ]
 
 
@@ -158,7 +159,10 @@ def _months() -> Spec:
         .mark_text(align="left", dx=8, fontSize=14)
         .encode(x=month, y=share, text="label:N", color=colour)
     )
-    rule = alt.Chart(alt.NamedData("limit")).mark_rule(strokeWidth=1.5, color=GREY).encode(y=share)
+    limit = alt.Chart(alt.NamedData("limit"))
+    rule = limit.mark_rule(strokeWidth=1.5, color=GREY).encode(
+        x=alt.X("from:O", sort=list(wording.MONTHS_SHORT)), x2="to:O", y=share
+    )
     return alt.layer(rule, line, point, names).properties(height=200).to_dict() | {"config": CONFIG}
 
 
@@ -171,41 +175,44 @@ def curve_data(
 ) -> Datasets:
     """Which datasets draw these curves? ``own`` names the ward's own model; ``marked`` a bed count for each mark.
 
-    The window runs from where even the own line is past the top of the picture to where it is near nothing, and
-    always holds the marked counts.
+    The picture is high enough for the share at every marked count, starts where the first line can be named and ends
+    where the own line is near nothing.
     """
-    low, high = _window(
-        next(curve for curve in curves if curve.model == own), [count for count in marked.values() if count is not None]
-    )
-    rows, names = [], []
-    for curve in curves:
-        line = wording.LINES[curve.model]
-        shown = (curve.beds >= low) & (curve.beds <= high)
-        beds, share = curve.beds[shown], curve.turn_away_probability[shown]
-        rows.append(
-            pd.DataFrame({"beds": beds, "share": share, "line": line, "own": "own" if curve.model == own else "other"})
-        )
-        at = float(np.interp(-LABEL_SHARES[line], -share, beds))
-        names.append({"line": line, "beds": at, "share": LABEL_SHARES[line], "end": float(high)})
+    counts = [count for count in marked.values() if count is not None]
+    mine = next(curve for curve in curves if curve.model == own)
+    top = min(1.0, max(0.4, 1.15 * mine.at(min(counts)).turn_away_probability))
+    names = pd.DataFrame([_named(curve, top) for curve in curves])
+    last = int(mine.beds[np.argmax(mine.turn_away_probability <= 0.002)] or mine.beds[-1])
+    low = max(0, min(int(names["beds"].min()), min(counts) - 1))
+    high = min(int(mine.beds[-1]), max([last, low + 8, max(counts) + 3]))
+    rows = [_shown(curve, own, (low, high), top) for curve in curves]
     marks = [
         {"mark": mark, "beds": count, "label": f"{mark} {count}"} for mark, count in marked.items() if count is not None
     ]
     return {
         "curve": pd.concat(rows, ignore_index=True),
-        "names": pd.DataFrame(names),
-        "marks": pd.DataFrame(marks, columns=["mark", "beds", "label"]),
-        "limit": pd.DataFrame([{"share": min(limit[0], HIGHEST_SHARE), "label": limit[1]}]),
+        "names": names.assign(end=float(high)),
+        "marks": pd.DataFrame(marks),
+        "limit": pd.DataFrame([{"share": min(limit[0], top), "label": limit[1]}]),
     }
 
 
-def _window(curve: BedCurve, marked: Sequence[int]) -> tuple[int, int]:
-    """Return the first and last bed count worth drawing."""
-    share = curve.turn_away_probability
-    first = int(curve.beds[np.argmax(share <= HIGHEST_SHARE)]) - 1
-    last = int(curve.beds[np.argmax(share <= 0.002)]) if (share <= 0.002).any() else int(curve.beds[-1])
-    low = max(0, min([first, *(count - 2 for count in marked)]))
-    high = min(int(curve.beds[-1]), max([last, low + 8, *(count + 3 for count in marked)]))
-    return low, high
+def _named(curve: BedCurve, top: float) -> dict[str, float | str]:
+    """Return where a line carries its name: the point where it passes the height kept for it."""
+    line = wording.LINES[curve.model]
+    share = NAME_HEIGHTS[line] * top
+    return {"line": line, "beds": float(np.interp(-share, -curve.turn_away_probability, curve.beds)), "share": share}
+
+
+def _shown(curve: BedCurve, own: str, window: tuple[int, int], top: float) -> pd.DataFrame:
+    """Return one line's points inside the picture, cut exactly at its top edge."""
+    edge = float(np.interp(-top, -curve.turn_away_probability, curve.beds))
+    beds = curve.beds[(curve.beds >= max(window[0], edge)) & (curve.beds <= window[1])].astype(float)
+    if edge > window[0]:
+        beds = np.concatenate([[edge], beds])
+    share = np.interp(beds, curve.beds, curve.turn_away_probability)
+    kind = "own" if curve.model == own else "other"
+    return pd.DataFrame({"beds": beds, "share": share, "line": wording.LINES[curve.model], "own": kind})
 
 
 def months_data(today: BedPoint, needed: BedPoint | None, limit: float) -> Datasets:
@@ -223,7 +230,7 @@ def months_data(today: BedPoint, needed: BedPoint | None, limit: float) -> Datas
     return {
         "months": pd.DataFrame(rows),
         "month_names": pd.DataFrame(names),
-        "limit": pd.DataFrame([{"share": limit}]),
+        "limit": pd.DataFrame([{"share": limit, "from": wording.MONTHS_SHORT[0], "to": wording.MONTHS_SHORT[-1]}]),
     }
 
 

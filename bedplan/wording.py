@@ -25,6 +25,7 @@ MONTHS = (
     "December",
 )
 MONTHS_SHORT = tuple(month[:3] for month in MONTHS)
+_HARD_SPACE = "\u00a0"  # a number and its sign stay on one line
 WEEKDAYS = ("Monday", "Tuesday", "Wednesday", "Thursday", "Friday", "Saturday", "Sunday")
 
 # model name -> its line's label
@@ -36,12 +37,12 @@ LINES = {
     "waiting": "patients wait",
 }
 
-# what a full ward does to a patient, by the model's answer: (verb phrase for a share, short label)
+# what a full ward does to a patient, by the model's answer: (after "1 in 20", after "patients who")
 WHEN_FULL = {
-    "leaves": ("turned away", "Turned away"),
-    "no chance": ("turned away", "Turned away"),
-    "waits": ("waiting for a bed", "Waits for a bed"),
-    "stays anyway": ("finding the ward full", "Finds the ward full"),
+    "leaves": ("turned away", "are turned away"),
+    "no chance": ("turned away", "are turned away"),
+    "waits": ("waiting for a bed", "wait for a bed"),
+    "stays anyway": ("finding the ward full", "find the ward full"),
 }
 WHEN_WARD_IS_FULL = {"leaves": "go elsewhere", "waits": "wait, or are placed elsewhere"}
 
@@ -62,14 +63,14 @@ def percent(share: float, digits: int | None = None) -> str:
     if digits is None:
         digits = 0 if share >= 0.095 or share == 0 else 1
     if 0 < share < 0.0005 and digits <= 1:
-        return "under 0.1 %"
-    return f"{100 * share:.{digits}f} %"
+        return f"under 0.1{_HARD_SPACE}%"
+    return f"{100 * share:.{digits}f}{_HARD_SPACE}%"
 
 
 def signed_percent(share: float) -> str:
     """Write a change as percent with its sign: 0.05 -> "+5 %", 0 -> "no change"."""
     text = f"{100 * share:+.1f}".removesuffix(".0")
-    return "no change" if text in {"+0", "-0"} else f"{text.replace('-', '−')} %"
+    return "no change" if text in {"+0", "-0"} else f"{text.replace('-', '−')}{_HARD_SPACE}%"
 
 
 def one_in(share: float) -> str:

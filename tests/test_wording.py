@@ -39,10 +39,10 @@ def test_one_in_stays_near_the_share() -> None:
 
 def test_percent_keeps_a_small_share_visible() -> None:
     """A share that is not zero never reads as zero."""
-    assert wording.percent(0.00001) == "under 0.1 %"
-    assert wording.percent(0.0) == "0 %"
-    assert wording.percent(0.0666) == "6.7 %"
-    assert wording.percent(0.126) == "13 %"
+    assert wording.percent(0.00001) == "under 0.1\u00a0%"
+    assert wording.percent(0.0) == "0\u00a0%"
+    assert wording.percent(0.0666) == "6.7\u00a0%"
+    assert wording.percent(0.126) == "13\u00a0%"
 
 
 @pytest.mark.parametrize("name", ["Kestrel", "Acute surgery", "Care of older people unit"])

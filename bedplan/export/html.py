@@ -61,18 +61,18 @@ def as_html(justification: Justification) -> bytes:
 def _ward(case: WardCase, number: int) -> str:
     curve = drawing(case, f"curve{number}", "curve")
     months = drawing(case, f"months{number}", "months")
-    share = wording.WHEN_FULL[case.curve.when_full][1].lower()
     table = case.table()
     caption = (
-        "Share of patients, averaged over the year, at each number of staffed beds. "
+        f"{case.question}, as a share over the year, at each number of staffed beds. "
         f"The ward's own line ({wording.LINES[case.ward.model]}) is the thick one."
     )
     parts = [
         f"<h2>{html.escape(case.ward.name)}</h2>",
         f'<p class="answer">{html.escape(case.sentence())}</p>',
         f"<figure>{curve}<figcaption>{caption}</figcaption></figure>",
+        f"<p>{case.question}:</p>",
         _table(tuple(table[0]), [tuple(row.values()) for row in table]),
-        f"<figure>{months}<figcaption>Share {share}, month by month.</figcaption></figure>",
+        f"<figure>{months}<figcaption>{case.question}, as a share, month by month.</figcaption></figure>",
         "<h3>Every bed count near the decision</h3>",
         _curve_table(case),
         "<h3>What this rests on</h3>",

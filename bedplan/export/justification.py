@@ -128,9 +128,13 @@ class WardCase:
         """Return the limit as drawn: its share and its label."""
         return self.rule.most, f"limit: {wording.one_in(self.rule.most)}"
 
+    @property
+    def question(self) -> str:
+        """What the figures of this ward count: "Patients who find the ward full"."""
+        return f"Patients who {wording.WHEN_FULL[self.curve.when_full][1]}"
+
     def table(self) -> list[dict[str, str]]:
         """Return today's, the formula's and the limit's bed counts side by side, in words."""
-        label = wording.WHEN_FULL[self.curve.when_full][1]
         rows = []
         for mark, beds in self.marked().items():
             if beds is None:
@@ -141,8 +145,9 @@ class WardCase:
                 {
                     "": mark.capitalize(),
                     "Staffed beds": str(beds),
-                    f"{label}, patients a year": wording.patients_per_year(patients_per_year(self.curve, beds)),
-                    "Share": f"{wording.percent(point.turn_away_probability)} ({wording.one_in(point.turn_away_probability)})",
+                    "Patients a year": wording.patients_per_year(patients_per_year(self.curve, beds)),
+                    "As a share": wording.percent(point.turn_away_probability),
+                    "In words": wording.one_in(point.turn_away_probability),
                     "Highest month": f"{wording.MONTHS_SHORT[worst]} {wording.percent(float(point.by_month[worst]))}",
                     "Lowest month": f"{wording.MONTHS_SHORT[best]} {wording.percent(float(point.by_month[best]))}",
                     "Occupancy that results": wording.percent(point.occupancy, 0),
@@ -188,13 +193,15 @@ class Justification:
     def _ask(case: WardCase) -> str:
         limit = wording.limit_text(case.rule.most, case.curve.when_full, case.within)
         today = wording.patients_per_year(patients_per_year(case.curve, case.ward.beds))
-        verb = wording.WHEN_FULL[case.curve.when_full][0]
         if case.decision is None:
-            return f"{case.ward.name}: no bed count looked at keeps {limit}. With today's {case.ward.beds}: {today} {verb} a year."
+            return (
+                f"{case.ward.name}: no bed count looked at keeps {limit}. "
+                f"{case.question}: with today's {case.ward.beds} staffed beds {today} a year."
+            )
         then = wording.patients_per_year(patients_per_year(case.curve, case.decision.beds))
         return (
             f"{case.ward.name}: approve {case.decision.beds} staffed beds (today {case.ward.beds}) to keep {limit}. "
-            f"Expected {verb} a year: {then}; with today's beds {today}."
+            f"{case.question}: {then} a year instead of {today}."
         )
 
     def reproducibility(self) -> tuple[tuple[str, str], ...]:

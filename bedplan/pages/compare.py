@@ -21,16 +21,16 @@ def row(case: WardCase) -> dict[str, object]:
     today = case.curve.at(case.ward.beds)
     return {
         "Ward": case.ward.name,
-        "When full, patients": wording.WHEN_WARD_IS_FULL[case.ward.when_full],
         "Staffed beds today": case.ward.beds,
         "Average formula": case.ward.average_formula_beds,
         "By the limit": None if case.decision is None else case.decision.beds,
         "Find it full, a year": patients_per_year(case.curve, case.ward.beds),
         "Share": 100 * today.turn_away_probability,
         "Worst month": f"{wording.MONTHS_SHORT[today.worst_month]} {wording.percent(float(today.by_month.max()))}",
-        "Occupancy that results": 100 * today.occupancy,
-        "Spared by the next bed, a year": spared_by_next_bed(case.curve, case.ward.beds),
+        "Occupancy": 100 * today.occupancy,
+        "Next bed spares, a year": spared_by_next_bed(case.curve, case.ward.beds),
         "Share at each bed count": controls.small_curve(case),
+        "When full, patients": "go elsewhere" if case.ward.when_full == "leaves" else "wait",
     }
 
 
@@ -49,10 +49,10 @@ def total(frame: pd.DataFrame) -> str:
 COLUMNS = {
     "Find it full, a year": st.column_config.NumberColumn(format="%.0f", help="Patients a year who find no free bed."),
     "Share": st.column_config.NumberColumn(format="%.1f %%"),
-    "Occupancy that results": st.column_config.NumberColumn(format="%.0f %%"),
-    "Spared by the next bed, a year": st.column_config.NumberColumn(format="%.0f"),
+    "Occupancy": st.column_config.NumberColumn(format="%.0f %%"),
+    "Next bed spares, a year": st.column_config.NumberColumn(format="%.0f"),
     "Share at each bed count": st.column_config.LineChartColumn(
-        y_min=0, y_max=0.4, help="From 10 beds fewer than today to 10 more; top of the box is 40 %."
+        y_min=0, y_max=0.4, width="medium", help="From 10 beds fewer than today to 10 more; top of the box is 40 %."
     ),
 }
 
@@ -64,15 +64,15 @@ for name in controls.ward_names():
     except BedplanError as error:
         st.warning(f"{wording.plain(name)}: {wording.plain(str(error))}")
 if cases:
-    table = pd.DataFrame([row(case) for case in cases]).sort_values("Spared by the next bed, a year", ascending=False)
+    table = pd.DataFrame([row(case) for case in cases]).sort_values("Next bed spares, a year", ascending=False)
     first = table.iloc[0]
-    spared = wording.patients_per_year(float(first["Spared by the next bed, a year"]))
+    spared = wording.patients_per_year(float(first["Next bed spares, a year"]))
     st.header(
         f"The next bed spares most on {wording.plain(str(first['Ward']))}: {spared} patients a year.", anchor=False
     )
     limit = controls.rule()
     st.caption(f"Limit: {wording.one_in(limit.most)}, {controls.WITHIN[limit.within]}. Set it on the page One ward.")
-    st.dataframe(table, column_config=COLUMNS, hide_index=True, width="stretch", height=38 * (len(table) + 1) + 4)
+    st.dataframe(table, column_config=COLUMNS, hide_index=True, width="stretch", height=35 * (len(table) + 1) + 3)
     st.markdown(f"**{total(table)}**")
     st.caption(
         "Not a league table: it says nothing about how well a ward works. A critical-care bed costs several times a "

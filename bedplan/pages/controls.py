@@ -34,7 +34,7 @@ SLIDERS: Mapping[str, tuple[str, int, int, int, int, str]] = {
     "stay": ("Mean stay", -50, 100, 0, 1, "%+d %%"),
     "spread": ("Spread of stay", -75, 150, 0, 5, "%+d %%"),
     "peak": ("Winter peak", 0, 250, 100, 5, "%d %% of recorded"),
-    "growth": ("Growth to the planned year", -10, 20, 0, 1, "%+d %%"),
+    "growth": ("Growth to next year", -10, 20, 0, 1, "%+d %%"),
 }
 LIMIT = ("Limit", 1, 20, 5, 1, "%d %%")
 WITHIN = {"every_month": "in every month", "year": "over the year"}

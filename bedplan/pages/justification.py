@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import textwrap
 
 import streamlit as st
 
@@ -10,6 +11,12 @@ from bedplan import wording
 from bedplan.errors import BedplanError
 from bedplan.export import Justification, as_html, as_xlsx
 from bedplan.pages import controls
+
+
+def in_groups(value: str) -> str:
+    """Break a long fingerprint into groups that fit a line."""
+    return " ".join(textwrap.wrap(value, 16)) if len(value) == 64 and value.isalnum() else value
+
 
 controls.show_origin()
 names = controls.ward_names()
@@ -24,8 +31,9 @@ try:
         dt.datetime.now().astimezone().date(),
     )
     st.header(wording.plain(paper.title), anchor=False)
-    for line in paper.decision_lines():
-        st.markdown(wording.plain(line))
+    with st.container(border=True):
+        for line in paper.decision_lines():
+            st.markdown(wording.plain(line))
     mark = paper.fingerprint()
     left, right, _ = st.columns([1, 1, 2])
     left.download_button(
@@ -53,7 +61,7 @@ try:
         for note in case.notes():
             st.markdown(f"- {wording.plain(note)}")
     st.subheader("To get the same figures again", anchor=False)
-    st.table({what: wording.plain(value) for what, value in paper.reproducibility()}, border="horizontal")
+    st.table({what: wording.plain(in_groups(value)) for what, value in paper.reproducibility()}, border="horizontal")
     st.subheader("Cautions", anchor=False)
     for line in wording.CAUTIONS:
         st.markdown(f"- {line}")

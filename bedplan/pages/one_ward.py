@@ -36,7 +36,7 @@ def slider_label(key: str, name: str) -> str:
         "stay": wording.days(stay.mean_days * (1 + value)),
         "spread": f"SD is {stay.variation * (1 + value):.2f} × the mean",
         "peak": _peak_text(base.demand.month_factors, value),
-        "growth": f"records: {wording.signed_percent(base.growth_per_year)} a year",
+        "growth": f"recorded trend {wording.signed_percent(base.growth_per_year)} a year",
     }
     return f"{title}: {now[key]}"
 
@@ -103,16 +103,17 @@ def notes(case: WardCase, values: dict[str, Any]) -> None:
 def answer(case: WardCase) -> None:
     """Draw the sentence, the picture, the table and the months."""
     st.header(wording.plain(case.sentence()), anchor=False)
-    label = wording.WHEN_FULL[case.curve.when_full][1].lower()
-    picture, table = st.columns([3, 2], gap="large")
+    picture, table = st.columns([7, 5], gap="large")
     with picture:
-        st.markdown(f"**Share of patients: {label}, over the year**")
+        st.markdown(f"**{case.question}, over the year**")
         data = charts.curve_data(list(case.curves.values()), case.ward.model, case.marked(), case.limit())
         with st.container(key="curve"):
             st.vega_lite_chart(charts.live(charts.CURVE, data), theme=None, width="stretch", alt=case.sentence())
     with table:
+        st.markdown(f"**{case.question}**")
         st.table(controls.facts_table(case))
-    st.markdown(f"**Share of patients: {label}, month by month**")
+        st.caption("The thick line is the one that fits this ward; the thin ones are what other formulas would say.")
+    st.markdown(f"**{case.question}, month by month**")
     needed = None if case.decision is None else case.decision.point
     months = charts.months_data(case.curve.at(case.ward.beds), needed, case.rule.most)
     st.vega_lite_chart(charts.live(charts.MONTHS, months), theme=None, width="stretch", alt="Share month by month")

@@ -40,7 +40,7 @@ def test_table_holds_the_curve(justification: Justification) -> None:
     for row in case.table():
         point = case.curve.at(int(row["Staffed beds"]))
 
-        assert row["Share"].startswith(wording.percent(point.turn_away_probability))
+        assert row["As a share"] == wording.percent(point.turn_away_probability)
         assert row["Occupancy that results"] == wording.percent(point.occupancy, 0)
 
 
