@@ -3,6 +3,7 @@
 from bedplan.decision.changing_beds import BedChanges, Closure
 from bedplan.decision.comparing import WardComparison, compare_wards, patients_per_year, spared_by_next_bed
 from bedplan.decision.rules import Decision, OccupancyLimit, OverfullLimit, Rule, TurnAwayLimit, WaitLimit, decide
+from bedplan.decision.sharing import SharedBeds, share_beds
 from bedplan.decision.ward import Ward
 
 __all__ = [
@@ -12,6 +13,7 @@ __all__ = [
     "OccupancyLimit",
     "OverfullLimit",
     "Rule",
+    "SharedBeds",
     "TurnAwayLimit",
     "WaitLimit",
     "Ward",
@@ -19,5 +21,6 @@ __all__ = [
     "compare_wards",
     "decide",
     "patients_per_year",
+    "share_beds",
     "spared_by_next_bed",
 ]
