@@ -62,7 +62,7 @@ def test_no_split_at_all_does_better(data: st.DataObject) -> None:
     found = [shared.beds[name] for name in NAMES]
     assert all(n in choice for n, choice in zip(found, allowed, strict=True))
     assert sum(found) + shared.left_over == total
-    assert sum(cost[name][shared.beds[name]] for name in NAMES) == pytest.approx(best, rel=1e-6, abs=1e-6)
+    assert sum(cost[name][shared.beds[name]] for name in NAMES) == pytest.approx(best, rel=1e-5, abs=1e-6)
 
 
 @settings(derandomize=True, max_examples=20, deadline=None)
@@ -83,7 +83,7 @@ def test_without_steps_the_largest_gain_first_is_as_good(loads: tuple[float, ...
     assert sum(shared.beds.values()) == sum(beds)
     assert shared.left_over == 0
     assert shared.turned_away_after == pytest.approx(
-        sum(patients(one, dealt[one.name]) for one in wards), rel=1e-6, abs=1e-6
+        sum(patients(one, dealt[one.name]) for one in wards), rel=1e-5, abs=1e-6
     )
 
 
@@ -167,7 +167,7 @@ def test_eight_wards_of_a_hospital_are_dealt_out_at_once() -> None:
         if giver is not taker and shared.beds[giver.name] >= beds:
             lost = patients(giver, shared.beds[giver.name] - beds) - patients(giver, shared.beds[giver.name])
             won = patients(taker, shared.beds[taker.name]) - patients(taker, shared.beds[taker.name] + beds)
-            assert won <= lost * (1 + 1e-6) + 1e-6
+            assert won <= lost * (1 + 1e-5) + 1e-6
 
 
 @pytest.mark.parametrize(
