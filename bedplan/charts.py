@@ -5,6 +5,7 @@ A spec never changes between reruns: everything that moves travels in a dataset,
 
 from __future__ import annotations
 
+import math
 from typing import TYPE_CHECKING, Any
 
 import altair as alt
@@ -44,6 +45,7 @@ NAME_HEIGHTS = {
     "steady demand": 0.47,
     "average formula": 0.32,
 }
+ROOM_LEFT_OF_NAMES = 0.7  # the names of the lines stand in the right-hand third, free of marked bed counts
 MARKS = {"today": [1, 0], "average formula": [2, 3], "by the limit": [8, 3]}
 GREY = "#767676"
 CONFIG: Spec = {
@@ -134,7 +136,9 @@ def _curve() -> Spec:
 
 def _months() -> Spec:
     """Build the months: today's beds against the recommended, as two labelled lines of points, and the limit."""
-    month = alt.X("month:O", sort=list(wording.MONTHS_SHORT), title=None, axis=alt.Axis(labelAngle=0))
+    month = alt.X(
+        "month:O", scale=alt.Scale(domain=list(wording.MONTHS_SHORT)), title=None, axis=alt.Axis(labelAngle=0)
+    )
     share = alt.Y(
         "share:Q",
         title=None,
@@ -160,9 +164,7 @@ def _months() -> Spec:
         .encode(x=month, y=share, text="label:N", color=colour)
     )
     limit = alt.Chart(alt.NamedData("limit"))
-    rule = limit.mark_rule(strokeWidth=1.5, color=GREY).encode(
-        x=alt.X("from:O", sort=list(wording.MONTHS_SHORT)), x2="to:O", y=share
-    )
+    rule = limit.mark_rule(strokeWidth=1.5, color=GREY).encode(x=alt.X("from:O", title=None), x2="to:O", y=share)
     return alt.layer(rule, line, point, names).properties(height=200).to_dict() | {"config": CONFIG}
 
 
@@ -182,9 +184,9 @@ def curve_data(
     mine = next(curve for curve in curves if curve.model == own)
     top = min(1.0, max(0.4, 1.15 * mine.at(min(counts)).turn_away_probability))
     names = pd.DataFrame([_named(curve, top) for curve in curves])
-    last = int(mine.beds[np.argmax(mine.turn_away_probability <= 0.002)] or mine.beds[-1])
+    last = int(mine.beds[np.argmax(mine.turn_away_probability <= 0.005)] or mine.beds[-1])
     low = max(0, min(int(names["beds"].min()), min(counts) - 1))
-    high = min(int(mine.beds[-1]), max([last, low + 8, max(counts) + 3]))
+    high = max(last, low + 8, low + math.ceil((max(counts) + 1 - low) / ROOM_LEFT_OF_NAMES))
     rows = [_shown(curve, own, (low, high), top) for curve in curves]
     marks = [
         {"mark": mark, "beds": count, "label": f"{mark} {count}"} for mark, count in marked.items() if count is not None

@@ -103,13 +103,13 @@ def notes(case: WardCase, values: dict[str, Any]) -> None:
 def answer(case: WardCase) -> None:
     """Draw the sentence, the picture, the table and the months."""
     st.header(wording.plain(case.sentence()), anchor=False)
-    picture, table = st.columns([7, 5], gap="large")
-    with picture:
+    side_by_side = st.container(horizontal=True, gap="large")
+    with side_by_side.container(width=530):
         st.markdown(f"**{case.question}, over the year**")
         data = charts.curve_data(list(case.curves.values()), case.ward.model, case.marked(), case.limit())
         with st.container(key="curve"):
             st.vega_lite_chart(charts.live(charts.CURVE, data), theme=None, width="stretch", alt=case.sentence())
-    with table:
+    with side_by_side.container(width=400):
         st.markdown(f"**{case.question}**")
         st.table(controls.facts_table(case))
         st.caption("The thick line is the one that fits this ward; the thin ones are what other formulas would say.")
