@@ -2,6 +2,7 @@
 
 from bedplan.decision.changing_beds import BedChanges, Closure
 from bedplan.decision.comparing import WardComparison, compare_wards, patients_per_year, spared_by_next_bed
+from bedplan.decision.pooling import PooledShare, PoolingEffect, pool_wards, pooling_effect
 from bedplan.decision.rules import Decision, OccupancyLimit, OverfullLimit, Rule, TurnAwayLimit, WaitLimit, decide
 from bedplan.decision.sharing import SharedBeds, share_beds
 from bedplan.decision.ward import Ward
@@ -12,6 +13,8 @@ __all__ = [
     "Decision",
     "OccupancyLimit",
     "OverfullLimit",
+    "PooledShare",
+    "PoolingEffect",
     "Rule",
     "SharedBeds",
     "TurnAwayLimit",
@@ -21,6 +24,8 @@ __all__ = [
     "compare_wards",
     "decide",
     "patients_per_year",
+    "pool_wards",
+    "pooling_effect",
     "share_beds",
     "spared_by_next_bed",
 ]

@@ -88,7 +88,7 @@ def share_beds(
     Source: Bellman 1957, Dynamic Programming.
     Checked by: tests/decision/test_sharing.py (every split tried)
     """
-    wards = _named_once(wards)
+    wards = named_once(wards)
     today = {ward.name: ward.beds for ward in wards}
     total = sum(today.values()) if total is None else _whole("beds to share", total, 0)
     floors = {name: _whole("fewest beds", beds, 0) for name, beds in _by_name(today, floors, 0).items()}
@@ -108,7 +108,7 @@ def share_beds(
     )
 
 
-def _named_once(wards: Iterable[Ward]) -> tuple[Ward, ...]:
+def named_once(wards: Iterable[Ward]) -> tuple[Ward, ...]:
     """Return the wards, or say that there are none or two of one name."""
     wards = tuple(wards)
     names = [ward.name for ward in wards]

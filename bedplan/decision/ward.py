@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -90,5 +91,11 @@ class Ward:
         """
         beds = self.bed_counts
         more = max(0, *self.bed_changes.extra_by_month)
-        curve = MODELS[model or self.model](self.demand, np.arange(beds[-1] + more + 1))
+        curve = _curve(model or self.model, self.demand, int(beds[-1]) + more)
         return with_changing_beds(curve, self.bed_changes, beds)
+
+
+@lru_cache(maxsize=512)
+def _curve(model: str, demand: Demand, most_beds: int) -> BedCurve:
+    """Return a model's curve, remembered: a page asks for the same wards again and again."""
+    return MODELS[model](demand, np.arange(most_beds + 1))
