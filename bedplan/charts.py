@@ -223,7 +223,7 @@ def months_data(today: BedPoint, needed: BedPoint | None, limit: float) -> Datas
     for which, point in (("today", today), ("by the limit", needed)):
         if point is None:
             continue
-        label = f"{which}, {wording.beds_text(point.beds)}"
+        label = f"{which} {point.beds}"
         rows += [
             {"month": month, "share": float(share), "which": which, "label": label}
             for month, share in zip(wording.MONTHS_SHORT, point.by_month, strict=True)

@@ -7,8 +7,9 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from bedplan import wording
-from bedplan.decision import patients_per_year
-from bedplan.errors import ImpossibleFigure
+from bedplan.decision import decide, patients_per_year
+from bedplan.errors import ImpossibleFigure, TargetOutOfReach
+from bedplan.models import MODELS
 
 if TYPE_CHECKING:
     import datetime as dt
@@ -159,6 +160,24 @@ class WardCase:
         """Return the notes of the ward, of its curve and of the models drawn beside it, each once."""
         found = [*self.ward.notes, *self.curve.notes]
         return tuple(dict.fromkeys(found))
+
+
+def case_for(
+    ward: Ward,
+    rule: Rule,
+    assumptions: tuple[tuple[str, str, str], ...] = (),
+    settings: tuple[tuple[str, str], ...] = (),
+) -> WardCase:
+    """What is the case for this ward under this limit? Every model's curve, and the decision on the ward's own.
+
+    Checked by: tests/export/test_justification.py
+    """
+    curves = {model: ward.curve(model) for model in MODELS}
+    try:
+        decision = decide(curves[ward.model], rule)
+    except TargetOutOfReach:
+        decision = None
+    return WardCase(ward, curves, rule, decision, assumptions, settings)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

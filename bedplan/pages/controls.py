@@ -5,20 +5,16 @@ Nothing here computes a figure: it turns what is on screen into the value object
 
 from __future__ import annotations
 
-from functools import lru_cache
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
 import pandas as pd
 import streamlit as st
 
 from bedplan import wording
 from bedplan.data import Capacity, Records, estimate_demand, read_capacity, read_records
-from bedplan.decision import TurnAwayLimit, Ward, decide
-from bedplan.errors import TargetOutOfReach
-from bedplan.export import Source, WardCase
-from bedplan.models import MODELS, BedCurve, Demand
+from bedplan.decision import TurnAwayLimit
+from bedplan.export import Source, WardCase, case_for
 from bedplan.plan import Baseline, Changes, from_estimate, planned_ward
 
 if TYPE_CHECKING:
@@ -124,22 +120,7 @@ def case_of(name: str, rule: TurnAwayLimit) -> WardCase:
         growth=values["growth"] / 100,
     )
     ward = planned_ward(base, int(values["beds"]), values["full"], changes)
-    curves = curves_of(ward)
-    try:
-        decision = decide(curves[ward.model], rule)
-    except TargetOutOfReach:
-        decision = None
-    return WardCase(ward, curves, rule, decision, base.facts, changes.rows())
-
-
-def curves_of(ward: Ward) -> dict[str, BedCurve]:
-    """Return every model's curve that belongs on this ward's picture."""
-    return {model: _curve(model, ward.demand, int(ward.bed_counts[-1])) for model in MODELS}
-
-
-@lru_cache(maxsize=512)
-def _curve(model: str, demand: Demand, most_beds: int) -> BedCurve:
-    return MODELS[model](demand, np.arange(most_beds + 1))
+    return case_for(ward, rule, base.facts, changes.rows())
 
 
 def rule() -> TurnAwayLimit:

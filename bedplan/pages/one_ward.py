@@ -103,8 +103,8 @@ def notes(case: WardCase, values: dict[str, Any]) -> None:
 def answer(case: WardCase) -> None:
     """Draw the sentence, the picture, the table and the months."""
     st.header(wording.plain(case.sentence()), anchor=False)
-    side_by_side = st.container(horizontal=True, gap="large")
-    with side_by_side.container(width=530):
+    side_by_side = st.container(horizontal=True, gap="medium")
+    with side_by_side.container(width=540):
         st.markdown(f"**{case.question}, over the year**")
         data = charts.curve_data(list(case.curves.values()), case.ward.model, case.marked(), case.limit())
         with st.container(key="curve"):

@@ -1,0 +1,106 @@
+"""The command line: the same documents without a browser, for large files and for repeating a figure.
+
+python -m bedplan stays.csv --ward Kestrel --capacity capacity.csv --limit 0.05 --out .
+"""
+
+from __future__ import annotations
+
+import argparse
+import datetime as dt
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from bedplan import wording
+from bedplan.data import Capacity, Records, estimate_demand, read_capacity, read_records
+from bedplan.decision import TurnAwayLimit
+from bedplan.errors import BedplanError, UnreadableRecords
+from bedplan.export import Justification, Source, as_html, as_xlsx, case_for
+from bedplan.plan import Changes, from_estimate, planned_ward
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from bedplan.export import WardCase
+
+CHANGES = ("demand", "stay", "spread", "growth")
+
+
+def arguments() -> argparse.ArgumentParser:
+    """Describe what can be asked on the command line."""
+    parser = argparse.ArgumentParser(
+        prog="python -m bedplan", description="Write a bed-count justification from a ward-stay file."
+    )
+    parser.add_argument("stays", type=Path, help="ward stays: CSV with ward, start and end")
+    parser.add_argument("--ward", action="append", help="a ward to justify; repeat for more (default: every ward)")
+    parser.add_argument("--capacity", type=Path, help="staffed beds by ward: CSV")
+    parser.add_argument("--beds", type=int, help="today's staffed beds, where there is no capacity file")
+    parser.add_argument(
+        "--leaves", action="append", default=[], help="a ward whose patients go elsewhere when it is full; repeat"
+    )
+    parser.add_argument(
+        "--limit", type=float, default=0.05, help="largest share of patients who find no free bed (0.05)"
+    )
+    parser.add_argument("--within", choices=("every_month", "year"), default="every_month", help="when the limit holds")
+    for name in CHANGES:
+        parser.add_argument(
+            f"--{name}",
+            type=float,
+            default=0.0,
+            help=f"change of {name} against the records, as a share: 0.05 = 5 %% more",
+        )
+    parser.add_argument("--peak", type=float, default=1.0, help="size of the winter peak against the recorded one")
+    parser.add_argument("--out", type=Path, default=Path(), help="folder for the two documents")
+    return parser
+
+
+def ward_case(records: Records, capacity: Capacity | None, name: str, asked: argparse.Namespace) -> WardCase:
+    """Return one ward's case under what was asked."""
+    beds = capacity.beds_today(name) if capacity and name in capacity.wards else asked.beds
+    changes = Changes(asked.demand, asked.stay, asked.spread, asked.peak, asked.growth)
+    baseline = from_estimate(estimate_demand(records, name, capacity=capacity), beds)
+    ward = planned_ward(baseline, baseline.beds, "leaves" if name in asked.leaves else "waits", changes)
+    return case_for(ward, TurnAwayLimit(asked.limit, asked.within), baseline.facts, changes.rows())
+
+
+def write(asked: argparse.Namespace) -> Justification:
+    """Read, decide and write both documents; return what they say.
+
+    Raises:
+        BedplanError: anything that can be explained, in a sentence.
+
+    Checked by: tests/test_command_line.py
+    """
+    records = read_records(asked.stays)
+    capacity = read_capacity(asked.capacity) if asked.capacity else None
+    unknown = [name for name in (*(asked.ward or ()), *asked.leaves) if name not in records.wards]
+    if unknown:
+        raise UnreadableRecords([f"Ward “{unknown[0]}” is not in {records.name}; it holds {', '.join(records.wards)}."])
+    names = asked.ward or records.wards
+    cases = tuple(ward_case(records, capacity, name, asked) for name in names)
+    paper = Justification(cases, Source.from_records(records), dt.datetime.now().astimezone().date())
+    asked.out.mkdir(parents=True, exist_ok=True)
+    for ending, content in (("html", as_html(paper)), ("xlsx", as_xlsx(paper))):
+        (asked.out / f"bed-count-justification-{paper.fingerprint()}.{ending}").write_bytes(content)
+    return paper
+
+
+def main(words: Sequence[str] | None = None) -> int:
+    """Run the command line; 0 when the documents were written, 2 with a sentence when they could not be."""
+    asked = arguments().parse_args(words)
+    try:
+        paper = write(asked)
+    except BedplanError as error:
+        print(error, file=sys.stderr)
+        return 2
+    except OSError as error:
+        print(f"{error.filename}: {error.strerror}. Check the path.", file=sys.stderr)
+        return 2
+    for line in paper.decision_lines():
+        print(line)
+    print(f"Documents {paper.fingerprint()} are in {asked.out.resolve()}. {wording.CAUTIONS[1]}")
+    return 0
+
+
+if __name__ == "__main__":
+    raise SystemExit(main())
