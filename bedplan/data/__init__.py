@@ -1,13 +1,16 @@
 """Reading, cleaning, describing and estimating: from a records file to a demand."""
 
 from bedplan.data.capacity import Capacity, read_capacity
+from bedplan.data.choices import DateQuestion, IntakeChoices
 from bedplan.data.estimating import DemandEstimate, Uncertainty, estimate_demand
 from bedplan.data.records import Records, read_records
 from bedplan.data.report import IntakeReport
 
 __all__ = [
     "Capacity",
+    "DateQuestion",
     "DemandEstimate",
+    "IntakeChoices",
     "IntakeReport",
     "Records",
     "Uncertainty",

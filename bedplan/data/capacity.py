@@ -11,7 +11,7 @@ import pandas as pd
 
 from bedplan.data.columns import without_formula, words
 from bedplan.data.dates import MISSING, UNREADABLE, read_times
-from bedplan.data.reading import TextTable, read_text
+from bedplan.data.reading import read_table
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.table import as_times
 from bedplan.errors import UnreadableRecords
@@ -20,6 +20,8 @@ if TYPE_CHECKING:
     from collections.abc import Mapping
 
     import pyarrow as pa
+
+    from bedplan.data.texttable import TextTable
 
 CAPACITY_HEADINGS: dict[str, tuple[str, ...]] = {
     "ward": words("ward wardcode wardname location unit"),
@@ -101,7 +103,7 @@ def read_capacity(source: FileLike, *, name: str | None = None, columns: Mapping
     Checked by: tests/data/test_capacity.py
     """
     file = open_source(source, name)
-    text = read_text(file, CAPACITY_HEADINGS, columns)
+    text = read_table(file, CAPACITY_HEADINGS, columns)
     if "ward" not in text.columns or not {"funded", "staffed"} & set(text.columns):
         raise UnreadableRecords(
             [f"{file.name} needs a ward column and a column of staffed or funded beds, a row for each ward and period."]

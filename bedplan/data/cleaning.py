@@ -28,6 +28,19 @@ def check_dates(rows: Rows, now: int) -> None:
     rows.mark(early | (rows.start > now) | (rows.end > now), "unlikely date")
 
 
+def mend_clock_change(rows: Rows) -> None:
+    """Add an hour to stays that end before they start in the night the clock goes back (between midnight and 03:00)."""
+    short = rows.live & ~rows.is_open & (rows.end < rows.start) & (rows.start - rows.end <= 3_600)
+    which = np.flatnonzero(short)
+    days = (rows.start[which] // DAY_SECONDS).astype("datetime64[D]")
+    month = days.astype("datetime64[M]").astype(np.int64) % 12 + 1
+    sunday = (days.astype(np.int64) + 3) % 7 == 6  # 1 January 1970 was a Thursday
+    night = rows.start[which] % DAY_SECONDS < 3 * 3_600
+    mended = which[sunday & night & np.isin(month, (3, 4, 10, 11))]
+    rows.end[mended] += 3_600
+    rows.mark(mended, "clock change")
+
+
 def swapped(seconds: NDArray[np.int64]) -> NDArray[np.int64]:
     """Return the times with day and month exchanged, UNREADABLE where that gives no date."""
     days = (seconds // DAY_SECONDS).astype("datetime64[D]")

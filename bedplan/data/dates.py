@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
+import pandas as pd
 import pyarrow as pa
 import pyarrow.compute as pc
 
@@ -43,13 +44,6 @@ class TimesRead:
     day_first_only: int
     month_first_only: int
     either_order: int
-    examples: tuple[str, ...] = ()
-
-    @property
-    def order_is_open(self) -> bool:
-        """Can day and month be told apart by the file alone? True = no, somebody must say."""
-        mixed = self.day_first_only > 0 and self.month_first_only > 0
-        return mixed or (self.either_order > 0 and not self.day_first_only and not self.month_first_only)
 
 
 def seconds_of(
@@ -65,17 +59,21 @@ def seconds_of(
     return np.where(possible, (first + day - 1) * DAY_SECONDS + clock_seconds, UNREADABLE)
 
 
-def read_times(column: pa.ChunkedArray | pa.Array, date_order: str | None = None) -> TimesRead:
+def read_times(
+    column: pa.ChunkedArray | pa.Array, date_order: str | None = None, time_zone: str | None = None
+) -> TimesRead:
     """When was it? One column of text read into seconds; ``date_order`` is ``"day first"``, ``"month first"`` or None.
 
-    Times with an offset keep the clock shown (the hospital's local time), the offset itself is not added.
+    Times with an offset keep the clock they show, or are brought to that of ``time_zone``.
+
+    Checked by: tests/data/test_dates.py
     """
     column = pa.chunked_array(column).combine_chunks() if isinstance(column, pa.ChunkedArray) else column
     column = column.combine_chunks() if isinstance(column, pa.ChunkedArray) else column
     fast = _fast_iso(column)
     if fast is not None:
         return TimesRead(fast, np.zeros(fast.size, bool), False, 0, 0, 0)
-    return _slow(column, date_order)
+    return _slow(column, date_order, time_zone)
 
 
 def _fast_iso(column: pa.Array) -> NDArray[np.int64] | None:
@@ -90,7 +88,7 @@ def _fast_iso(column: pa.Array) -> NDArray[np.int64] | None:
     return seconds
 
 
-def _slow(column: pa.Array, date_order: str | None) -> TimesRead:
+def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> TimesRead:
     """Read a column row by row's pattern: each pattern takes the rows that fit it."""
     text = pc.utf8_trim_whitespace(pc.fill_null(column, ""))
     size = len(text)
@@ -99,7 +97,6 @@ def _slow(column: pa.Array, date_order: str | None) -> TimesRead:
     seconds[blank] = MISSING
     left = ~blank
     had_offset, serial, counts = False, np.zeros(size, bool), (0, 0, 0)
-    examples: tuple[str, ...] = ()
     for pattern in (ISO, NUMBERS, NAMED, NAME_FIRST, SERIAL):
         rows = np.flatnonzero(left)
         if not rows.size:
@@ -113,13 +110,17 @@ def _slow(column: pa.Array, date_order: str | None) -> TimesRead:
         if pattern is SERIAL:
             seconds[rows], serial[rows] = _from_serial(parts.field("serial")), True
             continue
-        had_offset |= pc.any(pc.not_equal(parts.field("offset"), "")).as_py() or False
         if pattern is NUMBERS:
-            seconds[rows], counts, unsure = _from_numbers(parts, date_order)
-            examples = tuple(text.take(pa.array(rows[unsure][:3])).to_pylist())
+            seconds[rows], counts = _from_numbers(parts, date_order)
         else:
             seconds[rows] = _from_names(parts) if pattern is not ISO else _from_iso(parts)
-    return TimesRead(seconds, serial, had_offset, *counts, examples)
+        offset = pc.not_equal(parts.field("offset"), "").to_numpy(zero_copy_only=False)
+        if offset.any():
+            had_offset = True
+            if time_zone:
+                moved = rows[offset]
+                seconds[moved] = _at_home(seconds[moved], parts.field("offset").filter(pa.array(offset)), time_zone)
+    return TimesRead(seconds, serial, had_offset, *counts)
 
 
 def _whole(strings: pa.Array) -> NDArray[np.int64]:
@@ -157,18 +158,28 @@ def _from_names(parts: pa.StructArray) -> NDArray[np.int64]:
     return seconds_of(year, month, day, _clock(parts))
 
 
-def _from_numbers(
-    parts: pa.StructArray, date_order: str | None
-) -> tuple[NDArray[np.int64], tuple[int, int, int], NDArray[np.bool_]]:
+def _from_numbers(parts: pa.StructArray, date_order: str | None) -> tuple[NDArray[np.int64], tuple[int, int, int]]:
     """Read dates of two small numbers and a year; count which orders they allow."""
     first, second = _whole(parts.field("first")), _whole(parts.field("second_part"))
     year, clock = _four_digits(_whole(parts.field("year"))), _clock(parts)
     day_first_only, month_first_only = (first > 12) & (second <= 12), (second > 12) & (first <= 12)
     either = (first <= 12) & (second <= 12) & (first != second)
     counts = (int(day_first_only.sum()), int(month_first_only.sum()), int(either.sum()))
-    month_first = date_order == "month first" or (date_order is None and counts[1] > 0 and counts[0] == 0)
-    day, month = (second, first) if month_first else (first, second)
-    return seconds_of(year, month, day, clock), counts, either
+    day, month = (second, first) if date_order == "month first" else (first, second)
+    return seconds_of(year, month, day, clock), counts
+
+
+def _at_home(seconds: NDArray[np.int64], offset: pa.Array, time_zone: str) -> NDArray[np.int64]:
+    """Bring times with an offset from world time to the clock of one zone."""
+    digits = pc.replace_substring(offset, ":", "")
+    sign = np.where(pc.starts_with(digits, "-").to_numpy(zero_copy_only=False), -1, 1)
+    world = pc.is_in(digits, value_set=pa.array(["Z"])).to_numpy(zero_copy_only=False)
+    number = _whole(pc.if_else(pa.array(world), "0000", pc.utf8_slice_codeunits(digits, 1)))
+    utc = seconds - sign * (number // 100 * 3600 + number % 100 * 60)
+    possible = seconds > UNREADABLE
+    home = pd.DatetimeIndex(np.where(possible, utc, 0).astype("datetime64[s]"), tz="UTC").tz_convert(time_zone)
+    local = home.tz_localize(None).to_numpy().astype("datetime64[s]").astype(np.int64)
+    return np.where(possible, local, seconds)
 
 
 def _from_serial(serial: pa.Array) -> NDArray[np.int64]:

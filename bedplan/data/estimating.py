@@ -180,7 +180,7 @@ def _stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
     day = np.timedelta64(86_400, "s")
     start = stays["start"].to_numpy()
     finished = stays["end"].notna().to_numpy()
-    end = np.where(finished, stays["end"].to_numpy(), np.datetime64(records.window[1], "s"))
+    end = np.where(finished, stays["end"].to_numpy(), np.datetime64(records.seen_until, "s"))
     first = np.datetime64(records.window[0], "s")
     entry = np.maximum((first - start) / day, 0.0)
     try:

@@ -1,16 +1,17 @@
-"""From a file's bytes to a table of text: encoding, separator, report titles above the headings."""
+"""From a file's bytes to a table of text: which kind of file, encoding, separator, titles above the headings."""
 
 from __future__ import annotations
 
 import csv
-import io
-from dataclasses import dataclass
+import re
 from typing import TYPE_CHECKING
 
 import pyarrow as pa
 from pyarrow import csv as arrow_csv
 
-from bedplan.data.columns import is_identity, match_headings
+from bedplan.data.columns import match_headings
+from bedplan.data.texttable import MOST_TITLE_LINES, Layout, TextTable, text_table
+from bedplan.data.workbook import read_parquet, read_workbook
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -18,38 +19,36 @@ if TYPE_CHECKING:
 
     from bedplan.data.source import SourceFile
 
+LINE = re.compile(rb"[^\r\n]*(?:\r\n|\n|\r)")
 SEPARATORS = (",", ";", "\t", "|")
-MOST_TITLE_LINES = 60
 SNIFFED_BYTES = 256 * 1024
+BLOCK_BYTES = 4 * 2**20
 
 
-@dataclass(frozen=True, slots=True)
-class TextTable:
-    """A file as text: the matched columns only, every value a string; what was skipped is in ``notes``.
+def read_table(
+    source: SourceFile, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None = None
+) -> TextTable:
+    """What does this file hold? Its matched columns as text, from CSV, other separated text, Excel or Parquet.
 
-    ``misfits`` counts lines that have another number of cells than the headings (report lines, broken rows).
+    ``known``: canonical name → headings; ``chosen``: canonical name → heading, the user's own words.
+
+    Raises:
+        UnreadableRecords: the file is no table, or has no known heading, or no rows.
+
+    Checked by: tests/data/test_reading.py, tests/data/test_bad_files.py
     """
-
-    columns: Mapping[str, pa.ChunkedArray]
-    headings: Mapping[str, str]
-    rows: int
-    misfits: int
-    dropped: tuple[str, ...]
-    notes: tuple[str, ...]
-
-
-@dataclass(frozen=True, slots=True)
-class Layout:
-    """Where the headings are and what separates them."""
-
-    line: int
-    separator: str
-    headings: tuple[str, ...]
-    found: Mapping[str, str]
+    if source.content.startswith(b"PK"):
+        return read_workbook(source, known, chosen)
+    if source.content.startswith(b"PAR1"):
+        return read_parquet(source, known, chosen)
+    text, encoding = as_utf8(source)
+    layout = find_layout(text, known, chosen)
+    notes = [] if encoding == "UTF-8" else [f"The file was written in {encoding}; check that ward names look right."]
+    return text_table(source.name, layout, lambda: _parse(source.name, text, layout), notes, list(known))
 
 
 def as_utf8(source: SourceFile) -> tuple[bytes, str]:
-    """Return the text as UTF-8 bytes, and which encoding it came in; tried in the order UTF-8, UTF-16, Windows-1252."""
+    """Return the text as UTF-8 bytes, and its encoding; tried in the order UTF-8, UTF-16, Windows-1252."""
     content = source.content
     if content.startswith((b"\xff\xfe", b"\xfe\xff")):
         return _decoded(content, "utf-16", source.name), "UTF-16"
@@ -61,9 +60,7 @@ def as_utf8(source: SourceFile) -> tuple[bytes, str]:
         return _decoded(content, guess, source.name), "UTF-16"
     if b"\0" in content:
         raise UnreadableRecords(
-            [
-                f"{source.name} is not a text table (it holds bytes no text has): export it again as CSV or Excel (.xlsx)."
-            ]
+            [f"{source.name} is not a text table (it holds bytes no text has): export it as CSV or Excel (.xlsx)."]
         )
     if content.isascii():
         return content, "UTF-8"
@@ -84,18 +81,18 @@ def _decoded(content: bytes, encoding: str, name: str) -> bytes:
         ) from problem
 
 
-def find_layout(text: bytes, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None) -> Layout | None:
+def find_layout(text: bytes, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None) -> Layout:
     """Find the line that holds the headings: the one with most known names, under the separator that shows most."""
-    lines = text[:SNIFFED_BYTES].decode("utf-8", errors="replace").splitlines()[:MOST_TITLE_LINES]
-    best: Layout | None = None
-    for number, line in enumerate(lines):
+    best = Layout(0, 0, ",", (), {})
+    for number, line in enumerate(LINE.finditer(text[:SNIFFED_BYTES])):
+        if number == MOST_TITLE_LINES:
+            break
+        words = line[0].decode("utf-8", errors="replace").strip("\r\n")
         for separator in SEPARATORS:
-            headings = _cells(line, separator)
-            if len(headings) < 2:
-                continue
-            found = match_headings(headings, known, chosen)
-            if best is None or len(found) > len(best.found):
-                best = Layout(number, separator, headings, found)
+            headings = _cells(words, separator)
+            found = match_headings([heading for heading in headings if heading], known, chosen)
+            if len(found) > len(best.found):
+                best = Layout(number, line.end(), separator, headings, found)
     return best
 
 
@@ -105,38 +102,6 @@ def _cells(line: str, separator: str) -> tuple[str, ...]:
         return tuple(cell.strip() for cell in next(csv.reader([line], delimiter=separator), []))
     except csv.Error:
         return ()
-
-
-def read_text(
-    source: SourceFile, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None = None
-) -> TextTable:
-    """What does this text file hold? The matched columns as strings; identity columns are never even read.
-
-    Raises:
-        UnreadableRecords: no line of headings with a known name among the first 60 lines.
-    """
-    text, encoding = as_utf8(source)
-    layout = find_layout(text, known, chosen)
-    if layout is None or not layout.found:
-        first = text[:200].decode("utf-8", errors="replace").splitlines()[0][:80]
-        asked = ", ".join(list(known)[:4])
-        raise UnreadableRecords(
-            [
-                f"{source.name} has no line of headings (it begins “{first}”): the first row should name columns: {asked}."
-            ]
-        )
-    table, misfits = _parse(source.name, text, layout)
-    notes = [] if encoding == "UTF-8" else [f"The file was written in {encoding}; check that ward names look right."]
-    if layout.line:
-        notes.append(f"{layout.line} lines above the headings were skipped as report titles.")
-    return TextTable(
-        columns={name: table.column(heading) for name, heading in layout.found.items()},
-        headings=layout.found,
-        rows=table.num_rows,
-        misfits=misfits,
-        dropped=tuple(heading for heading in layout.headings if is_identity(heading)),
-        notes=tuple(notes),
-    )
 
 
 def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
@@ -152,8 +117,8 @@ def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
     wanted = {heading: unique[layout.headings.index(heading)] for heading in layout.found.values()}
     try:
         table = arrow_csv.read_csv(
-            io.BytesIO(text),
-            read_options=arrow_csv.ReadOptions(skip_rows=layout.line + 1, column_names=unique, block_size=8 * 2**20),
+            pa.BufferReader(pa.py_buffer(text).slice(layout.rows_start)),
+            read_options=arrow_csv.ReadOptions(column_names=unique, block_size=BLOCK_BYTES),
             parse_options=arrow_csv.ParseOptions(
                 delimiter=layout.separator, newlines_in_values=b'"' in text, invalid_row_handler=count
             ),
@@ -167,7 +132,6 @@ def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
     except pa.ArrowInvalid as problem:
         if "Empty CSV" in str(problem):
             raise UnreadableRecords([f"{name} has headings but no rows: export it again with its rows."]) from problem
-        raise UnreadableRecords(
-            [f"{name} can't be read as a table ({str(problem).splitlines()[0][:120]}): export it again as CSV."]
-        ) from problem
+        said = str(problem).splitlines()[0][:120]
+        raise UnreadableRecords([f"{name} can't be read as a table ({said}): export it again as CSV."]) from problem
     return table.rename_columns(list(wanted)), misfits

@@ -10,15 +10,18 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
-from bedplan.data import cleaning, sequence
+from bedplan.data import cleaning, noticing, sequence
+from bedplan.data.choices import IntakeChoices
 from bedplan.data.columns import STAY_HEADINGS
-from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE
-from bedplan.data.reading import TextTable, read_text
+from bedplan.data.dates import DAY_SECONDS, UNREADABLE
+from bedplan.data.places import set_places_aside
+from bedplan.data.reading import read_table
 from bedplan.data.report import IntakeReport
 from bedplan.data.rows import RULES, Rows
-from bedplan.data.source import FileLike, open_source
+from bedplan.data.source import FileLike, SourceFile, open_source
 from bedplan.data.table import StayTable, as_stay_table
-from bedplan.data.windows import find_window
+from bedplan.data.wardlinks import WardLink, propose_links
+from bedplan.data.windows import chosen_window, find_window, seen_until
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -26,14 +29,18 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
+    from bedplan.data.texttable import TextTable
+
 
 @dataclass(frozen=True)
 class Records:
     """The stays of one file, one row a kept stay, without identities.
 
     ``stays``: patient_key (a random code), spell_key, ward, start, end (NaT = unfinished), and whichever of class,
-    method, specialty, age_band, ready, destination the file had. ``set_aside``: the rows that don't count, with their
-    reason and without identities. ``window``: first and last moment for which the file is complete.
+    method, specialty, age_band, destination, ready the file had. ``set_aside``: the rows that don't count, with the
+    reason and without identities. ``window``: first and last moment for which the file is complete; ``seen_until``:
+    up to when unfinished stays were watched. ``links``: ward names that may mean the same ward, for a person to
+    confirm. ``excluded``: periods left out of rates.
 
     Checked by: tests/data/test_records.py
     """
@@ -44,8 +51,11 @@ class Records:
     wards: tuple[str, ...]
     report: IntakeReport
     window: tuple[pd.Timestamp, pd.Timestamp]
+    seen_until: pd.Timestamp
     fingerprint: str
     has_times: bool = True
+    links: tuple[WardLink, ...] = ()
+    excluded: tuple[tuple[pd.Timestamp, pd.Timestamp], ...] = ()
 
     @property
     def short_fingerprint(self) -> str:
@@ -53,17 +63,30 @@ class Records:
         return self.fingerprint[:12]
 
     @property
-    def days(self) -> float:
+    def days(self) -> int:
         """How many days does the file cover?"""
-        return (self.window[1] - self.window[0]) / pd.Timedelta(days=1)
+        return round((self.window[1] - self.window[0]) / pd.Timedelta(days=1))
+
+    @cached_property
+    def calendar(self) -> pd.DatetimeIndex:
+        """Which days does the file cover?"""
+        return pd.date_range(self.window[0], periods=self.days, freq="D")
+
+    @cached_property
+    def counted_days(self) -> NDArray[np.bool_]:
+        """Which of those days count towards rates? All but the excluded periods."""
+        counts = np.ones(self.days, dtype=bool)
+        for first, last in self.excluded:
+            counts &= ~((self.calendar >= first) & (self.calendar <= last))
+        return counts
 
     @cached_property
     def by_ward(self) -> Mapping[str, NDArray[np.int64]]:
         """Where are each ward's stays? Ward → row numbers in ``stays``."""
         codes = self.stays["ward"].cat.codes.to_numpy()
-        order = np.argsort(codes, kind="stable")
-        bounds = np.searchsorted(codes[order], np.arange(len(self.stays["ward"].cat.categories) + 1))
         names = self.stays["ward"].cat.categories
+        order = np.argsort(codes, kind="stable")
+        bounds = np.searchsorted(codes[order], np.arange(len(names) + 1))
         return {name: order[bounds[place] : bounds[place + 1]] for place, name in enumerate(names)}
 
     def of_ward(self, ward: str) -> pd.DataFrame:
@@ -84,120 +107,116 @@ def read_records(
     name: str | None = None,
     columns: Mapping[str, str] | None = None,
     date_order: str | None = None,
+    choices: IntakeChoices | None = None,
 ) -> Records:
     """What do these ward stays say, and what was done to them before they were used?
 
-    ``source`` is a path, bytes or an open binary file; ``columns`` says which heading means what where the headings
-    are unusual (``{"start": "Zugang"}``); ``date_order`` answers the question whether 03/04 is 3 April
-    (``"day first"``) or 4 March (``"month first"``). Nothing leaves the memory of this program; patient keys are
+    ``source`` is a path, bytes or an open binary file (CSV, other separated text, Excel, Parquet); ``columns`` says
+    which heading means what where headings are unusual (``{"start": "Zugang"}``); ``date_order`` answers whether
+    03/04 is 3 April (``"day first"``), 4 March (``"month first"``) or changes within the file (``"row by row"``);
+    ``choices`` holds the other answers a file can ask for. Nothing leaves the memory of this program; keys are
     replaced by random codes, identity columns are not read.
 
     Raises:
         UnreadableRecords: the file can't be used; ``.problems`` says what is wrong, where, and what to do.
 
-    Checked by: tests/data/test_records.py, tests/data/test_bad_files.py
+    Checked by: tests/data/test_records.py, tests/data/test_dirt.py, tests/data/test_bad_files.py
     """
     file = open_source(source, name)
-    text = read_text(file, STAY_HEADINGS, columns)
-    table = as_stay_table(text, file.name, date_order)
-    until = _clean(table)
-    return _finished(table, text, file.name, file.fingerprint, until)
+    chosen = choices or IntakeChoices()
+    text = read_table(file, STAY_HEADINGS, columns)
+    table = as_stay_table(text, file.name, date_order, chosen)
+    until, said = _clean(table, chosen)
+    return _finished(table, text, file, chosen, until, said)
 
 
-def _clean(table: StayTable) -> int:
-    """Apply every rule in its order; return the moment up to which the file was seen."""
-    rows = table.rows
-    now = int(time.time()) + DAY_SECONDS
-    cleaning.check_dates(rows, now)
-    longest = cleaning.longest_stays(rows, max(len(table.wards), 1))
-    cleaning.mend_negative(rows, longest)
-    longest = cleaning.longest_stays(rows, max(len(table.wards), 1))
+def _clean(table: StayTable, choices: IntakeChoices) -> tuple[int, list[str]]:
+    """Apply every rule in its order; return the moment up to which the file was seen, and what was noticed."""
+    rows, notes = table.rows, []
+    cleaning.check_dates(rows, int(time.time()) + DAY_SECONDS)
+    wards = max(len(table.wards), 1)
+    if table.has_times:
+        cleaning.mend_clock_change(rows)
+    cleaning.mend_negative(rows, cleaning.longest_stays(rows, wards))
+    longest = cleaning.longest_stays(rows, wards)
     order = sequence.in_order(rows)
-    until = _seen_until(rows, table.has_times)
     if table.knows_patients:
         order = sequence.drop_repeats(rows, order)
-        order = sequence.close_forgotten(rows, order, longest, until)
-    else:
-        order = sequence.close_forgotten(rows, order, longest, until)
+    until = seen_until(rows, table.has_times)
+    order = sequence.close_forgotten(rows, order, longest, until)
     if table.has_times:
         cleaning.drop_zero_stays(rows)
+    order = order[rows.live[order]]
     if table.knows_patients:
-        order = sequence.join_same_ward(rows, order[rows.live[order]])
+        order = sequence.join_same_ward(rows, order)
         if table.has_times:
             order = sequence.merge_pass_throughs(rows, order)
-        sequence.part_overlaps(rows, order)
-    return until
+        order, long_overlaps = sequence.part_overlaps(rows, order)
+        notes += noticing.sequences(rows, order, table, long_overlaps)
+    set_places_aside(rows, table.wards, table.text.get("class"), choices.places)
+    return until, notes
 
 
-def _seen_until(rows: Rows, has_times: bool) -> int:
-    """Return the last moment anything happened, rounded up to the next midnight."""
-    live = rows.live
-    if not live.any():
-        return 0
-    last = max(int(rows.start[live].max()), int(np.where(rows.is_open, MISSING, rows.end)[live].max()))
-    return -(-(last + (0 if has_times else 1)) // DAY_SECONDS) * DAY_SECONDS
-
-
-def _finished(table: StayTable, text: TextTable, name: str, fingerprint: str, until: int) -> Records:
+def _finished(
+    table: StayTable, text: TextTable, file: SourceFile, choices: IntakeChoices, until: int, said: list[str]
+) -> Records:
     """Build the records and their report from the cleaned rows."""
     rows = table.rows
     live = np.flatnonzero(rows.live)
     if not live.size:
-        raise UnreadableRecords(_why_none(rows, name))
+        raise UnreadableRecords(_why_none(rows, file.name))
     live = live[np.argsort(rows.start[live], kind="stable")]
-    window = find_window(rows.start[live], rows.end[live], until)
-    recorded = rows.recorded_bed_days(until)
-    kept = float((rows.until(until)[live] - rows.start[live]).sum() / DAY_SECONDS)
-    aside = float(recorded[rows.aside].sum())
-    counts = (rows.reason == 0).sum(), ((rows.reason > 0) & ~rows.aside).sum(), rows.aside.sum()
-    report = IntakeReport(
-        rows_in=rows.start.size,
-        used=int(counts[0]),
-        repaired=int(counts[1]),
-        set_aside=int(counts[2]),
-        findings=rows.findings(recorded),
-        bed_days_in=float(recorded.sum()),
-        bed_days_added=kept + aside - float(recorded.sum()),
-        bed_days_used=kept,
-        bed_days_set_aside=aside,
-        dropped_columns=text.dropped,
-        notes=(*text.notes, *table.notes, *_notes(rows, table)),
-    )
-    stays = table.frame(live, rows.start[live], rows.end[live])
+    start, end = rows.start[live], rows.end[live]
+    window = chosen_window(choices.window) or find_window(start, end, until)
+    notes = [*text.notes, *table.notes, *said, *noticing.whole_file(rows, live, table, window, until)]
+    stays = table.frame(live, start, end)
     removed = table.frame(np.flatnonzero(rows.aside))
     sentences = np.array(["", *(rule.sentence for rule in RULES.values())], dtype=object)
     removed.insert(0, "reason", pd.Categorical(sentences[rows.reason[rows.aside]]))
+    links = propose_links(table.wards, rows.ward[live], start, window)
     return Records(
-        name=name,
+        name=file.name,
         stays=stays,
         set_aside=removed.drop(columns=["patient_key", "spell_key"], errors="ignore"),
         wards=tuple(sorted(stays["ward"].cat.categories)),
-        report=report,
+        report=_report(table, text, until, notes + [link.sentence for link in links]),
         window=tuple(pd.Timestamp(int(moment), unit="s") for moment in window),
-        fingerprint=fingerprint,
+        seen_until=pd.Timestamp(int(until), unit="s"),
+        fingerprint=file.fingerprint,
         has_times=table.has_times,
+        links=links,
+        excluded=tuple((pd.Timestamp(first), pd.Timestamp(last)) for first, last in choices.excluded),
     )
 
 
-def _notes(rows: Rows, table: StayTable) -> list[str]:
-    """Return what a reader should know about the whole file."""
-    notes = []
-    unfinished = int((rows.is_open & rows.live).sum())
-    if unfinished:
-        notes.append(f"{unfinished:,} patients were still in; their stays are treated as unfinished, not dropped.")
-    if not table.has_times:
-        notes.append("The file has dates without times: stays are counted in nights, and hours of the day are unknown.")
-    if not table.knows_patients:
-        notes.append("No patient key was found: repeated rows, moves and overlaps of one patient can't be recognised.")
-    return notes
+def _report(table: StayTable, text: TextTable, until: int, notes: list[str]) -> IntakeReport:
+    """Count every row and every bed-day; lines with another number of cells are rows too."""
+    rows = table.rows
+    recorded = rows.recorded_bed_days(until)
+    live = rows.live
+    kept = float((rows.until(until)[live] - rows.start[live]).sum() / DAY_SECONDS)
+    aside, total = float(recorded[rows.aside].sum()), float(recorded.sum())
+    repaired = (rows.reason > 0) & ~rows.aside
+    return IntakeReport(
+        rows_in=rows.start.size + text.misfits,
+        used=int((rows.reason == 0).sum()),
+        repaired=int(repaired.sum()),
+        set_aside=int(rows.aside.sum()) + text.misfits,
+        findings=rows.findings(recorded, misfits=text.misfits),
+        bed_days_in=total,
+        bed_days_added=kept + aside - total,
+        bed_days_used=kept,
+        bed_days_set_aside=aside,
+        bed_days_repaired=float(recorded[repaired].sum()),
+        dropped_columns=table.dropped,
+        notes=tuple(notes),
+    )
 
 
 def _why_none(rows: Rows, name: str) -> list[str]:
     """Say why no row of the file could be used."""
     reasons = sorted(rows.findings(np.zeros(rows.start.size)), key=lambda finding: -finding.rows)
     told = "; ".join(f"{finding.sentence.lower()} ({finding.rows:,} rows)" for finding in reasons[:3])
-    if not told:
-        return [f"{name} has headings but no rows: export it again with its rows."]
     unreadable = (rows.start == UNREADABLE).sum() > rows.start.size // 2
     advice = "write dates as 2024-03-31 14:05" if unreadable else "check the export"
     return [f"Not one of the {rows.start.size:,} rows in {name} can be used: {told}; {advice} and try again."]

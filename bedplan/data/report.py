@@ -36,7 +36,8 @@ class IntakeReport:
 
     *Used* rows count as they stand, *repaired* rows count after the change named, *set aside* rows do not count.
     Bed-days balance too: ``bed_days_in + bed_days_added == bed_days_used + bed_days_set_aside``, where
-    ``bed_days_added`` is what the repairs added (below 0: took away).
+    ``bed_days_added`` is what the repairs added (below 0: took away); ``bed_days_repaired`` are those the repaired
+    rows held as recorded.
 
     Checked by: tests/data/test_records.py
     """
@@ -50,6 +51,7 @@ class IntakeReport:
     bed_days_added: float = 0.0
     bed_days_used: float = 0.0
     bed_days_set_aside: float = 0.0
+    bed_days_repaired: float = 0.0
     dropped_columns: tuple[str, ...] = ()
     notes: tuple[str, ...] = ()
 
@@ -69,4 +71,13 @@ class IntakeReport:
         return (
             f"Of {self.rows_in:,} rows, {self.used:,} are used as they stand, {self.repaired:,} after a repair and "
             f"{self.set_aside:,} ({self.bed_days_set_aside:,.0f} bed-days) are set aside."
+        )
+
+    @property
+    def sentences(self) -> tuple[str, ...]:
+        """What exactly was done, one sentence a reason?"""
+        return tuple(
+            f"{finding.rows:,} {'row was' if finding.rows == 1 else 'rows were'} {finding.outcome} "
+            f"({finding.bed_days:,.1f} bed-days as recorded): {finding.sentence[0].lower()}{finding.sentence[1:]}."
+            for finding in self.findings
         )

@@ -41,6 +41,7 @@ RULES: dict[str, Rule] = {
     "procedure place": Rule(SET_ASIDE, "A place without ward beds, such as a theatre, a lounge or X-ray"),
     "waiting place": Rule(SET_ASIDE, "A waiting place, such as an emergency department: not a ward"),
     "leave": Rule(SET_ASIDE, "Home leave: the patient was not in a bed"),
+    "clock change": Rule(REPAIRED, "Ended in the hour that the clock shows twice in autumn: an hour was added"),
     "ward spelling": Rule(REPAIRED, "The ward's name was written with other spaces or capitals"),
     "ward renamed": Rule(REPAIRED, "The ward's name was changed to the one you chose"),
     "serial date": Rule(REPAIRED, "A date stood as a spreadsheet's day number"),
@@ -112,9 +113,10 @@ class Rows:
         known &= (end <= until) & (self.first_start > 0)
         return np.where(known, end - np.where(known, self.first_start, 0), 0) / DAY_SECONDS
 
-    def findings(self, bed_days: NDArray[np.float64]) -> tuple[Finding, ...]:
-        """Return how many rows met each rule, and their recorded bed-days."""
+    def findings(self, bed_days: NDArray[np.float64], misfits: int = 0) -> tuple[Finding, ...]:
+        """Return how many rows met each rule, and their recorded bed-days; ``misfits`` were never parsed."""
         counts = np.bincount(self.reason, minlength=len(RULES) + 1)
+        counts[CODES["misfit"]] += misfits
         days = np.bincount(self.reason, weights=bed_days, minlength=len(RULES) + 1)
         return tuple(
             Finding(rule.outcome, rule.sentence, int(counts[CODES[key]]), float(days[CODES[key]]))

@@ -5,14 +5,39 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 import numpy as np
+import pandas as pd
 
 from bedplan.data.dates import DAY_SECONDS, MISSING
+from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
+    import datetime as dt
+
     from numpy.typing import NDArray
+
+    from bedplan.data.rows import Rows
 
 THIN = 0.5  # fewer than this share of the usual starts a day: patients already in, not a window of admissions
 MOST_QUIET_ARRIVALS = 20.0  # usual gaps between starts after which a silence means that the file stopped
+
+
+def seen_until(rows: Rows, has_times: bool) -> int:
+    """Up to when was the file watched? The midnight after the last thing that happened; 0 where nothing did."""
+    live = rows.live
+    if not live.any():
+        return 0
+    last = max(int(rows.start[live].max()), int(rows.end[live].max()))
+    return -(-(last + (0 if has_times else 1)) // DAY_SECONDS) * DAY_SECONDS
+
+
+def chosen_window(window: tuple[dt.date, dt.date] | None) -> tuple[int, int] | None:
+    """Return a window somebody chose, first and last day included, in seconds."""
+    if window is None:
+        return None
+    first, last = (int(pd.Timestamp(day).normalize().timestamp()) for day in window)
+    if last < first:
+        raise UnreadableRecords([f"A window from {window[0]} to {window[1]} ends before it starts: swap the two days."])
+    return first, last + DAY_SECONDS
 
 
 def find_window(start: NDArray[np.int64], end: NDArray[np.int64], until: int) -> tuple[int, int]:
@@ -20,6 +45,8 @@ def find_window(start: NDArray[np.int64], end: NDArray[np.int64], until: int) ->
 
     A file of *all stays that touch the window* shows a few early starts (patients already in) and no end before the
     window: it begins on the day of the first end. A file chosen by admission date begins with its first start.
+
+    Checked by: tests/data/test_windows.py
     """
     first_start = int(start.min()) // DAY_SECONDS * DAY_SECONDS
     last = _last_moment(start, until)

@@ -1,0 +1,43 @@
+"""What a planner can decide about a file before it is read."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    import datetime as dt
+    from collections.abc import Mapping
+
+DATE_ORDERS = ("day first", "month first", "row by row")
+
+
+@dataclass(frozen=True, slots=True)
+class IntakeChoices:
+    """Answers to the questions a file can raise; nothing here is guessed for the planner.
+
+    ``ward_names``: name in the file → name to use (a renamed or merged ward). ``places``: ward → what it is
+    (``"bed ward"``, ``"waiting place"``, ``"procedure place"``, ``"virtual"``, ``"cot"``, ``"delivery"``, ``"leave"``),
+    where the program's own list of names is wrong. ``window``: first day and last day (included) for which the file
+    is complete. ``excluded``: periods (first day, last day) left out of rates and rhythms, such as a pandemic.
+    ``time_zone``: the hospital's zone (``"Europe/London"``), to bring times with an offset to its clock.
+    """
+
+    ward_names: Mapping[str, str] = field(default_factory=dict)
+    places: Mapping[str, str] = field(default_factory=dict)
+    window: tuple[dt.date, dt.date] | None = None
+    excluded: tuple[tuple[dt.date, dt.date], ...] = ()
+    time_zone: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class DateQuestion:
+    """Is 03/04 the 3rd of April or the 4th of March? Carried by the error as ``.question``.
+
+    ``examples``: (as written, read day first, read month first); ``ends_before_start``: answer → stays that would end
+    before they start; ``answers``: what ``read_records(date_order=…)`` takes.
+    """
+
+    examples: tuple[tuple[str, str, str], ...]
+    ends_before_start: Mapping[str, int]
+    answers: tuple[str, ...]

@@ -1,0 +1,140 @@
+"""Start and end of every stay, and the question whether 03/04 is in April or in March."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+import pandas as pd
+import pyarrow.compute as pc
+
+from bedplan.data.choices import DATE_ORDERS, DateQuestion
+from bedplan.data.dates import DAY_SECONDS, UNREADABLE, TimesRead, read_times
+from bedplan.errors import UnreadableRecords
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    import pyarrow as pa
+    from numpy.typing import NDArray
+
+    from bedplan.data.texttable import TextTable
+
+DAY_FIRST, MONTH_FIRST, ROW_BY_ROW = DATE_ORDERS
+EPOCHS_APART_DAYS = 1_462  # between the 1900 and the 1904 day numbers of spreadsheets
+IN_ORDER = 0.99  # rank correlation of row number and time, from which a file counts as sorted by time
+
+
+def start_and_end(
+    text: TextTable, name: str, date_order: str | None, time_zone: str | None
+) -> tuple[TimesRead, TimesRead, list[str]]:
+    """When did each stay start and end? From one column each, or a date and a time column, or the hospital's dates.
+
+    Raises:
+        UnreadableRecords: dates whose order somebody must say; the question is in ``.question``.
+    """
+    columns, notes = _columns(text)
+    read = {key: read_times(column, date_order, time_zone) for key, column in columns.items()}
+    day_only = sum(times.day_first_only for times in read.values())
+    month_only = sum(times.month_first_only for times in read.values())
+    unsure = sum(times.either_order for times in read.values())
+    if date_order is None and ((day_only and month_only) or (unsure and not day_only and not month_only)):
+        raise _question(name, columns)
+    if date_order == ROW_BY_ROW:
+        read = _row_by_row(name, columns)
+    elif date_order is None and month_only:
+        read = {key: read_times(column, MONTH_FIRST, time_zone) for key, column in columns.items()}
+    if any(times.had_offset for times in read.values()):
+        done = f"brought to the clock of {time_zone}" if time_zone else "the clock shown was kept"
+        notes.append(f"Times carried an offset from world time; {done}.")
+    start, end, moved = _one_epoch(read["start"], read["end"])
+    return start, end, notes + moved
+
+
+def _columns(text: TextTable) -> tuple[dict[str, pa.ChunkedArray], list[str]]:
+    """Return the text of starts and ends, wherever the file keeps them."""
+    columns, notes = {}, []
+    for key, other in (("start", "admitted"), ("end", "discharged")):
+        day, clock = text.columns.get(f"{key}_date"), text.columns.get(f"{key}_time")
+        if key in text.columns:
+            columns[key] = text.columns[key]
+        elif day is not None:
+            columns[key] = day if clock is None else pc.binary_join_element_wise(day, pc.fill_null(clock, ""), " ")
+        else:
+            columns[key] = text.columns[other]
+            notes.append(
+                f"The hospital's “{text.headings[other]}” stands in for the {key} on the ward: moves between wards are hidden."
+            )
+    return columns, notes
+
+
+def _question(name: str, columns: Mapping[str, pa.ChunkedArray]) -> UnreadableRecords:
+    """Build the question which way round dates are written, with both readings of three rows."""
+    read = {
+        order: tuple(read_times(columns[key], order).seconds for key in ("start", "end"))
+        for order in (DAY_FIRST, MONTH_FIRST)
+    }
+    negative = {order: int(((end < start) & (end > UNREADABLE)).sum()) for order, (start, end) in read.items()}
+    day, month = read[DAY_FIRST][0], read[MONTH_FIRST][0]
+    rows = np.flatnonzero((day != month) & (day > UNREADABLE) & (month > UNREADABLE))[:3]
+    examples = tuple((str(columns["start"][int(row)].as_py()), _day(day[row]), _day(month[row])) for row in rows)
+    shown = "; ".join(f"“{written}” is {first} or {second}" for written, first, second in examples)
+    told = (
+        f"The dates in {name} can be read day first or month first ({shown}). Say which it is: day first, "
+        f"{negative[DAY_FIRST]:,} stays would end before they start; month first, {negative[MONTH_FIRST]:,}."
+    )
+    problem = UnreadableRecords([told])
+    problem.question = DateQuestion(examples, negative, DATE_ORDERS)
+    return problem
+
+
+def _day(seconds: np.int64) -> str:
+    """Return a day in words."""
+    return f"{pd.Timestamp(int(seconds), unit='s'):%d %B %Y}"
+
+
+def _row_by_row(name: str, columns: Mapping[str, pa.ChunkedArray]) -> dict[str, TimesRead]:
+    """Read each start the way that fits the rows around it, each end the way that fits its start."""
+    day = {key: read_times(column, DAY_FIRST) for key, column in columns.items()}
+    month = {key: read_times(column, MONTH_FIRST) for key, column in columns.items()}
+    first, second = day["start"].seconds, month["start"].seconds
+    sure = np.flatnonzero((first == second) & (first > UNREADABLE) | (first <= UNREADABLE) ^ (second <= UNREADABLE))
+    known = np.where(first > UNREADABLE, first, second)
+    if sure.size < 10 or np.corrcoef(np.argsort(np.argsort(known[sure])), np.arange(sure.size))[0, 1] < IN_ORDER:
+        raise UnreadableRecords(
+            [f"{name} is not sorted by start, so its dates can't be read row by row: answer day first or month first."]
+        )
+    around = np.interp(np.arange(first.size), sure, known[sure])
+    start = _nearer(first, second, around)
+    end = _nearer(day["end"].seconds, month["end"].seconds, start.astype(float), not_before=start)
+    return {"start": replace(day["start"], seconds=start), "end": replace(day["end"], seconds=end)}
+
+
+def _nearer(
+    first: NDArray[np.int64],
+    second: NDArray[np.int64],
+    wanted: NDArray[np.float64],
+    not_before: NDArray[np.int64] | None = None,
+) -> NDArray[np.int64]:
+    """Return whichever reading is a date, keeps the order of start and end, and lies nearer."""
+
+    def distance(times: NDArray[np.int64]) -> NDArray[np.float64]:
+        far = np.abs(times.astype(float) - wanted)
+        early = 0.0 if not_before is None else np.where(times < not_before, 1e12, 0.0)
+        return np.where(times > UNREADABLE, far + early, np.inf)
+
+    return np.where(distance(second) < distance(first), second, first)
+
+
+def _one_epoch(start: TimesRead, end: TimesRead) -> tuple[TimesRead, TimesRead, list[str]]:
+    """Move spreadsheet day numbers by four years where that, and only that, puts them among the other dates."""
+    plain = start.seconds[~start.serial & (start.seconds > UNREADABLE)]
+    serial = start.seconds[start.serial]
+    if not plain.size or not serial.size:
+        return start, end, []
+    shift, middle = EPOCHS_APART_DAYS * DAY_SECONDS, float(np.median(serial))
+    if plain.min() <= middle <= plain.max() or not plain.min() <= middle + shift <= plain.max():
+        return start, end, []
+    moved = [replace(one, seconds=np.where(one.serial, one.seconds + shift, one.seconds)) for one in (start, end)]
+    return *moved, ["Spreadsheet day numbers were counted from 1904, as the other dates show."]

@@ -1,0 +1,137 @@
+"""What is worth knowing about a file as a whole, though no row is changed for it."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bedplan.data.dates import DAY_SECONDS, MISSING
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from bedplan.data.rows import Rows
+    from bedplan.data.table import StayTable
+
+HOUR_SECONDS = 3_600
+DEFAULT_SHARE = 0.05  # of stays in one minute of the day: a default, not a time
+FEWEST_STAYS = 200
+END_DAYS = 28
+
+
+def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overlaps: int) -> list[str]:
+    """Say what the patients' ways through the wards show: transfers, gaps, long overlaps."""
+    notes = []
+    if long_overlaps:
+        notes.append(
+            f"{long_overlaps:,} overlaps of one patient's stays were longer than 12 hours: look at those wards."
+        )
+    if not table.knows_spells:
+        return notes
+    order = order[rows.live[order]]
+    same = (rows.spell[order[1:]] == rows.spell[order[:-1]]) & (rows.patient[order[1:]] == rows.patient[order[:-1]])
+    moves = int(same.sum())
+    if moves:
+        notes.append(
+            f"{order.size:,} arrivals on wards are {order.size - moves:,} arrivals in hospital and {moves:,} moves "
+            "between wards; both are counted, apart."
+        )
+    end = rows.end[order[:-1]]
+    gap = same & (end != MISSING) & (rows.start[order[1:]] - end > HOUR_SECONDS)
+    if gap.any():
+        place = np.flatnonzero(gap)
+        pair = rows.ward[order[place]] * len(table.wards) + rows.ward[order[place + 1]]
+        common = int(np.bincount(pair).argmax())
+        first, second = (table.wards[code] for code in divmod(common, len(table.wards)))
+        notes.append(
+            f"{place.size:,} gaps of more than an hour inside a hospital stay (theatre, leave or a ward that is missing), "
+            f"most often between {first} and {second}; no bed is counted in them."
+        )
+    return notes
+
+
+def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, window: tuple[int, int], until: int) -> list[str]:
+    """Say what the stays show together; ``live`` are the kept rows."""
+    start, end = rows.start[live], rows.end[live]
+    notes = []
+    unfinished = int((end == MISSING).sum())
+    if unfinished == 1:
+        notes.append("1 patient was still in; the stay is treated as unfinished, not dropped.")
+    elif unfinished:
+        notes.append(f"{unfinished:,} patients were still in; their stays are treated as unfinished, not dropped.")
+    if table.has_times:
+        notes += _clock_notes(start, end)
+    else:
+        notes.append("The file has dates without times: stays are counted in nights, and hours of the day are unknown.")
+    if not table.knows_patients:
+        notes.append("No patient key was found: repeated rows, moves and overlaps of one patient can't be recognised.")
+    notes += _edge_notes(start, end, window, until)
+    days = (window[1] - window[0]) // DAY_SECONDS
+    if live.size < FEWEST_STAYS or days < 90:
+        notes.append(
+            f"A small file ({live.size:,} stays in {days:,} days): intervals are wide and no season is read from it."
+        )
+    return notes
+
+
+def _clock_notes(start: NDArray[np.int64], end: NDArray[np.int64]) -> list[str]:
+    """Say whether times of day can be trusted."""
+    notes = []
+    if start.size >= FEWEST_STAYS:
+        minutes = np.bincount(start % DAY_SECONDS // 60, minlength=1_440)
+        worst = int(minutes.argmax())
+        if minutes[worst] > DEFAULT_SHARE * start.size:
+            notes.append(
+                f"{minutes[worst] / start.size:.0%} of stays start at {worst // 60:02d}:{worst % 60:02d}, which looks like a "
+                "default and not a time: don't rely on hours of the day."
+            )
+        notes += _world_time_note(start)
+    finished = end != MISSING
+    same_day = finished & (start // DAY_SECONDS == end // DAY_SECONDS)
+    if same_day.any():
+        hours = (end - start)[same_day].sum() / max(float((end - start)[finished].sum()), 1.0)
+        notes.append(
+            f"{same_day.mean():.0%} of stays start and end on one day ({hours:.1%} of bed-hours): no night, but a bed; "
+            "they are counted by the hour."
+        )
+    return notes
+
+
+def _world_time_note(start: NDArray[np.int64]) -> list[str]:
+    """Compare the hours of arrival of summer and winter: a shift of a whole hour betrays world time (UTC)."""
+    month = start.astype("datetime64[s]").astype("datetime64[M]").astype(np.int64) % 12 + 1
+    summer = (month >= 4) & (month <= 10)
+    if min(summer.sum(), (~summer).sum()) < 2_000:
+        return []
+    halves = [np.bincount(start[half] % DAY_SECONDS // 1_800, minlength=48) / half.sum() for half in (summer, ~summer)]
+    misfit = {shift: float(((halves[0] - np.roll(halves[1], shift)) ** 2).sum()) for shift in (-2, 0, 2)}
+    best = min(misfit, key=misfit.get)
+    if best == 0 or misfit[best] > 0.5 * misfit[0]:
+        return []
+    return [
+        "Arrivals come a whole hour apart in summer and winter: the times may be world time (UTC), not the ward's clock."
+    ]
+
+
+def _edge_notes(start: NDArray[np.int64], end: NDArray[np.int64], window: tuple[int, int], until: int) -> list[str]:
+    """Say whether the export seems to leave out patients who were in at the start, or were still in at the end."""
+    finished = end != MISSING
+    stay = float((end[finished] - start[finished]).mean()) if finished.any() else 0.0
+    span = window[1] - window[0]
+    if start.size < FEWEST_STAYS or span < 4 * END_DAYS * DAY_SECONDS or stay < DAY_SECONDS:
+        return []
+    notes = []
+    if start.min() >= window[0]:
+        notes.append(
+            "No stay starts before the first day, so patients who were in already seem to be missing: counts of patients "
+            "present are too low in the first weeks. Ask for all stays that touch the period."
+        )
+    present = float(((start < window[1]) & (np.where(finished, end, until + 1) >= window[1])).sum())
+    usual = float((end[finished] - start[finished]).sum()) / span
+    if present < 0.5 * usual:
+        notes.append(
+            "Far fewer patients than usual are in on the last day: the export seems to be chosen by discharge date and to "
+            "leave out those still in. Counts near the end are too low."
+        )
+    return notes

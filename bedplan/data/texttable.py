@@ -1,0 +1,91 @@
+"""A file's matched columns as text, whatever kind of file they came from."""
+
+from __future__ import annotations
+
+import functools
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import pyarrow.compute as pc
+
+from bedplan.data.columns import is_identity
+from bedplan.errors import UnreadableRecords
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Iterable, Mapping
+
+    import pyarrow as pa
+
+MOST_TITLE_LINES = 60
+
+
+@dataclass(frozen=True, slots=True)
+class TextTable:
+    """The matched columns of a file, every value a string or null, by canonical name.
+
+    ``headings``: canonical name → heading as written. ``misfits``: lines with another number of cells than the
+    headings. ``dropped``: identity columns that were never read. ``unused``: other headings nothing was made of.
+    """
+
+    columns: Mapping[str, pa.ChunkedArray]
+    headings: Mapping[str, str]
+    rows: int
+    misfits: int
+    dropped: tuple[str, ...]
+    unused: tuple[str, ...]
+    notes: tuple[str, ...]
+
+    def strings(self, key: str) -> list[str]:
+        """Return one column as tidy strings, blanks where it is missing."""
+        if key not in self.columns:
+            return [""] * self.rows
+        return [(value or "").strip() for value in self.columns[key].to_pylist()]
+
+
+@dataclass(frozen=True, slots=True)
+class Layout:
+    """Where the headings are (line, and where the rows under it start), what separates them, which are known."""
+
+    line: int
+    rows_start: int
+    separator: str
+    headings: tuple[str, ...]
+    found: Mapping[str, str]
+
+
+def text_table(
+    name: str,
+    layout: Layout,
+    parse: Callable[[], tuple[pa.Table, int]],
+    notes: Iterable[str],
+    asked: list[str],
+) -> TextTable:
+    """Parse the rows under the headings and build the table; wholly empty rows are left out.
+
+    Raises:
+        UnreadableRecords: no known heading, or no row under them.
+    """
+    if not layout.found:
+        raise UnreadableRecords(
+            [f"{name} has no line of headings: its first row should name the columns, such as {', '.join(asked[:5])}."]
+        )
+    table, misfits = parse()
+    written = functools.reduce(pc.or_, [pc.is_valid(column) for column in table.columns])
+    if not pc.all(written).as_py():
+        table = table.filter(written)
+    if table.num_rows + misfits == 0:
+        raise UnreadableRecords([f"{name} has headings but no rows: export it again with its rows."])
+    said = list(notes)
+    if layout.line:
+        said.append(f"{layout.line} lines above the headings were skipped as report titles.")
+    known = set(layout.found.values())
+    dropped = tuple(heading for heading in layout.headings if is_identity(heading) and heading not in known)
+    return TextTable(
+        columns={key: table.column(heading) for key, heading in layout.found.items()},
+        headings=layout.found,
+        rows=table.num_rows,
+        misfits=misfits,
+        dropped=dropped,
+        unused=tuple(heading for heading in layout.headings if heading and heading not in {*known, *dropped}),
+        notes=tuple(said),
+    )
