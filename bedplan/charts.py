@@ -15,9 +15,11 @@ import pandas as pd
 from bedplan import wording
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Mapping
 
-    from bedplan.models import BedCurve, BedPoint
+    from numpy.typing import NDArray
+
+    from bedplan.models import BedCurve
 
 Spec = dict[str, Any]
 Datasets = dict[str, pd.DataFrame]
@@ -47,6 +49,8 @@ NAME_HEIGHTS = {
 }
 ROOM_LEFT_OF_NAMES = 0.7  # the names of the lines stand in the right-hand third, free of marked bed counts
 MARKS = {"today": [1, 0], "average formula": [2, 3], "by the limit": [8, 3]}
+MONTH_COLOURS = {"today": "#D55E00", "by the limit": "#0072B2"}
+NEAR_NOTHING = 0.005
 GREY = "#767676"
 CONFIG: Spec = {
     "view": {"stroke": None},
@@ -137,14 +141,17 @@ def _curve() -> Spec:
 def _months() -> Spec:
     """Build the months: today's beds against the recommended, as two labelled lines of points, and the limit."""
     month = alt.X(
-        "month:O", scale=alt.Scale(domain=list(wording.MONTHS_SHORT)), title=None, axis=alt.Axis(labelAngle=0)
+        "month:O",
+        scale=alt.Scale(domain=list(wording.MONTHS_SHORT)),
+        title=None,
+        axis=alt.Axis(labelAngle=0, labelAlign="center"),
     )
     share = alt.Y(
         "share:Q",
         title=None,
         axis=alt.Axis(format=".0%", tickCount=4, grid=True, gridOpacity=0.3, domain=False, ticks=False),
     )
-    colour = alt.Color("which:N", scale=_scale({"today": "#D55E00", "by the limit": "#0072B2"}), legend=None)
+    colour = alt.Color("which:N", scale=_scale(MONTH_COLOURS), legend=None)
     data = alt.Chart(alt.NamedData("months"))
     line = data.mark_line(strokeWidth=2.5).encode(
         x=month,
@@ -173,21 +180,30 @@ MONTHS: Spec = _months()
 
 
 def curve_data(
-    curves: Sequence[BedCurve], own: str, marked: Mapping[str, int | None], limit: tuple[float, str]
+    curves: Mapping[str, BedCurve],
+    own: tuple[str, NDArray[np.float64]],
+    marked: Mapping[str, int | None],
+    limit: tuple[float, str],
 ) -> Datasets:
-    """Which datasets draw these curves? ``own`` names the ward's own model; ``marked`` a bed count for each mark.
+    """Which datasets draw these curves? ``own`` = (the ward's model, the figure its limit watches, a bed count each).
 
-    The picture is high enough for the share at every marked count, starts where the first line can be named and ends
-    where the own line is near nothing.
+    ``marked`` holds a bed count for each mark. The picture is high enough for the figure at every marked count, starts
+    where the first line can be named and ends where the own line is near nothing.
     """
     counts = [count for count in marked.values() if count is not None]
-    mine = next(curve for curve in curves if curve.model == own)
-    top = min(1.0, max(0.4, 1.15 * mine.at(min(counts)).turn_away_probability))
-    names = pd.DataFrame([_named(curve, top) for curve in curves])
-    last = int(mine.beds[np.argmax(mine.turn_away_probability <= 0.005)] or mine.beds[-1])
+    figures = {model: own[1] if model == own[0] else curve.turn_away_probability for model, curve in curves.items()}
+    beds = curves[own[0]].beds
+    top = min(1.0, max(0.4, 1.15 * float(np.interp(min(counts), beds, own[1]))))
+    names = pd.DataFrame([_named(wording.LINES[model], beds, share, top) for model, share in figures.items()])
+    last = int(beds[np.argmax(own[1] <= NEAR_NOTHING)] or beds[-1])
     low = max(0, min(int(names["beds"].min()), min(counts) - 1))
     high = max(last, low + 8, low + math.ceil((max(counts) + 1 - low) / ROOM_LEFT_OF_NAMES))
-    rows = [_shown(curve, own, (low, high), top) for curve in curves]
+    rows = [
+        _shown(beds, share, (low, high), top).assign(
+            line=wording.LINES[model], own="own" if model == own[0] else "other"
+        )
+        for model, share in figures.items()
+    ]
     marks = [
         {"mark": mark, "beds": count, "label": f"{mark} {count}"} for mark, count in marked.items() if count is not None
     ]
@@ -199,40 +215,37 @@ def curve_data(
     }
 
 
-def _named(curve: BedCurve, top: float) -> dict[str, float | str]:
+def _named(line: str, beds: NDArray[np.int64], share: NDArray[np.float64], top: float) -> dict[str, float | str]:
     """Return where a line carries its name: the point where it passes the height kept for it."""
-    line = wording.LINES[curve.model]
-    share = NAME_HEIGHTS[line] * top
-    return {"line": line, "beds": float(np.interp(-share, -curve.turn_away_probability, curve.beds)), "share": share}
+    height = NAME_HEIGHTS[line] * top
+    return {"line": line, "beds": float(np.interp(-height, -share, beds)), "share": height}
 
 
-def _shown(curve: BedCurve, own: str, window: tuple[int, int], top: float) -> pd.DataFrame:
+def _shown(beds: NDArray[np.int64], share: NDArray[np.float64], window: tuple[int, int], top: float) -> pd.DataFrame:
     """Return one line's points inside the picture, cut exactly at its top edge."""
-    edge = float(np.interp(-top, -curve.turn_away_probability, curve.beds))
-    beds = curve.beds[(curve.beds >= max(window[0], edge)) & (curve.beds <= window[1])].astype(float)
+    edge = float(np.interp(-top, -share, beds))
+    inside = beds[(beds >= max(window[0], edge)) & (beds <= window[1])].astype(float)
     if edge > window[0]:
-        beds = np.concatenate([[edge], beds])
-    share = np.interp(beds, curve.beds, curve.turn_away_probability)
-    kind = "own" if curve.model == own else "other"
-    return pd.DataFrame({"beds": beds, "share": share, "line": wording.LINES[curve.model], "own": kind})
+        inside = np.concatenate([[edge], inside])
+    return pd.DataFrame({"beds": inside, "share": np.interp(inside, beds, share)})
 
 
-def months_data(today: BedPoint, needed: BedPoint | None, limit: float) -> Datasets:
-    """Which datasets draw the months for today's beds and, where there is one, the recommended count?"""
+def months_data(points: Mapping[str, tuple[int, NDArray[np.float64]]], limit: float) -> Datasets:
+    """Which datasets draw the months? ``points``: mark -> (beds, the figure in each month); the formula's is left out."""
     rows, names = [], []
-    for which, point in (("today", today), ("by the limit", needed)):
-        if point is None:
+    for which, (beds, months) in points.items():
+        if which not in MONTH_COLOURS:
             continue
-        label = f"{which} {point.beds}"
         rows += [
-            {"month": month, "share": float(share), "which": which, "label": label}
-            for month, share in zip(wording.MONTHS_SHORT, point.by_month, strict=True)
+            {"month": month, "share": float(share), "which": which, "label": f"{which} {beds}"}
+            for month, share in zip(wording.MONTHS_SHORT, months, strict=True)
         ]
         names.append(rows[-1])
+    first, last = wording.MONTHS_SHORT[0], wording.MONTHS_SHORT[-1]
     return {
         "months": pd.DataFrame(rows),
         "month_names": pd.DataFrame(names),
-        "limit": pd.DataFrame([{"share": limit, "from": wording.MONTHS_SHORT[0], "to": wording.MONTHS_SHORT[-1]}]),
+        "limit": pd.DataFrame([{"share": limit, "from": first, "to": last}]),
     }
 
 

@@ -37,13 +37,14 @@ LINES = {
     "waiting": "patients wait",
 }
 
-# what a full ward does to a patient, by the model's answer: (after "1 in 20", after "patients who")
+# what a full ward does to a patient, by the model's answer: (after "1 in 20", in the short sentence, as a heading)
 WHEN_FULL = {
-    "leaves": ("turned away", "are turned away"),
-    "no chance": ("turned away", "are turned away"),
-    "waits": ("waiting for a bed", "wait for a bed"),
-    "stays anyway": ("finding the ward full", "find the ward full"),
+    "leaves": ("turned away", "turned away", "Patients turned away"),
+    "no chance": ("turned away", "turned away", "Patients turned away"),
+    "waits": ("waiting for a bed", "waiting", "Patients who wait for a bed"),
+    "stays anyway": ("finding the ward full", "finding it full", "Patients who find the ward full"),
 }
+OVER_FULL = ("hours over-full", "hours over-full", "Hours with more patients than beds")
 WHEN_WARD_IS_FULL = {"leaves": "go elsewhere", "waits": "wait, or are placed elsewhere"}
 
 NOT_YET_CHECKED = "Not yet checked against last year."
@@ -137,10 +138,19 @@ def plain(text: str) -> str:
     return text
 
 
-def limit_text(share: float, when_full: str, within: str) -> str:
+def waits_over(hours: float) -> tuple[str, str, str]:
+    """Say a wait as the entries of ``WHEN_FULL`` do."""
+    return (
+        f"waiting over {hours:g} hours",
+        f"waiting {hours:g}+ hours",
+        f"Patients who wait over {hours:g} hours for a bed",
+    )
+
+
+def limit_text(share: float, verb: str, within: str) -> str:
     """Say a limit: "every month within 1 in 20 turned away"."""
     span = "every month" if within == "every_month" else "the year"
-    return f"{span} within {one_in(share)} {WHEN_FULL[when_full][0]}"
+    return f"{span} within {one_in(share)} {verb}"
 
 
 def answer_sentence(
@@ -148,14 +158,13 @@ def answer_sentence(
 ) -> str:
     """Say the answer in at most 30 words: today's beds, the average formula's, the limit's, the worst month.
 
-    ``beds`` = (today, average formula, by the limit or None), ``limit`` = (share, when_full, within), ``worst`` =
+    ``beds`` = (today, average formula, by the limit or None), ``limit`` = (share, its words, within), ``worst`` =
     (month, share there with today's beds). A name of more than two words becomes "This ward".
     """
     today, formula, needed = beds
-    share, when_full, within = limit
+    share, verb, within = limit
     who = name if len(name.split()) <= 2 else "This ward"
     span = "every month" if within == "every_month" else "the year"
-    verb = {"stays anyway": "finding it full", "waits": "waiting"}.get(when_full, "turned away")
     takes = "more" if needed is None else str(needed)
     month, share_there = worst
     return (

@@ -12,7 +12,7 @@ from bedplan.errors import ImpossibleFigure, TargetOutOfReach
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from bedplan.models import BedCurve, BedPoint
+    from bedplan.models import BedCurve, BedPoint, Waits
 
     Array = NDArray[np.float64]
 
@@ -27,11 +27,14 @@ class Rule(Protocol):
     def most(self) -> float:
         """The most the figure may be."""
 
-    def figures(self, curve: BedCurve) -> Array:
-        """Return the figure for each bed count, ``(n,)``."""
+    def over_year(self, curve: BedCurve) -> Array:
+        """Return the year's figure for each bed count, ``(n,)``."""
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the figure for each month and bed count, ``(12, n)``."""
+
+    def figures(self, curve: BedCurve) -> Array:
+        """Return what must not exceed ``most``, for each bed count: the year's figure or the worst month's."""
 
 
 def _checked_share(share: float, name: str) -> None:
@@ -63,9 +66,13 @@ class TurnAwayLimit:
         """The most the share may be."""
         return self.share
 
+    def over_year(self, curve: BedCurve) -> Array:
+        """Return the share who find no free bed over the year."""
+        return curve.turn_away_probability
+
     def figures(self, curve: BedCurve) -> Array:
         """Return the share who find no free bed: the year's, or the worst month's."""
-        return curve.turn_away_probability if self.within == "year" else curve.by_month.max(axis=0)
+        return self.over_year(curve) if self.within == "year" else self.by_month(curve).max(axis=0)
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the share who find no free bed in each month."""
@@ -86,6 +93,10 @@ class OccupancyLimit:
     def most(self) -> float:
         """The most the occupancy may be."""
         return self.share
+
+    def over_year(self, curve: BedCurve) -> Array:
+        """Return the year's occupancy."""
+        return self.figures(curve)
 
     def figures(self, curve: BedCurve) -> Array:
         """Return the year's occupancy; a ward without beds counts as full when anyone wants one."""
@@ -113,18 +124,27 @@ class OverfullLimit:
         """The most the share of hours may be."""
         return self.share_of_hours
 
+    def over_year(self, curve: BedCurve) -> Array:
+        """Return the share of hours over-full over the year."""
+        if curve.overfull_share_of_hours is None:
+            raise _never_over_full()
+        return curve.overfull_share_of_hours
+
     def figures(self, curve: BedCurve) -> Array:
         """Return the share of hours over-full: the year's, or the worst month's."""
-        if curve.overfull_share_of_hours is None or curve.overfull_by_month is None:
-            raise ImpossibleFigure(
-                "This model never puts more patients on a ward than it has beds: use a limit on patients instead."
-            )
-        return curve.overfull_share_of_hours if self.within == "year" else curve.overfull_by_month.max(axis=0)
+        return self.over_year(curve) if self.within == "year" else self.by_month(curve).max(axis=0)
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the share of hours over-full in each month."""
-        self.figures(curve)
+        if curve.overfull_by_month is None:
+            raise _never_over_full()
         return curve.overfull_by_month
+
+
+def _never_over_full() -> ImpossibleFigure:
+    return ImpossibleFigure(
+        "This model never puts more patients on a ward than it has beds: use a limit on patients instead."
+    )
 
 
 @dataclass(frozen=True, slots=True)
@@ -147,17 +167,23 @@ class WaitLimit:
         """The most the share may be."""
         return self.share
 
+    def over_year(self, curve: BedCurve) -> Array:
+        """Return the share waiting longer over the year."""
+        return self._waits(curve).share_over(self.hours)
+
     def figures(self, curve: BedCurve) -> Array:
         """Return the share waiting longer: the year's, or the worst month's."""
-        if curve.waits is None:
-            raise ImpossibleFigure("On this model's wards nobody waits: use a limit on patients turned away instead.")
-        return curve.waits.share_over(self.hours) if self.within == "year" else self.by_month(curve).max(axis=0)
+        return self.over_year(curve) if self.within == "year" else self.by_month(curve).max(axis=0)
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the share waiting longer in each month."""
+        return self._waits(curve).share_over_by_month(self.hours)
+
+    @staticmethod
+    def _waits(curve: BedCurve) -> Waits:
         if curve.waits is None:
-            self.figures(curve)
-        return curve.waits.share_over_by_month(self.hours)
+            raise ImpossibleFigure("On this model's wards nobody waits: use a limit on patients turned away instead.")
+        return curve.waits
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -63,16 +63,16 @@ def _ward(case: WardCase, number: int) -> str:
     months = drawing(case, f"months{number}", "months")
     table = case.table()
     caption = (
-        f"{case.question}, as a share over the year, at each number of staffed beds. "
-        f"The ward's own line ({wording.LINES[case.ward.model]}) is the thick one."
+        f"{case.words[2]}, as a share over the year, at each number of staffed beds. "
+        f"The ward's own line ({wording.LINES[case.model]}) is the thick one."
     )
     parts = [
         f"<h2>{html.escape(case.ward.name)}</h2>",
         f'<p class="answer">{html.escape(case.sentence())}</p>',
         f"<figure>{curve}<figcaption>{caption}</figcaption></figure>",
-        f"<p>{case.question}:</p>",
+        f"<p>{case.words[2]}:</p>",
         _table(tuple(table[0]), [tuple(row.values()) for row in table]),
-        f"<figure>{months}<figcaption>{case.question}, as a share, month by month.</figcaption></figure>",
+        f"<figure>{months}<figcaption>{case.words[2]}, as a share, month by month.</figcaption></figure>",
         "<h3>Every bed count near the decision</h3>",
         _curve_table(case),
         "<h3>What this rests on</h3>",
@@ -129,11 +129,10 @@ def drawing(case: WardCase, prefix: str, kind: str) -> str:
     Checked by: tests/export/test_html.py
     """
     if kind == "curve":
-        data = charts.curve_data(list(case.curves.values()), case.ward.model, case.marked(), case.limit())
+        data = charts.curve_data(case.curves, (case.model, case.over_year), case.marked(), case.limit())
         spec, title = charts.CURVE, f"{case.ward.name}: share of patients at each number of staffed beds"
     else:
-        needed = None if case.decision is None else case.decision.point
-        data = charts.months_data(case.curve.at(case.ward.beds), needed, case.rule.most)
+        data = charts.months_data(case.months(), case.rule.most)
         spec, title = charts.MONTHS, f"{case.ward.name}: share of patients month by month"
     drawn = vl_convert.vegalite_to_svg(charts.printed(spec, data), vl_version=VEGA_LITE, allowed_base_urls=[])
     numbers: dict[str, int] = {}  # the engine numbers its ids on from drawing to drawing

@@ -7,17 +7,13 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from bedplan import wording
-from bedplan.decision import decide, patients_per_year
-from bedplan.errors import ImpossibleFigure, TargetOutOfReach
-from bedplan.models import MODELS
+from bedplan.errors import ImpossibleFigure
 
 if TYPE_CHECKING:
     import datetime as dt
-    from collections.abc import Mapping
 
     from bedplan.data import Records
-    from bedplan.decision import Decision, Rule, Ward
-    from bedplan.models import BedCurve
+    from bedplan.export.case import WardCase
 
 SMALLEST_COUNT_SHOWN = 8  # counts of 1 to 7 are withheld: common disclosure practice for health statistics
 
@@ -82,105 +78,6 @@ def count_or_withheld(count: int) -> str:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class WardCase:
-    """One ward's case: the ward, its curve, the limit, the decision (None where out of reach), and what it rests on.
-
-    ``curves`` maps every model's name to its curve, the ward's own included. ``assumptions`` are (what, value, where
-    from); ``settings`` (slider, value).
-    """
-
-    ward: Ward
-    curves: Mapping[str, BedCurve]
-    rule: Rule
-    decision: Decision | None
-    assumptions: tuple[tuple[str, str, str], ...] = ()
-    settings: tuple[tuple[str, str], ...] = ()
-
-    @property
-    def curve(self) -> BedCurve:
-        """The curve of the ward's own model."""
-        return self.curves[self.ward.model]
-
-    @property
-    def within(self) -> str:
-        """Whether the limit holds for the year or for every month."""
-        return getattr(self.rule, "within", "year")
-
-    def sentence(self) -> str:
-        """Say the answer in at most 30 words."""
-        today = self.curve.at(self.ward.beds)
-        needed = None if self.decision is None else self.decision.beds
-        return wording.answer_sentence(
-            self.ward.name,
-            (self.ward.beds, self.ward.average_formula_beds, needed),
-            (self.rule.most, self.curve.when_full, self.within),
-            (today.worst_month, float(today.by_month[today.worst_month])),
-        )
-
-    def marked(self) -> dict[str, int | None]:
-        """Return the bed counts to mark on a chart."""
-        return {
-            "today": self.ward.beds,
-            "average formula": self.ward.average_formula_beds,
-            "by the limit": None if self.decision is None else self.decision.beds,
-        }
-
-    def limit(self) -> tuple[float, str]:
-        """Return the limit as drawn: its share and its label."""
-        return self.rule.most, f"limit: {wording.one_in(self.rule.most)}"
-
-    @property
-    def question(self) -> str:
-        """What the figures of this ward count: "Patients who find the ward full"."""
-        return f"Patients who {wording.WHEN_FULL[self.curve.when_full][1]}"
-
-    def table(self) -> list[dict[str, str]]:
-        """Return today's, the formula's and the limit's bed counts side by side, in words."""
-        rows = []
-        for mark, beds in self.marked().items():
-            if beds is None:
-                continue
-            point = self.curve.at(beds)
-            worst, best = point.worst_month, point.best_month
-            rows.append(
-                {
-                    "": mark.capitalize(),
-                    "Staffed beds": str(beds),
-                    "Patients a year": wording.patients_per_year(patients_per_year(self.curve, beds)),
-                    "As a share": wording.percent(point.turn_away_probability),
-                    "In words": wording.one_in(point.turn_away_probability),
-                    "Highest month": f"{wording.MONTHS_SHORT[worst]} {wording.percent(float(point.by_month[worst]))}",
-                    "Lowest month": f"{wording.MONTHS_SHORT[best]} {wording.percent(float(point.by_month[best]))}",
-                    "Occupancy that results": wording.percent(point.occupancy, 0),
-                }
-            )
-        return rows
-
-    def notes(self) -> tuple[str, ...]:
-        """Return the notes of the ward, of its curve and of the models drawn beside it, each once."""
-        found = [*self.ward.notes, *self.curve.notes]
-        return tuple(dict.fromkeys(found))
-
-
-def case_for(
-    ward: Ward,
-    rule: Rule,
-    assumptions: tuple[tuple[str, str, str], ...] = (),
-    settings: tuple[tuple[str, str], ...] = (),
-) -> WardCase:
-    """What is the case for this ward under this limit? Every model's curve, and the decision on the ward's own.
-
-    Checked by: tests/export/test_justification.py
-    """
-    curves = {model: ward.curve(model) for model in MODELS}
-    try:
-        decision = decide(curves[ward.model], rule)
-    except TargetOutOfReach:
-        decision = None
-    return WardCase(ward, curves, rule, decision, assumptions, settings)
-
-
-@dataclass(frozen=True, slots=True, eq=False)
 class Justification:
     """Everything a bed-count justification says, ready for any format.
 
@@ -210,17 +107,17 @@ class Justification:
 
     @staticmethod
     def _ask(case: WardCase) -> str:
-        limit = wording.limit_text(case.rule.most, case.curve.when_full, case.within)
-        today = wording.patients_per_year(patients_per_year(case.curve, case.ward.beds))
+        limit = wording.limit_text(case.rule.most, case.words[0], case.within)
+        today = case.a_year(case.ward.beds)
         if case.decision is None:
             return (
                 f"{case.ward.name}: no bed count looked at keeps {limit}. "
-                f"{case.question}: with today's {case.ward.beds} staffed beds {today} a year."
+                f"{case.words[2]}: with today's {case.ward.beds} staffed beds {today} a year."
             )
-        then = wording.patients_per_year(patients_per_year(case.curve, case.decision.beds))
+        then = case.a_year(case.decision.beds)
         return (
             f"{case.ward.name}: approve {case.decision.beds} staffed beds (today {case.ward.beds}) to keep {limit}. "
-            f"{case.question}: {then} a year instead of {today}."
+            f"{case.words[2]}: {then} a year instead of {today}."
         )
 
     def reproducibility(self) -> tuple[tuple[str, str], ...]:
@@ -233,7 +130,8 @@ class Justification:
         for case in self.cases:
             settings = "; ".join(f"{name}: {value}" for name, value in case.settings) or "as recorded"
             rows.append((f"Settings, {case.ward.name}", settings))
-            rows.append((f"Model, {case.ward.name}", f"{case.ward.model} ({wording.LINES[case.ward.model]})"))
+            rows.append((f"Limit, {case.ward.name}", f"{case.rule!r}"))
+            rows.append((f"Model, {case.ward.name}", f"{case.model} ({wording.LINES[case.model]})"))
         rows.append(("Random numbers", "none used"))
         rows.append(("Program", f"{wording.PROGRAM} {wording.VERSION}"))
         rows.append(("Date produced", self.prepared.isoformat()))
@@ -245,5 +143,5 @@ class Justification:
         digest = hashlib.sha256(self.source.fingerprint.encode())
         for case in self.cases:
             digest.update(f"{case.ward.name}|{case.ward.beds}|{case.rule!r}|{case.settings!r}".encode())
-            digest.update(case.curve.turn_away_probability.round(9).tobytes())
+            digest.update(case.over_year.round(9).tobytes())
         return digest.hexdigest()[:12]

@@ -9,7 +9,6 @@ from typing import TYPE_CHECKING
 import xlsxwriter
 
 from bedplan import wording
-from bedplan.decision import patients_per_year
 from bedplan.export.justification import count_or_withheld
 
 if TYPE_CHECKING:
@@ -82,12 +81,12 @@ def as_xlsx(justification: Justification) -> bytes:
     """
     book = _Book(justification.prepared)
     book.sheet("Decision", ("Decision",), [(line,) for line in justification.decision_lines()])
-    book.sheet("Wards", _WARDS, [_ward_row(case) for case in justification.cases], shares=(5, 6, 7, 8))
+    book.sheet("Wards", _WARDS, [_ward_row(case) for case in justification.cases], shares=(6, 7, 8, 9))
     for case in justification.cases:
-        heading = ("Staffed beds", *(wording.LINES[name] for name in case.curves))
+        heading = ("Staffed beds", case.words[2], *(wording.LINES[name] for name in case.curves))
         book.sheet(f"Curve {case.ward.name}", heading, _curve_rows(case), shares=range(1, len(heading)))
         months = ("Staffed beds", *wording.MONTHS)
-        rows = [(int(beds), *map(float, case.curve.by_month[:, at])) for at, beds in enumerate(case.curve.beds)]
+        rows = [(int(beds), *map(float, case.by_month[:, at])) for at, beds in enumerate(case.curve.beds)]
         book.sheet(f"Months {case.ward.name}", months, rows, shares=range(1, 13))
     assumptions = [(case.ward.name, *row) for case in justification.cases for row in case.assumptions]
     settings = [(case.ward.name, *row, "set by the planner") for case in justification.cases for row in case.settings]
@@ -101,32 +100,33 @@ _WARDS = (
     "Staffed beds today",
     "Average formula",
     "By the limit",
-    "Patients a year today",
-    "Share today",
-    "Share in the worst month today",
-    "Share by the limit",
+    "What is counted",
+    "A year, with today's beds",
+    "As a share, today",
+    "In the worst month, today",
+    "As a share, by the limit",
     "Occupancy that results",
 )
 
 
 def _ward_row(case: WardCase) -> tuple[Cell, ...]:
-    today = case.curve.at(case.ward.beds)
     chosen = case.decision
     return (
         case.ward.name,
         case.ward.beds,
         case.ward.average_formula_beds,
         "out of reach" if chosen is None else chosen.beds,
-        patients_per_year(case.curve, case.ward.beds),
-        today.turn_away_probability,
-        float(today.by_month[today.worst_month]),
-        "" if chosen is None else chosen.point.turn_away_probability,
+        case.words[2],
+        case.count_a_year(case.ward.beds),
+        case.share_at(case.ward.beds),
+        float(case.months_at(case.ward.beds).max()),
+        "" if chosen is None else case.share_at(chosen.beds),
         "" if chosen is None else chosen.point.occupancy,
     )
 
 
 def _curve_rows(case: WardCase) -> list[tuple[Cell, ...]]:
-    columns = [curve.turn_away_probability for curve in case.curves.values()]
+    columns = [case.over_year, *(curve.turn_away_probability for curve in case.curves.values())]
     return [(int(beds), *(float(column[at]) for column in columns)) for at, beds in enumerate(case.curve.beds)]
 
 

@@ -60,7 +60,7 @@ controls.show_origin()
 cases = []
 for name in controls.ward_names():
     try:
-        cases.append(controls.case_of(name, controls.rule()))
+        cases.append(controls.case_of(name))
     except BedplanError as error:
         st.warning(f"{wording.plain(name)}: {wording.plain(str(error))}")
 if cases:
@@ -70,8 +70,8 @@ if cases:
     st.header(
         f"The next bed spares most on {wording.plain(str(first['Ward']))}: {spared} patients a year.", anchor=False
     )
-    limit = controls.rule()
-    st.caption(f"Limit: {wording.one_in(limit.most)}, {controls.WITHIN[limit.within]}. Set it on the page One ward.")
+    within = controls.WITHIN[st.session_state.get("within", "every_month")]
+    st.caption(f"Limit: {wording.one_in(controls.limit_share())}, {within}. Set it on the page One ward.")
     st.dataframe(table, column_config=COLUMNS, hide_index=True, width="stretch", height=35 * (len(table) + 1) + 3)
     st.markdown(f"**{total(table)}**")
     st.caption(

@@ -13,12 +13,15 @@ import streamlit as st
 
 from bedplan import wording
 from bedplan.data import Capacity, Records, estimate_demand, read_capacity, read_records
-from bedplan.decision import TurnAwayLimit
+from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
 from bedplan.export import Source, WardCase, case_for
+from bedplan.models import MODELS
 from bedplan.plan import Baseline, Changes, from_estimate, planned_ward
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Callable, Mapping
+
+    from bedplan.decision import Rule
 
 DEMO = Path(__file__).resolve().parents[2] / "demo_data"
 # What the wards of the invented demo hospital do when full; for other records the planner answers.
@@ -33,6 +36,13 @@ SLIDERS: Mapping[str, tuple[str, int, int, int, int, str]] = {
     "growth": ("Growth to next year", -10, 20, 0, 1, "%+d %%"),
 }
 LIMIT = ("Limit", 1, 20, 5, 1, "%d %%")
+# what a limit watches on a ward whose patients wait: key -> (label, the rule it makes)
+MEASURES: Mapping[str, tuple[str, Callable[[float, Any], Rule]]] = {
+    "full": ("patients who find the ward full", TurnAwayLimit),
+    "wait4": ("patients who wait over 4 hours", lambda share, within: WaitLimit(4, share, within)),
+    "wait12": ("patients who wait over 12 hours", lambda share, within: WaitLimit(12, share, within)),
+    "over": ("hours with more patients than beds", OverfullLimit),
+}
 WITHIN = {"every_month": "in every month", "year": "over the year"}
 FINGERPRINT_SHOWN = 12
 PERSIST: Mapping[str, str] = {"bind": "query-params", "persist_state": "session"}
@@ -109,7 +119,7 @@ def settings_of(name: str) -> dict[str, Any]:
     return st.session_state.setdefault("settings", {}).get(name) or starting_values(name)
 
 
-def case_of(name: str, rule: TurnAwayLimit) -> WardCase:
+def case_of(name: str) -> WardCase:
     """Return one ward's case under its own settings and the limit of this session."""
     values, base = settings_of(name), baseline(name)
     changes = Changes(
@@ -120,13 +130,24 @@ def case_of(name: str, rule: TurnAwayLimit) -> WardCase:
         growth=values["growth"] / 100,
     )
     ward = planned_ward(base, int(values["beds"]), values["full"], changes)
-    return case_for(ward, rule, base.facts, changes.rows())
+    return case_for(ward, rule_for(ward.when_full), base.facts, changes.rows())
 
 
-def rule() -> TurnAwayLimit:
-    """Return the limit of this session."""
-    share = st.session_state.get("limit", LIMIT[3])
-    return TurnAwayLimit(share / 100, within=st.session_state.get("within", "every_month"))
+def measures() -> list[str]:
+    """Return what a limit can watch on a ward whose patients wait."""
+    return [key for key in MEASURES if "waiting" in MODELS or not key.startswith("wait")]
+
+
+def limit_share() -> float:
+    """Return the limit of this session, as a share."""
+    return st.session_state.get("limit", LIMIT[3]) / 100
+
+
+def rule_for(when_full: str) -> Rule:
+    """Return the limit of this session for wards whose patients leave, or wait, when they are full."""
+    within = st.session_state.get("within", "every_month")
+    measure = st.session_state.get("measure", "full") if when_full == "waits" else "full"
+    return MEASURES[measure][1](limit_share(), within)
 
 
 def source(wards: list[str]) -> Source:

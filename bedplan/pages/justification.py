@@ -26,7 +26,7 @@ st.session_state["justified"] = [name for name in st.session_state["justified"] 
 wards = st.multiselect("Wards in this justification", names, key="justified", persist_state="session")
 try:
     paper = Justification(
-        tuple(controls.case_of(name, controls.rule()) for name in wards),
+        tuple(controls.case_of(name) for name in wards),
         controls.source(wards),
         dt.datetime.now().astimezone().date(),
     )

@@ -62,10 +62,23 @@ def inputs() -> str:
     )
     st.number_input("Staffed beds today", 0, 2000, starting["beds"], 1, key="beds", **controls.PERSIST)
     _, low, high, first, step, form = controls.LIMIT
-    share = st.session_state.get("limit", first) / 100
-    verb = wording.WHEN_FULL["leaves" if st.session_state["full"] == "leaves" else "stays anyway"][0]
+    if st.session_state["full"] == "waits":
+        st.selectbox(
+            "The limit is on",
+            controls.measures(),
+            format_func=lambda key: controls.MEASURES[key][0],
+            key="measure",
+            **controls.PERSIST,
+        )
     st.slider(
-        f"Limit: {wording.one_in(share)} {verb}", low, high, first, step, format=form, key="limit", **controls.PERSIST
+        f"Limit: {wording.one_in(controls.limit_share())}",
+        low,
+        high,
+        first,
+        step,
+        format=form,
+        key="limit",
+        **controls.PERSIST,
     )
     st.segmented_control(
         "The limit holds",
@@ -105,17 +118,16 @@ def answer(case: WardCase) -> None:
     st.header(wording.plain(case.sentence()), anchor=False)
     side_by_side = st.container(horizontal=True, gap="medium")
     with side_by_side.container(width=540):
-        st.markdown(f"**{case.question}, over the year**")
-        data = charts.curve_data(list(case.curves.values()), case.ward.model, case.marked(), case.limit())
+        st.markdown(f"**{case.words[2]}, over the year**")
+        data = charts.curve_data(case.curves, (case.model, case.over_year), case.marked(), case.limit())
         with st.container(key="curve"):
             st.vega_lite_chart(charts.live(charts.CURVE, data), theme=None, width="stretch", alt=case.sentence())
     with side_by_side.container(width=400):
-        st.markdown(f"**{case.question}**")
+        st.markdown(f"**{case.words[2]}**")
         st.table(controls.facts_table(case))
         st.caption("The thick line is the one that fits this ward; the thin ones are what other formulas would say.")
-    st.markdown(f"**{case.question}, month by month**")
-    needed = None if case.decision is None else case.decision.point
-    months = charts.months_data(case.curve.at(case.ward.beds), needed, case.rule.most)
+    st.markdown(f"**{case.words[2]}, month by month**")
+    months = charts.months_data(case.months(), case.rule.most)
     st.vega_lite_chart(charts.live(charts.MONTHS, months), theme=None, width="stretch", alt="Share month by month")
 
 
@@ -125,7 +137,7 @@ with st.sidebar:
 remember(ward_name)
 controls.keep_address()
 try:
-    ward_case = controls.case_of(ward_name, controls.rule())
+    ward_case = controls.case_of(ward_name)
     answer(ward_case)
     notes(ward_case, controls.settings_of(ward_name))
 except BedplanError as error:

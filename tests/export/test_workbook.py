@@ -26,9 +26,10 @@ def test_curve_sheet_is_the_curve(justification: Justification, book: openpyxl.W
     case = justification.cases[0]
     rows = list(book["Curve Curlew"].iter_rows(values_only=True))
 
-    assert list(rows[0]) == ["Staffed beds", *(wording.LINES[name] for name in case.curves)]
+    assert list(rows[0]) == ["Staffed beds", "Patients turned away", *(wording.LINES[name] for name in case.curves)]
     assert [row[0] for row in rows[1:]] == case.curve.beds.tolist()
-    column = 1 + list(case.curves).index(case.ward.model)
+    assert [row[1] for row in rows[1:]] == pytest.approx(case.over_year.tolist(), abs=1e-12)
+    column = 2 + list(case.curves).index(case.ward.model)
     assert [row[column] for row in rows[1:]] == pytest.approx(case.curve.turn_away_probability.tolist(), abs=1e-12)
 
 

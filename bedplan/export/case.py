@@ -1,0 +1,163 @@
+"""One ward's case: its curves, the figure its limit watches, and the decision."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bedplan import wording
+from bedplan.decision import OverfullLimit, WaitLimit, decide
+from bedplan.errors import TargetOutOfReach
+from bedplan.models import MODELS
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from numpy.typing import NDArray
+
+    from bedplan.decision import Decision, Rule, Ward
+    from bedplan.models import BedCurve
+
+DAYS_PER_YEAR = 365.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class WardCase:
+    """One ward's case: the ward, every model's curve, the limit, the decision (None where out of reach), what it rests on.
+
+    ``assumptions`` are (what, value, where from); ``settings`` (slider, value). The figure that the limit watches, for
+    each bed count of the ward's own curve, is ``over_year`` ``(n,)`` and ``by_month`` ``(12, n)``.
+    """
+
+    ward: Ward
+    curves: Mapping[str, BedCurve]
+    rule: Rule
+    decision: Decision | None
+    assumptions: tuple[tuple[str, str, str], ...] = ()
+    settings: tuple[tuple[str, str], ...] = ()
+
+    @property
+    def model(self) -> str:
+        """The name of the model the answer is read on: the ward's own, or the one that knows waits."""
+        return "waiting" if isinstance(self.rule, WaitLimit) else self.ward.model
+
+    @property
+    def curve(self) -> BedCurve:
+        """The curve of that model."""
+        return self.curves[self.model]
+
+    @property
+    def over_year(self) -> NDArray[np.float64]:
+        """The watched figure over the year, for each bed count."""
+        return self.rule.over_year(self.curve)
+
+    @property
+    def by_month(self) -> NDArray[np.float64]:
+        """The watched figure in each month, January first, for each bed count."""
+        return self.rule.by_month(self.curve)
+
+    @property
+    def within(self) -> str:
+        """Whether the limit holds for the year or for every month."""
+        return getattr(self.rule, "within", "year")
+
+    @property
+    def words(self) -> tuple[str, str, str]:
+        """How the figure is said: after "1 in 20", in the short sentence, and as a heading."""
+        if isinstance(self.rule, OverfullLimit):
+            return wording.OVER_FULL
+        if isinstance(self.rule, WaitLimit):
+            return wording.waits_over(self.rule.hours)
+        return wording.WHEN_FULL[self.curve.when_full]
+
+    def months_at(self, beds: int) -> NDArray[np.float64]:
+        """Return the watched figure in each month at one bed count, ``(12,)``."""
+        return self.by_month[:, int(np.searchsorted(self.curve.beds, beds))]
+
+    def share_at(self, beds: int) -> float:
+        """Return the watched figure over the year at one bed count."""
+        return float(self.over_year[int(np.searchsorted(self.curve.beds, beds))])
+
+    def count_a_year(self, beds: int) -> float:
+        """Return the watched figure as patients a year, or as days' worth of over-full hours a year."""
+        each_day = 1.0 if isinstance(self.rule, OverfullLimit) else self.ward.demand.total_arrivals_per_day
+        return self.share_at(beds) * DAYS_PER_YEAR * each_day
+
+    def a_year(self, beds: int) -> str:
+        """Say that count."""
+        said = wording.patients_per_year(self.count_a_year(beds))
+        return f"{said} days" if isinstance(self.rule, OverfullLimit) else said
+
+    def sentence(self) -> str:
+        """Say the answer in at most 30 words."""
+        months = self.months_at(self.ward.beds)
+        worst = int(np.argmax(months))
+        needed = None if self.decision is None else self.decision.beds
+        return wording.answer_sentence(
+            self.ward.name,
+            (self.ward.beds, self.ward.average_formula_beds, needed),
+            (self.rule.most, self.words[1], self.within),
+            (worst, float(months[worst])),
+        )
+
+    def marked(self) -> dict[str, int | None]:
+        """Return the bed counts to mark on a chart."""
+        return {
+            "today": self.ward.beds,
+            "average formula": self.ward.average_formula_beds,
+            "by the limit": None if self.decision is None else self.decision.beds,
+        }
+
+    def months(self) -> dict[str, tuple[int, NDArray[np.float64]]]:
+        """Return (beds, the watched figure in each month) for each marked bed count."""
+        return {mark: (beds, self.months_at(beds)) for mark, beds in self.marked().items() if beds is not None}
+
+    def limit(self) -> tuple[float, str]:
+        """Return the limit as drawn: its share and its label."""
+        return self.rule.most, f"limit: {wording.one_in(self.rule.most)}"
+
+    def table(self) -> list[dict[str, str]]:
+        """Return today's, the formula's and the limit's bed counts side by side, in words."""
+        return [self._row(mark, beds) for mark, beds in self.marked().items() if beds is not None]
+
+    def _row(self, mark: str, beds: int) -> dict[str, str]:
+        months, share = self.months_at(beds), self.share_at(beds)
+        worst, best = int(np.argmax(months)), int(np.argmin(months))
+        return {
+            "": mark.capitalize(),
+            "Staffed beds": str(beds),
+            "A year": self.a_year(beds),
+            "As a share": wording.percent(share),
+            "In words": wording.one_in(share),
+            "Highest month": f"{wording.MONTHS_SHORT[worst]} {wording.percent(float(months[worst]))}",
+            "Lowest month": f"{wording.MONTHS_SHORT[best]} {wording.percent(float(months[best]))}",
+            "Occupancy that results": wording.percent(self.curve.at(beds).occupancy, 0),
+        }
+
+    def notes(self) -> tuple[str, ...]:
+        """Return the notes of the ward and of its curve, each once."""
+        return tuple(dict.fromkeys([*self.ward.notes, *self.curve.notes]))
+
+
+def case_for(
+    ward: Ward,
+    rule: Rule,
+    assumptions: tuple[tuple[str, str, str], ...] = (),
+    settings: tuple[tuple[str, str], ...] = (),
+) -> WardCase:
+    """What is the case for this ward under this limit? Every model's curve, and the decision on the ward's own.
+
+    Raises:
+        ImpossibleFigure: the limit watches a figure that the ward's model does not know.
+
+    Checked by: tests/export/test_justification.py
+    """
+    curves = {model: ward.curve(model) for model in MODELS}
+    case = WardCase(ward, curves, rule, None, assumptions, settings)
+    try:
+        decision = decide(case.curve, rule)
+    except TargetOutOfReach:
+        decision = None
+    return WardCase(ward, curves, rule, decision, assumptions, settings)
