@@ -6,7 +6,7 @@ department's queue fills Heron; at 07:00 the day's booked cases are accepted or 
 new patients are placed. Times are whole minutes, and no bed is taken before the minute in
 which it came free, so that the records can be read at any minute, not only on the hour.
 Only Sandpiper can hold more patients than beds, between 13:00 and 20:00: a booked case comes
-back from theatre at 13:00 to a bed whose patient is due out by 20:00.
+back from theatre soon after 13:00 to a bed whose patient is due out by 20:00.
 """
 
 from collections import deque
@@ -25,11 +25,17 @@ from demo_data.hospital import (
     Hospital,
     month_factor,
 )
-from demo_data.patients import Patient, day_of, draw_patients, minute_at, stay_end
+from demo_data.patients import MINUTES_A_DAY, Patient, day_of, draw_patients, minute_at, stay_end
 
 BOOKED_ACCEPTED_HOUR, BOOKED_START_HOUR, BOOKED_LEAVERS_BY_HOUR = 7, 13, 20
 OTHER_PLACES = {"Teal": ("Plover", "Kestrel"), "Kestrel": ("Curlew", "Plover"), "Plover": ("Curlew", "Kestrel")}
 FREE_BEDS_NEEDED = {"Curlew": 2}  # before Curlew takes another ward's patient
+
+
+def booked_start(want: Want) -> int:
+    """When on its day does a booked case come to its bed? Within the hour from 13:00."""
+    midnight = want.wanted_at - want.wanted_at % MINUTES_A_DAY
+    return midnight + BOOKED_START_HOUR * 60 + int(60 * want.chances.move_minute)
 
 
 class Flow:
@@ -169,7 +175,7 @@ class Flow:
             earliest = max(heron.take(), hour * 60)
             self._place(want, "Heron", earliest + int(want.chances.move_minute * ((hour + 1) * 60 - earliest)))
 
-    # 4. Booked cases: accepted or cancelled at 07:00, in the bed from 13:00.
+    # 4. Booked cases: accepted or cancelled at 07:00, in the bed in the hour from 13:00.
 
     def _booked(self, hour: int, asking: list[Want]) -> None:
         """Accept as many booked cases as there are beds free or due to be, and cancel the rest."""
@@ -184,7 +190,7 @@ class Flow:
         if hour % 24 == BOOKED_START_HOUR:
             for want in self.accepted:
                 sandpiper.add()
-                self._place(want, "Sandpiper", hour * 60)
+                self._place(want, "Sandpiper", booked_start(want))
             self.accepted = []
 
     # 5. New patients are placed.

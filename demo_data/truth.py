@@ -19,7 +19,7 @@ number of this ward's patients, that is of those who want *this* ward, wherever 
   the emergency department's queue for Heron, or (stroke patients sent to Heron because
   Teal was full) on Heron during their stay there;
 - `beds_wanted`, the true load: each want of first choice, those turned away and cancelled
-  included, counted from the minute the ward was wanted (booked cases from 13:00) for as
+  included, counted from the minute the ward was wanted (booked cases from the hour of 13:00) for as
   long as the patient would have stayed had a bed been free at that minute. Nobody waits,
   nobody lies elsewhere, nobody is lost: it is the load that beds on this ward would have
   to carry if there had always been one.
@@ -33,7 +33,7 @@ from pathlib import Path
 
 from demo_data.beds import Want
 from demo_data.files import DAYS, WINDOW_END, WINDOW_START, Row, in_window, is_recorded, time_text, write_table
-from demo_data.flow import BOOKED_START_HOUR, Flow
+from demo_data.flow import Flow, booked_start
 from demo_data.hospital import Hospital
 from demo_data.patients import MINUTES_A_DAY, patient_key, stay_end
 
@@ -96,9 +96,7 @@ class DailyMinutes:
 
 def _wanted_period(want: Want, hospital: Hospital) -> tuple[int, int]:
     """Return from when to when a bed on the ward wanted would have been used, had there been one."""
-    start = want.wanted_at
-    if want.came_from == "booked":
-        start += BOOKED_START_HOUR * 60 - start % MINUTES_A_DAY
+    start = booked_start(want) if want.came_from == "booked" else want.wanted_at
     return start, stay_end(hospital.by_name[want.ward], want.chances, start)
 
 
