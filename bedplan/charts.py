@@ -202,7 +202,7 @@ def curve_data(
         _shown(beds, share, (low, high), top).assign(
             line=wording.LINES[model], own="own" if model == own[0] else "other"
         )
-        for model, share in figures.items()
+        for model, share in sorted(figures.items(), key=lambda line: line[0] != own[0])  # the thick line lies lowest
     ]
     marks = [
         {"mark": mark, "beds": count, "label": f"{mark} {count}"} for mark, count in marked.items() if count is not None

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from bedplan.export.justification import Justification, WardCase
 
 VEGA_LITE = "6.1"
+WIDE = ' class="wide"'  # the first column holds words, not figures
 _STYLE = """
 @page { size: A4; margin: 16mm 15mm 18mm; @bottom-right { content: "Page " counter(page) " of " counter(pages); font-size: 9pt }
   @bottom-left { content: "$foot"; font-size: 9pt } }
@@ -27,7 +28,8 @@ h1 { font-size: 20pt; margin: 0 0 2mm } h2 { font-size: 14pt; margin: 8mm 0 2mm;
 .answer { font-size: 15pt; line-height: 1.35; margin: 3mm 0 }
 .box { border: 1.5pt solid #0f1419; padding: 3mm 4mm; margin: 3mm 0; break-inside: avoid } .box p { margin: 1mm 0 }
 table { border-collapse: collapse; width: 100%; font-variant-numeric: tabular-nums; font-size: 9.5pt; margin: 2mm 0 }
-th, td { text-align: left; padding: 1.2mm 2mm; border-bottom: .5pt solid #b8bec4; vertical-align: top; overflow-wrap: anywhere }
+th, td { text-align: left; padding: 1.2mm 2mm; border-bottom: .5pt solid #b8bec4; vertical-align: top; overflow-wrap: break-word }
+td:first-child, th:first-child { min-width: 24mm } .wide td:first-child { min-width: 42mm } .wide td { overflow-wrap: anywhere }
 thead { display: table-header-group } tr { break-inside: avoid } figure { margin: 3mm 0; break-inside: avoid }
 figure svg { width: 100%; height: auto } figcaption { font-size: 9.5pt }
 """
@@ -52,7 +54,7 @@ def as_html(justification: Justification) -> bytes:
         _source(justification),
         "<h2>Cautions</h2>",
         _list(wording.CAUTIONS),
-        f'<h2>To get the same figures again</h2><div class="box">{_table(("What", "Value"), justification.reproducibility())}</div>',
+        f'<h2>To get the same figures again</h2><div class="box">{_table(("What", "Value"), justification.reproducibility(), WIDE)}</div>',
     ]
     style = Template(_STYLE).substitute(foot=f"Figures {justification.fingerprint()}")
     return _PAGE.substitute(title=esc(justification.title), style=style, body="\n".join(parts)).encode()
@@ -76,7 +78,7 @@ def _ward(case: WardCase, number: int) -> str:
         "<h3>Every bed count near the decision</h3>",
         _curve_table(case),
         "<h3>What this rests on</h3>",
-        _table(("Assumption", "Value", "From"), case.assumptions),
+        _table(("Assumption", "Value", "From"), case.assumptions, WIDE),
         _table(("Changed by the planner", "Value"), case.settings),
         _list(case.notes()),
     ]
@@ -117,10 +119,10 @@ def _list(sentences: Iterable[str]) -> str:
     return "<ul>" + "".join(f"<li>{html.escape(sentence)}</li>" for sentence in sentences) + "</ul>"
 
 
-def _table(heading: Sequence[str], rows: Iterable[Sequence[str]]) -> str:
+def _table(heading: Sequence[str], rows: Iterable[Sequence[str]], kind: str = "") -> str:
     head = "".join(f'<th scope="col">{html.escape(name)}</th>' for name in heading)
     body = "".join("<tr>" + "".join(f"<td>{html.escape(cell)}</td>" for cell in row) + "</tr>" for row in rows)
-    return f"<table><thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>" if body else ""
+    return f"<table{kind}><thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>" if body else ""
 
 
 def drawing(case: WardCase, prefix: str, kind: str) -> str:

@@ -130,7 +130,7 @@ class Justification:
         for case in self.cases:
             settings = "; ".join(f"{name}: {value}" for name, value in case.settings) or "as recorded"
             rows.append((f"Settings, {case.ward.name}", settings))
-            rows.append((f"Limit, {case.ward.name}", f"{case.rule!r}"))
+            rows.append((f"Limit, {case.ward.name}", wording.limit_text(case.rule.most, case.words[0], case.within)))
             rows.append((f"Model, {case.ward.name}", f"{case.model} ({wording.LINES[case.model]})"))
         rows.append(("Random numbers", "none used"))
         rows.append(("Program", f"{wording.PROGRAM} {wording.VERSION}"))
