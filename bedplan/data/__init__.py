@@ -3,11 +3,13 @@
 from bedplan.data.capacity import Capacity, read_capacity
 from bedplan.data.choices import DateQuestion, IntakeChoices
 from bedplan.data.estimating import DemandEstimate, Uncertainty, estimate_demand
+from bedplan.data.preview import ColumnPreview, preview_columns
 from bedplan.data.records import Records, read_records
 from bedplan.data.report import IntakeReport
 
 __all__ = [
     "Capacity",
+    "ColumnPreview",
     "DateQuestion",
     "DemandEstimate",
     "IntakeChoices",
@@ -15,6 +17,7 @@ __all__ = [
     "Records",
     "Uncertainty",
     "estimate_demand",
+    "preview_columns",
     "read_capacity",
     "read_records",
 ]

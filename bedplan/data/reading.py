@@ -89,14 +89,14 @@ def find_layout(text: bytes, known: Mapping[str, Iterable[str]], chosen: Mapping
             break
         words = line[0].decode("utf-8", errors="replace").strip("\r\n")
         for separator in SEPARATORS:
-            headings = _cells(words, separator)
+            headings = split_cells(words, separator)
             found = match_headings([heading for heading in headings if heading], known, chosen)
             if len(found) > len(best.found):
                 best = Layout(number, line.end(), separator, headings, found)
     return best
 
 
-def _cells(line: str, separator: str) -> tuple[str, ...]:
+def split_cells(line: str, separator: str) -> tuple[str, ...]:
     """Return the cells of one line."""
     try:
         return tuple(cell.strip() for cell in next(csv.reader([line], delimiter=separator), []))

@@ -1,0 +1,43 @@
+"""The planner sees which heading was taken for what, with three rows, and never an identity."""
+
+from __future__ import annotations
+
+from bedplan.data import preview_columns, read_records
+
+ROWS = b"Location,In,Out,Surname,Note\nA,2024-01-01 10:00,2024-01-02 10:00,Smith,x\nB,2024-01-03 10:00,2024-01-04 10:00,Jones,y\n"
+
+
+def test_usual_headings_are_matched_with_their_rows() -> None:
+    """Each column that will be used shows its heading and the values under it."""
+    seen = preview_columns(ROWS, name="stays.csv")
+
+    assert dict(seen.matched) == {"ward": "Location", "start": "In", "end": "Out"}
+    assert seen.samples["ward"] == ("A", "B")
+    assert "Note" in seen.headings
+
+
+def test_identities_are_never_shown() -> None:
+    """A column of names is neither offered nor sampled."""
+    seen = preview_columns(ROWS, name="stays.csv")
+
+    assert "Surname" not in seen.headings
+    assert "Smith" not in str(seen)
+
+
+def test_unknown_headings_can_be_chosen() -> None:
+    """A file whose headings nobody knows lists them, and reads once they are chosen."""
+    rows = ROWS.replace(b"Location,In,Out", b"Alpha,Beta,Gamma")
+    chosen = {"ward": "Alpha", "start": "Beta", "end": "Gamma"}
+
+    assert set(preview_columns(rows, name="stays.csv").headings) == {"Alpha", "Beta", "Gamma", "Note"}
+    assert read_records(rows, name="stays.csv", columns=chosen).wards == ("A", "B")
+    assert preview_columns(rows, name="stays.csv", columns=chosen).samples["start"][0] == "2024-01-01 10:00"
+
+
+def test_only_the_top_of_a_long_file_is_looked_at() -> None:
+    """Ten thousand more rows change nothing in the preview."""
+    row = b"C,2024-01-05 10:00,2024-01-06 10:00,Gray,z\n"
+
+    assert (
+        preview_columns(ROWS + row * 10_000, name="s.csv").samples == preview_columns(ROWS + row, name="s.csv").samples
+    )
