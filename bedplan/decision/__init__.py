@@ -2,19 +2,32 @@
 
 from bedplan.decision.changing_beds import BedChanges, Closure
 from bedplan.decision.comparing import WardComparison, compare_wards, patients_per_year, spared_by_next_bed
+from bedplan.decision.overflowing import (
+    BayEffect,
+    HoldBackEffect,
+    OverflowEffect,
+    Refused,
+    hold_back_effect,
+    overflow_bay_effect,
+    overflow_effect,
+)
 from bedplan.decision.pooling import PooledShare, PoolingEffect, pool_wards, pooling_effect
 from bedplan.decision.rules import Decision, OccupancyLimit, OverfullLimit, Rule, TurnAwayLimit, WaitLimit, decide
 from bedplan.decision.sharing import SharedBeds, share_beds
 from bedplan.decision.ward import Ward
 
 __all__ = [
+    "BayEffect",
     "BedChanges",
     "Closure",
     "Decision",
+    "HoldBackEffect",
     "OccupancyLimit",
+    "OverflowEffect",
     "OverfullLimit",
     "PooledShare",
     "PoolingEffect",
+    "Refused",
     "Rule",
     "SharedBeds",
     "TurnAwayLimit",
@@ -23,6 +36,9 @@ __all__ = [
     "WardComparison",
     "compare_wards",
     "decide",
+    "hold_back_effect",
+    "overflow_bay_effect",
+    "overflow_effect",
     "patients_per_year",
     "pool_wards",
     "pooling_effect",
