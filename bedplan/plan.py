@@ -2,17 +2,23 @@
 
 from __future__ import annotations
 
+import json
 import math
-from dataclasses import dataclass, replace
+from dataclasses import asdict, dataclass, replace
 from typing import TYPE_CHECKING
 
 from bedplan import wording
 from bedplan.decision import Ward
+from bedplan.errors import UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     from bedplan.data import DemandEstimate
     from bedplan.decision.ward import WhenWardIsFull
+
+PLAN_FORMAT = 1
 
 
 @dataclass(frozen=True, slots=True)
@@ -173,3 +179,49 @@ def from_totals(name: str, admissions_per_year: float, stay: LengthOfStay, beds:
             "Admissions are patients who found a bed. If the ward was often full, true demand is higher.",
         ),
     )
+
+
+@dataclass(frozen=True, slots=True)
+class SavedPlan:
+    """What a plan file holds: settings, typed totals and answers about the records; never a row or a count of rows.
+
+    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read (headings,
+    date order, ward names); ``records``: the fingerprint of the records it was made with.
+    """
+
+    records: str
+    settings: Mapping[str, Mapping[str, str | float]]
+    typed: Mapping[str, Mapping[str, float]]
+    answers: Mapping[str, Mapping[str, str] | str | None]
+
+
+def as_json(plan: SavedPlan) -> str:
+    """How is a plan kept in a file? JSON with every setting, changed or not.
+
+    Checked by: tests/test_plan.py
+    """
+    return json.dumps({"plan": PLAN_FORMAT, **asdict(plan)}, indent=1, ensure_ascii=False, default=dict)
+
+
+def from_json(text: str | bytes) -> SavedPlan:
+    """What does a plan file say?
+
+    Raises:
+        UnreadableRecords: it is not a plan file, or one of a later version.
+
+    Checked by: tests/test_plan.py
+    """
+    try:
+        held = json.loads(text)
+        version = held.pop("plan")
+        plan = SavedPlan(**held)
+        settings = {str(name): dict(values) for name, values in plan.settings.items()}
+        typed = {str(name): {key: float(value) for key, value in row.items()} for name, row in plan.typed.items()}
+        answers = dict(plan.answers)
+    except (ValueError, TypeError, AttributeError, KeyError) as problem:
+        raise UnreadableRecords(
+            ["This is not a plan saved by bedplan: choose a file that “Save this plan” wrote."]
+        ) from problem
+    if version != PLAN_FORMAT:
+        raise UnreadableRecords([f"This plan has format {version}; this program reads format {PLAN_FORMAT}."])
+    return SavedPlan(str(plan.records), settings, typed, answers)

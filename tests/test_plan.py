@@ -4,9 +4,20 @@ from __future__ import annotations
 
 import pytest
 
-from bedplan.errors import ImpossibleFigure
+from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
-from bedplan.plan import Baseline, Changes, changed_demand, changed_stay, from_totals, peaked, planned_ward
+from bedplan.plan import (
+    Baseline,
+    Changes,
+    SavedPlan,
+    as_json,
+    changed_demand,
+    changed_stay,
+    from_json,
+    from_totals,
+    peaked,
+    planned_ward,
+)
 
 WINTER = (1.3, 1.18, 1.06, 0.97, 0.9, 0.84, 0.8, 0.8, 0.88, 1.0, 1.1, 1.17)
 
@@ -67,3 +78,38 @@ def test_impossible_changes_are_a_sentence() -> None:
     """A stay changed to nothing is refused in words that quote the figure."""
     with pytest.raises(ImpossibleFigure, match="mean stay of 0 days"):
         changed_demand(baseline(), Changes(stay=-1.0))
+
+
+def test_a_saved_plan_comes_back_as_it_was() -> None:
+    """Settings, typed totals and answers survive the file, names of any language included."""
+    plan = SavedPlan(
+        records="ab12",
+        settings={"Häher": {"demand": 5, "beds": 28, "full": "waits"}},
+        typed={"Ward A": {"admissions_per_year": 1460.0, "mean_days": 5.0, "variation": 1.0, "beds": 24.0}},
+        answers={"columns": {"ward": "Station"}, "date_order": "day first", "ward_names": {}},
+    )
+
+    assert from_json(as_json(plan)) == plan
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        "",
+        "[]",
+        "{}",
+        '{"plan": 1}',
+        '{"plan": 1, "records": "x", "settings": 3, "typed": {}, "answers": {}}',
+        b"\xff\xfe",
+    ],
+)
+def test_other_files_are_not_plans(text: str | bytes) -> None:
+    """Any other file is refused in a sentence."""
+    with pytest.raises(UnreadableRecords, match="not a plan saved by bedplan"):
+        from_json(text)
+
+
+def test_a_later_format_is_named() -> None:
+    """A plan of a later version says which format it has."""
+    with pytest.raises(UnreadableRecords, match="format 99"):
+        from_json('{"plan": 99, "records": "", "settings": {}, "typed": {}, "answers": {}}')

@@ -14,9 +14,10 @@ import streamlit as st
 from bedplan import wording
 from bedplan.data import Capacity, Records, estimate_demand, read_capacity, read_records
 from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
+from bedplan.errors import UnreadableRecords
 from bedplan.export import Source, WardCase, case_for
-from bedplan.models import MODELS
-from bedplan.plan import Baseline, Changes, from_estimate, planned_ward
+from bedplan.models import MODELS, LengthOfStay
+from bedplan.plan import Baseline, Changes, SavedPlan, as_json, from_estimate, from_totals, planned_ward
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
@@ -69,11 +70,103 @@ def capacity() -> Capacity | None:
     return demo()[1] if is_demo() else st.session_state.get("capacity")
 
 
-def forget_figures() -> None:
-    """Forget what was worked out from earlier records; what the planner typed stays."""
-    for key in ("baselines", "shown_ward", *SLIDERS, "beds", "full", "ward"):
+def _forget_figures() -> None:
+    """Forget what was worked out from earlier records; settings of typed wards stay."""
+    for key in ("baselines", *SLIDERS, "beds", "full", "ward"):
         st.session_state.pop(key, None)
-    st.session_state["settings"] = {}
+    typed = st.session_state.get("typed", {})
+    kept = {name: values for name, values in st.session_state.get("settings", {}).items() if name in typed}
+    st.session_state["settings"] = kept | st.session_state.pop("planned_settings", {})
+
+
+def use_records(loaded: Records) -> None:
+    """Plan with these records from now on."""
+    _forget_figures()
+    st.session_state["records"], st.session_state["capacity"] = loaded, None
+    st.session_state["asked_records"] = loaded.fingerprint[:FINGERPRINT_SHOWN]
+
+
+def use_capacity(beds: Capacity) -> None:
+    """Take today's staffed beds from this file from now on."""
+    _forget_figures()
+    st.session_state["capacity"] = beds
+
+
+def use_demo() -> None:
+    """Forget the planner's records and show the demo again."""
+    _forget_figures()
+    for key in ("records", "capacity", "file", "answers", "problem"):
+        st.session_state.pop(key, None)
+    st.session_state["asked_records"] = records().fingerprint[:FINGERPRINT_SHOWN]
+
+
+def use_totals(ward: Baseline) -> None:
+    """Plan this ward from typed totals, and show it next."""
+    st.session_state["typed"] = st.session_state.get("typed", {}) | {ward.name: ward}
+    st.session_state.setdefault("settings", {}).pop(ward.name, None)
+    show_ward(ward.name)
+
+
+def show_ward(name: str) -> None:
+    """Put a ward and its own settings on the page One ward."""
+    st.session_state.update(settings_of(name) | {"ward": name})
+
+
+def plan_as_json() -> str:
+    """Return the plan of this session as a file's text."""
+    typed = {name: _totals(base) for name, base in st.session_state.get("typed", {}).items()}
+    answers = st.session_state.get("answers", {})
+    return as_json(SavedPlan(records().fingerprint, st.session_state.get("settings", {}), typed, answers))
+
+
+def _totals(base: Baseline) -> dict[str, float]:
+    stay = base.demand.length_of_stay
+    return {
+        "admissions_per_year": base.admissions_per_year,
+        "mean_days": stay.mean_days,
+        "variation": stay.variation,
+        "beds": base.beds,
+    }
+
+
+def use_plan(plan: SavedPlan) -> None:
+    """Take up the settings of a saved plan; its answers wait for the records it was made with.
+
+    Raises:
+        ImpossibleFigure: typed totals outside their meaning.
+    """
+    typed = {
+        name: from_totals(
+            name, row["admissions_per_year"], LengthOfStay(row["mean_days"], row["variation"]), int(row["beds"])
+        )
+        for name, row in plan.typed.items()
+    }
+    known = {name: _inputs(values) for name, values in plan.settings.items()}
+    st.session_state["typed"] = st.session_state.get("typed", {}) | typed
+    if plan.records == records().fingerprint:
+        st.session_state["settings"] = st.session_state.get("settings", {}) | known
+        shown = st.session_state.get("ward")
+        if shown in known:
+            show_ward(shown)
+    else:
+        st.session_state["planned_settings"], st.session_state["planned_answers"] = known, dict(plan.answers)
+
+
+def _inputs(values: Mapping[str, Any]) -> dict[str, Any]:
+    """Return one ward's saved inputs, each inside its bounds.
+
+    Raises:
+        UnreadableRecords: an input that is not the number or the answer it should be.
+    """
+    try:
+        sliders = {
+            key: min(max(int(values.get(key, start)), low), high)
+            for key, (_, low, high, start, _, _) in SLIDERS.items()
+        }
+        beds = min(max(int(values["beds"]), 0), 2000)
+    except (KeyError, TypeError, ValueError) as problem:
+        raise UnreadableRecords(["The plan file holds a setting that is not a number: save it again."]) from problem
+    return sliders | {"beds": beds, "full": "leaves" if values.get("full") == "leaves" else "waits"}
 
 
 def ward_names() -> list[str]:

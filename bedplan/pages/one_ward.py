@@ -16,9 +16,7 @@ if TYPE_CHECKING:
 
 def load_ward() -> None:
     """Put the chosen ward's own settings on screen, before its inputs are drawn."""
-    values = controls.settings_of(st.session_state["ward"])
-    st.session_state.update(values)
-    st.session_state["shown_ward"] = st.session_state["ward"]
+    controls.show_ward(st.session_state["ward"])
 
 
 def reset() -> None:
