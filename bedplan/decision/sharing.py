@@ -80,7 +80,8 @@ def share_beds(
     Exact, by dynamic programming over each ward's own curve (its model, seasons, closures), for any curves. ``total``
     beds, by default today's; by ward name: ``floors`` fewest beds (0), ``steps`` the bay size, in which a ward's beds
     change (1), ``weights`` how much one of its patients counts (1): weights are a clinical judgement and the user's.
-    Every bed is dealt out unless steps don't allow it. A split as good as today's leaves today's.
+    A ward whose patients wait or stay anyway counts those who find it full. Every bed is dealt out unless steps don't
+    allow it. A split as good as today's leaves today's.
 
     Raises:
         ImpossibleFigure: two wards of one name, an unknown name, floors above the total, a figure outside its meaning.

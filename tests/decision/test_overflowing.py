@@ -57,6 +57,15 @@ def test_months_are_read_one_by_one_and_weighed_by_patients() -> None:
     assert expected[1] > 1.5 * erlang(8.0, 13)
 
 
+def test_the_hosts_patients_keep_their_own_months() -> None:
+    """A seasonal host is weighed by its own patients: with nobody sent, it fares after as before."""
+    effect = overflow_effect(Ward("Plover", 8, Demand(0.0, SHORT)), Ward("Teal", 9, Demand(400.0, SHORT, WINTER)))
+    expected = sum(w * erlang(8.0 * f, 9) for w, f in zip(WEIGHTS, FACTORS, strict=True))
+
+    assert effect.host_patients.share_before == pytest.approx(expected, rel=1e-3)
+    assert effect.host_patients.share_after == pytest.approx(effect.host_patients.share_before, rel=1e-7)
+
+
 def test_a_host_without_beds_changes_nothing() -> None:
     """Where the host has no beds the home's patients fare as before, and the host's are all refused."""
     effect = overflow_effect(ward("Plover", 8, 9.0), ward("Teal", 0, 3.0))
