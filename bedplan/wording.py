@@ -154,12 +154,12 @@ def limit_text(share: float, verb: str, within: str) -> str:
 
 
 def answer_sentence(
-    name: str, beds: tuple[int, int, int | None], limit: tuple[float, str, str], worst: tuple[int, float]
+    name: str, beds: tuple[int, int, int | None], limit: tuple[float, str, str], worst: tuple[int | None, float]
 ) -> str:
     """Say the answer in at most 30 words: today's beds, the average formula's, the limit's, the worst month.
 
     ``beds`` = (today, average formula, by the limit or None), ``limit`` = (share, its words, within), ``worst`` =
-    (month, share there with today's beds). A name of more than two words becomes "This ward".
+    (month, or None where all months are alike; share there with today's beds). A name of more than two words becomes "This ward".
     """
     today, formula, needed = beds
     share, verb, within = limit
@@ -167,7 +167,8 @@ def answer_sentence(
     span = "every month" if within == "every_month" else "the year"
     takes = "more" if needed is None else str(needed)
     month, share_there = worst
+    when = "All months are alike" if month is None else f"{MONTHS[month]} is worst"
     return (
         f"{who} has {today} staffed {'bed' if today == 1 else 'beds'}; the average formula says {formula}. "
-        f"Keeping {span} to {one_in(share)} {verb} takes {takes}. {MONTHS[month]} is worst: {one_in(share_there)} today."
+        f"Keeping {span} to {one_in(share)} {verb} takes {takes}. {when}: {one_in(share_there)} today."
     )

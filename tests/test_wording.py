@@ -52,7 +52,9 @@ def test_percent_keeps_a_small_share_visible() -> None:
 @pytest.mark.parametrize("needed", [1, 134, None])
 def test_answer_has_at_most_30_words(name: str, verb: str, needed: int | None) -> None:
     """The first sentence on the page is at most 30 words, whatever the ward and the answer."""
-    for within, month, share in itertools.product(("year", "every_month"), (0, 8), (0.0, 0.0004, 0.05, 0.4, 0.97, 1.0)):
+    for within, month, share in itertools.product(
+        ("year", "every_month"), (0, 8, None), (0.0, 0.0004, 0.05, 0.4, 0.97, 1.0)
+    ):
         said = wording.answer_sentence(name, (1, 100, needed), (0.05, verb, within), (month, share))
 
         assert len(said.split()) <= 30, said

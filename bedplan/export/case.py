@@ -21,6 +21,7 @@ if TYPE_CHECKING:
     from bedplan.models import BedCurve
 
 DAYS_PER_YEAR = 365.0
+ALIKE = 0.02  # months this near each other have no worst one worth naming
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -94,12 +95,13 @@ class WardCase:
         """Say the answer in at most 30 words."""
         months = self.months_at(self.ward.beds)
         worst = int(np.argmax(months))
+        alike = float(np.ptp(months)) <= ALIKE * float(months[worst])
         needed = None if self.decision is None else self.decision.beds
         return wording.answer_sentence(
             self.ward.name,
             (self.ward.beds, self.ward.average_formula_beds, needed),
             (self.rule.most, self.words[1], self.within),
-            (worst, float(months[worst])),
+            (None if alike else worst, float(months[worst])),
         )
 
     def marked(self) -> dict[str, int | None]:

@@ -223,7 +223,7 @@ def take_totals(name: str, admissions: float, beds: int, stay: float | tuple[flo
         return
     controls.use_totals(ward)
     wanted = wording.beds_on_average(ward.demand.offered_load)
-    st.success(f"{wording.plain(ward.name)} is ready on the page One ward: {wanted} wanted.")
+    st.success(f"{wording.plain(ward.name)} wants {wanted}. It is ready on the page One ward.")
 
 
 def keep_plan() -> None:
