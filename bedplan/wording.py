@@ -167,7 +167,7 @@ def answer_sentence(
     span = "every month" if within == "every_month" else "the year"
     takes = "more" if needed is None else str(needed)
     month, share_there = worst
-    when = "All months are alike" if month is None else f"{MONTHS[month]} is worst"
+    when = "All months alike" if month is None else f"{MONTHS[month]} is worst"
     return (
         f"{who} has {today} staffed {'bed' if today == 1 else 'beds'}; the average formula says {formula}. "
         f"Keeping {span} to {one_in(share)} {verb} takes {takes}. {when}: {one_in(share_there)} today."
