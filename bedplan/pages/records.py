@@ -256,11 +256,11 @@ with left_side:
     st.caption("Files stay in this computer's memory. Largest upload 300 MB; larger files by path on the command line.")
     if not controls.is_demo():
         st.button("Forget these records, show the Larkmere demo", on_click=controls.use_demo)
+    st.subheader("Keep your settings", anchor=False)
+    keep_plan()
 with right_side:
     st.subheader("No file? Type totals", anchor=False)
     type_totals()
-    st.subheader("Plan", anchor=False)
-    keep_plan()
 records = controls.records()
 first, last = records.window
 whose = "The Larkmere demo" if controls.is_demo() else wording.plain(records.name)
