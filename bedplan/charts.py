@@ -111,9 +111,7 @@ def _limit() -> list[alt.Chart]:
     limit = alt.Chart(alt.NamedData("limit"))
     return [
         limit.mark_rule(strokeWidth=1.5, color=GREY).encode(y=_SHARE),
-        limit.mark_text(align="right", dy=-8, color=GREY, fontSize=14).encode(
-            x=alt.value("width"), y=_SHARE, text="label:N"
-        ),
+        limit.mark_text(align="right", dy=-8, fontSize=14).encode(x=alt.value("width"), y=_SHARE, text="label:N"),
     ]
 
 
@@ -125,7 +123,7 @@ def _bed_marks() -> list[alt.Chart]:
     )
     rows = [
         marks.transform_filter(alt.datum.mark == mark)
-        .mark_text(fontSize=15, fontWeight="bold", color=GREY, align="center")
+        .mark_text(fontSize=15, fontWeight="bold", align="center")
         .encode(x=_BEDS, y=alt.value(-10 - 20 * row), text="label:N")
         for row, mark in enumerate(reversed(MARKS))
     ]

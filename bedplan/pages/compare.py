@@ -24,11 +24,11 @@ def row(case: WardCase) -> dict[str, object]:
         "Staffed beds today": case.ward.beds,
         "Average formula": case.ward.average_formula_beds,
         "By the limit": None if case.decision is None else case.decision.beds,
+        "Next bed spares, a year": spared_by_next_bed(case.curve, case.ward.beds),
         "Find it full, a year": patients_per_year(case.curve, case.ward.beds),
         "Share": 100 * today.turn_away_probability,
         "Worst month": f"{wording.MONTHS_SHORT[today.worst_month]} {wording.percent(float(today.by_month.max()))}",
         "Occupancy": 100 * today.occupancy,
-        "Next bed spares, a year": spared_by_next_bed(case.curve, case.ward.beds),
         "Share at each bed count": controls.small_curve(case),
         "When full, patients": "go elsewhere" if case.ward.when_full == "leaves" else "wait",
     }
