@@ -10,6 +10,8 @@ from bedplan.models.bed_curve import BedCurve, BedPoint, Waits, bed_counts
 from bedplan.models.demand import BookedList, Demand
 from bedplan.models.erlang import erlang_b, erlang_b_log, erlang_c, erlang_loss
 from bedplan.models.seasonal import seasonal_loss
+from bedplan.models.simulation import SimulatedWard, simulate_ward
+from bedplan.models.simulation_run import Closure, WardRun
 from bedplan.models.stay import LengthOfStay
 from bedplan.models.unlimited import unlimited_beds
 from bedplan.models.year import offered_load_by_hour
@@ -28,9 +30,12 @@ __all__ = [
     "BedCurve",
     "BedPoint",
     "BookedList",
+    "Closure",
     "Demand",
     "LengthOfStay",
+    "SimulatedWard",
     "Waits",
+    "WardRun",
     "average_beds",
     "average_occupancy",
     "bed_counts",
@@ -40,5 +45,6 @@ __all__ = [
     "erlang_loss",
     "offered_load_by_hour",
     "seasonal_loss",
+    "simulate_ward",
     "unlimited_beds",
 ]
