@@ -1,0 +1,46 @@
+"""What tests of the pages share: the program opened without a browser, and a small file made by a stated rule."""
+
+from __future__ import annotations
+
+import datetime as dt
+from typing import TYPE_CHECKING
+
+import pytest
+from streamlit.testing.v1 import AppTest
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+    from pathlib import Path
+
+SECONDS_TO_OPEN = 60
+
+
+@pytest.fixture(autouse=True)
+def no_search_for_components(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Spare each run a search through every installed package for page components, of which this project has none."""
+    place = "streamlit.components.v2.component_manager.BidiComponentManager.discover_and_register_components"
+    monkeypatch.setattr(place, lambda *_, **__: None, raising=False)
+
+
+@pytest.fixture
+def open_app(root: Path) -> Callable[..., AppTest]:
+    """Return a function that opens the program at its front page, with these values in the page's address."""
+
+    def opened(**address: str) -> AppTest:
+        app = AppTest.from_file(root / "app.py", default_timeout=SECONDS_TO_OPEN)
+        app.query_params.update(address)
+        return app.run()
+
+    return opened
+
+
+@pytest.fixture(scope="session")
+def stays_csv() -> bytes:
+    """Return ward stays in three columns: a stay every 21 hours for a year, on East and West in turn, for 3 to 6 days."""
+    first = dt.datetime(2024, 1, 1, 9)  # noqa: DTZ001  records hold local clock times
+    rows = ["Ward,Start,End"]
+    for count in range(418):
+        came = first + dt.timedelta(hours=21 * count)
+        left = came + dt.timedelta(days=3 + count // 2 % 4, hours=count % 5)
+        rows.append(f"{'East' if count % 2 else 'West'},{came:%Y-%m-%d %H:%M},{left:%Y-%m-%d %H:%M}")
+    return "\n".join(rows).encode()

@@ -1,0 +1,113 @@
+"""Records: the page asks what a file can't tell by itself, and opens saved plans."""
+
+from __future__ import annotations
+
+import hashlib
+from typing import TYPE_CHECKING
+
+import pytest
+
+from bedplan.plan import SavedPlan, as_json
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+    from pathlib import Path
+
+    from streamlit.testing.v1 import AppTest
+
+HEADINGS = b"Ward,Start,End\n"
+KNOWN = pytest.mark.xfail(strict=True, reason="a damaged plan is not refused in a sentence")
+
+
+def go(app: AppTest, page: str) -> AppTest:
+    """Turn to a page."""
+    return app.switch_page(f"bedplan/pages/{page}.py").run()
+
+
+def give_stays(app: AppTest, name: str, content: bytes) -> AppTest:
+    """Upload a file of ward stays."""
+    return go(app, "records").file_uploader(key="stays_file").upload(name, content, "text/csv").run()
+
+
+def answer(app: AppTest) -> str:
+    """Return what the page One ward says."""
+    return go(app, "one_ward").header[0].value
+
+
+def test_dates_that_read_two_ways(open_app: Callable[..., AppTest]) -> None:
+    """Where 03/04 may be April or March the page asks, with both readings, and takes the file after the answer."""
+    rows = [f"East,{1 + day % 9:02d}/0{1 + day % 7}/2024,{3 + day % 9:02d}/0{1 + day % 7}/2024" for day in range(40)]
+    app = give_stays(open_app(), "either.csv", HEADINGS + "\n".join(rows).encode())
+    assert not app.exception
+    assert len(app.error) == 1
+    question = next(one for one in app.radio if "dates" in one.label)
+    assert question.value is None
+    assert len(app.table) == 1
+
+    question.set_value(question.options[0])
+    next(one for one in app.button if one.label == "Read it this way").click().run()
+    assert not app.exception
+    assert not app.error
+    assert any("either.csv" in heading.value for heading in app.subheader)
+    assert answer(app).startswith("East has ")
+
+
+def test_columns_can_be_named(open_app: Callable[..., AppTest], stays_csv: bytes) -> None:
+    """A file with headings that nobody could guess is read once the planner says which is which."""
+    plain = answer(give_stays(open_app(), "stays.csv", stays_csv))
+    app = give_stays(open_app(), "stays.csv", stays_csv.replace(b"Ward,Start,End", b"Zimmer,Zugang,Abgang"))
+    assert len(app.error) == 1
+    for key, heading in (("ward", "Zimmer"), ("start", "Zugang"), ("end", "Abgang")):
+        app.selectbox(key=f"column_{key}").set_value(heading)
+    next(one for one in app.button if "with these columns" in one.label).click().run()
+    assert not app.exception
+    assert not app.error
+    assert answer(app) == plain
+
+
+def test_a_saved_plan_is_opened(open_app: Callable[..., AppTest], demo_data: Path) -> None:
+    """A saved plan brings back a ward's inputs, and those of a ward typed as totals."""
+    app = open_app()
+    plan = SavedPlan(
+        hashlib.sha256((demo_data / "stays.csv").read_bytes()).hexdigest(),
+        {"Heron": {"beds": 33, "full": "waits", "demand": 7, "stay": 0, "spread": 0, "peak": 100, "growth": 0}},
+        {"Annex": {"admissions_per_year": 1000.0, "mean_days": 3.0, "variation": 1.0, "beds": 11}},
+        {},
+    )
+    go(app, "records").file_uploader(key="plan_file").upload("plan.json", as_json(plan).encode(), "application/json")
+    app.run()
+    assert not app.exception
+    assert not app.error
+    go(app, "one_ward").selectbox(key="ward").set_value("Heron").run()
+    assert (app.slider(key="demand").value, app.number_input(key="beds").value) == (7, 33)
+    app.selectbox(key="ward").set_value("Annex").run()
+    assert "Annex has 11 staffed beds" in app.header[0].value
+
+
+@pytest.mark.parametrize(
+    "content",
+    [
+        b"",
+        b"not a plan",
+        b"[1, 2]",
+        b'{"plan": 99, "records": "", "settings": {}, "typed": {}, "answers": {}}',
+        b'{"plan": 1, "records": "", "settings": {"Heron": {"beds": "many"}}, "typed": {}, "answers": {}}',
+        pytest.param(
+            b'{"plan": 1, "records": "", "settings": {}, "typed": {"A": {"beds": 3}}, "answers": {}}', marks=KNOWN
+        ),
+        pytest.param(
+            b'{"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": {"columns": 4}}', marks=KNOWN
+        ),
+    ],
+)
+def test_a_file_that_is_no_plan(open_app: Callable[..., AppTest], stays_csv: bytes, content: bytes) -> None:
+    """A file that is no plan, or a damaged one, is refused in a sentence, and records can be loaded after it."""
+    app = open_app()
+    before = answer(app)
+    go(app, "records").file_uploader(key="plan_file").upload("plan.json", content, "application/json").run()
+    assert not app.exception
+    assert len(app.error) == 1
+    assert answer(app) == before
+    give_stays(app, "stays.csv", stays_csv)
+    assert not app.exception
+    assert not app.error
