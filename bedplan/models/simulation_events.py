@@ -182,8 +182,11 @@ def _closures(run: WardRun, part: Part) -> tuple[Array, Array, NDArray[np.int64]
 
 
 def _packed(replications: int, at: Array, column: NDArray[np.int64], fields: list[Array]) -> list[Array]:
-    """Lay a plain list of events out as ``(rows, replications)``, each column in order; empty cells come last."""
-    order = np.lexsort((at, column))
+    """Lay a plain list of events out as ``(rows, replications)``, each column in order; empty cells come last.
+
+    One key for column and time sorts in half the time of two; it tells times apart down to some microseconds.
+    """
+    order = np.argsort(column * (at.max(initial=0.0) + 1.0) + at)
     counts = np.bincount(column, minlength=replications)
     place = np.arange(at.size) - np.repeat(np.cumsum(counts) - counts, counts)
     cells = place * replications + column[order]

@@ -139,7 +139,7 @@ def extent_of(run: WardRun, demand: Demand, beds: int, *, waits: bool) -> Extent
     if warm_up is None:
         warm_up = _days_to_forget(demand)
         if waits and beds > 0 and math.isinf(run.patience_days):
-            warm_up += _days_to_settle(demand, beds) + (0.0 if demand.is_steady else DAYS_A_YEAR)
+            warm_up += _days_to_settle(demand, beds) + (0.0 if demand.is_steady else DAYS_A_YEAR / 2.0)
         warm_up = min(warm_up, LONGEST_WARM_UP_DAYS)
     a_day = max(demand.total_arrivals_per_day, 1e-9)
     days = run.days

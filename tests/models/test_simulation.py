@@ -445,7 +445,8 @@ def test_empty_cells_take_no_time() -> None:
     assert (comers.kind == NOBODY).any()
     assert (comers.kind == BOOKED).any()
     assert (comers.at[comers.kind == NOBODY] == 30.0).all()
-    assert (np.diff(comers.at, axis=0) >= 0).all()
+    # in order, but for some microseconds
+    assert (np.diff(comers.at, axis=0) >= -1e-9).all()
 
 
 @pytest.mark.parametrize(
