@@ -111,7 +111,9 @@ def _limit() -> list[alt.Chart]:
     limit = alt.Chart(alt.NamedData("limit"))
     return [
         limit.mark_rule(strokeWidth=1.5, color=GREY).encode(y=_SHARE),
-        limit.mark_text(align="right", dy=-8, color=GREY, fontSize=14).encode(x=alt.value("width"), y=_SHARE, text="label:N"),
+        limit.mark_text(align="right", dy=-8, color=GREY, fontSize=14).encode(
+            x=alt.value("width"), y=_SHARE, text="label:N"
+        ),
     ]
 
 

@@ -1,6 +1,7 @@
 """Rules, decisions and comparisons over bed curves: from "what happens at each bed count" to "how many, and why"."""
 
 from bedplan.decision.changing_beds import BedChanges, Closure
+from bedplan.decision.checking import SimulationCheck, check_by_simulation
 from bedplan.decision.comparing import WardComparison, compare_wards, patients_per_year, spared_by_next_bed
 from bedplan.decision.overflowing import (
     BayEffect,
@@ -30,10 +31,12 @@ __all__ = [
     "Refused",
     "Rule",
     "SharedBeds",
+    "SimulationCheck",
     "TurnAwayLimit",
     "WaitLimit",
     "Ward",
     "WardComparison",
+    "check_by_simulation",
     "compare_wards",
     "decide",
     "hold_back_effect",

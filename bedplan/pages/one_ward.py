@@ -4,14 +4,22 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
+import pandas as pd
 import streamlit as st
 
 from bedplan import charts, wording
+from bedplan.decision import check_by_simulation
 from bedplan.errors import BedplanError
 from bedplan.pages import controls
 
 if TYPE_CHECKING:
     from bedplan.export import WardCase
+
+SIMULATED = {
+    "leaves": "Simulated patients who find no bed leave.",
+    "waits": "Simulated patients who find no bed wait in line, first come, first served.",
+    "stays anyway": "Simulated patients wait in line; the formula has them placed at once, so it is lower.",
+}
 
 
 def load_ward() -> None:
@@ -129,6 +137,28 @@ def answer(case: WardCase) -> None:
     st.vega_lite_chart(charts.live(charts.MONTHS, months), theme=None, width="stretch", alt="Share month by month")
 
 
+def simulation(case: WardCase) -> None:
+    """Offer to play the ward through patient by patient, and show both figures."""
+    with st.expander("Does a simulation agree?"):
+        st.caption("Plays about a million patients through this ward, at today's beds and at those by the limit.")
+        if not st.button("Run the simulation", key="simulate"):
+            return
+        counts = sorted({beds for mark, beds in case.marked().items() if beds and mark != "average formula"})
+        with st.spinner("Playing the ward through…"):
+            checks = [check_by_simulation(case.ward, case.curve, beds) for beds in counts]
+        rows = [
+            {
+                "Staffed beds": str(check.beds),
+                f"Formula ({wording.LINES[case.model]})": wording.percent(check.formula, 1),
+                "Simulation": wording.percent(check.simulated, 1),
+                "95 % range": f"{wording.percent(check.interval[0], 1)} to {wording.percent(check.interval[1], 1)}",
+            }
+            for check in checks
+        ]
+        st.table(pd.DataFrame(rows).set_index("Staffed beds"))
+        st.caption("Share of patients who find no free bed when they come. " + SIMULATED[case.curve.when_full])
+
+
 controls.show_origin()
 with st.sidebar:
     ward_name = inputs()
@@ -138,5 +168,6 @@ try:
     ward_case = controls.case_of(ward_name)
     answer(ward_case)
     notes(ward_case, controls.settings_of(ward_name))
+    simulation(ward_case)
 except BedplanError as error:
     st.error(wording.plain(str(error)))
