@@ -1,0 +1,164 @@
+"""From a file of ward stays to a printed justification, in a real browser that may not leave this machine."""
+
+from __future__ import annotations
+
+import datetime as dt
+import hashlib
+import io
+import json
+import re
+from typing import TYPE_CHECKING
+from urllib.parse import parse_qs, urlsplit
+
+import pytest
+
+if TYPE_CHECKING:
+    from pathlib import Path
+
+    from playwright.sync_api import BrowserContext, Page
+
+A4_POINTS = (595, 842)  # 210 × 297 mm; Source: ISO 216
+MOST_VALUES, LONGEST_VALUE = 12, 40
+
+
+def ward_stays() -> bytes:
+    """Return a stay every 21 hours for a year, on East and West in turn, for 3 to 6 days."""
+    first = dt.datetime(2024, 1, 1, 9)  # noqa: DTZ001  records hold local clock times
+    rows = ["Ward,Start,End"]
+    for count in range(418):
+        came = first + dt.timedelta(hours=21 * count)
+        left = came + dt.timedelta(days=3 + count // 2 % 4, hours=count % 5)
+        rows.append(f"{'East' if count % 2 else 'West'},{came:%Y-%m-%d %H:%M},{left:%Y-%m-%d %H:%M}")
+    return "\n".join(rows).encode()
+
+
+def turn_to(page: Page, title: str) -> None:
+    """Turn to a page by its link at the top."""
+    page.get_by_role("link", name=title, exact=True).first.click()
+
+
+def sentence(page: Page) -> str:
+    """Return the answer on the page One ward."""
+    return page.get_by_role("heading", name=re.compile(r"has \d+ staffed")).inner_text()
+
+
+def download(page: Page, button: str) -> bytes:
+    """Press a download button and return the file."""
+    with page.expect_download() as waiting:
+        page.get_by_role("button", name=re.compile(button)).click()
+    return waiting.value.path().read_bytes()
+
+
+def load_file(page: Page, content: bytes) -> None:
+    """Give the page Records a file of ward stays and wait until it is taken in."""
+    turn_to(page, "Records")
+    chooser = page.locator(".st-key-stays_file input[type=file]")
+    chooser.set_input_files({"name": "our stays.csv", "mimeType": "text/csv", "buffer": content})
+    page.get_by_role("heading", name="our stays.csv: what became of every row").wait_for()
+
+
+def assert_stands_alone(html: str) -> None:
+    """Nothing in the document points to another machine or runs."""
+    assert "<script" not in html
+    links = re.findall(r"https?://[^\s\"'<>)]+", html)
+    assert {link for link in links if not link.startswith("http://www.w3.org/")} == set()  # names of SVG's own words
+    assert re.findall(r"(?:src|href)=[\"'](?!#|data:)", html) == []
+
+
+def pages_of(pdf: bytes) -> list[tuple[float, float]]:
+    """Return the width and height of each page of a PDF, in points."""
+    assert pdf.startswith(b"%PDF-")
+    count = len(re.findall(rb"/Type\s*/Page\b", pdf))
+    boxes = re.findall(rb"/MediaBox\s*\[\s*0\s+0\s+([\d.]+)\s+([\d.]+)\s*\]", pdf)
+    assert len(boxes) >= 1
+    assert count >= len(boxes)
+    return [(float(width), float(height)) for width, height in boxes]
+
+
+def test_from_a_file_to_paper(page: Page, server: str, browser: BrowserContext, tmp_path: Path) -> None:
+    """A file is loaded, a slider moved by the keyboard, both documents are taken, and the page's address stays bare."""
+    openpyxl = pytest.importorskip("openpyxl", reason="openpyxl is not installed: the workbook can't be read back")
+    content = ward_stays()
+    page.goto(server)
+    page.get_by_role("heading", name=re.compile("Kestrel has")).wait_for()
+    load_file(page, content)
+
+    turn_to(page, "One ward")
+    page.get_by_role("heading", name=re.compile("East has")).wait_for()
+    before = sentence(page)
+    slider = page.locator(".st-key-demand input[type=range]")
+    slider.focus()
+    for _ in range(25):
+        page.keyboard.press("ArrowRight")
+    page.wait_for_function(
+        "said => ![...document.querySelectorAll('h1, h2, h3')].some(one => one.innerText === said)", arg=before
+    )
+    page.wait_for_url(re.compile(r"demand=25"))
+    page.get_by_text(re.compile(r"\+25 %")).first.wait_for()
+    assert_address_is_bare(page, content)
+    said = sentence(page)
+    assert said != before
+
+    turn_to(page, "Justification")
+    page.get_by_text(re.compile("approve")).first.wait_for()
+    assert page.get_by_text(said).count() >= 1
+    html, workbook = download(page, r"\(HTML\)"), download(page, r"\(Excel\)")
+    assert_stands_alone(html.decode())
+    assert said in html.decode()
+    sheets = openpyxl.load_workbook(io.BytesIO(workbook), read_only=True).sheetnames
+    assert len(sheets) >= 2
+    turn_to(page, "Records")
+    plan = download(page, "Save this plan").decode()
+    assert json.loads(plan)["settings"]["East"]["demand"] == 25
+    assert "2024-" not in plan  # no stay of the file, all of which are of that year
+    assert_prints(browser, html, tmp_path, said)
+
+
+def assert_address_is_bare(page: Page, content: bytes) -> None:
+    """The address holds a few short settings and the file's fingerprint."""
+    address = parse_qs(urlsplit(page.url).query)
+    assert address["records"] == [hashlib.sha256(content).hexdigest()[:12]]
+    assert len(address) <= MOST_VALUES
+    assert all(len(value) <= LONGEST_VALUE for values in address.values() for value in values)
+    assert "our stays" not in page.url
+
+
+def assert_prints(browser: BrowserContext, html: bytes, folder: Path, said: str) -> None:
+    """The document opens without a network, asks for nothing, and prints on A4."""
+    path = folder / "justification.html"
+    path.write_bytes(html)
+    paper, complaints, asked = browser.new_page(), [], []
+    paper.on("console", lambda one: complaints.append(one.text) if one.type in ("error", "warning") else None)
+    paper.on("request", lambda one: asked.append(one.url))
+    browser.set_offline(True)
+    try:
+        paper.goto(path.as_uri())
+        assert paper.get_by_text(said).is_visible()
+        assert paper.locator("svg").count() >= 2
+        sizes = pages_of(paper.pdf(prefer_css_page_size=True, print_background=True))
+    finally:
+        browser.set_offline(False)
+        paper.close()
+    assert len(sizes) >= 2
+    assert all(size == pytest.approx(A4_POINTS, abs=2) for size in sizes)
+    assert complaints == []
+    assert asked == [path.as_uri()]
+
+
+def test_after_a_reload(page: Page, server: str) -> None:
+    """After a reload the address still holds the settings, and the page says that the records must be loaded again."""
+    page.goto(server)
+    load_file(page, ward_stays())
+    turn_to(page, "One ward")
+    page.get_by_role("heading", name=re.compile("East has")).wait_for()
+    page.locator(".st-key-stay input[type=range]").focus()
+    page.keyboard.press("ArrowRight")
+    page.wait_for_url(re.compile(r"stay=1(&|$)"))
+    page.reload()
+    page.get_by_text("which are not loaded").wait_for()
+    page.get_by_text(re.compile(r"\+1 %")).first.wait_for()
+
+    load_file(page, ward_stays())
+    turn_to(page, "One ward")
+    page.get_by_role("heading", name=re.compile("East has")).wait_for()
+    assert page.get_by_text("which are not loaded").count() == 0
