@@ -1,23 +1,53 @@
 """Reading, cleaning, describing and estimating: from a records file to a demand."""
 
 from bedplan.data.capacity import Capacity, read_capacity
+from bedplan.data.census import Census, read_census
 from bedplan.data.choices import DateQuestion, IntakeChoices
+from bedplan.data.demand_methods import DemandFigure
+from bedplan.data.describing import FullTimes, LongStays, WardDescription, describe_ward
 from bedplan.data.estimating import DemandEstimate, Uncertainty, estimate_demand
+from bedplan.data.hidden_demand import DemandStep, HiddenDemand, Unmet, hidden_demand
+from bedplan.data.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
 from bedplan.data.preview import ColumnPreview, preview_columns
+from bedplan.data.reconciling import CensusCheck, Flows, check_census, flows
 from bedplan.data.records import Records, read_records
 from bedplan.data.report import IntakeReport
+from bedplan.data.returns import MonthlyReturn, read_monthly_return
+from bedplan.data.wardlinks import WardLink
 
 __all__ = [
     "Capacity",
+    "Census",
+    "CensusCheck",
     "ColumnPreview",
     "DateQuestion",
     "DemandEstimate",
+    "DemandFigure",
+    "DemandStep",
+    "EventLog",
+    "Flows",
+    "FullTimes",
+    "HiddenDemand",
     "IntakeChoices",
     "IntakeReport",
+    "LongStays",
+    "MonthlyReturn",
     "Records",
     "Uncertainty",
+    "Unmet",
+    "WardDescription",
+    "WardLink",
+    "check_census",
+    "describe_ward",
     "estimate_demand",
+    "flows",
+    "hidden_demand",
     "preview_columns",
+    "read_bed_requests",
+    "read_cancellations",
     "read_capacity",
+    "read_census",
+    "read_monthly_return",
     "read_records",
+    "read_refusals",
 ]

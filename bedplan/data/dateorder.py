@@ -35,21 +35,37 @@ def start_and_end(
         UnreadableRecords: dates whose order somebody must say; the question is in ``.question``.
     """
     columns, notes = _columns(text)
+    row_by_row = date_order == ROW_BY_ROW
+    read = _row_by_row(name, columns) if row_by_row else _read_all(name, columns, date_order, time_zone)
+    if any(times.had_offset for times in read.values()):
+        done = f"brought to the clock of {time_zone}" if time_zone else "the clock shown was kept"
+        notes.append(f"Times carried an offset from world time; {done}.")
+    start, end, moved = _one_epoch(read["start"], read["end"])
+    return start, end, notes + moved
+
+
+def read_ordered(column: pa.ChunkedArray, name: str, date_order: str | None) -> NDArray[np.int64]:
+    """When was it? One column alone; asks which way round its dates are written where that is open.
+
+    Raises:
+        UnreadableRecords: dates whose order somebody must say; the question is in ``.question``.
+    """
+    return _read_all(name, {"start": column}, date_order, None)["start"].seconds
+
+
+def _read_all(
+    name: str, columns: Mapping[str, pa.ChunkedArray], date_order: str | None, time_zone: str | None
+) -> dict[str, TimesRead]:
+    """Read columns that share one order of day and month; the order comes from the answer or from the dates."""
     read = {key: read_times(column, date_order, time_zone) for key, column in columns.items()}
     day_only = sum(times.day_first_only for times in read.values())
     month_only = sum(times.month_first_only for times in read.values())
     unsure = sum(times.either_order for times in read.values())
     if date_order is None and ((day_only and month_only) or (unsure and not day_only and not month_only)):
         raise _question(name, columns)
-    if date_order == ROW_BY_ROW:
-        read = _row_by_row(name, columns)
-    elif date_order is None and month_only:
-        read = {key: read_times(column, MONTH_FIRST, time_zone) for key, column in columns.items()}
-    if any(times.had_offset for times in read.values()):
-        done = f"brought to the clock of {time_zone}" if time_zone else "the clock shown was kept"
-        notes.append(f"Times carried an offset from world time; {done}.")
-    start, end, moved = _one_epoch(read["start"], read["end"])
-    return start, end, notes + moved
+    if date_order is None and month_only:
+        return {key: read_times(column, MONTH_FIRST, time_zone) for key, column in columns.items()}
+    return read
 
 
 def _columns(text: TextTable) -> tuple[dict[str, pa.ChunkedArray], list[str]]:
@@ -72,10 +88,10 @@ def _columns(text: TextTable) -> tuple[dict[str, pa.ChunkedArray], list[str]]:
 def _question(name: str, columns: Mapping[str, pa.ChunkedArray]) -> UnreadableRecords:
     """Build the question which way round dates are written, with both readings of three rows."""
     read = {
-        order: tuple(read_times(columns[key], order).seconds for key in ("start", "end"))
+        order: tuple(read_times(column, order).seconds for column in columns.values())
         for order in (DAY_FIRST, MONTH_FIRST)
     }
-    negative = {order: int(((end < start) & (end > UNREADABLE)).sum()) for order, (start, end) in read.items()}
+    negative = {order: int(((both[-1] < both[0]) & (both[-1] > UNREADABLE)).sum()) for order, both in read.items()}
     day, month = read[DAY_FIRST][0], read[MONTH_FIRST][0]
     rows = np.flatnonzero((day != month) & (day > UNREADABLE) & (month > UNREADABLE))[:3]
     examples = tuple((str(columns["start"][int(row)].as_py()), _day(day[row]), _day(month[row])) for row in rows)

@@ -6,21 +6,24 @@ import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-import numpy as np
 import pandas as pd
-from scipy import special
 
-from bedplan.data.rhythm import Rhythm, Swing, fit_rhythm, measure_swing, shrink_factors
-from bedplan.data.survival import StayCurve, product_limit
-from bedplan.errors import ImpossibleFigure, UnreadableRecords
+from bedplan.data.arrivals import FEWEST_STAYS, Arrivals, arrivals_of, booked_list, is_booked
+from bedplan.data.stays import fitted_stay, stay_curve, stays_in_window
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
-    from bedplan.data.capacity import Capacity
-    from bedplan.data.records import Records
+    import numpy as np
 
-FEWEST_STAYS, FEWEST_DAYS = 200, 90
-YEAR_DAYS = 365.0
+    from bedplan.data.capacity import Capacity
+    from bedplan.data.hidden_demand import HiddenDemand
+    from bedplan.data.records import Records
+    from bedplan.data.rhythm import Swing
+    from bedplan.data.survival import StayCurve
+    from bedplan.models import BookedList
+
+MUCH_BOOKED = 0.1  # share of admissions from which booked patients are mentioned
+FEWEST_BOOKED = 100
 ADMISSIONS_NOTE = (
     "Admissions are not arrivals: the records hold patients who got a bed here. Patients who were turned away, waited "
     "elsewhere or were cancelled are missing, so true demand may be higher."
@@ -43,7 +46,8 @@ class DemandEstimate:
     """What a ward is asked for, as its records show it, with the facts behind it.
 
     ``admissions_per_year`` are recorded admissions; ``demand`` holds arrivals. ``growth_per_year`` is a share with its
-    standard error, not yet applied to ``demand``. ``beds_today`` is None without a capacity file.
+    standard error, not yet applied to ``demand``. ``booked_share`` is the share of admissions that were booked.
+    ``beds_today`` is None without a capacity file.
     """
 
     ward: str
@@ -61,11 +65,12 @@ class DemandEstimate:
     stay_curve: StayCurve
     measured_stay: LengthOfStay
     swing: Swing
+    booked_share: float = 0.0
     beds_today: int | None = None
 
     @property
     def arrivals_per_day(self) -> float:
-        """How many patients come a day?"""
+        """How many patients come a day, booked ones included?"""
         return self.demand.total_arrivals_per_day
 
     @property
@@ -109,134 +114,101 @@ class DemandEstimate:
         return self.demand.offered_load
 
 
-def estimate_demand(records: Records, ward: str, *, capacity: Capacity | None = None) -> DemandEstimate:
+def estimate_demand(
+    records: Records,
+    ward: str,
+    *,
+    capacity: Capacity | None = None,
+    hidden: HiddenDemand | None = None,
+    booked_apart: bool = False,
+) -> DemandEstimate:
     """What is this ward asked for: how many patients a day, for how long, in which rhythm?
 
     Arrivals are the admissions of the last 12 months (of all days, where the file covers less than two years), freed
-    from season where the period is not a whole year. Stays come from every stay of the file by the product limit.
+    from season where the period is not a whole year; with ``hidden`` demand they are raised to what the ward would
+    have admitted had there always been a bed. Stays come from every stay of the file by the product limit.
+    ``booked_apart`` puts booked patients into a :class:`~bedplan.models.BookedList` instead of among the arrivals.
 
     Raises:
         UnreadableRecords: the ward has no stays in the file's window, or none that ended.
 
     Checked by: tests/data/test_estimating.py
     """
-    stays = _in_window(records, ward)
-    curve = _stay_curve(records, stays, ward)
-    starts = stays["start"].to_numpy().astype("datetime64[s]").astype(np.int64)
-    first, last = (int(moment.timestamp()) for moment in records.window)
-    came = starts[(starts >= first) & (starts < last)]
-    days = (last - first) // 86_400
-    counts = np.bincount((came - first) // 86_400, minlength=days).astype(float)[:days]
-    calendar = pd.date_range(records.window[0], periods=days, freq="D")
-    rhythm = fit_rhythm(counts, calendar.month.to_numpy() - 1, calendar.day_of_week.to_numpy())
-    enough = came.size >= FEWEST_STAYS and days >= FEWEST_DAYS
-    swing = measure_swing(counts, rhythm)
-    counted = days if days < 2 * YEAR_DAYS else int(YEAR_DAYS)
-    per_day, recent = _level(counts, rhythm, calendar, counted, seasonal=enough)
-    stay = _fitted_stay(curve)
-    hours = np.bincount(came % 86_400 // 3600, minlength=24).astype(float)
-    demand = Demand(
-        per_day,
-        stay,
-        month_factors=rhythm.month_factors if enough else (1.0,) * 12,
-        weekday_factors=rhythm.weekday_factors if enough else (1.0,) * 7,
-        hour_factors=_hour_factors(hours) if enough and records.has_times else (1.0,) * 24,
-        clustering=_clustering(swing),
-        rate_variation=min(swing.rate_variation or 0.0, 2.0),
-    )
-    unfinished = int(stays["end"].isna().sum())
+    stays = stays_in_window(records, ward)
+    booked = is_booked(stays)
+    every = arrivals_of(records, stays["start"])
+    curve = stay_curve(records, stays, ward)
+    lists = _booked_lists(records, stays, booked, ward) if booked_apart else ()
+    arrivals = arrivals_of(records, stays["start"][~booked]) if lists else every
+    own_curve = stay_curve(records, stays[~booked], ward) if lists and not booked.all() else curve
+    raised = 1.0 if hidden is None else hidden.arrivals_per_day / max(hidden.admitted_per_day, 1e-9)
+    stay = fitted_stay(own_curve)
+    if hidden is not None and hidden.mean_stay_days > 0:
+        stay = LengthOfStay(hidden.mean_stay_days, stay.variation, stay.shape)
+    demand = _demand(records, arrivals, stay, lists, raised)
+    booked_share = float(booked.mean())
+    days = int(every.counted.sum())
     return DemandEstimate(
         ward=ward,
         demand=demand,
-        uncertainty=_uncertainty(per_day, recent, swing, curve),
-        method=_method(counted, days, curve, stay),
-        notes=tuple(_notes(records, came.size, days, rhythm, curve, unfinished)),
+        uncertainty=_uncertainty(every, curve, demand.offered_load, raised, hidden),
+        method=_method(every, curve, demand, hidden),
+        notes=tuple(_notes(records, every, curve, stays, booked_share, hidden)),
         stays=len(stays),
-        unfinished=unfinished,
+        unfinished=int(stays["end"].isna().sum()),
         window=records.window,
-        counted_from=records.window[1] - pd.Timedelta(days=counted),
-        admissions_per_year=recent / counted * YEAR_DAYS,
-        growth_per_year=rhythm.growth_per_year,
-        growth_error=rhythm.growth_error,
+        counted_from=records.window[1] - pd.Timedelta(days=days),
+        admissions_per_year=every.per_year,
+        growth_per_year=every.rhythm.growth_per_year,
+        growth_error=every.rhythm.growth_error * math.sqrt(max(every.swing.dispersion, 1.0)),
         stay_curve=curve,
         measured_stay=LengthOfStay.measured(*curve.points()),
-        swing=swing,
+        swing=arrivals.swing,
+        booked_share=booked_share,
         beds_today=capacity.beds_today(ward) if capacity and ward in capacity.wards else None,
     )
 
 
-def _in_window(records: Records, ward: str) -> pd.DataFrame:
-    """Return the ward's stays that touch the window."""
-    stays = records.of_ward(ward)
-    first, last = records.window
-    touching = stays[(stays["start"] < last) & ~(stays["end"] <= first)]
-    if touching.empty:
-        raise UnreadableRecords([f"Ward “{ward}” has no stay between {first:%d %B %Y} and {last:%d %B %Y}."])
-    return touching
+def _booked_lists(records: Records, stays: pd.DataFrame, booked: np.ndarray, ward: str) -> tuple[BookedList, ...]:
+    """Return the weekly list that booked patients come from, where there are enough of them and they come by one."""
+    if int(booked.sum()) < FEWEST_BOOKED:
+        return ()
+    stay = fitted_stay(stay_curve(records, stays[booked], ward))
+    found = booked_list(arrivals_of(records, stays["start"][booked]), stay)
+    return () if found is None else (found,)
 
 
-def _stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
-    """Estimate the stay curve; patients in at the window's start are watched from then on only."""
-    day = np.timedelta64(86_400, "s")
-    start = stays["start"].to_numpy()
-    finished = stays["end"].notna().to_numpy()
-    end = np.where(finished, stays["end"].to_numpy(), np.datetime64(records.seen_until, "s"))
-    first = np.datetime64(records.window[0], "s")
-    entry = np.maximum((first - start) / day, 0.0)
-    try:
-        return product_limit(np.maximum((end - start) / day, 0.0), finished, entry)
-    except ImpossibleFigure as problem:
-        raise UnreadableRecords(
-            [f"No stay on ward “{ward}” has ended, so how long patients stay can't be told: check the end column."]
-        ) from problem
+def _demand(
+    records: Records, arrivals: Arrivals, stay: LengthOfStay, lists: tuple[BookedList, ...], raised: float
+) -> Demand:
+    """Put arrivals, stay and rhythm together."""
+    flat, rhythm = not arrivals.enough, arrivals.rhythm
+    return Demand(
+        arrivals.per_day * raised,
+        stay,
+        month_factors=(1.0,) * 12 if flat else rhythm.month_factors,
+        weekday_factors=(1.0,) * 7 if flat else rhythm.weekday_factors,
+        hour_factors=(1.0,) * 24 if flat or not records.has_times else arrivals.hour_factors,
+        clustering=arrivals.swing.clear_clustering,
+        rate_variation=min(arrivals.swing.rate_variation or 0.0, 2.0),
+        booked=lists,
+    )
 
 
-def _level(
-    counts: np.ndarray, rhythm: Rhythm, calendar: pd.DatetimeIndex, counted: int, *, seasonal: bool
-) -> tuple[float, float]:
-    """Return arrivals a day in an average month and week, and the admissions counted for it."""
-    recent = float(counts[-counted:].sum())
-    if not seasonal:
-        return recent / counted, recent
-    months = np.asarray(rhythm.month_factors)[calendar.month.to_numpy()[-counted:] - 1]
-    weekdays = np.asarray(rhythm.weekday_factors)[calendar.day_of_week.to_numpy()[-counted:]]
-    return recent / float((months * weekdays).sum()), recent
-
-
-def _hour_factors(arrivals: np.ndarray) -> tuple[float, ...]:
-    """Return how busy each hour is; hours drawn towards the average by what chance alone explains."""
-    level = np.log(np.maximum(arrivals, 0.5))
-    return shrink_factors(level[1:] - level[0], arrivals)
-
-
-def _fitted_stay(curve: StayCurve) -> LengthOfStay:
-    """Return the lognormal or gamma stay of the measured mean and spread, whichever runs closer to the curve."""
-    mean, variation = max(curve.mean_days, 1e-3), min(curve.variation, 20.0)
-    grid = np.linspace(0.0, max(curve.longest_days, mean), 400)
-    measured = curve.at(grid)
-    choices = [LengthOfStay(mean, variation, shape) for shape in ("lognormal", "gamma")]
-    return min(choices, key=lambda stay: float(np.abs(stay.survival(grid) - measured).sum()))
-
-
-def _clustering(swing: Swing) -> float:
-    """Return the clustering where it is clearly above 1; else 1.
-
-    Below 1, a full ward has spaced its admissions out; those who came were no more even than chance.
-    """
-    clear = swing.clustering - 1.0 > 1.96 * swing.clustering_error
-    return min(swing.clustering, 50.0) if clear else 1.0
-
-
-def _uncertainty(per_day: float, recent: float, swing: Swing, curve: StayCurve) -> Uncertainty:
-    """Return 95 % intervals: arrivals by the Poisson interval widened by their swing, stays by Greenwood."""
-    worth = recent / max(swing.dispersion, 1.0)  # as many independent arrivals as these are worth
-    low = float(special.gammaincinv(worth, 0.025)) / worth if worth > 0 else 0.0
-    high = float(special.gammaincinv(worth + 1, 0.975)) / max(worth, 1e-9) if worth > 0 else 1.0
-    arrivals_error, stay_error = max(worth, 1.0) ** -0.5, curve.mean_standard_error / max(curve.mean_days, 1e-9)
+def _uncertainty(
+    arrivals: Arrivals, curve: StayCurve, beds: float, raised: float, hidden: HiddenDemand | None
+) -> Uncertainty:
+    """Return 95 % intervals; with hidden demand they reach from the lowest method's to the highest one's."""
+    low, high = (bound * raised for bound in arrivals.interval())
+    arrivals_error = max(arrivals.worth, 1.0) ** -0.5
+    if hidden is not None:
+        level = arrivals.per_day / max(hidden.admitted_per_day, 1e-9)  # the latest year against the whole file
+        low, high = min(low, level * hidden.spread[0]), max(high, level * hidden.spread[1])
+        arrivals_error = max(arrivals_error, math.log(max(high / max(low, 1e-9), 1.0)) / 3.92)
+    stay_error = curve.mean_standard_error / max(curve.mean_days, 1e-9)
     spread, both = math.exp(1.96 * stay_error), math.exp(1.96 * math.hypot(arrivals_error, stay_error))
-    beds = per_day * curve.mean_days
     return Uncertainty(
-        arrivals_per_day=(per_day * low, per_day * high),
+        arrivals_per_day=(low, high),
         mean_stay_days=(curve.mean_days / spread, curve.mean_days * spread),
         beds_wanted=(beds / both, beds * both),
         arrivals_error=arrivals_error,
@@ -244,33 +216,50 @@ def _uncertainty(per_day: float, recent: float, swing: Swing, curve: StayCurve) 
     )
 
 
-def _method(counted: int, days: int, curve: StayCurve, stay: LengthOfStay) -> str:
-    """Say in a sentence or two how the figures were found."""
-    period = "the last 12 months" if counted < days else f"all {days:,} days of the file"
+def _method(arrivals: Arrivals, curve: StayCurve, demand: Demand, hidden: HiddenDemand | None) -> str:
+    """Say in a few sentences how the figures were found."""
+    whole = arrivals.counts.size == int(arrivals.counted.sum())
+    period = f"all {arrivals.counts.size:,} days of the file" if whole else "the last 12 months"
+    raised = "" if hidden is None else f", raised to demand by {hidden.method}"
     return (
-        f"Arrivals: recorded admissions of {period}. Mean and spread of stay: product limit over "
+        f"Arrivals: recorded admissions of {period}{raised}. Mean and spread of stay: product limit over "
         f"{int(curve.left.sum()):,} finished stays, unfinished ones counted for as long as they were seen; "
-        f"shape: {stay.shape}, the closer of two with that mean and spread. "
+        f"shape: {demand.length_of_stay.shape}, the closer of two with that mean and spread. "
         "Months, weekdays and growth: one Poisson regression, drawn towards no effect by what chance explains."
     )
 
 
-def _notes(records: Records, came: int, days: int, rhythm: Rhythm, curve: StayCurve, unfinished: int) -> list[str]:
+def _notes(
+    records: Records,
+    arrivals: Arrivals,
+    curve: StayCurve,
+    stays: pd.DataFrame,
+    booked_share: float,
+    hidden: HiddenDemand | None,
+) -> list[str]:
     """Return what does not stop the answer but belongs beside it."""
-    notes = [ADMISSIONS_NOTE]
-    if came < FEWEST_STAYS or days < FEWEST_DAYS:
+    notes = [ADMISSIONS_NOTE] if hidden is None else [ADMISSIONS_NOTE, *hidden.notes]
+    days, unfinished = records.days, int(stays["end"].isna().sum())
+    if not arrivals.enough:
         notes.append(
-            f"Only {came:,} admissions in {days:,} days: too few to tell months, weekdays or hours apart, "
-            "so none is assumed; take the wide intervals seriously."
+            f"Only {arrivals.came.size:,} admissions in {days:,} days: too few to tell months, weekdays or hours apart, "
+            f"so none is assumed; {FEWEST_STAYS} in 90 days are needed. Take the wide intervals seriously."
         )
-    elif not rhythm.has_season:
+    elif not arrivals.rhythm.has_season:
         notes.append(f"The file covers {days:,} days: too few to tell the seasons, so none is assumed.")
+    if records.excluded:
+        notes.append(f"{int((~records.counted_days).sum()):,} days were left out, as chosen.")
     if unfinished:
         notes.append(f"{unfinished:,} patients were still in; their stays are treated as unfinished, not dropped.")
     if curve.open_share > 0:
         notes.append(
             f"The longest stays had not ended; letting them go on as the last ten departures suggest "
             f"adds {curve.tail_days:.2f} days to the mean stay."
+        )
+    if booked_share >= MUCH_BOOKED:
+        notes.append(
+            f"{booked_share:.0%} of admissions were booked. Booked patients come more evenly than chance; a model that "
+            "takes them for chance arrivals errs towards more beds."
         )
     if not records.has_times:
         notes.append("Dates without times: stays are counted in nights and no hour of the day is known.")

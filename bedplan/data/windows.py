@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from bedplan.data.rows import Rows
 
 THIN = 0.5  # fewer than this share of the usual starts a day: patients already in, not a window of admissions
+FEWEST_STARTS = 50  # to know what the usual gap is
 MOST_QUIET_ARRIVALS = 20.0  # usual gaps between starts after which a silence means that the file stopped
 
 
@@ -65,6 +66,8 @@ def find_window(start: NDArray[np.int64], end: NDArray[np.int64], until: int) ->
 def _last_moment(start: NDArray[np.int64], until: int) -> int:
     """Return the end of the window: the last event, or the day of the last start where starts stop long before."""
     last_start = int(start.max())
+    if start.size < FEWEST_STARTS:
+        return until
     usual_gap = (last_start - int(np.median(start))) / max(start.size / 2, 1)
     if until - last_start > max(MOST_QUIET_ARRIVALS * usual_gap, 3 * DAY_SECONDS):
         return -(-(last_start + 1) // DAY_SECONDS) * DAY_SECONDS

@@ -99,9 +99,7 @@ def test_a_single_negative_stay_is_not_guessed_at(read: Read) -> None:
 
 def test_the_repeated_hour_of_autumn_makes_no_negative_stay(read: Read) -> None:
     """In at 01:50 and out at 01:10 in the night the clock goes back is twenty minutes, not less than nothing."""
-    records = read(
-        *PLAIN, "b,b,Heron,2024-10-27 01:50,2024-10-27 01:10", "b,b,Teal,2024-10-27 01:10,2024-10-29 01:10"
-    )
+    records = read(*PLAIN, "b,b,Heron,2024-10-27 01:50,2024-10-27 01:10", "b,b,Teal,2024-10-27 01:10,2024-10-29 01:10")
 
     assert "negative" not in reasons(records)
     assert records.report.set_aside == 0
@@ -239,7 +237,7 @@ def test_day_numbers_counted_from_1904_show_by_the_other_dates(read: Read) -> No
 
 
 def test_names_differing_in_spaces_and_capitals_are_one_ward(read: Read) -> None:
-    """"Teal ", "TEAL" and a no-break space all mean Teal."""
+    """Spaces at the end, capitals and no-break spaces make no other ward."""
     records = read(
         *PLAIN,
         "b,b,Teal,2024-01-05 10:00,2024-01-07 10:00",
@@ -372,7 +370,9 @@ def test_rows_that_say_too_little_are_set_aside(read: Read, row: str, rule: str)
 def test_titles_above_the_headings_are_skipped_and_told(read: Read) -> None:
     """Reports have titles; the headings are found below them."""
     records = read(
-        "patient_key,spell_key,ward,start,end", *PLAIN, headings="Ward stays\n\nLarkmere District Hospital\nJanuary 2024"
+        "patient_key,spell_key,ward,start,end",
+        *PLAIN,
+        headings="Ward stays\n\nLarkmere District Hospital\nJanuary 2024",
     )
 
     assert records.report.rows_in == 19
@@ -390,7 +390,9 @@ def test_dates_without_times_are_counted_in_nights(read: Read) -> None:
 
 def test_a_time_shared_by_many_stays_is_called_a_default(read: Read) -> None:
     """Nobody arrives at 12:00 half of the time."""
-    rows = [f"p{n},s{n},Heron,2024-01-{n % 28 + 1:02d} 12:00,2024-02-{n % 28 + 1:02d} {n % 24:02d}:00" for n in range(250)]
+    rows = [
+        f"p{n},s{n},Heron,2024-01-{n % 28 + 1:02d} 12:00,2024-02-{n % 28 + 1:02d} {n % 24:02d}:00" for n in range(250)
+    ]
 
     assert any("12:00" in note and "default" in note for note in read(*rows).report.notes)
 
@@ -444,7 +446,9 @@ def test_world_time_betrays_itself_between_summer_and_winter(read: Read) -> None
         day = pd.Timestamp("2024-01-01") + pd.Timedelta(days=n % 360)
         local = 8 + (n // 360) % 3
         clock = local - 1 if 4 <= day.month <= 10 else local
-        rows.append(f"p{n},s{n},Heron,{day:%Y-%m-%d} {clock:02d}:{n % 60:02d},{day + pd.Timedelta(days=2):%Y-%m-%d} 15:00")
+        rows.append(
+            f"p{n},s{n},Heron,{day:%Y-%m-%d} {clock:02d}:{n % 60:02d},{day + pd.Timedelta(days=2):%Y-%m-%d} 15:00"
+        )
 
     assert any("world time" in note for note in read(*rows).report.notes)
 

@@ -1,0 +1,131 @@
+"""Who came when: daily counts of a ward's admissions, booked patients apart, and the level of the latest year."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from scipy import special
+
+from bedplan.data.columns import plain
+from bedplan.data.dates import DAY_SECONDS
+from bedplan.data.rhythm import Rhythm, Swing, fit_rhythm, measure_swing, shrink_factors
+from bedplan.models import BookedList
+
+if TYPE_CHECKING:
+    import pandas as pd
+    from numpy.typing import NDArray
+
+    from bedplan.data.records import Records
+    from bedplan.models import LengthOfStay
+
+YEAR_DAYS = 365
+FEWEST_STAYS, FEWEST_DAYS = 200, 90
+# Methods of admission that mean a booked patient. Codes 11 to 13 are the English elective ones.
+BOOKED_METHODS = ("11", "12", "13", "booked", "elective", "waitinglist", "planned", "electivebooked", "electiveplanned")
+
+
+@dataclass(frozen=True)
+class Arrivals:
+    """A ward's admissions in the file's window, day by day, with their rhythm.
+
+    ``counts`` (days,) of all admissions; ``came`` (n,) seconds. ``counted`` (days,) marks the days of the latest year
+    (of all days, where the file has less than two) outside excluded periods.
+    """
+
+    came: NDArray[np.int64]
+    counts: NDArray[np.float64]
+    calendar: pd.DatetimeIndex
+    counted: NDArray[np.bool_]
+    rhythm: Rhythm
+    swing: Swing
+
+    @property
+    def enough(self) -> bool:
+        """Are there enough admissions to tell a rhythm?"""
+        return self.came.size >= FEWEST_STAYS and self.counts.size >= FEWEST_DAYS
+
+    @property
+    def recent(self) -> float:
+        """How many admissions were there in the days counted?"""
+        return float(self.counts[self.counted].sum())
+
+    @property
+    def per_day(self) -> float:
+        """How many come a day in an average month and week, at the level of the days counted?"""
+        if not self.enough:
+            return self.recent / int(self.counted.sum())
+        months = np.asarray(self.rhythm.month_factors)[self.calendar.month.to_numpy() - 1]
+        weekdays = np.asarray(self.rhythm.weekday_factors)[self.calendar.day_of_week.to_numpy()]
+        return self.recent / float((months * weekdays)[self.counted].sum())
+
+    @property
+    def per_year(self) -> float:
+        """How many are admitted in 365 days like those counted?"""
+        return self.recent / int(self.counted.sum()) * YEAR_DAYS
+
+    @property
+    def hour_factors(self) -> tuple[float, ...]:
+        """How busy is each hour of the day? Drawn towards the average by what chance alone explains."""
+        hours = np.bincount(self.came % DAY_SECONDS // 3600, minlength=24).astype(float)
+        level = np.log(np.maximum(hours, 0.5))
+        return shrink_factors(level[1:] - level[0], hours)
+
+    @property
+    def worth(self) -> float:
+        """As many independent arrivals as these are worth, given how they swing."""
+        return self.recent / max(self.swing.dispersion, 1.0)
+
+    def interval(self, share: float = 0.95) -> tuple[float, float]:
+        """Between which figures do arrivals a day lie? The exact Poisson interval, widened by their swing."""
+        tail, worth, per_day = (1 - share) / 2, self.worth, self.per_day
+        if worth <= 0:
+            return 0.0, float(special.gammaincinv(1.0, 1 - tail)) / int(self.counted.sum())
+        low = float(special.gammaincinv(worth, tail)) / worth
+        return per_day * low, per_day * float(special.gammaincinv(worth + 1, 1 - tail)) / worth
+
+
+def arrivals_of(records: Records, start: pd.Series | NDArray[np.datetime64]) -> Arrivals:
+    """Who came when? From the starts of stays; those before or after the window are left out."""
+    seconds = np.asarray(start).astype("datetime64[s]").astype(np.int64)
+    first, last = (int(moment.timestamp()) for moment in records.window)
+    came = seconds[(seconds >= first) & (seconds < last)]
+    counts = np.bincount((came - first) // DAY_SECONDS, minlength=records.days).astype(float)[: records.days]
+    calendar, use = records.calendar, records.counted_days
+    rhythm = fit_rhythm(counts, calendar.month.to_numpy() - 1, calendar.day_of_week.to_numpy(), use)
+    recent = use.copy()
+    if records.days >= 2 * YEAR_DAYS:
+        recent[:-YEAR_DAYS] = False
+    if not recent.any():
+        recent = use if use.any() else np.ones(records.days, dtype=bool)
+    return Arrivals(came, counts, calendar, recent, rhythm, measure_swing(counts, rhythm, use))
+
+
+def is_booked(stays: pd.DataFrame) -> NDArray[np.bool_]:
+    """Which stays were booked, by their method of admission? None where the file has no such column."""
+    if "method" not in stays:
+        return np.zeros(len(stays), dtype=bool)
+    method = stays["method"].cat
+    booked = [code for code, name in enumerate(method.categories) if plain(name) in BOOKED_METHODS]
+    return np.isin(method.codes.to_numpy(), booked)
+
+
+def booked_list(arrivals: Arrivals, stay: LengthOfStay) -> BookedList | None:
+    """Which weekly list do booked admissions come from? None where they swing as much as chance alone.
+
+    With n places a weekday, each taken with chance p, the number who come has variance ÷ mean 1 − p: the swing gives
+    p, the mean gives n.
+    """
+    weekday = arrivals.calendar.day_of_week.to_numpy()[arrivals.counted]
+    counts = arrivals.counts[arrivals.counted]
+    weeks = np.maximum(np.bincount(weekday, minlength=7), 1)
+    means = np.bincount(weekday, weights=counts, minlength=7) / weeks
+    squares = np.bincount(weekday, weights=counts**2, minlength=7) / weeks
+    swing = float((squares - means**2).sum()) / max(float(means.sum()), 1e-9)
+    if swing >= 0.9 or means.sum() <= 0:
+        return None
+    places = np.maximum(np.round(means / (1.0 - swing)), (means > 0.05).astype(float))
+    hour = int(np.bincount(arrivals.came % DAY_SECONDS // 3600, minlength=24).argmax())
+    attends = min(float(means.sum() / places.sum()), 1.0)
+    return BookedList(tuple(int(place) for place in places), stay, hour=hour, attends=attends)

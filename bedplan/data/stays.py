@@ -1,0 +1,59 @@
+"""One ward's stays in the file's window, and the curve of how long they last."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bedplan.data.survival import StayCurve, product_limit
+from bedplan.errors import ImpossibleFigure, UnreadableRecords
+from bedplan.models import LengthOfStay
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from bedplan.data.records import Records
+
+
+def stays_in_window(records: Records, ward: str) -> pd.DataFrame:
+    """Which of the ward's stays touch the file's window?
+
+    Raises:
+        UnreadableRecords: none does.
+    """
+    stays = records.of_ward(ward)
+    first, last = records.window
+    touching = stays[(stays["start"] < last) & ~(stays["end"] <= first)]
+    if touching.empty:
+        raise UnreadableRecords([f"Ward “{ward}” has no stay between {first:%d %B %Y} and {last:%d %B %Y}."])
+    return touching
+
+
+def stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
+    """How long do these patients stay? Those in at the window's start are watched from then on only.
+
+    Raises:
+        UnreadableRecords: none of the stays has ended.
+    """
+    day = np.timedelta64(86_400, "s")
+    start = stays["start"].to_numpy()
+    finished = stays["end"].notna().to_numpy()
+    end = np.where(finished, stays["end"].to_numpy(), np.datetime64(records.seen_until, "s"))
+    first = np.datetime64(records.window[0], "s")
+    entry = np.maximum((first - start) / day, 0.0)
+    try:
+        return product_limit(np.maximum((end - start) / day, 0.0), finished, entry)
+    except ImpossibleFigure as problem:
+        raise UnreadableRecords(
+            [f"No stay on ward “{ward}” has ended, so how long patients stay can't be told: check the end column."]
+        ) from problem
+
+
+def fitted_stay(curve: StayCurve) -> LengthOfStay:
+    """Return the lognormal or gamma stay of the measured mean and spread, whichever runs closer to the curve."""
+    mean, variation = max(curve.mean_days, 1e-3), min(curve.variation, 20.0)
+    grid = np.linspace(0.0, max(curve.longest_days, mean), 400)
+    measured = curve.at(grid)
+    choices = [LengthOfStay(mean, variation, shape) for shape in ("lognormal", "gamma")]
+    return min(choices, key=lambda stay: float(np.abs(stay.survival(grid) - measured).sum()))

@@ -1,0 +1,115 @@
+"""Encodings, separators, Excel and Parquet: one table, however it was saved."""
+
+from __future__ import annotations
+
+import datetime as dt
+import io
+
+import openpyxl
+import pandas as pd
+import pytest
+
+from bedplan.data import read_records
+
+TEXT = (
+    "patient_key,ward,start,end,destination\n"
+    "a,Sandpiper – day,2024-01-01 10:00,2024-01-04 10:00,home\n"
+    "b,Teal,2024-01-02 10:00,,\n"
+)
+PLAIN = read_records(TEXT.encode()).stays.drop(columns="patient_key")
+
+
+@pytest.mark.parametrize("encoding", ["utf-8", "utf-8-sig", "utf-16", "utf-16-le", "utf-16-be", "cp1252"])
+def test_every_common_encoding_is_read(encoding: str) -> None:
+    """A dash in a ward's name survives UTF-8, UTF-16 and Windows-1252."""
+    records = read_records(TEXT.encode(encoding))
+
+    assert records.wards == ("Sandpiper – day", "Teal")
+
+
+@pytest.mark.parametrize("separator", [",", ";", "\t", "|"])
+def test_every_common_separator_is_read(separator: str) -> None:
+    """Comma, semicolon, tab and bar give the same stays."""
+    records = read_records(TEXT.replace(",", separator).encode())
+
+    pd.testing.assert_frame_equal(records.stays.drop(columns="patient_key"), PLAIN)
+
+
+@pytest.mark.parametrize("ending", ["\n", "\r\n", "\r"])
+def test_every_line_ending_is_read(ending: str) -> None:
+    """Unix, Windows and old Macintosh line ends give the same stays."""
+    records = read_records(TEXT.replace("\n", ending).encode())
+
+    pd.testing.assert_frame_equal(records.stays.drop(columns="patient_key"), PLAIN)
+
+
+def test_quoted_cells_may_hold_separators_and_line_ends() -> None:
+    """A comma or a line break inside quotes belongs to the cell."""
+    content = 'patient_key,ward,start,end\na,"Teal, level 2",2024-01-01 10:00,2024-01-04 10:00\n'
+    content += 'b,"Teal,\nlevel 2",2024-01-02 10:00,2024-01-04 10:00\n'
+
+    assert read_records(content.encode()).wards == ("Teal, level 2",)
+
+
+def workbook(rows: list[list[object]], *, titles: int = 0, second_sheet: bool = False) -> bytes:
+    """Return a workbook with titles above the headings."""
+    book = openpyxl.Workbook()
+    sheet = book.active
+    if second_sheet:
+        sheet.append(["Notes on this export"])
+        sheet = book.create_sheet("Stays")
+    for number in range(titles):
+        sheet.append([f"Title {number}"])
+    for row in rows:
+        sheet.append(row)
+    packed = io.BytesIO()
+    book.save(packed)
+    return packed.getvalue()
+
+
+ROWS = [
+    ["patient_key", "ward", "start", "end", "destination"],
+    [
+        "a",
+        "Sandpiper – day",
+        dt.datetime.fromisoformat("2024-01-01 10:00"),
+        dt.datetime.fromisoformat("2024-01-04 10:00"),
+        "home",
+    ],
+    ["b", "Teal", dt.datetime.fromisoformat("2024-01-02 10:00"), None, None],
+]
+
+
+@pytest.mark.parametrize("titles", [0, 3])
+@pytest.mark.parametrize("second_sheet", [False, True])
+def test_excel_gives_the_same_stays(titles: int, second_sheet: bool) -> None:
+    """Titles above the headings and a sheet of notes before the table don't matter."""
+    records = read_records(workbook(ROWS, titles=titles, second_sheet=second_sheet))
+
+    pd.testing.assert_frame_equal(records.stays.drop(columns="patient_key"), PLAIN)
+
+
+def test_excel_cells_that_hold_text_dates_and_bare_numbers_are_read() -> None:
+    """A text date and an unformatted day number in a sheet are dates too (day 45294 is 3 January 2024)."""
+    rows = [
+        ROWS[0],
+        ["a", 7, "2024-01-01 10:00", 45294.5, None],
+        ["b", 7, "2024-01-02 10:00", "2024-01-04 10:00", None],
+    ]
+    records = read_records(workbook(rows))
+
+    assert records.wards == ("7",)
+    assert records.stays["end"].iloc[0] == pd.Timestamp("2024-01-03 12:00")
+
+
+@pytest.mark.parametrize("unit", ["s", "ms", "ns"])
+def test_parquet_gives_the_same_stays(unit: str) -> None:
+    """Typed columns of a Parquet file are read by meaning."""
+    frame = pd.DataFrame(ROWS[1:], columns=ROWS[0]).astype(
+        {"start": f"datetime64[{unit}]", "end": f"datetime64[{unit}]"}
+    )
+    packed = io.BytesIO()
+    frame.astype({"ward": "category"}).to_parquet(packed)
+    records = read_records(packed.getvalue())
+
+    pd.testing.assert_frame_equal(records.stays.drop(columns="patient_key"), PLAIN)
