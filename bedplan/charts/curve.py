@@ -1,18 +1,16 @@
-"""Pictures: specs built once at import, and the named datasets that move in them. No page code.
-
-A spec never changes between reruns: everything that moves travels in a dataset, so the browser redraws in place.
-"""
+"""The bed curve: one line a model, named at the line; marked bed counts; the limit."""
 
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import altair as alt
 import numpy as np
 import pandas as pd
 
 from bedplan import wording
+from bedplan.charts.style import GREY, Datasets, Spec, finished, scale_of
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -20,9 +18,6 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from bedplan.models import BedCurve
-
-Spec = dict[str, Any]
-Datasets = dict[str, pd.DataFrame]
 
 # Hues of the Okabe-Ito set that keep 3:1 contrast on white and on near-black; dashes say the same again.
 COLOURS = {
@@ -49,20 +44,7 @@ NAME_HEIGHTS = {
 }
 ROOM_LEFT_OF_NAMES = 0.7  # the names of the lines stand in the right-hand third, free of marked bed counts
 MARKS = {"today": [1, 0], "average formula": [2, 3], "by the limit": [8, 3]}
-MONTH_COLOURS = {"today": "#D55E00", "by the limit": "#0072B2"}
 NEAR_NOTHING = 0.005
-GREY = "#787878"  # near 4.3:1 on white and on near-black alike
-CONFIG: Spec = {
-    "view": {"stroke": None},
-    "axis": {"labelFontSize": 14, "titleFontSize": 14, "titleFontWeight": "normal", "grid": False, "titlePadding": 8},
-    "font": "Liberation Sans, Arial, sans-serif",
-}
-
-
-def _scale(values: Mapping[str, Any]) -> alt.Scale:
-    return alt.Scale(domain=list(values), range=list(values.values()))
-
-
 _BEDS = alt.X(
     "beds:Q",
     title="Staffed beds",
@@ -75,7 +57,7 @@ _SHARE = alt.Y(
     axis=alt.Axis(format=".0%", tickCount=5, grid=True, gridOpacity=0.3, domain=False, ticks=False),
     scale=alt.Scale(zero=True, nice=False),
 )
-_LINE = alt.Color("line:N", scale=_scale(COLOURS), legend=None)
+_LINE = alt.Color("line:N", scale=scale_of(COLOURS), legend=None)
 
 
 def _model_lines() -> alt.Chart:
@@ -86,8 +68,8 @@ def _model_lines() -> alt.Chart:
             x=_BEDS,
             y=_SHARE,
             color=_LINE,
-            strokeDash=alt.StrokeDash("line:N", scale=_scale(DASHES), legend=None),
-            strokeWidth=alt.StrokeWidth("own:N", scale=_scale({"other": 1.75, "own": 4}), legend=None),
+            strokeDash=alt.StrokeDash("line:N", scale=scale_of(DASHES), legend=None),
+            strokeWidth=alt.StrokeWidth("own:N", scale=scale_of({"other": 1.75, "own": 4}), legend=None),
             tooltip=[
                 alt.Tooltip("line:N", title="Line"),
                 alt.Tooltip("beds:Q", title="Staffed beds", format="d"),
@@ -121,7 +103,7 @@ def _bed_marks() -> list[alt.Chart]:
     """Build the marked bed counts: a post each, its name above the picture in a row of its own."""
     marks = alt.Chart(alt.NamedData("marks"))
     posts = marks.mark_rule(strokeWidth=1.5, color=GREY).encode(
-        x=_BEDS, strokeDash=alt.StrokeDash("mark:N", scale=_scale(MARKS), legend=None)
+        x=_BEDS, strokeDash=alt.StrokeDash("mark:N", scale=scale_of(MARKS), legend=None)
     )
     rows = [
         marks.transform_filter(alt.datum.mark == mark)
@@ -135,48 +117,10 @@ def _bed_marks() -> list[alt.Chart]:
 def _curve() -> Spec:
     layers = [*_limit(), *_bed_marks(), _model_lines(), *_line_names()]
     chart = alt.layer(*layers).resolve_scale(strokeDash="independent").properties(height=380)
-    return chart.to_dict() | {"config": CONFIG}
-
-
-def _months() -> Spec:
-    """Build the months: today's beds against the recommended, as two labelled lines of points, and the limit."""
-    month = alt.X(
-        "month:O",
-        scale=alt.Scale(domain=list(wording.MONTHS_SHORT)),
-        title=None,
-        axis=alt.Axis(labelAngle=0, labelAlign="center"),
-    )
-    share = alt.Y(
-        "share:Q",
-        title=None,
-        axis=alt.Axis(format=".0%", tickCount=4, grid=True, gridOpacity=0.3, domain=False, ticks=False),
-    )
-    colour = alt.Color("which:N", scale=_scale(MONTH_COLOURS), legend=None)
-    data = alt.Chart(alt.NamedData("months"))
-    line = data.mark_line(strokeWidth=2.5).encode(
-        x=month,
-        y=share,
-        color=colour,
-        strokeDash=alt.StrokeDash("which:N", scale=_scale({"today": [6, 4], "by the limit": [1, 0]}), legend=None),
-    )
-    point = data.mark_point(filled=True, size=50, opacity=1).encode(
-        x=month,
-        y=share,
-        color=colour,
-        tooltip=[alt.Tooltip("label:N", title="Beds"), "month:O", alt.Tooltip("share:Q", format=".1%", title="Share")],
-    )
-    names = (
-        alt.Chart(alt.NamedData("month_names"))
-        .mark_text(align="left", dx=8, fontSize=14)
-        .encode(x=month, y=share, text="label:N", color=colour)
-    )
-    limit = alt.Chart(alt.NamedData("limit"))
-    rule = limit.mark_rule(strokeWidth=1.5, color=GREY).encode(x=alt.X("from:O", title=None), x2="to:O", y=share)
-    return alt.layer(rule, line, point, names).properties(height=200).to_dict() | {"config": CONFIG}
+    return finished(chart)
 
 
 CURVE: Spec = _curve()
-MONTHS: Spec = _months()
 
 
 def curve_data(
@@ -228,36 +172,3 @@ def _shown(beds: NDArray[np.int64], share: NDArray[np.float64], window: tuple[in
     if edge > window[0]:
         inside = np.concatenate([[edge], inside])
     return pd.DataFrame({"beds": inside, "share": np.interp(inside, beds, share)})
-
-
-def months_data(points: Mapping[str, tuple[int, NDArray[np.float64]]], limit: float) -> Datasets:
-    """Which datasets draw the months? ``points``: mark -> (beds, the figure in each month); the formula's is left out."""
-    rows, names = [], []
-    for which, (beds, months) in points.items():
-        if which not in MONTH_COLOURS:
-            continue
-        rows += [
-            {"month": month, "share": float(share), "which": which, "label": f"{which} {beds}"}
-            for month, share in zip(wording.MONTHS_SHORT, months, strict=True)
-        ]
-        names.append(rows[-1])
-    first, last = wording.MONTHS_SHORT[0], wording.MONTHS_SHORT[-1]
-    return {
-        "months": pd.DataFrame(rows),
-        "month_names": pd.DataFrame(names),
-        "limit": pd.DataFrame([{"share": limit, "from": first, "to": last}]),
-    }
-
-
-def live(spec: Spec, data: Datasets) -> Spec:
-    """Return what a page draws: the unchanged spec with its datasets beside it (frames travel as they are)."""
-    return spec | {"datasets": data}
-
-
-def printed(spec: Spec, data: Datasets, *, width: int = 640) -> Spec:
-    """Return what a document draws: the same spec on white, with its rows inside."""
-    return spec | {
-        "width": width,
-        "background": "white",
-        "datasets": {name: frame.to_dict("records") for name, frame in data.items()},
-    }

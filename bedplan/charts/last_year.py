@@ -1,0 +1,74 @@
+"""What happened: the share of hours full through the week, and last year's days inside the predicted band."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import altair as alt
+import numpy as np
+import pandas as pd
+
+from bedplan import wording
+from bedplan.charts.style import GREY, Datasets, Spec, finished
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+
+def _week() -> Spec:
+    """Build the week: a cell an hour, its share written in it, darker where the ward is full more often."""
+    data = alt.Chart(alt.NamedData("week"))
+    hour = alt.X("hour:O", title="Hour of the day", axis=alt.Axis(labelAngle=0))
+    day = alt.Y("day:O", sort=list(wording.WEEKDAYS), title=None)
+    colour = alt.Color("share:Q", scale=alt.Scale(domain=[0, 1], range=["#FFFFFF", "#08306B"]), legend=None)
+    cells = data.mark_rect(stroke="#B8BEC4", strokeWidth=0.5).encode(
+        x=hour,
+        y=day,
+        color=colour,
+        tooltip=["day:O", "hour:O", alt.Tooltip("share:Q", format=".0%", title="Share of hours full")],
+    )
+    ink = alt.condition("datum.share > 0.5", alt.value("#FFFFFF"), alt.value("#0F1419"))
+    text = data.mark_text(fontSize=12).encode(x=hour, y=day, text="said:N", color=ink)
+    return finished(alt.layer(cells, text).properties(height=alt.Step(30)))
+
+
+def _check() -> Spec:
+    """Build last year: the band that was predicted, the middle of it, and the patients who were there."""
+    data = alt.Chart(alt.NamedData("check"))
+    day = alt.X("day:T", title=None, axis=alt.Axis(format="%b %Y", tickCount=8))
+    patients = alt.Y("low:Q", title="Patients", scale=alt.Scale(zero=False), axis=alt.Axis(grid=True, gridOpacity=0.3))
+    band = data.mark_area(color="#0072B2", opacity=0.25).encode(x=day, y=patients, y2="high:Q")
+    middle = data.mark_line(color="#0072B2", strokeDash=[6, 4], strokeWidth=1.5).encode(x=day, y="middle:Q")
+    seen = data.mark_line(color="#D55E00", strokeWidth=1.5).encode(x=day, y="seen:Q")
+    names = alt.Chart(alt.NamedData("check_names")).mark_text(align="left", dx=6, fontSize=14)
+    words = names.encode(x="day:T", y="at:Q", text="name:N", color=alt.Color("colour:N", scale=None))
+    beds = alt.Chart(alt.NamedData("check_beds"))
+    line = beds.mark_rule(color=GREY, strokeWidth=1.5).encode(y="beds:Q")
+    return finished(alt.layer(band, middle, seen, line, words).properties(height=280))
+
+
+WEEK: Spec = _week()
+CHECK: Spec = _check()
+
+
+def week_data(shares: NDArray[np.float64]) -> Datasets:
+    """Which cells show these shares of hours full, ``(7, 24)``, Monday first?"""
+    rows = [
+        {"day": day, "hour": hour, "share": float(share), "said": f"{100 * share:.0f}"}
+        for day, row in zip(wording.WEEKDAYS, shares, strict=True)
+        for hour, share in enumerate(row)
+    ]
+    return {"week": pd.DataFrame(rows)}
+
+
+def check_data(days: pd.DataFrame, beds: float | None) -> Datasets:
+    """Which lines show last year? ``days``: columns day, seen, low, middle, high; ``beds`` drawn where known."""
+    last = days.iloc[-1]
+    names = [
+        {"day": last["day"], "at": float(last["seen"]), "name": "seen", "colour": "#D55E00"},
+        {"day": last["day"], "at": float(last["high"]), "name": "8 days in 10", "colour": "#0072B2"},
+    ]
+    if abs(names[0]["at"] - names[1]["at"]) < 0.08 * float(np.ptp(days[["low", "high"]].to_numpy())):
+        names[1]["at"] = names[0]["at"] + 0.1 * float(np.ptp(days[["low", "high"]].to_numpy()))
+    line = pd.DataFrame({"beds": [] if beds is None else [beds]})
+    return {"check": days, "check_names": pd.DataFrame(names), "check_beds": line}
