@@ -5,11 +5,12 @@ from __future__ import annotations
 import json
 import math
 from dataclasses import asdict, dataclass, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from bedplan import wording
 from bedplan.decision import Ward
-from bedplan.errors import UnreadableRecords
+from bedplan.decision.ward import MOST_WARD_BEDS
+from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
@@ -19,6 +20,7 @@ if TYPE_CHECKING:
     from bedplan.decision.ward import WhenWardIsFull
 
 PLAN_FORMAT = 1
+TOTALS = ("admissions_per_year", "mean_days", "variation", "beds")
 
 
 @dataclass(frozen=True, slots=True)
@@ -111,9 +113,17 @@ def planned_ward(baseline: Baseline, beds: int, when_full: WhenWardIsFull, chang
 def from_estimate(estimate: DemandEstimate, beds: int | None) -> Baseline:
     """What do a ward's records say? The estimate's demand and facts; without a capacity file beds start at its load.
 
+    Raises:
+        ImpossibleFigure: more staffed beds than a ward can have.
+
     Checked by: tests/test_plan.py
     """
     start = math.ceil(estimate.demand.offered_load) if beds is None else beds
+    if start > MOST_WARD_BEDS:
+        raise ImpossibleFigure(
+            f"{estimate.ward} has {start:,} staffed beds in the capacity file; a ward has at most {MOST_WARD_BEDS:,}. "
+            "Check the file."
+        )
     unknown = "No capacity file was given: type today's staffed beds. Until then they start at the average beds wanted."
     return Baseline(
         name=estimate.ward,
@@ -216,8 +226,8 @@ def from_json(text: str | bytes) -> SavedPlan:
         version = held.pop("plan")
         plan = SavedPlan(**held)
         settings = {str(name): dict(values) for name, values in plan.settings.items()}
-        typed = {str(name): {key: float(value) for key, value in row.items()} for name, row in plan.typed.items()}
-        answers = dict(plan.answers)
+        typed = {str(name): {key: float(row[key]) for key in TOTALS} for name, row in plan.typed.items()}
+        answers = _answers(plan.answers)
     except (ValueError, TypeError, AttributeError, KeyError) as problem:
         raise UnreadableRecords(
             ["This is not a plan saved by bedplan: choose a file that “Save this plan” wrote."]
@@ -225,3 +235,15 @@ def from_json(text: str | bytes) -> SavedPlan:
     if version != PLAN_FORMAT:
         raise UnreadableRecords([f"This plan has format {version}; this program reads format {PLAN_FORMAT}."])
     return SavedPlan(str(plan.records), settings, typed, answers)
+
+
+def _answers(held: Mapping[str, Any]) -> dict[str, Mapping[str, str] | str | None]:
+    """Return the answers about a file, each of the kind it should be."""
+    if not held:
+        return {}
+    order = held.get("date_order")
+    texts = {
+        key: {str(name): str(value) for name, value in dict(held.get(key, {})).items()}
+        for key in ("columns", "ward_names")
+    }
+    return {**texts, "date_order": None if order is None else str(order)}

@@ -65,14 +65,14 @@ class Ward:
 
     @property
     def bed_counts(self) -> NDArray[np.int64]:
-        """Every bed count worth drawing: from none to well past today's beds and the busiest month's need.
+        """Every bed count worth drawing: from none to well past today's, the formula's and the busiest month's.
 
         Beds that closures or single-sex bays take out of use come on top, so that a rule can still be met.
         """
         peak = self.demand.offered_load * max(self.demand.month_factors)
         swing = math.sqrt(self.demand.clustering + peak * self.demand.rate_variation**2)
         most = math.ceil(peak + 5.0 * swing * math.sqrt(peak) + 8) + self.bed_changes.most_out_of_use
-        most = max(most, self.beds + 5)
+        most = max(most, self.beds + 5, self.average_formula_beds + 5)
         return np.arange(min(most, 20_000) + 1)
 
     @property

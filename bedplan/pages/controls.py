@@ -5,28 +5,24 @@ Nothing here computes a figure: it turns what is on screen into the value object
 
 from __future__ import annotations
 
-from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import pandas as pd
 import streamlit as st
 
 from bedplan import wording
-from bedplan.data import Capacity, Records, estimate_demand, read_capacity, read_records
 from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
 from bedplan.errors import UnreadableRecords
 from bedplan.export import Source, WardCase, case_for
 from bedplan.models import MODELS, LengthOfStay
-from bedplan.plan import Baseline, Changes, SavedPlan, as_json, from_estimate, from_totals, planned_ward
+from bedplan.pages import loaded
+from bedplan.plan import Baseline, Changes, SavedPlan, as_json, from_totals, planned_ward
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
+    from bedplan.data import Capacity, Records
     from bedplan.decision import Rule
-
-DEMO = Path(__file__).resolve().parents[2] / "demo_data"
-# What the wards of the invented demo hospital do when full; for other records the planner answers.
-DEMO_LEAVES = frozenset({"Merlin", "Curlew", "Dunlin", "Sandpiper"})
 
 # key -> (label, lowest, highest, start, step, format); whole numbers keep the page's address short
 SLIDERS: Mapping[str, tuple[str, int, int, int, int, str]] = {
@@ -46,58 +42,33 @@ MEASURES: Mapping[str, tuple[str, Callable[[float, Any], Rule]]] = {
 }
 WITHIN = {"every_month": "in every month", "year": "over the year"}
 FINGERPRINT_SHOWN = 12
+FIRST_SHOWN = "Kestrel"  # of the demo; other records start with their first ward
 PERSIST: Mapping[str, str] = {"bind": "query-params", "persist_state": "session"}
 
 
-@st.cache_resource(max_entries=1, show_spinner="Opening the Larkmere demo…")
-def demo() -> tuple[Records, Capacity]:
-    """Return the invented hospital's records: shared by everyone, since they are nobody's."""
-    return read_records(DEMO / "stays.csv"), read_capacity(DEMO / "capacity.csv")
-
-
-def records() -> Records:
-    """Return the records of this session: the planner's own, or the demo."""
-    return st.session_state.get("records") or demo()[0]
-
-
-def is_demo() -> bool:
-    """Whether the figures on screen are the invented hospital's."""
-    return st.session_state.get("records") is None
-
-
-def capacity() -> Capacity | None:
-    """Return the capacity file of this session, where there is one."""
-    return demo()[1] if is_demo() else st.session_state.get("capacity")
-
-
 def _forget_figures() -> None:
-    """Forget what was worked out from earlier records; settings of typed wards stay."""
-    for key in ("baselines", *SLIDERS, "beds", "full", "ward"):
+    """Forget the inputs of earlier records' wards; settings of typed wards stay."""
+    for key in (*SLIDERS, "beds", "full", "hidden", "ward"):
         st.session_state.pop(key, None)
     typed = st.session_state.get("typed", {})
     kept = {name: values for name, values in st.session_state.get("settings", {}).items() if name in typed}
     st.session_state["settings"] = kept | st.session_state.pop("planned_settings", {})
 
 
-def use_records(loaded: Records) -> None:
-    """Plan with these records from now on."""
+def use_records(found: Records | None) -> None:
+    """Plan with these records from now on; None = the demo again."""
     _forget_figures()
-    st.session_state["records"], st.session_state["capacity"] = loaded, None
-    st.session_state["asked_records"] = loaded.fingerprint[:FINGERPRINT_SHOWN]
+    loaded.use_records(found)
+    if found is None:
+        for key in ("file", "answers", "problem"):
+            st.session_state.pop(key, None)
+    st.session_state["asked_records"] = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
 
 
 def use_capacity(beds: Capacity) -> None:
     """Take today's staffed beds from this file from now on."""
     _forget_figures()
-    st.session_state["capacity"] = beds
-
-
-def use_demo() -> None:
-    """Forget the planner's records and show the demo again."""
-    _forget_figures()
-    for key in ("records", "capacity", "file", "answers", "problem"):
-        st.session_state.pop(key, None)
-    st.session_state["asked_records"] = records().fingerprint[:FINGERPRINT_SHOWN]
+    loaded.use_file(capacity=beds)
 
 
 def use_totals(ward: Baseline) -> None:
@@ -116,7 +87,7 @@ def plan_as_json() -> str:
     """Return the plan of this session as a file's text."""
     typed = {name: _totals(base) for name, base in st.session_state.get("typed", {}).items()}
     answers = st.session_state.get("answers", {})
-    return as_json(SavedPlan(records().fingerprint, st.session_state.get("settings", {}), typed, answers))
+    return as_json(SavedPlan(loaded.records().fingerprint, st.session_state.get("settings", {}), typed, answers))
 
 
 def _totals(base: Baseline) -> dict[str, float]:
@@ -143,7 +114,7 @@ def use_plan(plan: SavedPlan) -> None:
     }
     known = {name: _inputs(values) for name, values in plan.settings.items()}
     st.session_state["typed"] = st.session_state.get("typed", {}) | typed
-    if plan.records == records().fingerprint:
+    if plan.records == loaded.records().fingerprint:
         st.session_state["settings"] = st.session_state.get("settings", {}) | known
         shown = st.session_state.get("ward")
         if shown in known:
@@ -166,50 +137,51 @@ def _inputs(values: Mapping[str, Any]) -> dict[str, Any]:
         beds = min(max(int(values["beds"]), 0), 2000)
     except (KeyError, TypeError, ValueError) as problem:
         raise UnreadableRecords(["The plan file holds a setting that is not a number: save it again."]) from problem
-    return sliders | {"beds": beds, "full": "leaves" if values.get("full") == "leaves" else "waits"}
+    full = "leaves" if values.get("full") == "leaves" else "waits"
+    return sliders | {"beds": beds, "full": full, "hidden": values.get("hidden") is True}
 
 
 def ward_names() -> list[str]:
     """Return every ward there is a baseline for: those typed as totals first, then those in the records."""
     typed = st.session_state.get("typed", {})
-    return [*typed, *(name for name in records().wards if name not in typed)]
+    return [*typed, *(name for name in loaded.records().wards if name not in typed)]
+
+
+def choose_ward() -> str:
+    """Draw the choice of a ward in the sidebar, for pages about the records; the same ward as on the page One ward."""
+    names = list(loaded.records().wards)
+    shown = st.session_state.get("ward", FIRST_SHOWN)
+    with st.sidebar:
+        name = st.selectbox("Ward", names, names.index(shown) if shown in names else 0, key="ward_looked_at")
+    if name != shown:
+        show_ward(name)
+    return name
 
 
 def baseline(name: str) -> Baseline:
-    """Return where the sliders of a ward start."""
+    """Return where the sliders of a ward start, hidden demand added where the planner asked for it."""
     typed = st.session_state.get("typed", {})
     if name in typed:
         return typed[name]
-    if is_demo():
-        return _demo_baseline(name)
-    known: dict[str, Baseline] = st.session_state.setdefault("baselines", {})
-    if name not in known:
-        known[name] = from_estimate(estimate_demand(records(), name, capacity=capacity()), _beds_today(name))
-    return known[name]
-
-
-@st.cache_resource(max_entries=20)
-def _demo_baseline(name: str) -> Baseline:
-    stays, beds = demo()
-    return from_estimate(estimate_demand(stays, name, capacity=beds), beds.beds_today(name))
-
-
-def _beds_today(name: str) -> int | None:
-    """Return today's staffed beds from the capacity file, or None where it must be typed."""
-    beds = capacity()
-    return beds.beds_today(name) if beds is not None and name in beds.wards else None
+    chosen = st.session_state.setdefault("settings", {}).get(name, {})
+    return loaded.baseline(name, with_hidden=bool(chosen.get("hidden", False)))
 
 
 def starting_values(name: str) -> dict[str, Any]:
     """Return what every input of a ward shows before anything was changed."""
-    leaves = is_demo() and name in DEMO_LEAVES
+    leaves = loaded.is_demo() and name in loaded.DEMO_LEAVES
     values: dict[str, Any] = {key: slider[3] for key, slider in SLIDERS.items()}
-    return values | {"beds": baseline(name).beds, "full": "leaves" if leaves else "waits"}
+    return values | {"beds": baseline(name).beds, "full": "leaves" if leaves else "waits", "hidden": False}
 
 
 def settings_of(name: str) -> dict[str, Any]:
     """Return a ward's inputs as last left, or as they start."""
     return st.session_state.setdefault("settings", {}).get(name) or starting_values(name)
+
+
+def remember(name: str, **values: Any) -> None:
+    """Keep some of a ward's inputs for when the planner comes back to it."""
+    st.session_state.setdefault("settings", {})[name] = settings_of(name) | values
 
 
 def case_of(name: str) -> WardCase:
@@ -222,8 +194,10 @@ def case_of(name: str) -> WardCase:
         peak=values["peak"] / 100,
         growth=values["growth"] / 100,
     )
+    said = "added" if values["hidden"] else "left out"
+    settings = (*changes.rows(), ("Demand that the records hide", said))
     ward = planned_ward(base, int(values["beds"]), values["full"], changes)
-    return case_for(ward, rule_for(ward.when_full), base.facts, changes.rows())
+    return case_for(ward, rule_for(ward.when_full), base.facts, settings)
 
 
 def measures() -> list[str]:
@@ -248,7 +222,7 @@ def source(wards: list[str]) -> Source:
     typed = st.session_state.get("typed", {})
     if wards and all(name in typed for name in wards):
         return Source("Totals typed by the planner")
-    return Source.from_records(records())
+    return Source.from_records(loaded.records())
 
 
 def facts_table(case: WardCase) -> pd.DataFrame:
@@ -265,19 +239,19 @@ def small_curve(case: WardCase) -> list[float]:
 
 def show_origin() -> None:
     """Say whose figures these are, and whether the address asks for records that are not loaded."""
-    here = records().fingerprint[:FINGERPRINT_SHOWN]
+    here = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
     asked = st.session_state.setdefault("asked_records", st.query_params.get("records", here))
     if asked != here:
         st.warning(
             f"This address was made with records {wording.plain(asked)}, which are not loaded: the figures below come from "
-            f"{wording.plain(records().name)} ({here}). Load those records on the page Records."
+            f"{wording.plain(loaded.records().name)} ({here}). Load those records on the page Records."
         )
-    elif is_demo():
+    elif loaded.is_demo():
         st.caption("The invented Larkmere hospital. Load your own records on the page Records.")
 
 
 def keep_address() -> None:
     """Put the records' fingerprint into the page's address, beside the inputs that keep themselves there."""
-    here = records().fingerprint[:FINGERPRINT_SHOWN]
+    here = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
     if st.query_params.get("records") != here:
         st.query_params["records"] = here

@@ -10,7 +10,7 @@ import streamlit as st
 from bedplan import charts, wording
 from bedplan.decision import check_by_simulation
 from bedplan.errors import BedplanError
-from bedplan.pages import controls
+from bedplan.pages import controls, loaded
 
 if TYPE_CHECKING:
     from bedplan.export import WardCase
@@ -55,7 +55,7 @@ def _peak_text(factors: tuple[float, ...], size: float) -> str:
 def inputs() -> str:
     """Draw the inputs and return the ward's name."""
     names = controls.ward_names()
-    start = next((names.index(one) for one in ("Kestrel",) if one in names), 0)
+    start = next((names.index(one) for one in (controls.FIRST_SHOWN,) if one in names), 0)
     name = st.selectbox("Ward", names, index=start, key="ward", on_change=load_ward, **controls.PERSIST)
     starting = controls.starting_values(name)
     st.radio(
@@ -95,16 +95,13 @@ def inputs() -> str:
         required=True,
         **controls.PERSIST,
     )
+    if name in loaded.records().wards:
+        wanted = st.toggle("Add the demand that the records hide", key="hidden", **controls.PERSIST)
+        controls.remember(name, hidden=wanted)
     for key, (_, low, high, first, step, form) in controls.SLIDERS.items():
         st.slider(slider_label(key, name), low, high, first, step, format=form, key=key, **controls.PERSIST)
     st.button("Back to what the records say", on_click=reset, width="stretch")
     return name
-
-
-def remember(name: str) -> None:
-    """Keep this ward's inputs for when the planner comes back to it."""
-    keys = ("beds", "full", *controls.SLIDERS)
-    st.session_state.setdefault("settings", {})[name] = {key: st.session_state[key] for key in keys}
 
 
 def notes(case: WardCase, values: dict[str, Any]) -> None:
@@ -160,9 +157,13 @@ def simulation(case: WardCase) -> None:
 
 
 controls.show_origin()
-with st.sidebar:
-    ward_name = inputs()
-remember(ward_name)
+try:
+    with st.sidebar:
+        ward_name = inputs()
+except BedplanError as error:
+    st.error(wording.plain(str(error)))
+    st.stop()
+controls.remember(ward_name, **{key: st.session_state[key] for key in ("beds", "full", *controls.SLIDERS)})
 controls.keep_address()
 try:
     ward_case = controls.case_of(ward_name)

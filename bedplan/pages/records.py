@@ -8,11 +8,19 @@ import pandas as pd
 import streamlit as st
 
 from bedplan import wording
-from bedplan.data import IntakeChoices, preview_columns, read_capacity, read_records
+from bedplan.data import (
+    IntakeChoices,
+    preview_columns,
+    read_cancellations,
+    read_capacity,
+    read_census,
+    read_records,
+    read_refusals,
+)
 from bedplan.data.preview import MATCHED
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.models import LengthOfStay
-from bedplan.pages import controls
+from bedplan.pages import controls, loaded
 from bedplan.plan import from_json, from_totals
 
 if TYPE_CHECKING:
@@ -22,18 +30,13 @@ NO_ANSWERS = {"columns": {}, "date_order": None, "ward_names": {}}
 NONE = "(none)"
 
 
-def problems_of(error: BedplanError) -> list[str]:
-    """Return every problem of a file, one sentence each."""
-    return list(error.problems) if isinstance(error, UnreadableRecords) else [str(error)]
-
-
 def take_file() -> None:
     """Read the file in hand with the answers given so far; on failure keep what was loaded before."""
     name, content = st.session_state["file"]
     answers = st.session_state.setdefault("answers", dict(NO_ANSWERS))
     try:
         with st.spinner(f"Reading {name}…"):
-            loaded = read_records(
+            found = read_records(
                 content,
                 name=name,
                 columns=answers["columns"],
@@ -41,10 +44,11 @@ def take_file() -> None:
                 choices=IntakeChoices(ward_names=answers["ward_names"]),
             )
     except BedplanError as error:
-        st.session_state["problem"] = (problems_of(error), getattr(error, "question", None))
+        problems = error.problems if isinstance(error, UnreadableRecords) else (str(error),)
+        st.session_state["problem"] = (problems, getattr(error, "question", None))
         return
     st.session_state.pop("problem", None)
-    controls.use_records(loaded)
+    controls.use_records(found)
 
 
 def load_stays() -> None:
@@ -68,7 +72,7 @@ def load_capacity() -> None:
         "Staffed beds (CSV or Excel), if you have them: ward, from, to, staffed beds, closed beds",
         key="capacity_file",
         help="Without it, type today's staffed beds on the page One ward.",
-        disabled=controls.is_demo(),
+        disabled=loaded.is_demo(),
     )
     if given is None or st.session_state.get("capacity_taken") == given.file_id:
         return
@@ -76,7 +80,26 @@ def load_capacity() -> None:
     try:
         controls.use_capacity(read_capacity(given.getvalue(), name=given.name))
     except BedplanError as error:
-        st.error(wording.plain(" ".join(problems_of(error))))
+        st.error(wording.plain(str(error)))
+
+
+def load_more() -> None:
+    """Offer the files that show what full wards could not take, and the official count."""
+    kinds = {
+        "refusals": ("Refusals: time, ward, reason", read_refusals),
+        "cancellations": ("Cancelled booked patients: planned date, ward, reason", read_cancellations),
+        "census": ("Census: date, time, ward, patients", read_census),
+    }
+    with st.expander("More files"):
+        for kind, (label, read) in kinds.items():
+            given = st.file_uploader(label, key=f"{kind}_file", disabled=loaded.is_demo())
+            if given is None or st.session_state.get(f"{kind}_taken") == given.file_id:
+                continue
+            st.session_state[f"{kind}_taken"] = given.file_id
+            try:
+                loaded.use_file(**{kind: read(given.getvalue(), name=given.name)})
+            except BedplanError as error:
+                st.error(wording.plain(str(error)))
 
 
 def show_problem() -> None:
@@ -242,7 +265,7 @@ def keep_plan() -> None:
     try:
         controls.use_plan(from_json(given.getvalue()))
     except BedplanError as error:
-        st.error(wording.plain(" ".join(problems_of(error))))
+        st.error(wording.plain(str(error)))
         return
     st.success("The plan is open. Load the records it was made with, if they are not loaded yet.")
 
@@ -253,22 +276,23 @@ with left_side:
     load_stays()
     show_problem()
     load_capacity()
+    load_more()
     st.caption("Files stay in this computer's memory. Largest upload 300 MB; larger files by path on the command line.")
-    if not controls.is_demo():
-        st.button("Forget these records, show the Larkmere demo", on_click=controls.use_demo)
+    if not loaded.is_demo():
+        st.button("Forget these records, show the Larkmere demo", on_click=controls.use_records, args=(None,))
     st.subheader("Keep your settings", anchor=False)
     keep_plan()
 with right_side:
     st.subheader("No file? Type totals", anchor=False)
     type_totals()
-records = controls.records()
+records = loaded.records()
 first, last = records.window
-whose = "The Larkmere demo" if controls.is_demo() else wording.plain(records.name)
+whose = "The Larkmere demo" if loaded.is_demo() else wording.plain(records.name)
 st.subheader(f"{whose}: what became of every row", anchor=False)
 mark = records.fingerprint[: controls.FINGERPRINT_SHOWN]
 st.caption(f"{first:%d %B %Y} to {last:%d %B %Y} · {len(records.wards)} wards · fingerprint {mark}")
 show_intake(records)
-if not controls.is_demo():
+if not loaded.is_demo():
     confirm_links(records)
     if "problem" not in st.session_state:
         confirm_columns()

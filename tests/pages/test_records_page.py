@@ -178,7 +178,6 @@ def test_one_ward_alone(open_app: Callable[..., AppTest], stays_csv: bytes) -> N
     assert_every_page_is_calm(app)
 
 
-@pytest.mark.xfail(strict=True, reason="the page One ward stops with an exception instead of a sentence")
 def test_a_ward_where_nobody_left(open_app: Callable[..., AppTest], stays_csv: bytes) -> None:
     """A ward whose stays all lack an end can't be planned, and the page says so in a sentence; the others can."""
     app = give_stays(open_app(), "stays.csv", stays_csv + b"\nAnnex,2024-12-30 10:00,\nAnnex,2024-12-31 10:00,")
@@ -192,7 +191,6 @@ def test_a_ward_where_nobody_left(open_app: Callable[..., AppTest], stays_csv: b
     assert len(app.dataframe[0].value) == 2
 
 
-@pytest.mark.xfail(strict=True, reason="the page One ward stops with an exception instead of a sentence")
 def test_more_beds_than_a_ward_can_have(open_app: Callable[..., AppTest], stays_csv: bytes) -> None:
     """A capacity file with an absurd bed count leads to a sentence, not to a broken page."""
     app = give_stays(open_app(), "stays.csv", stays_csv)

@@ -126,7 +126,6 @@ def test_totals_typed_again(open_app: Callable[..., AppTest]) -> None:
     assert plan(app, "Annex").startswith("Annex has 15 staffed beds")
 
 
-@pytest.mark.xfail(strict=True, reason="the curve ends before the average formula's bed count")
 @pytest.mark.parametrize(("admissions", "key", "value"), [(7300.0, "demand", -50), (100_000.0, "demand", 0)])
 def test_the_formula_may_lie_far_above_the_need(
     open_app: Callable[..., AppTest], admissions: float, key: str, value: int

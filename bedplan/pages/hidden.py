@@ -1,0 +1,83 @@
+"""Hidden demand: the steps from what a ward recorded to what was asked of it, and how sure that is."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import pandas as pd
+import streamlit as st
+
+from bedplan import charts, wording
+from bedplan.errors import BedplanError
+from bedplan.pages import controls, loaded
+
+if TYPE_CHECKING:
+    from bedplan.data import HiddenDemand
+
+
+def headline(found: HiddenDemand) -> str:
+    """Say in a sentence what is wanted and what is in use."""
+    used = found.steps[0].beds
+    return (
+        f"{found.ward}'s patients want {wording.beds_on_average(found.beds_wanted)}; "
+        f"{used:,.1f} are in use on {found.ward}."
+    )
+
+
+def methods(found: HiddenDemand) -> pd.DataFrame:
+    """Return a row a method: its answer with the range, or why it can't tell."""
+    rows = [
+        {
+            "Method": figure.method.capitalize(),
+            "Patients a day": "can't tell" if figure.arrivals_per_day is None else f"{figure.arrivals_per_day:.2f}",
+            "Range": "" if figure.arrivals_per_day is None else f"{figure.low:.2f} to {figure.high:.2f}",
+            "Why": wording.plain(figure.sentence),
+        }
+        for figure in found.figures
+    ]
+    return pd.DataFrame(rows).set_index("Method")
+
+
+def show(name: str) -> None:
+    """Show one ward's steps and methods, and the switch that plans on them."""
+    found = loaded.hidden(name)
+    st.header(wording.plain(headline(found)), anchor=False)
+    steps = charts.steps_data([(step.label, step.beds) for step in found.steps])
+    st.vega_lite_chart(charts.live(charts.STEPS, steps), theme=None, width="stretch", alt=headline(found))
+    low, high = found.spread
+    st.markdown(
+        f"**{found.arrivals_per_day:.2f} patients a day wanted this ward; {found.admitted_per_day:.2f} were admitted.** "
+        f"Read from {found.method}; across all methods {low:.2f} to {high:.2f} a day."
+    )
+    st.table(methods(found))
+    for note in found.notes:
+        st.markdown(f"- {wording.plain(note)}")
+    chosen = st.toggle(
+        f"Plan {wording.plain(name)} on this demand",
+        bool(controls.settings_of(name)["hidden"]),
+        key=f"plan_hidden_{name}",
+    )
+    controls.remember(name, hidden=chosen)
+    st.session_state["hidden"] = (
+        chosen if st.session_state.get("ward") == name else st.session_state.get("hidden", False)
+    )
+
+
+controls.show_origin()
+ward_name = controls.choose_ward()
+with st.sidebar:
+    share = st.slider(
+        "Refusals that get written down",
+        10,
+        100,
+        round(100 * loaded.recorded_share(ward_name)),
+        5,
+        format="%d %%",
+        key=f"recorded_{ward_name}",
+        help="How many of ten patients who could not be given a bed are in the refusals file?",
+    )
+    loaded.use_recorded_share(ward_name, share / 100)
+try:
+    show(ward_name)
+except BedplanError as error:
+    st.error(wording.plain(str(error)))

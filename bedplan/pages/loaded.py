@@ -1,0 +1,141 @@
+"""What is loaded in this session, and what was worked out from it: the planner's own files, or the demo's.
+
+Patient rows live in the session's memory only. What is worked out is kept beside them, once for the demo, which is
+nobody's, and for each session apart otherwise.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import streamlit as st
+
+from bedplan.data import (
+    Capacity,
+    Census,
+    EventLog,
+    Records,
+    Unmet,
+    describe_ward,
+    estimate_demand,
+    hidden_demand,
+    read_cancellations,
+    read_capacity,
+    read_census,
+    read_records,
+    read_refusals,
+)
+from bedplan.plan import Baseline, from_estimate
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Mapping
+
+    from bedplan.data import HiddenDemand, WardDescription
+
+DEMO = Path(__file__).resolve().parents[2] / "demo_data"
+# What the wards of the invented demo hospital do when full, and the share of their refusals that is written down;
+# for other records the planner answers.
+DEMO_LEAVES = frozenset({"Merlin", "Curlew", "Dunlin", "Sandpiper"})
+DEMO_RECORDED_SHARES: Mapping[str, float] = {"Curlew": 0.6, "Dunlin": 0.6}
+
+
+@dataclass(frozen=True)
+class Files:
+    """Every file a session plans with."""
+
+    records: Records
+    capacity: Capacity | None = None
+    refusals: EventLog | None = None
+    cancellations: EventLog | None = None
+    census: Census | None = None
+
+
+@st.cache_resource(max_entries=1, show_spinner="Opening the Larkmere demo…")
+def _demo() -> tuple[Files, dict[tuple[str, ...], Any]]:
+    files = Files(
+        records=read_records(DEMO / "stays.csv"),
+        capacity=read_capacity(DEMO / "capacity.csv"),
+        refusals=read_refusals(DEMO / "refusals.csv"),
+        cancellations=read_cancellations(DEMO / "cancellations.csv"),
+        census=read_census(DEMO / "census.csv"),
+    )
+    return files, {}
+
+
+def is_demo() -> bool:
+    """Whether the figures on screen are the invented hospital's."""
+    return st.session_state.get("files") is None
+
+
+def files() -> Files:
+    """Return the files of this session, or the demo's."""
+    return _demo()[0] if is_demo() else st.session_state["files"]
+
+
+def records() -> Records:
+    """Return the records of this session, or the demo's."""
+    return files().records
+
+
+def use_records(loaded: Records | None) -> None:
+    """Plan with these records from now on, without any other file yet; None = the demo."""
+    st.session_state["files"] = None if loaded is None else Files(loaded)
+    st.session_state["worked_out"] = {}
+
+
+def use_file(**given: Capacity | EventLog | Census) -> None:
+    """Add a file beside the planner's records."""
+    st.session_state["files"] = replace(files(), **given)
+    st.session_state["worked_out"] = {}
+
+
+def recorded_share(name: str) -> float:
+    """Return the share of a ward's refusals that is written down, as the planner said."""
+    said = st.session_state.setdefault("recorded_shares", {})
+    return said.get(name, DEMO_RECORDED_SHARES.get(name, 1.0) if is_demo() else 1.0)
+
+
+def use_recorded_share(name: str, share: float) -> None:
+    """Take the planner's word for the share of refusals that is written down."""
+    st.session_state.setdefault("recorded_shares", {})[name] = share
+
+
+def _once(key: tuple[str, ...], work_out: Callable[[], Any]) -> Any:
+    """Return what was worked out before under this key, or work it out now."""
+    kept = _demo()[1] if is_demo() else st.session_state.setdefault("worked_out", {})
+    if key not in kept:
+        kept[key] = work_out()
+    return kept[key]
+
+
+def description(name: str) -> WardDescription:
+    """Return what a ward was like."""
+    here = files()
+    return _once(("description", name), lambda: describe_ward(here.records, name, here.capacity))
+
+
+def hidden(name: str) -> HiddenDemand:
+    """Return the demand a ward's records do not show."""
+    here, share = files(), recorded_share(name)
+    unmet = Unmet(here.refusals, share, here.cancellations)
+    return _once(("hidden", name, f"{share:.2f}"), lambda: hidden_demand(here.records, name, here.capacity, unmet))
+
+
+def baseline(name: str, *, with_hidden: bool) -> Baseline:
+    """Return where a ward's sliders start: what its records show, hidden demand added where the planner asked."""
+    here = files()
+    found = hidden(name) if with_hidden else None
+    key = ("baseline", name, f"{recorded_share(name):.2f}" if with_hidden else "recorded")
+    return _once(
+        key,
+        lambda: from_estimate(
+            estimate_demand(here.records, name, capacity=here.capacity, hidden=found), _beds_today(here.capacity, name)
+        ),
+    )
+
+
+def _beds_today(capacity: Capacity | None, name: str) -> int | None:
+    """Return today's staffed beds from the capacity file, or None where they must be typed."""
+    return capacity.beds_today(name) if capacity is not None and name in capacity.wards else None
