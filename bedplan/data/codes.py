@@ -140,19 +140,25 @@ def looks_like_identity(values: list[str]) -> bool:
 def age_bands(column: pa.ChunkedArray) -> tuple[pd.Categorical | None, NDArray[np.bool_]]:
     """Return ages as ten-year bands (never exact ages), and which rows hold an age no person reaches."""
     raw = coded(column)
-    ages = [int(float(value)) if re.fullmatch(r"-?\d{1,4}(\.\d+)?", value.strip()) else None for value in raw.meanings]
-    meaning = [
-        without_formula(value) if age is None else _band(age) for value, age in zip(raw.meanings, ages, strict=True)
-    ]
-    impossible = np.array([*(age is not None and not 0 <= age <= OLDEST_YEARS for age in ages), False])
+    meaning, impossible = [], []
+    for value in raw.meanings:
+        age, is_band = _age(value)
+        wrong = age is not None and not 0 <= age <= OLDEST_YEARS
+        impossible.append(wrong)
+        meaning.append("" if wrong else without_formula(value) if age is None or is_band else _band(age))
+    rows = np.array([*impossible, False])[raw.codes]
     if len(set(meaning)) > MOST_CATEGORIES or looks_like_identity(sorted(set(meaning))):
-        return None, impossible[raw.codes]
+        return None, rows
     values = translated(raw, meaning)
-    return pd.Categorical.from_codes(values.codes, categories=list(values.meanings)), impossible[raw.codes]
+    return pd.Categorical.from_codes(values.codes, categories=list(values.meanings)), rows
+
+
+def _age(text: str) -> tuple[int | None, bool]:
+    """Return the age a text names, the lowest of a band, and whether it is a band; None where it names none."""
+    fits = re.fullmatch(r"\s*(-?\d{1,4})(?:\.\d+)?(\s*(?:[-–]|to)\s*\d{1,4}|\s*\+)?\s*", text)
+    return (int(fits[1]), fits[2] is not None) if fits else (None, False)
 
 
 def _band(age: int) -> str:
     """Return the ten-year band of an age."""
-    if not 0 <= age <= OLDEST_YEARS:
-        return ""
     return "90+" if age >= 90 else f"{age // 10 * 10}-{age // 10 * 10 + 9}"

@@ -99,19 +99,16 @@ def match_headings(
     """
     written = list(headings)
     found: dict[str, str] = {name: heading for name, heading in (chosen or {}).items() if heading in written}
-    taken = set(found.values())
+    free = {place: plain(heading) for place, heading in enumerate(written) if heading not in found.values()}
     for name, words in known.items():
-        if name in found:
-            continue
-        wanted = [plain(name), *words]
-        ranked = sorted(
-            (wanted.index(plain(heading)), place)
-            for place, heading in enumerate(written)
-            if heading not in taken and plain(heading) in wanted
+        wanted = (plain(name), *words)
+        ranked = (
+            [] if name in found else [(wanted.index(word), place) for place, word in free.items() if word in wanted]
         )
         if ranked:
-            found[name] = written[ranked[0][1]]
-            taken.add(found[name])
+            place = min(ranked)[1]
+            found[name] = written[place]
+            del free[place]
     return found
 
 

@@ -21,6 +21,7 @@ if TYPE_CHECKING:
 
 LINE = re.compile(rb"[^\r\n]*(?:\r\n|\n|\r)")
 SEPARATORS = (",", ";", "\t", "|")
+CLEARLY_HEADINGS = 3  # known names in one line: no title holds so many
 SNIFFED_BYTES = 256 * 1024
 BLOCK_BYTES = 4 * 2**20
 
@@ -85,7 +86,7 @@ def find_layout(text: bytes, known: Mapping[str, Iterable[str]], chosen: Mapping
     """Find the line that holds the headings: the one with most known names, under the separator that shows most."""
     best = Layout(0, 0, ",", (), {})
     for number, line in enumerate(LINE.finditer(text[:SNIFFED_BYTES])):
-        if number == MOST_TITLE_LINES:
+        if number == MOST_TITLE_LINES or len(best.found) >= CLEARLY_HEADINGS:
             break
         words = line[0].decode("utf-8", errors="replace").strip("\r\n")
         for separator in SEPARATORS:

@@ -34,7 +34,7 @@ def stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
     """How long do these patients stay? Those in at the window's start are watched from then on only.
 
     Raises:
-        UnreadableRecords: none of the stays has ended.
+        UnreadableRecords: none of the stays has ended, or none lasts.
     """
     day = np.timedelta64(86_400, "s")
     start = stays["start"].to_numpy()
@@ -43,11 +43,16 @@ def stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
     first = np.datetime64(records.window[0], "s")
     entry = np.maximum((first - start) / day, 0.0)
     try:
-        return product_limit(np.maximum((end - start) / day, 0.0), finished, entry)
+        curve = product_limit(np.maximum((end - start) / day, 0.0), finished, entry)
     except ImpossibleFigure as problem:
         raise UnreadableRecords(
             [f"No stay on ward “{ward}” has ended, so how long patients stay can't be told: check the end column."]
         ) from problem
+    if curve.mean_days <= 0:
+        raise UnreadableRecords(
+            [f"Every stay on ward “{ward}” starts and ends at one time, so how long patients stay can't be told."]
+        )
+    return curve
 
 
 def fitted_stay(curve: StayCurve) -> LengthOfStay:
