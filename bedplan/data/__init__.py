@@ -1,11 +1,13 @@
 """Reading, cleaning, describing and estimating: from a records file to a demand."""
 
+from bedplan.data.backtesting import Backtest, backtest
 from bedplan.data.capacity import Capacity, read_capacity
 from bedplan.data.census import Census, read_census
 from bedplan.data.choices import DateQuestion, IntakeChoices
 from bedplan.data.demand_methods import DemandFigure
 from bedplan.data.describing import FullTimes, LongStays, WardDescription, describe_ward
 from bedplan.data.estimating import DemandEstimate, Uncertainty, estimate_demand
+from bedplan.data.forecasting import Forecast, forecast_arrivals
 from bedplan.data.hidden_demand import DemandStep, HiddenDemand, Unmet, hidden_demand
 from bedplan.data.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
 from bedplan.data.preview import ColumnPreview, preview_columns
@@ -16,6 +18,7 @@ from bedplan.data.returns import MonthlyReturn, read_monthly_return
 from bedplan.data.wardlinks import WardLink
 
 __all__ = [
+    "Backtest",
     "Capacity",
     "Census",
     "CensusCheck",
@@ -26,6 +29,7 @@ __all__ = [
     "DemandStep",
     "EventLog",
     "Flows",
+    "Forecast",
     "FullTimes",
     "HiddenDemand",
     "IntakeChoices",
@@ -37,10 +41,12 @@ __all__ = [
     "Unmet",
     "WardDescription",
     "WardLink",
+    "backtest",
     "check_census",
     "describe_ward",
     "estimate_demand",
     "flows",
+    "forecast_arrivals",
     "hidden_demand",
     "preview_columns",
     "read_bed_requests",

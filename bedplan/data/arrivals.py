@@ -30,14 +30,15 @@ BOOKED_METHODS = ("11", "12", "13", "booked", "elective", "waitinglist", "planne
 class Arrivals:
     """A ward's admissions in the file's window, day by day, with their rhythm.
 
-    ``counts`` (days,) of all admissions; ``came`` (n,) seconds. ``counted`` (days,) marks the days of the latest year
-    (of all days, where the file has less than two) outside excluded periods.
+    ``counts`` (days,) of all admissions; ``came`` (n,) seconds. ``used`` (days,) marks the days outside excluded
+    periods, ``counted`` those of the latest year among them (all, where the file has less than two).
     """
 
     came: NDArray[np.int64]
     counts: NDArray[np.float64]
     calendar: pd.DatetimeIndex
     counted: NDArray[np.bool_]
+    used: NDArray[np.bool_]
     rhythm: Rhythm
     swing: Swing
 
@@ -99,7 +100,9 @@ def arrivals_of(records: Records, start: pd.Series | NDArray[np.datetime64]) -> 
         recent[:-YEAR_DAYS] = False
     if not recent.any():
         recent = use if use.any() else np.ones(records.days, dtype=bool)
-    return Arrivals(came, counts, calendar, recent, rhythm, measure_swing(counts, rhythm, use))
+    return Arrivals(
+        came, counts, calendar, recent, use if use.any() else ~use, rhythm, measure_swing(counts, rhythm, use)
+    )
 
 
 def is_booked(stays: pd.DataFrame) -> NDArray[np.bool_]:
