@@ -9,7 +9,7 @@ st.set_page_config(page_title="bedplan", layout="wide")
 st.navigation(
     [
         st.Page("bedplan/pages/records.py", title="Records", url_path="records"),
-        st.Page("bedplan/pages/last_year.py", title="Last year", url_path="last-year"),
+        st.Page("bedplan/pages/what_happened.py", title="What happened", url_path="what-happened"),
         st.Page("bedplan/pages/hidden.py", title="Hidden demand", url_path="hidden-demand"),
         st.Page("bedplan/pages/one_ward.py", title="One ward", default=True),
         st.Page("bedplan/pages/compare.py", title="Compare wards", url_path="compare"),

@@ -8,11 +8,12 @@ from __future__ import annotations
 import argparse
 import datetime as dt
 import sys
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from bedplan import wording
-from bedplan.data import Capacity, Records, estimate_demand, read_capacity, read_records
+from bedplan.data import Capacity, Records, backtest, estimate_demand, read_capacity, read_records
 from bedplan.decision import TurnAwayLimit
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.export import Justification, Source, as_html, as_xlsx, case_for
@@ -60,7 +61,16 @@ def ward_case(records: Records, capacity: Capacity | None, name: str, asked: arg
     changes = Changes(asked.demand, asked.stay, asked.spread, asked.peak, asked.growth)
     baseline = from_estimate(estimate_demand(records, name, capacity=capacity), beds)
     ward = planned_ward(baseline, baseline.beds, "leaves" if name in asked.leaves else "waits", changes)
-    return case_for(ward, TurnAwayLimit(asked.limit, asked.within), baseline.facts, changes.rows())
+    case = case_for(ward, TurnAwayLimit(asked.limit, asked.within), baseline.facts, changes.rows())
+    return replace(case, checked=checked(records, capacity, name))
+
+
+def checked(records: Records, capacity: Capacity | None, name: str) -> str:
+    """Say what came of the check on last year, or why there was none."""
+    try:
+        return backtest(records, name, capacity=capacity).verdict
+    except BedplanError as error:
+        return f"{wording.NOT_YET_CHECKED} {error}"
 
 
 def write(asked: argparse.Namespace) -> Justification:

@@ -28,7 +28,8 @@ ALIKE = 0.02  # months this near each other have no worst one worth naming
 class WardCase:
     """One ward's case: the ward, every model's curve, the limit, the decision (None where out of reach), what it rests on.
 
-    ``assumptions`` are (what, value, where from); ``settings`` (slider, value). The figure that the limit watches, for
+    ``assumptions`` are (what, value, where from); ``settings`` (slider, value). ``checked`` says what
+    came of the check on last year. The figure that the limit watches, for
     each bed count of the ward's own curve, is ``over_year`` ``(n,)`` and ``by_month`` ``(12, n)``.
     """
 
@@ -38,6 +39,7 @@ class WardCase:
     decision: Decision | None
     assumptions: tuple[tuple[str, str, str], ...] = ()
     settings: tuple[tuple[str, str], ...] = ()
+    checked: str = wording.NOT_YET_CHECKED
 
     @property
     def model(self) -> str:

@@ -88,7 +88,6 @@ class Justification:
     cases: tuple[WardCase, ...]
     source: Source
     prepared: dt.date
-    checked_on_last_year: str = wording.NOT_YET_CHECKED
 
     def __post_init__(self) -> None:
         """A justification needs a ward."""
@@ -102,8 +101,8 @@ class Justification:
         return f"Staffed beds: {names}" if len(self.cases) <= 3 else f"Staffed beds for {len(self.cases)} wards"
 
     def decision_lines(self) -> tuple[str, ...]:
-        """Return the decision box: a line a ward, then whether last year was checked."""
-        return (*(self._ask(case) for case in self.cases), self.checked_on_last_year)
+        """Return the decision box: what is asked for each ward, and what came of its check on last year."""
+        return tuple(line for case in self.cases for line in (self._ask(case), f"{case.ward.name}: {case.checked}"))
 
     @staticmethod
     def _ask(case: WardCase) -> str:

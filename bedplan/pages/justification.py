@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime as dt
 import textwrap
+from dataclasses import replace
 
 import streamlit as st
 
@@ -25,8 +26,9 @@ st.session_state.setdefault("justified", [chosen if chosen in names else names[0
 st.session_state["justified"] = [name for name in st.session_state["justified"] if name in names] or names[:1]
 wards = st.multiselect("Wards in this justification", names, key="justified", persist_state="session")
 try:
+    cases = [replace(controls.case_of(name), checked=controls.verdict(name)) for name in wards]
     paper = Justification(
-        tuple(controls.case_of(name) for name in wards),
+        tuple(cases),
         controls.source(wards),
         dt.datetime.now().astimezone().date(),
     )

@@ -12,12 +12,14 @@ from typing import TYPE_CHECKING, Any
 
 import streamlit as st
 
+from bedplan import wording
 from bedplan.data import (
     Capacity,
     Census,
     EventLog,
     Records,
     Unmet,
+    backtest,
     describe_ward,
     estimate_demand,
     hidden_demand,
@@ -27,12 +29,13 @@ from bedplan.data import (
     read_records,
     read_refusals,
 )
+from bedplan.errors import BedplanError
 from bedplan.plan import Baseline, from_estimate
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
-    from bedplan.data import HiddenDemand, WardDescription
+    from bedplan.data import Backtest, HiddenDemand, WardDescription
 
 DEMO = Path(__file__).resolve().parents[2] / "demo_data"
 # What the wards of the invented demo hospital do when full, and the share of their refusals that is written down;
@@ -121,6 +124,24 @@ def hidden(name: str) -> HiddenDemand:
     here, share = files(), recorded_share(name)
     unmet = Unmet(here.refusals, share, here.cancellations)
     return _once(("hidden", name, f"{share:.2f}"), lambda: hidden_demand(here.records, name, here.capacity, unmet))
+
+
+def checked(name: str) -> Backtest:
+    """Return the check of a ward's earlier records on its last year.
+
+    Raises:
+        UnreadableRecords: too short a time for such a check.
+    """
+    here = files()
+    return _once(("checked", name), lambda: backtest(here.records, name, capacity=here.capacity))
+
+
+def verdict(name: str) -> str:
+    """Return what came of that check, or why there was none."""
+    try:
+        return checked(name).verdict
+    except BedplanError as error:
+        return f"{wording.NOT_YET_CHECKED} {error}"
 
 
 def baseline(name: str, *, with_hidden: bool) -> Baseline:

@@ -1,4 +1,4 @@
-"""Last year: when the ward was full, how it swings, how long patients stay; what the records say before any model."""
+"""What happened: when the ward was full, how it swings, how long patients stay; and whether the model would have known."""
 
 from __future__ import annotations
 
@@ -71,9 +71,27 @@ def show(name: str) -> None:
         st.markdown(wording.plain(check_census(loaded.records(), census, name).sentence))
 
 
+def show_check(name: str) -> None:
+    """Show whether the earlier records would have told the last year."""
+    st.subheader("Would the earlier records have told the last year?", anchor=False)
+    try:
+        found = loaded.checked(name)
+    except BedplanError as error:
+        st.info(wording.plain(str(error)))
+        return
+    st.markdown(f"**{wording.plain(found.verdict)}**")
+    days = found.days.rename(
+        columns={"date": "day", "present": "seen", "expected": "middle", "low_80": "low", "high_80": "high"}
+    )
+    data = charts.check_data(days[["day", "seen", "middle", "low", "high"]], None)
+    st.vega_lite_chart(charts.live(charts.CHECK, data), theme=None, width="stretch", alt=found.verdict)
+    st.caption(f"Patients present at {found.clock}; the band should hold 8 days in 10, more where counts are small.")
+
+
 controls.show_origin()
 ward_name = controls.choose_ward()
 try:
     show(ward_name)
+    show_check(ward_name)
 except BedplanError as error:
     st.error(wording.plain(str(error)))
