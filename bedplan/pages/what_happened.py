@@ -61,7 +61,7 @@ def show(name: str) -> None:
         week = charts.week_data(seen.full.by_weekday_and_hour)
         st.vega_lite_chart(charts.live(charts.WEEK, week), theme=None, width="stretch", alt=headline(seen))
         months = [wording.percent(float(share), 0) for share in seen.full.by_month]
-        st.table(pd.DataFrame([months], columns=list(wording.MONTHS_SHORT), index=["Share of hours full"]))
+        st.table(pd.DataFrame([months], columns=list(wording.MONTHS_SHORT), index=["Full"]))
         st.caption("Closed beds are not counted as beds.")
     else:
         st.info("Load a file of staffed beds on the page Records to see when this ward was full.")
