@@ -89,6 +89,9 @@ class BedCurve:
 
     Two readings only some models give: ``overfull_share_of_hours`` ``(n,)`` and ``overfull_by_month`` ``(12, n)``,
     the share of hours with more patients than beds (*stays anyway*); ``waits`` (*waits*).
+
+    Models of the hour-by-hour year also split the share by weekday, ``by_weekday`` ``(7, n)`` Monday first, and by
+    group, ``unbooked_turn_away`` and ``booked_turn_away`` ``(n,)``, the latter None where nobody is booked.
     """
 
     model: str
@@ -102,6 +105,9 @@ class BedCurve:
     overfull_share_of_hours: NDArray[np.float64] | None = None
     overfull_by_month: NDArray[np.float64] | None = None
     waits: Waits | None = None
+    by_weekday: NDArray[np.float64] | None = None
+    unbooked_turn_away: NDArray[np.float64] | None = None
+    booked_turn_away: NDArray[np.float64] | None = None
 
     def __post_init__(self) -> None:
         """Make every array read-only: a curve is shared by pages, documents and caches."""
@@ -112,6 +118,9 @@ class BedCurve:
             "by_month",
             "overfull_share_of_hours",
             "overfull_by_month",
+            "by_weekday",
+            "unbooked_turn_away",
+            "booked_turn_away",
         ):
             array = getattr(self, name)
             if array is not None:

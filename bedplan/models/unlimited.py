@@ -1,15 +1,24 @@
-"""Patients who stay anyway: how many want a bed in each hour if nobody is ever turned away."""
+"""Patients who stay anyway: how many want a bed in each hour if nobody is ever turned away, and when that is too many."""
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
-from scipy import special
 
 from bedplan.models.bed_curve import BedCurve, bed_counts
-from bedplan.models.load_grid import load_grid
-from bedplan.models.year import HOURS_A_YEAR, arrivals_by_hour, month_of_hour, offered_load_by_hour
+from bedplan.models.census import Watch, chance_of
+from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR
+from bedplan.models.year import (
+    WEEKS,
+    all_booked_in_week,
+    month_of_hour,
+    offered_load_by_hour,
+    patients_wanted,
+    unbooked_by_hour,
+    weekday_of_hour,
+)
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -17,39 +26,129 @@ if TYPE_CHECKING:
     from bedplan.models.demand import Demand
 
     Array = NDArray[np.float64]
+    Counts = NDArray[np.int64]
+
+_GROUPS = 12 * 7
+_GROUP_OF_HOUR = month_of_hour * 7 + weekday_of_hour
+_MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
+_BUSY = 0.05
 
 
-def _at_least(counts: Array, loads: Array) -> Array:
-    """Return the Poisson chance of that many patients or more: ``(n,)`` counts × ``(g,)`` loads -> ``(n, g)``."""
-    count = np.maximum(counts, 1)[:, None].astype(float)
-    return np.where(counts[:, None] > 0, special.gammainc(count, loads), 1.0)
+def _mean_over(shares: Array, weights: Array, by: Counts, groups: int) -> Array:
+    """Average shares ``(84, n)`` with weights ``(84,)`` within larger groups."""
+    of_group = (by == np.arange(groups)[:, None]) * weights
+    mean = of_group @ shares / np.maximum(of_group.sum(axis=1), 1e-300)[:, None]
+    return np.where(mean > 1.0 - 1e-14, 1.0, mean)
 
 
 def unlimited_beds(demand: Demand, beds: ArrayLike) -> BedCurve:
     """For each bed count, which share of patients finds the ward full, if everyone stays anyway?
 
-    Source: Eick, Massey & Whitt 1993, Management Science 39(2).
+    Also the share of hours with more patients than beds, for the year and each month. Averaged over patients: who
+    comes with others finds them there, and more come when the rate is high. Beds under turnaround count as wanted;
+    occupancy counts patients only. A booked patient counts half in the hour of coming, so booked shares are a little
+    too high.
+
+    Source: Eick, Massey & Whitt 1993, Management Science 39(2); Gallivan & Utley 2005; Greenwood & Yule 1920.
     Checked by: tests/models/test_unlimited.py
     """
     counts = bed_counts(beds)
-    loads, arrivals = offered_load_by_hour(demand), arrivals_by_hour(demand)
-    found_full = load_grid(loads, arrivals, month_of_hour, 12)
-    hours = load_grid(loads, np.ones(HOURS_A_YEAR), month_of_hour, 12)
-    by_month = np.clip(found_full.mean(_at_least(counts, found_full.loads)), 0.0, 1.0)
-    overfull = np.clip(hours.mean(_at_least(counts + 1, hours.loads)), 0.0, 1.0)
-    patients = found_full.weights.sum(axis=1)
-    by_month[:, counts == 0] = float(patients.sum() > 0)
-    year = patients @ by_month / max(patients.sum(), 1e-300)
-    year[counts == 0] = by_month[0, counts == 0]
-    occupancy = np.where(counts > 0, loads.mean() / np.maximum(counts, 1), 0.0)
+    unbooked, booked = unbooked_by_hour(demand), np.tile(all_booked_in_week(demand), WEEKS)
+    patients = [np.bincount(_GROUP_OF_HOUR, weights=one) for one in (unbooked, booked)]
+    finds_full = [chance_of(demand, counts, Watch(unbooked, _GROUP_OF_HOUR, as_unbooked=True)), np.zeros(1)]
+    if demand.booked:
+        finds_full[1] = chance_of(demand, counts, Watch(booked, _GROUP_OF_HOUR))
+    everyone = patients[0] + patients[1]
+    found = sum(one[:, None] * shares for one, shares in zip(patients, finds_full, strict=True))
+    shares = np.where(counts > 0, found / np.maximum(everyone, 1e-300)[:, None], (everyone > 0)[:, None])
+    overfull = chance_of(demand, counts + 1, Watch(np.ones(HOURS_A_YEAR), month_of_hour))
+    year = np.zeros(_GROUPS, dtype=np.int64)
     return BedCurve(
         "unlimited_beds",
         "stays anyway",
         demand,
         counts,
-        year,
-        occupancy,
-        by_month,
-        overfull_share_of_hours=hours.weights.sum(axis=1) @ overfull / HOURS_A_YEAR,
+        _mean_over(shares, everyone, year, 1)[0],
+        np.where(counts > 0, patients_wanted(demand) / np.maximum(counts, 1), 0.0),
+        _mean_over(shares, everyone, _MONTH, 12),
+        _notes(demand),
+        overfull_share_of_hours=np.bincount(month_of_hour) @ overfull / HOURS_A_YEAR,
         overfull_by_month=overfull,
+        by_weekday=_mean_over(shares, everyone, _WEEKDAY, 7),
+        unbooked_turn_away=_mean_over(finds_full[0], patients[0], year, 1)[0],
+        booked_turn_away=_mean_over(finds_full[1], patients[1], year, 1)[0] if demand.booked else None,
+    )
+
+
+def _notes(demand: Demand) -> tuple[str, ...]:
+    """Say what the distribution rests on."""
+    if demand.clustering == 1.0 and demand.rate_variation == 0.0:
+        return ()
+    note = (
+        "Beds wanted swing more or less than chance alone: a negative binomial (or binomial) spread with the right "
+        "mean and variance stands for the clusters and the uncertain rate."
+    )
+    return (note,)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Levels:
+    """Beds wanted in each of some groups of hours: on average, on a busy day, and the chance of too many.
+
+    ``mean`` ``(g,)`` beds; ``busy`` ``(g,)`` whole beds that are enough in 19 of 20 such hours. ``chances`` ``(g, k)``:
+    chance of at least ``lowest``, ``lowest`` + 1 … beds wanted.
+    """
+
+    mean: Array
+    busy: Counts
+    lowest: int
+    chances: Array
+
+    def overfull(self, beds: int) -> Array:
+        """With which chance are more beds wanted than this many, in each group? ``(g,)``."""
+        place = beds + 1 - self.lowest
+        if place < 0:
+            return np.ones(self.mean.size)
+        return self.chances[:, place] if place < self.chances.shape[1] else np.zeros(self.mean.size)
+
+
+@dataclass(frozen=True, slots=True)
+class BusyLevels:
+    """Beds wanted through the day (24), the week (7), every hour of the week (168) and the year (12, January first)."""
+
+    by_hour: Levels
+    by_weekday: Levels
+    by_hour_of_week: Levels
+    by_month: Levels
+
+
+def busy_levels(demand: Demand) -> BusyLevels:
+    """How many beds are wanted on a usual and on a busy (1 in 20) hour: by hour, weekday, hour of the week and month?
+
+    If nobody is ever turned away; the year's hours of each kind taken together, so seasons widen the hours' levels.
+
+    Source: Eick, Massey & Whitt 1993; Gallivan & Utley 2005.
+    Checked by: tests/models/test_unlimited.py
+    """
+    load = offered_load_by_hour(demand)
+    highest = load.max() * (1.0 + 4.0 * demand.rate_variation)
+    room = 10.0 * np.sqrt(highest * max(1.0, demand.clustering)) + 10.0 * demand.clustering + 10.0
+    lowest = max(0, int(load.min() * max(0.0, 1.0 - 4.0 * demand.rate_variation) - room))
+    counts = np.arange(lowest, int(highest + room) + 1)
+    hour_of_week = np.arange(HOURS_A_YEAR) % HOURS_A_WEEK
+    evenly = np.ones(HOURS_A_YEAR)
+    week = chance_of(demand, counts, Watch(evenly, hour_of_week))
+    mean_of_week = load.reshape(WEEKS, HOURS_A_WEEK).mean(axis=0)
+    months = chance_of(demand, counts, Watch(evenly, month_of_hour))
+    mean_of_month = np.bincount(month_of_hour, weights=load) / np.bincount(month_of_hour)
+
+    def levels(mean: Array, chances: Array) -> Levels:
+        return Levels(mean, lowest + (chances > _BUSY).sum(axis=1) - 1, lowest, chances)
+
+    days, means = week.reshape(7, 24, -1), mean_of_week.reshape(7, 24)
+    return BusyLevels(
+        levels(means.mean(axis=0), days.mean(axis=0)),
+        levels(means.mean(axis=1), days.mean(axis=1)),
+        levels(mean_of_week, week),
+        levels(mean_of_month, months),
     )

@@ -7,23 +7,21 @@ of a 365-day year without 31 December, in whole days. It is there for the rhythm
 from __future__ import annotations
 
 from functools import lru_cache
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
+
+from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_held, hours_held
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from bedplan.models.demand import BookedList, Demand
-    from bedplan.models.stay import LengthOfStay
 
     Array = NDArray[np.float64]
 
-HOURS_A_WEEK = 168
-HOURS_A_YEAR = 52 * HOURS_A_WEEK
 MONTH_DAYS = (31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 30)
-_MOST_YEARS = 5
-_HOUR = 1.0 / 24.0
+WEEKS = HOURS_A_YEAR // HOURS_A_WEEK
 
 
 def _fixed(array: NDArray[np.generic]) -> NDArray[np.generic]:
@@ -37,6 +35,11 @@ weekday_of_hour = _fixed(np.arange(HOURS_A_YEAR) // 24 % 7)
 month_of_hour = _fixed(np.repeat(np.arange(12), 24 * np.array(MONTH_DAYS)))
 
 
+def leaving_of(demand: Demand, *, turnaround: bool = True) -> Leaving:
+    """When do this ward's beds come free? Without ``turnaround``: when do its patients leave?"""
+    return Leaving(demand.discharge_hours, demand.weekend_slip, demand.turnaround_hours if turnaround else 0.0)
+
+
 def rhythm_of_week(demand: Demand) -> Array:
     """How much busier than the mean hour is each hour of the week, Monday 00:00 first? ``(168,)``, mean 1."""
     return np.outer(demand.weekday_factors, demand.hour_factors).ravel()
@@ -45,8 +48,8 @@ def rhythm_of_week(demand: Demand) -> Array:
 @lru_cache(maxsize=256)
 def unbooked_by_hour(demand: Demand) -> Array:
     """How many patients come unbooked in each hour of the year? ``(8736,)``, adding up to 364 days' arrivals."""
-    factors = np.tile(rhythm_of_week(demand), 52) * np.array(demand.month_factors)[month_of_hour]
-    return _fixed(demand.arrivals_per_day * _HOUR * factors / factors.mean())
+    factors = np.tile(rhythm_of_week(demand), WEEKS) * np.array(demand.month_factors)[month_of_hour]
+    return _fixed(demand.arrivals_per_day / 24.0 * factors / factors.mean())
 
 
 def booked_in_week(booked: BookedList) -> Array:
@@ -56,70 +59,43 @@ def booked_in_week(booked: BookedList) -> Array:
     return week.ravel()
 
 
+def all_booked_in_week(demand: Demand) -> Array:
+    """How many patients do all booked lists bring in each hour of the week, on average? ``(168,)``."""
+    return sum((booked_in_week(one) for one in demand.booked), np.zeros(HOURS_A_WEEK))
+
+
 def arrivals_by_hour(demand: Demand) -> Array:
     """How many patients come in each hour of the year, booked ones included? ``(8736,)``, read-only.
 
     Checked by: tests/models/test_year.py
     """
-    booked = sum((booked_in_week(one) for one in demand.booked), np.zeros(HOURS_A_WEEK))
-    return _fixed(unbooked_by_hour(demand) + np.tile(booked, 52))
-
-
-def _held_beyond(stay: LengthOfStay, turnaround_days: float, days: Array) -> tuple[Array, Array]:
-    """Return E and E2 of the days a bed is held, stay and then turnaround."""
-    rest = np.maximum(days - turnaround_days, 0.0)
-    ahead = np.maximum(turnaround_days - days, 0.0)
-    beyond, squares = stay.days_beyond(rest), stay.squared_days_beyond(rest)
-    return beyond + ahead, squares + beyond * ahead + ahead**2 / 2.0
-
-
-@lru_cache(maxsize=512)
-def hours_held(stay: LengthOfStay, turnaround_hours: float, period: int) -> Array:
-    """Which share of those who came k hours ago still hold a bed? ``(period,)``, earlier periods folded onto it.
-
-    Averaged over both hours, exactly, for arrivals at a steady rate within an hour: second differences of the mean
-    square of the days beyond. Adds up to the mean hours a bed is held.
-
-    Checked by: tests/models/test_year.py
-    """
-    turnaround_days = turnaround_hours * _HOUR
-    longest = period * max(1, _MOST_YEARS * HOURS_A_YEAR // period)
-    horizon = period
-    while horizon < longest and stay.days_beyond(max(horizon * _HOUR - turnaround_days, 0.0)) > 1e-15 * stay.mean_days:
-        horizon = min(2 * horizon, longest)
-    beyond, squares = _held_beyond(stay, turnaround_days, np.arange(horizon + 1) * _HOUR)
-    held = np.empty(horizon)
-    held[0] = (beyond[0] * _HOUR - squares[0] + squares[1]) / _HOUR**2
-    held[1:] = (squares[:-2] - 2.0 * squares[1:-1] + squares[2:]) / _HOUR**2
-    # What is left after the horizon is so smooth that it is spread evenly.
-    left_over = (beyond[0] / _HOUR - held.sum()) / period
-    return _fixed(held.reshape(-1, period).sum(axis=0) + left_over)
-
-
-def beds_held(arrivals: Array, held: Array) -> Array:
-    """How many beds do these arrivals hold in each hour, if the period repeats for ever? Last axis is the hours.
-
-    Source: Eick, Massey & Whitt 1993, Management Science 39(2).
-    """
-    period = held.size
-    return np.fft.irfft(np.fft.rfft(arrivals) * np.fft.rfft(held), period)
+    return _fixed(unbooked_by_hour(demand) + np.tile(all_booked_in_week(demand), WEEKS))
 
 
 @lru_cache(maxsize=256)
-def unbooked_load_by_hour(demand: Demand) -> Array:
-    """How many beds do unbooked patients want in each hour of the year? ``(8736,)``."""
-    held = hours_held(demand.length_of_stay, demand.turnaround_hours, HOURS_A_YEAR)
-    return _fixed(np.maximum(beds_held(unbooked_by_hour(demand), held), 0.0))
+def _unbooked_load(demand: Demand, *, turnaround: bool) -> Array:
+    """Return the beds unbooked patients want in each hour of the year, with or without the turnaround."""
+    held = hours_held(demand.length_of_stay, leaving_of(demand, turnaround=turnaround), HOURS_A_YEAR)
+    return _fixed(beds_held(unbooked_by_hour(demand), held))
 
 
-@lru_cache(maxsize=256)
-def booked_load_in_week(demand: Demand) -> Array:
-    """How many beds do booked patients want in each hour of the week, on average? ``(168,)``."""
+def _booked_load(demand: Demand, *, turnaround: bool = True, at_end: bool = False) -> Array:
+    """Return the beds booked patients want in each hour of the week, with or without the turnaround."""
     load = np.zeros(HOURS_A_WEEK)
     for one in demand.booked:
-        held = hours_held(one.length_of_stay, demand.turnaround_hours, HOURS_A_WEEK)
-        load += np.maximum(beds_held(booked_in_week(one), held), 0.0)
+        leaving = leaving_of(demand, turnaround=turnaround)
+        load += beds_held(booked_in_week(one), hours_held(one.length_of_stay, leaving, HOURS_A_WEEK, at_end=at_end))
     return _fixed(load)
+
+
+def unbooked_load_by_hour(demand: Demand) -> Array:
+    """How many beds do unbooked patients want in each hour of the year? ``(8736,)``, turnaround included."""
+    return _unbooked_load(demand, turnaround=True)
+
+
+def booked_load_in_week(demand: Demand) -> Array:
+    """How many beds do booked patients want in each hour of the week, on average? ``(168,)``, turnaround included."""
+    return _booked_load(demand)
 
 
 def offered_load_by_hour(demand: Demand) -> Array:
@@ -127,9 +103,62 @@ def offered_load_by_hour(demand: Demand) -> Array:
 
     ``(8736,)`` read-only hour averages of the 52-week year that starts Monday 00:00 in the first week of January and
     repeats for ever; booked patients included, and the turnaround after each stay. Exact for arrivals at a steady
-    rate within each hour.
+    rate within each hour; the hours patients leave at, and discharges that slip past the weekend, follow
+    ``demand.discharge_hours`` and ``demand.weekend_slip``.
 
     Source: Eick, Massey & Whitt 1993, Management Science 39(2).
     Checked by: tests/models/test_year.py
     """
-    return _fixed(unbooked_load_by_hour(demand) + np.tile(booked_load_in_week(demand), 52))
+    return _fixed(unbooked_load_by_hour(demand) + np.tile(booked_load_in_week(demand), WEEKS))
+
+
+def patients_by_hour(demand: Demand) -> Array:
+    """How many patients are present in each hour of the year, on average, if nobody is ever turned away?
+
+    ``(8736,)``: the offered load without the turnaround after each stay.
+
+    Checked by: tests/models/test_year.py
+    """
+    booked = _booked_load(demand, turnaround=False)
+    return _fixed(_unbooked_load(demand, turnaround=False) + np.tile(booked, WEEKS))
+
+
+class Week(NamedTuple):
+    """One week that repeats for ever at the year's mean level, each ``(168,)``, Monday 00:00 first.
+
+    ``unbooked`` and ``booked`` patients who come in each hour; the beds each group wants on average in each hour, and
+    at its end.
+    """
+
+    unbooked: Array
+    booked: Array
+    unbooked_load: Array
+    booked_load: Array
+    unbooked_load_at_end: Array
+    booked_load_at_end: Array
+
+
+@lru_cache(maxsize=256)
+def mean_week(demand: Demand) -> Week:
+    """What does a week without seasons look like?
+
+    Checked by: tests/models/test_year.py
+    """
+    unbooked = demand.arrivals_per_day / 24.0 * rhythm_of_week(demand)
+    leaving, stay = leaving_of(demand), demand.length_of_stay
+    return Week(
+        unbooked,
+        all_booked_in_week(demand),
+        beds_held(unbooked, hours_held(stay, leaving, HOURS_A_WEEK)),
+        booked_load_in_week(demand),
+        beds_held(unbooked, hours_held(stay, leaving, HOURS_A_WEEK, at_end=True)),
+        _booked_load(demand, at_end=True),
+    )
+
+
+def patients_wanted(demand: Demand) -> float:
+    """How many patients would be present on average over the year, if nobody were ever turned away?
+
+    Arrivals × mean stay, where the stay may be moved by the hours patients leave at.
+    """
+    return float(patients_by_hour(demand).mean()) if leaving_of(demand).has_rhythm else demand.offered_load

@@ -1,0 +1,169 @@
+"""From arrivals to beds held: the share of those who came k hours ago who still hold a bed, whatever hour they leave at.
+
+A stay ends when it ends, or at the hours the ward discharges at, or after the weekend. A bed is held for the stay and
+then for its turnaround.
+"""
+
+from __future__ import annotations
+
+from functools import lru_cache
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from bedplan.models.stay import LengthOfStay
+
+    Array = NDArray[np.float64]
+
+HOURS_A_WEEK = 168
+HOURS_A_YEAR = 52 * HOURS_A_WEEK
+_HOUR = 1.0 / 24.0
+_SATURDAY, _SUNDAY = 5, 6
+
+
+class Leaving(NamedTuple):
+    """When beds come free: discharge hours (24 shares or none), weekend slip (Saturday, Sunday), turnaround hours."""
+
+    discharge_hours: tuple[float, ...] = ()
+    weekend_slip: tuple[float, float] = (0.0, 0.0)
+    turnaround_hours: float = 0.0
+
+    @property
+    def has_rhythm(self) -> bool:
+        """Whether the hour or the weekday decides when patients leave, and not their stay alone."""
+        return bool(self.discharge_hours) or any(self.weekend_slip)
+
+
+def _horizon(stay: LengthOfStay, turnaround_days: float, period: int, longest: int, negligible: float) -> int:
+    """Return how many hours to follow a patient for: whole periods, until next to nobody is left."""
+    horizon = period
+    while horizon < longest:
+        left = stay.days_beyond(max(horizon * _HOUR - turnaround_days, 0.0))
+        if left <= negligible * stay.mean_days:
+            break
+        horizon += period * max(1, horizon // period // 4)
+    return horizon
+
+
+def _days_beyond(stay: LengthOfStay, turnaround_days: float, days: Array) -> tuple[Array, Array]:
+    """Return ∫ S and ∫∫ S from each day on, of stay and then turnaround."""
+    rest = np.maximum(days - turnaround_days, 0.0)
+    ahead = np.maximum(turnaround_days - days, 0.0)
+    beyond, squares = stay.days_beyond(rest), stay.squared_days_beyond(rest)
+    return beyond + ahead, squares + beyond * ahead + ahead**2 / 2.0
+
+
+def _held_any_hour(stay: LengthOfStay, turnaround_hours: float, period: int, *, at_end: bool) -> Array:
+    """Return the share holding a bed k hours on, ``(1, period)``, where a stay ends when it ends."""
+    turnaround_days = turnaround_hours * _HOUR
+    horizon = _horizon(stay, turnaround_days, period, 5 * HOURS_A_YEAR, 1e-15)
+    beyond, squares = _days_beyond(stay, turnaround_days, np.arange(horizon + 1) * _HOUR)
+    if at_end:
+        held = (beyond[:-1] - beyond[1:]) / _HOUR
+    else:
+        held = np.empty(horizon)
+        held[0] = (beyond[0] * _HOUR - squares[0] + squares[1]) / _HOUR**2
+        held[1:] = (squares[:-2] - 2.0 * squares[1:-1] + squares[2:]) / _HOUR**2
+    # What is held after the horizon is so smooth that it is spread evenly.
+    rest = beyond[0] / _HOUR - held.sum()
+    return held.reshape(1, -1, period).sum(axis=1) + rest / period
+
+
+def _moved_to_discharge_hours(ends: Array, discharge_hours: tuple[float, ...]) -> Array:
+    """Move ends ``(24 hours of arrival, days, 24)`` to the hours patients leave at, on the day they fall on.
+
+    On the day of arrival only to a later hour; a stay whose hour would come before its start ends when it ends.
+    """
+    shares = np.array(discharge_hours)
+    moved = ends.sum(axis=2, keepdims=True) * shares
+    later = np.triu(np.tile(shares, (24, 1)), 1) + np.diag(shares / 2.0)
+    moved[:, 0] = ends[:, 0].sum(axis=1, keepdims=True) * later + ends[:, 0] * (1.0 - later.sum(axis=1, keepdims=True))
+    return moved
+
+
+def _moved_past_weekend(ends: Array, weekday: int, weekend_slip: tuple[float, float]) -> Array:
+    """Move ends of patients who came on this weekday: a chance of them from Saturday and Sunday to Monday."""
+    moved = ends.copy()
+    for day, chance, ahead in ((_SATURDAY, weekend_slip[0], 2), (_SUNDAY, weekend_slip[1], 1)):
+        first = (day - weekday) % 7
+        slipping = chance * ends[:, first:-2:7]
+        moved[:, first:-2:7] -= slipping
+        moved[:, first + ahead :: 7][:, : slipping.shape[1]] += slipping
+    return moved
+
+
+def _hours_of_leaving(stay: LengthOfStay, leaving: Leaving, horizon: int) -> Array:
+    """Return the share who leave k hours after the hour they came in, by hour of the week, ``(168, horizon)``."""
+    beyond = stay.days_beyond(np.arange(horizon + 1) * _HOUR)
+    still_in = np.concatenate([[1.0], (beyond[:-1] - beyond[1:]) / _HOUR])
+    days = horizon // 24 + 4
+    ends = np.zeros((24, days * 24))
+    for hour in range(24):
+        ends[hour, hour : hour + horizon] = still_in[:-1] - still_in[1:]
+    ends = ends.reshape(24, days, 24)
+    if leaving.discharge_hours:
+        ends = _moved_to_discharge_hours(ends, leaving.discharge_hours)
+    found = np.empty((HOURS_A_WEEK, horizon))
+    for weekday in range(7):
+        moved = _moved_past_weekend(ends, weekday, leaving.weekend_slip).reshape(24, -1)
+        for hour in range(24):
+            found[24 * weekday + hour] = moved[hour, hour : hour + horizon]
+    return found
+
+
+def _held_by_hour(stay: LengthOfStay, leaving: Leaving, *, at_end: bool) -> Array:
+    """Return the share holding a bed k hours on by hour of the week of arrival, ``(168, whole weeks of hours)``."""
+    horizon = _horizon(stay, leaving.turnaround_hours * _HOUR, HOURS_A_WEEK, 2 * HOURS_A_YEAR, 1e-6)
+    freed = _hours_of_leaving(stay, leaving, horizon)
+    whole, part = divmod(leaving.turnaround_hours, 1.0)
+    freed = np.hstack([np.zeros((HOURS_A_WEEK, int(whole) + 1)), freed])[:, : horizon + 1]
+    freed = (1.0 - part) * freed[:, 1:] + part * freed[:, :-1]
+    held = 1.0 - np.cumsum(freed, axis=1)
+    if not at_end:
+        held = np.hstack([np.ones((HOURS_A_WEEK, 1)), held])
+        held = (held[:, :-1] + held[:, 1:]) / 2.0
+        # Who comes and leaves within one hour holds a bed for a third of it on average, others for half.
+        held[:, 0] = 0.5 - freed[:, 0] / 6.0
+    held[:, -HOURS_A_WEEK:] += float(stay.days_beyond(horizon * _HOUR)) / _HOUR / HOURS_A_WEEK
+    return held
+
+
+@lru_cache(maxsize=512)
+def hours_held(stay: LengthOfStay, leaving: Leaving, period: int, *, at_end: bool = False) -> Array:
+    """Which share of those who came k hours ago still hold a bed?
+
+    ``(1, period)``, earlier periods folded onto it, where a stay ends when it ends; where leaving has a rhythm, by
+    hour of the week of arrival, ``(168, k)`` for as many whole weeks as patients stay. Averaged over both hours, or
+    at the end of the later one. Exact for arrivals at a steady rate within an hour, except that stays moved by a
+    rhythm of leaving end evenly over their hour. Each row adds up to the mean hours a bed is held.
+
+    Checked by: tests/models/test_year.py
+    """
+    if leaving.has_rhythm:
+        held = _held_by_hour(stay, leaving, at_end=at_end)
+    else:
+        held = _held_any_hour(stay, leaving.turnaround_hours, period, at_end=at_end)
+    held.setflags(write=False)
+    return held
+
+
+def beds_held(arrivals: Array, held: Array) -> Array:
+    """How many beds do these arrivals, ``(period,)``, hold in each hour, if the period repeats for ever?
+
+    Source: Eick, Massey & Whitt 1993, Management Science 39(2).
+    Checked by: tests/models/test_year.py
+    """
+    if held.shape[0] == 1:
+        beds = np.fft.irfft(np.fft.rfft(arrivals) * np.fft.rfft(held[0]), arrivals.size)
+        return np.maximum(beds, 0.0)
+    weeks = arrivals.reshape(-1, HOURS_A_WEEK)
+    hours = np.arange(HOURS_A_WEEK)
+    padded = np.pad(held, ((0, 0), (HOURS_A_WEEK, HOURS_A_WEEK)))
+    beds = np.zeros_like(weeks)
+    for ago in range(held.shape[1] // HOURS_A_WEEK + 1):
+        since = hours - hours[:, None] + HOURS_A_WEEK * (ago + 1)
+        beds += np.roll(weeks, ago, axis=0) @ np.take_along_axis(padded, since, axis=1)
+    return beds.ravel()

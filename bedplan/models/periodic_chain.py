@@ -1,0 +1,228 @@
+"""A ward through a week (or a year) that repeats for ever, as a chain over the number of beds in use.
+
+In each hour patients come at that hour's rate, and each bed in use comes free at the rate at which it would if nobody
+were ever turned away. So the chain wants exactly the beds of the hour-by-hour year, for any shape of stay and any
+rhythm of leaving; it is the exact chain where stays are exponential, and Erlang's loss formula where nothing changes
+with time. Many wards (levels of demand × bed counts) are carried side by side.
+
+Each hour is one step of the third-order Padé approximation of the exponential of its rates, which keeps every rate
+stable, however fast; it needs one complex solve that also gives the share of the hour the ward was full.
+
+Sources: Jagerman 1975, Bell System Technical Journal 54 (loss with a rate that changes); Massey & Whitt 1994.
+Checked by: tests/models/test_periodic_chain.py
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+from scipy import special
+from scipy.linalg import lapack
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from numpy.typing import NDArray
+
+    Array = NDArray[np.float64]
+
+# exp(x) ≈ (1 + x/3)/(1 − 2x/3 + x²/6) = 2·Re[end/(x − pole)]; (exp(x) − 1)/x the same with (1 − x/6) on top.
+_POLE = 2.0 + 1j * np.sqrt(2.0)
+_AT_END = (1.0 + _POLE / 3.0) * 6.0 / (2j * _POLE.imag)
+_IN_HOUR = (1.0 - _POLE / 6.0) * 6.0 / (2j * _POLE.imag)
+_COARSE_STEPS = 7
+_FASTEST_LEAVING = 20.0
+_SETTLED = 3e-4
+_MOST_PARTS = 4
+
+
+class Group(NamedTuple):
+    """Booked patients who come in one hour of the period: how many, and the chance that each comes."""
+
+    hour: int
+    patients: int
+    attends: float
+
+
+class Rhythm(NamedTuple):
+    """What comes in each hour, at each level of demand: ``unbooked`` and ``load_at_end`` ``(period, levels)``."""
+
+    unbooked: Array
+    load_at_end: Array
+    booked: tuple[Group, ...] = ()
+
+
+class Fullness(NamedTuple):
+    """How full the wards are: for each level of demand ``(period, bed counts)``.
+
+    ``unbooked``: share of each hour all beds are taken. ``booked``: share of that hour's booked patients who find all
+    beds taken, 0 where none are booked. ``mean_in_use``: mean beds in use at the end of each hour.
+    """
+
+    unbooked: list[Array]
+    booked: list[Array]
+    mean_in_use: list[Array]
+
+
+def leaving_rates(rhythm: Rhythm) -> Array:
+    """At what rate an hour does each bed in use come free, so that the beds wanted come out right at every hour's end?
+
+    ``(period, levels)``. Solves a₁ = a₀·e^(−μ) + λ·(1 − e^(−μ))/μ + n·e^(−μ/2) for μ by Newton's method.
+    """
+    after = rhythm.load_at_end
+    before, coming = np.roll(after, 1, axis=0), rhythm.unbooked
+    booked = np.zeros((after.shape[0], 1))
+    for group in rhythm.booked:
+        booked[group.hour] += group.patients * group.attends
+    gone = np.maximum(before + coming + booked - after, 0.0)
+    rate = gone / np.maximum((before + after + booked) / 2.0, 1e-12)
+    for _ in range(12):
+        left, half = np.exp(-rate), booked * np.exp(-rate / 2.0)
+        some = np.maximum(rate, 1e-6)
+        came = np.where(rate > 1e-6, -np.expm1(-some) / some, 1.0 - rate / 2.0)
+        slope = np.where(rate > 1e-4, (left - came) / some, -0.5 + rate / 3.0)
+        excess = before * left + coming * came + half - after
+        fall = -before * left + coming * slope - half / 2.0
+        rate = np.clip(rate - excess / np.minimum(fall, -1e-12), 0.0, _FASTEST_LEAVING)
+    return rate
+
+
+class _Wards:
+    """Every ward's chain, one after the other in one long tridiagonal system; each ends with "all beds in use".
+
+    Counts that are next to never reached, far below the quietest hour's load, are left out.
+    """
+
+    def __init__(self, loads: Array, beds: Sequence[NDArray[np.int64]]) -> None:
+        count = np.concatenate(beds)
+        level = np.repeat(np.arange(len(beds)), [counts.size for counts in beds])
+        lowest = lowest_count(loads.min(axis=0)[level], count)
+        states = count - lowest + 1
+        self.last = np.cumsum(states) - 1
+        self.first = self.last - states + 1
+        ward = np.repeat(np.arange(count.size), states)
+        self.level = level[ward]
+        self.in_use = (np.arange(ward.size) - self.first[ward] + lowest[ward]).astype(float)
+        self.can_come = np.ones(ward.size)
+        self.can_come[self.last] = 0.0
+        self.can_leave = self.in_use.copy()
+        self.can_leave[self.first] = 0.0
+        self.ward = ward
+
+    def total(self, figures: Array) -> Array:
+        """Add up figures known at each state, for each ward."""
+        return np.add.reduceat(figures, self.first)
+
+    def scaled(self, state: Array) -> Array:
+        """Return the state without rounding below 0, adding up to 1 in each ward."""
+        state = np.maximum(state, 0.0)
+        return state / self.total(state)[self.ward]
+
+    def truncated_poisson(self, load: Array) -> Array:
+        """Return each ward's census if demand had always been at this load, ``(levels,)``."""
+        logs = self.in_use * np.log(np.maximum(load, 1e-9))[self.level] - special.gammaln(self.in_use + 1.0)
+        return self.scaled(np.exp(logs - np.maximum.reduceat(logs, self.first)[self.ward]))
+
+    def step(self, state: Array, coming: Array, leaving: Array) -> tuple[Array, Array]:
+        """Carry the wards through one step at these rates, ``(levels,)``: the state after it, and the share full."""
+        come, leave = self.can_come * coming[self.level], self.can_leave * leaving[self.level]
+        diagonal = -(come + leave) - _POLE
+        below, above = come[:-1].astype(complex), leave[1:].astype(complex)
+        solved = lapack.zgtsv(below, diagonal, above, state.astype(complex), 1, 1, 1, 1)[3]
+        return 2.0 * (_AT_END * solved).real, 2.0 * (_IN_HOUR * solved[self.last]).real
+
+    def take_in(self, state: Array, group: Group) -> tuple[Array, Array]:
+        """Let a booked group come one by one: the state after it, and how many of its slots met no free bed."""
+        turned_away = np.zeros(self.last.size)
+        for _ in range(group.patients):
+            turned_away += state[self.last]
+            moved = np.zeros_like(state)
+            moved[1:] = state[:-1]
+            moved[self.first] = 0.0
+            moved[self.last] += state[self.last]
+            state = (1.0 - group.attends) * state + group.attends * moved
+        return state, turned_away
+
+
+def lowest_count(quietest_load: Array, beds: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return the fewest beds in use worth following in each ward."""
+    least = np.minimum(quietest_load, beds)
+    return np.maximum(0.0, np.floor(least - 8.0 * np.sqrt(least) - 5.0)).astype(np.int64)
+
+
+def _settled_start(wards: _Wards, rhythm: Rhythm, rates: Array) -> Array:
+    """Return the state in which the period starts, from a few periods in coarse steps."""
+    period, levels = rhythm.unbooked.shape
+    size = _COARSE_STEPS if period % _COARSE_STEPS == 0 else 1
+    coming = rhythm.unbooked.copy()
+    for group in rhythm.booked:
+        coming[group.hour] += group.patients * group.attends
+    coarse = [rows.reshape(-1, size, levels).sum(axis=1) for rows in (coming, rates)]
+    states = [wards.truncated_poisson(rhythm.load_at_end[-1])]
+    for turn in range(6):
+        state = states[-1]
+        for come, leave in zip(*coarse, strict=True):
+            state, _ = wards.step(state, come, leave)
+        states.append(wards.scaled(state))
+        if wards.total(np.abs(states[-1] - states[-2])).max() < _SETTLED:
+            break
+        if turn % 2:
+            states = [_jump_ahead(wards, states[-3:])]
+    return states[-1]
+
+
+def _jump_ahead(wards: _Wards, states: Sequence[Array]) -> Array:
+    """Return where three states, each a period after the other, are heading (Aitken's extrapolation)."""
+    first, second = states[1] - states[0], states[2] - states[1]
+    ratio = np.clip(wards.total(first * second) / np.maximum(wards.total(first**2), 1e-300), -0.5, 0.97)
+    return wards.scaled(states[2] + second * (ratio / (1.0 - ratio))[wards.ward])
+
+
+def fullness(rhythm: Rhythm, beds: Sequence[NDArray[np.int64]], most_periods: int = 4) -> Fullness:
+    """How full is each ward in each hour, for each level of demand and each of its bed counts?
+
+    ``beds``: for each level whole numbers of 1 or more. Followed until the end of a period looks like its start.
+    """
+    rates = leaving_rates(rhythm)
+    wards = _Wards(rhythm.load_at_end, beds)
+    period = rhythm.unbooked.shape[0]
+    groups: dict[int, list[Group]] = {}
+    for group in rhythm.booked:
+        groups.setdefault(group.hour, []).append(group)
+    state = _settled_start(wards, rhythm, rates)
+    for _ in range(most_periods):
+        start, found = state, Fullness(*(np.zeros((period, wards.last.size)) for _ in range(3)))
+        for hour in range(period):
+            state = _one_hour(wards, state, (rhythm.unbooked[hour], rates[hour]), groups.get(hour, ()), found, hour)
+        if wards.total(np.abs(state - start)).max() < _SETTLED:
+            break
+    ends = np.cumsum([counts.size for counts in beds])[:-1]
+    return Fullness(*(np.split(np.maximum(part, 0.0), ends, axis=1) for part in found))
+
+
+def _one_hour(
+    wards: _Wards, state: Array, rates: tuple[Array, Array], groups: Sequence[Group], found: Fullness, hour: int
+) -> Array:
+    """Carry the wards through one hour, booked groups spread over it, and note how full they were."""
+    patients = sum(group.patients for group in groups)
+    parts = min(patients, _MOST_PARTS) or 1
+    coming, leaving = (rate / parts / (2 if groups else 1) for rate in rates)
+    for part in range(parts):
+        state, full = wards.step(state, coming, leaving)
+        if groups:
+            for group in groups:
+                some = group._replace(patients=_share(group.patients, part, parts))
+                state, turned_away = wards.take_in(state, some)
+                found.booked[hour] += turned_away
+            state, after = wards.step(state, coming, leaving)
+            full = (full + after) / 2.0
+        found.unbooked[hour] += full / parts
+    found.booked[hour] /= max(patients, 1)
+    found.mean_in_use[hour] = wards.total(state * wards.in_use)
+    return state
+
+
+def _share(patients: int, part: int, parts: int) -> int:
+    """Return how many of these patients come in this part of the hour."""
+    return (part + 1) * patients // parts - part * patients // parts

@@ -1,0 +1,202 @@
+"""What the rhythm of the week adds to the first cut of the loss with seasons.
+
+The first cut takes Erlang's formula at each hour's own load. A ward remembers, though: who was let in yesterday holds
+a bed today. The periodic chain knows that. It is worked out at a few levels of demand and a few bed counts for each;
+the ratio of its answer to the first cut is a smooth curve of the spare beds, and is read between them.
+
+Symbols: L mean beds wanted in a week at one level of demand; c beds; u = (c − L)/√L spare beds in units of chance.
+"""
+
+from __future__ import annotations
+
+from functools import lru_cache
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+
+from bedplan.models.erlang import erlang_b_table
+from bedplan.models.leaving import HOURS_A_YEAR, Leaving, beds_held, hours_held
+from bedplan.models.periodic_chain import Group, Rhythm, fullness, lowest_count
+from bedplan.models.year import mean_week, month_of_hour, unbooked_by_hour
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from bedplan.models.demand import Demand
+    from bedplan.models.year import Week
+
+    Array = NDArray[np.float64]
+
+LARGEST_CORRECTED_LOAD = 1_500.0
+_LARGE_LOAD = 150.0
+_STATES_IN_ALL = 2_600
+_FEWEST_COUNTS, _MOST_COUNTS = 8, 14
+_FINE = 257
+_STEP_HOURS = 24
+_TOO_FEW_TO_COMPARE = 1e-8
+
+
+class Correction(NamedTuple):
+    """Natural logarithms of chain ÷ first cut, on ``spare`` ``(levels, fine)``, an even grid of u for each level.
+
+    ``levels`` of unbooked demand, 1 = the year's mean; ``loads`` (unbooked at level 1, booked); ``unbooked`` and
+    ``booked`` are ``(weekdays or months, levels, fine)``.
+    """
+
+    levels: Array
+    loads: tuple[float, float]
+    spare: Array
+    unbooked: Array
+    booked: Array
+
+    def factors(self, levels: Array, counts: NDArray[np.int64], part: NDArray[np.int64]) -> tuple[Array, Array]:
+        """By which factors does the first cut grow at these levels, ``(k, groups)``?
+
+        ``part`` ``(groups,)``: the weekday or month of each group. Returns ``(k, groups, n)`` for unbooked and for
+        booked patients.
+        """
+        inside = np.clip(levels, self.levels[0], self.levels[-1]) if self.levels.size > 1 else levels
+        by_level = between(np.log(self.levels), np.log(inside))
+        load = np.maximum(inside * self.loads[0] + self.loads[1], 1e-9)[..., None]
+        spare = (counts - load) / np.sqrt(load)
+        # Below the fewest beds worked out, down to no beds, where both are 1.
+        taper = np.clip(counts / np.maximum(load + self.spare[:, 0].max() * np.sqrt(load), 1.0), 0.0, 1.0)
+        found = []
+        for logs in (self.unbooked, self.booked)[: 2 if self.loads[1] else 1]:
+            total = np.zeros(spare.shape)
+            for one in range(logs.shape[0]):
+                here = part == one
+                for level, grid in enumerate(self.spare):
+                    read = np.interp(spare[:, here], grid, logs[one, level])
+                    total[:, here] += by_level[:, here, level, None] * read
+            found.append(np.exp(total * taper))
+        return found[0], found[-1]
+
+
+def between(nodes: Array, at: Array) -> Array:
+    """Return the weights of a polynomial through ``nodes`` ``(m,)`` at points of any shape: ``(..., m)`` (Lagrange)."""
+    weights = np.ones((*at.shape, nodes.size))
+    for j, node in enumerate(nodes):
+        for other in np.delete(nodes, j):
+            weights[..., j] *= (at - other) / (node - other)
+    return weights
+
+
+def _spread(low: float, high: float, count: int) -> Array:
+    """Return points from low to high, closer at both ends (Chebyshev), as a polynomial through them needs."""
+    return (low + high) / 2.0 - (high - low) / 2.0 * np.cos(np.pi * np.arange(count) / max(count - 1, 1))
+
+
+def _levels(low: float, high: float) -> Array:
+    """Return the levels of demand to work out: more of them the wider they lie apart."""
+    if high / low < 1.001:
+        return np.array([(low + high) / 2.0])
+    return np.exp(_spread(np.log(low), np.log(high), 2 if high / low < 1.05 else 3))
+
+
+def _counts(loads: Array, levels: int) -> NDArray[np.int64]:
+    """Return the bed counts to work out at one level, up to where hardly anybody is turned away; ``loads`` ``(168,)``."""
+    most = int(np.ceil(loads.max() + 3.8 * np.sqrt(loads.max()) + 3.0))
+    fewest = max(1, int(0.6 * loads.mean())) if loads.max() > _LARGE_LOAD else 1
+    middle = np.array([(fewest + most) // 2])
+    states = middle - lowest_count(np.full(1, loads.min()), middle) + 1
+    count = int(np.clip(_STATES_IN_ALL / states[0] / levels, _FEWEST_COUNTS, _MOST_COUNTS))
+    return np.unique(np.round(_spread(fewest, most, count)).astype(np.int64))
+
+
+def _groups(demand: Demand) -> tuple[Group, ...]:
+    """Return every booked group of the week."""
+    return tuple(
+        Group(24 * day + one.hour, patients, one.attends)
+        for one in demand.booked
+        for day, patients in enumerate(one.per_weekday)
+        if patients
+    )
+
+
+def _log_ratio(chain: Array, first_cut: Array, patients: Array, part: NDArray[np.int64]) -> Array:
+    """Return ln(chain ÷ first cut) by weekday or month, from ``(steps, n)`` shares and ``(steps,)`` patients.
+
+    Where too few are turned away to compare, the ratio of the next fewer beds is held.
+    """
+    of_part = (part == np.arange(part.max() + 1)[:, None]) * patients
+    chain, first_cut = of_part @ chain, of_part @ first_cut
+    enough = np.minimum(chain, first_cut) > _TOO_FEW_TO_COMPARE * np.maximum(first_cut[:, :1], 1e-300)
+    logs = np.log(np.where(enough, chain, 1.0) / np.where(enough, first_cut, 1.0))
+    for place in range(1, logs.shape[1]):
+        logs[:, place] = np.where(enough[:, place], logs[:, place], logs[:, place - 1])
+    return logs
+
+
+def _compared(rhythm: Rhythm, patients: tuple[Array, Array], loads: Array, part: NDArray[np.int64]) -> list[Array]:
+    """Compare chain and first cut: the grids of spare beds, and the logarithms for unbooked and booked patients."""
+    levels = loads.shape[1]
+    beds = [_counts(loads[:, level], levels) for level in range(levels)]
+    chain = fullness(rhythm, beds)
+    spare = np.empty((levels, _FINE))
+    logs = np.empty((2, part.max() + 1, levels, _FINE))
+    for level, counts in enumerate(beds):
+        first_cut = erlang_b_table(loads[:, level], counts).T
+        load = loads[:, level].mean()
+        nodes = (counts - load) / np.sqrt(load)
+        spare[level] = np.linspace(nodes[0], nodes[-1], _FINE)
+        weights = between(nodes, spare[level])
+        for kind, full in enumerate((chain.unbooked[level], chain.booked[level])):
+            logs[kind, :, level] = _log_ratio(full, first_cut, patients[kind], part) @ weights.T
+    return [spare, logs[0], logs[1]]
+
+
+def _has_rhythm(demand: Demand, week: Week) -> bool:
+    """Whether anything changes from hour to hour of the mean week."""
+    load = week.unbooked_load
+    return bool(demand.booked) or any(np.ptp(hours) > 1e-9 * hours.mean() for hours in (week.unbooked, load))
+
+
+@lru_cache(maxsize=128)
+def rhythm_correction(demand: Demand, lowest: float, highest: float) -> Correction | None:
+    """What does the rhythm of the week add, for levels of unbooked demand from ``lowest`` to ``highest``?
+
+    By weekday. None where the week has no rhythm (the first cut is then right) and above 1,500 beds wanted.
+
+    Checked by: tests/models/test_seasonal.py
+    """
+    week = mean_week(demand)
+    mean_loads = float(week.unbooked_load.mean()), float(week.booked_load.mean())
+    if not _has_rhythm(demand, week) or sum(mean_loads) > LARGEST_CORRECTED_LOAD:
+        return None
+    levels = _levels(lowest, highest) if mean_loads[0] > 0 else np.ones(1)
+    loads = week.unbooked_load[:, None] * levels + week.booked_load[:, None]
+    at_end = week.unbooked_load_at_end[:, None] * levels + week.booked_load_at_end[:, None]
+    rhythm = Rhythm(week.unbooked[:, None] * levels, at_end, _groups(demand))
+    weekday = np.repeat(np.arange(7), 24)
+    return Correction(levels, mean_loads, *_compared(rhythm, (week.unbooked, week.booked), loads, weekday))
+
+
+@lru_cache(maxsize=128)
+def season_correction(demand: Demand) -> Correction | None:
+    """What does the memory of the ward add from month to month, the rhythm of the week apart?
+
+    By month, for the level of the year: a year of two-day steps. None without seasons and above 1,500 beds wanted.
+
+    Checked by: tests/models/test_seasonal.py
+    """
+    week = mean_week(demand)
+    mean_loads = float(week.unbooked_load.mean()), float(week.booked_load.mean())
+    if np.ptp(demand.month_factors) < 1e-9 or not 0 < mean_loads[0] <= LARGEST_CORRECTED_LOAD - mean_loads[1]:
+        return None
+    smooth = demand.with_changes(weekday_factors=(1.0,) * 7, hour_factors=(1.0,) * 24)
+    arrivals = unbooked_by_hour(smooth)
+    leaving = Leaving(turnaround_hours=demand.turnaround_hours)
+    loads = [
+        beds_held(arrivals, hours_held(demand.length_of_stay, leaving, HOURS_A_YEAR, at_end=at_end))
+        for at_end in (False, True)
+    ]
+    scale = mean_loads[0] / loads[0].mean()
+    average = loads[0].reshape(-1, _STEP_HOURS).mean(axis=1) * scale + mean_loads[1]
+    at_end = loads[1][_STEP_HOURS - 1 :: _STEP_HOURS] * scale + mean_loads[1]
+    unbooked = arrivals.reshape(-1, _STEP_HOURS).sum(axis=1)
+    booked = np.full(unbooked.size, float(week.booked.mean()) * _STEP_HOURS)
+    rhythm = Rhythm((unbooked + booked)[:, None], at_end[:, None])
+    month = month_of_hour[::_STEP_HOURS]
+    spare, logs, _ = _compared(rhythm, (unbooked, booked), average[:, None], month)
+    return Correction(np.ones(1), mean_loads, spare, logs, logs)
