@@ -99,7 +99,7 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
     known = capacity if capacity is not None and ward in capacity.wards else None
     full = None if known is None else full_times(records, ward, counts, known)
     turnover = throughput = None
-    if full is not None and len(finished):
+    if full is not None and len(finished) and full.available_bed_days > 0:
         turnover = (full.available_bed_days - days_used) / len(finished)
         throughput = len(finished) / full.available_bed_days * 365.0
     midnight = by_day[used, 0].astype(float)
