@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import re
 from typing import TYPE_CHECKING
 
 import pytest
@@ -32,6 +33,12 @@ def open_app(root: Path) -> Callable[..., AppTest]:
         return app.run()
 
     return opened
+
+
+@pytest.fixture(scope="session")
+def every_page(root: Path) -> list[str]:
+    """Return the name of every page that the front door leads to."""
+    return re.findall(r"bedplan/pages/(\w+)\.py", (root / "app.py").read_text())
 
 
 @pytest.fixture(scope="session")

@@ -123,3 +123,14 @@ def test_the_same_records_open_quietly(open_app: Callable[..., AppTest]) -> None
     """A link made with the records that are shown brings no warning."""
     here = open_app().query_params["records"]
     assert not open_app(records=here).warning
+
+
+@pytest.mark.xfail(strict=True, reason="twelve inputs and the fingerprint make thirteen values")
+def test_no_input_makes_the_address_long(open_app: Callable[..., AppTest]) -> None:
+    """However many inputs are moved at once, with the fingerprint they are no more than 12 values."""
+    app = open_app()
+    side = app.sidebar
+    kinds = (side.slider, side.radio, side.number_input, side.segmented_control, side.selectbox, side.toggle)
+    kept = [one.key for kind in kinds for one in kind if one.key]
+    assert len(kept) >= 9
+    assert len(kept) + 1 <= MOST_VALUES

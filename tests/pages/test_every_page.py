@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 import pytest
@@ -11,7 +13,9 @@ if TYPE_CHECKING:
 
     from streamlit.testing.v1 import AppTest
 
-PAGES = ("records", "one_ward", "compare", "justification", "method")
+# every page that the front door leads to
+FRONT_DOOR = Path(__file__).resolve().parents[2] / "app.py"
+PAGES = re.findall(r"bedplan/pages/(\w+)\.py", FRONT_DOOR.read_text())
 LABELLED = ("slider", "radio", "number_input", "selectbox", "multiselect", "button", "text_input", "file_uploader")
 
 
@@ -39,6 +43,7 @@ def test_page_opens(open_app: Callable[..., AppTest], page: str) -> None:
         assert not app.error
         assert [*app.header, *app.subheader]
         app.run()
+    assert len(PAGES) >= 5
 
 
 @pytest.mark.parametrize("page", PAGES)

@@ -13,7 +13,6 @@ if TYPE_CHECKING:
     from streamlit.testing.v1 import AppTest
 
 GOES_ELSEWHERE = ("Curlew", "Dunlin", "Merlin", "Sandpiper")  # wards of the invented hospital that turn patients away
-OTHER_PAGES = ("records", "compare", "justification", "method")
 
 
 def go(app: AppTest, page: str) -> AppTest:
@@ -189,7 +188,7 @@ def test_back_to_the_records(open_app: Callable[..., AppTest]) -> None:
     assert everything(app) == answered
 
 
-def test_inputs_survive_the_other_pages(open_app: Callable[..., AppTest]) -> None:
+def test_inputs_survive_the_other_pages(open_app: Callable[..., AppTest], every_page: list[str]) -> None:
     """Inputs and answer are the same after a walk through every other page."""
     app = open_app()
     app.selectbox(key="ward").set_value("Heron").run()
@@ -198,7 +197,7 @@ def test_inputs_survive_the_other_pages(open_app: Callable[..., AppTest]) -> Non
     app.segmented_control(key="within").set_value("year").run()
     app.number_input(key="beds").set_value(33).run()
     left, answered = inputs(app), everything(app)
-    for page in OTHER_PAGES:
+    for page in every_page:
         assert_calm(go(app, page))
     go(app, "one_ward")
 
