@@ -76,7 +76,9 @@ def erlang_b_table(
     """
     fraction = np.broadcast_to(np.asarray(fraction, dtype=float), load.shape)
     some = np.where(load > 0, load, 1.0)
-    log_inverse = np.where(fraction > 0, _log_inverse_at_fraction(some, fraction), 0.0)
+    log_inverse = np.zeros(load.shape)
+    if np.any(fraction > 0):
+        log_inverse = np.where(fraction > 0, _log_inverse_at_fraction(some, fraction), 0.0)
     state = log_inverse if in_logs else np.exp(-log_inverse)
     table = np.empty((counts.size, load.size))
     row, rounded_off = 0, 0.0

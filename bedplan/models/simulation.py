@@ -96,7 +96,7 @@ def _block(ward: tuple[Demand, int, WardRun, bool], extent: Extent, seed: int, f
     """Play some replications through, side by side: the warm-up, then the counted days."""
     demand, beds, run, waits = ward
     rate = np.ones(count)
-    if demand.rate_variation > 0:
+    if demand.rate_variation > 1e-6:
         order = demand.rate_variation**-2
         chance = np.random.default_rng(np.random.SeedSequence(seed, spawn_key=(first, 2)))
         rate = chance.standard_gamma(order, count) / order
