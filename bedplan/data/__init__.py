@@ -4,11 +4,11 @@ from bedplan.data.backtesting import Backtest, backtest
 from bedplan.data.capacity import Capacity, read_capacity
 from bedplan.data.census import Census, read_census
 from bedplan.data.choices import DateQuestion, IntakeChoices
-from bedplan.data.demand_methods import DemandFigure
 from bedplan.data.describing import FullTimes, LongStays, WardDescription, describe_ward
 from bedplan.data.estimating import DemandEstimate, Uncertainty, estimate_demand
+from bedplan.data.evidence import DemandMethod
 from bedplan.data.forecasting import Forecast, forecast_arrivals
-from bedplan.data.hidden_demand import DemandStep, HiddenDemand, Unmet, hidden_demand
+from bedplan.data.hidden_demand import DemandStep, HiddenDemand, hidden_demand
 from bedplan.data.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
 from bedplan.data.preview import ColumnPreview, preview_columns
 from bedplan.data.reconciling import CensusCheck, Flows, check_census, flows
@@ -25,7 +25,7 @@ __all__ = [
     "ColumnPreview",
     "DateQuestion",
     "DemandEstimate",
-    "DemandFigure",
+    "DemandMethod",
     "DemandStep",
     "EventLog",
     "Flows",
@@ -38,7 +38,6 @@ __all__ = [
     "MonthlyReturn",
     "Records",
     "Uncertainty",
-    "Unmet",
     "WardDescription",
     "WardLink",
     "backtest",

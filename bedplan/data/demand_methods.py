@@ -1,237 +1,208 @@
-"""Four ways from what a ward could do to what was asked of it, each with its range or the reason why it can't tell."""
+"""Four methods, from patients who got a bed to patients who wanted one, each with its range or the reason it can't tell."""
 
 from __future__ import annotations
 
-import math
-from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-import numpy as np
-from scipy import optimize
+import pandas as pd
 
-from bedplan.data.arrivals import is_booked
-from bedplan.data.occupancy import bed_days, open_beds, present
-from bedplan.data.opentime import OpenTime, open_time
-from bedplan.data.specialty import HomeWards, find_home_wards
-from bedplan.data.stays import stay_curve, stays_in_window
+from bedplan.data.carried_load import load_behind
+from bedplan.data.evidence import NINETY, DemandMethod, Evidence, Range
+from bedplan.data.open_time import RUSH
+from bedplan.data.patients import beds_used, started
 from bedplan.errors import ImpossibleFigure
-from bedplan.models import erlang_b
+from bedplan.wording import percent
 
 if TYPE_CHECKING:
-    import pandas as pd
-    from numpy.typing import ArrayLike
+    from bedplan.data.logs import EventLog
 
-    from bedplan.data.capacity import Capacity
-    from bedplan.data.records import Records
-
-LOG, HOME, RATE, LOAD = (
-    "the log of refusals",
-    "the patients' own specialty",
-    "the rate while a bed was free",
-    "the carried load",
+LIST, SPECIALTY, OPEN_TIME, CARRIED = (
+    "the list of those who could not be given a bed",
+    "patients of its specialty on every ward",
+    "arrivals while a bed was free",
+    "the Erlang loss formula, solved for demand",
 )
-LEAST_SLOPE = 0.15  # of carried load against demand: below, a full ward hides too much
-LEAST_SHARE_AWAY = 0.01  # of a ward's beds: below, patients on other wards don't matter
-MOSTLY_BOOKED = 0.5
+LEAST_SHARE_ELSEWHERE = 0.01  # of its patients' beds: below, they don't matter
+MOST_WAITING = 0.05  # of own patients who lay on another ward first or instead, from which they queue; no source
+MOSTLY = 0.5
+LEAST_SLOPE = 0.15  # beds in use gained for each bed more wanted; below, a ward is too full to tell
+NOTABLE = 0.02  # of the time, by which a formula may miss the hours that a ward was full before it is said
+SILENCE = 10.0  # usual gaps between a list's entries, from which it was not kept (by chance: 1 in 20,000)
 
 
-@dataclass(frozen=True, slots=True)
-class DemandFigure:
-    """One method's answer: arrivals a day with a 95 % range, or None and in ``sentence`` the reason why it can't tell."""
-
-    method: str
-    arrivals_per_day: float | None
-    low: float
-    high: float
-    sentence: str
+def list_and(names: list[str]) -> str:
+    """Write names as people do: "Plover, Heron and Kestrel"."""
+    return " and ".join(part for part in (", ".join(names[:-1]), *names[-1:]) if part)
 
 
-@dataclass(frozen=True)
-class WardEvidence:
-    """What the records show of one ward: its stays, those of its own patients, and the time it was full.
+def not_used(name: str, reason: str) -> DemandMethod:
+    """Return a method that can't be used here, and why."""
+    return DemandMethod(name, used=False, reason=reason)
 
-    ``recorded_beds`` in use on average; ``guest_beds`` of them by other specialties' patients; ``away_beds`` that its
-    own patients use elsewhere. ``own_arrivals`` counts its own patients once each, wherever they lay.
+
+def by_list(evidence: Evidence, logs: tuple[EventLog, ...], share: Range) -> DemandMethod:
+    """How many wanted a bed, by those who had one and lists of those who could not be given one?
+
+    ``share``: lowest and highest share of such cases that get written down; booked patients who were cancelled are
+    taken to be written down always. A patient asked for twice counts twice.
     """
-
-    records: Records
-    ward: str
-    stays: pd.DataFrame
-    own_on_ward: pd.DataFrame
-    admitted: int
-    own_arrivals: int
-    recorded_beds: float
-    guest_beds: float
-    away_beds: float
-    knows_specialty: bool
-    mean_stay_days: float
-    booked_share: float
-    capacity: Capacity | None
-    opening: OpenTime | None
-
-    @property
-    def matters(self) -> bool:
-        """Do enough patients lie on the wrong ward to matter?"""
-        return self.guest_beds + self.away_beds >= LEAST_SHARE_AWAY * max(self.recorded_beds, 1e-9)
-
-
-def gather(records: Records, ward: str, capacity: Capacity | None) -> WardEvidence:
-    """What do the records show of this ward?
-
-    Raises:
-        UnreadableRecords: no stays on it, or none that ended.
-    """
-    stays = stays_in_window(records, ward)
-    homes = find_home_wards(records)
-    own, own_on_ward = _own(homes, ward, stays)
-    beds_of = [float(bed_days(records, some).sum()) / records.days for some in (stays, own_on_ward, own)]
-    known = capacity if capacity is not None and ward in capacity.wards else None
-    return WardEvidence(
-        records=records,
-        ward=ward,
-        stays=stays,
-        own_on_ward=own_on_ward,
-        admitted=_in_window(records, stays),
-        own_arrivals=_in_window(records, _first_stays(own) if len(own) != len(stays) else stays),
-        recorded_beds=beds_of[0],
-        guest_beds=beds_of[0] - beds_of[1],
-        away_beds=beds_of[2] - beds_of[1],
-        knows_specialty=homes is not None,
-        mean_stay_days=_mean_stay(records, own_on_ward, stays, ward),
-        booked_share=float(is_booked(stays).mean()),
-        capacity=known,
-        opening=None if known is None else open_time(records, ward, stays, known, own_on_ward),
-    )
-
-
-def _own(homes: HomeWards | None, ward: str, stays: pd.DataFrame) -> tuple[pd.DataFrame, pd.DataFrame]:
-    """Return the stays of the ward's own patients, everywhere and on the ward; all on it where there is no telling."""
-    if homes is None or ward in homes.through or ward not in homes.home.values():
-        return stays, stays
-    own = homes.own_patients(ward)
-    return own, own[own["ward"] == ward]
-
-
-def _mean_stay(records: Records, own: pd.DataFrame, stays: pd.DataFrame, ward: str) -> float:
-    """Return the mean stay of the ward's own patients on it, or of all where none of its own has left."""
-    return stay_curve(records, own if own["end"].notna().any() else stays, ward).mean_days
-
-
-def _first_stays(own: pd.DataFrame) -> pd.DataFrame:
-    """Return the first of each patient's stays, in each stay in hospital where the file tells them apart."""
-    keys = [key for key in ("patient_key", "spell_key") if key in own]
-    return own.sort_values("start", kind="stable").drop_duplicates(keys)
-
-
-def _in_window(records: Records, stays: pd.DataFrame) -> int:
-    """Return how many of these stays started within the window."""
-    return int(((stays["start"] >= records.window[0]) & (stays["start"] < records.window[1])).sum())
-
-
-def cannot(method: str, sentence: str) -> DemandFigure:
-    """Return the answer of a method that can't tell, and why."""
-    return DemandFigure(method, None, 0.0, 0.0, sentence)
-
-
-def logged_demand(evidence: WardEvidence, refused: int | None, recorded_share: float) -> DemandFigure:
-    """How many came, by those admitted and the refusals written down? Divided by the share that gets written down."""
-    if refused is None:
-        return cannot(LOG, "No log of refusals was given.")
-    if refused == 0:
-        return cannot(LOG, f"No refusal is written down for {evidence.ward}: none happened, or none was noted.")
-    came, days = evidence.own_arrivals, evidence.records.days
-    per_day = (came + refused / recorded_share) / days
-    error = 1.96 * math.sqrt(came + refused / recorded_share**2) / days
-    share = "all of them" if recorded_share == 1 else f"{recorded_share:.0%} of them"
-    told = f"{came:,} admitted and {refused:,} refusals written down ({share}): {per_day:.2f} a day."
-    return DemandFigure(LOG, per_day, per_day - error, per_day + error, told)
-
-
-def home_demand(evidence: WardEvidence) -> DemandFigure:
-    """How many came, by counting the ward's own patients wherever they lay, and leaving out others who lay on it?"""
-    if not evidence.knows_specialty:
-        return cannot(HOME, "The file has no column for the patients' specialty.")
-    if not evidence.matters:
-        return cannot(HOME, "Hardly any patient lies on another specialty's ward.")
-    days, ward, here = evidence.records.days, evidence.ward, evidence.recorded_beds - evidence.guest_beds
-    per_day, error = evidence.own_arrivals / days, 1.96 * math.sqrt(max(evidence.own_arrivals, 1)) / days
-    told = (
-        f"{ward}'s own patients use {here + evidence.away_beds:.1f} beds on average, {here:.1f} of them on {ward}; "
-        f"{per_day:.2f} come a day."
-    )
-    return DemandFigure(HOME, per_day, per_day - error, per_day + error, told)
-
-
-def full_ward_demand(evidence: WardEvidence) -> list[DemandFigure]:
-    """How many came, by the time with a free bed and by the beds in use? Refused where patients queue or are booked."""
-    opening, ward = evidence.opening, evidence.ward
-    refusal = ""
-    if opening is None:
-        refusal = "Needs the ward's beds by date: bring a capacity file."
-    elif evidence.booked_share > MOSTLY_BOOKED:
-        refusal = f"{evidence.booked_share:.0%} of {ward}'s patients are booked: they come by list, not by chance."
-    elif opening.patients_queue:
-        refusal = (
-            f"Patients queue for {ward}: {opening.taken_soon:,} came within two hours of a bed coming free, where "
-            f"{opening.expected_soon:,.0f} would by chance. Each freed bed is taken at once, so this method would "
-            "count the queue as arrivals."
+    if not logs:
+        return not_used(LIST, "No list of patients who could not be given a bed was brought.")
+    names, ward = list_and([log.name for log in logs]), evidence.own.ward
+    if any(log.kind == "bed requests" for log in logs):
+        told = (
+            "holds all who asked for a bed, most of whom had one: bring the list of those who could not be given one."
         )
-    if refusal or opening is None:
-        return [cannot(method, refusal) for method in (RATE, LOAD)]
-    return [_open_rate(opening), _carried(evidence)]
+        return not_used(LIST, f"{names} {told}")
+    found = [_not_given(evidence, log, share if log.kind == "refusals" else (1.0, 1.0)) for log in logs]
+    not_given, variance = (sum(part) for part in zip(*found, strict=True))
+    if not_given == 0:
+        return not_used(LIST, f"{names} has nobody for {ward}: either nobody was sent away, or nobody noted it.")
+    listed = sum(listed_per_day(evidence, log)[0] for log in logs)
+    stands = f", which stand for {not_given:.2f} if {share_text(share)} are written down" if not_given > listed else ""
+    reason = (
+        f"{evidence.had_a_bed_per_day:.2f} of its patients a day had a bed. {listed:.2f} more are listed as those who "
+        f"could not be given one here{stands}."
+    )
+    return evidence.found(LIST, reason, not_given, variance + evidence.by_chance(evidence.had_a_bed_per_day))
 
 
-def _open_rate(opening: OpenTime) -> DemandFigure:
-    """Return the rate while a bed was free."""
-    if not opening.can_tell:
-        return cannot(RATE, f"In some hours of the week a bed was free only {opening.least_open:.0%} of the time.")
-    share, error = 1 - opening.full_share, 1.96 * opening.error
-    told = f"A bed was free {share:.0%} of the time; {opening.per_day:.2f} a day came while there was one."
-    return DemandFigure(RATE, opening.per_day, opening.per_day - error, opening.per_day + error, told)
+def _not_given(evidence: Evidence, log: EventLog, share: Range) -> Range:
+    """Return the patients a day who could not be given a bed, and the variance of that figure.
+
+    Three things make it uncertain: who came, who of them was written down, and how sure the planner is of the share.
+    """
+    listed, days = listed_per_day(evidence, log)
+    middle, half = (share[0] + share[1]) / 2, (share[1] - share[0]) / 2
+    not_given = listed / middle
+    by_chance = (evidence.swing + (1 - middle) / middle) * not_given / days
+    return not_given, by_chance + (not_given / middle * half / NINETY) ** 2
 
 
-def _carried(evidence: WardEvidence) -> DemandFigure:
-    """Return the demand behind the beds in use, less the beds of other wards' patients."""
-    beds = open_beds(evidence.records, evidence.ward, evidence.capacity, 24)
-    in_use = float(present(evidence.records, evidence.stays, 3_600).mean())
-    # The mean of a count that forgets itself within about a stay, over so many days.
-    error = 1.96 * math.sqrt(2.0 * in_use * max(evidence.mean_stay_days, 0.1) / evidence.records.days)
-    too_full = cannot(LOAD, f"{in_use:.1f} beds in use of {beds.mean():.1f} on average: too full to tell.")
+def share_text(share: Range) -> str:
+    """Write a share that is written down: "all", "60 %", "50 % to 70 %"."""
+    if share[0] == share[1]:
+        return "all" if share[0] == 1 else percent(share[0])
+    return f"{percent(share[0])} to {percent(share[1])}"
+
+
+def listed_per_day(evidence: Evidence, log: EventLog) -> tuple[float, int]:
+    """How many a day are on a list for this ward, and over how many days was it kept?
+
+    A list that is silent at the start or end of the file for ten usual gaps was not kept then: those days don't count.
+    """
+    records = evidence.own.records
+    first, last = records.window
+    mine = log.for_lack_of_beds(evidence.own.ward, records.window)["time"]
+    if mine.empty:
+        return 0.0, evidence.days
+    times = log.table["time"]
+    times = times[(times >= first) & (times < last)]
+    silence = max(SILENCE * (times.max() - times.min()) / len(times), pd.Timedelta(days=1))
+    began = first if times.min() - first <= silence else times.min().normalize()
+    ended = last if last - times.max() <= silence else times.max().normalize() + pd.Timedelta(days=1)
+    kept = (records.calendar >= began) & (records.calendar < ended) & records.counted_days
+    days = max(int(kept.sum()), 1)
+    return started(records, mine) / days, days
+
+
+def by_specialty(evidence: Evidence) -> DemandMethod:
+    """How many wanted a bed, by counting the ward's own patients wherever they lay?"""
+    own, reason = evidence.own, ""
+    if "specialty" not in own.records.stays:
+        reason = "The file has no column for the patients' specialty."
+    elif not own.specialties:
+        reason = (
+            "Its patients are of many specialties, most of them at home elsewhere: its own can't be told from others."
+        )
+    elif evidence.beds_elsewhere < LEAST_SHARE_ELSEWHERE * evidence.own_beds:
+        reason = "Hardly any of its patients lay on another ward; those who went to another hospital it can't see."
+    if reason:
+        return not_used(SPECIALTY, reason)
+    reason = (
+        f"Patients of {list_and(list(own.specialties))} used {evidence.own_beds:.1f} beds on average: "
+        f"{evidence.beds_here:.1f} on {own.ward} and {evidence.beds_elsewhere:.1f} on {_busiest(own.elsewhere)}."
+    )
+    return evidence.found(SPECIALTY, reason)
+
+
+def _busiest(stays: pd.DataFrame) -> str:
+    """Return the wards of these stays, the one with most of them first, three at most."""
+    return list_and([str(name) for name, count in stays["ward"].value_counts().items() if count][:3])
+
+
+def by_open_time(evidence: Evidence) -> DemandMethod:
+    """How many wanted a bed, by those who came from outside while one was free?
+
+    Those who moved in from other wards are added, and the few who lay elsewhere, though some of these may be among
+    those who came: if it errs by that, it is towards more.
+    """
+    opening, reason = evidence.direct, why_not_loss(evidence)
+    if not reason and opening is None:
+        reason = "The file has dates without times, so the hours with a free bed are not known."
+    elif not reason and not opening.can_tell:
+        reason = f"In some hour of the week or month a bed was free only {percent(opening.least_open)} of the time: too little."
+    if reason:
+        return not_used(OPEN_TIME, reason)
+    others = evidence.moved_in_per_day + evidence.elsewhere_per_day
+    added = f"; {others:.2f} a day who came from other wards of the hospital are added" if others else ""
+    reason = (
+        f"{evidence.own.ward} was full {percent(opening.share_full)} of the time. While a bed was free, "
+        f"{opening.per_day:.2f} patients a day came from outside{added}."
+    )
+    variance = evidence.swing * opening.error**2 + evidence.by_chance(others)
+    return evidence.found(OPEN_TIME, reason, max(opening.per_day - evidence.direct_per_day, 0.0), variance)
+
+
+def by_carried_load(evidence: Evidence) -> DemandMethod:
+    """How many wanted a bed, by the beds in use and the formula for a ward whose patients leave when it is full?"""
+    records, reason = evidence.own.records, why_not_loss(evidence)
+    if reason:
+        return not_used(CARRIED, reason)
+    in_use = beds_used(records, evidence.on_ward)
+    beds = evidence.capacity.open_beds_by_day(evidence.own.ward, records.calendar[records.counted_days])
+    told = f"{in_use:.1f} of {beds.mean():.1f} beds were in use on average"
     try:
-        load, less, more = (
-            demand_behind_carried_load(max(one, 0.0), beds) for one in (in_use, in_use - error, in_use + error)
-        )
+        load, slope = load_behind(in_use, beds)
     except ImpossibleFigure:
-        return too_full
-    if 2 * error < LEAST_SLOPE * (more - less):
-        return too_full
-    told = f"{in_use:.1f} beds in use of {beds.mean():.1f} on average: {load:.1f} would be, if nobody were turned away."
-    rates = [(one - evidence.guest_beds) / max(evidence.mean_stay_days, 1e-9) for one in (load, less, more)]
-    return DemandFigure(LOAD, rates[0], rates[1], rates[2], told)
+        slope = 0.0
+    if slope < LEAST_SLOPE or in_use <= 0:
+        return not_used(CARRIED, f"{told}: demand can't be told from that.")
+    not_given = evidence.direct_per_day * (load / in_use - 1.0)
+    chance = evidence.by_chance(evidence.had_a_bed_per_day + not_given)
+    in_use_error = evidence.mean_stay_days * (chance * (1 + evidence.variation**2)) ** 0.5
+    by_use = evidence.direct_per_day / in_use * (1.0 / slope - load / in_use) * in_use_error
+    told, misfit = f"{told}, as if {load:.1f} were wanted.", 0.0
+    if evidence.direct is not None:
+        full, expected = min(evidence.direct.share_full, 0.99), 1 - in_use / load
+        misfit = evidence.direct_per_day * full / (1.0 - full) - not_given
+        told += f" The ward was then full {percent(expected)} of the time by the formula; it was {percent(full)}."
+        told += " It misses demand, and the range allows for that." if full > expected + NOTABLE else ""
+    else:
+        told += " Without times of day it can't be seen whether patients queue; where they do, this is too high."
+    return evidence.found(CARRIED, told, not_given, chance + by_use**2 + misfit**2)
 
 
-def demand_behind_carried_load(carried_beds: float, beds: ArrayLike) -> float:
-    """How many beds are wanted on average where so many are in use on average, and patients leave when it is full?
-
-    Solves carried = a(1 − B(beds, a)) for a; ``beds`` (n,) may differ from time to time, each time counting alike.
-
-    Raises:
-        ImpossibleFigure: more carried than there are beds, or so near that the demand can't be told.
-
-    Source: inverse of Erlang 1917.
-    Checked by: tests/data/test_hidden_demand.py
-    """
-    counts, times = np.unique(np.asarray(beds), return_counts=True)
-    shares, most = times / times.sum(), float((counts * times).sum() / times.sum())
-
-    def carried(load: float) -> float:
-        return float((shares * load * (1.0 - erlang_b(load, counts))).sum())
-
-    if carried_beds <= 0:
-        return 0.0
-    top = max(most, 1.0)
-    while top < 1_000.0 * max(most, 1.0) and carried(top) < carried_beds:
-        top *= 2.0
-    if carried(top) < carried_beds:
-        raise ImpossibleFigure(f"{carried_beds:.1f} beds in use of {most:.1f} are too near full to tell the demand.")
-    return float(optimize.brentq(lambda load: carried(load) - carried_beds, 0.0, top, xtol=1e-9))
+def why_not_loss(evidence: Evidence) -> str:
+    """Why can't demand be read from free and full hours here? Nothing where it can: patients then go elsewhere at once."""
+    if evidence.capacity is None:
+        return "The beds of each day are not known: bring a file of beds by ward and date."
+    if evidence.booked_share > MOSTLY:
+        return f"{percent(evidence.booked_share)} of its patients are booked: they come by list, not by chance."
+    own, rush, moved = evidence.own, evidence.rush, evidence.moved_in_per_day / max(evidence.had_a_bed_per_day, 1e-9)
+    told, rushed = "", rush is None or rush >= RUSH
+    if own.waiting_share > MOST_WAITING:
+        where = _busiest(pd.concat([own.on_the_way, own.elsewhere]))
+        told = f"{percent(own.waiting_share)} of its own first waited, or lay instead, on {where}"
+    elif rushed and moved > MOSTLY:
+        told = f"{percent(moved)} of its own come from other wards of the hospital"
+    queued = evidence.direct is not None and evidence.direct.is_queued_for
+    if told and not rushed:
+        return f"{told}: they are counted there, and arrivals while a bed is free would count some of them twice."
+    if not told and not queued:
+        return ""
+    at_once = f"a bed freed while it is full is taken {rush:.0f} times as fast as usual" if rush else ""
+    return (
+        f"Patients queue for {own.ward}: {', and '.join(part for part in (told, at_once) if part)}. Whoever takes it "
+        "had been waiting, so arrivals while a bed is free are not those who ask for one."
+    )

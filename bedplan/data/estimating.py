@@ -141,7 +141,7 @@ def estimate_demand(
     lists = _booked_lists(records, stays, booked, ward) if booked_apart else ()
     arrivals = arrivals_of(records, stays["start"][~booked]) if lists else every
     own_curve = stay_curve(records, stays[~booked], ward) if lists and not booked.all() else curve
-    raised = 1.0 if hidden is None else hidden.arrivals_per_day / max(hidden.admitted_per_day, 1e-9)
+    raised = 1.0 if hidden is None else hidden.demand_per_day / max(hidden.admitted_per_day, 1e-9)
     stay = fitted_stay(own_curve)
     if hidden is not None and hidden.mean_stay_days > 0:
         stay = LengthOfStay(hidden.mean_stay_days, stay.variation, stay.shape)
@@ -201,9 +201,12 @@ def _uncertainty(
     """Return 95 % intervals; with hidden demand they reach from the lowest method's to the highest one's."""
     low, high = (bound * raised for bound in arrivals.interval())
     arrivals_error = max(arrivals.worth, 1.0) ** -0.5
-    if hidden is not None:
-        level = arrivals.per_day / max(hidden.admitted_per_day, 1e-9)  # the latest year against the whole file
-        low, high = min(low, level * hidden.spread[0]), max(high, level * hidden.spread[1])
+    if hidden is not None and hidden.demand_per_day > 0:
+        # Its bounds are those of 90 %, for the whole file; taken here to 95 %, and to the level of the latest year.
+        bounds = [
+            arrivals.per_day * raised * (bound / hidden.demand_per_day) ** (1.96 / 1.645) for bound in hidden.spread
+        ]
+        low, high = min(low, bounds[0]), max(high, bounds[1])
         arrivals_error = max(arrivals_error, math.log(max(high / max(low, 1e-9), 1.0)) / 3.92)
     stay_error = curve.mean_standard_error / max(curve.mean_days, 1e-9)
     spread, both = math.exp(1.96 * stay_error), math.exp(1.96 * math.hypot(arrivals_error, stay_error))

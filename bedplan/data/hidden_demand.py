@@ -1,4 +1,4 @@
-"""From recorded use to demand, step by step: patients on other wards, refused, cancelled."""
+"""From the patients a ward admitted to those who wanted a bed on it: step by step, by every method the files allow."""
 
 from __future__ import annotations
 
@@ -7,170 +7,216 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from bedplan.data.demand_methods import (
-    HOME,
-    DemandFigure,
-    WardEvidence,
-    full_ward_demand,
-    gather,
-    home_demand,
-    logged_demand,
+    CARRIED,
+    LIST,
+    OPEN_TIME,
+    SPECIALTY,
+    by_carried_load,
+    by_list,
+    by_open_time,
+    by_specialty,
+    list_and,
+    listed_per_day,
+    share_text,
 )
+from bedplan.data.evidence import NINETY, DemandMethod, Evidence, Range, gather
+from bedplan.data.patients import beds_used, own_patients, started
 from bedplan.errors import ImpossibleFigure
+from bedplan.wording import percent
 
 if TYPE_CHECKING:
     from bedplan.data.capacity import Capacity
     from bedplan.data.logs import EventLog
     from bedplan.data.records import Records
+    from bedplan.models import Demand
 
-
-@dataclass(frozen=True, slots=True)
-class Unmet:
-    """What is written down of demand that was not met: refusals (and the share that gets written down), cancellations.
-
-    Raises:
-        ImpossibleFigure: a share of refusals recorded outside 0–1, or 0.
-    """
-
-    refusals: EventLog | None = None
-    recorded_share: float = 1.0
-    cancellations: EventLog | None = None
-
-    def __post_init__(self) -> None:
-        """Check the share."""
-        if not 0 < self.recorded_share <= 1:
-            raise ImpossibleFigure(
-                f"A recorded share of {self.recorded_share:g} is not possible: it lies above 0 and is at most 1."
-            )
+BEST_FIRST = (LIST, OPEN_TIME, CARRIED, SPECIALTY)
+RECORDED = "recorded admissions alone"
 
 
 @dataclass(frozen=True, slots=True)
 class DemandStep:
-    """One step from recorded use to demand: the beds it adds on average (below 0: takes away)."""
+    """One step from recorded to demand: the patients a day and beds it adds (below 0: takes away)."""
 
     label: str
+    patients_per_day: float
     beds: float
-    sentence: str
 
 
 @dataclass(frozen=True, slots=True)
 class HiddenDemand:
-    """What was asked of a ward, met or not.
+    """What was wanted of a ward over the file's days, whether there was a bed or not.
 
-    ``steps`` add up to ``beds_wanted`` (beds on average); ``figures`` are the methods' answers side by side, and
-    ``spread`` reaches from the lowest bound to the highest of those that can tell. ``method`` names the one used.
-    ``patients_queue`` is None where no capacity file says when the ward was full. Cancelled patients count as arrivals.
-
-    Checked by: tests/data/test_hidden_demand.py
+    ``steps`` lead from what is recorded on the ward, the first, to its demand: they add up to it. ``methods``:
+    every method of finding demand, used or not, and why; ``method`` names the one that the steps follow. ``interval`` and
+    ``beds_interval`` are its 90 % intervals; ``spread`` (patients a day) and ``beds_spread`` reach from the lowest to
+    the highest bound of all methods used.
     """
 
     ward: str
-    admitted_per_day: float
-    arrivals_per_day: float
-    beds_wanted: float
     method: str
     steps: tuple[DemandStep, ...]
-    figures: tuple[DemandFigure, ...]
-    spread: tuple[float, float]
-    patients_queue: bool | None
+    methods: tuple[DemandMethod, ...]
+    interval: Range
+    beds_interval: Range
+    spread: Range
+    beds_spread: Range
     notes: tuple[str, ...]
 
     @property
+    def admitted_per_day(self) -> float:
+        """How many patients a day does the ward's own record show?"""
+        return self.steps[0].patients_per_day
+
+    @property
+    def demand_per_day(self) -> float:
+        """How many patients a day wanted a bed on this ward?"""
+        return math.fsum(step.patients_per_day for step in self.steps)
+
+    @property
+    def beds_wanted(self) -> float:
+        """How many beds would they have used on average, had there always been one?"""
+        return math.fsum(step.beds for step in self.steps)
+
+    @property
     def mean_stay_days(self) -> float:
-        """How long would each of them stay on average?"""
-        return self.beds_wanted / self.arrivals_per_day if self.arrivals_per_day > 0 else 0.0
+        """How long do the ward's own patients use a bed, on average?"""
+        return self.beds_wanted / self.demand_per_day if self.demand_per_day > 0 else 0.0
+
+    def apply(self, demand: Demand) -> Demand:
+        """What is a recorded demand, raised to what was wanted? Arrivals and mean stay change by the same shares here.
+
+        The stay changes only where other wards' patients lay here, or its own elsewhere. Booked lists stay as booked.
+        """
+        if self.admitted_per_day <= 0 or self.demand_per_day <= 0:
+            return demand
+        recorded_stay = self.steps[0].beds / self.admitted_per_day
+        stay = demand.length_of_stay
+        return demand.with_changes(
+            arrivals_per_day=demand.arrivals_per_day * self.demand_per_day / self.admitted_per_day,
+            length_of_stay=stay.scaled(self.mean_stay_days / recorded_stay) if recorded_stay > 0 else stay,
+        )
 
 
 def hidden_demand(
-    records: Records, ward: str, capacity: Capacity | None = None, unmet: Unmet | None = None
+    records: Records,
+    ward: str,
+    *,
+    capacity: Capacity | None = None,
+    refusals: EventLog | tuple[EventLog, ...] | None = None,
+    share_recorded: float | Range = 1.0,
 ) -> HiddenDemand:
-    """How much demand do the records not show: patients refused, cancelled, or lying on other wards?
+    """How many patients wanted a bed on this ward, those included who lay elsewhere or could not be given one?
 
-    Each method has its ward: a log of refusals where there is one; the patients' own specialty where they lie
-    elsewhere; the rate while a bed is free, or the carried load, where patients leave when the ward is full. Where
-    patients queue for the ward, freed beds are taken at once, and those last two methods are refused.
+    Every method that the files allow is shown with its 90 % interval. The one followed is the first of these that can
+    be used: lists of those who could not be given a bed (``refusals``: one or more of refusals and cancellations),
+    arrivals while a bed was free, the Erlang loss formula solved for demand, the ward's own patients wherever they
+    lay. All of them count its own patients on other wards. The second and third are refused where patients queue for
+    the ward: a freed bed is then taken by somebody who came earlier. ``share_recorded``: the share of refusals that
+    get written down, above 0 and at most 1, or the lowest and highest that the planner holds possible.
 
     Raises:
-        UnreadableRecords: no stays on the ward, or none that ended.
+        ImpossibleFigure: a share outside its meaning.
+        UnreadableRecords: no stay on the ward, or none that ended.
 
+    Source: Wolff 1982 (open time); Erlang 1917 (carried load).
     Checked by: tests/data/test_hidden_demand.py
     """
-    unmet = unmet or Unmet()
-    evidence = gather(records, ward, capacity)
-    log = unmet.refusals
-    refused = None if log is None else len(log.for_lack_of_beds(ward, records.window))
-    logged = logged_demand(evidence, refused, unmet.recorded_share)
-    figures = (logged, home_demand(evidence), *full_ward_demand(evidence))
-    admitted, base = evidence.admitted / records.days, evidence.own_arrivals / records.days
-    chosen = _choose(figures, evidence)
-    per_day = base if chosen is None or chosen.arrivals_per_day is None else chosen.arrivals_per_day
-    cancels = unmet.cancellations
-    cancelled = 0.0 if cancels is None else len(cancels.for_lack_of_beds(ward, records.window)) / records.days
-    steps = _steps(evidence, chosen, per_day - base, cancelled)
-    told = [figure for figure in figures if figure.arrivals_per_day is not None]
-    error = 1.96 * math.sqrt(max(evidence.own_arrivals, 1)) / records.days
+    share = _share(share_recorded)
+    logs = refusals if isinstance(refusals, tuple) else () if refusals is None else (refusals,)
+    evidence = gather(own_patients(records, ward), capacity)
+    methods = (
+        by_list(evidence, logs, share),
+        by_specialty(evidence),
+        by_open_time(evidence),
+        by_carried_load(evidence),
+    )
+    used = {name: method for name in BEST_FIRST for method in methods if method.name == name and method.used}
+    followed = next(iter(used.values()), None) or evidence.found(RECORDED, "")
+    shown = list(used.values()) or [followed]
     return HiddenDemand(
         ward=ward,
-        admitted_per_day=admitted,
-        arrivals_per_day=per_day + cancelled,
-        beds_wanted=math.fsum(step.beds for step in steps),
-        method="recorded admissions alone" if chosen is None else chosen.method,
-        steps=steps,
-        figures=figures,
-        spread=(
-            max(min([base - error, *(figure.low for figure in told)]), 0.0) + cancelled,
-            max([base + error, *(figure.high for figure in told)]) + cancelled,
-        ),
-        patients_queue=evidence.opening.patients_queue if evidence.opening else None,
-        notes=_notes(evidence, told),
+        method=followed.name,
+        steps=_steps(evidence, followed),
+        methods=methods,
+        interval=followed.interval,
+        beds_interval=followed.beds_interval,
+        spread=(min(one.interval[0] for one in shown), max(one.interval[1] for one in shown)),
+        beds_spread=(min(one.beds_interval[0] for one in shown), max(one.beds_interval[1] for one in shown)),
+        notes=(*_notes(evidence, can_tell=bool(used)), *_listed_too_few(evidence, logs, share, used)),
     )
 
 
-def _choose(figures: tuple[DemandFigure, ...], evidence: WardEvidence) -> DemandFigure | None:
-    """Return the figure with the best evidence: written down, then where patients lie, then how a full ward behaves."""
-    logged, home, rate, carried = figures
-    queue = evidence.opening is not None and evidence.opening.patients_queue
-    order = (logged, home) if queue else (logged, rate, carried, home)
-    return next((figure for figure in order if figure.arrivals_per_day is not None), None)
-
-
-def _steps(
-    evidence: WardEvidence, chosen: DemandFigure | None, turned_away_per_day: float, cancelled_per_day: float
-) -> tuple[DemandStep, ...]:
-    """Return the steps from beds in use on the ward to beds wanted."""
-    ward, stay = evidence.ward, evidence.mean_stay_days
-    steps = [
-        DemandStep(
-            "Recorded on the ward", evidence.recorded_beds, f"{evidence.recorded_beds:.1f} beds in use on average."
+def _share(given: float | Range) -> Range:
+    """Return the lowest and highest share that gets written down, checked."""
+    low, high = (given, given) if isinstance(given, int | float) else given
+    if not 0 < low <= high <= 1:
+        said = f"{low:g}" if low == high else f"{low:g} to {high:g}"
+        raise ImpossibleFigure(
+            f"A share written down of {said} is not possible: it lies above 0 and is at most 1, the lower figure first."
         )
-    ]
-    if evidence.matters:
-        guests, away = evidence.guest_beds, evidence.away_beds
-        steps.append(
-            DemandStep("Other wards' patients here", -guests, f"{guests:.1f} beds are used by other wards' patients.")
-        )
-        steps.append(
-            DemandStep("Own patients elsewhere", away, f"{away:.1f} beds of other wards are used by {ward}'s patients.")
-        )
-    if chosen is not None and chosen.method != HOME and turned_away_per_day > 0:
-        told = f"{turned_away_per_day * 365:,.0f} patients a year, by {chosen.method}, for {stay:.1f} days each."
-        steps.append(DemandStep("Turned away", turned_away_per_day * stay, told))
-    told = f"{cancelled_per_day * 365:,.0f} booked patients a year were cancelled for lack of a bed, for {stay:.1f} days each."
-    steps.append(DemandStep("Cancelled", cancelled_per_day * stay, told))
-    return tuple(step for place, step in enumerate(steps) if place == 0 or step.beds != 0)
+    return float(low), float(high)
 
 
-def _notes(evidence: WardEvidence, told: list[DemandFigure]) -> tuple[str, ...]:
+def _steps(evidence: Evidence, followed: DemandMethod) -> tuple[DemandStep, ...]:
+    """Return the steps that add up to demand; those that change nothing are left out."""
+    own, records = evidence.own, evidence.own.records
+    ward, more = own.ward, followed.patients_per_day - evidence.had_a_bed_per_day
+    guests = started(records, own.guests["start"]) / evidence.days, beds_used(records, own.guests)
+    here = evidence.direct_per_day + evidence.moved_in_per_day
+    steps = (
+        DemandStep(f"Recorded on {ward}", here + guests[0], evidence.beds_here + guests[1]),
+        DemandStep("Other wards' patients here, taken out", -guests[0], -guests[1]),
+        DemandStep("Own patients elsewhere, brought home", evidence.elsewhere_per_day, evidence.beds_elsewhere),
+        DemandStep("Could not be given a bed here", more, more * evidence.mean_stay_days),
+    )
+    return tuple(step for place, step in enumerate(steps) if place == 0 or step.beds or step.patients_per_day)
+
+
+def _notes(evidence: Evidence, *, can_tell: bool) -> list[str]:
     """Return what belongs beside the answer."""
-    notes, ward, opening = [], evidence.ward, evidence.opening
-    if opening is not None:
-        notes.append(f"{ward} had no free bed {opening.full_share:.0%} of the time.")
-        if opening.patients_queue:
-            notes.append(
-                f"Patients queue for {ward}: {opening.taken_soon:,} came within two hours of a bed coming free, where "
-                f"{opening.expected_soon:,.0f} would by chance. Its demand is read from where its patients lie."
-            )
-    if not told:
-        notes.append("No method could tell more than the admissions show; true demand may be higher.")
-    elif len(told) > 1:
-        notes.append("The methods differ; the range covers them all.")
-    return tuple(notes)
+    own, records = evidence.own, evidence.own.records
+    notes = [f"Averages over the {evidence.days:,} days of the file that count, not the latest year alone."]
+    if own.specialties:
+        twins = f" Such patients on {list_and(list(own.twins))} are at home there." if own.twins else ""
+        kinds = list_and(list(own.specialties))
+        notes.append(f"Its own patients are those of {kinds}, {percent(own.share)} of the stays on it.{twins}")
+    if len(own.guests):
+        notes.append(
+            f"Patients of other wards used {beds_used(records, own.guests):.1f} of its beds. They are left out here, "
+            "because they belong to the demand of their own wards; if those get no more beds, they still need these."
+        )
+    if len(own.on_the_way):
+        wards = list_and(sorted({str(ward) for ward in own.on_the_way["ward"]}))
+        notes.append(
+            f"Its patients on {wards} ({beds_used(records, own.on_the_way):.1f} beds) are not counted: most only pass "
+            "through there, so these beds are care on the way, or waiting, and are needed there."
+        )
+    if own.specialties and not own.knows_moves:
+        notes.append(
+            "No patient has two stays in the file, so those on their way to or from the ward can't be told apart."
+        )
+    if not can_tell:
+        notes.append(
+            "These files can't tell how many could not be given a bed: those who waited and then came in are in the "
+            "records, those who went elsewhere are not, so demand may be higher."
+        )
+    return notes
+
+
+def _listed_too_few(
+    evidence: Evidence, logs: tuple[EventLog, ...], share: Range, used: dict[str, DemandMethod]
+) -> list[str]:
+    """Say so where the lists seem to miss more than the planner's share, by arrivals while a bed was free."""
+    if LIST not in used or OPEN_TIME not in used:
+        return []
+    by_open, by_name = (used[name].patients_per_day - evidence.had_a_bed_per_day for name in (OPEN_TIME, LIST))
+    if by_open - by_name <= NINETY * evidence.direct.error:
+        return []
+    seems = sum(listed_per_day(evidence, log)[0] for log in logs) / by_open
+    said = (
+        f"The list may miss more than assumed: by arrivals while a bed was free, {by_open:.2f} patients a day could "
+        f"not be given one, by the list {by_name:.2f}. About {percent(seems)} of such cases seem to be written down, "
+        f"where {share_text(share)} was assumed: if so, demand is higher."
+    )
+    return [said]

@@ -28,12 +28,12 @@ def methods(found: HiddenDemand) -> pd.DataFrame:
     """Return a row a method: its answer with the range, or why it can't tell."""
     rows = [
         {
-            "Method": figure.method.capitalize(),
-            "Patients a day": "can't tell" if figure.arrivals_per_day is None else f"{figure.arrivals_per_day:.2f}",
-            "Range": "" if figure.arrivals_per_day is None else f"{figure.low:.2f} to {figure.high:.2f}",
-            "Why": wording.plain(figure.sentence),
+            "Method": method.name[0].upper() + method.name[1:],
+            "Patients a day": f"{method.patients_per_day:.2f}" if method.used else "can't tell",
+            "Range": "{:.2f} to {:.2f}".format(*method.interval) if method.used else "",
+            "Why": wording.plain(method.reason),
         }
-        for figure in found.figures
+        for method in found.methods
     ]
     return pd.DataFrame(rows).set_index("Method")
 
@@ -46,7 +46,7 @@ def show(name: str) -> None:
     st.vega_lite_chart(charts.live(charts.STEPS, steps), theme=None, width="stretch", alt=headline(found))
     low, high = found.spread
     st.markdown(
-        f"**{found.arrivals_per_day:.2f} patients a day wanted this ward; {found.admitted_per_day:.2f} were admitted.** "
+        f"**{found.demand_per_day:.2f} patients a day wanted this ward; {found.admitted_per_day:.2f} were admitted.** "
         f"Read from {found.method}; across all methods {low:.2f} to {high:.2f} a day."
     )
     st.table(methods(found))

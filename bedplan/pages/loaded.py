@@ -18,7 +18,6 @@ from bedplan.data import (
     Census,
     EventLog,
     Records,
-    Unmet,
     backtest,
     describe_ward,
     estimate_demand,
@@ -122,8 +121,11 @@ def description(name: str) -> WardDescription:
 def hidden(name: str) -> HiddenDemand:
     """Return the demand a ward's records do not show."""
     here, share = files(), recorded_share(name)
-    unmet = Unmet(here.refusals, share, here.cancellations)
-    return _once(("hidden", name, f"{share:.2f}"), lambda: hidden_demand(here.records, name, here.capacity, unmet))
+    lists = tuple(one for one in (here.refusals, here.cancellations) if one is not None)
+    return _once(
+        ("hidden", name, f"{share:.2f}"),
+        lambda: hidden_demand(here.records, name, capacity=here.capacity, refusals=lists, share_recorded=share),
+    )
 
 
 def checked(name: str) -> Backtest:
