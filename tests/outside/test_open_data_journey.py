@@ -2,8 +2,8 @@
 
 Stays in whole days. Source: Medicare files of Arizona, 1991, in the R package COUNT (azpro, medpar, azdrg112,
 azcabgptca); Hilbe, Negative Binomial Regression, 2nd edition 2011. The data hold no dates, so these are laid on: the
-stays of a place arrive in file order, evenly through 2023, each at 10:00, and leave at 10:00 after their whole days. That
-makes one year of each table; loads, beds and shares below were worked out from it by Erlang's recursion.
+stays of a place arrive in file order, evenly through 2023 from 1 January 00:00, and leave at the same time of day after
+their whole days. That makes one year of each table; loads, beds and shares below were worked out from it by Erlang's recursion.
 """
 
 from __future__ import annotations
@@ -30,7 +30,7 @@ if TYPE_CHECKING:
     from bedplan.data import Records
 
 DAYS = 365
-FIRST = dt.datetime(2023, 1, 1, 10)  # noqa: DTZ001  records hold local clock times
+FIRST = dt.datetime(2023, 1, 1)  # noqa: DTZ001  records hold local clock times
 HEADINGS = "Location,In,Out"
 
 # table: (stays, bed-days ÷ 365, beds at 85 %, share turned away there, beds for 1 %, 5 % and 0.1 % turned away)
@@ -56,7 +56,7 @@ def rows_of(place: str, stays: Iterable[int]) -> list[str]:
     whole_days = list(stays)
     rows = []
     for number, days in enumerate(whole_days):
-        came = FIRST + dt.timedelta(days=number * DAYS // len(whole_days))
+        came = FIRST + dt.timedelta(minutes=number * DAYS * 24 * 60 // len(whole_days))
         rows.append(f"{place},{came:%Y-%m-%d %H:%M},{came + dt.timedelta(days=int(days)):%Y-%m-%d %H:%M}")
     return rows
 
