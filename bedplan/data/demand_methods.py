@@ -57,7 +57,9 @@ def by_list(evidence: Evidence, logs: tuple[EventLog, ...], share: Range) -> Dem
     found = [_not_given(evidence, log, share if log.kind == "refusals" else (1.0, 1.0)) for log in logs]
     not_given, variance = (sum(part) for part in zip(*found, strict=True))
     if not_given == 0:
-        return not_used(LIST, f"{names} has nobody for {ward}: either nobody was sent away, or nobody noted it.")
+        return not_used(
+            LIST, f"Nobody is listed for {ward} in {names}: either nobody was sent away, or nobody noted it."
+        )
     listed = sum(listed_per_day(evidence, log)[0] for log in logs)
     stands = f", which stand for {not_given:.2f} if {share_text(share)} are written down" if not_given > listed else ""
     reason = (
