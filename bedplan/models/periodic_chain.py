@@ -32,9 +32,11 @@ _POLE = 2.0 + 1j * np.sqrt(2.0)
 _AT_END = (1.0 + _POLE / 3.0) * 6.0 / (2j * _POLE.imag)
 _IN_HOUR = (1.0 - _POLE / 6.0) * 6.0 / (2j * _POLE.imag)
 _COARSE_STEPS = 7
-_FASTEST_LEAVING = 20.0
+_FASTEST_LEAVING = 500.0
+_LEAVING_A_PART = 2.0
 _SETTLED = 3e-4
 _MOST_PARTS = 4
+_MOST_LEAVING_PARTS = 8
 
 
 class Group(NamedTuple):
@@ -85,7 +87,8 @@ def leaving_rates(rhythm: Rhythm) -> Array:
         excess = before * left + coming * came + half - after
         fall = -before * left + coming * slope - half / 2.0
         rate = np.clip(rate - excess / np.minimum(fall, -1e-12), 0.0, _FASTEST_LEAVING)
-    return rate
+    # Where nobody is left, whoever rounding left behind goes too.
+    return np.where(before + coming + booked < 1e-9, _FASTEST_LEAVING, rate)
 
 
 class _Wards:
@@ -206,7 +209,8 @@ def _one_hour(
 ) -> Array:
     """Carry the wards through one hour, booked groups spread over it, and note how full they were."""
     patients = sum(group.patients for group in groups)
-    parts = min(patients, _MOST_PARTS) or 1
+    hurried = int(min(rates[1].max() / _LEAVING_A_PART, _MOST_LEAVING_PARTS))
+    parts = max(min(patients, _MOST_PARTS), hurried, 1)
     coming, leaving = (rate / parts / (2 if groups else 1) for rate in rates)
     for part in range(parts):
         state, full = wards.step(state, coming, leaving)

@@ -30,24 +30,24 @@ if TYPE_CHECKING:
 LARGEST_CORRECTED_LOAD = 1_500.0
 _LARGE_LOAD = 150.0
 _STATES_IN_ALL = 2_600
-_FEWEST_COUNTS, _MOST_COUNTS = 8, 14
+_FEWEST_COUNTS, _COUNTS_OF_POLYNOMIAL, _MOST_COUNTS = 8, 14, 40
 _FINE = 257
 _STEP_HOURS = 24
 _TOO_FEW_TO_COMPARE = 1e-8
 
 
 class Correction(NamedTuple):
-    """Natural logarithms of chain ÷ first cut, on ``spare`` ``(levels, fine)``, an even grid of u for each level.
+    """Natural logarithms of chain ÷ first cut, at points ``spare[level]`` of u for each level of demand.
 
     ``levels`` of unbooked demand, 1 = the year's mean; ``loads`` (unbooked at level 1, booked); ``unbooked`` and
-    ``booked`` are ``(weekdays or months, levels, fine)``.
+    ``booked`` for each level ``(weekdays or months, points)``.
     """
 
     levels: Array
     loads: tuple[float, float]
-    spare: Array
-    unbooked: Array
-    booked: Array
+    spare: list[Array]
+    unbooked: list[Array]
+    booked: list[Array]
 
     def factors(self, levels: Array, counts: NDArray[np.int64], part: NDArray[np.int64]) -> tuple[Array, Array]:
         """By which factors does the first cut grow at these levels, ``(k, groups)``?
@@ -60,15 +60,15 @@ class Correction(NamedTuple):
         load = np.maximum(inside * self.loads[0] + self.loads[1], 1e-9)[..., None]
         spare = (counts - load) / np.sqrt(load)
         # Below the fewest beds worked out, down to no beds, where both are 1.
-        taper = np.clip(counts / np.maximum(load + self.spare[:, 0].max() * np.sqrt(load), 1.0), 0.0, 1.0)
+        first = load + max(grid[0] for grid in self.spare) * np.sqrt(load)
+        taper = np.clip(counts / np.maximum(first, 1.0), 0.0, 1.0)
         found = []
         for logs in (self.unbooked, self.booked)[: 2 if self.loads[1] else 1]:
             total = np.zeros(spare.shape)
-            for one in range(logs.shape[0]):
-                here = part == one
-                for level, grid in enumerate(self.spare):
-                    read = np.interp(spare[:, here], grid, logs[one, level])
-                    total[:, here] += by_level[:, here, level, None] * read
+            for level, (grid, rows) in enumerate(zip(self.spare, logs, strict=True)):
+                for one, row in enumerate(rows):
+                    here = part == one
+                    total[:, here] += by_level[:, here, level, None] * np.interp(spare[:, here], grid, row)
             found.append(np.exp(total * taper))
         return found[0], found[-1]
 
@@ -94,13 +94,15 @@ def _levels(low: float, high: float) -> Array:
     return np.exp(_spread(np.log(low), np.log(high), 2 if high / low < 1.05 else 3))
 
 
-def _counts(loads: Array, levels: int) -> NDArray[np.int64]:
+def _counts(loads: Array, levels: int, most_counts: int) -> NDArray[np.int64]:
     """Return the bed counts to work out at one level, up to where hardly anybody is turned away; ``loads`` ``(168,)``."""
     most = int(np.ceil(loads.max() + 3.8 * np.sqrt(loads.max()) + 3.0))
     fewest = max(1, int(0.6 * loads.mean())) if loads.max() > _LARGE_LOAD else 1
     middle = np.array([(fewest + most) // 2])
     states = middle - lowest_count(np.full(1, loads.min()), middle) + 1
-    count = int(np.clip(_STATES_IN_ALL / states[0] / levels, _FEWEST_COUNTS, _MOST_COUNTS))
+    count = int(np.clip(_STATES_IN_ALL / states[0] / levels, _FEWEST_COUNTS, most_counts))
+    if most - fewest < count:
+        return np.arange(fewest, most + 1)
     return np.unique(np.round(_spread(fewest, most, count)).astype(np.int64))
 
 
@@ -121,29 +123,39 @@ def _log_ratio(chain: Array, first_cut: Array, patients: Array, part: NDArray[np
     """
     of_part = (part == np.arange(part.max() + 1)[:, None]) * patients
     chain, first_cut = of_part @ chain, of_part @ first_cut
-    enough = np.minimum(chain, first_cut) > _TOO_FEW_TO_COMPARE * np.maximum(first_cut[:, :1], 1e-300)
-    logs = np.log(np.where(enough, chain, 1.0) / np.where(enough, first_cut, 1.0))
+    least = _TOO_FEW_TO_COMPARE * np.maximum(of_part.sum(axis=1, keepdims=True), 1e-300)
+    enough = first_cut > least
+    logs = np.log(np.where(enough, np.maximum(chain, 1e-3 * least), 1.0) / np.where(enough, first_cut, 1.0))
     for place in range(1, logs.shape[1]):
         logs[:, place] = np.where(enough[:, place], logs[:, place], logs[:, place - 1])
     return logs
 
 
-def _compared(rhythm: Rhythm, patients: tuple[Array, Array], loads: Array, part: NDArray[np.int64]) -> list[Array]:
-    """Compare chain and first cut: the grids of spare beds, and the logarithms for unbooked and booked patients."""
+def _compared(
+    rhythm: Rhythm, patients: tuple[Array, Array], loads: Array, part: NDArray[np.int64]
+) -> list[list[Array]]:
+    """Compare chain and first cut: the points of spare beds, and the logarithms for unbooked and booked patients.
+
+    A polynomial joins the bed counts worked out, unless booked lists, which can put a kink at a bed count, or few
+    beds ask for many counts and straight lines.
+    """
     levels = loads.shape[1]
-    beds = [_counts(loads[:, level], levels) for level in range(levels)]
+    most_counts = _MOST_COUNTS if rhythm.booked else _COUNTS_OF_POLYNOMIAL
+    beds = [_counts(loads[:, level], levels, most_counts) for level in range(levels)]
     chain = fullness(rhythm, beds)
-    spare = np.empty((levels, _FINE))
-    logs = np.empty((2, part.max() + 1, levels, _FINE))
+    found: list[list[Array]] = [[], [], []]
     for level, counts in enumerate(beds):
         first_cut = erlang_b_table(loads[:, level], counts).T
         load = loads[:, level].mean()
-        nodes = (counts - load) / np.sqrt(load)
-        spare[level] = np.linspace(nodes[0], nodes[-1], _FINE)
-        weights = between(nodes, spare[level])
+        points = (counts - load) / np.sqrt(load)
+        weights = np.eye(points.size)
+        if not rhythm.booked and counts[-1] - counts[0] >= counts.size:
+            fine = np.linspace(points[0], points[-1], _FINE)
+            points, weights = fine, between(points, fine)
+        found[0].append(points)
         for kind, full in enumerate((chain.unbooked[level], chain.booked[level])):
-            logs[kind, :, level] = _log_ratio(full, first_cut, patients[kind], part) @ weights.T
-    return [spare, logs[0], logs[1]]
+            found[1 + kind].append(_log_ratio(full, first_cut, patients[kind], part) @ weights.T)
+    return found
 
 
 def _has_rhythm(demand: Demand, week: Week) -> bool:

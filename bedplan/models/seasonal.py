@@ -9,7 +9,7 @@ import numpy as np
 from bedplan.models.bed_curve import BedCurve, bed_counts
 from bedplan.models.clusters import loss_table, peakedness
 from bedplan.models.load_grid import load_grid
-from bedplan.models.rhythm_correction import rhythm_correction, season_correction
+from bedplan.models.rhythm_correction import LARGEST_CORRECTED_LOAD, rhythm_correction, season_correction
 from bedplan.models.uncertain_rate import possible_rates
 from bedplan.models.year import (
     WEEKS,
@@ -100,6 +100,12 @@ def _notes(demand: Demand) -> tuple[str, ...]:
             "exponential stays; with other stays at most 2 % of the figure too low and 4 % too high in all trials."
         )
     ]
+    if demand.offered_load > LARGEST_CORRECTED_LOAD and not demand.is_steady:
+        large = (
+            f"Above {LARGEST_CORRECTED_LOAD:,.0f} beds wanted only the load of each hour counts, not who was let in "
+            "before: with a weekly rhythm the figure may be up to half too low."
+        )
+        notes = [large]
     if demand.clustering > 1:
         notes.append(
             "Patients who come together: with a weekly rhythm as well, up to a tenth of the figure too high, not too low."

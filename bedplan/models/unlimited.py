@@ -32,6 +32,7 @@ _GROUPS = 12 * 7
 _GROUP_OF_HOUR = month_of_hour * 7 + weekday_of_hour
 _MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 _BUSY = 0.05
+_MOST_COUNTS = 2_000
 
 
 def _mean_over(shares: Array, weights: Array, by: Counts, groups: int) -> Array:
@@ -122,6 +123,13 @@ class BusyLevels:
     by_month: Levels
 
 
+def _at_all(counts: Counts, some: Counts, chances: Array) -> Array:
+    """Read chances known at some counts, ``(g, m)``, at all of them."""
+    if some.size == counts.size:
+        return chances
+    return np.stack([np.interp(counts, some, row) for row in chances])
+
+
 def busy_levels(demand: Demand) -> BusyLevels:
     """How many beds are wanted on a usual and on a busy (1 in 20) hour: by hour, weekday, hour of the week and month?
 
@@ -135,11 +143,13 @@ def busy_levels(demand: Demand) -> BusyLevels:
     room = 10.0 * np.sqrt(highest * max(1.0, demand.clustering)) + 10.0 * demand.clustering + 10.0
     lowest = max(0, int(load.min() * max(0.0, 1.0 - 4.0 * demand.rate_variation) - room))
     counts = np.arange(lowest, int(highest + room) + 1)
+    # In very large wards the chances are read between a few thousand counts.
+    some = np.unique(np.linspace(counts[0], counts[-1], min(counts.size, _MOST_COUNTS)).astype(np.int64))
     hour_of_week = np.arange(HOURS_A_YEAR) % HOURS_A_WEEK
     evenly = np.ones(HOURS_A_YEAR)
-    week = chance_of(demand, counts, Watch(evenly, hour_of_week))
+    week = _at_all(counts, some, chance_of(demand, some, Watch(evenly, hour_of_week)))
     mean_of_week = load.reshape(WEEKS, HOURS_A_WEEK).mean(axis=0)
-    months = chance_of(demand, counts, Watch(evenly, month_of_hour))
+    months = _at_all(counts, some, chance_of(demand, some, Watch(evenly, month_of_hour)))
     mean_of_month = np.bincount(month_of_hour, weights=load) / np.bincount(month_of_hour)
 
     def levels(mean: Array, chances: Array) -> Levels:
