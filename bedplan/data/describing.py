@@ -97,7 +97,7 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
     starts = (stays["start"] >= records.window[0]) & (stays["start"] < records.window[1])
     days_used = float(bed_days(records, stays).sum())
     known = capacity if capacity is not None and ward in capacity.wards else None
-    full = None if known is None else full_times(records, ward, counts, known)
+    full = None if known is None else full_times(records, ward, present(records, stays, 60), known)
     turnover = throughput = None
     if full is not None and len(finished) and full.available_bed_days > 0:
         turnover = (full.available_bed_days - days_used) / len(finished)
@@ -126,30 +126,32 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
     )
 
 
-def full_times(records: Records, ward: str, counts: NDArray[np.int32], capacity: Capacity) -> FullTimes:
-    """When had this ward no free bed, hour by hour? ``counts`` (hours,) patients present.
+def full_times(records: Records, ward: str, minutes: NDArray[np.int32], capacity: Capacity) -> FullTimes:
+    """When had this ward no free bed? ``minutes``: patients present each minute of the window.
 
-    Beds closed on a day are not beds that day; hours of days with no open bed at all are left out.
+    By the minute, because beds change hands on the hour. Beds closed on a day are not beds that day; hours of days with
+    no open bed at all are left out.
     """
     beds = open_beds(records, ward, capacity, 24)
     use = np.repeat(records.counted_days, 24) & (beds > 0)
-    hours = pd.date_range(records.window[0], periods=counts.size, freq="h")
-    is_full = counts >= beds
+    hours = pd.date_range(records.window[0], periods=beds.size, freq="h")
+    by_hour = minutes.reshape(-1, 60)
+    full = (by_hour >= beds[:, None]).mean(axis=1)
+    over_full = (by_hour > beds[:, None]).mean(axis=1)
     week = hours.day_of_week.to_numpy() * 24 + hours.hour.to_numpy()
-    shares = _shares(week[use], is_full[use], 168).reshape(7, 24)
     return FullTimes(
-        share=float(is_full[use].mean()) if use.any() else 0.0,
-        by_month=_shares(hours.month.to_numpy()[use] - 1, is_full[use], 12),
-        by_weekday_and_hour=shares,
-        over_full_share=float((counts > beds)[use].mean()) if use.any() else 0.0,
-        occupancy=float(counts[use].sum() / beds[use].sum()) if use.any() else 0.0,
+        share=float(full[use].mean()) if use.any() else 0.0,
+        by_month=_shares(hours.month.to_numpy()[use] - 1, full[use], 12),
+        by_weekday_and_hour=_shares(week[use], full[use], 168).reshape(7, 24),
+        over_full_share=float(over_full[use].mean()) if use.any() else 0.0,
+        occupancy=float(by_hour[use].sum() / 60.0 / beds[use].sum()) if use.any() else 0.0,
         available_bed_days=float(beds[use].sum()) / 24.0,
     )
 
 
-def _shares(group: NDArray[np.int64], true: NDArray[np.bool_], groups: int) -> NDArray[np.float64]:
-    """Return the share of each group's hours for which something holds; 0 where a group has none."""
-    return np.bincount(group, weights=true, minlength=groups) / np.maximum(np.bincount(group, minlength=groups), 1)
+def _shares(group: NDArray[np.int64], part: NDArray[np.float64], groups: int) -> NDArray[np.float64]:
+    """Return the mean part of each group's hours for which something holds; 0 where a group has none."""
+    return np.bincount(group, weights=part, minlength=groups) / np.maximum(np.bincount(group, minlength=groups), 1)
 
 
 def variance_over_mean(counts: NDArray[np.float64]) -> float:
