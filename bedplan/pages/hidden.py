@@ -67,14 +67,14 @@ controls.show_origin()
 ward_name = controls.choose_ward()
 with st.sidebar:
     share = st.slider(
-        "Refusals that get written down",
+        "Patients not given a bed: share written down",
         10,
         100,
         round(100 * loaded.recorded_share(ward_name)),
         5,
         format="%d %%",
         key=f"recorded_{ward_name}",
-        help="How many of ten patients who could not be given a bed are in the refusals file?",
+        help="How many of a hundred patients who could not be given a bed here are in the file of refusals?",
     )
     loaded.use_recorded_share(ward_name, share / 100)
 try:
