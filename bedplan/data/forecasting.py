@@ -1,134 +1,293 @@
-"""How many patients will come next year: trend, season and weekday, with the width of past errors."""
+"""Next year, and up to ten: how many patients will come, how many bed-days they will use, and how far that may be off."""
 
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
+from scipy import special
 
-from bedplan.data.arrivals import Arrivals, arrivals_of
-from bedplan.data.projecting import as_of, expected_arrivals, steady_growth
-from bedplan.data.stays import stays_in_window
+from bedplan import wording
+from bedplan.data.chances import at_most, count_at
+from bedplan.data.dates import DAY_SECONDS
+from bedplan.data.outlook import (
+    FEWEST_PAST_FORECASTS,
+    NAIVE,
+    REGRESSION,
+    SPECTRUM,
+    Choice,
+    DailyCounts,
+    Outlook,
+    forecast_from,
+    look_ahead,
+    past_origins,
+)
+from bedplan.data.readings import take_readings
+from bedplan.data.rhythm import LEAST_DAYS_FOR_GROWTH, LEAST_DAYS_FOR_SEASON
+from bedplan.data.stay_bands import StayBand, fit_stay_bands, growth_of_bed_days
+from bedplan.errors import ImpossibleFigure
 
 if TYPE_CHECKING:
-    from numpy.typing import NDArray
+    import datetime as dt
+
+    from numpy.typing import ArrayLike, NDArray
 
     from bedplan.data.records import Records
 
-YEAR = 365
-NORMAL = {80: 1.2816, 95: 1.9600}  # standard normal: the middle 80 % and 95 %
+    Array = NDArray[np.float64]
+    Range = tuple[float, float]
+
+YEAR_DAYS = 365
+MOST_DAYS = 3_653
+LEAST_DAYS, FEWEST_PATIENTS = 56, 50
+LEVELS = (0.80, 0.95)
+EPOCH = pd.Timestamp("1970-01-01")
+AS_BEFORE = "It goes on as before: no new service, no new rule and no change among neighbours is foreseen."
+ADMISSIONS = (
+    "Admissions are foreseen, as the records hold them. Patients who found no bed are not among them; add the demand "
+    "that the records hide before planning beds on this."
+)
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, slots=True)
+class YearAhead:
+    """One year ahead: admissions and bed-days, with the ranges that hold 80 % and 95 %.
+
+    Bed-days are 0 where only counts were given.
+    """
+
+    first_day: pd.Timestamp
+    admissions: float
+    admissions_80: Range
+    admissions_95: Range
+    bed_days: float = 0.0
+    bed_days_80: Range = (0.0, 0.0)
+    bed_days_95: Range = (0.0, 0.0)
+
+    @property
+    def beds_in_use(self) -> float:
+        """How many beds are in use on average in this year?"""
+        return self.bed_days / YEAR_DAYS
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class Forecast:
-    """Arrivals of the year after the file's window.
+    """What is expected to come, day by day, and how far it may be off.
 
-    ``months``: start, days, expected, low_80, high_80, low_95, high_95, last_year (the same days a year before).
-    ``per_year`` is (low, central, high), low and high the 80 % band of the whole year. ``change`` is the same as a
-    share of the latest year. ``growth_per_year`` is what chance leaves of the measured growth. ``past_error``: SD ÷
-    mean of past forecasts beyond chance, None where the file is too short to have any. ``errors``: mean absolute error
-    of monthly totals of the past year as a share, "model" and "last year".
-
-    Checked by: tests/data/test_forecasting.py
+    ``expected`` (h,) a day from ``first_day`` on; ``variance_of_rate`` (h,) variance ÷ square of that rate, from how
+    wrong past forecasts were; ``swing`` variance ÷ mean of a day's count. ``method`` and ``why``: which method is used
+    and how it did. ``errors``: mean miss of weekly totals of past forecasts, by method. ``years``: whole years of 365
+    days. ``stay_bands``: how bed-days grow by days already stayed; empty where only counts were given.
     """
 
     ward: str
-    months: pd.DataFrame
-    per_year: tuple[float, float, float]
-    change: tuple[float, float, float]
+    first_day: pd.Timestamp
+    expected: Array
+    variance_of_rate: Array
+    swing: float
     growth_per_year: float
-    past_error: float | None
-    errors: dict[str, float]
+    growth_error: float
     method: str
+    why: str
+    errors: dict[str, float]
+    last_year: float
+    years: tuple[YearAhead, ...]
+    stay_bands: tuple[StayBand, ...]
     notes: tuple[str, ...]
 
+    @property
+    def growth_range(self) -> Range:
+        """Between which shares does growth a year lie? 95 %."""
+        off = _width(0.95) * self.growth_error
+        return self.growth_per_year - off, self.growth_per_year + off
 
-def forecast_arrivals(records: Records, ward: str) -> Forecast:
-    """How many patients will come to this ward in the year after its records, if it goes on as before?
+    @property
+    def bed_days_growth_per_year(self) -> float:
+        """By which share do bed-days grow each year, every stay band by its own growth?"""
+        return growth_of_bed_days(self.stay_bands)[0]
 
-    Level, growth, months and weekdays by one Poisson regression; the bands hold chance, drift, and what forecasts of
-    the past year were off by (where there are two years or more), else what level and growth may be off by.
+    @property
+    def per_year(self) -> tuple[float, float, float]:
+        """How many come in the first year: low, central, high? Low and high hold 80 %; the days foreseen if fewer."""
+        low, high = self.range_of(slice(0, YEAR_DAYS), 0.80)
+        return low, float(self.expected[:YEAR_DAYS].sum()), high
+
+    @property
+    def change(self) -> tuple[float, ...]:
+        """The same as shares of the last 12 months: low, central, high. Only for a forecast of a year or more."""
+        return tuple(one / max(self.last_year, 1e-9) - 1.0 for one in self.per_year)
+
+    def band(self, level: float) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+        """Between which counts does each day lie, with a chance of ``level`` or a little more? Two ``(h,)``."""
+        swing = self.swing + self.expected * self.variance_of_rate
+        top = math.ceil(float((self.expected + 10.0 * np.sqrt(self.expected * swing)).max())) + 10
+        chances = at_most(self.expected, swing, top)
+        return count_at(chances, (1.0 - level) / 2.0), count_at(chances, (1.0 + level) / 2.0)
+
+    def range_of(self, days: slice, level: float) -> Range:
+        """Between which totals do these days lie, with a chance of ``level``?"""
+        total = float(self.expected[days].sum())
+        return _range(total, self.swing / max(total, 1e-9) + float(self.variance_of_rate[days].mean()), level)
+
+    @property
+    def months(self) -> pd.DataFrame:
+        """What comes in each calendar month? start, days, expected, low_80, high_80, low_95, high_95."""
+        calendar = pd.date_range(self.first_day, periods=self.expected.size)
+        place = (calendar.year.to_numpy() - calendar[0].year) * 12 + calendar.month.to_numpy() - calendar[0].month
+        bounds = np.searchsorted(place, np.arange(place[-1] + 2))
+        rows = []
+        for begin, end in pairwise(bounds):
+            part = slice(int(begin), int(end))
+            ranges = [edge for level in LEVELS for edge in self.range_of(part, level)]
+            rows.append((calendar[begin], end - begin, float(self.expected[part].sum()), *ranges))
+        return pd.DataFrame(rows, columns=["start", "days", "expected", "low_80", "high_80", "low_95", "high_95"])
+
+
+def forecast_arrivals(records: Records, ward: str, *, horizon_days: int = YEAR_DAYS) -> Forecast:
+    """How many patients will come to this ward in the days after its records, and how many bed-days will they use?
+
+    Growth is carried to bed-days by how long patients have been in, not by heads: one more patient in the long tail
+    takes more beds than ten who leave next day. Excluded days are left out, and days before the ward's first patient.
 
     Raises:
-        UnreadableRecords: no stays on the ward.
+        UnreadableRecords: the file has no such ward.
+        ImpossibleFigure: a horizon outside 1 to 3,653 days, or too few days or patients to look ahead from.
 
     Checked by: tests/data/test_forecasting.py
     """
-    arrivals = arrivals_of(records, stays_in_window(records, ward)["start"])
-    ahead = pd.date_range(records.window[1], periods=YEAR, freq="D")
-    expected = expected_arrivals(arrivals, ahead)
-    past_error, errors = _past_errors(records, ward, arrivals)
-    spread = _level_error(arrivals) if past_error is None else max(past_error, _level_error(arrivals))
-    months = _months(ahead, expected, arrivals, spread)
-    total = float(expected.sum())
-    off = NORMAL[80] * math.sqrt(max(arrivals.swing.dispersion, 1.0) * total + (total * spread) ** 2)
-    per_year = (max(total - off, 0.0), total, total + off)
-    latest = max(arrivals.per_year, 1e-9)
-    notes = ["It goes on as before: no new service, no new rule and no change among neighbours is foreseen."]
-    if past_error is None:
-        notes.append("The file is too short to look at past forecasts; the bands come from the file's own swing.")
-    if not arrivals.rhythm.has_season:
+    stays = records.of_ward(ward)
+    first = int(records.window[0].timestamp())
+    start = stays["start"].to_numpy().astype("datetime64[s]").astype(np.int64)
+    place = (start - first) // DAY_SECONDS
+    inside = place[(place >= 0) & (place < records.days)]
+    counted = records.counted_days.copy()
+    counted[: max(int(place.min()), 0)] = False
+    counts = np.bincount(inside, minlength=records.days).astype(float)
+    forecast = _forecast(DailyCounts(first // DAY_SECONDS, counts, counted), horizon_days)
+    readings = take_readings(records, ward)
+    bands = fit_stay_bands(readings, readings.days, forecast.growth_per_year)
+    years = tuple(_with_bed_days(year, place, bands, forecast) for place, year in enumerate(forecast.years))
+    return replace(forecast, ward=ward, stay_bands=bands, years=years, notes=(ADMISSIONS, *forecast.notes))
+
+
+def forecast_counts(
+    counts: ArrayLike, first_day: dt.date, *, horizon_days: int = YEAR_DAYS, counted: ArrayLike | None = None
+) -> Forecast:
+    """How does a plain series of daily counts (n,) from ``first_day`` on go on? ``counted`` (n,): which days count.
+
+    Two methods are tried on the series' own past, every four weeks: a regression on trend, season and weekday, and
+    singular spectrum analysis, which is used only where it was nearer. Both are held against the same week last year.
+
+    Raises:
+        ImpossibleFigure: as for :func:`forecast_arrivals`.
+
+    Checked by: tests/data/test_forecasting.py
+    """
+    numbers = np.asarray(counts, dtype=float)
+    use = np.ones(numbers.size, dtype=bool) if counted is None else np.asarray(counted, dtype=bool)
+    return _forecast(DailyCounts((pd.Timestamp(first_day) - EPOCH).days, numbers, use), horizon_days)
+
+
+def _forecast(series: DailyCounts, horizon_days: int) -> Forecast:
+    """Look ahead from the end of a series."""
+    if not 1 <= horizon_days <= MOST_DAYS:
+        raise ImpossibleFigure(f"A forecast of {horizon_days:,} days is not possible: give 1 to {MOST_DAYS:,} days.")
+    days, patients = int(series.counted.sum()), float(series.counts[series.counted].sum())
+    if days < LEAST_DAYS or patients < FEWEST_PATIENTS:
+        raise ImpossibleFigure(
+            f"{patients:,.0f} patients in {days:,} days are too few to look ahead from: "
+            f"{FEWEST_PATIENTS} in {LEAST_DAYS} days are needed."
+        )
+    past = [forecast_from(series, place, YEAR_DAYS) for place in past_origins(series)]
+    outlook = look_ahead(series, series.counts.size, horizon_days, past)
+    latest = series.counts[-YEAR_DAYS:][series.counted[-YEAR_DAYS:]]
+    forecast = Forecast(
+        ward="",
+        first_day=EPOCH + pd.Timedelta(days=series.first_day + series.counts.size),
+        expected=outlook.expected,
+        variance_of_rate=outlook.variance_of_rate,
+        swing=max(outlook.trend.swing.clustering, 0.02),
+        growth_per_year=outlook.trend.growth_per_year,
+        growth_error=outlook.trend.growth_error,
+        method=outlook.choice.method,
+        why=_why(outlook.choice),
+        errors={name: error for name, error in outlook.choice.errors.items() if math.isfinite(error)},
+        last_year=float(latest.mean()) * YEAR_DAYS if latest.size else 0.0,
+        years=(),
+        stay_bands=(),
+        notes=tuple(_notes(outlook, days)),
+    )
+    return replace(forecast, years=tuple(_years(forecast)))
+
+
+def _years(forecast: Forecast) -> list[YearAhead]:
+    """Return the whole years ahead."""
+    years = []
+    for number in range(forecast.expected.size // YEAR_DAYS):
+        days = slice(number * YEAR_DAYS, (number + 1) * YEAR_DAYS)
+        ranges = [forecast.range_of(days, level) for level in LEVELS]
+        first = forecast.first_day + pd.Timedelta(days=days.start)
+        years.append(YearAhead(first, float(forecast.expected[days].sum()), *ranges))
+    return years
+
+
+def _with_bed_days(year: YearAhead, number: int, bands: tuple[StayBand, ...], forecast: Forecast) -> YearAhead:
+    """Return a year with its bed-days: every stay band by its own trend; as unsure as arrivals, and as its stays."""
+    place = slice(number * YEAR_DAYS, (number + 1) * YEAR_DAYS)
+    days = (forecast.first_day - EPOCH).days + np.arange(place.start, place.stop)
+    by_band = [float(band.trend.expected(days).sum()) for band in bands]
+    off = [float(band.trend.variance_of_rate(days).mean()) for band in bands]
+    total = math.fsum(by_band)
+    unsure = math.fsum(beds**2 * error for beds, error in zip(by_band, off, strict=True)) / max(total, 1e-9) ** 2
+    variance = unsure + float(forecast.variance_of_rate[place].mean())
+    ranges = {f"bed_days_{100 * level:.0f}": _range(total, variance, level) for level in LEVELS}
+    return replace(year, bed_days=total, **ranges)
+
+
+def _width(level: float) -> float:
+    """Return how many standard deviations each way hold this share of a normal quantity."""
+    return float(special.ndtri((1.0 + level) / 2.0))
+
+
+def _range(total: float, variance: float, level: float) -> Range:
+    """Return what holds a total with this chance: a gamma quantity of this mean and relative variance."""
+    if total <= 0 or variance <= 0:
+        return total, total
+    low, high = (special.gammaincinv(1.0 / variance, share) for share in ((1.0 - level) / 2.0, (1.0 + level) / 2.0))
+    return total * variance * float(low), total * variance * float(high)
+
+
+def _why(choice: Choice) -> str:
+    """Say which method is used and how it did against the others."""
+    if choice.forecasts < FEWEST_PAST_FORECASTS:
+        return f"{choice.method.capitalize()}: the records are too short to try others on their own past."
+    used, naive = choice.errors[choice.method], choice.errors[NAIVE]
+    other = choice.errors[SPECTRUM if choice.method == REGRESSION else REGRESSION]
+    name = SPECTRUM if choice.method == REGRESSION else REGRESSION
+    against = "less" if used < naive else "more"
+    share = wording.percent(abs(1.0 - used / naive)) if naive > 0 else "0"
+    return (
+        f"{choice.method.capitalize()}: in {choice.forecasts} forecasts of past days it missed a week's patients by "
+        f"{used:.1f} on average, {share} {against} than the same week last year ({naive:.1f}); {name} missed by {other:.1f}."
+    )
+
+
+def _notes(outlook: Outlook, days: int) -> list[str]:
+    """Return what belongs beside the forecast."""
+    notes = [AS_BEFORE]
+    if days < LEAST_DAYS_FOR_SEASON:
         notes.append("Too few days to tell the seasons: every month is taken as average.")
-    return Forecast(
-        ward=ward,
-        months=months,
-        per_year=per_year,
-        change=tuple(one / latest - 1.0 for one in per_year),
-        growth_per_year=steady_growth(arrivals),
-        past_error=past_error,
-        errors=errors,
-        method="Poisson regression on growth, month and weekday; growth drawn towards none by what chance explains.",
-        notes=tuple(notes),
-    )
-
-
-def _level_error(arrivals: Arrivals) -> float:
-    """Return what level and growth may be off by in a year's time, as a share."""
-    growth = arrivals.rhythm.growth_error * math.sqrt(max(arrivals.swing.dispersion, 1.0))
-    return math.hypot(max(arrivals.worth, 1.0) ** -0.5, growth, arrivals.swing.rate_variation or 0.0)
-
-
-def _past_errors(records: Records, ward: str, arrivals: Arrivals) -> tuple[float | None, dict[str, float]]:
-    """Forecast the file's last year from what was known before it; return the error beyond chance, and both methods'."""
-    if records.days < 2 * YEAR:
-        return None, {}
-    known = as_of(records, records.window[1] - pd.Timedelta(days=YEAR))
-    stays = known.of_ward(ward) if ward in known.by_ward else None
-    if stays is None or stays.empty:
-        return None, {}
-    days = records.calendar[-YEAR:]
-    expected = _by_month(days, expected_arrivals(arrivals_of(known, stays["start"]), days))
-    came = _by_month(days, arrivals.counts[-YEAR:])
-    before = _by_month(
-        days, arrivals.counts[-YEAR - 364 : -364] if records.days >= YEAR + 364 else arrivals.counts[:YEAR]
-    )
-    relative = ((came - expected) ** 2 - came) / np.maximum(expected, 1.0) ** 2
-    errors = {
-        name: float(np.abs(came - one).sum() / max(came.sum(), 1.0))
-        for name, one in (("model", expected), ("last year", before))
-    }
-    return math.sqrt(max(float(relative.mean()), 0.0)), errors
-
-
-def _by_month(days: pd.DatetimeIndex, figures: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Return totals of calendar months, in the order of the days."""
-    place = (days.year - days[0].year).to_numpy() * 12 + days.month.to_numpy()
-    return np.bincount(place - place[0], weights=figures)
-
-
-def _months(ahead: pd.DatetimeIndex, expected: NDArray[np.float64], arrivals: Arrivals, spread: float) -> pd.DataFrame:
-    """Return one row a calendar month, with its bands and the same days a year before."""
-    totals = _by_month(ahead, expected)
-    off = np.sqrt(max(arrivals.swing.clustering, 1.0) * totals + (totals * spread) ** 2)
-    past = arrivals.counts[-364:] if arrivals.counts.size >= 364 else np.zeros(0)
-    first = ahead[~ahead.to_period("M").duplicated()]
-    frame = pd.DataFrame({"start": first, "days": _by_month(ahead, np.ones(YEAR)).astype(int), "expected": totals})
-    for share, width in NORMAL.items():
-        frame[f"low_{share}"] = np.maximum(totals - width * off, 0.0)
-        frame[f"high_{share}"] = totals + width * off
-    if past.size:
-        frame["last_year"] = _by_month(ahead, np.append(past, past[:1]))
-    return frame
+    if days < LEAST_DAYS_FOR_GROWTH:
+        notes.append("Too few days to tell growth from season: none is foreseen, and it may be there.")
+    choice = outlook.choice
+    if choice.forecasts < FEWEST_PAST_FORECASTS:
+        notes.append("Too short to look at past forecasts: the range takes the usual drift of demand, 3 % a year.")
+    elif choice.errors[choice.method] >= choice.errors[NAIVE]:
+        notes.append(
+            "The same week last year was nearer than any method: expect surprises, and take the range seriously."
+        )
+    return notes

@@ -79,10 +79,11 @@ def show_check(name: str) -> None:
     except BedplanError as error:
         st.info(wording.plain(str(error)))
         return
+    if not found.checked:
+        st.info(wording.plain(found.verdict))
+        return
     st.markdown(f"**{wording.plain(found.verdict)}**")
-    days = found.days.rename(
-        columns={"date": "day", "present": "seen", "expected": "middle", "low_80": "low", "high_80": "high"}
-    )
+    days = found.days.rename(columns={"date": "day", "present": "seen"})
     data = charts.check_data(days[["day", "seen", "middle", "low", "high"]], None)
     st.vega_lite_chart(charts.live(charts.CHECK, data), theme=None, width="stretch", alt=found.verdict)
     st.caption(f"Patients present at {found.clock}; the band should hold 8 days in 10, more where counts are small.")
