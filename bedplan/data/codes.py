@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
-TEST_KEY = re.compile(r"test|dummy|zzz|training", re.IGNORECASE)
+TEST_KEY = "test|dummy|zzz|training"
 OLDEST_YEARS = 120
 MOST_CATEGORIES = 1_000
 IDENTITY_SHARE = 0.1  # of a column's distinct values that look like identities: the column is not kept
@@ -42,10 +42,18 @@ class Coded:
 
 def coded(column: pa.ChunkedArray) -> Coded:
     """Return a column as codes in order of first appearance."""
-    encoded = pc.dictionary_encode(column).combine_chunks()
-    encoded = encoded.combine_chunks() if isinstance(encoded, pa.ChunkedArray) else encoded
-    codes = pc.fill_null(pc.cast(encoded.indices, pa.int64()), -1).to_numpy(zero_copy_only=False)
-    return Coded(codes, tuple(encoded.dictionary.to_pylist()))
+    codes, values = _encoded(column)
+    return Coded(codes, tuple(values.to_pylist()))
+
+
+def _encoded(column: pa.ChunkedArray) -> tuple[NDArray[np.int64], pa.Array]:
+    """Return a column as codes, −1 = blank, and the values behind them."""
+    if pa.types.is_dictionary(column.type):
+        whole = column.unify_dictionaries().combine_chunks()
+    else:
+        whole = pc.dictionary_encode(column).combine_chunks()
+    whole = whole.combine_chunks() if isinstance(whole, pa.ChunkedArray) else whole
+    return pc.fill_null(pc.cast(whole.indices, pa.int64()), -1).to_numpy(zero_copy_only=False), whole.dictionary
 
 
 def translated(column: Coded, meaning: list[str]) -> Coded:
@@ -94,17 +102,15 @@ class Keys:
 
 def read_keys(column: pa.ChunkedArray) -> Keys:
     """Replace keys by random codes; the way back is forgotten here. Each blank key gets a code of its own."""
-    raw = coded(pc.utf8_trim_whitespace(column))
-    blank = raw.codes < 0
-    known = len(raw.meanings)
+    raw, values = _encoded(pc.utf8_trim_whitespace(column))
+    blank = raw < 0
+    known = len(values)
     shuffled = np.random.default_rng().permutation(known + int(blank.sum()))
-    codes = np.empty(raw.codes.size, dtype=np.int64)
-    codes[~blank] = shuffled[raw.codes[~blank]]
+    codes = shuffled[raw]
     codes[blank] = shuffled[known:]
-    words = pa.array(raw.meanings, pa.string())
-    test = pc.match_substring_regex(words, TEST_KEY.pattern, ignore_case=True).to_numpy(zero_copy_only=False)
-    real = [is_national_number(value) for value in raw.meanings[:1_000]]
-    return Keys(codes, np.append(test, False)[raw.codes], sum(real) > len(real) / 2)
+    test = pc.match_substring_regex(values, TEST_KEY, ignore_case=True).to_numpy(zero_copy_only=False)
+    real = [is_national_number(value) for value in values[:1_000].to_pylist()]
+    return Keys(codes, np.append(test, False)[raw], sum(real) > len(real) / 2)
 
 
 def is_national_number(key: str) -> bool:

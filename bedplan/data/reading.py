@@ -23,6 +23,7 @@ LINE = re.compile(rb"[^\r\n]*(?:\r\n|\n|\r)")
 SEPARATORS = (",", ";", "\t", "|")
 CLEARLY_HEADINGS = 3  # known names in one line: no title holds so many
 SNIFFED_BYTES = 256 * 1024
+FEW_VALUES = ("ward", "class", "method", "specialty", "destination", "age_band")
 BLOCK_BYTES = 4 * 2**20
 
 
@@ -105,6 +106,11 @@ def split_cells(line: str, separator: str) -> tuple[str, ...]:
         return ()
 
 
+def _type_of(key: str) -> pa.DataType:
+    """Return how a column is held: few values, many rows in codes from the start; all else as strings."""
+    return pa.dictionary(pa.int32(), pa.string()) if key in FEW_VALUES else pa.string()
+
+
 def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
     """Parse the lines under the headings; lines with another number of cells are counted, not guessed at."""
     misfits = 0
@@ -124,7 +130,7 @@ def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
                 delimiter=layout.separator, newlines_in_values=b'"' in text, invalid_row_handler=count
             ),
             convert_options=arrow_csv.ConvertOptions(
-                column_types=dict.fromkeys(wanted.values(), pa.string()),
+                column_types={column: _type_of(key) for key, column in zip(layout.found, wanted.values(), strict=True)},
                 include_columns=list(wanted.values()),
                 strings_can_be_null=True,
                 null_values=[""],

@@ -49,7 +49,7 @@ def open_source(source: FileLike, name: str | None = None) -> SourceFile:
     """
     given = name or _name_of(source)
     content = _bytes_of(source, given)
-    if not content.strip():
+    if not content or content.isspace():
         raise UnreadableRecords([f"{given} is empty: export the ward stays again and check that the file has rows."])
     if len(content) > LARGEST_FILE_BYTES:
         raise UnreadableRecords(

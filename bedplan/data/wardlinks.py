@@ -6,12 +6,12 @@ import re
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+import numpy as np
 import pandas as pd
 
 from bedplan.data.dates import DAY_SECONDS
 
 if TYPE_CHECKING:
-    import numpy as np
     from numpy.typing import NDArray
 
 FEWEST_STAYS = 20
@@ -81,16 +81,17 @@ def propose_links(
 def _lives(
     wards: tuple[str, ...], ward: NDArray[np.int64], start: NDArray[np.int64], window: tuple[int, int]
 ) -> list[_Life]:
-    """Return the life of every ward with enough stays, in days from the window's start."""
-    lives = []
+    """Return the life of every ward with enough stays, in days from the window's start; ``start`` goes up."""
     inside = (start >= window[0]) & (start < window[1])
-    days = (start[inside] - window[0]) / DAY_SECONDS
-    for code, name in enumerate(wards):
-        mine = days[ward[inside] == code]
-        if mine.size >= FEWEST_STAYS:
-            first, last = float(mine.min()), float(mine.max())
-            lives.append(_Life(name, first, last, mine.size / max(last - first, 1.0)))
-    return lives
+    ward, days = ward[inside], (start[inside] - window[0]) / DAY_SECONDS
+    stays = np.bincount(ward, minlength=len(wards))
+    first, last = np.zeros(len(wards)), np.zeros(len(wards))
+    last[ward], first[ward[::-1]] = days, days[::-1]  # the last one written stays
+    return [
+        _Life(name, float(first[code]), float(last[code]), float(stays[code] / max(last[code] - first[code], 1.0)))
+        for code, name in enumerate(wards)
+        if stays[code] >= FEWEST_STAYS
+    ]
 
 
 def _spellings(wards: tuple[str, ...]) -> list[WardLink]:
