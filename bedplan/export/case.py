@@ -21,12 +21,14 @@ if TYPE_CHECKING:
     from bedplan.models import BedCurve
 
 DAYS_PER_YEAR = 365.0
+# the model that says nothing about such a ward: nobody waits who leaves; no steady line where a queue carries over
+LEFT_OUT = {"leaves": "waiting", "waits": "erlang_loss"}
 ALIKE = 0.02  # months this near each other have no worst one worth naming
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class WardCase:
-    """One ward's case: the ward, every model's curve, the limit, the decision (None where out of reach), what it rests on.
+    """One ward's case: the ward, its models' curves, the limit, the decision (None where out of reach), what it rests on.
 
     ``assumptions`` are (what, value, where from); ``settings`` (slider, value). ``checked`` says what
     came of the check on last year. The figure that the limit watches, for
@@ -151,14 +153,14 @@ def case_for(
     assumptions: tuple[tuple[str, str, str], ...] = (),
     settings: tuple[tuple[str, str], ...] = (),
 ) -> WardCase:
-    """What is the case for this ward under this limit? Every model's curve, and the decision on the ward's own.
+    """What is the case for this ward under this limit? The curves that say something about it, and the decision on its own.
 
     Raises:
         ImpossibleFigure: the limit watches a figure that the ward's model does not know.
 
     Checked by: tests/export/test_justification.py
     """
-    curves = {model: ward.curve(model) for model in MODELS}
+    curves = {model: ward.curve(model) for model in MODELS if model != LEFT_OUT[ward.when_full]}
     case = WardCase(ward, curves, rule, None, assumptions, settings)
     try:
         decision = decide(case.curve, rule)

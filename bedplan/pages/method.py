@@ -13,10 +13,11 @@ METHODS = {
     "who find the ward full go elsewhere. The spread of stay does not matter to it. de Bruin et al. 2010.",
     "unlimited_beds": "Patients who want a bed if nobody were ever turned away, hour by hour through the year: a Poisson "
     "number about the load. Eick, Massey & Whitt 1993. It answers for wards whose patients wait or are placed elsewhere.",
-    "seasonal_loss": "Erlang's loss formula on the load of each hour of the year, which follows months, weekdays and hours "
-    "with the delay that stays cause. Massey & Whitt 1994.",
-    "waiting": "Patients wait for a bed instead of leaving: Erlang's delay formula (1917), corrected for the spread of stay "
-    "by Allen & Cunneen.",
+    "seasonal_loss": "Patients who find the ward full go elsewhere, hour by hour through the week at each month's level of "
+    "demand, with the delay that stays cause: a chain of the ward's beds near the decision, Erlang's formula on the load of "
+    "each hour elsewhere. Massey & Whitt 1994; groups by Fredericks 1980; its note says how far it may err.",
+    "waiting": "Patients wait for a bed instead of leaving, and the queue carries over: Erlang's delay formula (1917), "
+    "corrected for the spread of stay by Allen & Cunneen. Where the load reaches the beds the queue only grows.",
 }
 
 st.header("What each line computes, and what it leaves out", anchor=False)
