@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from bedplan.models.bed_curve import BedCurve, bed_counts
-from bedplan.models.clusters import loss_table, peakedness
+from bedplan.models.clusters import loss_table, swing_when_full
 from bedplan.models.load_grid import load_grid
 from bedplan.models.rhythm_correction import LARGEST_CORRECTED_LOAD, rhythm_correction, season_correction
 from bedplan.models.uncertain_rate import possible_rates
@@ -78,7 +78,7 @@ def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[_TurnedAway
     rates, weights = possible_rates(demand.rate_variation, float(unbooked_load.mean()))
     keep = weights * rates > 1e-12
     rates, weights = rates[keep], weights[keep]
-    swing = 1.0 + (peakedness(demand) - 1.0) * drifting
+    swing = 1.0 + (swing_when_full(demand) - 1.0) * drifting
     grids = [load_grid(load, patients, _GROUP_OF_HOUR, _GROUPS) for patients in (unbooked, booked)]
     loads = np.outer(1.0 + (rates - 1.0) * drifting, grids[0].loads)
     first_cut = loss_table(loads.ravel(), counts, swing).reshape(counts.size, *loads.shape)
@@ -108,7 +108,7 @@ def _notes(demand: Demand) -> tuple[str, ...]:
     if demand.clustering > 1:
         notes.append(
             "Patients who come together: groups of equal size are assumed. Up to a tenth of the figure too high with a "
-            "weekly rhythm or very even stays; up to 6 % too low if group sizes differ widely."
+            "weekly rhythm; up to 8 % too low if group sizes differ widely."
         )
     if demand.clustering < 1:
         notes.append("Arrivals smoother than chance: Hayward's approximation, up to a tenth too low on small wards.")

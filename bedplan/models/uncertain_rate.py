@@ -29,7 +29,7 @@ def possible_rates(variation: float, load: float) -> tuple[Array, Array]:
         return np.ones(1), np.ones(1)
     order = 1.0 / variation**2
     spread = math.sqrt(float(special.polygamma(1, order)))
-    step = min(0.7 * spread, 0.5, 1.2 / math.sqrt(max(load, 1.0)))
+    step = min(0.7 * spread, 0.35, 1.2 / math.sqrt(max(load, 1.0)))
     logs = np.arange(-math.ceil(60.0 * spread / step), math.ceil(10.0 * spread / step) + 1) * step
     density = order * (logs - np.expm1(logs))
     keep = density > density.max() + math.log(_NEGLIGIBLE)
