@@ -55,7 +55,8 @@ class WardDescription:
     ``hourly`` patients present, by hour; ``midnight_mean`` and ``daily_peak_mean`` averages over days;
     ``by_hour_of_day`` (24,) average patients present. ``variance_over_mean`` of the midnight count, with a 95 %
     interval from days drawn in blocks of 28. ``turnover_interval_days`` and ``throughput`` (patients a bed a year) are
-    None without a capacity file.
+    None without a capacity file. ``delay_beds``: beds used on average after the patients were ready to leave, None where
+    the file has no such dates.
 
     Checked by: tests/data/test_describing.py
     """
@@ -78,6 +79,7 @@ class WardDescription:
     full: FullTimes | None
     turnover_interval_days: float | None
     throughput: float | None
+    delay_beds: float | None
 
 
 def describe_ward(records: Records, ward: str, capacity: Capacity | None = None) -> WardDescription:
@@ -123,6 +125,7 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
         full=full,
         turnover_interval_days=turnover,
         throughput=throughput,
+        delay_beds=_delay_beds(records, stays),
     )
 
 
@@ -178,6 +181,15 @@ def block_interval(counts: NDArray[np.float64], *, seed: int, block: int = BLOCK
     ratios = drawn.var(axis=1, ddof=1) / np.maximum(means, 1e-12)
     low, high = np.quantile(ratios, [0.025, 0.975])
     return float(low), float(high)
+
+
+def _delay_beds(records: Records, stays: pd.DataFrame) -> float | None:
+    """Return the beds used on average by patients who were ready to leave; None where no date says so."""
+    if "ready" not in stays or stays["ready"].isna().all():
+        return None
+    ready = stays[stays["ready"].notna()]
+    since = np.maximum(ready["ready"].to_numpy(), ready["start"].to_numpy())
+    return float(bed_days(records, ready.assign(start=since)).sum()) / records.days
 
 
 def _median(stays: pd.DataFrame) -> float:

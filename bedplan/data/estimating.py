@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import pandas as pd
 
 from bedplan.data.arrivals import FEWEST_STAYS, Arrivals, arrivals_of, booked_list, is_booked
-from bedplan.data.stays import fitted_stay, stay_curve, stays_in_window
+from bedplan.data.stays import fitted_stay, stay_change, stay_curve, stays_in_window
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
@@ -153,7 +153,7 @@ def estimate_demand(
         demand=demand,
         uncertainty=_uncertainty(every, curve, demand.offered_load, raised, hidden),
         method=_method(every, curve, demand, hidden),
-        notes=tuple(_notes(records, every, curve, stays, booked_share, hidden)),
+        notes=(*_notes(records, every, curve, stays, booked_share, hidden), *_change_notes(records, stays, ward)),
         stays=len(stays),
         unfinished=int(stays["end"].isna().sum()),
         window=records.window,
@@ -267,3 +267,13 @@ def _notes(
     if not records.has_times:
         notes.append("Dates without times: stays are counted in nights and no hour of the day is known.")
     return notes
+
+
+def _change_notes(records: Records, stays: pd.DataFrame, ward: str) -> list[str]:
+    """Say whether stays grew longer or shorter lately: the whole file's mean then misses the latest year's."""
+    change = stay_change(records, stays, ward)
+    if change is None:
+        return []
+    word = "longer" if change[1] > change[0] else "shorter"
+    told = f"{change[0]:.1f} days before the latest year, {change[1]:.1f} in it"
+    return [f"Stays grew {word}: {told}. The whole file's mean is used; move the stay where the change will last."]

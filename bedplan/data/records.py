@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import time
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -37,7 +37,7 @@ class Records:
     """The stays of one file, one row a kept stay, without identities.
 
     ``stays``: patient_key (a random code), spell_key, ward, start, end (NaT = unfinished), and whichever of class,
-    method, specialty, age_band, destination, ready the file had. ``set_aside``: the rows that don't count, with the
+    method, specialty, age_band, destination, ready the file had, and whether it was repaired. ``set_aside``: the rows that don't count, with the
     reason and without identities. ``window``: first and last moment for which the file is complete; ``seen_until``:
     up to when unfinished stays were watched. ``links``: ward names that may mean the same ward, for a person to
     confirm. ``excluded``: periods left out of rates.
@@ -100,6 +100,10 @@ class Records:
             raise UnreadableRecords([f"There is no stay on ward “{ward}” in {self.name}. Its wards are: {known}."])
         return self.stays.iloc[self.by_ward[ward]]
 
+    def without_repairs(self) -> Records:
+        """What would be left if no row had been repaired? For showing how far the repairs carry the answer."""
+        return replace(self, stays=self.stays[~self.stays["repaired"]].reset_index(drop=True))
+
 
 def read_records(
     source: FileLike,
@@ -126,6 +130,8 @@ def read_records(
     chosen = choices or IntakeChoices()
     text = read_table(file, STAY_HEADINGS, columns)
     table = as_stay_table(text, file.name, date_order, chosen)
+    # What was read is in the table now: a large file need not be held three times.
+    file, text = replace(file, content=b""), replace(text, columns={})
     until, said = _clean(table, chosen)
     return _finished(table, text, file, chosen, until, said)
 
@@ -170,6 +176,8 @@ def _finished(
     window = chosen_window(choices.window) or find_window(start, end, until)
     notes = [*text.notes, *table.notes, *said, *noticing.whole_file(rows, live, table, window, until)]
     stays = table.frame(live, start, end)
+    changed = (rows.reason[live] > 0) | (start != rows.first_start[live]) | (end != rows.first_end[live])
+    stays["repaired"] = changed
     removed = table.frame(np.flatnonzero(rows.aside))
     sentences = np.array(["", *(rule.sentence for rule in RULES.values())], dtype=object)
     removed.insert(0, "reason", pd.Categorical(sentences[rows.reason[rows.aside]]))

@@ -30,15 +30,11 @@ OTHER_KINDS = (
 
 @dataclass(frozen=True, slots=True)
 class SourceFile:
-    """One file as it came: its name, its bytes, and a SHA-256 fingerprint of them."""
+    """One file as it came: its name, its bytes, and the SHA-256 fingerprint of them."""
 
     name: str
     content: bytes
-
-    @property
-    def fingerprint(self) -> str:
-        """Which file was this, exactly? SHA-256 of its bytes."""
-        return hashlib.sha256(self.content).hexdigest()
+    fingerprint: str = ""
 
 
 def open_source(source: FileLike, name: str | None = None) -> SourceFile:
@@ -60,7 +56,7 @@ def open_source(source: FileLike, name: str | None = None) -> SourceFile:
             raise UnreadableRecords(
                 [f"{given} is {kind}, not a table of ward stays: export the records as CSV, Excel (.xlsx) or Parquet."]
             )
-    return SourceFile(given, content)
+    return SourceFile(given, content, hashlib.sha256(content).hexdigest())
 
 
 def _name_of(source: FileLike) -> str:

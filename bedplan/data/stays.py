@@ -5,15 +5,16 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 import numpy as np
+import pandas as pd
 
 from bedplan.data.survival import StayCurve, product_limit
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import LengthOfStay
 
 if TYPE_CHECKING:
-    import pandas as pd
-
     from bedplan.data.records import Records
+
+FEWEST_TO_COMPARE = 100
 
 
 def stays_in_window(records: Records, ward: str) -> pd.DataFrame:
@@ -62,3 +63,21 @@ def fitted_stay(curve: StayCurve) -> LengthOfStay:
     measured = curve.at(grid)
     choices = [LengthOfStay(mean, variation, shape) for shape in ("lognormal", "gamma")]
     return min(choices, key=lambda stay: float(np.abs(stay.survival(grid) - measured).sum()))
+
+
+def stay_change(records: Records, stays: pd.DataFrame, ward: str) -> tuple[float, float] | None:
+    """How long did patients stay before the latest year, and in it? (before, in it), only where the two clearly differ.
+
+    None where the file has less than two years, or where chance explains the difference (two standard errors).
+
+    Checked by: tests/data/test_estimating.py
+    """
+    since = records.window[1] - pd.Timedelta(days=365)
+    late = (stays["start"] >= since).to_numpy()
+    finished = stays["end"].notna().to_numpy()
+    if records.days < 730 or min((late & finished).sum(), (~late & finished).sum()) < FEWEST_TO_COMPARE:
+        return None
+    before, after = (stay_curve(records, stays[which], ward) for which in (~late, late))
+    error = float(np.hypot(before.mean_standard_error, after.mean_standard_error))
+    clear = abs(after.mean_days - before.mean_days) > 2.0 * error
+    return (before.mean_days, after.mean_days) if clear else None

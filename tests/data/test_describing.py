@@ -123,3 +123,21 @@ def test_excluded_periods_and_missing_capacity(larkmere: Records) -> None:
 
     assert (figures.full, figures.turnover_interval_days, figures.throughput) == (None, None, None)
     assert figures.hourly.index[0] == pd.Timestamp("2022-04-01")
+
+
+def test_beds_used_after_patients_were_ready(read: Callable[..., Records], larkmere: Records) -> None:
+    """Two patients ready 2 and 1 days before they left, in 10 days: 0.3 beds; wards without such dates say nothing."""
+    records = read(
+        "a,a,Heron,2024-01-01 12:00,2024-01-06 12:00,2024-01-04 12:00",
+        "b,b,Heron,2024-01-02 12:00,2024-01-10 12:00,2024-01-09 12:00",
+        "c,c,Heron,2024-01-02 12:00,2024-01-10 12:00,",
+        headings="patient_key,spell_key,ward,start,end,ready_date",
+    )
+
+    assert describe_ward(records, "Heron").delay_beds == pytest.approx((2 + 1) / 10)
+    assert describe_ward(larkmere, "Dunlin").delay_beds is None
+    # The demo's ready dates lie 60 % of the stay before its end, for the long stays of Plover.
+    late = larkmere.of_ward("Plover")
+    late = late[late["ready"].notna() & late["end"].notna()]
+    waited = ((late["end"] - late["ready"]) / (late["end"] - late["start"])).mean()
+    assert waited == pytest.approx(0.6, abs=0.01)

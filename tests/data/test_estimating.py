@@ -160,3 +160,19 @@ def test_booked_patients_can_be_put_into_their_list(larkmere: Records) -> None:
 def test_emergency_wards_have_no_list(larkmere: Records) -> None:
     """Asking for booked patients apart changes nothing where there are none."""
     assert estimate_demand(larkmere, "Dunlin", booked_apart=True).demand.booked == ()
+
+
+def test_stays_that_grew_longer_are_told() -> None:
+    """Four days in two years and six in the third is a change the reader must know; the same stays all along are not."""
+
+    def ward(last_year_days: float) -> Records:
+        rng = np.random.default_rng(14)
+        rows = []
+        for n, day in enumerate(pd.date_range("2021-01-01", periods=1_090)):
+            mean = last_year_days if n > 730 else 4.0
+            end = day + pd.Timedelta(hours=float(rng.gamma(2.0, mean / 2.0) * 24) + 1.0)
+            rows.append(f"p{n},Heron,{day + pd.Timedelta(hours=1):%Y-%m-%d %H:%M},{end:%Y-%m-%d %H:%M}")
+        return read_records("\n".join(["patient_key,ward,start,end", *rows]).encode())
+
+    assert any("grew longer" in note for note in estimate_demand(ward(6.0), "Heron").notes)
+    assert not any("grew" in note for note in estimate_demand(ward(4.0), "Heron").notes)

@@ -171,3 +171,14 @@ def test_the_demo_reads_clean(larkmere: Records, demo_data: Path) -> None:
     assert larkmere.window == (pd.Timestamp("2022-04-01"), pd.Timestamp("2025-04-01"))
     assert larkmere.days == 1_096
     assert len(larkmere.wards) == 8
+
+
+def test_the_answer_without_the_repaired_rows_can_be_had(read: Callable[..., Records]) -> None:
+    """Leaving out what was repaired shows how far the repairs carry the answer; the report stays as it is."""
+    records = read(*DIRTY)
+    bare = records.without_repairs()
+
+    # Repaired: the first a (cut), the first b (closed), c (spelling); left: Teal of a, Teal of b, g.
+    assert records.stays["repaired"].sum() == 3
+    assert len(bare.stays) == len(records.stays) - 3
+    assert bare.report == records.report
