@@ -102,7 +102,11 @@ class Justification:
 
     def decision_lines(self) -> tuple[str, ...]:
         """Return the decision box: what is asked for each ward, and what came of its check on last year."""
-        return tuple(line for case in self.cases for line in (self._ask(case), f"{case.ward.name}: {case.checked}"))
+        return tuple(
+            line
+            for case in self.cases
+            for line in (self._ask(case), f"{case.ward.name}, check on last year: {case.checked}")
+        )
 
     @staticmethod
     def _ask(case: WardCase) -> str:

@@ -21,6 +21,7 @@ from bedplan.data import (
     backtest,
     describe_ward,
     estimate_demand,
+    forecast_arrivals,
     hidden_demand,
     read_cancellations,
     read_capacity,
@@ -34,7 +35,7 @@ from bedplan.plan import Baseline, from_estimate
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
-    from bedplan.data import Backtest, HiddenDemand, WardDescription
+    from bedplan.data import Backtest, Forecast, HiddenDemand, WardDescription
 
 DEMO = Path(__file__).resolve().parents[2] / "demo_data"
 # What the wards of the invented demo hospital do when full, and the share of their refusals that is written down;
@@ -128,12 +129,13 @@ def hidden(name: str) -> HiddenDemand:
     )
 
 
-def checked(name: str) -> Backtest:
-    """Return the check of a ward's earlier records on its last year.
+def forecast(name: str) -> Forecast:
+    """Return a ward's next ten years, should it go on as before."""
+    return _once(("forecast", name), lambda: forecast_arrivals(files().records, name, horizon_days=10 * 365))
 
-    Raises:
-        UnreadableRecords: too short a time for such a check.
-    """
+
+def checked(name: str) -> Backtest:
+    """Return the check of a ward's earlier records on its last year."""
     here = files()
     return _once(("checked", name), lambda: backtest(here.records, name, capacity=here.capacity))
 

@@ -74,11 +74,7 @@ def show(name: str) -> None:
 def show_check(name: str) -> None:
     """Show whether the earlier records would have told the last year."""
     st.subheader("Would the earlier records have told the last year?", anchor=False)
-    try:
-        found = loaded.checked(name)
-    except BedplanError as error:
-        st.info(wording.plain(str(error)))
-        return
+    found = loaded.checked(name)
     if not found.checked:
         st.info(wording.plain(found.verdict))
         return
@@ -89,10 +85,40 @@ def show_check(name: str) -> None:
     st.caption(f"Patients present at {found.clock}; the band should hold 8 days in 10, more where counts are small.")
 
 
+def show_ahead(name: str) -> None:
+    """Show the next ten years, should it go on as before, with ranges that widen."""
+    st.subheader("If it goes on as before", anchor=False)
+    try:
+        ahead = loaded.forecast(name)
+    except BedplanError as error:
+        st.info(wording.plain(str(error)))
+        return
+    rows = [
+        {
+            "Year from": f"{year.first_day.day} {year.first_day:%B %Y}",
+            "Admissions": f"{year.admissions:,.0f}",
+            "8 in 10 between": f"{year.admissions_80[0]:,.0f} and {year.admissions_80[1]:,.0f}",
+            "Beds in use on average": f"{year.beds_in_use:,.1f}",
+            "8 in 10 between ": f"{year.bed_days_80[0] / 365:,.1f} and {year.bed_days_80[1] / 365:,.1f}",
+        }
+        for year in ahead.years
+    ]
+    st.table(pd.DataFrame(rows).set_index("Year from"))
+    low, high = ahead.growth_range
+    st.markdown(
+        f"Growth of admissions {wording.signed_percent(ahead.growth_per_year)} a year "
+        f"({wording.signed_percent(low)} to {wording.signed_percent(high)}); of bed-days "
+        f"{wording.signed_percent(ahead.bed_days_growth_per_year)}. {wording.plain(ahead.why)}"
+    )
+    for note in ahead.notes:
+        st.markdown(f"- {wording.plain(note)}")
+
+
 controls.show_origin()
 ward_name = controls.choose_ward()
 try:
     show(ward_name)
     show_check(ward_name)
+    show_ahead(ward_name)
 except BedplanError as error:
     st.error(wording.plain(str(error)))

@@ -23,7 +23,7 @@ def test_decision_says_beds_limit_and_that_last_year_is_unchecked(justification:
 
     assert f"approve {justification.cases[0].decision.beds} staffed beds (today 20)" in first
     assert "every month within 1 in 20 turned away" in first
-    assert last == f"Curlew: {wording.NOT_YET_CHECKED}"
+    assert last == f"Curlew, check on last year: {wording.NOT_YET_CHECKED}"
 
 
 def test_wards_that_wait_are_not_said_to_turn_away(justification: Justification) -> None:
