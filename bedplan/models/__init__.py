@@ -9,11 +9,13 @@ from bedplan.models.average import average_beds, average_occupancy
 from bedplan.models.bed_curve import BedCurve, BedPoint, Waits, bed_counts
 from bedplan.models.demand import BookedList, Demand
 from bedplan.models.erlang import erlang_b, erlang_b_log, erlang_c, erlang_loss
+from bedplan.models.patience import Patience, erlang_a
 from bedplan.models.seasonal import seasonal_loss
 from bedplan.models.simulation import SimulatedWard, simulate_ward
 from bedplan.models.simulation_run import Closure, WardRun
 from bedplan.models.stay import LengthOfStay
 from bedplan.models.unlimited import unlimited_beds
+from bedplan.models.waiting import waiting
 from bedplan.models.year import offered_load_by_hour
 
 if TYPE_CHECKING:
@@ -22,7 +24,7 @@ if TYPE_CHECKING:
     from numpy.typing import ArrayLike
 
 MODELS: Mapping[str, Callable[[Demand, ArrayLike], BedCurve]] = MappingProxyType(
-    {model.__name__: model for model in (average_occupancy, erlang_loss, unlimited_beds, seasonal_loss)}
+    {model.__name__: model for model in (average_occupancy, erlang_loss, unlimited_beds, seasonal_loss, waiting)}
 )
 
 __all__ = [
@@ -33,12 +35,14 @@ __all__ = [
     "Closure",
     "Demand",
     "LengthOfStay",
+    "Patience",
     "SimulatedWard",
     "Waits",
     "WardRun",
     "average_beds",
     "average_occupancy",
     "bed_counts",
+    "erlang_a",
     "erlang_b",
     "erlang_b_log",
     "erlang_c",
@@ -47,4 +51,5 @@ __all__ = [
     "seasonal_loss",
     "simulate_ward",
     "unlimited_beds",
+    "waiting",
 ]

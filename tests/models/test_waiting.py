@@ -1,0 +1,339 @@
+"""Waiting for a bed, against published delay examples, simulation, and chains solved in this file."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import pytest
+from scipy import integrate, stats
+
+from bedplan.errors import ImpossibleFigure
+from bedplan.models import (
+    BookedList,
+    Demand,
+    LengthOfStay,
+    WardRun,
+    erlang_a,
+    erlang_b,
+    erlang_c,
+    simulate_ward,
+    waiting,
+)
+from bedplan.models.waiting_spread import spread_of, wait_ratio
+
+WINTER = (1.3, 1.2, 1.1, 1.0, 0.9, 0.9, 0.8, 0.8, 0.9, 1.0, 1.0, 1.1)
+EXPONENTIAL = LengthOfStay(4.0, 1.0, "gamma")
+
+
+def steady(load: float, stay_hours: float = 96.0) -> Demand:
+    """Return steady demand with exponential stays of some hours."""
+    return Demand(load * 24.0 / stay_hours, LengthOfStay(stay_hours / 24.0, 1.0, "gamma"))
+
+
+def test_steady_exponential_ward_is_the_delay_formula() -> None:
+    """Shares, occupancy and waits of a steady ward with exponential stays are Erlang's, to ten digits."""
+    curve = waiting(steady(24.0), range(61))
+    beds = np.arange(25, 61)
+    share = erlang_c(24.0, beds)
+
+    assert curve.when_full == "waits"
+    assert curve.turn_away_probability[25:] == pytest.approx(share, rel=1e-10)
+    assert curve.by_month[3, 25:] == pytest.approx(share, rel=1e-10)
+    assert curve.occupancy[25:] == pytest.approx(24.0 / beds, rel=1e-10)
+    # mean wait C·m/(c − a), exponential for those who wait
+    assert curve.waits.mean_hours[25:] == pytest.approx(share * 96.0 / (beds - 24.0), rel=1e-4)
+    assert curve.waits.share_over(10.0)[25:] == pytest.approx(share * np.exp(-(beds - 24.0) * 10.0 / 96.0), rel=1e-4)
+    assert curve.waits.share_over_by_month(10.0)[:, 30] == pytest.approx(curve.waits.share_over(10.0)[30], rel=1e-10)
+
+
+def test_too_few_beds_for_ever() -> None:
+    """With no more beds than load everyone waits without end, every bed is taken, and a note says so."""
+    curve = waiting(steady(24.0), [0, 10, 24, 25])
+
+    assert curve.turn_away_probability[:3].tolist() == [1.0, 1.0, 1.0]
+    assert curve.occupancy[:3].tolist() == [0.0, 1.0, 1.0]
+    assert np.isinf(curve.waits.mean_hours[:3]).all()
+    assert curve.waits.share_over(1e4)[:3].tolist() == [1.0, 1.0, 1.0]
+    assert any("Up to 24 beds the queue only grows" in note for note in curve.notes)
+    assert not waiting(steady(24.0), [25, 30]).notes
+
+
+def test_nobody_and_no_beds() -> None:
+    """Where nobody comes nobody waits; without beds everyone does."""
+    nobody = waiting(Demand(0.0, EXPONENTIAL), [0, 4])
+    assert nobody.turn_away_probability.tolist() == nobody.occupancy.tolist() == [0.0, 0.0]
+    assert nobody.waits.mean_hours.tolist() == nobody.waits.share_over(4.0).tolist() == [0.0, 0.0]
+    none = waiting(steady(3.0), [0])
+    assert (none.turn_away_probability[0], none.occupancy[0], none.waits.share_over(9.0)[0]) == (1.0, 0.0, 1.0)
+
+
+def test_call_example() -> None:
+    """100 calls in half an hour of 180 seconds each: 14 take 88.835 % within 20 seconds, 11 take 38.96138 %."""
+    # Source: worked example of the delay formula, 100 contacts in 30 minutes, author unknown (read)
+    waits = waiting(steady(10.0, stay_hours=180.0 / 3600.0), [11, 14]).waits
+    within = 1.0 - waits.share_over(20.0 / 3600.0)
+    assert within[1] == pytest.approx(0.88835, abs=5e-6)
+    assert within[0] == pytest.approx(0.3896138, abs=5e-6)
+
+
+def test_county_hospital() -> None:
+    """An emergency room with 2 patients an hour and 20 minutes each, one doctor or two."""
+    # Source: Hillier & Lieberman, Introduction to Operations Research, County Hospital (remembered, each recomputed):
+    # mean wait 2/3 h and 1/24 h; waiting over half an hour with one 0.404, over one hour with two 0.003; two: 0.167 wait
+    curve = waiting(steady(2.0 / 3.0, stay_hours=1.0 / 3.0), [1, 2])
+    assert curve.waits.mean_hours == pytest.approx([2.0 / 3.0, 1.0 / 24.0], rel=1e-4)
+    assert curve.waits.share_over(0.5)[0] == pytest.approx(0.404, abs=5e-4)
+    assert curve.waits.share_over(1.0)[1] == pytest.approx(0.003, abs=5e-4)
+    assert curve.turn_away_probability[1] == pytest.approx(0.167, abs=5e-4)
+    # patients present: queue + in treatment = 2 with one doctor, 3/4 with two (Little 1961)
+    present = 2.0 * curve.waits.mean_hours + curve.occupancy * curve.beds
+    assert present == pytest.approx([2.0, 0.75], rel=1e-4)
+
+
+def test_obstetrics() -> None:
+    """An obstetrics unit at a load of 42.9: 66.6 % wait with 45 beds, 3.7 % with 56, 2.6 % with 57, and how full it is."""
+    # Source: Green 2006, in Patient Flow: Reducing Delay in Healthcare Delivery (remembered, each recomputed)
+    curve = waiting(steady(42.9, stay_hours=69.6), [45, 56, 57])
+    assert curve.turn_away_probability == pytest.approx([0.666, 0.037, 0.026], abs=5e-4)
+    assert curve.occupancy == pytest.approx([0.953, 0.766, 0.753], abs=5e-4)
+
+
+def test_fifty_servers_without_giving_up() -> None:
+    """48 a minute, one minute each, 50 servers: 17 wait on average, one in ten over 58.1 seconds; 3.1 % fewer: 8.8 s."""
+    # Source: Mandelbaum & Zeltyn 2007, Service engineering in action: the Palm/Erlang-A queue (remembered, recomputed)
+    waits = waiting(steady(48.0, stay_hours=1.0 / 60.0), [50]).waits
+    assert 48.0 * 60.0 * waits.mean_hours[0] == pytest.approx(16.667, abs=5e-3)
+    assert waits.share_over(58.1 / 3600.0)[0] == pytest.approx(0.10, abs=1e-3)
+    fewer = waiting(steady(48.0 * (1.0 - 0.031), stay_hours=1.0 / 60.0), [50]).waits
+    assert 3600.0 * fewer.mean_hours[0] == pytest.approx(8.8, abs=0.05)
+
+
+@pytest.mark.parametrize("variation", [0.0, 0.4, 1.3, 2.5])
+def test_one_bed_and_any_stay(variation: float) -> None:
+    """With one bed the mean wait is ρ·m·(1 + variation²)/2/(1 − ρ), exactly."""
+    # Source: Pollaczek 1930, Khinchine 1932
+    curve = waiting(Demand(0.6, LengthOfStay(1.0, variation)), [1])
+    assert curve.waits.mean_hours[0] == pytest.approx(24.0 * 0.6 * (1.0 + variation**2) / 2.0 / 0.4, rel=1e-3)
+    assert curve.turn_away_probability[0] == pytest.approx(0.6, rel=1e-10)
+
+
+@pytest.mark.parametrize("beds", [10, 30])
+@pytest.mark.parametrize("shape", ["lognormal", "gamma"])
+@pytest.mark.parametrize("variation", [0.3, 0.6, 1.0, 1.5, 2.0])
+def test_mean_wait_within_a_tenth_of_simulation(variation: float, shape: str, beds: int) -> None:
+    """From a variation of 0.3 to 2 the mean wait is within 10 % of simulation, the share who wait within a tenth."""
+    demand = Demand(0.8 * beds / 4.0, LengthOfStay(4.0, variation, shape))
+    curve = waiting(demand, [beds])
+    run = WardRun(replications=500, days=364.0 * (4 if beds == 10 else 2))
+    ward = simulate_ward(demand, beds, seed=1, when_full="waits", run=run)
+
+    assert ward.arrivals > 1_400_000
+    assert curve.waits.mean_hours[0] == pytest.approx(ward.mean_wait_hours, rel=0.10)
+    assert curve.turn_away_probability[0] == pytest.approx(ward.turn_away_probability, rel=0.10)
+    assert curve.waits.share_over(12.0)[0] == pytest.approx(ward.share_waiting_over(12.0), rel=0.15)
+
+
+def test_why_the_whole_spread_does_not_act() -> None:
+    """For widely spread stays on many beds (Ca² + Cs²)/2 alone would say nearly twice the wait that is seen."""
+    demand = Demand(6.0, LengthOfStay(4.0, 2.0))
+    ward = simulate_ward(demand, 30, seed=2, when_full="waits")
+    alone = float(erlang_c(24.0, 30)) * 96.0 / 6.0 * (1.0 + 4.0) / 2.0
+    assert alone > 1.4 * ward.mean_wait_hours
+    # near saturation it does act in full
+    spread = spread_of(demand)
+    assert float(wait_ratio(spread, np.array([[30.0]]), np.array([[29.99]]))[0, 0]) == pytest.approx(2.5, rel=0.02)
+
+
+def test_stays_that_end_within_a_while() -> None:
+    """The variance of the stays that end on one bed within a time is the known one for three kinds of stay."""
+    times = np.array([0.25, 0.5, 1.0, 1.5, 3.0, 10.0])
+    steps = (times * 64).astype(int)
+    # exponential: 1; fixed: f(1 − f)/t with f the part of a stay; gamma of order 2: 1/2 + (1 − e^(−4t))/(8t)
+    # Source: Cox 1962, Renewal Theory, section 4.5
+    part = times % 1.0
+    for stay, expected in (
+        (LengthOfStay(4.0, 1.0, "gamma"), np.ones(6)),
+        (LengthOfStay(4.0, 0.0), part * (1.0 - part) / times),
+        (LengthOfStay(4.0, math.sqrt(0.5), "gamma"), 0.5 + (1.0 - np.exp(-4.0 * times)) / 8.0 / times),
+    ):
+        assert spread_of(Demand(1.0, stay)).ended[steps] == pytest.approx(expected, abs=2e-3)
+
+
+@pytest.mark.parametrize(("clustering", "beds"), [(1.5, 20), (2.0, 40), (3.0, 40), (2.0, 8)])
+def test_patients_who_come_together(clustering: float, beds: int) -> None:
+    """In groups more patients wait, nearly as many as simulation says; the note says by how much the line may be low."""
+    demand = Demand(0.8 * beds / 4.0, EXPONENTIAL, clustering=clustering)
+    curve = waiting(demand, [beds])
+    ward = simulate_ward(demand, beds, seed=1, when_full="waits")
+    below = 1.0 - curve.turn_away_probability[0] / ward.turn_away_probability
+
+    assert curve.turn_away_probability[0] > float(erlang_c(0.8 * beds, beds))
+    assert below < (1.0 / 8.0 if beds >= 15 else 1.0 / 4.0)
+    assert below > -0.05
+    assert any("come together" in note for note in curve.notes)
+
+
+def test_drift_of_the_rate() -> None:
+    """An uncertain rate lets the mean of the delay shares wait, weighed by patients; waits at hopeless rates are noted."""
+    # E[G·C(aG)] for a gamma G with mean 1 and deviation 0.1, by quadrature
+    rate = stats.gamma(100.0, scale=0.01)
+    exact = integrate.quad(lambda g: g * rate.pdf(g) * float(erlang_c(24.0 * g, 32)), 0.5, 1.8, limit=200)[0]
+    curve = waiting(Demand(6.0, EXPONENTIAL, rate_variation=0.1), [32])
+
+    assert curve.turn_away_probability[0] == pytest.approx(exact, rel=0.02)
+    assert curve.turn_away_probability[0] > float(erlang_c(24.0, 32))
+    assert any("the queue only grows" in note for note in curve.notes)
+
+
+def test_turnaround_makes_patients_wait() -> None:
+    """Beds made ready for four hours leave a ward asked for 25 beds, 24 of them by patients."""
+    curve = waiting(Demand(6.0, EXPONENTIAL, turnaround_hours=4.0), [25, 31])
+    assert curve.turn_away_probability == pytest.approx([1.0, float(erlang_c(25.0, 31))], rel=1e-6)
+    assert curve.occupancy == pytest.approx([24.0 / 25.0, 24.0 / 31.0], rel=1e-6)
+
+
+@pytest.mark.parametrize("beds", [28, 30, 33, 36])
+def test_seasons_against_simulation(beds: int) -> None:
+    """Through a strong winter the year's share is within 5 % of simulation, the worst month's and the waits as noted."""
+    demand = Demand(6.0, LengthOfStay(4.0), month_factors=WINTER)
+    curve = waiting(demand, [beds])
+    ward = simulate_ward(demand, beds, seed=1, when_full="waits")
+    worst = int(np.argmax(ward.by_month))
+
+    assert curve.turn_away_probability[0] == pytest.approx(ward.turn_away_probability, rel=0.05)
+    assert curve.by_month[worst, 0] == pytest.approx(ward.by_month[worst], rel=0.125)
+    assert 0.95 < curve.waits.mean_hours[0] / ward.mean_wait_hours < 1.3
+    assert curve.waits.share_over(12.0)[0] == pytest.approx(ward.share_waiting_over(12.0), rel=0.08)
+
+
+def test_a_queue_is_carried_into_the_next_month() -> None:
+    """After a winter with more patients than beds those who come in spring still wait, though the beds are enough then."""
+    demand = Demand(6.0, EXPONENTIAL, month_factors=(1.5, 1.4, 1.2, *(0.8777777777777778,) * 9))
+    curve = waiting(demand, [27])
+    april_alone = float(erlang_c(24.0 * 0.88, 27))
+    ward = simulate_ward(demand, 27, seed=1, when_full="waits")
+
+    assert ward.by_month[3] > 3.0 * april_alone
+    assert curve.by_month[3, 0] > 3.0 * april_alone
+    assert any("carried into the next" in note for note in curve.notes)
+
+
+@pytest.mark.parametrize("beds", [45, 50])
+def test_weekdays_against_simulation(beds: int) -> None:
+    """A strong weekly rhythm keeps up to a sixth more patients waiting than the line, as noted."""
+    week = (1.2097, 1.4713, 1.3779, 1.0, 0.6221, 0.5287, 0.7903)
+    demand = Demand(10.0, EXPONENTIAL, weekday_factors=week)
+    curve = waiting(demand, [beds])
+    ward = simulate_ward(demand, beds, seed=1, when_full="waits")
+
+    assert -0.05 < 1.0 - curve.turn_away_probability[0] / ward.turn_away_probability < 1.0 / 6.0
+    assert curve.turn_away_probability[0] > float(erlang_c(40.0, beds))
+    assert any("weekly rhythm" in note for note in curve.notes)
+
+
+def test_booked_lists_wait_too() -> None:
+    """Booked patients share the queue: the share who wait is near that of simulation, and so is the occupancy."""
+    booked = (BookedList((4, 4, 4, 4, 4, 0, 0), LengthOfStay(2.0)),)
+    demand = Demand(4.0, EXPONENTIAL, booked=booked)
+    curve = waiting(demand, [25, 28])
+    for place, beds in enumerate((25, 28)):
+        ward = simulate_ward(demand, beds, seed=1, when_full="waits")
+        assert curve.turn_away_probability[place] == pytest.approx(ward.turn_away_probability, rel=0.2)
+        assert curve.occupancy[place] == pytest.approx(ward.occupancy, rel=0.01)
+
+
+def test_seasons_of_no_size_change_nothing() -> None:
+    """A season that hardly swings gives the steady ward's answer, though it is worked out in another way."""
+    flat = Demand(6.0, LengthOfStay(4.0, 1.4))
+    ripple = flat.with_changes(month_factors=(1.0001, 0.9999) * 6)
+    one, other = waiting(flat, [25, 28, 34, 40]), waiting(ripple, [25, 28, 34, 40])
+    assert other.turn_away_probability == pytest.approx(one.turn_away_probability, rel=1e-2)
+    assert other.waits.mean_hours == pytest.approx(one.waits.mean_hours, rel=1e-2)
+    assert other.occupancy == pytest.approx(one.occupancy, rel=1e-6)
+
+
+def test_a_very_quiet_ward() -> None:
+    """A patient every three years, more in winter, uses a bed four thousandths of the time and seldom finds it taken."""
+    curve = waiting(Demand(0.001, EXPONENTIAL, month_factors=WINTER), [1, 2])
+    assert curve.occupancy == pytest.approx([0.004, 0.002], rel=1e-5)
+    # one bed: the share who wait is the share of time it is used, a little more with the season
+    assert 0.004 < curve.turn_away_probability[0] < 0.0043
+
+
+def chain_with_patience(load: float, beds: int, patience: float) -> tuple[float, float, float]:
+    """Solve the birth–death chain: the share who find no bed, the share who give up, the beds in use ÷ beds."""
+    states = np.arange(1, 6000)
+    leaving = np.minimum(states, beds) + np.maximum(states - beds, 0) / patience
+    logs = np.concatenate([[0.0], np.cumsum(np.log(load) - np.log(leaving))])
+    shares = np.exp(logs - logs.max())
+    shares /= shares.sum()
+    present = np.arange(6000)
+    queue = float(np.maximum(present - beds, 0) @ shares)
+    return float(shares[beds:].sum()), queue / patience / load, float(np.minimum(present, beds) @ shares) / beds
+
+
+@pytest.mark.parametrize(
+    ("load", "beds", "patience"),
+    [
+        (48.0, 50, 2.0),
+        (24.0, 31, 0.1),
+        (24.0, 20, 0.05),
+        (24.0, 10, 1.0),
+        (0.5, 1, 3.0),
+        (5.0, 40, 0.1),
+        (900.0, 800, 0.2),
+    ],
+)
+def test_patience_against_the_chain(load: float, beds: int, patience: float) -> None:
+    """Who waits, who gives up and how full the ward is agree with the chain solved state by state, at any load."""
+    ours = erlang_a(load, beds, patience)
+    full, give_up, in_use = chain_with_patience(load, beds, patience)
+    assert float(ours.share_who_wait) == pytest.approx(full, rel=1e-9)
+    assert float(ours.share_who_give_up) == pytest.approx(give_up, rel=1e-9, abs=1e-14)
+    assert float(ours.occupancy) == pytest.approx(in_use, rel=1e-9)
+
+
+def test_fifty_servers_with_patience() -> None:
+    """48 a minute, one minute each, 50 servers, two minutes' patience: 3 wait on average, 93 % busy, 3.1 % give up."""
+    # Source: Mandelbaum & Zeltyn 2007, Service engineering in action: the Palm/Erlang-A queue (remembered, recomputed);
+    # fewer by 3.1 % without giving up: 7 wait
+    ours = erlang_a(48.0, 50, 2.0)
+    assert 48.0 * float(ours.mean_wait) == pytest.approx(2.968, abs=5e-4)
+    assert float(ours.occupancy) == pytest.approx(0.9303, abs=5e-5)
+    assert float(ours.share_who_give_up) == pytest.approx(0.031, abs=5e-4)
+    fewer = waiting(steady(48.0 * (1.0 - 0.031), stay_hours=1.0 / 60.0), [50]).waits.mean_hours[0]
+    assert 48.0 * (1.0 - 0.031) * 60.0 * fewer == pytest.approx(6.832, abs=0.01)
+
+
+def test_patience_against_simulation() -> None:
+    """Who waits lies in the simulated ward's 99 % interval; the waits, ended by a bed or by giving up, agree too."""
+    run = WardRun(patience_days=0.5)
+    ward = simulate_ward(Demand(6.0, EXPONENTIAL), 24, seed=3, when_full="waits", run=run)
+    ours = erlang_a(24.0, 24, 0.5 / 4.0)
+    low, high = ward.interval_at(0.99)
+
+    assert low <= float(ours.share_who_wait) <= high
+    assert ward.gave_up == pytest.approx(float(ours.share_who_give_up), rel=0.03)
+    assert ward.mean_wait_hours == pytest.approx(float(ours.mean_wait) * 96.0, rel=0.03)
+    for hours in (1.0, 4.0, 12.0):
+        assert ward.share_waiting_over(hours) == pytest.approx(float(ours.share_waiting_over(hours / 96.0)), rel=0.04)
+
+
+def test_patience_between_leaving_and_waiting() -> None:
+    """With next to no patience the formula is Erlang's loss, with next to no end of it Erlang's delay."""
+    beds = np.array([26, 30, 36])
+    short, long = erlang_a(24.0, beds, 1e-6), erlang_a(24.0, beds, 1e5)
+    assert short.share_who_give_up == pytest.approx(erlang_b(24.0, beds), rel=1e-4)
+    assert long.share_who_wait == pytest.approx(erlang_c(24.0, beds), rel=1e-2)
+
+
+def test_patience_at_the_edges() -> None:
+    """No beds: everyone waits and gives up; no demand: nobody; far more beds than patients: no trouble with the digits."""
+    edge = erlang_a([3.0, 0.0, 1.0, 740.0], [0, 5, 2000, 1], [1.0, 1.0, 5.0, 100.0])
+    assert edge.share_who_wait == pytest.approx([1.0, 0.0, 0.0, 1.0])
+    assert edge.share_who_give_up == pytest.approx([1.0, 0.0, 0.0, 739.0 / 740.0], rel=1e-9)
+    assert edge.share_waiting_over(0.5)[0] == pytest.approx(math.exp(-0.5))
+    for bad in (0.0, -1.0, math.nan, math.inf):
+        with pytest.raises(ImpossibleFigure, match="patience of"):
+            erlang_a(1.0, 2, bad)
