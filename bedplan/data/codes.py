@@ -19,7 +19,8 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
-TEST_KEY = "test|dummy|zzz|training"
+# At the start of a key, or as a word of its own: a random key may hold such letters by chance.
+TEST_KEY = r"^(test|dummy|zzz|training)|[^a-z](test|dummy|training)([^a-z]|$)"
 OLDEST_YEARS = 120
 MOST_CATEGORIES = 1_000
 IDENTITY_SHARE = 0.1  # of a column's distinct values that look like identities: the column is not kept

@@ -9,7 +9,7 @@ import numpy as np
 import pandas as pd
 import pyarrow.compute as pc
 
-from bedplan.data.choices import DATE_ORDERS, DateQuestion
+from bedplan.data.choices import DATE_ORDERS, DateQuestion, check_date_order
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE, TimesRead, read_times
 from bedplan.errors import UnreadableRecords
 
@@ -34,6 +34,7 @@ def start_and_end(
     Raises:
         UnreadableRecords: dates whose order somebody must say; the question is in ``.question``.
     """
+    check_date_order(date_order)
     columns, notes = _columns(text)
     row_by_row = date_order == ROW_BY_ROW
     read = _row_by_row(name, columns) if row_by_row else _read_all(name, columns, date_order, time_zone)
@@ -50,6 +51,7 @@ def read_ordered(column: pa.ChunkedArray, name: str, date_order: str | None) -> 
     Raises:
         UnreadableRecords: dates whose order somebody must say; the question is in ``.question``.
     """
+    check_date_order(date_order)
     return _read_all(name, {"start": column}, date_order, None)["start"].seconds
 
 
