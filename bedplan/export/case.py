@@ -21,8 +21,8 @@ if TYPE_CHECKING:
     from bedplan.models import BedCurve
 
 DAYS_PER_YEAR = 365.0
-# the model that says nothing about such a ward: nobody waits who leaves; no steady line where a queue carries over
-LEFT_OUT = {"leaves": "waiting", "waits": "erlang_loss"}
+# the model that says nothing about such a ward: nobody waits who leaves, and who waits is not turned away by seasons
+LEFT_OUT = {"leaves": "waiting", "waits": "seasonal_loss"}
 ALIKE = 0.02  # months this near each other have no worst one worth naming
 
 
@@ -144,7 +144,14 @@ class WardCase:
 
     def notes(self) -> tuple[str, ...]:
         """Return the notes of the ward and of its curve, each once."""
-        return tuple(dict.fromkeys([*self.ward.notes, *self.curve.notes]))
+        found = [*self.ward.notes, *self.curve.notes]
+        if self.model == "unlimited_beds" and "waiting" in self.curves:
+            share = self.curves["waiting"].at(self.ward.beds).turn_away_probability
+            found.append(
+                "Patients who find the ward full are placed elsewhere at once here. If they wait in line instead, more find "
+                f"it full: {wording.one_in(share)} with today's beds. Set the limit on waits to plan for that."
+            )
+        return tuple(dict.fromkeys(found))
 
 
 def case_for(
