@@ -21,8 +21,8 @@ if TYPE_CHECKING:
     from bedplan.models import BedCurve
 
 DAYS_PER_YEAR = 365.0
-# the model that says nothing about such a ward: nobody waits who leaves, and who waits is not turned away by seasons
-LEFT_OUT = {"leaves": "waiting", "waits": "seasonal_loss"}
+# the models that say nothing about such a ward, or would slow a slider for a line that nobody asked for
+LEFT_OUT = {"leaves": {"waiting"}, "waits": {"seasonal_loss", "waiting"}}
 ALIKE = 0.02  # months this near each other have no worst one worth naming
 
 
@@ -145,11 +145,10 @@ class WardCase:
     def notes(self) -> tuple[str, ...]:
         """Return the notes of the ward and of its curve, each once."""
         found = [*self.ward.notes, *self.curve.notes]
-        if self.model == "unlimited_beds" and "waiting" in self.curves:
-            share = self.curves["waiting"].at(self.ward.beds).turn_away_probability
+        if self.model == "unlimited_beds":
             found.append(
-                "Patients who find the ward full are placed elsewhere at once here. If they wait in line instead, more find "
-                f"it full: {wording.one_in(share)} with today's beds. Set the limit on waits to plan for that."
+                "Patients who find the ward full are taken to be placed elsewhere at once. If they wait in line instead, more "
+                "find it full than this says: set the limit on waits to plan for that."
             )
         return tuple(dict.fromkeys(found))
 
@@ -167,7 +166,8 @@ def case_for(
 
     Checked by: tests/export/test_justification.py
     """
-    curves = {model: ward.curve(model) for model in MODELS if model != LEFT_OUT[ward.when_full]}
+    left_out = LEFT_OUT[ward.when_full] - ({"waiting"} if isinstance(rule, WaitLimit) else set())
+    curves = {model: ward.curve(model) for model in MODELS if model not in left_out}
     case = WardCase(ward, curves, rule, None, assumptions, settings)
     try:
         decision = decide(case.curve, rule)
