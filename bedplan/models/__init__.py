@@ -14,6 +14,7 @@ from bedplan.models.seasonal import seasonal_loss
 from bedplan.models.simulation import SimulatedWard, simulate_ward
 from bedplan.models.simulation_run import Closure, WardRun
 from bedplan.models.stay import LengthOfStay
+from bedplan.models.stay_fit import SeenStays, StayFit, fit_stay
 from bedplan.models.unlimited import unlimited_beds
 from bedplan.models.waiting import waiting
 from bedplan.models.year import offered_load_by_hour
@@ -36,7 +37,9 @@ __all__ = [
     "Demand",
     "LengthOfStay",
     "Patience",
+    "SeenStays",
     "SimulatedWard",
+    "StayFit",
     "Waits",
     "WardRun",
     "average_beds",
@@ -47,6 +50,7 @@ __all__ = [
     "erlang_b_log",
     "erlang_c",
     "erlang_loss",
+    "fit_stay",
     "offered_load_by_hour",
     "seasonal_loss",
     "simulate_ward",
