@@ -42,7 +42,7 @@ def swing_when_full(demand: Demand) -> float:
     The rest of a group comes at the very moment the first of it takes a bed, however long they then stay. So for
     groups ω counts in part, and the ½ of exponential stays for the rest: half and half for uneven stays, 7 to 3 for
     even ones. The parts are fitted to exact phase-type chains of pairs and threes, where they leave an error of
-    5 % of the share turned away; ω alone is up to 25 % off.
+    6 % of the share turned away; ω alone is up to 25 % off.
 
     Checked by: tests/models/test_clusters.py
     """

@@ -116,7 +116,7 @@ def _hours_of_leaving(stay: LengthOfStay, leaving: Leaving, horizon: int) -> Arr
 
 def _held_by_hour(stay: LengthOfStay, leaving: Leaving, *, at_end: bool) -> Array:
     """Return the share holding a bed k hours on by hour of the week of arrival, ``(168, whole weeks of hours)``."""
-    horizon = _horizon(stay, leaving.turnaround_hours * _HOUR, HOURS_A_WEEK, 2 * HOURS_A_YEAR, 1e-6)
+    horizon = _horizon(stay, leaving.turnaround_hours * _HOUR, HOURS_A_WEEK, 2 * HOURS_A_YEAR, 2e-5)
     freed = _hours_of_leaving(stay, leaving, horizon)
     whole, part = divmod(leaving.turnaround_hours, 1.0)
     freed = np.hstack([np.zeros((HOURS_A_WEEK, int(whole) + 1)), freed])[:, : horizon + 1]
@@ -142,6 +142,8 @@ def hours_held(stay: LengthOfStay, leaving: Leaving, period: int, *, at_end: boo
 
     Checked by: tests/models/test_year.py
     """
+    if leaving.has_rhythm and period != HOURS_A_WEEK:
+        return hours_held(stay, leaving, HOURS_A_WEEK, at_end=at_end)
     if leaving.has_rhythm:
         held = _held_by_hour(stay, leaving, at_end=at_end)
     else:

@@ -34,7 +34,7 @@ _IN_HOUR = (1.0 - _POLE / 6.0) * 6.0 / (2j * _POLE.imag)
 _COARSE_STEPS = 7
 _FASTEST_LEAVING = 500.0
 _LEAVING_A_PART = 2.0
-_SETTLED = 3e-4
+_SETTLED, _SETTLED_START = 8e-4, 3e-4
 _MOST_PARTS = 4
 _MOST_LEAVING_PARTS = 8
 
@@ -168,7 +168,7 @@ def _settled_start(wards: _Wards, rhythm: Rhythm, rates: Array) -> Array:
         for come, leave in zip(*coarse, strict=True):
             state, _ = wards.step(state, come, leave)
         states.append(wards.scaled(state))
-        if wards.total(np.abs(states[-1] - states[-2])).max() < _SETTLED:
+        if wards.total(np.abs(states[-1] - states[-2])).max() < _SETTLED_START:
             break
         if turn % 2:
             states = [_jump_ahead(wards, states[-3:])]

@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from bedplan.models.erlang import erlang_b_table
-from bedplan.models.leaving import HOURS_A_YEAR, Leaving, beds_held, hours_held
+from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_held, hours_held
 from bedplan.models.periodic_chain import Group, Rhythm, fullness, lowest_count
 from bedplan.models.year import mean_week, month_of_hour, unbooked_by_hour
 
@@ -30,9 +30,10 @@ if TYPE_CHECKING:
 LARGEST_CORRECTED_LOAD = 1_500.0
 _LARGE_LOAD = 150.0
 _STATES_IN_ALL = 2_600
-_FEWEST_COUNTS, _COUNTS_OF_POLYNOMIAL, _MOST_COUNTS = 8, 14, 40
+_FEWEST_COUNTS, _MOST_COUNTS, _COUNTS_OF_SEASON = 10, 40, 16
 _FINE = 257
 _STEP_HOURS = 24
+_MOSTLY_BOOKED = 0.8
 _TOO_FEW_TO_COMPARE = 1e-8
 
 
@@ -82,8 +83,23 @@ def between(nodes: Array, at: Array) -> Array:
     return weights
 
 
+def _joined(nodes: Array, at: Array) -> Array:
+    """Return the weights of a smooth curve through all nodes at points between them: ``(points, nodes)``.
+
+    Each stretch is a cubic through the four nodes nearest to it, so that a kink disturbs its neighbours only.
+    """
+    if nodes.size < 4:
+        return between(nodes, at)
+    first = np.clip(np.searchsorted(nodes, at, side="right") - 2, 0, nodes.size - 4)
+    weights = np.zeros((at.size, nodes.size))
+    for start in np.unique(first):
+        here = first == start
+        weights[here, start : start + 4] = between(nodes[start : start + 4], at[here])
+    return weights
+
+
 def _spread(low: float, high: float, count: int) -> Array:
-    """Return points from low to high, closer at both ends (Chebyshev), as a polynomial through them needs."""
+    """Return points from low to high, closer at both ends (Chebyshev)."""
     return (low + high) / 2.0 - (high - low) / 2.0 * np.cos(np.pi * np.arange(count) / max(count - 1, 1))
 
 
@@ -136,11 +152,12 @@ def _compared(
 ) -> list[list[Array]]:
     """Compare chain and first cut: the points of spare beds, and the logarithms for unbooked and booked patients.
 
-    A polynomial joins the bed counts worked out, unless booked lists, which can put a kink at a bed count, or few
-    beds ask for many counts and straight lines.
+    A smooth curve joins the bed counts worked out; straight lines where every count is, or where nearly everyone is
+    booked, which can put a kink at a count.
     """
+    kinks = patients[1].sum() > _MOSTLY_BOOKED * (patients[0].sum() + patients[1].sum())
     levels = loads.shape[1]
-    most_counts = _MOST_COUNTS if rhythm.booked else _COUNTS_OF_POLYNOMIAL
+    most_counts = _MOST_COUNTS if part.size == HOURS_A_WEEK else _COUNTS_OF_SEASON
     beds = [_counts(loads[:, level], levels, most_counts) for level in range(levels)]
     chain = fullness(rhythm, beds)
     found: list[list[Array]] = [[], [], []]
@@ -149,9 +166,9 @@ def _compared(
         load = loads[:, level].mean()
         points = (counts - load) / np.sqrt(load)
         weights = np.eye(points.size)
-        if not rhythm.booked and counts[-1] - counts[0] >= counts.size:
+        if not kinks and counts[-1] - counts[0] >= counts.size:
             fine = np.linspace(points[0], points[-1], _FINE)
-            points, weights = fine, between(points, fine)
+            points, weights = fine, _joined(points, fine)
         found[0].append(points)
         for kind, full in enumerate((chain.unbooked[level], chain.booked[level])):
             found[1 + kind].append(_log_ratio(full, first_cut, patients[kind], part) @ weights.T)

@@ -34,6 +34,7 @@ _GROUPS = 12 * 7
 _GROUP_OF_HOUR = month_of_hour * 7 + weekday_of_hour
 _MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 
+_WIDEST_LEVELS = 5.0
 _METHOD = (
     "With seasons: a chain of the ward's beds, hour by hour through the week and day by day through the year. Exact "
     "for exponential stays; with others at most 2 % of the figure too low and 7 % too high in all trials."
@@ -84,7 +85,8 @@ def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[_TurnedAway
     first_cut = loss_table(loads.ravel(), counts, swing).reshape(counts.size, *loads.shape)
     levels = np.outer(rates, _level_of_groups(demand))
     likely = weights > 1e-6 * weights.max()
-    week = rhythm_correction(demand, float(levels[likely].min()), float(levels[likely].max()))
+    highest = float(levels[likely].max())
+    week = rhythm_correction(demand, max(float(levels[likely].min()), highest / _WIDEST_LEVELS), highest)
     season = season_correction(demand)
     factors = [np.ones((rates.size, _GROUPS, 1))] * 2
     for correction, level, part in ((week, levels, _WEEKDAY), (season, np.tile(rates[:, None], _GROUPS), _MONTH)):

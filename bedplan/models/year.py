@@ -119,6 +119,8 @@ def patients_by_hour(demand: Demand) -> Array:
 
     Checked by: tests/models/test_year.py
     """
+    if demand.turnaround_hours == 0:
+        return offered_load_by_hour(demand)
     booked = _booked_load(demand, turnaround=False)
     return _fixed(_unbooked_load(demand, turnaround=False) + np.tile(booked, WEEKS))
 

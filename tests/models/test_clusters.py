@@ -87,12 +87,12 @@ OTHER_STAYS = {
     ("size", "load", "beds"), [(2, 6.0, 9), (2, 9.0, 12), (2, 9.0, 16), (3, 8.0, 12), (3, 8.0, 17)]
 )
 def test_other_stays_act_through_their_overlap(stay: str, size: int, load: float, beds: int) -> None:
-    """With even stays groups turn more away, with uneven ones fewer; the model follows the exact chain to 5 %."""
+    """With even stays groups turn more away, with uneven ones fewer; the model follows the exact chain to 6 %."""
     phases, spread = OTHER_STAYS[stay]
     exact = exact_groups(load, beds, size, phases)
     swing = swing_when_full(Demand(load, spread, clustering=float(size)))
 
-    assert loss_table(np.array([load]), np.array([beds]), swing)[0, 0] == pytest.approx(exact, rel=0.05)
+    assert loss_table(np.array([load]), np.array([beds]), swing)[0, 0] == pytest.approx(exact, rel=0.06)
     exponential_stays = exact_groups(load, beds, size)
     assert (exact > exponential_stays * 1.01) if stay == "even" else (exact < exponential_stays * 0.99)
 

@@ -71,7 +71,7 @@ def test_published_weekly_and_yearly_waves() -> None:
 
     Source: Massey & Whitt 1994, Annals of Applied Probability 4(4) for the question; figures recomputed by a periodic
     Markov chain with two solvers: weekly 10 + 5 sin at 45 and 55 beds 7.835 % and 1.103 %, yearly 10 + 2 sin at 45
-    beds 7.276 %.
+    beds 7.276 %. Erlang's formula at each hour's own load says 6.293 % and 0.854 % for the weekly wave.
     """
     turn = 2 * np.pi * (HOURS + 0.5) / HOURS_A_WEEK
     weekly = share_full(rhythm_of((10 + 5 * np.sin(turn)) / 24, stays(4.0)), [45, 55])
@@ -83,6 +83,10 @@ def test_published_weekly_and_yearly_waves() -> None:
     at_end = 40 + 8 / (1 + (4 * speed) ** 2) * reply
     yearly = share_full(Rhythm(coming[:, None], at_end[:, None]), [45])
 
+    wave = 10 + 5 * np.sin(turn)
+    load = beds_held(wave / 24, hours_held(stays(4.0), Leaving(), HOURS_A_WEEK))
+    own_load = [wave @ erlang_b(load, beds) / wave.sum() for beds in (45, 55)]
+    assert own_load == pytest.approx([0.06293, 0.00854], abs=6e-6)
     assert weekly == pytest.approx([0.07835, 0.01103], abs=6e-6)
     assert yearly == pytest.approx([0.07276], abs=6e-6)
 

@@ -211,6 +211,21 @@ def test_busy_levels_follow_each_kind_of_hour() -> None:
             assert kind.overfull(50)[one] == pytest.approx(stats.poisson.sf(50, hours).mean(), abs=1e-6)
 
 
+def test_seen_at_a_random_hour_the_census_swings_more() -> None:
+    """Variance ÷ mean of the beds wanted, over all hours: 1 + variance of the load over time ÷ its mean.
+
+    Source: Whitt 2014, Operations Research Letters 42:311-318.
+    """
+    demand = Demand(10.0, EXPONENTIAL, weekday_factors=WEEK)
+    load = offered_load_by_hour(demand)
+    counts = np.arange(1, 140)
+    chance = chance_of(demand, counts, Watch(np.ones(HOURS_A_YEAR), np.zeros(HOURS_A_YEAR, dtype=np.int64)))[0]
+    mean = chance.sum()
+
+    assert mean == pytest.approx(40.0, rel=1e-6)
+    assert (2 * counts - 1) @ chance / mean - mean == pytest.approx(1 + load.var() / 40.0, rel=1e-5)
+
+
 def test_busy_levels_of_a_very_large_ward() -> None:
     """Fifteen thousand beds wanted: read between counts, the 1-in-20 level is still Poisson's to a bed or two."""
     levels = busy_levels(Demand(3_750.0, EXPONENTIAL))
