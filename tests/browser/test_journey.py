@@ -42,6 +42,12 @@ def sentence(page: Page) -> str:
     return page.get_by_role("heading", name=re.compile(r"has \d+ staffed")).inner_text()
 
 
+def settle(page: Page) -> None:
+    """Wait until the page has caught up with the last key."""
+    page.wait_for_timeout(500)
+    page.locator('[data-testid="stApp"][data-test-script-state="notRunning"]').wait_for()
+
+
 def download(page: Page, button: str) -> bytes:
     """Press a download button and return the file."""
     with page.expect_download() as waiting:
@@ -95,6 +101,7 @@ def test_from_a_file_to_paper(page: Page, server: str, browser: BrowserContext, 
     )
     page.wait_for_url(re.compile(r"demand=25"))
     page.get_by_text(re.compile(r"\+25 %")).first.wait_for()
+    settle(page)
     assert_address_is_bare(page, content)
     said = sentence(page)
     assert said != before
