@@ -10,7 +10,7 @@ from scipy import special
 
 from bedplan.models.bed_curve import BedCurve, Waits, bed_counts
 from bedplan.models.waiting_spread import spread_of, wait_ratio
-from bedplan.models.waiting_year import Step, settled_queue, share_who_wait
+from bedplan.models.waiting_year import Pace, settled_queue, share_who_wait
 from bedplan.models.year import (
     HOURS_A_WEEK,
     HOURS_A_YEAR,
@@ -31,8 +31,11 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
 
 _STEPS_HOURS = (24, 12, 6, 3, 2, 1)
-_RATES = 7
+_STEADY_RATES, _RATES = 31, 7
+_MOST_YEARS = 12
 _NO_DRIFT = 1e-4
+# standard deviations: rates beyond are one in a thousand million
+_FARTHEST = 6.0
 # a load this near its beds counts as reaching them: its queue would take lifetimes to settle
 _TOO_NEAR = 1e-6
 
@@ -62,11 +65,12 @@ class _Queue:
     in_use: Array
 
 
-def _rates(variation: float) -> tuple[Array, Array]:
-    """Return a few rates of arrival, with mean 1 and this deviation ÷ mean, and the chance of each (Gauss's rule)."""
+def _rates(variation: float, many: int) -> tuple[Array, Array]:
+    """Return some rates of arrival, with mean 1 and this deviation ÷ mean, and the chance of each (Gauss's rule)."""
     if variation < _NO_DRIFT:
         return np.ones(1), np.ones(1)
-    nodes, weights = np.polynomial.hermite_e.hermegauss(_RATES)
+    nodes, weights = np.polynomial.hermite_e.hermegauss(many)
+    nodes, weights = nodes[np.abs(nodes) < _FARTHEST], weights[np.abs(nodes) < _FARTHEST]
     chance = weights / weights.sum()
     rates = special.gammaincinv(variation**-2, special.ndtr(nodes)) * variation**2
     return rates / (rates @ chance), chance
@@ -83,11 +87,11 @@ def _period_and_step(demand: Demand, by_hour: Array, mean_days: float) -> tuple[
 
 def _load_of(demand: Demand) -> _Load:
     """Work out what is wanted in each step of the period."""
-    rates, chance = _rates(demand.rate_variation)
     by_hour, present = offered_load_by_hour(demand), patients_by_hour(demand)
     mean_days = by_hour.mean() / demand.total_arrivals_per_day
     period, hours = _period_and_step(demand, by_hour, mean_days)
     steps = period // hours
+    rates, chance = _rates(demand.rate_variation, _STEADY_RATES if steps == 1 else _RATES)
     booked_wanted = np.tile(booked_load_in_week(demand), period // HOURS_A_WEEK)
     wanted = [
         sheet[:period].reshape(steps, hours).mean(axis=1) for sheet in (unbooked_load_by_hour(demand), booked_wanted)
@@ -127,8 +131,9 @@ def _queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> _Queue:
         wait, days = np.where(settles, queue.wait, 1.0), np.where(settles, queue.wait_days, np.inf)
         in_use = queue.in_use
     elif rates.size:
-        step = Step(load.step_days, load.mean_days)
-        year = settled_queue(spread_of(demand), counts, load.wanted[:, rates], columns, step)
+        # an uncertain rate brings rates at which the queue takes many years: they hardly count, and are cut short
+        pace = Pace(load.step_days, load.mean_days, _MOST_YEARS if load.chance.size == 1 else 4)
+        year = settled_queue(spread_of(demand), counts, load.wanted[:, rates], columns, pace)
         wait[:, settles], days[:, settles], in_use[settles] = year.wait, year.wait_days, year.in_use
     return _Queue(wait, days, in_use)
 

@@ -8,6 +8,7 @@ Symbols: a(t) beds wanted if nobody ever waited, c beds, m mean time a bed is he
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, fields
 from typing import TYPE_CHECKING, NamedTuple
 
@@ -26,7 +27,6 @@ if TYPE_CHECKING:
 _USES = np.unique(np.concatenate([np.linspace(1e-4, 0.98, 100), 1.0 - np.geomspace(1e-8, 0.3, 90)]))
 _POINTS = 500
 _LONGEST_QUEUE = 1e6
-_MOST_STEPS = 12 * 364
 _SETTLED = 3e-8
 _FEW = 1e-3
 
@@ -50,11 +50,12 @@ def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -
     return np.where(steady, blocked / np.where(steady, 1.0 - use * (1.0 - blocked), 1.0), 1.0)
 
 
-class Step(NamedTuple):
-    """How long a step of the year is, and how long a bed is held on average."""
+class Pace(NamedTuple):
+    """How long a step is, how long a bed is held on average, and after how many years a queue is taken as it is."""
 
     step_days: float
     mean_days: float
+    most_years: int
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -159,7 +160,7 @@ def _a_period(columns: _Columns, wanted: Array, queue: Array, share: float, pres
     return queue
 
 
-def _settled(columns: _Columns, wanted: Array, share: float) -> tuple[Array, Array]:
+def _settled(columns: _Columns, wanted: Array, pace: Pace) -> tuple[Array, Array]:
     """Return x through a period, a year or a week, that comes back to itself, and the mean beds in use, by column.
 
     A queue a period on is nearly a straight line of the queue it starts from: two periods give the line, and the line
@@ -171,14 +172,15 @@ def _settled(columns: _Columns, wanted: Array, share: float) -> tuple[Array, Arr
     keeps_few = columns.waits(busiest)[0][0] < _FEW
     left = np.flatnonzero((wanted.max(axis=0) >= columns.beds) | ~keeps_few)
     queue, in_use = light[0, left], wanted.mean(axis=0)
-    rounds = _MOST_STEPS // (2 * wanted.shape[0])
-    for _ in range(rounds):
+    share = pace.step_days / pace.mean_days
+    period_days = wanted.shape[0] * pace.step_days
+    for _ in range(math.ceil(182.0 * pace.most_years / period_days)):
         some, asked = columns.only(left), wanted[:, left]
         sheet = np.empty(asked.shape)
         after = _a_period(some, asked, queue, share, sheet)
         later = _a_period(some, asked, after, share, sheet)
         present[:, left], in_use[left] = sheet, some.in_use(sheet).mean(axis=0)
-        moves = np.abs(later - after) > _SETTLED * some.beds * wanted.shape[0]
+        moves = np.abs(later - after) > _SETTLED * some.beds * period_days
         if not moves.any():
             break
         queue = _where_it_comes_back(queue, after, later)[moves]
@@ -206,7 +208,7 @@ class SettledQueue:
 
 
 def settled_queue(
-    spread: Spread, counts: NDArray[np.int64], wanted: Array, columns: NDArray[np.int64], step: Step
+    spread: Spread, counts: NDArray[np.int64], wanted: Array, columns: NDArray[np.int64], pace: Pace
 ) -> SettledQueue:
     """How does the queue go through a year, or a week, that repeats for ever?
 
@@ -220,6 +222,6 @@ def settled_queue(
     """
     wards = _columns(spread, counts).only(columns)
     quietest = int(np.argmin(wanted[:, 0]))
-    present, in_use = _settled(wards, np.roll(wanted, -quietest, axis=0), step.step_days / step.mean_days)
+    present, in_use = _settled(wards, np.roll(wanted, -quietest, axis=0), pace)
     wait, stays = wards.waits(np.roll(present, quietest, axis=0))
-    return SettledQueue(wait, step.mean_days * stays, in_use)
+    return SettledQueue(wait, pace.mean_days * stays, in_use)
