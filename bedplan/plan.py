@@ -16,7 +16,7 @@ from bedplan.models import Demand, LengthOfStay
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
-    from bedplan.data import DemandEstimate
+    from bedplan.data import DemandEstimate, MonthlyReturn
     from bedplan.decision.ward import WhenWardIsFull
 
 PLAN_FORMAT = 1
@@ -161,6 +161,32 @@ def _facts(estimate: DemandEstimate) -> tuple[tuple[str, str, str], ...]:
             "around rhythm and a 28-day level; 1 = chance alone",
         ),
         ("Drift of demand (SD ÷ mean)", f"{demand.rate_variation:.3f}", "what is slower than a stay"),
+    )
+
+
+def from_return(returned: MonthlyReturn, ward: str) -> Baseline:
+    """What does a monthly return say of a ward? Averages and months; how far stays and arrivals swing is assumed.
+
+    Raises:
+        ImpossibleFigure: no bed-days or no discharges.
+
+    Checked by: tests/test_plan.py
+    """
+    demand = returned.demand(ward)
+    rows = returned.table[returned.table["ward"] == ward]
+    days = float(rows["days"].sum())
+    known = f"{returned.name}, {len(rows)} months"
+    return Baseline(
+        name=ward,
+        demand=demand,
+        admissions_per_year=float(rows["discharges"].sum()) / days * 365.0,
+        beds=round(float(rows["available"].sum()) / days),
+        facts=(
+            ("Discharges a year", f"{float(rows['discharges'].sum()) / days * 365.0:,.0f}", known),
+            ("Mean stay", wording.days(demand.length_of_stay.mean_days), f"{known}: bed-days ÷ discharges"),
+            ("Spread of stay (SD ÷ mean)", f"{demand.length_of_stay.variation:.2f}", "assumed"),
+        ),
+        notes=("Based on averages only: how far demand and stays swing is assumed, not measured.", *returned.cannot),
     )
 
 

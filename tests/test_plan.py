@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import pytest
 
+from bedplan.data import read_monthly_return
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 from bedplan.plan import (
@@ -14,10 +17,14 @@ from bedplan.plan import (
     changed_demand,
     changed_stay,
     from_json,
+    from_return,
     from_totals,
     peaked,
     planned_ward,
 )
+
+if TYPE_CHECKING:
+    from pathlib import Path
 
 WINTER = (1.3, 1.18, 1.06, 0.97, 0.9, 0.84, 0.8, 0.8, 0.88, 1.0, 1.1, 1.17)
 
@@ -113,3 +120,15 @@ def test_a_later_format_is_named() -> None:
     """A plan of a later version says which format it has."""
     with pytest.raises(UnreadableRecords, match="format 99"):
         from_json('{"plan": 99, "records": "", "settings": {}, "typed": {}, "answers": {}}')
+
+
+def test_a_monthly_return_makes_a_ward(demo_data: Path) -> None:
+    """A ward known by its monthly return has the return's own load, beds and discharges, and says what is assumed."""
+    returned = read_monthly_return(demo_data / "monthly_return.csv")
+    ward = from_return(returned, "Merlin")
+    rows = returned.table[returned.table["ward"] == "Merlin"]
+
+    assert ward.beds == round(rows["available"].sum() / rows["days"].sum())
+    assert ward.admissions_per_year == pytest.approx(rows["discharges"].sum() / rows["days"].sum() * 365)
+    assert ward.demand.offered_load == pytest.approx(rows["occupied"].sum() / rows["days"].sum(), rel=0.02)
+    assert any("averages only" in note for note in ward.notes)

@@ -13,6 +13,7 @@ from bedplan.data.logs import EventLog, read_bed_requests, read_cancellations, r
 from bedplan.data.preview import ColumnPreview, preview_columns
 from bedplan.data.reconciling import CensusCheck, Flows, check_census, flows
 from bedplan.data.records import Records, read_records
+from bedplan.data.repairs import RepairEffect, what_repairs_change
 from bedplan.data.report import IntakeReport
 from bedplan.data.returns import MonthlyReturn, read_monthly_return
 from bedplan.data.wardlinks import WardLink
@@ -37,6 +38,7 @@ __all__ = [
     "LongStays",
     "MonthlyReturn",
     "Records",
+    "RepairEffect",
     "Uncertainty",
     "WardDescription",
     "WardLink",
@@ -55,4 +57,5 @@ __all__ = [
     "read_monthly_return",
     "read_records",
     "read_refusals",
+    "what_repairs_change",
 ]

@@ -150,11 +150,12 @@ def ward_names() -> list[str]:
 def choose_ward() -> str:
     """Draw the choice of a ward in the sidebar, for pages about the records; the same ward as on the page One ward."""
     names = list(loaded.records().wards)
-    shown = st.session_state.get("ward", FIRST_SHOWN)
+    shown = in_hand(names)
     with st.sidebar:
-        name = st.selectbox("Ward", names, names.index(shown) if shown in names else 0, key="ward_looked_at")
+        name = st.selectbox("Ward", names, names.index(shown), key="ward_looked_at")
     if name != shown:
         show_ward(name)
+    take_in_hand(name)
     return name
 
 
@@ -260,3 +261,14 @@ def keep_address() -> None:
     here = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
     if st.query_params.get("records") != here:
         st.query_params["records"] = here
+
+
+def take_in_hand(name: str) -> None:
+    """Keep which ward the planner is looking at, for the other pages."""
+    st.session_state["in_hand"] = name
+
+
+def in_hand(names: list[str]) -> str:
+    """Return the ward the planner looked at last, or the one to start with."""
+    shown = st.session_state.get("in_hand", FIRST_SHOWN)
+    return shown if shown in names else names[0]

@@ -21,9 +21,9 @@ def in_groups(value: str) -> str:
 
 controls.show_origin()
 names = controls.ward_names()
-chosen = st.session_state.get("ward")
-st.session_state.setdefault("justified", [chosen if chosen in names else names[0]])
-st.session_state["justified"] = [name for name in st.session_state["justified"] if name in names] or names[:1]
+chosen = controls.in_hand(names)
+if st.session_state.get("justified_for") != chosen or not set(st.session_state.get("justified", [])) <= set(names):
+    st.session_state["justified_for"], st.session_state["justified"] = chosen, [chosen]
 wards = st.multiselect("Wards in this justification", names, key="justified", persist_state="session")
 try:
     cases = [replace(controls.case_of(name), checked=controls.verdict(name)) for name in wards]

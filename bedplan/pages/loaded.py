@@ -28,6 +28,7 @@ from bedplan.data import (
     read_census,
     read_records,
     read_refusals,
+    what_repairs_change,
 )
 from bedplan.errors import BedplanError
 from bedplan.plan import Baseline, from_estimate
@@ -35,7 +36,7 @@ from bedplan.plan import Baseline, from_estimate
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
-    from bedplan.data import Backtest, Forecast, HiddenDemand, WardDescription
+    from bedplan.data import Backtest, Forecast, HiddenDemand, RepairEffect, WardDescription
 
 DEMO = Path(__file__).resolve().parents[2] / "demo_data"
 # What the wards of the invented demo hospital do when full, and the share of their refusals that is written down;
@@ -111,6 +112,11 @@ def _once(key: tuple[str, ...], work_out: Callable[[], Any]) -> Any:
     if key not in kept:
         kept[key] = work_out()
     return kept[key]
+
+
+def repairs() -> tuple[RepairEffect, ...]:
+    """Return how far the repaired rows carry each ward's answer."""
+    return _once(("repairs",), lambda: what_repairs_change(records()))
 
 
 def description(name: str) -> WardDescription:

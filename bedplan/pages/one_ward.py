@@ -163,6 +163,7 @@ try:
 except BedplanError as error:
     st.error(wording.plain(str(error)))
     st.stop()
+controls.take_in_hand(ward_name)
 controls.remember(ward_name, **{key: st.session_state[key] for key in ("beds", "full", *controls.SLIDERS)})
 controls.keep_address()
 try:

@@ -197,9 +197,6 @@ def test_the_ward_in_hand(page: Page, server: str) -> None:
     page.get_by_role("heading", name="Staffed beds: Teal").wait_for()
 
 
-@pytest.mark.xfail(
-    strict=True, reason="a ward that was only looked at is forgotten: the first of the list is justified"
-)
 def test_a_ward_only_looked_at(page: Page, server: str) -> None:
     """The justification starts with the ward that was looked at, also where nothing was touched on the way."""
     page.goto(server)
