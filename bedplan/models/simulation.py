@@ -135,8 +135,8 @@ def simulate_ward(
     Any stay and rhythm, patients who come together, booked lists, drift of the rate (one rate a replication), hours
     of leaving, turnaround, closures; who finds no free bed leaves, or waits, first come, first served. The same seed
     gives the same run; it gives the same patients whatever the beds, so that the difference between two bed counts
-    isn't chance: every patient let in with fewer beds is let in with more, and nobody who waits (without an end to
-    patience) waits longer with more. Exact but for chance (``interval``) and for what is left of the empty start.
+    isn't chance: where patients leave, every one let in with fewer beds is let in with more; where everyone waits as
+    long as it takes and no discharge slips past a weekend, nobody waits longer with more. Exact but for chance (``interval``) and for what is left of the empty start.
 
     Raises:
         ImpossibleFigure: a bed count that isn't whole and 0 or more, a seed that isn't, another answer than the two.
