@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import math
-from dataclasses import asdict, dataclass, replace
+from dataclasses import asdict, dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
 from bedplan import wording
@@ -20,14 +20,18 @@ if TYPE_CHECKING:
     from bedplan.decision.ward import WhenWardIsFull
 
 PLAN_FORMAT = 1
-TOTALS = ("admissions_per_year", "mean_days", "variation", "beds")
+TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "beds")
 
 
 @dataclass(frozen=True, slots=True)
 class Baseline:
     """Where every slider of one ward starts: the demand its records (or typed totals) show, and today's beds.
 
-    ``facts`` are (what, value, where from) rows for the assumptions table; ``notes`` whole sentences.
+    ``facts`` are (what, value, where from) rows for the assumptions table; ``notes`` whole sentences; ``origin`` where the figures
+    come from, where that is not the records file.
+
+    Raises:
+        ImpossibleFigure: beds not whole or outside 0–2,000.
     """
 
     name: str
@@ -37,6 +41,15 @@ class Baseline:
     growth_per_year: float = 0.0
     facts: tuple[tuple[str, str, str], ...] = ()
     notes: tuple[str, ...] = ()
+    origin: str = ""
+
+    def __post_init__(self) -> None:
+        """Check the beds once, here."""
+        if not (0 <= self.beds <= MOST_WARD_BEDS and self.beds == int(self.beds)):
+            raise ImpossibleFigure(
+                f"{self.name} has {self.beds:,} staffed beds; a ward has a whole number up to {MOST_WARD_BEDS:,}. "
+                "Check the file or the figure."
+            )
 
 
 @dataclass(frozen=True, slots=True)
@@ -99,13 +112,13 @@ def changed_demand(baseline: Baseline, changes: Changes) -> Demand:
 
 
 def planned_ward(baseline: Baseline, beds: int, when_full: WhenWardIsFull, changes: Changes) -> Ward:
-    """Return the ward as planned: today's beds, the changed demand, the recorded admissions for the average formula."""
+    """Return the ward as planned: today's beds, the changed demand, and admissions changed alike for the formula."""
     return Ward(
         baseline.name,
         beds,
         changed_demand(baseline, changes),
         when_full=when_full,
-        admissions_per_year=baseline.admissions_per_year,
+        admissions_per_year=baseline.admissions_per_year * (1.0 + changes.demand) * (1.0 + changes.growth),
         notes=baseline.notes,
     )
 
@@ -119,12 +132,7 @@ def from_estimate(estimate: DemandEstimate, beds: int | None) -> Baseline:
     Checked by: tests/test_plan.py
     """
     start = math.ceil(estimate.demand.offered_load) if beds is None else beds
-    if start > MOST_WARD_BEDS:
-        raise ImpossibleFigure(
-            f"{estimate.ward} has {start:,} staffed beds in the capacity file; a ward has at most {MOST_WARD_BEDS:,}. "
-            "Check the file."
-        )
-    unknown = "No capacity file was given: type today's staffed beds. Until then they start at the average beds wanted."
+    unknown = "No capacity file gives this ward's staffed beds: type today's. Until then they start at the beds wanted."
     return Baseline(
         name=estimate.ward,
         demand=estimate.demand,
@@ -141,12 +149,12 @@ def _facts(estimate: DemandEstimate) -> tuple[tuple[str, str, str], ...]:
     demand, unsure = estimate.demand, estimate.uncertainty
     top = max(range(12), key=lambda month: demand.month_factors[month])
     peak = f"{wording.MONTHS[top]}, {wording.signed_percent(demand.month_factors[top] - 1.0)} against the mean month"
-    stays = f"{estimate.stays:,} stays, {estimate.unfinished:,} of them unfinished"
+    stays = f"{estimate.stays:,} stays, {wording.few(estimate.unfinished)} of them unfinished"
     recorded = "recorded admissions, last 12 months or whole file"
     return (
         ("Admissions a year", f"{estimate.admissions_per_year:,.0f}", recorded),
         ("Patients a day", wording.with_range(demand.total_arrivals_per_day, unsure.arrivals_per_day), estimate.method),
-        ("Mean stay, days", wording.with_range(estimate.mean_stay_days, unsure.mean_stay_days), stays),
+        ("Mean stay, days", wording.with_range(demand.length_of_stay.mean_days, unsure.mean_stay_days), stays),
         ("Spread of stay (SD ÷ mean)", f"{estimate.variation:.2f}", stays),
         (
             "Beds wanted on average",
@@ -187,6 +195,7 @@ def from_return(returned: MonthlyReturn, ward: str) -> Baseline:
             ("Spread of stay (SD ÷ mean)", f"{demand.length_of_stay.variation:.2f}", "assumed"),
         ),
         notes=("Based on averages only: how far demand and stays swing is assumed, not measured.", *returned.cannot),
+        origin=f"{returned.name}, a monthly return",
     )
 
 
@@ -214,6 +223,7 @@ def from_totals(name: str, admissions_per_year: float, stay: LengthOfStay, beds:
             "Based on totals only: no season, weekday or hour is known, so busy months turn away more than shown.",
             "Admissions are patients who found a bed. If the ward was often full, true demand is higher.",
         ),
+        origin="Totals typed by the planner",
     )
 
 
@@ -222,13 +232,14 @@ class SavedPlan:
     """What a plan file holds: settings, typed totals and answers about the records; never a row or a count of rows.
 
     ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read (headings,
-    date order, ward names); ``records``: the fingerprint of the records it was made with.
+    date order, ward names); ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the records it was made with.
     """
 
     records: str
     settings: Mapping[str, Mapping[str, str | float]]
-    typed: Mapping[str, Mapping[str, float]]
+    typed: Mapping[str, Mapping[str, Any]]
     answers: Mapping[str, Mapping[str, str] | str | None]
+    limit: Mapping[str, str | float] = field(default_factory=dict)
 
 
 def as_json(plan: SavedPlan) -> str:
@@ -252,15 +263,47 @@ def from_json(text: str | bytes) -> SavedPlan:
         version = held.pop("plan")
         plan = SavedPlan(**held)
         settings = {str(name): dict(values) for name, values in plan.settings.items()}
-        typed = {str(name): {key: float(row[key]) for key in TOTALS} for name, row in plan.typed.items()}
+        typed = {str(name): _typed(row) for name, row in plan.typed.items()}
         answers = _answers(plan.answers)
+        limit = dict(plan.limit)
     except (ValueError, TypeError, AttributeError, KeyError) as problem:
         raise UnreadableRecords(
             ["This is not a plan saved by bedplan: choose a file that “Save this plan” wrote."]
         ) from problem
     if version != PLAN_FORMAT:
         raise UnreadableRecords([f"This plan has format {version}; this program reads format {PLAN_FORMAT}."])
-    return SavedPlan(str(plan.records), settings, typed, answers)
+    return SavedPlan(str(plan.records), settings, typed, answers, limit)
+
+
+def _typed(row: Mapping[str, Any]) -> dict[str, Any]:
+    """Return one ward's totals: finite figures, its month factors and where they came from."""
+    known = {"arrivals_per_day": row["admissions_per_year"] / 365.0} | dict(row)
+    figures = {key: float(known[key]) for key in TOTALS}
+    months = [float(factor) for factor in row.get("month_factors", ())]
+    if not all(math.isfinite(figure) for figure in (*figures.values(), *months)):
+        raise ValueError("a figure without end")
+    return {**figures, "month_factors": months, "origin": str(row.get("origin", ""))}
+
+
+def as_totals(ward: Baseline) -> dict[str, Any]:
+    """Return a typed ward as the row of a plan file."""
+    stay = ward.demand.length_of_stay
+    figures = (ward.admissions_per_year, ward.demand.arrivals_per_day, stay.mean_days, stay.variation, ward.beds)
+    months = list(ward.demand.month_factors)
+    return {**dict(zip(TOTALS, figures, strict=True)), "month_factors": months, "origin": ward.origin}
+
+
+def from_saved_totals(name: str, row: Mapping[str, Any]) -> Baseline:
+    """Return the typed ward that such a row holds.
+
+    Raises:
+        ImpossibleFigure: figures outside their meaning.
+    """
+    stay = LengthOfStay(row["mean_days"], row["variation"])
+    ward = from_totals(name, row["admissions_per_year"], stay, round(row["beds"]))
+    months = tuple(row["month_factors"]) or ward.demand.month_factors
+    demand = replace(ward.demand, arrivals_per_day=row["arrivals_per_day"], month_factors=months)
+    return replace(ward, demand=demand, origin=row["origin"] or ward.origin)
 
 
 def _answers(held: Mapping[str, Any]) -> dict[str, Mapping[str, str] | str | None]:

@@ -49,6 +49,11 @@ WHEN_WARD_IS_FULL = {"leaves": "go elsewhere", "waits": "wait, or are placed els
 
 NOT_YET_CHECKED = "Not yet checked against last year."
 
+GUESTS_OUT = (
+    "Planned on its own patients' demand, which is lower than its use: other wards' patients on it are taken out. Plan on "
+    "this only where their own ward gets the beds for them; else too few beds come out."
+)
+
 CAUTIONS = (
     "This is an estimate for planning, from past records and simplified mathematics. Real days will be better and worse.",
     "It does not decide who is admitted, clinical priorities or nurse staffing. Staffing law and licensed judgement come first.",
@@ -60,7 +65,7 @@ CAUTIONS = (
 
 
 def percent(share: float, digits: int | None = None) -> str:
-    """Write a share as percent: 0.0666 -> "6.7 %"; below one in a thousand "under 0.1 %"."""
+    """Write a share as percent: 0.0666 -> "6.7 %"; what would round to nothing reads "under 0.1 %"."""
     if digits is None:
         digits = 0 if share >= 0.095 or share == 0 else 1
     if 0 < share < 0.0005 and digits <= 1:
@@ -148,9 +153,14 @@ def waits_over(hours: float) -> tuple[str, str, str]:
 
 
 def limit_text(share: float, verb: str, within: str) -> str:
-    """Say a limit: "every month within 1 in 20 turned away"."""
+    """Say a limit: "every month within 5.0 % (1 in 20) turned away"."""
     span = "every month" if within == "every_month" else "the year"
-    return f"{span} within {one_in(share)} {verb}"
+    return f"{span} within {percent(share)} ({one_in(share)}) {verb}"
+
+
+def few(count: int) -> str:
+    """Write a count of patients for a document: 1 to 7 is "a few", so that it points at nobody."""
+    return "a few" if 0 < count < 8 else f"{count:,}"
 
 
 def answer_sentence(

@@ -14,10 +14,12 @@ from bedplan.plan import (
     Changes,
     SavedPlan,
     as_json,
+    as_totals,
     changed_demand,
     changed_stay,
     from_json,
     from_return,
+    from_saved_totals,
     from_totals,
     peaked,
     planned_ward,
@@ -87,13 +89,31 @@ def test_impossible_changes_are_a_sentence() -> None:
         changed_demand(baseline(), Changes(stay=-1.0))
 
 
+def test_the_formula_follows_the_planned_demand() -> None:
+    """A tenth more patients and 2 % growth give the average formula a tenth and 2 % more admissions."""
+    ward = planned_ward(baseline(), 28, "waits", Changes(demand=0.1, growth=0.02))
+
+    assert ward.admissions_per_year == pytest.approx(1200.0 * 1.1 * 1.02)
+
+
 def test_a_saved_plan_comes_back_as_it_was() -> None:
     """Settings, typed totals and answers survive the file, names of any language included."""
     plan = SavedPlan(
         records="ab12",
         settings={"Häher": {"demand": 5, "beds": 28, "full": "waits"}},
-        typed={"Ward A": {"admissions_per_year": 1460.0, "mean_days": 5.0, "variation": 1.0, "beds": 24.0}},
+        typed={
+            "Ward A": {
+                "admissions_per_year": 1460.0,
+                "arrivals_per_day": 4.0,
+                "mean_days": 5.0,
+                "variation": 1.0,
+                "beds": 24.0,
+                "month_factors": [1.0] * 12,
+                "origin": "typed",
+            }
+        },
         answers={"columns": {"ward": "Station"}, "date_order": "day first", "ward_names": {}},
+        limit={"limit": 3, "within": "year", "measure": "wait4"},
     )
 
     assert from_json(as_json(plan)) == plan
@@ -132,3 +152,20 @@ def test_a_monthly_return_makes_a_ward(demo_data: Path) -> None:
     assert ward.admissions_per_year == pytest.approx(rows["discharges"].sum() / rows["days"].sum() * 365)
     assert ward.demand.offered_load == pytest.approx(rows["occupied"].sum() / rows["days"].sum(), rel=0.02)
     assert any("averages only" in note for note in ward.notes)
+
+
+def test_a_season_survives_a_saved_plan(demo_data: Path) -> None:
+    """A ward from a monthly return comes back from a plan file with its months, beds and origin."""
+    ward = from_return(read_monthly_return(demo_data / "monthly_return.csv"), "Kestrel")
+    saved = SavedPlan("", {}, {"Kestrel": as_totals(ward)}, {})
+    again = from_saved_totals("Kestrel", from_json(as_json(saved)).typed["Kestrel"])
+
+    assert again.demand.month_factors == pytest.approx(ward.demand.month_factors)
+    assert (again.beds, again.origin) == (ward.beds, ward.origin)
+    assert again.demand.offered_load == pytest.approx(ward.demand.offered_load)
+
+
+def test_more_beds_than_a_ward_has_is_a_sentence() -> None:
+    """A hospital's total in a return is not taken for a ward."""
+    with pytest.raises(ImpossibleFigure, match="2,400 staffed beds"):
+        from_totals("Hospital", 90_000, LengthOfStay(6.0), 2400)

@@ -54,7 +54,7 @@ CHECK: Spec = _check()
 def week_data(shares: NDArray[np.float64]) -> Datasets:
     """Which cells show these shares of hours full, ``(7, 24)``, Monday first?"""
     rows = [
-        {"day": day, "hour": hour, "share": float(share), "said": f"{100 * share:.0f}"}
+        {"day": day, "hour": hour, "share": float(share), "said": "" if np.isnan(share) else f"{100 * share:.0f}"}
         for day, row in zip(wording.WEEKDAYS, shares, strict=True)
         for hour, share in enumerate(row)
     ]

@@ -21,6 +21,7 @@ if TYPE_CHECKING:
     from bedplan.models import LengthOfStay
 
 YEAR_DAYS = 365
+DEFAULT_TIME_SHARE = 1 / 3  # of arrivals in one minute of the day; common practice, no source
 FEWEST_STAYS, FEWEST_DAYS = 200, 90
 # Methods of admission that mean a booked patient. Codes 11 to 13 are the English elective ones.
 BOOKED_METHODS = ("11", "12", "13", "booked", "elective", "waitinglist", "planned", "electivebooked", "electiveplanned")
@@ -68,7 +69,13 @@ class Arrivals:
 
     @property
     def hour_factors(self) -> tuple[float, ...]:
-        """How busy is each hour of the day? Drawn towards the average by what chance alone explains."""
+        """How busy is each hour of the day? Drawn towards the average by what chance alone explains.
+
+        All alike where a third or more came in one and the same minute: that is a default time, not a rhythm.
+        """
+        minutes = np.bincount(self.came % DAY_SECONDS // 60, minlength=1_440)
+        if minutes.max() >= DEFAULT_TIME_SHARE * max(self.came.size, 1):
+            return (1.0,) * 24
         hours = np.bincount(self.came % DAY_SECONDS // 3600, minlength=24).astype(float)
         level = np.log(np.maximum(hours, 0.5))
         return shrink_factors(level[1:] - level[0], hours)

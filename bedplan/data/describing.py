@@ -35,7 +35,7 @@ class LongStays:
 
 @dataclass(frozen=True, slots=True)
 class FullTimes:
-    """When had the ward no free bed? Shares of hours, closed beds not counted as beds; None without a capacity file.
+    """When had the ward no free bed? Shares of time, closed beds not counted as beds; nan where nothing was recorded.
 
     ``by_month`` (12,) January first; ``by_weekday_and_hour`` (7, 24) Monday first; ``occupancy`` patients ÷ open beds.
     """
@@ -153,8 +153,9 @@ def full_times(records: Records, ward: str, minutes: NDArray[np.int32], capacity
 
 
 def _shares(group: NDArray[np.int64], part: NDArray[np.float64], groups: int) -> NDArray[np.float64]:
-    """Return the mean part of each group's hours for which something holds; 0 where a group has none."""
-    return np.bincount(group, weights=part, minlength=groups) / np.maximum(np.bincount(group, minlength=groups), 1)
+    """Return the mean part of each group's hours for which something holds; nan where nothing was recorded."""
+    sums, hours = np.bincount(group, weights=part, minlength=groups), np.bincount(group, minlength=groups)
+    return np.divide(sums, hours, out=np.full(groups, np.nan), where=hours > 0)
 
 
 def variance_over_mean(counts: NDArray[np.float64]) -> float:

@@ -11,6 +11,7 @@ import pandas as pd
 from bedplan.data.arrivals import FEWEST_STAYS, Arrivals, arrivals_of, booked_list, is_booked
 from bedplan.data.stays import fitted_stay, stay_change, stay_curve, stays_in_window
 from bedplan.models import Demand, LengthOfStay
+from bedplan.wording import few
 
 if TYPE_CHECKING:
     import numpy as np
@@ -152,7 +153,7 @@ def estimate_demand(
         ward=ward,
         demand=demand,
         uncertainty=_uncertainty(every, curve, demand.offered_load, raised, hidden),
-        method=_method(every, curve, demand, hidden),
+        method=_method(every, demand, hidden),
         notes=(*_notes(records, every, curve, stays, booked_share, hidden), *_change_notes(records, stays, ward)),
         stays=len(stays),
         unfinished=int(stays["end"].isna().sum()),
@@ -219,14 +220,14 @@ def _uncertainty(
     )
 
 
-def _method(arrivals: Arrivals, curve: StayCurve, demand: Demand, hidden: HiddenDemand | None) -> str:
+def _method(arrivals: Arrivals, demand: Demand, hidden: HiddenDemand | None) -> str:
     """Say in a few sentences how the figures were found."""
     whole = arrivals.counts.size == int(arrivals.counted.sum())
     period = f"all {arrivals.counts.size:,} days of the file" if whole else "the last 12 months"
-    raised = "" if hidden is None else f", raised to demand by {hidden.method}"
+    raised = "" if hidden is None else f", changed to what was asked for by {hidden.method}"
     return (
         f"Arrivals: recorded admissions of {period}{raised}. Mean and spread of stay: product limit over "
-        f"{int(curve.left.sum()):,} finished stays, unfinished ones counted for as long as they were seen; "
+        "finished stays, unfinished ones counted for as long as they were seen; "
         f"shape: {demand.length_of_stay.shape}, the closer of two with that mean and spread. "
         "Months, weekdays and growth: one Poisson regression, drawn towards no effect by what chance explains."
     )
@@ -253,7 +254,9 @@ def _notes(
     if records.excluded:
         notes.append(f"{int((~records.counted_days).sum()):,} days were left out, as chosen.")
     if unfinished:
-        notes.append(f"{unfinished:,} patients were still in; their stays are treated as unfinished, not dropped.")
+        notes.append(
+            f"{few(unfinished).capitalize()} patients were still in; their stays are treated as unfinished, not dropped."
+        )
     if curve.open_share > 0:
         notes.append(
             f"The longest stays had not ended; letting them go on as the last ten departures suggest "

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from bedplan.data.dates import DAY_SECONDS, MISSING
+from bedplan.wording import few
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -56,10 +57,10 @@ def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, window: tu
     start, end = rows.start[live], rows.end[live]
     notes = []
     unfinished = int((end == MISSING).sum())
-    if unfinished == 1:
-        notes.append("1 patient was still in; the stay is treated as unfinished, not dropped.")
-    elif unfinished:
-        notes.append(f"{unfinished:,} patients were still in; their stays are treated as unfinished, not dropped.")
+    if unfinished:
+        notes.append(
+            f"{few(unfinished).capitalize()} patients were still in; their stays are treated as unfinished, not dropped."
+        )
     if table.has_times:
         notes += _clock_notes(start, end)
     else:

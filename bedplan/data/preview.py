@@ -53,9 +53,14 @@ def preview_columns(
         if not is_text:
             raise
         return ColumnPreview(_plain_headings(top.content), MappingProxyType({}), MappingProxyType({}))
-    samples = {key: tuple(table.strings(key)[:SAMPLE_ROWS]) for key in table.headings}
+    samples = {key: _sample(key, table.strings(key)[:SAMPLE_ROWS]) for key in table.headings}
     headings = (*table.headings.values(), *table.unused)
     return ColumnPreview(headings, MappingProxyType(dict(table.headings)), MappingProxyType(samples))
+
+
+def _sample(key: str, values: list[str]) -> tuple[str, ...]:
+    """Return what may be shown of a column: a patient's or a stay's key may be a real number, so it is not."""
+    return ("not shown",) if key in ("patient_key", "spell_key") else tuple(values)
 
 
 def _first_lines(text: bytes) -> bytes:

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 import vl_convert
 
 from bedplan import charts, wording
-from bedplan.export.justification import count_or_withheld
+from bedplan.export.justification import SMALLEST_COUNT_SHOWN, count_or_withheld
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
@@ -66,7 +66,8 @@ def _ward(case: WardCase, number: int) -> str:
     table = case.table()
     caption = (
         f"{case.words[2]}, as a share over the year, at each number of staffed beds. "
-        f"The ward's own line ({wording.LINES[case.model]}) is the thick one."
+        f"The ward's own line ({wording.LINES[case.model]}) is the thick one; the thin ones are "
+        "the share who find no free bed by other formulas."
     )
     parts = [
         f"<h2>{html.escape(case.ward.name)}</h2>",
@@ -86,15 +87,16 @@ def _ward(case: WardCase, number: int) -> str:
 
 
 def curve_rows(case: WardCase) -> tuple[tuple[str, ...], list[tuple[float, ...]]]:
-    """Return the heading and rows (beds, then each model's share) near the decision, as numbers.
+    """Return the heading and rows near the decision, as numbers: beds, the watched figure, who finds no bed by model.
 
     Checked by: tests/export/test_html.py
     """
     counts = [count for count in case.marked().values() if count is not None]
     beds = [int(count) for count in case.curve.beds if min(counts) - 3 <= count <= max(counts) + 3]
-    heading = ("Staffed beds", *(wording.LINES[name] for name in case.curves))
+    heading = ("Staffed beds", case.words[2], *(f"no free bed: {wording.LINES[name]}" for name in case.curves))
     return heading, [
-        (count, *(curve.at(count).turn_away_probability for curve in case.curves.values())) for count in beds
+        (count, case.share_at(count), *(curve.at(count).turn_away_probability for curve in case.curves.values()))
+        for count in beds
     ]
 
 
@@ -105,8 +107,12 @@ def _curve_table(case: WardCase) -> str:
 
 def _source(justification: Justification) -> str:
     source = justification.source
-    rows = [(reason, count_or_withheld(count), f"{bed_days:,.0f}") for reason, count, bed_days in source.reasons]
-    withheld = "<p>* counts of 1 to 7 are withheld.</p>" if any(row[1] == "*" for row in rows) else ""
+    rows = [
+        (reason, count_or_withheld(count), "*" if 0 < count < SMALLEST_COUNT_SHOWN else f"{bed_days:,.0f}")
+        for reason, count, bed_days in source.reasons
+    ]
+    stars = any(row[1] == "*" for row in rows) or "*" in source.sentences()[0]
+    withheld = "<p>* counts of 1 to 7 are withheld.</p>" if stars else ""
     table = _table(("What was done, and why", "Rows", "Bed-days"), rows) if rows else ""
     return f"<h2>Where the data came from</h2>{_paragraphs(source.sentences())}{table}{withheld}"
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime as dt
 import hashlib
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -10,8 +11,6 @@ from bedplan import wording
 from bedplan.errors import ImpossibleFigure
 
 if TYPE_CHECKING:
-    import datetime as dt
-
     from bedplan.data import Records
     from bedplan.export.case import WardCase
 
@@ -22,7 +21,8 @@ SMALLEST_COUNT_SHOWN = 8  # counts of 1 to 7 are withheld: common disclosure pra
 class Source:
     """Where the figures came from: the file as it was read, in counts only.
 
-    ``reasons`` are (what was done and why, rows, bed-days). ``rows_in`` 0 means totals were typed, no file was read.
+    ``reasons`` are (what was done and why, rows, bed-days). ``rows_in`` 0 means that no file of ward stays was read.
+    ``others``: other files by name and fingerprint, and how the file was read.
     """
 
     name: str
@@ -34,14 +34,15 @@ class Source:
     set_aside: int = 0
     reasons: tuple[tuple[str, int, float], ...] = ()
     notes: tuple[str, ...] = ()
+    others: tuple[tuple[str, str], ...] = ()
 
     @classmethod
-    def from_records(cls, records: Records) -> Source:
-        """Return what a document says about these records.
+    def from_records(cls, records: Records, others: tuple[tuple[str, str], ...] = ()) -> Source:
+        """Return what a document says about these records; ``others`` = (what, value) of whatever else shaped figures.
 
         Checked by: tests/export/test_justification.py
         """
-        start, end = records.window
+        start, end = records.window[0], records.window[1] - dt.timedelta(seconds=1)
         report = records.report
         dropped = ", ".join(report.dropped_columns)
         about_dropped = (
@@ -57,15 +58,16 @@ class Source:
             set_aside=report.set_aside,
             reasons=tuple((finding.sentence, finding.rows, finding.bed_days) for finding in report.findings),
             notes=(*about_dropped, *report.notes),
+            others=others,
         )
 
     def sentences(self) -> tuple[str, ...]:
         """Say where the data came from."""
         if not self.rows_in:
-            return (f"{self.name}: totals typed by the planner; no records file was read.",)
-        counts = (
-            f"{self.rows_in:,} rows = {self.used:,} used + {self.repaired:,} repaired + {self.set_aside:,} set aside."
-        )
+            return (f"{self.name}; no file of ward stays was read.",)
+        repaired, set_aside = count_or_withheld(self.repaired), count_or_withheld(self.set_aside)
+        used = "*" if "*" in (repaired, set_aside) else f"{self.used:,}"
+        counts = f"{self.rows_in:,} rows = {used} used + {repaired} repaired + {set_aside} set aside."
         return (f"{self.name}, covering {self.window}. {counts}", *self.notes)
 
 
@@ -127,11 +129,13 @@ class Justification:
         """Return what an auditor needs to get the same figures again, as (what, value)."""
         rows = [
             ("Records", self.source.name),
-            ("Data window", self.source.window or "none: totals were typed"),
-            ("File fingerprint (SHA-256)", self.source.fingerprint or "none: totals were typed"),
+            ("Data window", self.source.window or "none: no file of ward stays"),
+            ("File fingerprint (SHA-256)", self.source.fingerprint or "none: no file of ward stays"),
+            *self.source.others,
         ]
         for case in self.cases:
-            settings = "; ".join(f"{name}: {value}" for name, value in case.settings) or "as recorded"
+            stated = (("Staffed beds today", str(case.ward.beds)), *case.settings)
+            settings = "; ".join(f"{name}: {value}" for name, value in stated)
             rows.append((f"Settings, {case.ward.name}", settings))
             rows.append((f"Limit, {case.ward.name}", wording.limit_text(case.rule.most, case.words[0], case.within)))
             rows.append((f"Model, {case.ward.name}", f"{case.model} ({wording.LINES[case.model]})"))
@@ -146,5 +150,11 @@ class Justification:
         digest = hashlib.sha256(self.source.fingerprint.encode())
         for case in self.cases:
             digest.update(f"{case.ward.name}|{case.ward.beds}|{case.rule!r}|{case.settings!r}".encode())
-            digest.update(case.over_year.round(9).tobytes())
+            digest.update(f"{case.assumptions!r}|{case.checked}|{case.ward.average_formula_beds}".encode())
+            for figures in (
+                case.over_year,
+                case.by_month,
+                *(curve.turn_away_probability for curve in case.curves.values()),
+            ):
+                digest.update(figures.round(9).tobytes())
         return digest.hexdigest()[:12]

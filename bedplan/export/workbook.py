@@ -101,7 +101,7 @@ _WARDS = (
     "Average formula",
     "By the limit",
     "What is counted",
-    "A year, with today's beds",
+    "A year, with today's beds (patients, or days over-full)",
     "As a share, today",
     "In the worst month, today",
     "As a share, by the limit",
@@ -132,7 +132,12 @@ def _curve_rows(case: WardCase) -> list[tuple[Cell, ...]]:
 
 def _source_sheets(book: _Book, justification: Justification) -> None:
     source = justification.source
-    reasons = [(reason, count_or_withheld(count), float(bed_days)) for reason, count, bed_days in source.reasons]
+    reasons = [
+        (reason, "*", "*") if count_or_withheld(count) == "*" else (reason, count, float(bed_days))
+        for reason, count, bed_days in source.reasons
+    ]
+    if any(row[1] == "*" for row in reasons) or "*" in source.sentences()[0]:
+        reasons.append(("* counts of 1 to 7 are withheld.", "", ""))
     book.sheet(
         "Data", ("What was done, and why", "Rows", "Bed-days"), [*((line,) for line in source.sentences()), *reasons]
     )

@@ -71,7 +71,11 @@ if cases:
         f"The next bed spares most on {wording.plain(str(first['Ward']))}: {spared} patients a year.", anchor=False
     )
     within = controls.WITHIN[st.session_state.get("within", "every_month")]
-    st.caption(f"Limit: {wording.one_in(controls.limit_share())}, {within}. Set it on the page One ward.")
+    watched = controls.MEASURES[st.session_state.get("measure", "full")][0]
+    st.caption(
+        f"Limit: {wording.one_in(controls.limit_share())}, {within}; where patients wait it is on {watched}. "
+        "Set it on the page One ward."
+    )
     st.dataframe(table, column_config=COLUMNS, hide_index=True, width="stretch", height=35 * (len(table) + 1) + 3)
     st.markdown(f"**{total(table)}**")
     st.caption(

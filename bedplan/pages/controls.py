@@ -5,6 +5,7 @@ Nothing here computes a figure: it turns what is on screen into the value object
 
 from __future__ import annotations
 
+import hashlib
 from typing import TYPE_CHECKING, Any
 
 import pandas as pd
@@ -14,9 +15,9 @@ from bedplan import wording
 from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
 from bedplan.errors import UnreadableRecords
 from bedplan.export import Source, WardCase, case_for
-from bedplan.models import MODELS, LengthOfStay
+from bedplan.models import MODELS
 from bedplan.pages import loaded
-from bedplan.plan import Baseline, Changes, SavedPlan, as_json, from_totals, planned_ward
+from bedplan.plan import Baseline, Changes, SavedPlan, as_json, as_totals, from_saved_totals, planned_ward
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
@@ -51,24 +52,39 @@ def _forget_figures() -> None:
     for key in (*SLIDERS, "beds", "full", "hidden", "ward"):
         st.session_state.pop(key, None)
     typed = st.session_state.get("typed", {})
-    kept = {name: values for name, values in st.session_state.get("settings", {}).items() if name in typed}
-    st.session_state["settings"] = kept | st.session_state.pop("planned_settings", {})
+    st.session_state["settings"] = {
+        name: values for name, values in st.session_state.get("settings", {}).items() if name in typed
+    }
 
 
 def use_records(found: Records | None) -> None:
     """Plan with these records from now on; None = the demo again."""
     _forget_figures()
     loaded.use_records(found)
+    planned = st.session_state.get("planned")
+    if found is not None and planned is not None and planned.records == found.fingerprint:
+        st.session_state["settings"] |= {name: _inputs(values) for name, values in planned.settings.items()}
+        st.session_state.pop("planned")
     if found is None:
         for key in ("file", "answers", "problem"):
             st.session_state.pop(key, None)
     st.session_state["asked_records"] = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
 
 
-def use_capacity(beds: Capacity) -> None:
-    """Take today's staffed beds from this file from now on."""
-    _forget_figures()
-    loaded.use_file(capacity=beds)
+def use_capacity(beds: Capacity, content: bytes) -> None:
+    """Take today's staffed beds from this file from now on; every other input stays."""
+    loaded.use_file(content, capacity=beds)
+    settings = st.session_state.get("settings", {})
+    for name in [name for name in settings if name in beds.wards]:
+        settings[name] = settings[name] | {"beds": baseline(name).beds}
+    st.session_state.pop("beds", None)
+
+
+def planned_answers(content: bytes) -> dict[str, Any] | None:
+    """Return how a saved plan read exactly this file, where one is waiting for it."""
+    planned = st.session_state.get("planned")
+    same = planned is not None and planned.records == hashlib.sha256(content).hexdigest()
+    return dict(planned.answers) if same and planned.answers else None
 
 
 def use_totals(ward: Baseline) -> None:
@@ -76,6 +92,7 @@ def use_totals(ward: Baseline) -> None:
     st.session_state["typed"] = st.session_state.get("typed", {}) | {ward.name: ward}
     st.session_state.setdefault("settings", {}).pop(ward.name, None)
     show_ward(ward.name)
+    take_in_hand(ward.name)
 
 
 def show_ward(name: str) -> None:
@@ -85,19 +102,11 @@ def show_ward(name: str) -> None:
 
 def plan_as_json() -> str:
     """Return the plan of this session as a file's text."""
-    typed = {name: _totals(base) for name, base in st.session_state.get("typed", {}).items()}
+    typed = {name: as_totals(base) for name, base in st.session_state.get("typed", {}).items()}
     answers = st.session_state.get("answers", {})
-    return as_json(SavedPlan(loaded.records().fingerprint, st.session_state.get("settings", {}), typed, answers))
-
-
-def _totals(base: Baseline) -> dict[str, float]:
-    stay = base.demand.length_of_stay
-    return {
-        "admissions_per_year": base.admissions_per_year,
-        "mean_days": stay.mean_days,
-        "variation": stay.variation,
-        "beds": base.beds,
-    }
+    settings = st.session_state.get("settings", {})
+    limit = {key: st.session_state[key] for key in ("limit", "within", "measure") if key in st.session_state}
+    return as_json(SavedPlan(loaded.records().fingerprint, settings, typed, answers, limit))
 
 
 def use_plan(plan: SavedPlan) -> None:
@@ -106,21 +115,17 @@ def use_plan(plan: SavedPlan) -> None:
     Raises:
         ImpossibleFigure: typed totals outside their meaning.
     """
-    typed = {
-        name: from_totals(
-            name, row["admissions_per_year"], LengthOfStay(row["mean_days"], row["variation"]), int(row["beds"])
-        )
-        for name, row in plan.typed.items()
-    }
+    typed = {name: from_saved_totals(name, row) for name, row in plan.typed.items()}
     known = {name: _inputs(values) for name, values in plan.settings.items()}
     st.session_state["typed"] = st.session_state.get("typed", {}) | typed
+    st.session_state.update(_limit(plan.limit))
     if plan.records == loaded.records().fingerprint:
         st.session_state["settings"] = st.session_state.get("settings", {}) | known
         shown = st.session_state.get("ward")
         if shown in known:
             show_ward(shown)
     else:
-        st.session_state["planned_settings"], st.session_state["planned_answers"] = known, dict(plan.answers)
+        st.session_state["planned"] = plan
 
 
 def _inputs(values: Mapping[str, Any]) -> dict[str, Any]:
@@ -135,10 +140,18 @@ def _inputs(values: Mapping[str, Any]) -> dict[str, Any]:
             for key, (_, low, high, start, _, _) in SLIDERS.items()
         }
         beds = min(max(int(values["beds"]), 0), 2000)
-    except (KeyError, TypeError, ValueError) as problem:
+    except (KeyError, OverflowError, TypeError, ValueError) as problem:
         raise UnreadableRecords(["The plan file holds a setting that is not a number: save it again."]) from problem
     full = "leaves" if values.get("full") == "leaves" else "waits"
     return sliders | {"beds": beds, "full": full, "hidden": values.get("hidden") is True}
+
+
+def _limit(saved: Mapping[str, Any]) -> dict[str, Any]:
+    """Return the saved limit's inputs that can be what they say; the others stay as they are."""
+    share, within, measure = saved.get("limit"), saved.get("within"), saved.get("measure")
+    kept: dict[str, Any] = {"limit": share} if isinstance(share, int) and LIMIT[1] <= share <= LIMIT[2] else {}
+    kept |= {"within": within} if within in WITHIN else {}
+    return kept | ({"measure": measure} if measure in MEASURES else {})
 
 
 def ward_names() -> list[str]:
@@ -200,8 +213,8 @@ def case_of(name: str) -> WardCase:
         peak=values["peak"] / 100,
         growth=values["growth"] / 100,
     )
-    said = "added" if values["hidden"] else "left out"
-    settings = (*changes.rows(), ("Demand that the records hide", said))
+    said = "what was asked for, hidden demand included" if values["hidden"] else "recorded admissions"
+    settings = (*changes.rows(), ("Planned on", said))
     ward = planned_ward(base, int(values["beds"]), values["full"], changes)
     return case_for(ward, rule_for(ward.when_full), base.facts, settings)
 
@@ -226,9 +239,22 @@ def rule_for(when_full: str) -> Rule:
 def source(wards: list[str]) -> Source:
     """Return where the figures of these wards come from, in counts only."""
     typed = st.session_state.get("typed", {})
+    origins = list(dict.fromkeys(typed[name].origin for name in wards if name in typed))
     if wards and all(name in typed for name in wards):
-        return Source("Totals typed by the planner")
-    return Source.from_records(loaded.records())
+        return Source("; ".join(origins))
+    return Source.from_records(
+        loaded.records(), (*loaded.files().marks, *_how_read(wards), *(("Also from", one) for one in origins))
+    )
+
+
+def _how_read(wards: list[str]) -> list[tuple[str, str]]:
+    """Return how the file was read, where the planner had to say, and the shares of refusals written down."""
+    answers = {key: value for key, value in st.session_state.get("answers", {}).items() if value}
+    rows = [(f"Read with {key.replace('_', ' ')}", str(value)) for key, value in answers.items()]
+    written = [(name, loaded.recorded_share(name)) for name in wards if settings_of(name).get("hidden")]
+    return rows + [
+        (f"Written down of those not given a bed, {name}", wording.percent(share, 0)) for name, share in written
+    ]
 
 
 def facts_table(case: WardCase) -> pd.DataFrame:

@@ -57,6 +57,8 @@ def show(name: str) -> None:
         bool(controls.settings_of(name)["hidden"]),
         key=f"plan_hidden_{name}",
     )
+    if found.beds_wanted < found.steps[0].beds:
+        st.warning(wording.GUESTS_OUT)
     controls.remember(name, hidden=chosen)
     st.session_state["hidden"] = (
         chosen if st.session_state.get("ward") == name else st.session_state.get("hidden", False)
@@ -74,7 +76,7 @@ with st.sidebar:
         5,
         format="%d %%",
         key=f"recorded_{ward_name}",
-        help="How many of a hundred patients who could not be given a bed here are in the file of refusals?",
+        help="How many of a hundred patients who could not be given a bed here are written down in the file?",
     )
     loaded.use_recorded_share(ward_name, share / 100)
 try:

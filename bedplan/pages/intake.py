@@ -35,7 +35,7 @@ def take_file() -> None:
     name, content = st.session_state["file"]
     answers = st.session_state.setdefault("answers", dict(NO_ANSWERS))
     try:
-        with st.spinner(f"Reading {name}…"):
+        with st.spinner(f"Reading {wording.plain(name)}…"):
             found = read_records(
                 content,
                 name=name,
@@ -62,7 +62,7 @@ def load_stays() -> None:
         return
     st.session_state["stays_taken"] = given.file_id
     st.session_state["file"] = (given.name, given.getvalue())
-    st.session_state["answers"] = st.session_state.pop("planned_answers", None) or {**NO_ANSWERS}
+    st.session_state["answers"] = controls.planned_answers(given.getvalue()) or {**NO_ANSWERS}
     take_file()
 
 
@@ -78,7 +78,7 @@ def load_capacity() -> None:
         return
     st.session_state["capacity_taken"] = given.file_id
     try:
-        controls.use_capacity(read_capacity(given.getvalue(), name=given.name))
+        controls.use_capacity(read_capacity(given.getvalue(), name=given.name), given.getvalue())
     except BedplanError as error:
         st.error(wording.plain(str(error)))
 
@@ -86,7 +86,7 @@ def load_capacity() -> None:
 def load_more() -> None:
     """Offer the files that show what full wards could not take, and the official count."""
     kinds = {
-        "refusals": ("Refusals: time, ward, reason", read_refusals),
+        "refusals": ("Patients not given a bed: time, ward, reason", read_refusals),
         "cancellations": ("Cancelled booked patients: planned date, ward, reason", read_cancellations),
         "census": ("Census: date, time, ward, patients", read_census),
     }
@@ -101,7 +101,7 @@ def load_more() -> None:
             except BedplanError as error:
                 st.error(wording.plain(str(error)))
                 continue
-            loaded.use_file(**{kind: found})
+            loaded.use_file(given.getvalue(), **{kind: found})
             for sentence in found.cannot:
                 st.caption(wording.plain(sentence))
         load_return()

@@ -63,7 +63,10 @@ try:
         for note in case.notes():
             st.markdown(f"- {wording.plain(note)}")
     st.subheader("To get the same figures again", anchor=False)
-    st.table({what: wording.plain(in_groups(value)) for what, value in paper.reproducibility()}, border="horizontal")
+    st.table(
+        {wording.plain(what): wording.plain(in_groups(value)) for what, value in paper.reproducibility()},
+        border="horizontal",
+    )
     st.subheader("Cautions", anchor=False)
     for line in wording.CAUTIONS:
         st.markdown(f"- {line}")

@@ -6,6 +6,7 @@ nobody's, and for each session apart otherwise.
 
 from __future__ import annotations
 
+import hashlib
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -39,6 +40,12 @@ if TYPE_CHECKING:
     from bedplan.data import Backtest, Forecast, HiddenDemand, RepairEffect, WardDescription
 
 DEMO = Path(__file__).resolve().parents[2] / "demo_data"
+OTHER_FILES: Mapping[str, str] = {
+    "capacity": "Staffed beds",
+    "refusals": "Patients not given a bed",
+    "cancellations": "Cancelled booked patients",
+    "census": "Census",
+}
 # What the wards of the invented demo hospital do when full, and the share of their refusals that is written down;
 # for other records the planner answers.
 DEMO_LEAVES = frozenset({"Merlin", "Curlew", "Dunlin", "Sandpiper"})
@@ -47,13 +54,14 @@ DEMO_RECORDED_SHARES: Mapping[str, float] = {"Curlew": 0.6, "Dunlin": 0.6}
 
 @dataclass(frozen=True)
 class Files:
-    """Every file a session plans with."""
+    """Every file a session plans with; ``marks`` = (what, name and SHA-256) of those beside the records."""
 
     records: Records
     capacity: Capacity | None = None
     refusals: EventLog | None = None
     cancellations: EventLog | None = None
     census: Census | None = None
+    marks: tuple[tuple[str, str], ...] = ()
 
 
 @st.cache_resource(max_entries=1, show_spinner="Opening the Larkmere demo…")
@@ -64,6 +72,7 @@ def _demo() -> tuple[Files, dict[tuple[str, ...], Any]]:
         refusals=read_refusals(DEMO / "refusals.csv"),
         cancellations=read_cancellations(DEMO / "cancellations.csv"),
         census=read_census(DEMO / "census.csv"),
+        marks=tuple(_mark(kind, f"{kind}.csv", (DEMO / f"{kind}.csv").read_bytes()) for kind in OTHER_FILES),
     )
     return files, {}
 
@@ -89,10 +98,19 @@ def use_records(loaded: Records | None) -> None:
     st.session_state["worked_out"] = {}
 
 
-def use_file(**given: Capacity | EventLog | Census) -> None:
+def use_file(content: bytes, **given: Capacity | EventLog | Census) -> None:
     """Add a file beside the planner's records."""
-    st.session_state["files"] = replace(files(), **given)
+    here = files()
+    marks = dict(here.marks) | {
+        _mark(kind, one.name, content)[0]: _mark(kind, one.name, content)[1] for kind, one in given.items()
+    }
+    st.session_state["files"] = replace(here, marks=tuple(marks.items()), **given)
     st.session_state["worked_out"] = {}
+
+
+def _mark(kind: str, name: str, content: bytes) -> tuple[str, str]:
+    """Return (what, name and fingerprint) of a file for the document."""
+    return OTHER_FILES[kind], f"{name}, SHA-256 {hashlib.sha256(content).hexdigest()}"
 
 
 def recorded_share(name: str) -> float:
@@ -159,12 +177,14 @@ def baseline(name: str, *, with_hidden: bool) -> Baseline:
     here = files()
     found = hidden(name) if with_hidden else None
     key = ("baseline", name, f"{recorded_share(name):.2f}" if with_hidden else "recorded")
-    return _once(
-        key,
-        lambda: from_estimate(
-            estimate_demand(here.records, name, capacity=here.capacity, hidden=found), _beds_today(here.capacity, name)
-        ),
-    )
+
+    def work_out() -> Baseline:
+        estimate = estimate_demand(here.records, name, capacity=here.capacity, hidden=found)
+        start = from_estimate(estimate, _beds_today(here.capacity, name))
+        takes_away = found is not None and found.beds_wanted < found.steps[0].beds
+        return replace(start, notes=(wording.GUESTS_OUT, *start.notes)) if takes_away else start
+
+    return _once(key, work_out)
 
 
 def _beds_today(capacity: Capacity | None, name: str) -> int | None:

@@ -96,7 +96,7 @@ def inputs() -> str:
         **controls.PERSIST,
     )
     if name in loaded.records().wards:
-        wanted = st.toggle("Add the demand that the records hide", key="hidden", **controls.PERSIST)
+        wanted = st.toggle("Plan on what was asked for, not on what was admitted", key="hidden", **controls.PERSIST)
         controls.remember(name, hidden=wanted)
     for key, (_, low, high, first, step, form) in controls.SLIDERS.items():
         st.slider(slider_label(key, name), low, high, first, step, format=form, key=key, **controls.PERSIST)
@@ -111,8 +111,10 @@ def notes(case: WardCase, values: dict[str, Any]) -> None:
             "Spread of stay hardly moves a ward that turns patients away: in steady state only the mean counts. "
             "It acts on winter lag, clustered arrivals and waiting."
         )
+    if wording.GUESTS_OUT in case.ward.notes:
+        st.warning(wording.GUESTS_OUT)
     with st.expander("What this figure rests on, and which way it may err"):
-        for note in (*case.notes(), wording.NOT_YET_CHECKED):
+        for note in case.notes():
             st.markdown(f"- {wording.plain(note)}")
 
 
@@ -120,12 +122,12 @@ def answer(case: WardCase) -> None:
     """Draw the sentence, the picture, the table and the months."""
     st.header(wording.plain(case.sentence()), anchor=False)
     side_by_side = st.container(horizontal=True, gap="medium")
-    with side_by_side.container(width=540):
+    with side_by_side.container(width=520):
         st.markdown(f"**{case.words[2]}, over the year**")
         data = charts.curve_data(case.curves, (case.model, case.over_year), case.marked(), case.limit())
         with st.container(key="curve"):
             st.vega_lite_chart(charts.live(charts.CURVE, data), theme=None, width="stretch", alt=case.sentence())
-    with side_by_side.container(width=400):
+    with side_by_side.container(width=385):
         st.markdown(f"**{case.words[2]}**")
         st.table(controls.facts_table(case))
         st.caption("The thick line is the one that fits this ward; the thin ones are what other formulas would say.")

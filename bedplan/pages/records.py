@@ -61,7 +61,7 @@ def show_repairs() -> None:
     """Show how far the repaired rows carry each ward's answer."""
     rows = [
         {
-            "Ward": one.ward,
+            "Ward": wording.plain(one.ward),
             "Beds wanted on average": f"{one.beds_wanted:.1f}",
             "Without repaired rows": "too little is left"
             if one.without_repairs is None
@@ -126,7 +126,9 @@ def keep_plan() -> None:
     except BedplanError as error:
         st.error(wording.plain(str(error)))
         return
-    st.success("The plan is open. Load the records it was made with, if they are not loaded yet.")
+    st.success(
+        "The plan is open. Settings of wards wait for the records it was made with, if those are not loaded yet."
+    )
 
 
 left_side, right_side = st.columns(2, gap="large")
@@ -149,7 +151,9 @@ first, last = records.window
 whose = "The Larkmere demo" if loaded.is_demo() else wording.plain(records.name)
 st.subheader(f"{whose}: what became of every row", anchor=False)
 mark = records.fingerprint[: controls.FINGERPRINT_SHOWN]
-st.caption(f"{first:%d %B %Y} to {last:%d %B %Y} · {len(records.wards)} wards · fingerprint {mark}")
+st.caption(
+    f"{first:%d %B %Y} to {last - pd.Timedelta(seconds=1):%d %B %Y} · {len(records.wards)} wards · fingerprint {mark}"
+)
 show_intake(records)
 if not loaded.is_demo():
     intake.confirm_links(records)

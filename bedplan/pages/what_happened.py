@@ -19,9 +19,9 @@ if TYPE_CHECKING:
 
 def headline(seen: WardDescription) -> str:
     """Say when the ward was full, or how many patients were there."""
-    if seen.full is None:
+    if seen.full is None or np.isnan(seen.full.by_month).all():
         return f"{seen.ward} held {seen.midnight_mean:.1f} patients at midnight on average, {seen.daily_peak_mean:.1f} at the day's peak."
-    worst = int(np.argmax(seen.full.by_month))
+    worst = int(np.nanargmax(seen.full.by_month))
     return (
         f"{seen.ward} had no free bed {wording.percent(seen.full.share)} of the time; "
         f"in {wording.MONTHS[worst]} {wording.percent(float(seen.full.by_month[worst]))}."
@@ -46,8 +46,11 @@ def facts(seen: WardDescription) -> pd.DataFrame:
         rows |= {
             "Occupancy of open beds": wording.percent(seen.full.occupancy, 0),
             "Hours with more patients than open beds": wording.percent(seen.full.over_full_share),
-            "Turnover interval": f"{24 * (seen.turnover_interval_days or 0.0):.0f} hours empty between two patients",
-            "Throughput": f"{seen.throughput or 0.0:.0f} patients a bed a year",
+        }
+    if seen.turnover_interval_days is not None and seen.throughput is not None:
+        rows |= {
+            "Turnover interval": f"{24 * seen.turnover_interval_days:.0f} hours empty between two patients",
+            "Throughput": f"{seen.throughput:.0f} patients a bed a year",
         }
     return pd.DataFrame({"": rows.keys(), "In the records": rows.values()}).set_index("")
 
@@ -60,7 +63,7 @@ def show(name: str) -> None:
         st.markdown("**Hours in a hundred without a free bed**")
         week = charts.week_data(seen.full.by_weekday_and_hour)
         st.vega_lite_chart(charts.live(charts.WEEK, week), theme=None, width="stretch", alt=headline(seen))
-        months = [wording.percent(float(share), 0) for share in seen.full.by_month]
+        months = ["–" if np.isnan(share) else wording.percent(float(share), 0) for share in seen.full.by_month]
         st.table(pd.DataFrame([months], columns=list(wording.MONTHS_SHORT), index=["Full"]))
         st.caption("Closed beds are not counted as beds.")
     else:

@@ -176,3 +176,12 @@ def test_stays_that_grew_longer_are_told() -> None:
 
     assert any("grew longer" in note for note in estimate_demand(ward(6.0), "Heron").notes)
     assert not any("grew" in note for note in estimate_demand(ward(4.0), "Heron").notes)
+
+
+def test_one_default_time_is_no_rhythm() -> None:
+    """Where every stay starts at ten o'clock the hours say nothing, so none is busier than another."""
+    days = [f"2024-{1 + day // 28:02d}-{1 + day % 28:02d}" for day in range(330)]
+    rows = "".join(f"P{k},A,{day} 10:00,{day} 20:00\n" for k, day in enumerate(days))
+    records = read_records(f"patient_key,ward,start,end\n{rows}".encode(), name="ten.csv")
+
+    assert estimate_demand(records, "A").hour_factors == (1.0,) * 24

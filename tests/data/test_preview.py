@@ -41,3 +41,12 @@ def test_only_the_top_of_a_long_file_is_looked_at() -> None:
     assert (
         preview_columns(ROWS + row * 10_000, name="s.csv").samples == preview_columns(ROWS + row, name="s.csv").samples
     )
+
+
+def test_keys_are_not_shown() -> None:
+    """A patient's key may be a real number, so its column is named but its values stay hidden."""
+    rows = b"MRN,Ward,Start,End\n9434765919,A,2024-01-01 10:00,2024-01-02 10:00\n"
+    seen = preview_columns(rows, name="stays.csv")
+
+    assert seen.matched["patient_key"] == "MRN"
+    assert "9434765919" not in str(seen)

@@ -66,8 +66,9 @@ def test_curve_table_is_the_curve(justification: Justification, page: str) -> No
     case = justification.cases[0]
     heading, rows = curve_rows(case)
 
-    assert heading == ("Staffed beds", *(wording.LINES[name] for name in case.curves))
-    for beds, *shares in rows:
+    assert heading[1:] == ("Patients turned away", *(f"no free bed: {wording.LINES[name]}" for name in case.curves))
+    for beds, watched, *shares in rows:
+        assert watched == case.curve.at(beds).turn_away_probability
         assert shares == [curve.at(beds).turn_away_probability for curve in case.curves.values()]
     assert f"<td>{rows[0][0]}</td><td>{wording.percent(rows[0][1])}</td>" in page
 

@@ -22,7 +22,7 @@ def test_decision_says_beds_limit_and_that_last_year_is_unchecked(justification:
     first, last, *_ = justification.decision_lines()
 
     assert f"approve {justification.cases[0].decision.beds} staffed beds (today 20)" in first
-    assert "every month within 1 in 20 turned away" in first
+    assert "every month within 5.0\u00a0% (1 in 20) turned away" in first
     assert last == f"Curlew, check on last year: {wording.NOT_YET_CHECKED}"
 
 
@@ -63,7 +63,7 @@ def test_fingerprint_moves_with_any_figure(justification: Justification) -> None
 
 def test_typed_totals_say_so() -> None:
     """A justification from typed totals never pretends that a file was read."""
-    assert "no records file was read" in Source("Totals typed by the planner").sentences()[0]
+    assert "no file of ward stays was read" in Source("Totals typed by the planner").sentences()[0]
 
 
 def test_needs_a_ward() -> None:
@@ -82,4 +82,4 @@ def test_demo_source_balances(demo_data: Path) -> None:
 
     assert source.rows_in == source.used + source.repaired + source.set_aside
     assert source.fingerprint == hashlib.sha256((demo_data / "stays.csv").read_bytes()).hexdigest()
-    assert source.window == "01 April 2022 to 01 April 2025"
+    assert source.window == "01 April 2022 to 31 March 2025"

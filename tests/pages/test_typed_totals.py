@@ -136,7 +136,7 @@ def test_the_formula_may_lie_far_above_the_need(
     app.slider(key=key).set_value(value).run()
     assert not app.exception
     assert not app.error
-    formula = str(math.ceil(admissions * 5.0 / 365 / 0.85))
+    formula = str(math.ceil(admissions * (1 + value / 100) * 5.0 / 365 / 0.85))
     assert app.table[0].value.loc["Staffed beds", "Average formula"] == formula
 
 

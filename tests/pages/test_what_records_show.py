@@ -50,7 +50,7 @@ def test_planning_on_hidden_demand(open_app: Callable[..., AppTest]) -> None:
     takes = [int(re.search(r"takes (\d+)", said).group(1)) for said in (recorded, added)]
     assert takes[1] > takes[0]
     go(app, "justification")
-    assert any("hide: added" in table.value.to_csv().replace("\\", "") for table in app.table)
+    assert any("hidden demand included" in table.value.to_csv().replace("\\", "") for table in app.table)
 
     go(app, "one_ward").toggle(key="hidden").set_value(False).run()
     assert app.header[0].value == recorded
