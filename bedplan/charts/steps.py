@@ -12,6 +12,7 @@ from bedplan.charts.style import Datasets, Spec, finished, scale_of
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
+ROOM_FOR_FIGURES = 1.25  # of the longest bar, so that the figure beside it is whole on a narrow screen
 KINDS = {"total": "#0072B2", "adds": "#D55E00", "takes away": "#009E73"}
 
 
@@ -23,7 +24,8 @@ def _steps() -> Spec:
     colour = alt.Color("kind:N", scale=scale_of(KINDS), legend=None)
     bars = data.mark_bar(height=24).encode(y=step, x=beds, x2="end:Q", color=colour)
     text = data.mark_text(align="left", dx=6, fontSize=14).encode(y=step, x="right:Q", text="said:N", color=colour)
-    return finished(alt.layer(bars, text).properties(height=alt.Step(36)))
+    room = alt.Chart(alt.NamedData("room")).mark_point(opacity=0).encode(x="right:Q")
+    return finished(alt.layer(bars, text, room).properties(height=alt.Step(36)))
 
 
 STEPS: Spec = _steps()
@@ -38,7 +40,8 @@ def steps_data(steps: Iterable[tuple[str, float]]) -> Datasets:
         rows.append(_bar(label, level, level + beds, kind, said))
         level += beds
     rows.append(_bar("Beds wanted on average", 0.0, level, "total", f"{level:.1f}"))
-    return {"steps": pd.DataFrame(rows)}
+    room = ROOM_FOR_FIGURES * max(row["right"] for row in rows)
+    return {"steps": pd.DataFrame(rows), "room": pd.DataFrame({"right": [room]})}
 
 
 def _bar(label: str, start: float, end: float, kind: str, said: str) -> dict[str, str | float]:

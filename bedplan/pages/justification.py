@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import re
 import textwrap
 from dataclasses import replace
 
@@ -15,8 +16,8 @@ from bedplan.pages import controls
 
 
 def in_groups(value: str) -> str:
-    """Break a long fingerprint into groups that fit a line."""
-    return " ".join(textwrap.wrap(value, 16)) if len(value) == 64 and value.isalnum() else value
+    """Break long fingerprints into groups that fit a line."""
+    return re.sub(r"\b[0-9a-f]{64}\b", lambda found: " ".join(textwrap.wrap(found[0], 16)), value)
 
 
 controls.show_origin()
@@ -37,24 +38,22 @@ try:
         for line in paper.decision_lines():
             st.markdown(wording.plain(line))
     mark = paper.fingerprint()
-    left, right, _ = st.columns([1, 1, 2])
-    left.download_button(
+    take = st.container(horizontal=True)
+    take.download_button(
         "Take the document (HTML)",
         data=lambda: as_html(paper),
         file_name=f"bed-count-justification-{mark}.html",
         mime="text/html",
         on_click="ignore",
         key="take_html",
-        width="stretch",
     )
-    right.download_button(
+    take.download_button(
         "Take the workbook (Excel)",
         data=lambda: as_xlsx(paper),
         file_name=f"bed-count-justification-{mark}.xlsx",
         mime="application/vnd.openxmlformats-officedocument.spreadsheetml.sheet",
         on_click="ignore",
         key="take_xlsx",
-        width="stretch",
     )
     for case in paper.cases:
         st.subheader(wording.plain(case.ward.name), anchor=False)
