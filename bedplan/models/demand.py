@@ -78,6 +78,15 @@ class BookedList:
         return self.arrivals_per_day * self.length_of_stay.mean_days
 
 
+# field -> (how it is called, lowest, highest, what is allowed)
+_FIGURES = {
+    "arrivals_per_day": ("An arrival rate", 0.0, 1e6, "it is 0 or more patients a day"),
+    "clustering": ("A clustering", 0.01, 100.0, "variance ÷ mean of daily arrivals lies between 0.01 and 100"),
+    "rate_variation": ("A rate variation", 0.0, 2.0, "SD ÷ mean of the rate lies between 0 and 2"),
+    "turnaround_hours": ("A turnaround", 0.0, 240.0, "it lies between 0 and 240 hours"),
+}
+
+
 @dataclass(frozen=True, slots=True)
 class Demand:
     """Who wants this ward's beds: arrivals (not admissions), their stay, and their rhythm.
@@ -112,57 +121,31 @@ class Demand:
     def __post_init__(self) -> None:
         """Check every figure once, here, so that models can trust them."""
         put = object.__setattr__
-        put(
-            self,
-            "arrivals_per_day",
-            _number("An arrival rate", self.arrivals_per_day, 0.0, 1e6, "it is 0 or more patients a day"),
-        )
+        for name, (said, lowest, highest, allowed) in _FIGURES.items():
+            put(self, name, _number(said, getattr(self, name), lowest, highest, allowed))
         put(self, "month_factors", _factors("Month factors", self.month_factors, 12))
         put(self, "weekday_factors", _factors("Weekday factors", self.weekday_factors, 7))
         put(self, "hour_factors", _factors("Hour factors", self.hour_factors, 24))
-        put(
-            self,
-            "clustering",
-            _number(
-                "A clustering",
-                self.clustering,
-                0.01,
-                100.0,
-                "variance ÷ mean of daily arrivals lies between 0.01 and 100",
-            ),
-        )
-        put(
-            self,
-            "rate_variation",
-            _number("A rate variation", self.rate_variation, 0.0, 2.0, "SD ÷ mean of the rate lies between 0 and 2"),
-        )
-        put(
-            self,
-            "turnaround_hours",
-            _number("A turnaround", self.turnaround_hours, 0.0, 240.0, "it lies between 0 and 240 hours"),
-        )
         put(self, "booked", tuple(self.booked))
-        if len(tuple(self.weekend_slip)) != 2:
-            raise ImpossibleFigure("A weekend slip needs two chances: one for Saturday and one for Sunday.")
-        put(
-            self,
-            "weekend_slip",
-            tuple(
-                _number("A weekend slip", chance, 0.0, 1.0, "a chance lies between 0 and 1")
-                for chance in self.weekend_slip
-            ),
-        )
+        put(self, "weekend_slip", self._slip(self.weekend_slip))
         if self.discharge_hours:
             put(self, "discharge_hours", self._shares(self.discharge_hours))
-        load = self.arrivals_per_day * self.length_of_stay.mean_days + math.fsum(
-            one.offered_load for one in self.booked
-        )
+        load = self.arrivals_per_day * self.length_of_stay.mean_days
+        load += math.fsum(one.offered_load for one in self.booked)
         if load > LARGEST_LOAD_BEDS:
             raise ImpossibleFigure(
                 f"{load:,.0f} beds wanted on average is more than this program plans for ({LARGEST_LOAD_BEDS:,.0f}); "
                 "check the arrivals a day and the mean stay in days."
             )
         put(self, "_offered_load", load)
+
+    @staticmethod
+    def _slip(chances: Iterable[float]) -> tuple[float, ...]:
+        """Return the chances for Saturday and Sunday, or say what is wrong."""
+        both = tuple(chances)
+        if len(both) != 2:
+            raise ImpossibleFigure("A weekend slip needs two chances: one for Saturday and one for Sunday.")
+        return tuple(_number("A weekend slip", chance, 0.0, 1.0, "a chance lies between 0 and 1") for chance in both)
 
     @staticmethod
     def _shares(values: Iterable[float]) -> tuple[float, ...]:

@@ -1,4 +1,4 @@
-"""What pages share: the records in this session, each ward's settings, and the inputs of the page One ward.
+"""What pages share: the records in this browser tab, each ward's settings, and the inputs of the page One ward.
 
 Nothing here computes a figure: it turns what is on screen into the value objects below, and keeps it between pages.
 """
@@ -101,7 +101,7 @@ def show_ward(name: str) -> None:
 
 
 def plan_as_json() -> str:
-    """Return the plan of this session as a file's text."""
+    """Return the plan of this browser tab as a file's text."""
     typed = {name: as_totals(base) for name, base in st.session_state.get("typed", {}).items()}
     answers = st.session_state.get("answers", {})
     settings = st.session_state.get("settings", {})
@@ -204,7 +204,7 @@ def remember(name: str, **values: Any) -> None:
 
 
 def case_of(name: str) -> WardCase:
-    """Return one ward's case under its own settings and the limit of this session."""
+    """Return one ward's case under its own settings and the limit of this browser tab."""
     values, base = settings_of(name), baseline(name)
     changes = Changes(
         demand=values["demand"] / 100,
@@ -225,12 +225,12 @@ def measures() -> list[str]:
 
 
 def limit_share() -> float:
-    """Return the limit of this session, as a share."""
+    """Return the limit of this browser tab, as a share."""
     return st.session_state.get("limit", LIMIT[3]) / 100
 
 
 def rule_for(when_full: str) -> Rule:
-    """Return the limit of this session for wards whose patients leave, or wait, when they are full."""
+    """Return the limit of this browser tab for wards whose patients leave, or wait, when they are full."""
     within = st.session_state.get("within", "every_month")
     measure = st.session_state.get("measure", "full") if when_full == "waits" else "full"
     return MEASURES[measure][1](limit_share(), within)

@@ -1,4 +1,4 @@
-"""What is loaded in this session, and what was worked out from it: the planner's own files, or the demo's.
+"""What is loaded in this browser tab, and what was worked out from it: the planner's own files, or the demo's.
 
 Patient rows live in the session's memory only. What is worked out is kept beside them, once for the demo, which is
 nobody's, and for each session apart otherwise.
@@ -83,12 +83,12 @@ def is_demo() -> bool:
 
 
 def files() -> Files:
-    """Return the files of this session, or the demo's."""
+    """Return the files of this browser tab, or the demo's."""
     return _demo()[0] if is_demo() else st.session_state["files"]
 
 
 def records() -> Records:
-    """Return the records of this session, or the demo's."""
+    """Return the records of this browser tab, or the demo's."""
     return files().records
 
 

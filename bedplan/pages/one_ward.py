@@ -52,6 +52,13 @@ def _peak_text(factors: tuple[float, ...], size: float) -> str:
     return f"{wording.MONTHS_SHORT[top]} {wording.signed_percent(size * (factors[top] - 1))}"
 
 
+def move(name: str) -> None:
+    """Draw the sliders that change what the records say, and the way back."""
+    for key, (_, low, high, first, step, form) in controls.SLIDERS.items():
+        st.slider(slider_label(key, name), low, high, first, step, format=form, key=key, **controls.PERSIST)
+    st.button("Back to what the records say", on_click=reset, width="stretch")
+
+
 def inputs() -> str:
     """Draw the inputs and return the ward's name."""
     names = controls.ward_names()
@@ -98,9 +105,7 @@ def inputs() -> str:
     if name in loaded.records().wards:
         wanted = st.toggle("Plan on what was asked for, not on what was admitted", key="hidden", **controls.PERSIST)
         controls.remember(name, hidden=wanted)
-    for key, (_, low, high, first, step, form) in controls.SLIDERS.items():
-        st.slider(slider_label(key, name), low, high, first, step, format=form, key=key, **controls.PERSIST)
-    st.button("Back to what the records say", on_click=reset, width="stretch")
+    move(name)
     return name
 
 

@@ -195,6 +195,7 @@ def test_the_ward_in_hand(page: Page, server: str) -> None:
     page.get_by_role("heading", name=re.compile("Teal has 12 staffed")).wait_for()
     turn_to(page, "Justification")
     page.get_by_role("heading", name="Staffed beds: Teal").wait_for()
+    assert "Kestrel" not in page.get_by_role("heading", name=re.compile("Staffed beds")).inner_text()
 
 
 def test_a_ward_only_looked_at(page: Page, server: str) -> None:

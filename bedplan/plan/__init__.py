@@ -1,0 +1,31 @@
+"""A plan: what the records say about each ward, what the planner changed, and both as a file. No patient rows."""
+
+from bedplan.plan.baseline import (
+    Baseline,
+    Changes,
+    changed_demand,
+    changed_stay,
+    from_estimate,
+    from_return,
+    from_totals,
+    peaked,
+    planned_ward,
+)
+from bedplan.plan.saving import SavedPlan, as_json, as_totals, from_json, from_saved_totals
+
+__all__ = [
+    "Baseline",
+    "Changes",
+    "SavedPlan",
+    "as_json",
+    "as_totals",
+    "changed_demand",
+    "changed_stay",
+    "from_estimate",
+    "from_json",
+    "from_return",
+    "from_saved_totals",
+    "from_totals",
+    "peaked",
+    "planned_ward",
+]

@@ -1,0 +1,109 @@
+"""A plan as a file: settings, typed totals and answers about the records; never a row or a count of rows."""
+
+from __future__ import annotations
+
+import json
+import math
+from dataclasses import asdict, dataclass, field, replace
+from typing import TYPE_CHECKING, Any
+
+from bedplan.errors import UnreadableRecords
+from bedplan.models import LengthOfStay
+from bedplan.plan.baseline import Baseline, from_totals
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+PLAN_FORMAT = 1
+TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "beds")
+
+
+@dataclass(frozen=True, slots=True)
+class SavedPlan:
+    """What a plan file holds: settings, typed totals and answers about the records; never a row or a count of rows.
+
+    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read (headings,
+    date order, ward names); ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the records it was made with.
+    """
+
+    records: str
+    settings: Mapping[str, Mapping[str, str | float]]
+    typed: Mapping[str, Mapping[str, Any]]
+    answers: Mapping[str, Mapping[str, str] | str | None]
+    limit: Mapping[str, str | float] = field(default_factory=dict)
+
+
+def as_json(plan: SavedPlan) -> str:
+    """How is a plan kept in a file? JSON with every setting, changed or not.
+
+    Checked by: tests/test_plan.py
+    """
+    return json.dumps({"plan": PLAN_FORMAT, **asdict(plan)}, indent=1, ensure_ascii=False, default=dict)
+
+
+def from_json(text: str | bytes) -> SavedPlan:
+    """What does a plan file say?
+
+    Raises:
+        UnreadableRecords: it is not a plan file, or one of a later version.
+
+    Checked by: tests/test_plan.py
+    """
+    try:
+        held = json.loads(text)
+        version = held.pop("plan")
+        plan = SavedPlan(**held)
+        settings = {str(name): dict(values) for name, values in plan.settings.items()}
+        typed = {str(name): _typed(row) for name, row in plan.typed.items()}
+        answers = _answers(plan.answers)
+        limit = dict(plan.limit)
+    except (ValueError, TypeError, AttributeError, KeyError) as problem:
+        raise UnreadableRecords(
+            ["This is not a plan saved by bedplan: choose a file that “Save this plan” wrote."]
+        ) from problem
+    if version != PLAN_FORMAT:
+        raise UnreadableRecords([f"This plan has format {version}; this program reads format {PLAN_FORMAT}."])
+    return SavedPlan(str(plan.records), settings, typed, answers, limit)
+
+
+def _typed(row: Mapping[str, Any]) -> dict[str, Any]:
+    """Return one ward's totals: finite figures, its month factors and where they came from."""
+    known = {"arrivals_per_day": row["admissions_per_year"] / 365.0} | dict(row)
+    figures = {key: float(known[key]) for key in TOTALS}
+    months = [float(factor) for factor in row.get("month_factors", ())]
+    if not all(math.isfinite(figure) for figure in (*figures.values(), *months)):
+        raise ValueError("a figure without end")
+    return {**figures, "month_factors": months, "origin": str(row.get("origin", ""))}
+
+
+def as_totals(ward: Baseline) -> dict[str, Any]:
+    """Return a typed ward as the row of a plan file."""
+    stay = ward.demand.length_of_stay
+    figures = (ward.admissions_per_year, ward.demand.arrivals_per_day, stay.mean_days, stay.variation, ward.beds)
+    months = list(ward.demand.month_factors)
+    return {**dict(zip(TOTALS, figures, strict=True)), "month_factors": months, "origin": ward.origin}
+
+
+def from_saved_totals(name: str, row: Mapping[str, Any]) -> Baseline:
+    """Return the typed ward that such a row holds.
+
+    Raises:
+        ImpossibleFigure: figures outside their meaning.
+    """
+    stay = LengthOfStay(row["mean_days"], row["variation"])
+    ward = from_totals(name, row["admissions_per_year"], stay, round(row["beds"]))
+    months = tuple(row["month_factors"]) or ward.demand.month_factors
+    demand = replace(ward.demand, arrivals_per_day=row["arrivals_per_day"], month_factors=months)
+    return replace(ward, demand=demand, origin=row["origin"] or ward.origin)
+
+
+def _answers(held: Mapping[str, Any]) -> dict[str, Mapping[str, str] | str | None]:
+    """Return the answers about a file, each of the kind it should be."""
+    if not held:
+        return {}
+    order = held.get("date_order")
+    texts = {
+        key: {str(name): str(value) for name, value in dict(held.get(key, {})).items()}
+        for key in ("columns", "ward_names")
+    }
+    return {**texts, "date_order": None if order is None else str(order)}
