@@ -59,21 +59,8 @@ def move(name: str) -> None:
     st.button("Back to what the records say", on_click=reset, width="stretch")
 
 
-def inputs() -> str:
-    """Draw the inputs and return the ward's name."""
-    names = controls.ward_names()
-    start = next((names.index(one) for one in (controls.FIRST_SHOWN,) if one in names), 0)
-    name = st.selectbox("Ward", names, index=start, key="ward", on_change=load_ward, **controls.PERSIST)
-    starting = controls.starting_values(name)
-    st.radio(
-        "When this ward is full, its patients…",
-        list(wording.WHEN_WARD_IS_FULL),
-        index=list(wording.WHEN_WARD_IS_FULL).index(starting["full"]),
-        format_func=wording.WHEN_WARD_IS_FULL.get,
-        key="full",
-        **controls.PERSIST,
-    )
-    st.number_input("Staffed beds today", 0, 2000, starting["beds"], 1, key="beds", **controls.PERSIST)
+def limit() -> None:
+    """Draw what the limit watches, its size, and when it holds."""
     _, low, high, first, step, form = controls.LIMIT
     if st.session_state["full"] == "waits":
         st.selectbox(
@@ -102,6 +89,24 @@ def inputs() -> str:
         required=True,
         **controls.PERSIST,
     )
+
+
+def inputs() -> str:
+    """Draw the inputs and return the ward's name."""
+    names = controls.ward_names()
+    start = next((names.index(one) for one in (controls.FIRST_SHOWN,) if one in names), 0)
+    name = st.selectbox("Ward", names, index=start, key="ward", on_change=load_ward, **controls.PERSIST)
+    starting = controls.starting_values(name)
+    st.radio(
+        "When this ward is full, its patients…",
+        list(wording.WHEN_WARD_IS_FULL),
+        index=list(wording.WHEN_WARD_IS_FULL).index(starting["full"]),
+        format_func=wording.WHEN_WARD_IS_FULL.get,
+        key="full",
+        **controls.PERSIST,
+    )
+    st.number_input("Staffed beds today", 0, 2000, starting["beds"], 1, key="beds", **controls.PERSIST)
+    limit()
     if name in loaded.records().wards:
         wanted = st.toggle("Plan on what was asked for, not on what was admitted", key="hidden", **controls.PERSIST)
         controls.remember(name, hidden=wanted)
