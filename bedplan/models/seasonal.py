@@ -37,7 +37,8 @@ _MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 _WIDEST_LEVELS = 5.0
 _METHOD = (
     "With seasons: a chain of the ward's beds, hour by hour through the week and day by day through the year. Exact "
-    "for exponential stays; with others at most 2 % of the figure too low and 7 % too high in all trials."
+    "for exponential stays; with others at most 2 % of the figure too low and 7 % too high in trials with usual weeks. Where "
+    "patients come on a few weekdays only, as by booked lists, up to a fifth too high."
 )
 _LARGE_WARD = (
     f"Above {LARGEST_CORRECTED_LOAD:,.0f} beds wanted only the load of each hour counts, not who was let in before: with "

@@ -340,3 +340,15 @@ def test_no_demand_and_no_beds() -> None:
     assert not nobody.occupancy.any()
     assert (nothing.turn_away_probability[0], nothing.occupancy[0]) == (1.0, 0.0)
     assert (nothing.by_month == 1.0).all()
+
+
+def test_patients_of_few_weekdays_are_not_undercounted() -> None:
+    """Nearly all patients on three weekdays: the figure is at most a fifth above a simulated ward, and not below it."""
+    weekdays = (2.5, 2.2, 1.6, 0.35, 0.35, 0.0, 0.0)
+    demand = Demand(2.9, LengthOfStay(3.75, 0.5, "gamma"), weekday_factors=weekdays)
+    for beds in (16, 20):
+        share = float(seasonal_loss(demand, [beds]).turn_away_probability[0])
+        low, high = simulate_ward(demand, beds, seed=0).interval
+
+        assert low * 0.98 < share < high * 1.2
+        assert "up to a fifth too high" in " ".join(seasonal_loss(demand, [beds]).notes)
