@@ -1,7 +1,7 @@
 """What is loaded in this browser tab, and what was worked out from it: the planner's own files, or the demo's.
 
-Patient rows live in the session's memory only. What is worked out is kept beside them, once for the demo, which is
-nobody's, and for each session apart otherwise.
+Patient rows live in the memory of one browser tab only. What is worked out is kept beside them, once for the demo, which is
+nobody's, and for each tab apart otherwise.
 """
 
 from __future__ import annotations
@@ -54,7 +54,7 @@ DEMO_RECORDED_SHARES: Mapping[str, float] = {"Curlew": 0.6, "Dunlin": 0.6}
 
 @dataclass(frozen=True)
 class Files:
-    """Every file a session plans with; ``marks`` = (what, name and SHA-256) of those beside the records."""
+    """Every file the planner plans with; ``marks`` = (what, name and SHA-256) of those beside the records."""
 
     records: Records
     capacity: Capacity | None = None
