@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import argparse
 import datetime as dt
+import hashlib
 import sys
 from dataclasses import replace
 from pathlib import Path
@@ -73,6 +74,13 @@ def checked(records: Records, capacity: Capacity | None, name: str) -> str:
         return f"{wording.NOT_YET_CHECKED} {error}"
 
 
+def beside(capacity: Path | None) -> tuple[tuple[str, str], ...]:
+    """Return (what, name and fingerprint) of the file beside the records, for the document."""
+    if capacity is None:
+        return ()
+    return (("Staffed beds", f"{capacity.name}, SHA-256 {hashlib.sha256(capacity.read_bytes()).hexdigest()}"),)
+
+
 def write(asked: argparse.Namespace) -> Justification:
     """Read, decide and write both documents; return what they say.
 
@@ -88,7 +96,9 @@ def write(asked: argparse.Namespace) -> Justification:
         raise UnreadableRecords([f"Ward “{unknown[0]}” is not in {records.name}; it holds {', '.join(records.wards)}."])
     names = asked.ward or records.wards
     cases = tuple(ward_case(records, capacity, name, asked) for name in names)
-    paper = Justification(cases, Source.from_records(records), dt.datetime.now().astimezone().date())
+    paper = Justification(
+        cases, Source.from_records(records, beside(asked.capacity)), dt.datetime.now().astimezone().date()
+    )
     asked.out.mkdir(parents=True, exist_ok=True)
     for ending, content in (("html", as_html(paper)), ("xlsx", as_xlsx(paper))):
         (asked.out / f"bed-count-justification-{paper.fingerprint()}.{ending}").write_bytes(content)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 from typing import TYPE_CHECKING
 
 import openpyxl
@@ -41,7 +42,8 @@ def test_writes_both_documents(demo_data: Path, tmp_path: Path, capsys: pytest.C
     assert f"approve {expected} staffed beds (today 8)" in capsys.readouterr().out
     book = openpyxl.load_workbook(next(tmp_path.glob("*.xlsx")))
     assert book["Wards"]["D2"].value == expected
-    assert len(list(tmp_path.glob("*.html"))) == 1
+    document = next(tmp_path.glob("*.html")).read_text(encoding="utf-8")
+    assert hashlib.sha256(beds.read_bytes()).hexdigest() in document
 
 
 @pytest.mark.parametrize(

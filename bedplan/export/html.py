@@ -24,7 +24,7 @@ _STYLE = """
   @bottom-left { content: "$foot"; font-size: 9pt } }
 html { print-color-adjust: exact; -webkit-print-color-adjust: exact }
 body { font: 11pt/1.45 "Liberation Sans", Arial, sans-serif; color: #0f1419; max-width: 180mm; margin: 8mm auto; padding: 0 4mm }
-h1 { font-size: 20pt; margin: 0 0 2mm } h2 { font-size: 14pt; margin: 8mm 0 2mm; break-after: avoid } h3 { font-size: 11.5pt; break-after: avoid }
+h1 { font-size: 20pt; margin: 0 0 2mm } h2 { font-size: 14pt; margin: 8mm 0 2mm; break-after: avoid } h3 { font-size: 11.5pt; break-after: avoid } .lead { break-after: avoid }
 .answer { font-size: 15pt; line-height: 1.35; margin: 3mm 0 }
 .box { border: 1.5pt solid #0f1419; padding: 3mm 4mm; margin: 3mm 0; break-inside: avoid } .box p { margin: 1mm 0 }
 table { border-collapse: collapse; width: 100%; font-variant-numeric: tabular-nums; font-size: 9.5pt; margin: 2mm 0 }
@@ -73,7 +73,7 @@ def _ward(case: WardCase, number: int) -> str:
         f"<h2>{html.escape(case.ward.name)}</h2>",
         f'<p class="answer">{html.escape(case.sentence())}</p>',
         f"<figure>{curve}<figcaption>{caption}</figcaption></figure>",
-        f"<p>{case.words[2]}:</p>",
+        f'<p class="lead">{case.words[2]}:</p>',
         _table(tuple(table[0]), [tuple(row.values()) for row in table]),
         f"<figure>{months}<figcaption>{case.words[2]}, as a share, month by month.</figcaption></figure>",
         "<h3>Every bed count near the decision</h3>",
