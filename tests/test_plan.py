@@ -6,7 +6,8 @@ from typing import TYPE_CHECKING
 
 import pytest
 
-from bedplan.data import read_monthly_return
+from bedplan import wording
+from bedplan.data import estimate_demand, hidden_demand, read_capacity, read_monthly_return, read_records
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 from bedplan.plan import (
@@ -17,6 +18,7 @@ from bedplan.plan import (
     as_totals,
     changed_demand,
     changed_stay,
+    from_estimate,
     from_json,
     from_return,
     from_saved_totals,
@@ -169,3 +171,14 @@ def test_more_beds_than_a_ward_has_is_a_sentence() -> None:
     """A hospital's total in a return is not taken for a ward."""
     with pytest.raises(ImpossibleFigure, match="2,400 staffed beds"):
         from_totals("Hospital", 90_000, LengthOfStay(6.0), 2400)
+
+
+@pytest.mark.parametrize(("ward", "warned"), [("Plover", True), ("Teal", False)])
+def test_a_ward_that_hosts_others_is_warned_of(demo_data: Path, ward: str, warned: bool) -> None:
+    """Where planning on its own patients takes beds away the first note says so; where it adds beds none does."""
+    records = read_records(demo_data / "stays.csv")
+    found = hidden_demand(records, ward, capacity=read_capacity(demo_data / "capacity.csv"))
+    start = from_estimate(estimate_demand(records, ward, hidden=found), 30, found)
+
+    assert found.takes_away is warned
+    assert (start.notes[0] == wording.GUESTS_OUT) is warned

@@ -38,6 +38,7 @@ def load_behind(beds_in_use: float, beds: ArrayLike) -> tuple[float, float]:
         )
 
     def carried(load: float) -> float:
+        """Return the beds in use on average at this load."""
         return float(weights @ (load * (1.0 - erlang_b(load, counts))))
 
     top = max(1.0, 2.0 * most)

@@ -138,6 +138,7 @@ def _nearer(
     """Return whichever reading is a date, keeps the order of start and end, and lies nearer."""
 
     def distance(times: NDArray[np.int64]) -> NDArray[np.float64]:
+        """Return how far a reading lies from what is wanted; endless where it is no date."""
         far = np.abs(times.astype(float) - wanted)
         early = 0.0 if not_before is None else np.where(times < not_before, 1e12, 0.0)
         return np.where(times > UNREADABLE, far + early, np.inf)

@@ -79,6 +79,11 @@ class HiddenDemand:
         return math.fsum(step.beds for step in self.steps)
 
     @property
+    def takes_away(self) -> bool:
+        """Is less wanted than was in use, because other wards' patients are taken out?"""
+        return self.beds_wanted < self.steps[0].beds
+
+    @property
     def mean_stay_days(self) -> float:
         """How long do the ward's own patients use a bed, on average?"""
         return self.beds_wanted / self.demand_per_day if self.demand_per_day > 0 else 0.0

@@ -116,6 +116,7 @@ def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
     misfits = 0
 
     def count(_: object) -> str:
+        """Count a line with another number of cells, and leave it out."""
         nonlocal misfits
         misfits += 1
         return "skip"

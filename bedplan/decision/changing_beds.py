@@ -270,6 +270,7 @@ def _mixed_waits(waits: Waits, mixture: _Mixture, closed: float, changes: BedCha
     closed_hours = 24.0 * changes.open_weekdays.count(False)
 
     def share_over_by_month(hours: float) -> Array:
+        """Return the share waiting longer in each month, closed days included."""
         return _or_closed(mixture.by_month(waits.share_over_by_month(hours)), closed)
 
     return Waits(

@@ -192,6 +192,7 @@ def hold_back_effect(ward: Ward, held_back: int) -> HoldBackEffect:
     booked_months = np.bincount(month_of_hour) / month_of_hour.size
 
     def refused(kept: int) -> tuple[float, float]:
+        """Return the share of emergencies and of booked patients who find no bed."""
         each = np.array([beds_held_back((load, booked_load), ward.beds, kept, told_apart) for load in levels])
         first, others = each[month_is].T
         return float(emergency_months @ first), float(booked_months @ others)

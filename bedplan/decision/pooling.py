@@ -92,6 +92,7 @@ def _pooled_demand(demands: Sequence[Demand]) -> Demand:
     loads = np.array([one.arrivals_per_day * one.length_of_stay.mean_days for one in demands])
 
     def mean(figure: Callable[[Demand], object], weights: np.ndarray) -> np.ndarray:
+        """Return the mean of one figure over the wards, by weight."""
         return np.average([figure(one) for one in demands], axis=0, weights=weights if weights.sum() > 0 else None)
 
     return Demand(
@@ -116,6 +117,7 @@ def _mixed_stay(demands: Sequence[Demand]) -> LengthOfStay:
     """Mix the stays of unbooked patients, by patients: two at a time, the first with all before it."""
 
     def mix(so_far: tuple[float, LengthOfStay], one: Demand) -> tuple[float, LengthOfStay]:
+        """Return the arrivals so far with one more ward, and their mixed stay."""
         arrivals, stay = so_far
         both = arrivals + one.arrivals_per_day
         if one.arrivals_per_day == 0 or one.length_of_stay == stay:

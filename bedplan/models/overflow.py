@@ -74,9 +74,11 @@ def equivalent_ward(stream: OverflowLoad) -> tuple[float, float]:
         return mean, 0.0
 
     def beds_at(load: float) -> float:
+        """Return the beds at which this load leaves so peaked an overflow."""
         return max(load * (mean + peakedness) / (mean + peakedness - 1.0) - mean - 1.0, 0.0)
 
     def surplus(load: float) -> float:
+        """Return by how much the overflow of this load is above the wanted mean."""
         return load * float(erlang_b(load, beds_at(load))) - mean
 
     load = stream.variance + 3.0 * peakedness * (peakedness - 1.0)

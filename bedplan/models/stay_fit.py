@@ -144,6 +144,7 @@ def _best(family: Callable[..., Array], stays: tuple[Array, ...], starts: list[l
     forever = np.full(int(is_late.sum()), np.inf)
 
     def unlikeliness(figures: Array) -> float:
+        """Return minus the logarithm of the likelihood."""
         log = family(low, high, *figures)
         late = family(entered[is_late], forever, *figures)
         return -float(counts @ log - counts[is_late] @ np.maximum(late, _FAINT))

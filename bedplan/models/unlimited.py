@@ -153,6 +153,7 @@ def busy_levels(demand: Demand) -> BusyLevels:
     mean_of_month = np.bincount(month_of_hour, weights=load) / np.bincount(month_of_hour)
 
     def levels(mean: Array, chances: Array) -> Levels:
+        """Return the busy levels of some hours, averaged."""
         return Levels(mean, lowest + (chances > _BUSY).sum(axis=1) - 1, lowest, chances)
 
     days, means = week.reshape(7, 24, -1), mean_of_week.reshape(7, 24)

@@ -238,6 +238,7 @@ def waiting(demand: Demand, beds: ArrayLike) -> BedCurve:
     answers = counts.size
 
     def filled(values: Array, everyone: float) -> Array:
+        """Return figures for every bed count, no beds included."""
         return _with_no_beds(values, counts, everyone)[..., :answers]
 
     return BedCurve(

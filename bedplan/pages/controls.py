@@ -15,7 +15,6 @@ from bedplan import wording
 from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
 from bedplan.errors import UnreadableRecords
 from bedplan.export import Source, WardCase, case_for
-from bedplan.models import MODELS
 from bedplan.pages import loaded
 from bedplan.plan import Baseline, Changes, SavedPlan, as_json, as_totals, from_saved_totals, planned_ward
 
@@ -217,11 +216,6 @@ def case_of(name: str) -> WardCase:
     settings = (*changes.rows(), ("Planned on", said))
     ward = planned_ward(base, int(values["beds"]), values["full"], changes)
     return case_for(ward, rule_for(ward.when_full), base.facts, settings)
-
-
-def measures() -> list[str]:
-    """Return what a limit can watch on a ward whose patients wait."""
-    return [key for key in MEASURES if "waiting" in MODELS or not key.startswith("wait")]
 
 
 def limit_share() -> float:

@@ -57,7 +57,7 @@ def show(name: str) -> None:
         bool(controls.settings_of(name)["hidden"]),
         key=f"plan_hidden_{name}",
     )
-    if chosen and found.beds_wanted < found.steps[0].beds:
+    if chosen and found.takes_away:
         st.warning(wording.GUESTS_OUT)
     controls.remember(name, hidden=chosen)
     st.session_state["hidden"] = (

@@ -179,10 +179,9 @@ def baseline(name: str, *, with_hidden: bool) -> Baseline:
     key = ("baseline", name, f"{recorded_share(name):.2f}" if with_hidden else "recorded")
 
     def work_out() -> Baseline:
+        """Estimate the demand, and put the sliders where it says."""
         estimate = estimate_demand(here.records, name, capacity=here.capacity, hidden=found)
-        start = from_estimate(estimate, _beds_today(here.capacity, name))
-        takes_away = found is not None and found.beds_wanted < found.steps[0].beds
-        return replace(start, notes=(wording.GUESTS_OUT, *start.notes)) if takes_away else start
+        return from_estimate(estimate, _beds_today(here.capacity, name), found)
 
     return _once(key, work_out)
 

@@ -65,7 +65,7 @@ def limit() -> None:
     if st.session_state["full"] == "waits":
         st.selectbox(
             "The limit is on",
-            controls.measures(),
+            list(controls.MEASURES),
             format_func=lambda key: controls.MEASURES[key][0],
             key="measure",
             **controls.PERSIST,

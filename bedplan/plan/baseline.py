@@ -13,7 +13,7 @@ from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
-    from bedplan.data import DemandEstimate, MonthlyReturn
+    from bedplan.data import DemandEstimate, HiddenDemand, MonthlyReturn
     from bedplan.decision.ward import WhenWardIsFull
 
 
@@ -117,8 +117,10 @@ def planned_ward(baseline: Baseline, beds: int, when_full: WhenWardIsFull, chang
     )
 
 
-def from_estimate(estimate: DemandEstimate, beds: int | None) -> Baseline:
+def from_estimate(estimate: DemandEstimate, beds: int | None, hidden: HiddenDemand | None = None) -> Baseline:
     """What do a ward's records say? The estimate's demand and facts; without a capacity file beds start at its load.
+
+    ``hidden``: what the estimate was changed by; where that takes beds away, a note says so first.
 
     Raises:
         ImpossibleFigure: more staffed beds than a ward can have.
@@ -126,6 +128,7 @@ def from_estimate(estimate: DemandEstimate, beds: int | None) -> Baseline:
     Checked by: tests/test_plan.py
     """
     start = math.ceil(estimate.demand.offered_load) if beds is None else beds
+    guests = (wording.GUESTS_OUT,) if hidden is not None and hidden.takes_away else ()
     unknown = "No capacity file gives this ward's staffed beds: type today's. Until then they start at the beds wanted."
     return Baseline(
         name=estimate.ward,
@@ -134,7 +137,7 @@ def from_estimate(estimate: DemandEstimate, beds: int | None) -> Baseline:
         beds=start,
         growth_per_year=estimate.growth_per_year,
         facts=_facts(estimate),
-        notes=(*estimate.notes, *((unknown,) if beds is None else ())),
+        notes=(*guests, *estimate.notes, *((unknown,) if beds is None else ())),
     )
 
 
