@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime as dt
 import os
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -45,3 +46,15 @@ def root() -> Path:
 def demo_data() -> Path:
     """Return the folder of the invented hospital's files."""
     return ROOT / "demo_data"
+
+
+@pytest.fixture(scope="session")
+def stays_csv() -> bytes:
+    """Return ward stays in three columns: a stay every 21 hours for a year, on East and West in turn, for 3 to 6 days."""
+    first = dt.datetime(2024, 1, 1, 9)  # noqa: DTZ001  records hold local clock times
+    rows = ["Ward,Start,End"]
+    for count in range(418):
+        came = first + dt.timedelta(hours=21 * count)
+        left = came + dt.timedelta(days=3 + count // 2 % 4, hours=count % 5)
+        rows.append(f"{'East' if count % 2 else 'West'},{came:%Y-%m-%d %H:%M},{left:%Y-%m-%d %H:%M}")
+    return "\n".join(rows).encode()

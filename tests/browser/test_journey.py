@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import datetime as dt
 import hashlib
 import io
 import json
@@ -19,17 +18,6 @@ if TYPE_CHECKING:
 
 A4_POINTS = (595, 842)  # 210 × 297 mm; Source: ISO 216
 MOST_VALUES, LONGEST_VALUE = 12, 40
-
-
-def ward_stays() -> bytes:
-    """Return a stay every 21 hours for a year, on East and West in turn, for 3 to 6 days."""
-    first = dt.datetime(2024, 1, 1, 9)  # noqa: DTZ001  records hold local clock times
-    rows = ["Ward,Start,End"]
-    for count in range(418):
-        came = first + dt.timedelta(hours=21 * count)
-        left = came + dt.timedelta(days=3 + count // 2 % 4, hours=count % 5)
-        rows.append(f"{'East' if count % 2 else 'West'},{came:%Y-%m-%d %H:%M},{left:%Y-%m-%d %H:%M}")
-    return "\n".join(rows).encode()
 
 
 def turn_to(page: Page, title: str) -> None:
@@ -81,10 +69,12 @@ def pages_of(pdf: bytes) -> list[tuple[float, float]]:
     return [(float(width), float(height)) for width, height in boxes]
 
 
-def test_from_a_file_to_paper(page: Page, server: str, browser: BrowserContext, tmp_path: Path) -> None:
+def test_from_a_file_to_paper(
+    page: Page, server: str, browser: BrowserContext, tmp_path: Path, stays_csv: bytes
+) -> None:
     """A file is loaded, a slider moved by the keyboard, both documents are taken, and the page's address stays bare."""
     openpyxl = pytest.importorskip("openpyxl", reason="openpyxl is not installed: the workbook can't be read back")
-    content = ward_stays()
+    content = stays_csv
     page.goto(server)
     page.get_by_role("heading", name=re.compile("Kestrel has")).wait_for()
     load_file(page, content)
@@ -156,10 +146,10 @@ def assert_prints(browser: BrowserContext, html: bytes, folder: Path, said: str)
     assert asked == [path.as_uri()]
 
 
-def test_after_a_reload(page: Page, server: str) -> None:
+def test_after_a_reload(page: Page, server: str, stays_csv: bytes) -> None:
     """After a reload the address still holds the settings, and the page says that the records must be loaded again."""
     page.goto(server)
-    load_file(page, ward_stays())
+    load_file(page, stays_csv)
     turn_to(page, "One ward")
     page.get_by_role("heading", name=re.compile("East has")).wait_for()
     page.locator(".st-key-stay input[type=range]").focus()
@@ -169,7 +159,7 @@ def test_after_a_reload(page: Page, server: str) -> None:
     page.get_by_text("which are not loaded").wait_for()
     page.get_by_text(re.compile(r"\+1 %")).first.wait_for()
 
-    load_file(page, ward_stays())
+    load_file(page, stays_csv)
     turn_to(page, "One ward")
     page.get_by_role("heading", name=re.compile("East has")).wait_for()
     assert page.get_by_text("which are not loaded").count() == 0

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import datetime as dt
 import re
 from typing import TYPE_CHECKING
 
@@ -39,15 +38,3 @@ def open_app(root: Path) -> Callable[..., AppTest]:
 def every_page(root: Path) -> list[str]:
     """Return the name of every page that the front door leads to."""
     return re.findall(r"bedplan/pages/(\w+)\.py", (root / "app.py").read_text())
-
-
-@pytest.fixture(scope="session")
-def stays_csv() -> bytes:
-    """Return ward stays in three columns: a stay every 21 hours for a year, on East and West in turn, for 3 to 6 days."""
-    first = dt.datetime(2024, 1, 1, 9)  # noqa: DTZ001  records hold local clock times
-    rows = ["Ward,Start,End"]
-    for count in range(418):
-        came = first + dt.timedelta(hours=21 * count)
-        left = came + dt.timedelta(days=3 + count // 2 % 4, hours=count % 5)
-        rows.append(f"{'East' if count % 2 else 'West'},{came:%Y-%m-%d %H:%M},{left:%Y-%m-%d %H:%M}")
-    return "\n".join(rows).encode()
