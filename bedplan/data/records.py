@@ -25,7 +25,7 @@ from bedplan.data.windows import chosen_window, find_window, seen_until
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Callable, Mapping
 
     from numpy.typing import NDArray
 
@@ -112,28 +112,41 @@ def read_records(
     columns: Mapping[str, str] | None = None,
     date_order: str | None = None,
     choices: IntakeChoices | None = None,
+    progress: Callable[[float, str], None] | None = None,
 ) -> Records:
     """What do these ward stays say, and what was done to them before they were used?
 
     ``source`` is a path, bytes or an open binary file (CSV, other separated text, Excel, Parquet); ``columns`` says
     which heading means what where headings are unusual (``{"start": "Zugang"}``); ``date_order`` answers whether
     03/04 is 3 April (``"day first"``), 4 March (``"month first"``) or changes within the file (``"row by row"``);
-    ``choices`` holds the other answers a file can ask for. Nothing leaves the memory of this program; keys are
-    replaced by random codes, identity columns are not read.
+    ``choices`` holds the other answers a file can ask for. ``progress`` is told a few times how far it is: the share
+    done, 0 to 1, never falling, and a few words; whatever it raises ends the reading there, and nothing has changed.
+    Nothing leaves the memory of this program; keys are replaced by random codes, identity columns are not read.
 
     Raises:
         UnreadableRecords: the file can't be used; ``.problems`` says what is wrong, where, and what to do.
 
     Checked by: tests/data/test_records.py, tests/data/test_dirt.py, tests/data/test_bad_files.py
     """
+    tell = progress or _tell_nobody
+    tell(0.0, "reading the file")
     file = open_source(source, name)
     chosen = choices or IntakeChoices()
     text = read_table(file, STAY_HEADINGS, columns)
+    tell(0.4, "dates, wards and keys")
     table = as_stay_table(text, file.name, date_order, chosen)
     # What was read is in the table now: a large file need not be held three times.
     file, text = replace(file, content=b""), replace(text, columns={})
+    tell(0.7, "patients' ways through the wards")
     until, said = _clean(table, chosen)
-    return _finished(table, text, file, chosen, until, said)
+    tell(0.9, "counting every row")
+    records = _finished(table, text, file, chosen, until, said)
+    tell(1.0, "done")
+    return records
+
+
+def _tell_nobody(_share: float, _doing: str) -> None:
+    """Stand in where nobody wants to know how far it is."""
 
 
 def _clean(table: StayTable, choices: IntakeChoices) -> tuple[int, list[str]]:

@@ -182,3 +182,31 @@ def test_the_answer_without_the_repaired_rows_can_be_had(read: Callable[..., Rec
     assert records.stays["repaired"].sum() == 3
     assert len(bare.stays) == len(records.stays) - 3
     assert bare.report == records.report
+
+
+def test_how_far_it_is_can_be_followed() -> None:
+    """Whoever asks is told shares from 0 to 1 that never fall, each with a few words, and gets the same stays."""
+    told = []
+    records = read_records(IDENTIFIED, progress=lambda share, doing: told.append((share, doing)))
+    shares = [share for share, _ in told]
+
+    assert shares[0] == 0.0
+    assert shares[-1] == 1.0
+    assert shares == sorted(shares)
+    assert len(told) >= 4
+    assert all(doing.strip() for _, doing in told)
+    assert records.stays["start"].equals(read_records(IDENTIFIED).stays["start"])
+
+
+@pytest.mark.parametrize("calls", range(4))
+def test_reading_can_be_called_off(calls: int) -> None:
+    """What the follower raises ends the reading there and comes out as it is; reading again gives the whole file."""
+    left = iter(range(calls))
+
+    def give_up(_share: float, _doing: str) -> None:
+        next(left)
+
+    upload = io.BytesIO(IDENTIFIED)
+    with pytest.raises(StopIteration):
+        read_records(upload, progress=give_up)
+    assert len(read_records(upload).stays) == 2
