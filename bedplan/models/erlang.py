@@ -12,6 +12,7 @@ from scipy import special
 
 from bedplan.errors import ImpossibleFigure
 from bedplan.models.bed_curve import MOST_BEDS, BedCurve, bed_counts
+from bedplan.models.year import beds_wanted, leaving_of, patients_wanted
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -149,21 +150,26 @@ def erlang_c(offered_load: ArrayLike, beds: ArrayLike) -> Array:
 def erlang_loss(demand: Demand, beds: ArrayLike) -> BedCurve:
     """For each bed count, which share is turned away if demand were the same all year?
 
-    Uses the year's mean load only: seasons, weekdays, clusters and drift are left out, so with any of them the figure
-    is too low; the notes say so.
+    Uses the year's mean load only: seasons, weekdays, hours of discharge, clusters and drift are left out, so with any
+    of them the figure is too low; the notes say so. The load is that of beds held: turnaround counts, and what hours
+    of discharge and weekends add to a stay. Occupancy counts patients only.
 
     Source: Erlang 1917; de Bruin et al. 2010, Annals of Operations Research 178.
     Checked by: tests/models/test_every_model.py, tests/models/test_erlang.py
     """
     counts = bed_counts(beds)
-    load = demand.offered_load
+    load = beds_wanted(demand)
     turned_away = erlang_b(load, counts) if load > 0 else np.zeros(counts.size)
-    occupancy = load * (1.0 - turned_away) / np.maximum(counts, 1)
-    notes = (
-        []
-        if demand.is_steady
-        else ["Steady demand: the year's mean only. With seasons or weekdays more are turned away than this line says."]
-    )
+    occupancy = patients_wanted(demand) * (1.0 - turned_away) / np.maximum(counts, 1)
+    notes = []
+    if not demand.is_steady:
+        notes.append(
+            "Steady demand: the year's mean only. With seasons or weekdays more are turned away than this line says."
+        )
+    elif leaving_of(demand).has_rhythm:
+        notes.append(
+            "Steady demand: beds come free evenly. With hours of discharge more are turned away than this line says."
+        )
     if demand.clustering > 1 or demand.rate_variation > 0:
         notes.append(
             "Patients who come together, and demand that drifts, are left out of this line: both turn more away."

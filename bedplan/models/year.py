@@ -164,3 +164,11 @@ def patients_wanted(demand: Demand) -> float:
     Arrivals × mean stay, where the stay may be moved by the hours patients leave at.
     """
     return float(patients_by_hour(demand).mean()) if leaving_of(demand).has_rhythm else demand.offered_load
+
+
+def beds_wanted(demand: Demand) -> float:
+    """How many beds would be held on average over the year, turnaround included, if nobody were ever turned away?
+
+    Checked by: tests/models/test_erlang.py, tests/models/test_every_model.py
+    """
+    return patients_wanted(demand) + demand.total_arrivals_per_day * demand.turnaround_hours / 24.0

@@ -53,6 +53,15 @@ def test_curve_without_chance() -> None:
     assert "leaves chance out" in curve.notes[0]
 
 
+def test_beds_made_ready_count_in_the_line_and_not_in_the_formula() -> None:
+    """Half a day's turnaround raises the line's load to 22.5 beds and not its patients; a note says what is left out."""
+    curve = average_occupancy(Demand(5.0, LengthOfStay(4.0), turnaround_hours=12.0), [18, 30])
+
+    assert curve.turn_away_probability == pytest.approx([0.2, 0.0], abs=1e-12)
+    assert curve.occupancy == pytest.approx([5 * 4 * 0.8 / 18, 20 / 30])
+    assert "too low for it" in curve.notes[1]
+
+
 def test_nobody_wants_a_bed() -> None:
     """Where nobody comes nobody is turned away and every bed stays empty."""
     curve = average_occupancy(Demand(0.0, LengthOfStay(4.0)), [0, 3])

@@ -324,6 +324,27 @@ def test_curve_says_what_it_leaves_out() -> None:
     assert any("come together" in note for note in clustered.notes)
 
 
+def test_turnaround_takes_beds() -> None:
+    """5 a day for 4 days on 25 beds made ready in 12 hours turn away what 4.5-day stays do; occupancy is patients'."""
+    curve = erlang_loss(Demand(5.0, LengthOfStay(4.0), turnaround_hours=12.0), [25])
+    exact = float(exact_losses(22.5, [25])[25])
+
+    assert curve.turn_away_probability[0] == pytest.approx(exact, rel=1e-12)
+    assert curve.occupancy[0] == pytest.approx(20.0 * (1.0 - exact) / 25, rel=1e-12)
+
+
+def test_weekends_without_discharges_lengthen_stays() -> None:
+    """Where Saturday's discharges wait two days and Sunday's one, 4 days become 4 + 3/7, and a note says what is missing."""
+    curve = erlang_loss(Demand(5.0, LengthOfStay(4.0, 0.7), weekend_slip=(1.0, 1.0)), [25])
+    load = 5.0 * (4.0 + 3.0 / 7.0)
+    exact = float(exact_losses(load, [25])[25])
+
+    # stays end evenly over the week where patients come evenly
+    assert curve.turn_away_probability[0] == pytest.approx(exact, rel=1e-3)
+    assert curve.occupancy[0] == pytest.approx(load * (1.0 - exact) / 25, rel=1e-3)
+    assert any("hours of discharge" in note for note in curve.notes)
+
+
 def test_nobody_wants_a_bed() -> None:
     """Where nobody comes nobody is turned away, not even with no beds, and every bed stays empty."""
     curve = erlang_loss(Demand(0.0, LengthOfStay(4.0)), [0, 1, 10])

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -60,6 +61,8 @@ RHYTHMS: dict[str, Callable[[float], dict[str, object]]] = {
         "rate_variation": swing / 10,
     },
 }
+# a queue is followed through the year until it is as settled as this
+SETTLED = 1e-3
 FLAT = ("steady", "clusters and drift")
 every_model = pytest.mark.parametrize("model", MODELS)
 every_rhythm = pytest.mark.parametrize("rhythm", RHYTHMS)
@@ -228,8 +231,8 @@ def test_those_not_turned_away_are_in_the_beds(model: str, rhythm: str, data: st
     demand = data.draw(demands(rhythm))
     curve = curve_of(model, demand)
     present, load = curve.occupancy * curve.beds, demand.offered_load
-    if demand.discharge_hours and model in ("unlimited_beds", "seasonal_loss", "waiting"):
-        # These move each stay to the hour and day patients leave at, which changes the mean stay (see test_year.py).
+    if demand.discharge_hours:
+        # each stay is moved to the hour and day patients leave at, which changes the mean stay (see test_year.py)
         load = patients_by_hour(demand).mean()
 
     if curve.when_full in ("leaves", "no chance"):
@@ -241,7 +244,63 @@ def test_those_not_turned_away_are_in_the_beds(model: str, rhythm: str, data: st
         # Everyone gets a bed in the end where the queue settles: at every rate, with beds made ready included.
         if demand.rate_variation == 0:
             settles = curve.beds > offered_load_by_hour(demand).mean() * (1 + 1e-6)
-            assert present[settles] == pytest.approx(load, rel=1e-6)
+            assert present[settles] == pytest.approx(load, rel=SETTLED)
+
+
+def made_ready_and_longer(demand: Demand, hours: float) -> tuple[Demand, Demand]:
+    """Return a demand whose beds take so many hours to be made ready, and one whose stays, all even, are as much longer."""
+    slow = {"length_of_stay": LengthOfStay(demand.length_of_stay.mean_days + hours / 24, 0.0)}
+    slow["booked"] = tuple(
+        replace(one, length_of_stay=LengthOfStay(one.length_of_stay.mean_days + hours / 24, 0.0))
+        for one in demand.booked
+    )
+    return demand.with_changes(turnaround_hours=hours), demand.with_changes(**slow)
+
+
+def with_even_stays(demand: Demand) -> Demand:
+    """Return the demand with every stay as long as the mean, and nothing that keeps a bed longer."""
+    return demand.with_changes(
+        length_of_stay=LengthOfStay(demand.length_of_stay.mean_days, 0.0),
+        booked=tuple(replace(one, length_of_stay=LengthOfStay(2.5, 0.0)) for one in demand.booked),
+        discharge_hours=(),
+        weekend_slip=(0.0, 0.0),
+        turnaround_hours=0.0,
+    )
+
+
+@every_model
+@every_rhythm
+@lawful
+@given(data=st.data(), hours=st.floats(1.0, 48.0))
+def test_making_a_bed_ready_takes_it_like_a_longer_stay(
+    model: str, rhythm: str, data: st.DataObject, hours: float
+) -> None:
+    """Even stays and h hours of turnaround find it full as stays h hours longer; occupancy leaves out the h hours."""
+    demand = with_even_stays(data.draw(demands(rhythm)))
+    ready, longer = made_ready_and_longer(demand, hours)
+    beds = some_beds(longer)
+    first, second = curve_of(model, ready, beds), curve_of(model, longer, beds)
+
+    digits = SETTLED if model == "waiting" else 1e-6
+    assert first.turn_away_probability == pytest.approx(second.turn_away_probability, rel=digits, abs=1e-9)
+    assert first.by_month == pytest.approx(second.by_month, rel=digits, abs=1e-9)
+    assert first.occupancy == pytest.approx(second.occupancy * demand.offered_load / longer.offered_load, rel=digits)
+
+
+@every_model
+@lawful
+@given(stay=stays(), load=st.floats(1.0, 40.0), hours=st.floats(1.0, 48.0))
+def test_on_a_steady_ward_turnaround_is_so_much_more_load(
+    model: str, stay: LengthOfStay, load: float, hours: float
+) -> None:
+    """Stays of any spread: a steady ward feels arrivals × (stay + turnaround), and its patients are the stay's part."""
+    ready = Demand(load / stay.mean_days, stay, turnaround_hours=hours)
+    longer = Demand(ready.arrivals_per_day, LengthOfStay(stay.mean_days + hours / 24))
+    beds = some_beds(longer)
+    first, second = curve_of(model, ready, beds), curve_of(model, longer, beds)
+
+    assert first.turn_away_probability == pytest.approx(second.turn_away_probability, rel=1e-6, abs=1e-9)
+    assert first.occupancy == pytest.approx(second.occupancy * load / longer.offered_load, rel=1e-6)
 
 
 @pytest.mark.parametrize("model", [name for name in ("erlang_loss", "waiting") if name in MODELS])
