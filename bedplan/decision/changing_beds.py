@@ -17,7 +17,7 @@ from scipy import special
 
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Waits
-from bedplan.models.year import arrivals_by_hour, month_of_hour, weekday_of_hour
+from bedplan.models.year import arrivals_by_hour, month_of_hour, patients_wanted, weekday_of_hour
 
 if TYPE_CHECKING:
     from datetime import date
@@ -257,7 +257,7 @@ def _or_closed(shares: Array, closed: float) -> Array:
 def _occupancy(curve: BedCurve, mixture: _Mixture, turned_away: Array) -> Array:
     """Return patients in beds ÷ open beds; those who aren't turned away are in the beds (Little 1961)."""
     if curve.when_full == "leaves":
-        present = curve.demand.offered_load * (1.0 - turned_away)
+        present = patients_wanted(curve.demand) * (1.0 - turned_away)
     else:
         present = mixture.over_hours(mixture.by_month(curve.occupancy * curve.beds))
     open_beds = mixture.over_hours(mixture.by_month(curve.beds.astype(float)))

@@ -12,6 +12,7 @@ import numpy as np
 from bedplan.decision.changing_beds import NO_BED_CHANGES, BedChanges, with_changing_beds
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import MODELS, BedCurve, Demand, average_beds
+from bedplan.models.year import beds_wanted
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -69,7 +70,7 @@ class Ward:
 
         Beds that closures or single-sex bays take out of use come on top, so that a rule can still be met.
         """
-        peak = self.demand.offered_load * max(self.demand.month_factors)
+        peak = beds_wanted(self.demand) * max(self.demand.month_factors)
         swing = math.sqrt(self.demand.clustering + peak * self.demand.rate_variation**2)
         most = math.ceil(peak + 5.0 * swing * math.sqrt(peak) + 8) + self.bed_changes.most_out_of_use
         most = max(most, self.beds + 5, self.average_formula_beds + 5)

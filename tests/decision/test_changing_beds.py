@@ -54,6 +54,15 @@ def test_one_closure_mixes_two_bed_counts() -> None:
     assert point.occupancy == pytest.approx(present / open_beds, rel=1e-9)
 
 
+def test_patients_whom_the_weekend_keeps_fill_the_open_beds() -> None:
+    """Where weekend discharges wait for Monday, 4 days become 4 + 3/7, and occupancy beside a closure counts them."""
+    kept = Demand(2.0, LengthOfStay(4.0), weekend_slip=(1.0, 1.0))
+    point = curve_with(BedChanges((Closure.expected(4, 1.33, 7.9),)), kept).at(12)
+
+    present, open_beds = 2 * (4 + 3 / 7) * (1 - point.turn_away_probability), 12 - 4 * 1.33 * 7.9 / 365
+    assert point.occupancy == pytest.approx(present / open_beds, rel=1e-3)
+
+
 def test_two_closures_come_and_go_independently() -> None:
     """Both at once happens for the product of their shares, and never leaves fewer than no beds."""
     curve = curve_with(BedChanges((Closure(4, (0.1,) * 12), Closure(6, (0.2,) * 12))))

@@ -53,9 +53,10 @@ def test_a_ward_is_read_on_any_model_by_name(model: str) -> None:
         (DEMAND, 12),
         (Demand(40.0, LengthOfStay(5.0), month_factors=[1.3, 1.2, 1.1] + [0.92] * 6 + [0.9, 1.0, 1.2]), 0),
         (Demand(4.0, LengthOfStay(5.0), clustering=2.0, rate_variation=0.1), 12),
+        (Demand(40.0, LengthOfStay(0.5), turnaround_hours=24.0), 0),
         (Demand(0.0, LengthOfStay(5.0)), 0),
     ],
-    ids=["plain", "winter", "clusters", "nobody"],
+    ids=["plain", "winter", "clusters", "made ready", "nobody"],
 )
 def test_a_curve_reaches_past_every_usual_limit(demand: Demand, beds: int) -> None:
     """The largest count drawn turns fewer than 1 in 100 away in every month."""
