@@ -51,6 +51,7 @@ def backtest(records: Records, ward: str, *, capacity: Capacity | None = None) -
     Source: rolling origin: Tashman 2000, International Journal of Forecasting 16(4).
     Checked by: tests/data/test_backtesting.py
     """
+    records = records.settled
     readings = take_readings(records, ward)
     trial = _Trial(records, readings, capacity if capacity and ward in capacity.wards else None)
     reason = trial.why_not()

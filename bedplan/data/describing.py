@@ -50,7 +50,7 @@ class FullTimes:
 
 @dataclass(frozen=True)
 class WardDescription:
-    """One ward as its records show it, over the file's window.
+    """One ward as its records show it, over the file's window less the days in which patients present are missing.
 
     ``hourly`` patients present, by hour; ``midnight_mean`` and ``daily_peak_mean`` averages over days;
     ``by_hour_of_day`` (24,) average patients present. ``variance_over_mean`` of the midnight count, with a 95 %
@@ -90,6 +90,7 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
 
     Checked by: tests/data/test_describing.py
     """
+    records = records.settled
     stays = stays_in_window(records, ward)
     counts = present(records, stays, 3_600)
     by_day = counts.reshape(records.days, 24)

@@ -251,6 +251,8 @@ def _notes(
         )
     elif not arrivals.rhythm.has_season:
         notes.append(f"The file covers {days:,} days: too few to tell the seasons, so none is assumed.")
+    if records.period_note:
+        notes.append(records.period_note)
     if records.excluded:
         notes.append(f"{int((~records.counted_days).sum()):,} days were left out, as chosen.")
     if unfinished:

@@ -129,7 +129,7 @@ def hidden_demand(
     """
     share = _share(share_recorded)
     logs = refusals if isinstance(refusals, tuple) else () if refusals is None else (refusals,)
-    evidence = gather(own_patients(records, ward), capacity)
+    evidence = gather(own_patients(records.settled, ward), capacity)
     methods = (
         by_list(evidence, logs, share),
         by_specialty(evidence),

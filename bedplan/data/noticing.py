@@ -14,11 +14,11 @@ if TYPE_CHECKING:
 
     from bedplan.data.rows import Rows
     from bedplan.data.table import StayTable
+    from bedplan.data.windows import Period
 
 HOUR_SECONDS = 3_600
 DEFAULT_SHARE = 0.05  # of stays in one minute of the day: a default, not a time
 FEWEST_STAYS = 200
-END_DAYS = 28
 
 
 def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overlaps: int) -> list[str]:
@@ -52,7 +52,7 @@ def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overl
     return notes
 
 
-def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, window: tuple[int, int], until: int) -> list[str]:
+def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, period: Period) -> list[str]:
     """Say what the stays show together; ``live`` are the kept rows."""
     start, end = rows.start[live], rows.end[live]
     notes = []
@@ -67,8 +67,9 @@ def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, window: tu
         notes.append("The file has dates without times: stays are counted in nights, and hours of the day are unknown.")
     if not table.knows_patients:
         notes.append("No patient key was found: repeated rows, moves and overlaps of one patient can't be recognised.")
-    notes += _edge_notes(start, end, window, until)
-    days = (window[1] - window[0]) // DAY_SECONDS
+    if period.note:
+        notes.append(period.note)
+    days = (period.last - period.first) // DAY_SECONDS
     if live.size < FEWEST_STAYS or days < 90:
         notes.append(
             f"A small file ({live.size:,} stays in {days:,} days): intervals are wide and no season is read from it."
@@ -113,26 +114,3 @@ def _world_time_note(start: NDArray[np.int64]) -> list[str]:
     return [
         "Arrivals come a whole hour apart in summer and winter: the times may be world time (UTC), not the ward's clock."
     ]
-
-
-def _edge_notes(start: NDArray[np.int64], end: NDArray[np.int64], window: tuple[int, int], until: int) -> list[str]:
-    """Say whether the export seems to leave out patients who were in at the start, or were still in at the end."""
-    finished = end != MISSING
-    stay = float((end[finished] - start[finished]).mean()) if finished.any() else 0.0
-    span = window[1] - window[0]
-    if start.size < FEWEST_STAYS or span < 4 * END_DAYS * DAY_SECONDS or stay < DAY_SECONDS:
-        return []
-    notes = []
-    if start.min() >= window[0]:
-        notes.append(
-            "No stay starts before the first day, so patients who were in already seem to be missing: counts of patients "
-            "present are too low in the first weeks. Ask for all stays that touch the period."
-        )
-    present = float(((start < window[1]) & (np.where(finished, end, until + 1) >= window[1])).sum())
-    usual = float((end[finished] - start[finished]).sum()) / span
-    if present < 0.5 * usual:
-        notes.append(
-            "Far fewer patients than usual are in on the last day: the export seems to be chosen by discharge date and to "
-            "leave out those still in. Counts near the end are too low."
-        )
-    return notes

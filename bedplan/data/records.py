@@ -5,7 +5,7 @@ from __future__ import annotations
 import time
 from dataclasses import dataclass, replace
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 import pandas as pd
@@ -21,7 +21,7 @@ from bedplan.data.rows import RULES, Rows
 from bedplan.data.source import FileLike, SourceFile, open_source
 from bedplan.data.table import StayTable, as_stay_table
 from bedplan.data.wardlinks import WardLink, propose_links
-from bedplan.data.windows import chosen_window, find_window, seen_until
+from bedplan.data.windows import TimesInHospital, chosen_window, find_period, seen_until, times_in_hospital
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -40,7 +40,9 @@ class Records:
     method, specialty, age_band, destination, ready the file had, and whether it was repaired. ``set_aside``: the rows that don't count, with the
     reason and without identities. ``window``: first and last moment for which the file is complete; ``seen_until``:
     up to when unfinished stays were watched. ``links``: ward names that may mean the same ward, for a person to
-    confirm. ``excluded``: periods left out of rates.
+    confirm. ``excluded``: periods left out of rates. ``warm_up_days``: days at the window's start in which starts are
+    complete and patients present are not; ``chosen_by``: by what the export was chosen, where that can be told;
+    ``period_note`` says which patients it leaves out, if any.
 
     Checked by: tests/data/test_records.py
     """
@@ -56,6 +58,9 @@ class Records:
     has_times: bool = True
     links: tuple[WardLink, ...] = ()
     excluded: tuple[tuple[pd.Timestamp, pd.Timestamp], ...] = ()
+    warm_up_days: int = 0
+    chosen_by: str = ""
+    period_note: str = ""
 
     @property
     def short_fingerprint(self) -> str:
@@ -79,6 +84,14 @@ class Records:
         for first, last in self.excluded:
             counts &= ~((self.calendar >= first) & (self.calendar <= last))
         return counts
+
+    @cached_property
+    def settled(self) -> Records:
+        """What is left for counts of patients present? The same stays, watched from when everybody in is known."""
+        if not self.warm_up_days:
+            return self
+        first = self.window[0] + pd.Timedelta(days=self.warm_up_days)
+        return replace(self, window=(first, self.window[1]), warm_up_days=0)
 
     @cached_property
     def by_ward(self) -> Mapping[str, NDArray[np.int64]]:
@@ -138,9 +151,9 @@ def read_records(
     # What was read is in the table now: a large file need not be held three times.
     file, text = replace(file, content=b""), replace(text, columns={})
     tell(0.7, "patients' ways through the wards")
-    until, said = _clean(table, chosen)
+    seen = _clean(table, chosen)
     tell(0.9, "counting every row")
-    records = _finished(table, text, file, chosen, until, said)
+    records = _finished(table, text, file, chosen, seen)
     tell(1.0, "done")
     return records
 
@@ -149,8 +162,16 @@ def _tell_nobody(_share: float, _doing: str) -> None:
     """Stand in where nobody wants to know how far it is."""
 
 
-def _clean(table: StayTable, choices: IntakeChoices) -> tuple[int, list[str]]:
-    """Apply every rule in its order; return the moment up to which the file was seen, and what was noticed."""
+class _Seen(NamedTuple):
+    """Up to when the file was watched, when patients were in hospital, and what was noticed on the way."""
+
+    until: int
+    times: TimesInHospital
+    notes: list[str]
+
+
+def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
+    """Apply every rule in its order."""
     rows, notes = table.rows, []
     cleaning.check_dates(rows, int(time.time()) + DAY_SECONDS)
     wards = max(len(table.wards), 1)
@@ -173,12 +194,11 @@ def _clean(table: StayTable, choices: IntakeChoices) -> tuple[int, list[str]]:
         order, long_overlaps = sequence.part_overlaps(rows, order)
         notes += noticing.sequences(rows, order, table, long_overlaps)
     set_places_aside(rows, table.wards, table.text.get("class"), choices.places)
-    return until, notes
+    times = times_in_hospital(rows, order, knows_patients=table.knows_patients, knows_spells=table.knows_spells)
+    return _Seen(until, times, notes)
 
 
-def _finished(
-    table: StayTable, text: TextTable, file: SourceFile, choices: IntakeChoices, until: int, said: list[str]
-) -> Records:
+def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: IntakeChoices, seen: _Seen) -> Records:
     """Build the records and their report from the cleaned rows."""
     rows = table.rows
     live = np.flatnonzero(rows.live)
@@ -186,26 +206,30 @@ def _finished(
         raise UnreadableRecords(_why_none(rows, file.name))
     live = live[np.argsort(rows.start[live], kind="stable")]
     start, end = rows.start[live], rows.end[live]
-    window = chosen_window(choices.window) or find_window(start, end, until)
-    notes = [*text.notes, *table.notes, *said, *noticing.whole_file(rows, live, table, window, until)]
+    period = find_period(seen.times, seen.until).narrowed(chosen_window(choices.window))
+    about = noticing.whole_file(rows, live, table, period)
+    notes = [*text.notes, *table.notes, *seen.notes, *about]
     stays = table.frame(live, start, end)
     changed = (rows.reason[live] > 0) | (start != rows.first_start[live]) | (end != rows.first_end[live])
     stays["repaired"] = changed
     removed = table.frame(np.flatnonzero(rows.aside))
     sentences = np.array(["", *(rule.sentence for rule in RULES.values())], dtype=object)
     removed.insert(0, "reason", pd.Categorical(sentences[rows.reason[rows.aside]]))
-    links = propose_links(table.wards, rows.ward[live], start, window)
+    links = propose_links(table.wards, rows.ward[live], start, period.window)
     return Records(
         name=file.name,
         stays=stays,
         set_aside=removed.drop(columns=["patient_key", "spell_key"], errors="ignore"),
         wards=tuple(sorted(stays["ward"].cat.categories)),
-        report=_report(table, text, until, notes + [link.sentence for link in links]),
-        window=tuple(pd.Timestamp(int(moment), unit="s") for moment in window),
-        seen_until=pd.Timestamp(int(until), unit="s"),
+        report=_report(table, text, seen.until, notes + [link.sentence for link in links]),
+        window=tuple(pd.Timestamp(int(moment), unit="s") for moment in period.window),
+        seen_until=pd.Timestamp(int(seen.until), unit="s"),
         fingerprint=file.fingerprint,
         has_times=table.has_times,
         links=links,
+        warm_up_days=period.warm_up_days,
+        chosen_by=period.chosen_by,
+        period_note=period.note if period.is_partial else "",
         excluded=tuple((pd.Timestamp(first), pd.Timestamp(last)) for first, last in choices.excluded),
     )
 

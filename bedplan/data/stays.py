@@ -8,6 +8,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data.survival import StayCurve, product_limit
+from bedplan.data.windows import BY_DISCHARGE
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import LengthOfStay
 
@@ -34,15 +35,21 @@ def stays_in_window(records: Records, ward: str) -> pd.DataFrame:
 def stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
     """How long do these patients stay? Those in at the window's start are watched from then on only.
 
+    In a file chosen by discharge date long stays near its end are missing, but those who left before the window's end
+    are all there: in a ward that goes on as before they are a fair sample, whenever they came.
+
     Raises:
         UnreadableRecords: none of the stays has ended, or none lasts.
     """
     day = np.timedelta64(86_400, "s")
+    by_discharge = records.chosen_by == BY_DISCHARGE
+    if by_discharge:
+        stays = stays[stays["end"] <= records.window[1]]
     start = stays["start"].to_numpy()
     finished = stays["end"].notna().to_numpy()
     end = np.where(finished, stays["end"].to_numpy(), np.datetime64(records.seen_until, "s"))
     first = np.datetime64(records.window[0], "s")
-    entry = np.maximum((first - start) / day, 0.0)
+    entry = np.maximum((first - start) / day, 0.0) * (not by_discharge)
     try:
         curve = product_limit(np.maximum((end - start) / day, 0.0), finished, entry)
     except ImpossibleFigure as problem:
@@ -73,7 +80,7 @@ def stay_change(records: Records, stays: pd.DataFrame, ward: str) -> tuple[float
     Checked by: tests/data/test_estimating.py
     """
     since = records.window[1] - pd.Timedelta(days=365)
-    late = (stays["start"] >= since).to_numpy()
+    late = (stays["end" if records.chosen_by == BY_DISCHARGE else "start"] >= since).to_numpy()
     finished = stays["end"].notna().to_numpy()
     if records.days < 730 or min((late & finished).sum(), (~late & finished).sum()) < FEWEST_TO_COMPARE:
         return None
