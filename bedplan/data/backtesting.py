@@ -12,7 +12,7 @@ import pandas as pd
 
 from bedplan.data.accuracy import coverage_range
 from bedplan.data.census_ahead import CensusOutlook, look_at_census
-from bedplan.data.chances import count_at, ranked_score, share_within
+from bedplan.data.chances import count_at, ranked_score, share_above, share_within
 from bedplan.data.last_year import BAND, WIDE_BAND, Backtest
 from bedplan.data.outlook import forecast_from, past_origins
 from bedplan.data.readings import take_readings
@@ -34,6 +34,7 @@ FEWEST_EARLIER_ARRIVALS = 100
 YEAR_DAYS, SAME_WEEKDAY_DAYS = 365, 364
 SILENT_DAYS = 28
 LEVELS = (0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9, 0.95, 0.99)
+TOP_OF_BAND = (1.0 + BAND) / 2.0
 USUAL_OCCUPANCY = 0.85
 
 
@@ -134,7 +135,10 @@ class _Trial:
             coverage_95_range=coverage_range(inside[WIDE_BAND]),
             year_ahead_80=float(share_within(ahead, actual, BAND)[counted].mean()),
             year_ahead_95=float(share_within(ahead, actual, WIDE_BAND)[counted].mean()),
+            above_80=float(share_above(chances, actual, TOP_OF_BAND)[counted].mean()),
+            year_ahead_above_80=float(share_above(ahead, actual, TOP_OF_BAND)[counted].mean()),
             calibration=tuple((level, float(inside[level].mean())) for level in LEVELS),
+            calibration_ranges=tuple(coverage_range(inside[level]) for level in LEVELS),
             score=ranked_score(chances[counted], actual[counted]),
             middle_error=float((happened["present"] - happened["middle"]).abs().mean()),
             same_week_error=float((happened["present"] - happened["same_week_last_year"]).abs().mean()),

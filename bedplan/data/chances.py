@@ -128,6 +128,19 @@ def share_within(chances: Array, counts: Whole, level: float) -> Array:
     return np.where(width > 1e-12, np.clip(inside, 0.0, None) / np.where(width > 1e-12, width, 1.0), 0.0)
 
 
+def share_above(chances: Array, counts: Whole, share: float) -> Array:
+    """Did each count lie above what its chances keep within with this share? 1, 0, or a part on the edge: ``(d,)``.
+
+    If the chances are right, the mean of this is 1 − ``share``, exactly.
+
+    Checked by: tests/data/test_chances.py
+    """
+    low, high = share_below(chances, counts)
+    width = high - low
+    above = np.clip(high - np.maximum(low, share), 0.0, None)
+    return np.where(width > 1e-12, above / np.where(width > 1e-12, width, 1.0), (high > share).astype(float))
+
+
 def share_below(chances: Array, counts: Whole) -> tuple[Array, Array]:
     """How likely was a smaller count, and how likely this one or a smaller? Two ``(d,)``."""
     days, last = np.arange(counts.size), chances.shape[1] - 1

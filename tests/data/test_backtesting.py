@@ -53,6 +53,113 @@ def test_each_ward_lies_where_chance_allows(checked: list[Backtest]) -> None:
     assert sum(one.passed for one in checked) >= 19
 
 
+def test_each_width_lies_where_chance_allows(checked: list[Backtest]) -> None:
+    """Over 24 wards and 11 widths, at least 8 in 10 bands keep their promise within chance (1 in 150 would have fewer)."""
+    assert np.mean([[band.outcome == "kept" for band in one.kept] for one in checked]) >= 0.8
+    for one in checked:
+        assert [(band.promised, band.held) for band in one.kept] == list(one.calibration)
+        assert [band.held for band in one.kept] == sorted(band.held for band in one.kept)
+        assert all(band.low <= band.held <= band.high + 1e-9 for band in one.kept)
+        by_width = {band.promised: (band.low, band.high) for band in one.kept}
+        assert (by_width[0.8], by_width[0.95]) == (one.coverage_80_range, one.coverage_95_range)
+
+
+def test_days_outside_lie_on_both_sides(checked: list[Backtest]) -> None:
+    """On wards that go on as before, 1 day in 10 lies above the 80 % band and as many below it."""
+    above = np.mean([one.above_80 for one in checked])
+    below = np.mean([1.0 - one.above_80 - one.coverage_80 for one in checked])
+
+    assert above == pytest.approx(0.1, abs=0.03)
+    assert below == pytest.approx(0.1, abs=0.03)
+
+
+def made_check(**given: object) -> Backtest:
+    """Return a check whose figures are given by hand."""
+    figures = {
+        "coverage_80": 0.79,
+        "coverage_80_range": (0.72, 0.85),
+        "coverage_95": 0.94,
+        "coverage_95_range": (0.90, 0.97),
+        "year_ahead_80": 0.78,
+        "score": 1.7,
+        "middle_error": 2.4,
+        "same_week_error": 3.4,
+        "average_formula_error": 1.0,
+    }
+    return Backtest("Heron", checked=True, **(figures | given))
+
+
+@pytest.mark.parametrize(
+    ("held", "said"),
+    [
+        ((0.52, 0.79, 0.93), "All 3 bands kept what they promised, allowing for chance."),
+        (
+            (0.44, 0.60, 0.80),
+            "None of 3 bands kept what they promised, allowing for chance; 3 held fewer days (among them the 95\u00a0% band 80\u00a0%).",
+        ),
+        (
+            (0.60, 0.81, 0.88),
+            "1 of 3 bands kept what they promised, allowing for chance; 1 held fewer days (the 95\u00a0% band 88\u00a0%); 1 held more days (the 50\u00a0% band 60\u00a0%).",
+        ),
+    ],
+)
+def test_what_the_bands_promised(held: tuple[float, ...], said: str) -> None:
+    """Bands within 5 points of their promise kept it; the others are counted, and the widest of them is named."""
+    levels = (0.5, 0.8, 0.95)
+    check = made_check(
+        calibration=tuple(zip(levels, held, strict=True)),
+        calibration_ranges=tuple((share - 0.05, share + 0.05) for share in held),
+    )
+
+    assert check.promise == said
+    assert Backtest("Heron", checked=False, reason="too short.").promise == ""
+
+
+def test_what_the_check_rests_on() -> None:
+    """The figures name both bands with what chance allows, the side of the misses, and the score against plainer ways."""
+    rows = {what: (figure, beside) for what, figure, beside in made_check(above_80=0.04).figures}
+
+    assert rows["Days inside the 80\u00a0% band"] == (
+        "79\u00a0%",
+        "72\u00a0% to 85\u00a0% allowing for chance: keeps the 80\u00a0% promised",
+    )
+    assert rows["Days inside the 95\u00a0% band"][1].endswith("keeps the 95\u00a0% promised")
+    assert rows["Days above the 80\u00a0% band"] == ("4.0\u00a0%", "10\u00a0% promised")
+    score, beside = rows["Beds off on an average day: the whole band (ranked score)"]
+    # 1 − 1.7 ÷ 3.4 = 0.5; 1.7 ÷ 1.0 − 1 = 0.7
+    assert score == "1.7"
+    assert (
+        beside
+        == "50\u00a0% nearer than the same week of the year before; 70\u00a0% further off than the average formula"
+    )
+    assert rows["… the average formula"][0] == "1.0"
+    assert Backtest("Heron", checked=False).figures == ()
+
+
+@pytest.mark.parametrize(
+    ("given", "said", "unsaid"),
+    [
+        ({}, "Passed: ", "95\u00a0%"),
+        (
+            {"coverage_95_range": (0.80, 0.93)},
+            "the 95\u00a0% band held 94\u00a0%, fewer than promised even allowing for chance",
+            "Failed",
+        ),
+        ({"coverage_80_range": (0.60, 0.75), "above_80": 0.15}, "plan this ward with more room", "Passed"),
+        ({"coverage_80_range": (0.60, 0.75), "above_80": 0.02}, "had fewer patients than told", "more room"),
+        ({"year_ahead_80": 0.4, "year_ahead_above_80": 0.5}, "plan this ward with more room", "Passed"),
+        ({"year_ahead_80": 0.4, "year_ahead_above_80": 0.0}, "had fewer patients than told", "more room"),
+        ({"coverage_80_range": (0.82, 0.9)}, "swings less than assumed", "Passed"),
+    ],
+)
+def test_the_verdict(given: dict[str, object], said: str, unsaid: str) -> None:
+    """More room is asked for only where the days outside the band mostly lie above it; a failing 95 % band is named."""
+    verdict = made_check(**given).verdict
+
+    assert said in verdict
+    assert unsaid not in verdict
+
+
 def test_what_is_told_beats_plainer_ways(checked: list[Backtest]) -> None:
     """Scored in beds, what is told is nearer than the same week last year on every ward, and than one average on most."""
     assert all(one.score < one.same_week_error for one in checked)
@@ -87,16 +194,18 @@ def test_wards_that_are_often_full(waits: bool, name: str) -> None:
         assert any("No beds by date" in note for note in without.notes)
 
 
-@pytest.mark.parametrize("jump", [1.6, 0.5])
-def test_a_ward_that_changes_fails(jump: float) -> None:
-    """Far more or far fewer arrivals than before is what earlier records can't know: the check fails and says so."""
+@pytest.mark.parametrize(
+    ("jump", "said"), [(1.6, "more room than its curve shows"), (0.5, "had fewer patients than told")]
+)
+def test_a_ward_that_changes_fails(jump: float, said: str) -> None:
+    """Far more or far fewer arrivals than before is what earlier records can't know: the check fails and says which."""
     for seed in range(3):
         result = backtest(made_records(MadeWard(6.0, 5.0, 1.1, jump=jump), seed), "Heron")
 
         assert result.year_ahead_80 < 0.4
         assert not result.passed
         assert result.verdict.startswith("Failed: ")
-        assert "more room than its curve shows" in result.verdict
+        assert said in result.verdict
         # The origins move on and learn: the last months are told better than those just after the change.
         shares = [share for _, share in result.months]
         assert np.mean(shares[-3:]) > np.mean(shares[1:4])

@@ -12,6 +12,7 @@ from bedplan.data.chances import (
     at_most_in_beds,
     count_at,
     ranked_score,
+    share_above,
     share_within,
     variance_in_beds,
 )
@@ -90,6 +91,20 @@ def test_right_chances_hold_exactly_their_level(level: float, mean: float) -> No
     share = share_within(chances, COUNTS, level)
 
     assert share @ stats.poisson.pmf(COUNTS, mean) == pytest.approx(level, abs=1e-9)
+
+
+@pytest.mark.parametrize("share", [0.6, 0.9, 0.975])
+@pytest.mark.parametrize("mean", [0.4, 4.2, 27.0])
+def test_right_chances_are_passed_exactly_as_often_as_said(share: float, mean: float) -> None:
+    """Averaged over a Poisson count, the share above a mark is 1 − the mark; above, inside and below add up to 1."""
+    chances = at_most(np.full(61, mean), np.ones(61), 60)
+    weights = stats.poisson.pmf(COUNTS, mean)
+    below = 1.0 - share_above(chances, COUNTS, 1.0 - share)
+
+    assert share_above(chances, COUNTS, share) @ weights == pytest.approx(1.0 - share, abs=1e-7)
+    told = share_above(chances, COUNTS, share) + share_within(chances, COUNTS, 2 * share - 1) + below
+    assert told[COUNTS < 50] == pytest.approx(1.0, abs=1e-9)
+    assert share_above(chances[:2], np.array([0, 99]), 0.9).tolist()[1] == 1.0
 
 
 def test_counts_far_from_what_was_told_are_outside() -> None:
