@@ -13,6 +13,8 @@ from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import LengthOfStay
 
 if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
     from bedplan.data.records import Records
 
 FEWEST_TO_COMPARE = 100
@@ -32,14 +34,14 @@ def stays_in_window(records: Records, ward: str) -> pd.DataFrame:
     return touching
 
 
-def stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
-    """How long do these patients stay? Those in at the window's start are watched from then on only.
+def watched_stays(
+    records: Records, stays: pd.DataFrame
+) -> tuple[NDArray[np.float64], NDArray[np.bool_], NDArray[np.float64]]:
+    """For how many days was each stay seen, has it ended, and after how many days did watching begin? Three ``(n,)``.
 
-    In a file chosen by discharge date long stays near its end are missing, but those who left before the window's end
-    are all there: in a ward that goes on as before they are a fair sample, whenever they came.
-
-    Raises:
-        UnreadableRecords: none of the stays has ended, or none lasts.
+    Those in at the window's start are watched from then on only. In a file chosen by discharge date long stays near its
+    end are missing, but those who left before the window's end are all there: in a ward that goes on as before they are
+    a fair sample, whenever they came.
     """
     day = np.timedelta64(86_400, "s")
     by_discharge = records.chosen_by == BY_DISCHARGE
@@ -50,8 +52,17 @@ def stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
     end = np.where(finished, stays["end"].to_numpy(), np.datetime64(records.seen_until, "s"))
     first = np.datetime64(records.window[0], "s")
     entry = np.maximum((first - start) / day, 0.0) * (not by_discharge)
+    return np.maximum((end - start) / day, 0.0), finished, entry
+
+
+def stay_curve(records: Records, stays: pd.DataFrame, ward: str) -> StayCurve:
+    """How long do these patients stay? Unfinished stays count for what was seen of them.
+
+    Raises:
+        UnreadableRecords: none of the stays has ended, or none lasts.
+    """
     try:
-        curve = product_limit(np.maximum((end - start) / day, 0.0), finished, entry)
+        curve = product_limit(*watched_stays(records, stays))
     except ImpossibleFigure as problem:
         raise UnreadableRecords(
             [f"No stay on ward “{ward}” has ended, so how long patients stay can't be told: check the end column."]
