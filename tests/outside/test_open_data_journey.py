@@ -17,7 +17,7 @@ import numpy as np
 import openpyxl
 import pytest
 
-from bedplan.data import estimate_demand, read_records
+from bedplan.data import IntakeChoices, estimate_demand, read_records
 from bedplan.decision import TurnAwayLimit, Ward, decide, pool_wards
 from bedplan.export import Justification, Source, as_html, as_xlsx, case_for
 from bedplan.plan import Changes, from_estimate, planned_ward
@@ -105,6 +105,25 @@ def test_a_year_of_stays(open_data: Callable[[str], pd.DataFrame], name: str) ->
     assert ward.curve("erlang_loss").at(rule_beds).turn_away_probability == pytest.approx(share, abs=5e-6)
     for limit, beds in zip((0.01, 0.05, 0.001), needed, strict=True):
         assert beds is None or beds_for(ward, limit) == beds
+
+
+@pytest.mark.parametrize(("window", "miss"), [((dt.date(2023, 1, 1), dt.date(2023, 12, 31)), 5e-5), (None, 0.005)])
+def test_a_small_year_chosen_by_admission_date(
+    open_data: Callable[[str], pd.DataFrame], window: tuple[dt.date, dt.date] | None, miss: float
+) -> None:
+    """201 stays of one year want 6.195 beds, also where nobody says that the file ends with its last admission."""
+    # Source: Ruffieux, Paccaud & Marazzi 2000, Casemix Quarterly 2 (Lausanne 2000), in the R package robustbase (los);
+    # 2,261 bed-days ÷ 365; beds at 85 %, their share turned away and the beds for 1 % by Erlang's recursion
+    days = open_data("robustbase/los")["dat"]
+    choices = IntakeChoices(window=window)
+    records = read_records(file_of(rows_of("Unit", days)), name="one year.csv", choices=choices)
+
+    ward = planned(records, "Unit")
+    assert ward.demand.offered_load == pytest.approx(2_261 / 365, rel=miss)
+    assert ward.average_formula_beds == 8
+    assert ward.curve("erlang_loss").at(8).turn_away_probability == pytest.approx(0.133, abs=0.001)
+    assert beds_for(ward, 0.01) == 13
+    assert any("by admission date" in note for note in records.report.notes)
 
 
 def test_seventeen_hospitals(by_hospital: Records) -> None:
