@@ -16,6 +16,7 @@ from bedplan.data.records import Records, read_records
 from bedplan.data.repairs import RepairEffect, what_repairs_change
 from bedplan.data.report import IntakeReport
 from bedplan.data.returns import MonthlyReturn, read_monthly_return
+from bedplan.data.stay_families import StayFamilies, stay_families
 from bedplan.data.wardlinks import WardLink
 
 __all__ = [
@@ -39,6 +40,7 @@ __all__ = [
     "MonthlyReturn",
     "Records",
     "RepairEffect",
+    "StayFamilies",
     "Uncertainty",
     "WardDescription",
     "WardLink",
@@ -57,5 +59,6 @@ __all__ = [
     "read_monthly_return",
     "read_records",
     "read_refusals",
+    "stay_families",
     "what_repairs_change",
 ]
