@@ -10,6 +10,7 @@ from bedplan.data.evidence import DemandMethod
 from bedplan.data.forecasting import Forecast, forecast_arrivals
 from bedplan.data.hidden_demand import DemandStep, HiddenDemand, hidden_demand
 from bedplan.data.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
+from bedplan.data.past_years import PastYear, past_years
 from bedplan.data.preview import ColumnPreview, preview_columns
 from bedplan.data.reconciling import CensusCheck, Flows, check_census, flows
 from bedplan.data.records import Records, read_records
@@ -38,6 +39,7 @@ __all__ = [
     "IntakeReport",
     "LongStays",
     "MonthlyReturn",
+    "PastYear",
     "Records",
     "RepairEffect",
     "StayFamilies",
@@ -51,6 +53,7 @@ __all__ = [
     "flows",
     "forecast_arrivals",
     "hidden_demand",
+    "past_years",
     "preview_columns",
     "read_bed_requests",
     "read_cancellations",
