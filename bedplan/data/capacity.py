@@ -8,9 +8,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
+import pyarrow as pa
 
-from bedplan.data.columns import without_formula, words
-from bedplan.data.dates import MISSING, UNREADABLE, read_times
+from bedplan.data.columns import TELLTALES, without_formula, words
+from bedplan.data.dateorder import read_ordered
+from bedplan.data.dates import MISSING, UNREADABLE
 from bedplan.data.reading import read_table
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.table import as_times
@@ -18,8 +20,6 @@ from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
-
-    import pyarrow as pa
 
     from bedplan.data.texttable import TextTable
 
@@ -32,6 +32,7 @@ CAPACITY_HEADINGS: dict[str, tuple[str, ...]] = {
     "closed": words("closedbeds closed bedsclosed"),
     "reason": words("reason comment note notes why"),
 }
+OPEN_ENDS = ("1990-01-01", "2100-12-31")  # of a period without a first or a last day
 
 
 @dataclass(frozen=True)
@@ -91,28 +92,39 @@ def beds_in_text(text: str | None) -> tuple[int, int] | None:
     return (int(fits[1]), int(fits[2] or 0)) if fits else None
 
 
-def read_capacity(source: FileLike, *, name: str | None = None, columns: Mapping[str, str] | None = None) -> Capacity:
+def read_capacity(
+    source: FileLike,
+    *,
+    name: str | None = None,
+    columns: Mapping[str, str] | None = None,
+    date_order: str | None = None,
+) -> Capacity:
     """How many beds did each ward have, from when to when?
 
     Columns ward, from, to, funded_beds, staffed_beds, closed_beds, reason; only ward and one of the bed counts are
     needed. Without staffed beds the funded ones stand in, and a note says so. ``24 (+2)`` is 24 funded and 26 staffed.
 
     Raises:
-        UnreadableRecords: no ward or no bed column, or cells that name no number of beds.
+        UnreadableRecords: no ward or no bed column, cells that name no number of beds, or dates whose order somebody must
+            say (the question is in ``.question``).
 
     Checked by: tests/data/test_capacity.py
     """
     file = open_source(source, name)
     text = read_table(file, CAPACITY_HEADINGS, columns)
     if "ward" not in text.columns or not {"funded", "staffed"} & set(text.columns):
-        raise UnreadableRecords(
-            [f"{file.name} needs a ward column and a column of staffed or funded beds, a row for each ward and period."]
+        text.refuse_kinds(
+            file.name, "staffed beds", *(kind for kind in TELLTALES if kind not in ("staffed beds", "a census"))
         )
-    frame, notes = _frame(text, file.name)
+        lacks = "ward" if "ward" not in text.columns else "staffed or funded beds"
+        raise UnreadableRecords(
+            [f"{file.name} lacks a column of {lacks}: it should have a row for each ward and period, with both."]
+        )
+    frame, notes = _frame(text, file.name, date_order)
     return Capacity(file.name, frame, tuple(sorted(set(frame["ward"]))), tuple(notes))
 
 
-def _frame(text: TextTable, name: str) -> tuple[pd.DataFrame, list[str]]:
+def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, list[str]]:
     """Build the table of periods, one ward after another, oldest first."""
     notes: list[str] = list(text.notes)
     wards = [without_formula(ward or "") for ward in text.columns["ward"].to_pylist()]
@@ -125,11 +137,12 @@ def _frame(text: TextTable, name: str) -> tuple[pd.DataFrame, list[str]]:
     funded = [cell and cell[0] for cell in (counts["funded"] if "funded" in text.columns else regular)]
     if "staffed" not in text.columns:
         notes.append("The file names funded beds only; they are taken as staffed.")
+    since, until = _dates(text, name, date_order)
     frame = pd.DataFrame(
         {
             "ward": wards,
-            "from": _dates(text, "from", "1990-01-01", name),
-            "to": _dates(text, "to", "2100-12-31", name),
+            "from": since,
+            "to": until,
             "funded": funded,
             "staffed": staffed,
             "closed": [cell[0] if cell else 0 for cell in counts["closed"]],
@@ -165,18 +178,18 @@ def _bad_cells(text: TextTable, counts: Mapping[str, list[tuple[int, int] | None
     return problems[:10]
 
 
-def _dates(text: TextTable, key: str, default: str, name: str) -> np.ndarray:
-    """Return one column of dates, blanks open-ended."""
-    if key not in text.columns:
-        return np.full(text.rows, np.datetime64(default, "s"))
-    read = read_times(text.columns[key], "day first")
-    if (read.seconds == UNREADABLE).any():
-        row = int(np.flatnonzero(read.seconds == UNREADABLE)[0])
-        raise UnreadableRecords(
-            [f"“{text.columns[key][row].as_py()[:20]}” in row {row + 1} of {name} is no date: write 2024-03-31."]
-        )
-    times = as_times(read.seconds)
-    return np.where(read.seconds == MISSING, np.datetime64(default, "s"), times)
+def _dates(text: TextTable, name: str, date_order: str | None) -> list[np.ndarray]:
+    """Return first and last days, blanks open-ended; both columns are written in one order of day and month."""
+    blank = pa.chunked_array([pa.nulls(text.rows, pa.string())])
+    columns = [text.columns.get(key, blank) for key in ("from", "to")]
+    together = pa.chunked_array([chunk for column in columns for chunk in column.chunks], pa.string())
+    both = read_ordered(together, name, date_order)
+    if (both == UNREADABLE).any():
+        row = int(np.flatnonzero(both == UNREADABLE)[0])
+        written = together[row].as_py()[:20]
+        raise UnreadableRecords([f"“{written}” in row {row % text.rows + 1} of {name} is no date: write 2024-03-31."])
+    parts = zip(np.split(both, 2), OPEN_ENDS, strict=True)
+    return [np.where(part == MISSING, np.datetime64(end, "s"), as_times(part)) for part, end in parts]
 
 
 def _reasons(text: TextTable) -> list[str]:

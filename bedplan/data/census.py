@@ -9,12 +9,12 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data.capacity import beds_in_text
-from bedplan.data.columns import plain, without_formula, words
+from bedplan.data.columns import TELLTALES, plain, without_formula, words
 from bedplan.data.dateorder import read_ordered
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
 from bedplan.data.logs import WARD_WORDS
 from bedplan.data.reading import read_table
-from bedplan.data.report import REPAIRED, SET_ASIDE, Finding, IntakeReport
+from bedplan.data.report import REPAIRED, SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.table import TOTAL_WORDS, as_times
 from bedplan.data.wide import read_wide
@@ -103,11 +103,9 @@ def read_census(
         text = read_wide(file, CENSUS_HEADINGS)
     missing = [key for key in ("date", "ward", "occupied") if key not in text.columns]
     if missing:
-        raise UnreadableRecords(
-            [
-                f"{file.name} needs columns date, ward and occupied (or a column for each ward); missing: {', '.join(missing)}."
-            ]
-        )
+        text.refuse_kinds(file.name, "a census", *(kind for kind in TELLTALES if kind != "a census"))
+        columns = "date, ward and occupied, or date and one for each ward"
+        raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a census has columns {columns}."])
     return _census(text, file.name, date_order, zeros_are_real)
 
 
@@ -127,13 +125,11 @@ def _census(text: TextTable, name: str, date_order: str | None, zeros_are_real: 
     repeated = (reason == "") & frame.duplicated(["time", "ward"], keep="last")
     reason[repeated] = "An earlier count of the same ward and time"
     kept = frame[reason == ""].sort_values(["time", "ward"], kind="stable").reset_index(drop=True)
-    if kept.empty:
-        raise UnreadableRecords(
-            [f"Not one row in {name} has a date, a ward and a number of patients: check the columns."]
-        )
     counts = reason[reason != ""].value_counts()
     split = int((frame["extra"] > 0)[reason == ""].sum())
     findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
+    if kept.empty:
+        raise UnreadableRecords([why_none(name, findings, "write dates as 2024-03-31 and patients as whole numbers")])
     if split:
         findings.append(Finding(REPAIRED, "Regular and extra beds stood in one cell, as in 24 (+2)", split, 0.0))
     if text.misfits:

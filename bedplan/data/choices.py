@@ -2,18 +2,19 @@
 
 from __future__ import annotations
 
+import datetime as dt
 import zoneinfo
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
-from bedplan.errors import ImpossibleFigure
+from bedplan.errors import ImpossibleFigure, UnreadableRecords
 
 if TYPE_CHECKING:
-    import datetime as dt
     from collections.abc import Mapping
 
 DATE_ORDERS = ("day first", "month first", "row by row")
 PLACE_KINDS = ("bed ward", "waiting place", "procedure place", "virtual", "cot", "delivery", "leave")
+HELD, GIVEN_AWAY = "held", "given away"
 
 
 def check_date_order(date_order: str | None) -> None:
@@ -35,9 +36,10 @@ class IntakeChoices:
     where the program's own list of names is wrong. ``window``: first day and last day (included) for which the file
     is complete. ``excluded``: periods (first day, last day) left out of rates and rhythms, such as a pandemic.
     ``time_zone``: the hospital's zone (``"Europe/London"``), to bring times with an offset to its clock.
+    ``bed_on_leave``: ``"held"`` (leave counts on the ward that was left) or ``"given away"`` while a patient is on leave.
 
     Raises:
-        ImpossibleFigure: a kind of place or a time zone nobody knows, or an excluded period that ends before it starts.
+        ImpossibleFigure: a kind of place, a time zone or an answer nobody knows, or a period that ends before it starts.
 
     Checked by: tests/data/test_choices.py
     """
@@ -47,13 +49,16 @@ class IntakeChoices:
     window: tuple[dt.date, dt.date] | None = None
     excluded: tuple[tuple[dt.date, dt.date], ...] = ()
     time_zone: str | None = None
+    bed_on_leave: str | None = None
 
     def __post_init__(self) -> None:
         """Check every answer once, here."""
         for ward, kind in self.places.items():
             if kind not in PLACE_KINDS:
                 raise ImpossibleFigure(f"{ward} can't be a {kind!r}: a place is one of {', '.join(PLACE_KINDS)}.")
-        for first, last in self.excluded:
+        if self.bed_on_leave not in (None, HELD, GIVEN_AWAY):
+            raise ImpossibleFigure(f"A bed can't be {self.bed_on_leave!r} on leave: it is {HELD} or {GIVEN_AWAY}.")
+        for first, last in (*((self.window,) if self.window else ()), *self.excluded):
             if last < first:
                 raise ImpossibleFigure(f"A period from {first} to {last} ends before it starts: swap the two days.")
         try:
@@ -62,6 +67,39 @@ class IntakeChoices:
             raise ImpossibleFigure(
                 f"The time zone {self.time_zone!r} is not known: write it as in Europe/London."
             ) from problem
+
+    def said(self) -> tuple[str, ...]:
+        """What did the planner decide about this file, in sentences for the page and the document?"""
+        places = [f"“{place}” is taken for: {kind}, as the planner said." for place, kind in self.places.items()]
+        window = (
+            [f"The file is taken as complete from {_span(*self.window)}, as the planner said."] if self.window else []
+        )
+        left_out = [f"{_span(first, last)} is left out of rates and rhythms." for first, last in self.excluded]
+        leave = [f"While a patient is on leave the bed is {self.bed_on_leave}, as the planner said."]
+        return (*places, *window, *left_out, *(leave if self.bed_on_leave else ()))
+
+    def check_days(self, name: str, first: dt.date, last: dt.date) -> None:
+        """Refuse days that leave nothing of a file whose stays run from ``first`` to ``last``.
+
+        Raises:
+            UnreadableRecords: no stay touches the days for which the file is complete, or all of them are left out.
+        """
+        begins, ends = self.window or (first, last)
+        if ends < first or begins > last:
+            raise UnreadableRecords(
+                [f"The stays in {name} run from {_span(first, last)}: choose first and last days within that time."]
+            )
+        days = (ends - begins).days + 1
+        if all(
+            any(since <= begins + dt.timedelta(days=day) <= until for since, until in self.excluded)
+            for day in range(days)
+        ):
+            raise UnreadableRecords([f"The periods left out leave no day of {name} to count: leave out less."])
+
+
+def _span(first: dt.date, last: dt.date) -> str:
+    """Say a period, both days included."""
+    return f"{first:%d %B %Y} to {last:%d %B %Y}"
 
 
 @dataclass(frozen=True, slots=True)

@@ -64,6 +64,16 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
     "intended_management": words("intendedmgmt intman intendedmanagement"),
 }
 
+# What a file is -> headings that no other kind of file has.
+TELLTALES: dict[str, tuple[str, ...]] = {
+    "staffed beds": words("fundedbeds staffedbeds closedbeds bedsclosed establishment"),
+    "a census": words("bedsoccupied occupiedbeds bedsinuse inpatients"),
+    "a monthly return": words("occupiedbeddays beddaysoccupied obd availablebeddays availablebedays beddaysavailable"),
+    "bed requests": words("requestedat placedat bedrequested requestedtime placedtime waithours"),
+    "patients not given a bed": words("refusedat refusalreason refusaltime refusaldate"),
+    "cancelled bookings": words("planneddate cancelledfor tcidate cancellationreason"),
+}
+
 # Headings that carry a person's identity: never kept, whatever is in them.
 IDENTITY_WORDS = words(
     "surname forename firstname lastname middlename patientname fullname familyname givenname maidenname dob "
@@ -85,6 +95,14 @@ def is_identity(heading: str) -> bool:
     word = plain(heading)
     return word in IDENTITY_WORDS or any(
         part in word for part in ("surname", "forename", "dateofbirth", "postcode", "email", "nhsn", "telephone")
+    )
+
+
+def other_kind(headings: Iterable[str], *kinds: str) -> tuple[str, str] | None:
+    """Which of these kinds of file do the headings betray, and by which heading?"""
+    written = {plain(heading): heading for heading in headings}
+    return next(
+        ((kind, written[word]) for kind in kinds or TELLTALES for word in TELLTALES[kind] if word in written), None
     )
 
 

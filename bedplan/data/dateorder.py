@@ -98,10 +98,11 @@ def _question(name: str, columns: Mapping[str, pa.ChunkedArray]) -> UnreadableRe
     rows = np.flatnonzero((day != month) & (day > UNREADABLE) & (month > UNREADABLE))[:3]
     examples = tuple((str(columns["start"][int(row)].as_py()), _day(day[row]), _day(month[row])) for row in rows)
     shown = "; ".join(f"“{written}” is {first} or {second}" for written, first, second in examples)
-    told = (
-        f"The dates in {name} can be read day first or month first ({shown}). Say which it is: day first, "
-        f"{negative[DAY_FIRST]:,} stays would end before they start; month first, {negative[MONTH_FIRST]:,}."
-    )
+    told = f"The dates in {name} can be read day first or month first ({shown}). Say which it is"
+    if len(columns) == 1:
+        negative, told = {}, f"{told}."
+    else:
+        told += f": day first, {negative[DAY_FIRST]:,} stays would end before they start; month first, {negative[MONTH_FIRST]:,}."
     problem = UnreadableRecords([told])
     problem.question = DateQuestion(examples, negative, DATE_ORDERS)
     return problem

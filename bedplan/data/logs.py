@@ -8,11 +8,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
-from bedplan.data.columns import without_formula, words
+from bedplan.data.columns import TELLTALES, without_formula, words
 from bedplan.data.dateorder import read_ordered
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
 from bedplan.data.reading import read_table
-from bedplan.data.report import SET_ASIDE, Finding, IntakeReport
+from bedplan.data.report import SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.table import as_times
 from bedplan.errors import UnreadableRecords
@@ -40,6 +40,11 @@ CANCELLATION_HEADINGS: dict[str, tuple[str, ...]] = {
     "ward": WARD_WORDS,
     "time": words("planneddate planned date operationdate tcidate admissiondate cancelledfor bookeddate"),
     "reason": words("reason cancellationreason why cause"),
+}
+MEANT = {  # kind of log -> what its file is called in sentences
+    "refusals": "patients not given a bed",
+    "bed requests": "bed requests",
+    "cancellations": "cancelled bookings",
 }
 NO_BED = r"no (?:ward )?bed|beds? unavailable|lack of bed|ward full|beds? not available|no icu|no critical care"
 
@@ -130,16 +135,17 @@ def _read(
     """Read one log; rows without a ward or a readable time are set aside and counted."""
     file = open_source(source, name)
     text = read_table(file, known)
+    text.refuse_kinds(file.name, MEANT[kind], *(other for other in TELLTALES if other != MEANT[kind]))
     missing = [f"a {key} column" for key in ("ward", "time") if key not in text.columns]
     if missing:
-        raise UnreadableRecords([f"{file.name} needs {' and '.join(missing)} to be read as a file of {kind}."])
+        raise UnreadableRecords(
+            [
+                f"{file.name} lacks {' and '.join(missing)}, so it can't be read as {MEANT[kind]}: add it, or choose another file."
+            ]
+        )
     frame, no_ward, no_time = _frame(text, file.name, date_order)
     early = (frame["wait_hours"] < 0).to_numpy() if "wait_hours" in frame else np.zeros(len(frame), dtype=bool)
     bad = no_ward | no_time | early
-    if bad.all():
-        raise UnreadableRecords(
-            [f"Not one row in {file.name} names a ward and a time: write times as 2024-03-31 14:05."]
-        )
     table = frame[~bad].sort_values("time", kind="stable").reset_index(drop=True)
     findings = [
         Finding(SET_ASIDE, sentence, rows, 0.0)
@@ -151,6 +157,8 @@ def _read(
         )
         if rows
     ]
+    if table.empty:
+        raise UnreadableRecords([why_none(file.name, findings, "name a ward and write times as 2024-03-31 14:05")])
     report = IntakeReport(
         rows_in=len(frame) + text.misfits,
         used=len(table),

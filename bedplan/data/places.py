@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bedplan.data.choices import HELD
 from bedplan.data.columns import plain
 from bedplan.data.dates import DAY_SECONDS
 
@@ -14,10 +15,11 @@ if TYPE_CHECKING:
     from collections.abc import Mapping
 
     import pandas as pd
+    from numpy.typing import NDArray
 
     from bedplan.data.rows import Rows
 
-BED_WARD = "bed ward"
+BED_WARD, LEAVE = "bed ward", "leave"
 # Kind of place -> how such places are called; the first kind that fits counts. Common practice, no source.
 PLACE_NAMES = {
     "virtual": r"virtual|hospital at home|h@h|hith|remote monitoring",
@@ -47,18 +49,31 @@ def kind_of_place(ward: str) -> str:
     return next((kind for kind, pattern in PLACE_NAMES.items() if re.search(pattern, name)), BED_WARD)
 
 
+def kinds_of_places(wards: tuple[str, ...], chosen: Mapping[str, str]) -> dict[str, str]:
+    """What is each of these places: what a person said, else what its name says?"""
+    return {ward: chosen.get(ward, kind_of_place(ward)) for ward in wards}
+
+
+def leave_note(rows: Rows, is_leave: NDArray[np.bool_], bed_on_leave: str | None) -> list[str]:
+    """Ask whether beds are held during leave, where there is leave and nobody said."""
+    if bed_on_leave is not None or not is_leave[rows.ward[rows.live]].any():
+        return []
+    said = "nobody said whether their bed is held or given away: it is counted as given away"
+    return [f"Patients go on leave, and {said}. If it is held, more beds are in use than counted here."]
+
+
 def set_places_aside(
-    rows: Rows, wards: tuple[str, ...], classes: pd.Categorical | None, chosen: Mapping[str, str]
-) -> dict[str, str]:
-    """Set aside stays in places without ward beds, and patients who are counted apart; return each ward's kind."""
-    kinds = {ward: chosen.get(ward, kind_of_place(ward)) for ward in wards}
+    rows: Rows, kinds: Mapping[str, str], classes: pd.Categorical | None, bed_on_leave: str | None = None
+) -> None:
+    """Set aside stays in places without ward beds, and patients who are counted apart; ``kinds`` in order of ward codes."""
     for kind in PLACE_NAMES:
-        codes = [place for place, ward in enumerate(wards) if kinds[ward] == kind]
+        codes = [place for place, other in enumerate(kinds.values()) if other == kind]
         if codes:
-            rows.mark(rows.live & np.isin(rows.ward, codes), kind)
+            rule = "leave, ward unknown" if kind == LEAVE and bed_on_leave == HELD else kind
+            rows.mark(rows.live & np.isin(rows.ward, codes), rule)
     if classes is None:
         _set_regulars_aside(rows)
-        return kinds
+        return
     for key, names in (
         ("regular", REGULAR_CLASSES),
         ("delivery", DELIVERY_CLASSES),
@@ -68,7 +83,6 @@ def set_places_aside(
         codes = [place for place, name in enumerate(classes.categories) if plain(name) in names]
         if codes:
             rows.mark(rows.live & np.isin(classes.codes, codes), key)
-    return kinds
 
 
 def _set_regulars_aside(rows: Rows) -> None:

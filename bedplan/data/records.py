@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import time
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import TYPE_CHECKING, NamedTuple
 
@@ -11,12 +11,12 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data import cleaning, noticing, sequence
-from bedplan.data.choices import IntakeChoices
+from bedplan.data.choices import HELD, IntakeChoices
 from bedplan.data.columns import STAY_HEADINGS
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
-from bedplan.data.places import set_places_aside
+from bedplan.data.places import LEAVE, kinds_of_places, leave_note, set_places_aside
 from bedplan.data.reading import read_table
-from bedplan.data.report import IntakeReport
+from bedplan.data.report import IntakeReport, why_none
 from bedplan.data.rows import RULES, Rows
 from bedplan.data.source import FileLike, SourceFile, open_source
 from bedplan.data.table import StayTable, as_stay_table
@@ -25,6 +25,7 @@ from bedplan.data.windows import TimesInHospital, chosen_window, find_period, se
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
+    import datetime as dt
     from collections.abc import Callable, Mapping
 
     from numpy.typing import NDArray
@@ -42,7 +43,7 @@ class Records:
     up to when unfinished stays were watched. ``links``: ward names that may mean the same ward, for a person to
     confirm. ``excluded``: periods left out of rates. ``warm_up_days``: days at the window's start in which starts are
     complete and patients present are not; ``chosen_by``: by what the export was chosen, where that can be told;
-    ``period_note`` says which patients it leaves out, if any.
+    ``period_note`` says which patients it leaves out, if any. ``places``: every place in the file → what it was taken for.
 
     Checked by: tests/data/test_records.py
     """
@@ -61,6 +62,7 @@ class Records:
     warm_up_days: int = 0
     chosen_by: str = ""
     period_note: str = ""
+    places: Mapping[str, str] = field(default_factory=dict)
 
     @property
     def short_fingerprint(self) -> str:
@@ -187,13 +189,18 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
     if table.has_times:
         cleaning.drop_zero_stays(rows)
     order = order[rows.live[order]]
+    kinds = kinds_of_places(table.wards, choices.places)
+    is_leave = np.array([kind == LEAVE for kind in kinds.values()])
+    notes += leave_note(rows, is_leave, choices.bed_on_leave)
     if table.knows_patients:
+        if choices.bed_on_leave == HELD:
+            sequence.hold_beds(rows, order, is_leave)
         order = sequence.join_same_ward(rows, order)
         if table.has_times:
             order = sequence.merge_pass_throughs(rows, order)
         order, long_overlaps = sequence.part_overlaps(rows, order)
         notes += noticing.sequences(rows, order, table, long_overlaps)
-    set_places_aside(rows, table.wards, table.text.get("class"), choices.places)
+    set_places_aside(rows, kinds, table.text.get("class"), choices.bed_on_leave)
     times = times_in_hospital(rows, order, knows_patients=table.knows_patients, knows_spells=table.knows_spells)
     return _Seen(until, times, notes)
 
@@ -206,9 +213,10 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
         raise UnreadableRecords(_why_none(rows, file.name))
     live = live[np.argsort(rows.start[live], kind="stable")]
     start, end = rows.start[live], rows.end[live]
+    choices.check_days(file.name, _day(start.min()), _day(seen.until - 1))
     period = find_period(seen.times, seen.until).narrowed(chosen_window(choices.window))
     about = noticing.whole_file(rows, live, table, period)
-    notes = [*text.notes, *table.notes, *seen.notes, *about]
+    notes = [*choices.said(), *text.notes, *table.notes, *seen.notes, *about]
     stays = table.frame(live, start, end)
     changed = (rows.reason[live] > 0) | (start != rows.first_start[live]) | (end != rows.first_end[live])
     stays["repaired"] = changed
@@ -231,7 +239,13 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
         chosen_by=period.chosen_by,
         period_note=period.note if period.is_partial else "",
         excluded=tuple((pd.Timestamp(first), pd.Timestamp(last)) for first, last in choices.excluded),
+        places=kinds_of_places(table.wards, choices.places),
     )
+
+
+def _day(seconds: int) -> dt.date:
+    """Return the day of a moment."""
+    return pd.Timestamp(int(seconds), unit="s").date()
 
 
 def _report(table: StayTable, text: TextTable, until: int, notes: list[str]) -> IntakeReport:
@@ -260,8 +274,6 @@ def _report(table: StayTable, text: TextTable, until: int, notes: list[str]) -> 
 
 def _why_none(rows: Rows, name: str) -> list[str]:
     """Say why no row of the file could be used."""
-    reasons = sorted(rows.findings(np.zeros(rows.start.size)), key=lambda finding: -finding.rows)
-    told = "; ".join(f"{finding.sentence.lower()} ({finding.rows:,} rows)" for finding in reasons[:3])
     unreadable = (rows.start == UNREADABLE).sum() > rows.start.size // 2
-    advice = "write dates as 2024-03-31 14:05" if unreadable else "check the export"
-    return [f"Not one of the {rows.start.size:,} rows in {name} can be used: {told}; {advice} and try again."]
+    advice = "write dates as 2024-03-31 14:05" if unreadable else "check the export and try again"
+    return [why_none(name, rows.findings(np.zeros(rows.start.size)), advice)]

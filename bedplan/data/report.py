@@ -7,7 +7,7 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Iterable, Mapping
 
 REPAIRED, SET_ASIDE = "repaired", "set aside"
 
@@ -28,6 +28,15 @@ class Finding:
     sentence: str
     rows: int
     bed_days: float
+
+
+def why_none(name: str, findings: Iterable[Finding], advice: str) -> str:
+    """Why can no row of this file be used? The commonest three reasons, and what to do."""
+    told = "; ".join(
+        f"{one.sentence[0].lower()}{one.sentence[1:]} ({'1 row' if one.rows == 1 else f'{one.rows:,} rows'})"
+        for one in sorted(findings, key=lambda one: -one.rows)[:3]
+    )
+    return f"No row of {name} can be used: {told}; {advice}."
 
 
 @dataclass(frozen=True, slots=True)

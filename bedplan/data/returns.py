@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
-from bedplan.data.columns import without_formula, words
+from bedplan.data.columns import TELLTALES, without_formula, words
 from bedplan.data.dates import MONTHS
 from bedplan.data.logs import WARD_WORDS
 from bedplan.data.reading import read_table
@@ -116,12 +116,13 @@ def read_monthly_return(source: FileLike, *, name: str | None = None) -> Monthly
     text = read_table(file, RETURN_HEADINGS)
     missing = [key for key in ("month", "ward", "occupied", "discharges") if key not in text.columns]
     if missing:
-        raise UnreadableRecords(
-            [f"{file.name} needs columns month, ward, occupied bed-days and discharges; missing: {', '.join(missing)}."]
-        )
+        text.refuse_kinds(file.name, "a monthly return", *(kind for kind in TELLTALES if kind != "a monthly return"))
+        columns = "month, ward, occupied bed-days and discharges"
+        raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a monthly return has columns {columns}."])
     frame, bad = _frame(text)
     if bad.all():
-        raise UnreadableRecords([f"Not one row in {file.name} names a month and figures: write months as 2024-04."])
+        told = f"No row of {file.name} names a ward, a month, occupied bed-days and discharges"
+        raise UnreadableRecords([f"{told}: write months as 2024-04 and figures as numbers."])
     table = frame[~bad].reset_index(drop=True)
     aside = int(bad.sum()) + text.misfits
     sentence = "A total, a footer, or a row whose month or figures can't be read"

@@ -41,12 +41,16 @@ RULES: dict[str, Rule] = {
     "procedure place": Rule(SET_ASIDE, "A place without ward beds, such as a theatre, a lounge or X-ray"),
     "waiting place": Rule(SET_ASIDE, "A waiting place, such as an emergency department: not a ward"),
     "leave": Rule(SET_ASIDE, "Home leave: the patient was not in a bed"),
+    "leave, ward unknown": Rule(
+        SET_ASIDE, "Home leave without a stay just before: which ward held the bed isn't known"
+    ),
     "clock change": Rule(REPAIRED, "Ended in the hour that the clock shows twice in autumn: an hour was added"),
     "ward spelling": Rule(REPAIRED, "The ward's name was written with other spaces or capitals"),
     "ward renamed": Rule(REPAIRED, "The ward's name was changed to the one you chose"),
     "serial date": Rule(REPAIRED, "A date stood as a spreadsheet's day number"),
     "swapped": Rule(REPAIRED, "Day and month were the wrong way round"),
     "forgotten, closed": Rule(REPAIRED, "No end, but the patient went on: ended when the next stay starts"),
+    "leave, held": Rule(REPAIRED, "Home leave with the bed held: counted on the ward that was left"),
     "joined": Rule(REPAIRED, "Went on in the same ward: joined to one stay"),
     "bridged": Rule(REPAIRED, "Up to an hour before the next stay of the same patient: ended when that one starts"),
     "passed through": Rule(REPAIRED, "Less than 30 minutes on the way: counted in the stay before or after"),

@@ -98,6 +98,22 @@ def close_forgotten(rows: Rows, order: NDArray[np.int64], longest: NDArray[np.in
     return _still(rows, order)
 
 
+def hold_beds(rows: Rows, order: NDArray[np.int64], is_leave: NDArray[np.bool_]) -> None:
+    """Count leave on the ward whose stay ended up to an hour before it; ``is_leave``: of each ward code, whether it is leave.
+
+    Leave after leave stays with the ward that was left first. What follows no stay is left as it is.
+    """
+    leave = is_leave[rows.ward[order]]
+    follows = np.zeros(order.size, dtype=bool)
+    gap = rows.start[order[1:]] - _ends(rows, order[:-1])
+    follows[1:] = leave[1:] & (rows.patient[order[1:]] == rows.patient[order[:-1]]) & (gap <= BRIDGED_GAP_SECONDS)
+    left = np.maximum.accumulate(np.where(follows, 0, np.arange(order.size)))
+    held = np.flatnonzero(follows & ~leave[left])
+    rows.start[order[held]] -= np.maximum(gap[held - 1], 0)
+    rows.ward[order[held]] = rows.ward[order[left[held]]]
+    rows.mark(order[held], "leave, held")
+
+
 def join_same_ward(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
     """Join stays that go on in the same ward within five minutes, or overlap there, to one ward stay."""
     patient, ward, end = rows.patient[order], rows.ward[order], _ends(rows, order)

@@ -46,7 +46,7 @@ def open_source(source: FileLike, name: str | None = None) -> SourceFile:
     given = name or _name_of(source)
     content = _bytes_of(source, given)
     if not content or content.isspace():
-        raise UnreadableRecords([f"{given} is empty: export the ward stays again and check that the file has rows."])
+        raise UnreadableRecords([f"{given} is empty: export it again and check that it has rows."])
     if len(content) > LARGEST_FILE_BYTES:
         raise UnreadableRecords(
             [f"{given} holds {len(content) / 2**30:.1f} GB, more than this program reads at once (4 GB): split it."]
@@ -54,7 +54,7 @@ def open_source(source: FileLike, name: str | None = None) -> SourceFile:
     for start, kind in OTHER_KINDS:
         if content.startswith(start):
             raise UnreadableRecords(
-                [f"{given} is {kind}, not a table of ward stays: export the records as CSV, Excel (.xlsx) or Parquet."]
+                [f"{given} is {kind}, not a table: export the table as CSV, Excel (.xlsx) or Parquet."]
             )
     return SourceFile(given, content, hashlib.sha256(content).hexdigest())
 

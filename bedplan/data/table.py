@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from bedplan.data.texttable import TextTable
 
 KEPT_TEXT = ("class", "method", "specialty", "destination")
+BESIDE_STAYS = ("staffed beds", "a census", "a monthly return")  # what no column of ward stays can be
 TOTAL_WORDS = ("total", "grand total", "sub-total", "subtotal", "sum", "all wards", "run on", "page")
 
 
@@ -113,6 +114,7 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
 
 def _check_columns(text: TextTable, name: str) -> None:
     """Say which columns the file lacks, all at once."""
+    text.refuse_kinds(name, "ward stays", *(() if {"start", "end"}.isdisjoint(text.columns) else BESIDE_STAYS))
     read = ", ".join(f"“{heading}”" for heading in text.headings.values())
     problems = []
     if "ward" not in text.columns:

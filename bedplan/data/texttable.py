@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import pyarrow.compute as pc
 
-from bedplan.data.columns import is_identity
+from bedplan.data.columns import is_identity, other_kind
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -40,6 +40,18 @@ class TextTable:
         if key not in self.columns:
             return [""] * self.rows
         return [(value or "").strip() for value in self.columns[key].to_pylist()]
+
+    def refuse_kinds(self, name: str, mine: str, *kinds: str) -> None:
+        """Refuse a file whose headings show that it is one of these other kinds.
+
+        Raises:
+            UnreadableRecords: it is; the sentence names the heading that shows it.
+        """
+        found = other_kind((*self.headings.values(), *self.unused), *kinds)
+        if found is not None:
+            kind, heading = found
+            told = f"{name} has a column “{heading}”, so it looks like {kind}, not like {mine}"
+            raise UnreadableRecords([f"{told}: choose another file here, or leave that column out."])
 
 
 @dataclass(frozen=True, slots=True)

@@ -114,6 +114,8 @@ def times_in_hospital(
     order = order[rows.live[order]]
     start, end, patient = rows.start[order], rows.end[order], rows.patient[order]
     goes_on = np.zeros(order.size, dtype=bool)
+    if not order.size:
+        return TimesInHospital(start, end, rows.ward[order], 0.0)
     if knows_patients:
         together = (end[:-1] != MISSING) & (start[1:] - end[:-1] <= MOVE_GAP_SECONDS)
         if knows_spells:
