@@ -107,6 +107,25 @@ def test_a_year_of_stays(open_data: Callable[[str], pd.DataFrame], name: str) ->
         assert beds is None or beds_for(ward, limit) == beds
 
 
+def test_long_stays_take_far_more_bed_days_than_patients(open_data: Callable[[str], pd.DataFrame]) -> None:
+    """Of medpar's 1,495 stays 7.8261 % last 21 days or more, with 24.5791 % of bed-days; azdrg112's longest is 53 days."""
+    # Source: Hilbe 2011, as above, summed by another program; range of azdrg112: documentation of the R package COUNT
+    curves = {}
+    for name in ("medpar", "azdrg112"):
+        days = open_data(f"COUNT/{name}")["los"]
+        records = read_records(file_of(rows_of("Unit", days)), name="one year.csv")
+        curves[name] = estimate_demand(records, "Unit").stay_curve
+    curve, edge = curves["medpar"], 20.5
+    share = float(curve.at(edge))
+    # A stay past the edge holds the days up to it and those beyond it.
+    bed_days = edge * share + curve.mean_days - curve.restricted_mean(edge)
+
+    assert share == pytest.approx(0.078261, abs=5e-7)
+    assert bed_days / curve.mean_days == pytest.approx(0.245791, abs=5e-7)
+    assert curves["azdrg112"].longest_days == 53.0
+    assert float(curves["azdrg112"].at(0.999)) == 1.0
+
+
 @pytest.mark.parametrize(("window", "miss"), [((dt.date(2023, 1, 1), dt.date(2023, 12, 31)), 5e-5), (None, 0.005)])
 def test_a_small_year_chosen_by_admission_date(
     open_data: Callable[[str], pd.DataFrame], window: tuple[dt.date, dt.date] | None, miss: float

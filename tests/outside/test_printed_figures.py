@@ -6,13 +6,15 @@ Markov chain, and the method is named beside it.
 
 from __future__ import annotations
 
+import datetime as dt
 import math
 
 import numpy as np
 import pytest
-from scipy import optimize
+from scipy import integrate, optimize, special
 
 from bedplan import wording
+from bedplan.data import IntakeChoices, describe_ward, read_capacity, read_records
 from bedplan.decision import OverfullLimit, TurnAwayLimit, Ward, decide, patients_per_year, pool_wards
 from bedplan.models import (
     MODELS,
@@ -181,3 +183,52 @@ def test_served_in_time(beds: int, load: float, mean_stays: float, served_in_tim
     """The share who wait no longer than a stated time, in mean stays, rounds to the printed figure."""
     waits_longer = float(erlang_c(load, beds)) * math.exp(-(beds - load) * mean_stays)
     assert 1 - waits_longer == pytest.approx(served_in_time, abs=digits)
+
+
+def test_one_doctor_or_two() -> None:
+    """With one doctor the room is empty a third of the time and 4/3 wait; with two, time there is spread as printed."""
+    # Source: Hillier & Lieberman, Introduction to Operations Research, County Hospital, 2 patients an hour, 20 minutes
+    # each (from memory, recomputed): time in the room over t hours with two doctors: e^(-3t)·(3 - e^(-t))/2
+    curve = MODELS["waiting"](Demand(48.0, LengthOfStay(1 / 72, 1.0, "gamma")), [1, 2])
+    waits = curve.waits
+    assert 1 - curve.turn_away_probability[0] == pytest.approx(1 / 3, rel=1e-9)
+    assert 2 * waits.mean_hours == pytest.approx([4 / 3, 1 / 12], rel=1e-4)
+    assert waits.mean_hours + 1 / 3 == pytest.approx([1.0, 3 / 8], rel=1e-4)
+    for hours in (0.25, 1.0, 2.0):
+        # In treatment for all of it, or for a part after which the rest was spent waiting.
+        longer, _ = integrate.quad(lambda u, t=hours: 3 * math.exp(-3 * u) * waits.share_over(t - u)[1], 0, hours)
+        printed = math.exp(-3 * hours) * (3 - math.exp(-hours)) / 2
+        assert math.exp(-3 * hours) + longer == pytest.approx(printed, rel=1e-4)
+
+
+@pytest.mark.parametrize(("load", "most"), [(0.3, 12), (8.0, 40), (44.2, 90)])
+def test_each_bed_from_the_one_before(load: float, most: int) -> None:
+    """One over the share turned away is 1 + beds ÷ load times the same with a bed fewer, from 1 with no bed."""
+    # Source: the recursion in Zeng 2003, Mathematical and Computer Modelling 37:1287-1296
+    one_over = 1 / erlang_b(load, np.arange(most + 1))
+    assert one_over[0] == 1.0
+    assert one_over[1:] == pytest.approx(1 + np.arange(1, most + 1) / load * one_over[:-1], rel=1e-12)
+
+
+def test_a_stay_whose_spread_is_its_mean() -> None:
+    """A lognormal stay of mean and spread 8 days has its median at 4·√2 days and a log-variance of ln 2."""
+    # Source: worked example on lognormal stays, author unknown (read): μ = ln(4·√2), σ² = ln 2, mean 8, SD 8
+    stay = LengthOfStay(8.0, 1.0)
+    scale = math.log(4 * math.sqrt(2)), math.sqrt(math.log(2))
+    for share in (0.05, 0.5, 0.95):
+        assert stay.quantile(share) == pytest.approx(math.exp(scale[0] + scale[1] * special.ndtri(share)), rel=1e-9)
+
+
+def test_beds_empty_between_two_patients() -> None:
+    """A bed whose patients stay 4 days and that is 80 % occupied stands empty for 1 day between two of them."""
+    # Source: turnover interval = (available - occupied bed-days) ÷ discharges, an indicator in general use; 4 × 0.2 ÷ 0.8
+    first = dt.datetime(2024, 1, 1, 12)  # noqa: DTZ001  records hold local clock times
+    starts = [first + dt.timedelta(days=5 * number) for number in range(40)]
+    rows = [f"One,{start:%Y-%m-%d %H:%M},{start + dt.timedelta(days=4):%Y-%m-%d %H:%M}" for start in starts]
+    choices = IntakeChoices(window=(first.date(), first.date() + dt.timedelta(days=199)))
+    records = read_records("\n".join(["ward,start,end", *rows]).encode(), name="one.csv", choices=choices)
+    ward = describe_ward(records, "One", read_capacity(b"ward,from,to,staffed_beds\nOne,2024-01-01,,1\n"))
+
+    assert ward.full.occupancy == pytest.approx(0.80, rel=1e-12)
+    assert ward.turnover_interval_days == pytest.approx(1.0, rel=1e-12)
+    assert ward.throughput == pytest.approx(365 / (4 + 1), rel=1e-12)

@@ -31,6 +31,19 @@ def test_patients_who_come_in_threes() -> None:
     assert curve.overfull_share_of_hours[10] == pytest.approx(0.106040, rel=0.02)
 
 
+def test_groups_of_any_size() -> None:
+    """Groups of two on average, each as likely as not to be joined by one more, fill beds with variance ÷ mean 2."""
+    # Source: peakedness z = 1 + E[X(X-1)] ÷ 2E[X] for groups of X and exponential stays; Whitt 1984; Eckberg 1983 (from
+    # memory). Geometric X of mean 2: E[X] = 2, E[X²] = 6, so a day's arrivals have variance ÷ mean 6 ÷ 2 = 3.
+    sizes = np.arange(1, 200)
+    clustering = float((sizes**2 / 2.0**sizes).sum() / (sizes / 2.0**sizes).sum())
+    assert clustering == pytest.approx(3.0, rel=1e-12)
+    curve = everyone_stays(Demand(3.0, EXPONENTIAL, clustering=clustering))
+    mean = float((curve.beds * chances(curve)).sum())
+    variance = float((curve.beds**2 * chances(curve)).sum()) - mean**2
+    assert (mean, variance / mean) == pytest.approx((12.0, 2.0), rel=1e-6)
+
+
 @pytest.mark.parametrize(("group", "beds", "load", "share"), [(2, 30, 25, 0.0823399), (3, 40, 30, 0.0505266)])
 def test_groups_turned_away(group: int, beds: int, load: int, share: float) -> None:
     """Pairs in 30 beds and threes in 40 are turned away as the exact Markov chain of groups says."""
