@@ -10,6 +10,7 @@ from functools import lru_cache
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
+from numpy.lib.stride_tricks import as_strided
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -21,6 +22,7 @@ if TYPE_CHECKING:
 HOURS_A_WEEK = 168
 HOURS_A_YEAR = 52 * HOURS_A_WEEK
 _HOUR = 1.0 / 24.0
+_LONGEST = 5 * HOURS_A_YEAR
 _SATURDAY, _SUNDAY = 5, 6
 
 
@@ -45,7 +47,7 @@ def _horizon(stay: LengthOfStay, turnaround_days: float, period: int, longest: i
         if left <= negligible * stay.mean_days:
             break
         horizon += period * max(1, horizon // period // 4)
-    return horizon
+    return min(horizon, longest)
 
 
 def _days_beyond(stay: LengthOfStay, turnaround_days: float, days: Array) -> tuple[Array, Array]:
@@ -56,20 +58,24 @@ def _days_beyond(stay: LengthOfStay, turnaround_days: float, days: Array) -> tup
     return beyond + ahead, squares + beyond * ahead + ahead**2 / 2.0
 
 
-def _held_any_hour(stay: LengthOfStay, turnaround_hours: float, period: int, *, at_end: bool) -> Array:
-    """Return the share holding a bed k hours on, ``(1, period)``, where a stay ends when it ends."""
+def _held_any_hour(stay: LengthOfStay, turnaround_hours: float) -> tuple[Array, Array]:
+    """Return the share holding a bed k hours on, ``(1, 8736)``, where a stay ends when it ends.
+
+    Averaged over both hours, and at the end of the later one. Those who stay longest are spread evenly over each day.
+    """
     turnaround_days = turnaround_hours * _HOUR
-    horizon = _horizon(stay, turnaround_days, period, 5 * HOURS_A_YEAR, 1e-15)
+    # one day more, for the half hour that averaging over both hours adds
+    horizon = min(_horizon(stay, turnaround_days, HOURS_A_WEEK, _LONGEST, 1e-8) + 24, _LONGEST)
     beyond, squares = _days_beyond(stay, turnaround_days, np.arange(horizon + 1) * _HOUR)
-    if at_end:
-        held = (beyond[:-1] - beyond[1:]) / _HOUR
-    else:
-        held = np.empty(horizon)
-        held[0] = (beyond[0] * _HOUR - squares[0] + squares[1]) / _HOUR**2
-        held[1:] = (squares[:-2] - 2.0 * squares[1:-1] + squares[2:]) / _HOUR**2
-    # What is held after the horizon is so smooth that it is spread evenly.
-    rest = beyond[0] / _HOUR - held.sum()
-    return held.reshape(1, -1, period).sum(axis=1) + rest / period
+    held = np.zeros((2, _LONGEST))
+    held[0, 0] = (beyond[0] * _HOUR - squares[0] + squares[1]) / _HOUR**2
+    held[0, 1:horizon] = (squares[:-2] - 2.0 * squares[1:-1] + squares[2:]) / _HOUR**2
+    held[1, :horizon] = (beyond[:-1] - beyond[1:]) / _HOUR
+    by_day, _ = _days_beyond(stay, turnaround_days, np.arange(horizon // 24, _LONGEST // 24 + 1, dtype=float))
+    held[:, horizon:] = np.repeat(by_day[:-1] - by_day[1:], 24)
+    rest = beyond[0] / _HOUR - held.sum(axis=1, keepdims=True)
+    average, at_end = held.reshape(2, -1, HOURS_A_YEAR).sum(axis=1) + rest / HOURS_A_YEAR
+    return average[None], at_end[None]
 
 
 def _moved_to_discharge_hours(ends: Array, discharge_hours: tuple[float, ...]) -> Array:
@@ -114,42 +120,50 @@ def _hours_of_leaving(stay: LengthOfStay, leaving: Leaving, horizon: int) -> Arr
     return found
 
 
-def _held_by_hour(stay: LengthOfStay, leaving: Leaving, *, at_end: bool) -> Array:
-    """Return the share holding a bed k hours on by hour of the week of arrival, ``(168, whole weeks of hours)``."""
+def _held_by_hour(stay: LengthOfStay, leaving: Leaving) -> tuple[Array, Array]:
+    """Return the share holding a bed k hours on by hour of the week of arrival, ``(168, whole weeks of hours)``.
+
+    Averaged over both hours, and at the end of the later one.
+    """
     horizon = _horizon(stay, leaving.turnaround_hours * _HOUR, HOURS_A_WEEK, 2 * HOURS_A_YEAR, 2e-5)
     freed = _hours_of_leaving(stay, leaving, horizon)
     whole, part = divmod(leaving.turnaround_hours, 1.0)
-    freed = np.hstack([np.zeros((HOURS_A_WEEK, int(whole) + 1)), freed])[:, : horizon + 1]
-    freed = (1.0 - part) * freed[:, 1:] + part * freed[:, :-1]
-    held = 1.0 - np.cumsum(freed, axis=1)
-    if not at_end:
-        held = np.hstack([np.ones((HOURS_A_WEEK, 1)), held])
-        held = (held[:, :-1] + held[:, 1:]) / 2.0
-        # Who comes and leaves within one hour holds a bed for a third of it on average, others for half.
-        held[:, 0] = 0.5 - freed[:, 0] / 6.0
-    held[:, -HOURS_A_WEEK:] += float(stay.days_beyond(horizon * _HOUR)) / _HOUR / HOURS_A_WEEK
-    return held
+    if leaving.turnaround_hours > 0:
+        freed = np.hstack([np.zeros((HOURS_A_WEEK, int(whole) + 1)), freed])[:, : horizon + 1]
+        freed = (1.0 - part) * freed[:, 1:] + part * freed[:, :-1]
+    at_end = np.cumsum(freed, axis=1)
+    np.subtract(1.0, at_end, out=at_end)
+    average = np.empty_like(at_end)
+    np.add(at_end[:, :-1], at_end[:, 1:], out=average[:, 1:])
+    average[:, 1:] /= 2.0
+    # Who comes and leaves within one hour holds a bed for a third of it on average, others for half.
+    average[:, 0] = 0.5 - freed[:, 0] / 6.0
+    for held in (average, at_end):
+        held[:, -HOURS_A_WEEK:] += float(stay.days_beyond(horizon * _HOUR)) / _HOUR / HOURS_A_WEEK
+    return average, at_end
 
 
 @lru_cache(maxsize=512)
+def _held(stay: LengthOfStay, leaving: Leaving) -> tuple[Array, Array]:
+    """Return the share still holding a bed, averaged and at the end of the later hour."""
+    both = _held_by_hour(stay, leaving) if leaving.has_rhythm else _held_any_hour(stay, leaving.turnaround_hours)
+    for held in both:
+        held.setflags(write=False)
+    return both
+
+
 def hours_held(stay: LengthOfStay, leaving: Leaving, period: int, *, at_end: bool = False) -> Array:
     """Which share of those who came k hours ago still hold a bed?
 
-    ``(1, period)``, earlier periods folded onto it, where a stay ends when it ends; where leaving has a rhythm, by
-    hour of the week of arrival, ``(168, k)`` for as many whole weeks as patients stay. Averaged over both hours, or
-    at the end of the later one. Exact for arrivals at a steady rate within an hour, except that stays moved by a
-    rhythm of leaving end evenly over their hour. Each row adds up to the mean hours a bed is held.
+    ``(1, period)``, a week or a year, earlier ones folded onto it, where a stay ends when it ends; where leaving has a
+    rhythm, by hour of the week of arrival, ``(168, k)`` for as many whole weeks as patients stay. Averaged over both
+    hours, or at the end of the later one. Exact for arrivals at a steady rate within an hour, except that stays moved
+    by a rhythm of leaving end evenly over their hour. Each row adds up to the mean hours a bed is held.
 
     Checked by: tests/models/test_year.py
     """
-    if leaving.has_rhythm and period != HOURS_A_WEEK:
-        return hours_held(stay, leaving, HOURS_A_WEEK, at_end=at_end)
-    if leaving.has_rhythm:
-        held = _held_by_hour(stay, leaving, at_end=at_end)
-    else:
-        held = _held_any_hour(stay, leaving.turnaround_hours, period, at_end=at_end)
-    held.setflags(write=False)
-    return held
+    held = _held(stay, leaving)[int(at_end)]
+    return held if leaving.has_rhythm else held.reshape(1, -1, period).sum(axis=1)
 
 
 def beds_held(arrivals: Array, held: Array) -> Array:
@@ -162,10 +176,12 @@ def beds_held(arrivals: Array, held: Array) -> Array:
         beds = np.fft.irfft(np.fft.rfft(arrivals) * np.fft.rfft(held[0]), arrivals.size)
         return np.maximum(beds, 0.0)
     weeks = arrivals.reshape(-1, HOURS_A_WEEK)
-    hours = np.arange(HOURS_A_WEEK)
+    # who came in hour c of a week some weeks ago is, at hour h, h − c hours and those weeks on: a slanted view of held
     padded = np.pad(held, ((0, 0), (HOURS_A_WEEK, HOURS_A_WEEK)))
+    size, width = padded.itemsize, padded.shape[1]
+    shape = (held.shape[1] // HOURS_A_WEEK + 1, HOURS_A_WEEK, HOURS_A_WEEK)
+    slanted = as_strided(padded.ravel()[HOURS_A_WEEK:], shape, (HOURS_A_WEEK * size, (width - 1) * size, size))
     beds = np.zeros_like(weeks)
-    for ago in range(held.shape[1] // HOURS_A_WEEK + 1):
-        since = hours - hours[:, None] + HOURS_A_WEEK * (ago + 1)
-        beds += np.roll(weeks, ago, axis=0) @ np.take_along_axis(padded, since, axis=1)
+    for ago, since in enumerate(slanted):
+        beds += np.roll(weeks, ago, axis=0) @ since
     return beds.ravel()

@@ -31,10 +31,10 @@ if TYPE_CHECKING:
 _POLE = 2.0 + 1j * np.sqrt(2.0)
 _AT_END = (1.0 + _POLE / 3.0) * 6.0 / (2j * _POLE.imag)
 _IN_HOUR = (1.0 - _POLE / 6.0) * 6.0 / (2j * _POLE.imag)
-_COARSE_STEPS = 7
+_COARSE_STEPS, _LESS_COARSE_STEPS, _FINE_STEPS = 7, 2, 24
 _FASTEST_LEAVING = 500.0
 _LEAVING_A_PART = 2.0
-_SETTLED, _SETTLED_START = 8e-4, 3e-4
+_SETTLED, _SETTLED_START = 5e-3, 1e-3
 _MOST_PARTS = 4
 _MOST_LEAVING_PARTS = 8
 
@@ -151,28 +151,38 @@ class _Wards:
 def lowest_count(quietest_load: Array, beds: NDArray[np.int64]) -> NDArray[np.int64]:
     """Return the fewest beds in use worth following in each ward."""
     least = np.minimum(quietest_load, beds)
-    return np.maximum(0.0, np.floor(least - 8.0 * np.sqrt(least) - 5.0)).astype(np.int64)
+    return np.maximum(0.0, np.floor(least - 5.0 * np.sqrt(least) - 3.0)).astype(np.int64)
 
 
-def _settled_start(wards: _Wards, rhythm: Rhythm, rates: Array) -> Array:
-    """Return the state in which the period starts, from a few periods in coarse steps."""
-    period, levels = rhythm.unbooked.shape
-    size = _COARSE_STEPS if period % _COARSE_STEPS == 0 else 1
-    coming = rhythm.unbooked.copy()
-    for group in rhythm.booked:
-        coming[group.hour] += group.patients * group.attends
-    coarse = [rows.reshape(-1, size, levels).sum(axis=1) for rows in (coming, rates)]
+def merged(rhythm: Rhythm, starts: NDArray[np.int64]) -> Rhythm:
+    """What comes in longer steps, the first of which starts at 0? Booked patients come in the middle of theirs."""
+    ends = np.append(starts[1:], rhythm.unbooked.shape[0]) - 1
+    step_of = np.searchsorted(starts, [group.hour for group in rhythm.booked], side="right") - 1
+    return Rhythm(
+        np.add.reduceat(rhythm.unbooked, starts, axis=0),
+        rhythm.load_at_end[ends],
+        tuple(group._replace(hour=int(step)) for group, step in zip(rhythm.booked, step_of, strict=True)),
+    )
+
+
+def _coarser(rhythm: Rhythm, size: int, fine: int) -> Rhythm:
+    """Return the same period in steps of this many of its own, the last ``fine`` of which are left as they are."""
+    period = rhythm.unbooked.shape[0]
+    tail = max(period - fine, 0)
+    return merged(rhythm, np.append(np.arange(0, tail, size), np.arange(tail, period)))
+
+
+def _settled_start(wards: _Wards, rhythm: Rhythm) -> Array:
+    """Return the state in which the period starts: a few periods in coarse steps, and one in less coarse ones."""
+    coarse = _coarser(rhythm, _COARSE_STEPS, 0)
     states = [wards.truncated_poisson(rhythm.load_at_end[-1])]
     for turn in range(6):
-        state = states[-1]
-        for come, leave in zip(*coarse, strict=True):
-            state, _ = wards.step(state, come, leave)
-        states.append(wards.scaled(state))
+        states.append(wards.scaled(_one_period(wards, coarse, states[-1])[0]))
         if wards.total(np.abs(states[-1] - states[-2])).max() < _SETTLED_START:
             break
         if turn % 2:
             states = [_jump_ahead(wards, states[-3:])]
-    return states[-1]
+    return _one_period(wards, _coarser(rhythm, _LESS_COARSE_STEPS, _FINE_STEPS), states[-1])[0]
 
 
 def _jump_ahead(wards: _Wards, states: Sequence[Array]) -> Array:
@@ -187,21 +197,27 @@ def fullness(rhythm: Rhythm, beds: Sequence[NDArray[np.int64]], most_periods: in
 
     ``beds``: for each level whole numbers of 1 or more. Followed until the end of a period looks like its start.
     """
-    rates = leaving_rates(rhythm)
     wards = _Wards(rhythm.load_at_end, beds)
-    period = rhythm.unbooked.shape[0]
-    groups: dict[int, list[Group]] = {}
-    for group in rhythm.booked:
-        groups.setdefault(group.hour, []).append(group)
-    state = _settled_start(wards, rhythm, rates)
+    state = _settled_start(wards, rhythm)
     for _ in range(most_periods):
-        start, found = state, Fullness(*(np.zeros((period, wards.last.size)) for _ in range(3)))
-        for hour in range(period):
-            state = _one_hour(wards, state, (rhythm.unbooked[hour], rates[hour]), groups.get(hour, ()), found, hour)
+        start = state
+        state, found = _one_period(wards, rhythm, start)
         if wards.total(np.abs(state - start)).max() < _SETTLED:
             break
     ends = np.cumsum([counts.size for counts in beds])[:-1]
     return Fullness(*(np.split(np.maximum(part, 0.0), ends, axis=1) for part in found))
+
+
+def _one_period(wards: _Wards, rhythm: Rhythm, state: Array) -> tuple[Array, Fullness]:
+    """Carry the wards through one period: the state after it, and how full they were, all wards side by side."""
+    rates = leaving_rates(rhythm)
+    groups: dict[int, list[Group]] = {}
+    for group in rhythm.booked:
+        groups.setdefault(group.hour, []).append(group)
+    found = Fullness(*(np.zeros((rates.shape[0], wards.last.size)) for _ in range(3)))
+    for hour in range(rates.shape[0]):
+        state = _one_hour(wards, state, (rhythm.unbooked[hour], rates[hour]), groups.get(hour, ()), found, hour)
+    return state, found
 
 
 def _one_hour(

@@ -17,7 +17,7 @@ import numpy as np
 from bedplan.models.erlang import erlang_b_table
 from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_held, hours_held
 from bedplan.models.periodic_chain import Group, Rhythm, fullness, lowest_count
-from bedplan.models.year import mean_week, month_of_hour, unbooked_by_hour
+from bedplan.models.year import MONTH_DAYS, mean_week, month_of_hour, unbooked_by_hour
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -32,7 +32,9 @@ _LARGE_LOAD = 150.0
 _STATES_IN_ALL = 2_600
 _FEWEST_COUNTS, _MOST_COUNTS, _COUNTS_OF_SEASON = 10, 40, 16
 _FINE = 257
-_STEP_HOURS = 24
+# Hours at which steps through the year start: daily after each month's change of rate, then ever longer.
+_DAYS_INTO_MONTH = np.array([0, 1, 2, 4, 7, 11, 16, 22])
+_SEASON_STARTS = (24 * (np.cumsum([0, *MONTH_DAYS[:-1]])[:, None] + _DAYS_INTO_MONTH)).ravel()
 _MOSTLY_BOOKED = 0.8
 _TOO_FEW_TO_COMPARE = 1e-8
 
@@ -205,7 +207,7 @@ def rhythm_correction(demand: Demand, lowest: float, highest: float) -> Correcti
 def season_correction(demand: Demand) -> Correction | None:
     """What does the memory of the ward add from month to month, the rhythm of the week apart?
 
-    By month, for the level of the year: a year of two-day steps. None without seasons and above 1,500 beds wanted.
+    By month, for the level of the year. None without seasons and above 1,500 beds wanted.
 
     Checked by: tests/models/test_seasonal.py
     """
@@ -221,11 +223,11 @@ def season_correction(demand: Demand) -> Correction | None:
         for at_end in (False, True)
     ]
     scale = mean_loads[0] / loads[0].mean()
-    average = loads[0].reshape(-1, _STEP_HOURS).mean(axis=1) * scale + mean_loads[1]
-    at_end = loads[1][_STEP_HOURS - 1 :: _STEP_HOURS] * scale + mean_loads[1]
-    unbooked = arrivals.reshape(-1, _STEP_HOURS).sum(axis=1)
-    booked = np.full(unbooked.size, float(week.booked.mean()) * _STEP_HOURS)
+    starts, ends = _SEASON_STARTS, np.append(_SEASON_STARTS[1:], HOURS_A_YEAR)
+    average = np.add.reduceat(loads[0], starts) / (ends - starts) * scale + mean_loads[1]
+    at_end = loads[1][ends - 1] * scale + mean_loads[1]
+    unbooked = np.add.reduceat(arrivals, starts)
+    booked = float(week.booked.mean()) * (ends - starts)
     rhythm = Rhythm((unbooked + booked)[:, None], at_end[:, None])
-    month = month_of_hour[::_STEP_HOURS]
-    spare, logs, _ = _compared(rhythm, (unbooked, booked), average[:, None], month)
+    spare, logs, _ = _compared(rhythm, (unbooked, booked), average[:, None], month_of_hour[starts])
     return Correction(np.ones(1), mean_loads, spare, logs, logs)
