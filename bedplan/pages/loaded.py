@@ -24,11 +24,13 @@ from bedplan.data import (
     estimate_demand,
     forecast_arrivals,
     hidden_demand,
+    past_years,
     read_cancellations,
     read_capacity,
     read_census,
     read_records,
     read_refusals,
+    stay_families,
     what_repairs_change,
 )
 from bedplan.errors import BedplanError
@@ -37,7 +39,7 @@ from bedplan.plan import Baseline, from_estimate
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
-    from bedplan.data import Backtest, Forecast, HiddenDemand, RepairEffect, WardDescription
+    from bedplan.data import Backtest, Forecast, HiddenDemand, PastYear, RepairEffect, StayFamilies, WardDescription
 
 DEMO = Path(__file__).resolve().parents[2] / "demo_data"
 OTHER_FILES: Mapping[str, str] = {
@@ -156,6 +158,16 @@ def hidden(name: str) -> HiddenDemand:
 def forecast(name: str) -> Forecast:
     """Return a ward's next ten years, should it go on as before."""
     return _once(("forecast", name), lambda: forecast_arrivals(files().records, name, horizon_days=10 * 365))
+
+
+def past(name: str) -> tuple[PastYear, ...]:
+    """Return what each year of a ward's records held."""
+    return _once(("past", name), lambda: past_years(files().records, name))
+
+
+def stays(name: str) -> StayFamilies:
+    """Return which family of curves a ward's stays follow."""
+    return _once(("stays", name), lambda: stay_families(files().records, name))
 
 
 def checked(name: str) -> Backtest:
