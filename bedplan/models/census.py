@@ -7,6 +7,7 @@ uncertain, binomial when they come more evenly than chance. Booked patients: eac
 from __future__ import annotations
 
 from functools import lru_cache
+from itertools import pairwise
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
@@ -25,7 +26,7 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]
 
-_NOBODY = 1e-15
+_NOBODY = 1e-9
 _INDEPENDENT = 1e-6
 _HOUR_OF_WEEK = np.arange(HOURS_A_YEAR) % HOURS_A_WEEK
 
@@ -79,14 +80,14 @@ def number_present(chances: Array) -> Array:
     """
     mean = float(chances.sum(axis=-1).max(initial=0.0))
     most = int(min(chances.shape[-1], np.ceil(mean + 12.0 * np.sqrt(mean) + 30.0)))
-    likely = np.zeros((*chances.shape[:-1], most + 1))
-    likely[..., 0] = 1.0
-    for patient in range(chances.shape[-1]):
-        chance = chances[..., patient, None]
-        moved = likely[..., :-1] * chance
-        likely *= 1.0 - chance
-        likely[..., 1:] += moved
-    return likely
+    likely = np.zeros((most + 1, *chances.shape[:-1]))
+    likely[0] = 1.0
+    for patient, chance in enumerate(np.moveaxis(chances, -1, 0)):
+        so_far = likely[: patient + 2]
+        moved = so_far[:-1] * chance
+        so_far *= 1.0 - chance
+        so_far[1:] += moved
+    return np.ascontiguousarray(np.moveaxis(likely, 0, -1))
 
 
 @lru_cache(maxsize=128)
@@ -128,17 +129,19 @@ def chance_of(demand: Demand, counts: Counts, watch: Watch) -> Array:
     if watch.as_unbooked:
         ahead = ahead_in_group(demand)
         extra = np.stack([np.convolve(row, ahead) for row in extra])
-    rows, groups = extra.shape[0], int(watch.group.max()) + 1
-    cell = watch.group if rows == 1 else watch.group * HOURS_A_WEEK + _HOUR_OF_WEEK
-    grid = load_grid(unbooked_load_by_hour(demand), watch.weights, cell, groups * rows)
-    weights = grid.weights.reshape(groups, rows, -1)
+    groups, rows = int(watch.group.max()) + 1, extra.shape[0]
+    cells, cell = np.unique(watch.group * rows + _HOUR_OF_WEEK % rows, return_inverse=True)
+    grid = load_grid(unbooked_load_by_hour(demand), watch.weights, cell, cells.size)
+    of_group, row = np.divmod(cells, rows)
     drift = demand.rate_variation**2
     fewer = np.unique(np.maximum(counts[:, None] - np.arange(extra.shape[1]), 0))
     mean = grid.loads * (1.0 + drift) if watch.as_unbooked else grid.loads
     chance = at_least(fewer, mean, peakedness(demand) + drift * grid.loads)
-    mixed = np.einsum("hj,ghp->jgp", extra, weights, optimize=True)
+    ends = np.searchsorted(of_group, np.arange(groups + 1))
+    inside = [slice(*pair) for pair in pairwise(ends)]
+    mixed = np.stack([extra[row[here]].T @ grid.weights[here] for here in inside], axis=1)
     found = np.zeros((groups, counts.size))
-    for number, of_group in enumerate(mixed):
-        found += of_group @ chance[np.searchsorted(fewer, np.maximum(counts - number, 0))].T
-    total = weights.sum(axis=(1, 2))[:, None]
+    for number, weights in enumerate(mixed):
+        found += weights @ chance[np.searchsorted(fewer, np.maximum(counts - number, 0))].T
+    total = np.bincount(of_group, grid.weights.sum(axis=1), groups)[:, None]
     return np.clip(np.divide(found, total, out=np.zeros_like(found), where=total > 0), 0.0, 1.0)

@@ -49,12 +49,12 @@ def load_grid(loads: Array, shares: Array, groups: NDArray[np.int64], group_coun
     first = np.floor(place).astype(np.int64) - 2
     lowest = int(first.min())
     points = (np.arange(int(first.max()) - lowest + 6) + lowest) * _STEP
-    away = (place - first)[:, None] - _OFFSETS
-    weights = np.empty_like(away)
-    for j in range(6):
-        weights[:, j] = _SCALES[j] * np.prod(np.delete(away, j, axis=1), axis=1)
-    cells = (groups * points.size + first - lowest)[:, None] + _OFFSETS
-    summed = np.bincount(
-        cells.ravel(), weights=(weights * shares[:, None]).ravel(), minlength=group_count * points.size
-    )
+    away = (place - first) - _OFFSETS[:, None]
+    below, above = np.ones_like(away), np.ones_like(away)
+    for j in range(1, 6):
+        np.multiply(below[j - 1], away[j - 1], out=below[j])
+        np.multiply(above[6 - j], away[6 - j], out=above[5 - j])
+    weights = _SCALES[:, None] * below * above * shares
+    cells = groups * points.size + first - lowest + _OFFSETS[:, None]
+    summed = np.bincount(cells.ravel(), weights=weights.ravel(), minlength=group_count * points.size)
     return LoadGrid(points**2, summed.reshape(group_count, points.size))
