@@ -2,11 +2,11 @@
 
 import streamlit as st
 
-from bedplan.pages import startup
+from bedplan.pages import address, startup
 
 assert startup.LOADED  # noqa: S101  imported for what it does once a process
 st.set_page_config(page_title="bedplan", layout="wide")
-st.navigation(
+page = st.navigation(
     [
         st.Page("bedplan/pages/records.py", title="Records", url_path="records"),
         st.Page("bedplan/pages/what_happened.py", title="What happened", url_path="what-happened"),
@@ -17,4 +17,8 @@ st.navigation(
         st.Page("bedplan/pages/method.py", title="Method and cautions", url_path="method"),
     ],
     position="top",
-).run()
+)
+on_one_ward = page.url_path == ""
+address.take_up(on_one_ward=on_one_ward)
+page.run()
+address.keep(on_one_ward=on_one_ward)

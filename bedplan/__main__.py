@@ -15,10 +15,11 @@ from typing import TYPE_CHECKING
 
 from bedplan import wording
 from bedplan.data import Capacity, Records, backtest, estimate_demand, read_capacity, read_records
+from bedplan.data.choices import DATE_ORDERS
 from bedplan.decision import TurnAwayLimit
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.export import Justification, Source, as_html, as_xlsx, case_for
-from bedplan.plan import Changes, from_estimate, planned_ward
+from bedplan.plan import Answers, Changes, from_estimate, from_json, planned_ward
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -34,6 +35,10 @@ def arguments() -> argparse.ArgumentParser:
         prog="python -m bedplan", description="Write a bed-count justification from a ward-stay file."
     )
     parser.add_argument("stays", type=Path, help="ward stays: CSV with ward, start and end")
+    parser.add_argument(
+        "--answers", type=Path, help="a saved plan, for how the stays are to be read: columns, dates, places, periods"
+    )
+    parser.add_argument("--dates", choices=DATE_ORDERS, help="how the stays' dates are written")
     parser.add_argument("--ward", action="append", help="a ward to justify; repeat for more (default: every ward)")
     parser.add_argument("--capacity", type=Path, help="staffed beds by ward: CSV")
     parser.add_argument("--beds", type=int, help="today's staffed beds, where there is no capacity file")
@@ -89,16 +94,18 @@ def write(asked: argparse.Namespace) -> Justification:
 
     Checked by: tests/test_command_line.py
     """
-    records = read_records(asked.stays)
+    answers = from_json(asked.answers.read_bytes()).answers if asked.answers else Answers()
+    if asked.dates:
+        answers = replace(answers, date_order=asked.dates)
+    records = read_records(asked.stays, **answers.to_read())
     capacity = read_capacity(asked.capacity) if asked.capacity else None
     unknown = [name for name in (*(asked.ward or ()), *asked.leaves) if name not in records.wards]
     if unknown:
         raise UnreadableRecords([f"Ward “{unknown[0]}” is not in {records.name}; it holds {', '.join(records.wards)}."])
     names = asked.ward or records.wards
     cases = tuple(ward_case(records, capacity, name, asked) for name in names)
-    paper = Justification(
-        cases, Source.from_records(records, beside(asked.capacity)), dt.datetime.now().astimezone().date()
-    )
+    source = Source.from_records(records, (*beside(asked.capacity), *answers.rows()))
+    paper = Justification(cases, source, dt.datetime.now().astimezone().date())
     asked.out.mkdir(parents=True, exist_ok=True)
     for ending, content in (("html", as_html(paper)), ("xlsx", as_xlsx(paper))):
         (asked.out / f"bed-count-justification-{paper.fingerprint()}.{ending}").write_bytes(content)

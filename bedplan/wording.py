@@ -54,6 +54,17 @@ GUESTS_OUT = (
     "this only where their own ward gets the beds for them; else too few beds come out."
 )
 
+# what a place in a file can be taken for, as a person says it
+PLACES = {
+    "bed ward": "ward with beds",
+    "waiting place": "waiting place, such as an emergency department",
+    "procedure place": "theatre, X-ray, lounge",
+    "virtual": "virtual ward, care at home",
+    "cot": "cots for well babies",
+    "delivery": "delivery suite",
+    "leave": "patients on leave",
+}
+
 CAUTIONS = (
     "This is an estimate for planning, from past records and simplified mathematics. Real days will be better and worse.",
     "It does not decide who is admitted, clinical priorities or nurse staffing. Staffing law and licensed judgement come first.",
@@ -156,6 +167,13 @@ def limit_text(share: float, verb: str, within: str) -> str:
     """Say a limit: "every month within 5.0 % (1 in 20) turned away"."""
     span = "every month" if within == "every_month" else "the year"
     return f"{span} within {percent(share)} ({one_in(share)}) {verb}"
+
+
+def not_used(name: str, wards: list[str]) -> str:
+    """Name the wards of a file that have no stays, five at most."""
+    shown = wards if len(wards) <= 5 else [*wards[:4], f"{len(wards) - 4} more"]
+    listed = shown[0] if len(shown) == 1 else f"{', '.join(shown[:-1])} and {shown[-1]}"
+    return f"{name}: the records hold no stays on {listed}, so their rows are not used."
 
 
 def few(count: int) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime as dt
 import hashlib
 from typing import TYPE_CHECKING
 
@@ -9,9 +10,9 @@ import openpyxl
 import pytest
 
 from bedplan.__main__ import main
-from bedplan.data import estimate_demand, read_capacity, read_records
+from bedplan.data import IntakeChoices, estimate_demand, read_capacity, read_records
 from bedplan.decision import TurnAwayLimit, decide
-from bedplan.plan import Changes, from_estimate, planned_ward
+from bedplan.plan import Answers, Changes, SavedPlan, as_json, from_estimate, planned_ward
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -46,6 +47,39 @@ def test_writes_both_documents(demo_data: Path, tmp_path: Path, capsys: pytest.C
     assert hashlib.sha256(beds.read_bytes()).hexdigest() in document
 
 
+def test_a_plans_answers_are_taken(stays_csv: bytes, tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Headings, places and days left out come from a saved plan, and stand in the document."""
+    stays, plan = tmp_path / "stays.csv", tmp_path / "plan.json"
+    stays.write_bytes(stays_csv.replace(b"Ward,Start,End", b"Zimmer,Zugang,Abgang"))
+    answers = Answers(
+        {"ward": "Zimmer", "start": "Zugang", "end": "Abgang"},
+        choices=IntakeChoices(places={"West": "virtual"}, excluded=((dt.date(2024, 2, 1), dt.date(2024, 2, 20)),)),
+    )
+    plan.write_text(as_json(SavedPlan("", {}, {}, answers)), encoding="utf-8")
+    assert main([str(stays), "--out", str(tmp_path)]) == 2
+    capsys.readouterr()
+
+    assert main([str(stays), "--answers", str(plan), "--beds", "9", "--out", str(tmp_path)]) == 0
+    said = capsys.readouterr().out
+    assert "East" in said
+    assert "West" not in said
+    document = next(tmp_path.glob("*.html")).read_text(encoding="utf-8")
+    assert "01 February 2024 to 20 February 2024 is left out" in document
+    assert "2024-02-01 to 2024-02-20" in document
+    assert "West = virtual" in document
+
+
+def test_the_order_of_dates_can_be_said(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """A file whose dates read two ways is taken once the command line says which it is."""
+    stays = tmp_path / "stays.csv"
+    rows = [f"East,{1 + day % 9:02d}/0{1 + day % 7}/2024,{3 + day % 9:02d}/0{1 + day % 7}/2024" for day in range(40)]
+    stays.write_text("\n".join(["Ward,Start,End", *rows]))
+    assert main([str(stays), "--out", str(tmp_path)]) == 2
+    assert "day first" in capsys.readouterr().err
+
+    assert main([str(stays), "--dates", "day first", "--out", str(tmp_path)]) == 0
+
+
 @pytest.mark.parametrize(
     ("words", "said"),
     [
@@ -53,6 +87,8 @@ def test_writes_both_documents(demo_data: Path, tmp_path: Path, capsys: pytest.C
         (["{demo}/stays.csv", "--ward", "Heronn"], "Heronn"),
         (["{demo}/stays.csv", "--ward", "Merlin", "--limit", "5"], "above 0 and below 1"),
         (["{demo}/census.csv"], "census.csv"),
+        (["{demo}/stays.csv", "--answers", "nowhere.json"], "nowhere.json"),
+        (["{demo}/stays.csv", "--answers", "{demo}/census.csv"], "not a plan"),
     ],
 )
 def test_mistakes_are_sentences(

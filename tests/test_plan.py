@@ -2,15 +2,18 @@
 
 from __future__ import annotations
 
+import datetime as dt
+import json
 from typing import TYPE_CHECKING
 
 import pytest
 
 from bedplan import wording
-from bedplan.data import estimate_demand, hidden_demand, read_capacity, read_monthly_return, read_records
+from bedplan.data import IntakeChoices, estimate_demand, hidden_demand, read_capacity, read_monthly_return, read_records
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 from bedplan.plan import (
+    Answers,
     Baseline,
     Changes,
     SavedPlan,
@@ -114,11 +117,64 @@ def test_a_saved_plan_comes_back_as_it_was() -> None:
                 "origin": "typed",
             }
         },
-        answers={"columns": {"ward": "Station"}, "date_order": "day first", "ward_names": {}},
+        answers=Answers(
+            {"ward": "Station"},
+            "day first",
+            IntakeChoices(
+                ward_names={"Ward 7": "Häher"},
+                places={"Aufwachraum": "procedure place"},
+                window=(dt.date(2023, 4, 1), dt.date(2025, 3, 31)),
+                excluded=((dt.date(2023, 5, 1), dt.date(2023, 5, 9)), (dt.date(2024, 2, 1), dt.date(2024, 2, 2))),
+                time_zone="Europe/London",
+                bed_on_leave="held",
+            ),
+        ),
         limit={"limit": 3, "within": "year", "measure": "wait4"},
     )
 
     assert from_json(as_json(plan)) == plan
+
+
+def test_an_earlier_plan_is_read() -> None:
+    """A plan file that knows columns, date order and ward names only is read; whatever else was not said."""
+    answers = {"columns": {"ward": "Station"}, "date_order": None, "ward_names": {"Ward 7": "Kestrel"}}
+    plan = from_json(json.dumps({"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": answers}))
+
+    assert plan.answers == Answers({"ward": "Station"}, None, IntakeChoices(ward_names={"Ward 7": "Kestrel"}))
+
+
+@pytest.mark.parametrize(
+    ("answers", "told"),
+    [
+        ({"places": {"Heron": "castle"}}, "castle"),
+        ({"time_zone": "Nowhere/Town"}, "Nowhere/Town"),
+        ({"window": ["2024-02-01", "2024-01-01"]}, "ends before it starts"),
+        ({"bed_on_leave": "lost"}, "lost"),
+    ],
+)
+def test_impossible_answers_in_a_plan_are_a_sentence(answers: dict, told: str) -> None:
+    """An answer nobody knows is quoted; the plan is not called something else."""
+    with pytest.raises(ImpossibleFigure, match=told):
+        from_json(json.dumps({"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": answers}))
+
+
+@pytest.mark.parametrize("answers", [{"window": "always"}, {"window": ["2024-01-01"]}, {"excluded": [[1, 2]]}])
+def test_damaged_answers_are_not_a_plan(answers: dict) -> None:
+    """Days that are none make the file no plan."""
+    with pytest.raises(UnreadableRecords, match="not a plan saved by bedplan"):
+        from_json(json.dumps({"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": answers}))
+
+
+def test_every_answer_is_named_in_a_document() -> None:
+    """A row an answer given, none for what was not said."""
+    choices = IntakeChoices(places={"Recovery": "bed ward"}, excluded=((dt.date(2024, 2, 1), dt.date(2024, 2, 9)),))
+
+    assert Answers().rows() == ()
+    assert [value for _, value in Answers(date_order="day first", choices=choices).rows()] == [
+        "day first",
+        "Recovery = bed ward",
+        "2024-02-01 to 2024-02-09",
+    ]
 
 
 @pytest.mark.parametrize(
@@ -159,7 +215,7 @@ def test_a_monthly_return_makes_a_ward(demo_data: Path) -> None:
 def test_a_season_survives_a_saved_plan(demo_data: Path) -> None:
     """A ward from a monthly return comes back from a plan file with its months, beds and origin."""
     ward = from_return(read_monthly_return(demo_data / "monthly_return.csv"), "Kestrel")
-    saved = SavedPlan("", {}, {"Kestrel": as_totals(ward)}, {})
+    saved = SavedPlan("", {}, {"Kestrel": as_totals(ward)})
     again = from_saved_totals("Kestrel", from_json(as_json(saved)).typed["Kestrel"])
 
     assert again.demand.month_factors == pytest.approx(ward.demand.month_factors)

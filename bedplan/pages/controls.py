@@ -5,7 +5,6 @@ Nothing here computes a figure: it turns what is on screen into the value object
 
 from __future__ import annotations
 
-import hashlib
 from typing import TYPE_CHECKING, Any
 
 import pandas as pd
@@ -13,16 +12,17 @@ import streamlit as st
 
 from bedplan import wording
 from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
-from bedplan.errors import UnreadableRecords
+from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.export import Source, WardCase, case_for
 from bedplan.pages import loaded
-from bedplan.plan import Baseline, Changes, SavedPlan, as_json, as_totals, from_saved_totals, planned_ward
+from bedplan.plan import Baseline, Changes, planned_ward
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
-    from bedplan.data import Capacity, Records
+    from bedplan.data import Capacity
     from bedplan.decision import Rule
+    from bedplan.pages.loaded import Files
 
 # key -> (label, lowest, highest, start, step, format); whole numbers keep the page's address short
 SLIDERS: Mapping[str, tuple[str, int, int, int, int, str]] = {
@@ -48,26 +48,51 @@ PERSIST: Mapping[str, str] = {"bind": "query-params", "persist_state": "session"
 
 def _forget_figures() -> None:
     """Forget the inputs of earlier records' wards; settings of typed wards stay."""
-    for key in (*SLIDERS, "beds", "full", "hidden", "ward"):
-        st.session_state.pop(key, None)
+    forget_inputs()
     typed = st.session_state.get("typed", {})
     st.session_state["settings"] = {
         name: values for name, values in st.session_state.get("settings", {}).items() if name in typed
     }
 
 
-def use_records(found: Records | None) -> None:
-    """Plan with these records from now on; None = the demo again."""
+def use_files(given: Files | None) -> None:
+    """Plan with these files from now on, as their records say; None = the demo's."""
     _forget_figures()
-    loaded.use_records(found)
+    loaded.use(given)
     planned = st.session_state.get("planned")
-    if found is not None and planned is not None and planned.records == found.fingerprint:
-        st.session_state["settings"] |= {name: _inputs(values) for name, values in planned.settings.items()}
+    if given is not None and planned is not None and planned.records == given.records.fingerprint:
+        st.session_state["settings"] |= {name: inputs_from(values) for name, values in planned.settings.items()}
         st.session_state.pop("planned")
-    if found is None:
-        for key in ("file", "answers", "problem"):
-            st.session_state.pop(key, None)
     st.session_state["asked_records"] = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
+    st.session_state.pop("asked_ward", None)
+
+
+def use_files_again(given: Files) -> None:
+    """Plan with the same file read another way: what was set stays, what stood as it started starts anew."""
+    settings = st.session_state.get("settings", {})
+    as_started = [name for name, values in settings.items() if values.get("beds") == beds_at_start(name)]
+    for name in as_started:
+        settings[name] = {key: value for key, value in settings[name].items() if key != "beds"}
+    loaded.use(given)
+    shown = st.session_state.get("ward")
+    if shown not in ward_names():
+        forget_inputs()
+    elif shown in as_started:
+        st.session_state.pop("beds", None)
+
+
+def beds_at_start(name: str) -> int | None:
+    """Return the beds a ward starts with, or None where its records don't say."""
+    try:
+        return baseline(name).beds
+    except BedplanError:
+        return None
+
+
+def forget_inputs() -> None:
+    """Let the page One ward start anew, on its first ward."""
+    for key in (*SLIDERS, "beds", "full", "hidden", "ward"):
+        st.session_state.pop(key, None)
 
 
 def use_capacity(beds: Capacity, content: bytes) -> None:
@@ -79,55 +104,12 @@ def use_capacity(beds: Capacity, content: bytes) -> None:
     st.session_state.pop("beds", None)
 
 
-def planned_answers(content: bytes) -> dict[str, Any] | None:
-    """Return how a saved plan read exactly this file, where one is waiting for it."""
-    planned = st.session_state.get("planned")
-    same = planned is not None and planned.records == hashlib.sha256(content).hexdigest()
-    return dict(planned.answers) if same and planned.answers else None
-
-
-def use_totals(ward: Baseline) -> None:
-    """Plan this ward from typed totals, and show it next."""
-    st.session_state["typed"] = st.session_state.get("typed", {}) | {ward.name: ward}
-    st.session_state.setdefault("settings", {}).pop(ward.name, None)
-    show_ward(ward.name)
-    take_in_hand(ward.name)
-
-
 def show_ward(name: str) -> None:
     """Put a ward and its own settings on the page One ward."""
     st.session_state.update(settings_of(name) | {"ward": name})
 
 
-def plan_as_json() -> str:
-    """Return the plan of this browser tab as a file's text."""
-    typed = {name: as_totals(base) for name, base in st.session_state.get("typed", {}).items()}
-    answers = st.session_state.get("answers", {})
-    settings = st.session_state.get("settings", {})
-    limit = {key: st.session_state[key] for key in ("limit", "within", "measure") if key in st.session_state}
-    return as_json(SavedPlan(loaded.records().fingerprint, settings, typed, answers, limit))
-
-
-def use_plan(plan: SavedPlan) -> None:
-    """Take up the settings of a saved plan; its answers wait for the records it was made with.
-
-    Raises:
-        ImpossibleFigure: typed totals outside their meaning.
-    """
-    typed = {name: from_saved_totals(name, row) for name, row in plan.typed.items()}
-    known = {name: _inputs(values) for name, values in plan.settings.items()}
-    st.session_state["typed"] = st.session_state.get("typed", {}) | typed
-    st.session_state.update(_limit(plan.limit))
-    if plan.records == loaded.records().fingerprint:
-        st.session_state["settings"] = st.session_state.get("settings", {}) | known
-        shown = st.session_state.get("ward")
-        if shown in known:
-            show_ward(shown)
-    else:
-        st.session_state["planned"] = plan
-
-
-def _inputs(values: Mapping[str, Any]) -> dict[str, Any]:
+def inputs_from(values: Mapping[str, Any]) -> dict[str, Any]:
     """Return one ward's saved inputs, each inside its bounds.
 
     Raises:
@@ -138,19 +120,11 @@ def _inputs(values: Mapping[str, Any]) -> dict[str, Any]:
             key: min(max(int(values.get(key, start)), low), high)
             for key, (_, low, high, start, _, _) in SLIDERS.items()
         }
-        beds = min(max(int(values["beds"]), 0), 2000)
-    except (KeyError, OverflowError, TypeError, ValueError) as problem:
+        beds = {"beds": min(max(int(values["beds"]), 0), 2000)} if "beds" in values else {}
+    except (OverflowError, TypeError, ValueError) as problem:
         raise UnreadableRecords(["The plan file holds a setting that is not a number: save it again."]) from problem
     full = "leaves" if values.get("full") == "leaves" else "waits"
-    return sliders | {"beds": beds, "full": full, "hidden": values.get("hidden") is True}
-
-
-def _limit(saved: Mapping[str, Any]) -> dict[str, Any]:
-    """Return the saved limit's inputs that can be what they say; the others stay as they are."""
-    share, within, measure = saved.get("limit"), saved.get("within"), saved.get("measure")
-    kept: dict[str, Any] = {"limit": share} if isinstance(share, int) and LIMIT[1] <= share <= LIMIT[2] else {}
-    kept |= {"within": within} if within in WITHIN else {}
-    return kept | ({"measure": measure} if measure in MEASURES else {})
+    return sliders | beds | {"full": full, "hidden": values.get("hidden") is True}
 
 
 def ward_names() -> list[str]:
@@ -181,20 +155,28 @@ def baseline(name: str) -> Baseline:
     typed = st.session_state.get("typed", {})
     if name in typed:
         return typed[name]
-    chosen = st.session_state.setdefault("settings", {}).get(name, {})
-    return loaded.baseline(name, with_hidden=bool(chosen.get("hidden", False)))
+    return loaded.baseline(name, with_hidden=bool(chosen(name).get("hidden", False)))
+
+
+def full_at_start(name: str) -> str:
+    """Return what patients of a full ward do before anybody said."""
+    return "leaves" if loaded.is_demo() and name in loaded.DEMO_LEAVES else "waits"
 
 
 def starting_values(name: str) -> dict[str, Any]:
     """Return what every input of a ward shows before anything was changed."""
-    leaves = loaded.is_demo() and name in loaded.DEMO_LEAVES
     values: dict[str, Any] = {key: slider[3] for key, slider in SLIDERS.items()}
-    return values | {"beds": baseline(name).beds, "full": "leaves" if leaves else "waits", "hidden": False}
+    return values | {"beds": baseline(name).beds, "full": full_at_start(name), "hidden": False}
+
+
+def chosen(name: str) -> dict[str, Any]:
+    """Return those of a ward's inputs that were kept so far."""
+    return st.session_state.setdefault("settings", {}).get(name, {})
 
 
 def settings_of(name: str) -> dict[str, Any]:
     """Return a ward's inputs as last left, or as they start."""
-    return st.session_state.setdefault("settings", {}).get(name) or starting_values(name)
+    return starting_values(name) | chosen(name)
 
 
 def remember(name: str, **values: Any) -> None:
@@ -243,11 +225,10 @@ def source(wards: list[str]) -> Source:
 
 def _how_read(wards: list[str]) -> list[tuple[str, str]]:
     """Return how the file was read, where the planner had to say, and the shares of refusals written down."""
-    answers = {key: value for key, value in st.session_state.get("answers", {}).items() if value}
-    rows = [(f"Read with {key.replace('_', ' ')}", str(value)) for key, value in answers.items()]
     written = [(name, loaded.recorded_share(name)) for name in wards if settings_of(name).get("hidden")]
-    return rows + [
-        (f"Written down of those not given a bed, {name}", wording.percent(share, 0)) for name, share in written
+    return [
+        *loaded.files().answers.rows(),
+        *((f"Written down of those not given a bed, {name}", wording.percent(share, 0)) for name, share in written),
     ]
 
 
@@ -266,21 +247,19 @@ def small_curve(case: WardCase) -> list[float]:
 def show_origin() -> None:
     """Say whose figures these are, and whether the address asks for records that are not loaded."""
     here = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
-    asked = st.session_state.setdefault("asked_records", st.query_params.get("records", here))
+    asked, ward = st.session_state.get("asked_records", here), st.session_state.get("asked_ward")
     if asked != here:
         st.warning(
             f"This address was made with records {wording.plain(asked)}, which are not loaded: the figures below come from "
             f"{wording.plain(loaded.records().name)} ({here}). Load those records on the page Records."
         )
+    elif ward is not None and ward not in ward_names():
+        st.warning(
+            f"This address was made for {wording.plain(ward)}, which is not here: the figures below are of another ward. Type "
+            "its totals, or open its plan, on the page Records."
+        )
     elif loaded.is_demo():
         st.caption("The invented Larkmere hospital. Load your own records on the page Records.")
-
-
-def keep_address() -> None:
-    """Put the records' fingerprint into the page's address, beside the inputs that keep themselves there."""
-    here = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
-    if st.query_params.get("records") != here:
-        st.query_params["records"] = here
 
 
 def take_in_hand(name: str) -> None:
@@ -290,5 +269,10 @@ def take_in_hand(name: str) -> None:
 
 def in_hand(names: list[str]) -> str:
     """Return the ward the planner looked at last, or the one to start with."""
-    shown = st.session_state.get("in_hand", FIRST_SHOWN)
-    return shown if shown in names else names[0]
+    shown = st.session_state.get("in_hand")
+    return shown if shown in names else first_shown(names)
+
+
+def first_shown(names: list[str]) -> str:
+    """Return the ward that is shown before anyone was chosen."""
+    return FIRST_SHOWN if FIRST_SHOWN in names else names[0]

@@ -7,7 +7,7 @@ nobody's, and for each tab apart otherwise.
 from __future__ import annotations
 
 import hashlib
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -33,8 +33,8 @@ from bedplan.data import (
     stay_families,
     what_repairs_change,
 )
-from bedplan.errors import BedplanError
-from bedplan.plan import Baseline, from_estimate
+from bedplan.errors import BedplanError, UnreadableRecords
+from bedplan.plan import Answers, Baseline, from_estimate
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
@@ -56,7 +56,10 @@ DEMO_RECORDED_SHARES: Mapping[str, float] = {"Curlew": 0.6, "Dunlin": 0.6}
 
 @dataclass(frozen=True)
 class Files:
-    """Every file the planner plans with; ``marks`` = (what, name and SHA-256) of those beside the records."""
+    """Every file the planner plans with; ``marks`` = (what, name and SHA-256) of those beside the records.
+
+    ``content`` is the records' file, to read it again; ``answers`` is how it was read.
+    """
 
     records: Records
     capacity: Capacity | None = None
@@ -64,6 +67,8 @@ class Files:
     cancellations: EventLog | None = None
     census: Census | None = None
     marks: tuple[tuple[str, str], ...] = ()
+    content: bytes = b""
+    answers: Answers = field(default_factory=Answers)
 
 
 @st.cache_resource(max_entries=1, show_spinner="Opening the Larkmere demo…")
@@ -94,20 +99,45 @@ def records() -> Records:
     return files().records
 
 
-def use_records(loaded: Records | None) -> None:
-    """Plan with these records from now on, without any other file yet; None = the demo."""
-    st.session_state["files"] = None if loaded is None else Files(loaded)
+def use(given: Files | None) -> None:
+    """Plan with these files from now on; None = the demo's."""
+    st.session_state["files"] = given
     st.session_state["worked_out"] = {}
 
 
 def use_file(content: bytes, **given: Capacity | EventLog | Census) -> None:
-    """Add a file beside the planner's records."""
+    """Add a file beside the planner's records.
+
+    Raises:
+        UnreadableRecords: the same file is in use already, for something else.
+    """
     here = files()
+    refuse_twice(content, *given)
     marks = dict(here.marks) | {
         _mark(kind, one.name, content)[0]: _mark(kind, one.name, content)[1] for kind, one in given.items()
     }
-    st.session_state["files"] = replace(here, marks=tuple(marks.items()), **given)
-    st.session_state["worked_out"] = {}
+    use(replace(here, marks=tuple(marks.items()), **given))
+
+
+def refuse_twice(content: bytes, kind: str) -> None:
+    """Refuse a file that is in use already for something else: it would count twice.
+
+    Raises:
+        UnreadableRecords: it is.
+    """
+    mark = hashlib.sha256(content).hexdigest()
+    in_use = {"Ward stays": files().records.fingerprint} | dict(files().marks)
+    for what, value in in_use.items():
+        if value.endswith(mark) and what != OTHER_FILES.get(kind):
+            raise UnreadableRecords([f"This file is in use already, as “{what}”: choose another one here."])
+
+
+def without_stays() -> tuple[str, ...]:
+    """Say which wards of the other files have no stays in the records, so that nothing is left out silently."""
+    here = files()
+    other = [one for one in (here.capacity, here.refusals, here.cancellations, here.census) if one is not None]
+    names = [(one.name, [ward for ward in one.wards if ward not in here.records.wards]) for one in other]
+    return tuple(wording.not_used(name, wards) for name, wards in names if wards)
 
 
 def _mark(kind: str, name: str, content: bytes) -> tuple[str, str]:
@@ -117,8 +147,12 @@ def _mark(kind: str, name: str, content: bytes) -> tuple[str, str]:
 
 def recorded_share(name: str) -> float:
     """Return the share of a ward's refusals that is written down, as the planner said."""
-    said = st.session_state.setdefault("recorded_shares", {})
-    return said.get(name, DEMO_RECORDED_SHARES.get(name, 1.0) if is_demo() else 1.0)
+    return st.session_state.setdefault("recorded_shares", {}).get(name, share_at_start(name))
+
+
+def share_at_start(name: str) -> float:
+    """Return that share before anybody said."""
+    return DEMO_RECORDED_SHARES.get(name, 1.0) if is_demo() else 1.0
 
 
 def use_recorded_share(name: str, share: float) -> None:

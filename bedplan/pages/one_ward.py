@@ -10,7 +10,7 @@ import streamlit as st
 from bedplan import charts, wording
 from bedplan.decision import check_by_simulation
 from bedplan.errors import BedplanError
-from bedplan.pages import controls, loaded
+from bedplan.pages import controls, loaded, typed
 
 if TYPE_CHECKING:
     from bedplan.export import WardCase
@@ -68,7 +68,7 @@ def limit() -> None:
             list(controls.MEASURES),
             format_func=lambda key: controls.MEASURES[key][0],
             key="measure",
-            **controls.PERSIST,
+            persist_state="session",
         )
     st.slider(
         f"Limit: {wording.one_in(controls.limit_share())}",
@@ -87,15 +87,17 @@ def limit() -> None:
         format_func=controls.WITHIN.get,
         key="within",
         required=True,
-        **controls.PERSIST,
+        persist_state="session",
     )
 
 
 def inputs() -> str:
     """Draw the inputs and return the ward's name."""
     names = controls.ward_names()
-    start = next((names.index(one) for one in (controls.FIRST_SHOWN,) if one in names), 0)
-    name = st.selectbox("Ward", names, index=start, key="ward", on_change=load_ward, **controls.PERSIST)
+    name = st.selectbox(
+        "Ward", names, names.index(controls.first_shown(names)), key="ward", on_change=load_ward, **controls.PERSIST
+    )
+    typed.offer_removal(name)
     starting = controls.starting_values(name)
     st.radio(
         "When this ward is full, its patients…",
@@ -103,7 +105,7 @@ def inputs() -> str:
         index=list(wording.WHEN_WARD_IS_FULL).index(starting["full"]),
         format_func=wording.WHEN_WARD_IS_FULL.get,
         key="full",
-        **controls.PERSIST,
+        persist_state="session",
     )
     st.number_input("Staffed beds today", 0, 2000, starting["beds"], 1, key="beds", **controls.PERSIST)
     limit()
@@ -177,7 +179,6 @@ except BedplanError as error:
     st.stop()
 controls.take_in_hand(ward_name)
 controls.remember(ward_name, **{key: st.session_state[key] for key in ("beds", "full", *controls.SLIDERS)})
-controls.keep_address()
 try:
     ward_case = controls.case_of(ward_name)
     answer(ward_case)

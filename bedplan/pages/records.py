@@ -8,9 +8,9 @@ import pandas as pd
 import streamlit as st
 
 from bedplan import wording
-from bedplan.errors import BedplanError
+from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.models import LengthOfStay
-from bedplan.pages import controls, intake, loaded
+from bedplan.pages import beside, controls, correcting, intake, loaded, saved, typed
 from bedplan.plan import from_json, from_totals
 
 if TYPE_CHECKING:
@@ -103,44 +103,48 @@ def take_totals(name: str, admissions: float, beds: int, stay: float | tuple[flo
     except BedplanError as error:
         st.error(wording.plain(str(error)))
         return
-    controls.use_totals(ward)
+    typed.use_totals(ward)
     wanted = wording.beds_on_average(ward.demand.offered_load)
     st.success(f"{wording.plain(ward.name)} wants {wanted}. It is ready on the page One ward.")
+
+
+def open_plan(content: bytes, _name: str, _date_order: str | None) -> list[str]:
+    """Take up a saved plan: the file in hand is read as the plan read it, then its settings count.
+
+    Raises:
+        UnreadableRecords: no plan, or the file can't be read as the plan says.
+    """
+    plan = from_json(content)
+    here = loaded.files()
+    if not loaded.is_demo() and saved.is_of(plan, here.content) and plan.answers != here.answers:
+        problems = intake.read_again(plan.answers)
+        if problems:
+            raise UnreadableRecords(problems)
+    saved.use_plan(plan)
+    return ["The plan is open. Settings of wards wait for the records it was made with, if those are not loaded yet."]
 
 
 def keep_plan() -> None:
     """Offer to save every setting to a file, and to open one."""
     st.download_button(
         "Save this plan (settings only, no rows)",
-        data=controls.plan_as_json(),
+        data=saved.plan_as_json(),
         file_name="bedplan-plan.json",
         mime="application/json",
         on_click="ignore",
     )
-    given = st.file_uploader("Open a saved plan", key="plan_file", type="json")
-    if given is None or st.session_state.get("plan_taken") == given.file_id:
-        return
-    st.session_state["plan_taken"] = given.file_id
-    try:
-        controls.use_plan(from_json(given.getvalue()))
-    except BedplanError as error:
-        st.error(wording.plain(str(error)))
-        return
-    st.success(
-        "The plan is open. Settings of wards wait for the records it was made with, if those are not loaded yet."
-    )
+    beside.offer("plan", "Open a saved plan", open_plan, type="json")
 
 
 left_side, right_side = st.columns(2, gap="large")
 with left_side:
     st.subheader("Load your records", anchor=False)
     intake.load_stays()
-    intake.show_problem()
-    intake.load_capacity()
-    intake.load_more()
-    st.caption("Files stay in this computer's memory. Largest upload 300 MB; larger files by path on the command line.")
+    intake.show_refused()
+    beside.load_capacity()
+    beside.load_more()
     if not loaded.is_demo():
-        st.button("Forget these records, show the Larkmere demo", on_click=controls.use_records, args=(None,))
+        st.button("Forget these records, show the Larkmere demo", on_click=controls.use_files, args=(None,))
     st.subheader("Keep your settings", anchor=False)
     keep_plan()
 with right_side:
@@ -156,6 +160,8 @@ st.caption(
 )
 show_intake(records)
 if not loaded.is_demo():
-    intake.confirm_links(records)
-    if "problem" not in st.session_state:
-        intake.confirm_columns()
+    intake.confirm_links()
+    correcting.correct()
+    if "refused" not in st.session_state:
+        mine = loaded.files()
+        intake.confirm_columns(records.name, mine.content, mine.answers, intake.settle)

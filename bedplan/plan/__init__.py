@@ -1,5 +1,6 @@
 """A plan: what the records say about each ward, what the planner changed, and both as a file. No patient rows."""
 
+from bedplan.plan.answers import Answers
 from bedplan.plan.baseline import (
     Baseline,
     Changes,
@@ -14,6 +15,7 @@ from bedplan.plan.baseline import (
 from bedplan.plan.saving import SavedPlan, as_json, as_totals, from_json, from_saved_totals
 
 __all__ = [
+    "Answers",
     "Baseline",
     "Changes",
     "SavedPlan",

@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import json
 import math
-from dataclasses import asdict, dataclass, field, replace
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
-from bedplan.errors import UnreadableRecords
+from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import LengthOfStay
+from bedplan.plan.answers import Answers, saved_answers
 from bedplan.plan.baseline import Baseline, from_totals
 
 if TYPE_CHECKING:
@@ -22,14 +23,13 @@ TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "
 class SavedPlan:
     """What a plan file holds: settings, typed totals and answers about the records; never a row or a count of rows.
 
-    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read (headings,
-    date order, ward names); ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the records it was made with.
+    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read; ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the records it was made with.
     """
 
     records: str
     settings: Mapping[str, Mapping[str, str | float]]
     typed: Mapping[str, Mapping[str, Any]]
-    answers: Mapping[str, Mapping[str, str] | str | None]
+    answers: Answers = field(default_factory=Answers)
     limit: Mapping[str, str | float] = field(default_factory=dict)
 
 
@@ -38,7 +38,15 @@ def as_json(plan: SavedPlan) -> str:
 
     Checked by: tests/test_plan.py
     """
-    return json.dumps({"plan": PLAN_FORMAT, **asdict(plan)}, indent=1, ensure_ascii=False, default=dict)
+    held = {
+        "plan": PLAN_FORMAT,
+        "records": plan.records,
+        "settings": plan.settings,
+        "typed": plan.typed,
+        "answers": plan.answers.as_saved(),
+        "limit": plan.limit,
+    }
+    return json.dumps(held, indent=1, ensure_ascii=False, default=dict)
 
 
 def from_json(text: str | bytes) -> SavedPlan:
@@ -46,6 +54,7 @@ def from_json(text: str | bytes) -> SavedPlan:
 
     Raises:
         UnreadableRecords: it is not a plan file, or one of a later version.
+        ImpossibleFigure: an answer about the file that nobody knows, such as a kind of place.
 
     Checked by: tests/test_plan.py
     """
@@ -55,8 +64,10 @@ def from_json(text: str | bytes) -> SavedPlan:
         plan = SavedPlan(**held)
         settings = {str(name): dict(values) for name, values in plan.settings.items()}
         typed = {str(name): _typed(row) for name, row in plan.typed.items()}
-        answers = _answers(plan.answers)
+        answers = saved_answers(plan.answers)
         limit = dict(plan.limit)
+    except ImpossibleFigure:
+        raise
     except (ValueError, TypeError, AttributeError, KeyError) as problem:
         raise UnreadableRecords(
             ["This is not a plan saved by bedplan: choose a file that “Save this plan” wrote."]
@@ -95,15 +106,3 @@ def from_saved_totals(name: str, row: Mapping[str, Any]) -> Baseline:
     months = tuple(row["month_factors"]) or ward.demand.month_factors
     demand = replace(ward.demand, arrivals_per_day=row["arrivals_per_day"], month_factors=months)
     return replace(ward, demand=demand, origin=row["origin"] or ward.origin)
-
-
-def _answers(held: Mapping[str, Any]) -> dict[str, Mapping[str, str] | str | None]:
-    """Return the answers about a file, each of the kind it should be."""
-    if not held:
-        return {}
-    order = held.get("date_order")
-    texts = {
-        key: {str(name): str(value) for name, value in dict(held.get(key, {})).items()}
-        for key in ("columns", "ward_names")
-    }
-    return {**texts, "date_order": None if order is None else str(order)}

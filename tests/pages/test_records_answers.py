@@ -71,7 +71,6 @@ def test_a_saved_plan_is_opened(open_app: Callable[..., AppTest], demo_data: Pat
         hashlib.sha256((demo_data / "stays.csv").read_bytes()).hexdigest(),
         {"Heron": {"beds": 33, "full": "waits", "demand": 7, "stay": 0, "spread": 0, "peak": 100, "growth": 0}},
         {"Annex": {"admissions_per_year": 1000.0, "mean_days": 3.0, "variation": 1.0, "beds": 11}},
-        {},
     )
     go(app, "records").file_uploader(key="plan_file").upload("plan.json", as_json(plan).encode(), "application/json")
     app.run()

@@ -1,0 +1,124 @@
+"""Files beside the ward stays, taken in on the page Records: staffed beds, lists, a census, a monthly return."""
+
+from __future__ import annotations
+
+import functools
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+import streamlit as st
+
+from bedplan import wording
+from bedplan.data import read_cancellations, read_capacity, read_census, read_monthly_return, read_refusals
+from bedplan.errors import BedplanError
+from bedplan.pages import controls, intake, loaded, typed
+from bedplan.plan import from_return
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from bedplan.data import DateQuestion
+
+    Take = Callable[[bytes, str, str | None], list[str]]  # content, name and order of dates -> what to tell
+
+
+@dataclass(frozen=True)
+class Told:
+    """What came of one more file, and the question whose answer would help, if any."""
+
+    sentences: tuple[str, ...]
+    refused: bool = False
+    question: DateQuestion | None = None
+
+
+def offer(kind: str, label: str, take: Take, **options: Any) -> None:
+    """Offer one more file, take it in once, and tell what came of it for as long as it is in its box."""
+    given = st.file_uploader(label, key=f"{kind}_file", **options)
+    if given is None or options.get("disabled"):
+        return
+    if st.session_state.get(f"{kind}_taken") != given.file_id:
+        take_more(kind, take, given.getvalue(), given.name)
+        st.session_state[f"{kind}_taken"] = given.file_id
+    told: Told = st.session_state[f"{kind}_told"]
+    for sentence in told.sentences:
+        (st.error if told.refused else st.caption)(wording.plain(sentence))
+    if told.question is not None:
+
+        def retry(date_order: str) -> None:
+            """Take the file with its dates read this way."""
+            take_more(kind, take, given.getvalue(), given.name, date_order)
+            st.rerun()
+
+        intake.ask_date_order(kind, told.question, retry)
+
+
+def take_more(kind: str, take: Take, content: bytes, name: str, date_order: str | None = None) -> None:
+    """Take in a file beside the stays, and keep what came of it."""
+    try:
+        told = Told(tuple(take(content, name, date_order)))
+    except BedplanError as error:
+        told = Told((str(error),), refused=True, question=getattr(error, "question", None))
+    st.session_state[f"{kind}_told"] = told
+
+
+def load_capacity() -> None:
+    """Offer the capacity file and take it in."""
+
+    def take(content: bytes, name: str, date_order: str | None) -> list[str]:
+        """Take today's staffed beds from it."""
+        found = read_capacity(content, name=name, date_order=date_order)
+        controls.use_capacity(found, content)
+        return list(found.notes)
+
+    offer(
+        "capacity",
+        "Staffed beds (CSV or Excel), if you have them: ward, from, to, staffed beds, closed beds",
+        take,
+        help="Without it, type today's staffed beds on the page One ward.",
+        disabled=loaded.is_demo(),
+    )
+
+
+def load_more() -> None:
+    """Offer the files that show what full wards could not take, and the official count."""
+    kinds = {
+        "refusals": ("Patients not given a bed: time, ward, reason", read_refusals),
+        "cancellations": ("Cancelled booked patients: planned date, ward, reason", read_cancellations),
+        "census": ("Census: date, time, ward, patients", read_census),
+    }
+    with st.expander("More files"):
+        for kind, (label, reader) in kinds.items():
+            offer(kind, label, functools.partial(take_beside, kind, reader), disabled=loaded.is_demo())
+        label = (
+            "Monthly return, where there is nothing better: month, ward, available and occupied bed-days, discharges"
+        )
+        offer("return", label, take_return)
+    for sentence in loaded.without_stays():
+        st.caption(wording.plain(sentence))
+
+
+def take_beside(kind: str, reader: Callable[..., Any], content: bytes, name: str, date_order: str | None) -> list[str]:
+    """Add a list or a census beside the records."""
+    found = reader(content, name=name, date_order=date_order)
+    loaded.use_file(content, **{kind: found})
+    return list(found.cannot)
+
+
+def take_return(content: bytes, name: str, _date_order: str | None) -> list[str]:
+    """Make a ward to plan of each ward in a monthly return that the planner's records don't hold."""
+    returned = read_monthly_return(content, name=name)
+    known = () if loaded.is_demo() else loaded.records().wards
+    made, told = [], []
+    for ward in returned.wards:
+        if ward in known:
+            continue
+        try:
+            made.append(from_return(returned, ward))
+        except BedplanError as error:
+            told.append(f"{ward}: {error}")
+    for ward in made:
+        typed.use_totals(ward)
+    if len(made) + len(told) < len(returned.wards):
+        told.append("Wards that have ward stays were left as they are: stays say more than a return.")
+    ready = "1 ward is" if len(made) == 1 else f"{len(made)} wards are"
+    return [f"{ready} ready on the page One ward, from averages only.", *told]

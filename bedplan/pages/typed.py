@@ -1,0 +1,35 @@
+"""Wards known by typed totals or by a monthly return: taken up, and taken off again."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import streamlit as st
+
+from bedplan.pages import controls
+
+if TYPE_CHECKING:
+    from bedplan.plan import Baseline
+
+
+def use_totals(ward: Baseline) -> None:
+    """Plan this ward from typed totals, and show it next."""
+    st.session_state["typed"] = st.session_state.get("typed", {}) | {ward.name: ward}
+    st.session_state.setdefault("settings", {}).pop(ward.name, None)
+    controls.show_ward(ward.name)
+    controls.take_in_hand(ward.name)
+
+
+def remove_totals(name: str) -> None:
+    """Take a typed ward off every page; a ward of that name in the records is back."""
+    typed = st.session_state.get("typed", {})
+    st.session_state["typed"] = {other: base for other, base in typed.items() if other != name}
+    st.session_state.get("settings", {}).pop(name, None)
+    if st.session_state.get("ward") == name:
+        controls.forget_inputs()
+
+
+def offer_removal(name: str) -> None:
+    """Draw the button that removes a typed ward; nothing for a ward of the records."""
+    if name in st.session_state.get("typed", {}):
+        st.button("Remove this ward", key=f"remove_{name}", on_click=remove_totals, args=(name,), width="stretch")

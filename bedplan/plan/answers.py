@@ -1,0 +1,104 @@
+"""How a file of ward stays is to be read, where a person had to say: kept in a plan, read again from it."""
+
+from __future__ import annotations
+
+import datetime as dt
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Any
+
+from bedplan.data import IntakeChoices
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+
+@dataclass(frozen=True, slots=True)
+class Answers:
+    """What a person said about a file: ``columns`` = our name → heading, ``date_order``, and the other ``choices``."""
+
+    columns: Mapping[str, str] = field(default_factory=dict)
+    date_order: str | None = None
+    choices: IntakeChoices = field(default_factory=IntakeChoices)
+
+    def to_read(self) -> dict[str, Any]:
+        """Return the answers as the arguments of ``read_records``."""
+        return {"columns": self.columns, "date_order": self.date_order, "choices": self.choices}
+
+    def rows(self) -> tuple[tuple[str, str], ...]:
+        """Return (what, value) for every answer given, for the document."""
+        said = self.choices
+        told = {
+            "Columns": _pairs(self.columns),
+            "Dates": self.date_order,
+            "Ward names": _pairs(said.ward_names),
+            "Places": _pairs(said.places),
+            "Complete": said.window and _span(*said.window),
+            "Left out of rates": "; ".join(_span(*period) for period in said.excluded),
+            "Time zone": said.time_zone,
+            "Bed while a patient is on leave": said.bed_on_leave,
+        }
+        return tuple((f"How the file was read: {what.lower()}", value) for what, value in told.items() if value)
+
+    def as_saved(self) -> dict[str, Any]:
+        """Return the answers as they stand in a plan file."""
+        said = self.choices
+        return {
+            "columns": dict(self.columns),
+            "date_order": self.date_order,
+            "ward_names": dict(said.ward_names),
+            "places": dict(said.places),
+            "window": said.window and [day.isoformat() for day in said.window],
+            "excluded": [[day.isoformat() for day in period] for period in said.excluded],
+            "time_zone": said.time_zone,
+            "bed_on_leave": said.bed_on_leave,
+        }
+
+
+def _pairs(names: Mapping[str, str]) -> str:
+    """Say what stands for what."""
+    return "; ".join(f"{one} = {other}" for one, other in names.items())
+
+
+def _span(first: dt.date, last: dt.date) -> str:
+    """Say a period, both days included."""
+    return f"{first.isoformat()} to {last.isoformat()}"
+
+
+def saved_answers(held: Mapping[str, Any]) -> Answers:
+    """Return the answers that a plan file holds; what an earlier plan left out was not said.
+
+    Raises:
+        AttributeError, KeyError, TypeError, ValueError: not as such a file holds them.
+        ImpossibleFigure: a kind of place, a time zone or an answer nobody knows.
+
+    Checked by: tests/test_plan.py
+    """
+    window = held.get("window")
+    return Answers(
+        _texts(held.get("columns", {})),
+        _text(held.get("date_order")),
+        IntakeChoices(
+            ward_names=_texts(held.get("ward_names", {})),
+            places=_texts(held.get("places", {})),
+            window=_period(window) if window else None,
+            excluded=tuple(_period(period) for period in held.get("excluded", ())),
+            time_zone=_text(held.get("time_zone")),
+            bed_on_leave=_text(held.get("bed_on_leave")),
+        ),
+    )
+
+
+def _texts(held: Mapping[str, Any]) -> dict[str, str]:
+    """Return texts by text."""
+    return {str(name): str(value) for name, value in dict(held).items()}
+
+
+def _text(held: object) -> str | None:
+    """Return a text, or nothing."""
+    return None if held is None else str(held)
+
+
+def _period(held: list[str]) -> tuple[dt.date, dt.date]:
+    """Return first and last day."""
+    first, last = (dt.date.fromisoformat(day) for day in held)
+    return first, last
