@@ -43,9 +43,10 @@ STAYS_ALIKE_NOTE = (
     "stay the shorter time, up to a quarter more of them find no bed than this says; where they stay the longer time, "
     "up to a twentieth more of the host ward's own."
 )
-BAY_NOTE = (
-    "Shared overflow beds by the equivalent random method, stays alike: where fewer than 1 patient in 50 is refused it "
-    "says too few, by up to a tenth at 1 in 100 and a third at 1 in 300."
+BAY_STAYS_NOTE = (
+    "Shared overflow beds take all stays as alike. Where one ward's mean stay is twice another's, up to 1 in 20 more of "
+    "its patients with the shorter stays find no bed than this says, where it is five times another's 1 in 10; of all "
+    "patients together up to 1 in 80 and 1 in 25 more."
 )
 
 
@@ -125,35 +126,49 @@ def overflow_effect(home: Ward, host: Ward) -> OverflowEffect:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class BayEffect:
-    """What a bay of shared overflow beds does for the patients of all its wards together."""
+    """What a bay of shared overflow beds does for the patients of each of its wards, and of all together."""
 
     wards: tuple[Ward, ...]
     bay_beds: int
-    patients: Refused
-    notes: tuple[str, ...] = (STEADY_MONTHS_NOTE, BAY_NOTE)
+    by_ward: tuple[Refused, ...]
+    notes: tuple[str, ...]
+
+    @property
+    def patients(self) -> Refused:
+        """All wards' patients together."""
+        everyone = math.fsum(one.patients_per_year for one in self.by_ward)
+        before = math.fsum(one.before for one in self.by_ward) / max(everyone, 1e-300)
+        return Refused(everyone, before, math.fsum(one.after for one in self.by_ward) / max(everyone, 1e-300))
 
 
 def overflow_bay_effect(wards: Iterable[Ward], bay_beds: int) -> BayEffect:
-    """How many patients of these wards find no bed, if those who find their own ward full share a bay of more beds?
+    """How many patients of each ward find no bed, if those who find their own ward full share a bay of more beds?
 
-    Equivalent random method within steady months, for stays alike; see the notes for its errors.
+    Within steady months, for exponential stays that are alike; a note says how far unlike stays may be off.
 
     Raises:
         ImpossibleFigure: no ward, two of one name, beds not whole or below 0.
 
-    Source: Wilkinson 1956; for hospital beds Litvak et al. 2008, European Journal of Operational Research 185.
+    Source: Kuczura 1973, Bell System Technical Journal 52; for hospital beds Litvak et al. 2008, European Journal of
+        Operational Research 185.
     Checked by: tests/decision/test_overflowing.py
     """
     wards = named_once(wards)
     beds = [ward.beds for ward in wards]
     loads = np.stack([_load_by_month(offered_load_by_hour(ward.demand)) for ward in wards], axis=1)
-    weights = sum(_patients(ward.demand) * arrivals_by_month(ward.demand) for ward in wards)
-    weights = weights / max(weights.sum(), 1e-300)
-    # loads stand for patients: within a month each ward's patients count by the beds they want
-    apart = np.sum(loads * erlang_b(loads, np.array(beds)), axis=1) / np.maximum(loads.sum(axis=1), 1e-300)
-    shared = [shared_overflow(month.tolist(), beds, bay_beds) for month in loads]
-    everyone = math.fsum(_patients(ward.demand) for ward in wards)
-    return BayEffect(wards, int(bay_beds), Refused(everyone, float(weights @ apart), float(weights @ shared)))
+    different, month_is = np.unique(loads, axis=0, return_inverse=True)
+    after = np.array([shared_overflow(month.tolist(), beds, bay_beds) for month in different])[month_is.ravel()]
+    before = erlang_b(loads, np.array(beds))
+    by_ward = tuple(
+        Refused(_patients(ward.demand), float(months @ before[:, place]), float(months @ after[:, place]))
+        for place, ward in enumerate(wards)
+        for months in [arrivals_by_month(ward.demand)]
+    )
+    stays = [_held_days(ward.demand) for ward in wards if ward.demand.total_arrivals_per_day > 0]
+    alike = not stays or math.isclose(min(stays), max(stays), rel_tol=0.01)
+    return BayEffect(
+        wards, int(bay_beds), by_ward, (STEADY_MONTHS_NOTE,) if alike else (STEADY_MONTHS_NOTE, BAY_STAYS_NOTE)
+    )
 
 
 @dataclass(frozen=True, slots=True, eq=False)

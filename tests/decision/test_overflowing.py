@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from bedplan.decision import Ward, hold_back_effect, overflow_bay_effect, overflow_effect
-from bedplan.decision.overflowing import STAYS_ALIKE_NOTE, STEADY_MONTHS_NOTE
+from bedplan.decision.overflowing import BAY_STAYS_NOTE, STAYS_ALIKE_NOTE, STEADY_MONTHS_NOTE
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import BookedList, Demand, LengthOfStay
 
@@ -98,23 +98,47 @@ def test_large_wards_with_unlike_stays_say_what_they_leave_out() -> None:
 
 
 def test_one_ward_with_a_bay_is_a_larger_ward() -> None:
-    """The equivalent ward of one ward is itself, so a bay of its own is the same ward with more beds."""
+    """A bay that one ward has to itself makes it the same ward with more beds."""
     effect = overflow_bay_effect([ward("Plover", 10, 11.0)], 4)
 
     assert effect.patients.share_before == pytest.approx(erlang(11.0, 10), rel=1e-7)
-    assert effect.patients.share_after == pytest.approx(erlang(11.0, 14), rel=1e-6)
-    assert effect.patients.after == pytest.approx(365 * 11 / 4 * erlang(11.0, 14), rel=1e-6)
+    assert effect.patients.share_after == pytest.approx(erlang(11.0, 14), rel=1e-4)
+    assert effect.patients.after == pytest.approx(365 * 11 / 4 * erlang(11.0, 14), rel=1e-4)
+    assert effect.notes == (STEADY_MONTHS_NOTE,)
 
 
 def test_a_bay_refuses_what_is_known_of_it() -> None:
-    """Loads 8 and 10 on 10 beds each with 5 shared: 4.3791 % by the equivalent random method (Wilkinson 1956)."""
+    """Loads 8 and 10 on 10 beds each with 5 shared: 4.2971 % by an exact chain; both wards gain by the bay."""
     effect = overflow_bay_effect([ward("Plover", 10, 8.0), ward("Teal", 10, 10.0)], 5)
     none = overflow_bay_effect([ward("Plover", 10, 8.0), ward("Teal", 10, 10.0)], 0)
 
-    # figure re-computed independently
-    assert effect.patients.share_after == pytest.approx(0.043791, abs=1e-6)
+    # an exact chain of both wards and the bay, computed independently
+    assert effect.patients.share_after == pytest.approx(0.042971, abs=1e-6)
+    assert effect.patients.after == pytest.approx(sum(one.after for one in effect.by_ward))
+    assert all(one.after < one.before for one in effect.by_ward)
     assert none.patients.share_after == pytest.approx(none.patients.share_before, rel=1e-6)
     assert effect.patients.share_before == pytest.approx((8 * erlang(8.0, 10) + 10 * erlang(10.0, 10)) / 18, rel=1e-7)
+
+
+def test_patients_count_once_however_long_they_stay() -> None:
+    """Without a bay each ward keeps Erlang's share, and all together are weighed by patients, not by the beds they want."""
+    quick, slow = ward("Plover", 10, 8.0, 1.0), ward("Teal", 10, 10.0, 5.0)
+    effect = overflow_bay_effect([quick, slow], 0)
+
+    # 8 patients a day and 2
+    assert effect.patients.share_before == pytest.approx(0.8 * erlang(8.0, 10) + 0.2 * erlang(10.0, 10), rel=1e-7)
+    assert effect.patients.share_after == pytest.approx(effect.patients.share_before, rel=1e-6)
+    assert effect.notes == (STEADY_MONTHS_NOTE, BAY_STAYS_NOTE)
+
+
+def test_a_bay_follows_each_wards_own_season() -> None:
+    """A winter ward and one without seasons: each is the mean of its months over its own patients."""
+    winter, steady = Ward("Plover", 6, Demand(6.0 / 0.02, SHORT, month_factors=WINTER)), ward("Teal", 6, 5.0, 0.02)
+    effect = overflow_bay_effect([winter, steady], 0)
+
+    expected = sum(w * erlang(6.0 * f, 6) for w, f in zip(WEIGHTS, FACTORS, strict=True))
+    assert effect.by_ward[0].share_after == pytest.approx(expected, rel=1e-3)
+    assert effect.by_ward[1].share_after == pytest.approx(erlang(5.0, 6), rel=1e-6)
 
 
 def held_back_by_hand(loads: tuple[float, float], beds: int, held_back: int) -> tuple[float, float]:
@@ -169,4 +193,4 @@ def test_wards_nobody_comes_to_lose_nobody() -> None:
     nobody = [Ward(name, 5, Demand(0.0, LengthOfStay(4.0))) for name in ("Plover", "Teal")]
 
     assert overflow_effect(*nobody).home_patients.after == 0.0
-    assert overflow_bay_effect(nobody, 3).patients.after == 0.0
+    assert overflow_bay_effect(nobody, 3).patients.share_after == 0.0
