@@ -15,7 +15,7 @@ if TYPE_CHECKING:
 
 EARLIEST = 631_152_000  # 1 January 1990
 FEWEST_SWAPS = 3  # a file "shows swaps" from so many rows on
-LEAST_LONG_STAY_DAYS = 60.0
+LEAST_LONG_STAY_SECONDS = 60 * DAY_SECONDS
 
 
 def check_dates(rows: Rows, now: int) -> None:
@@ -28,10 +28,15 @@ def check_dates(rows: Rows, now: int) -> None:
     rows.mark(early | (rows.start > now) | (rows.end > now), "unlikely date")
 
 
+def backward(rows: Rows) -> NDArray[np.int64]:
+    """Return the rows that end before they start."""
+    return np.flatnonzero((rows.end < rows.start) & ~rows.is_open & rows.live)
+
+
 def mend_clock_change(rows: Rows) -> None:
     """Add an hour to stays that end before they start in the night the clock goes back (between midnight and 03:00)."""
-    short = rows.live & ~rows.is_open & (rows.end < rows.start) & (rows.start - rows.end <= 3_600)
-    which = np.flatnonzero(short)
+    which = backward(rows)
+    which = which[rows.start[which] - rows.end[which] <= 3_600]
     days = (rows.start[which] // DAY_SECONDS).astype("datetime64[D]")
     month = days.astype("datetime64[M]").astype(np.int64) % 12 + 1
     sunday = (days.astype(np.int64) + 3) % 7 == 6  # 1 January 1970 was a Thursday
@@ -55,7 +60,7 @@ def swapped(seconds: NDArray[np.int64]) -> NDArray[np.int64]:
 
 def mend_negative(rows: Rows, longest: NDArray[np.int64]) -> None:
     """Exchange day and month where that makes a stay of believable length and the file shows such swaps; else aside."""
-    negative = np.flatnonzero(rows.live & ~rows.is_open & (rows.end < rows.start))
+    negative = backward(rows)
     start, end, limit = rows.start[negative], rows.end[negative], longest[rows.ward[negative]]
     other_end, other_start = swapped(end), swapped(start)
     by_end = np.where(other_end > UNREADABLE, other_end - start, -1)
@@ -68,17 +73,17 @@ def mend_negative(rows: Rows, longest: NDArray[np.int64]) -> None:
         rows.end[negative[use_end]] = other_end[use_end]
         rows.start[negative[use_start]] = other_start[use_start]
         rows.mark(negative[use_end | use_start], "swapped")
-    rows.mark(rows.live & ~rows.is_open & (rows.end < rows.start), "negative")
+    rows.mark(backward(rows), "negative")
 
 
 def longest_stays(rows: Rows, wards: int) -> NDArray[np.int64]:
     """Return, for each ward, how long a stay may be and still be believed: the longest finished one, 60 days or more."""
-    longest = np.full(wards, LEAST_LONG_STAY_DAYS * DAY_SECONDS, dtype=np.int64)
-    finished = rows.live & ~rows.is_open & (rows.end >= rows.start)
-    np.maximum.at(longest, rows.ward[finished], rows.end[finished] - rows.start[finished])
+    longest = np.full(wards, LEAST_LONG_STAY_SECONDS, dtype=np.int64)
+    long = np.flatnonzero((rows.end > rows.start + LEAST_LONG_STAY_SECONDS) & rows.live)
+    np.maximum.at(longest, rows.ward[long], rows.end[long] - rows.start[long])
     return longest
 
 
-def drop_zero_stays(rows: Rows) -> None:
-    """Set aside stays that end in the minute they start: mostly moves inside the system."""
-    rows.mark(rows.live & ~rows.is_open & (rows.end - rows.start < 60), "zero stay")
+def drop_zero_stays(rows: Rows, which: NDArray[np.int64]) -> None:
+    """Set aside those of ``which`` that end in the minute they start: mostly moves inside the system."""
+    rows.mark(which[~rows.is_open[which] & (rows.end[which] - rows.start[which] < 60)], "zero stay")

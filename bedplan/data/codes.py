@@ -1,4 +1,4 @@
-"""Keys, ward names and text columns as codes: identities go, spellings are brought together."""
+"""Ward names and text columns as codes: spellings are brought together, columns that hold identities go."""
 
 from __future__ import annotations
 
@@ -12,15 +12,14 @@ import pandas as pd
 import pyarrow as pa
 import pyarrow.compute as pc
 
+from bedplan.data.blocks import taken
 from bedplan.data.columns import without_formula
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
     from numpy.typing import NDArray
 
-# At the start of a key, or as a word of its own: a random key may hold such letters by chance.
-TEST_KEY = r"^(test|dummy|zzz|training)|[^a-z](test|dummy|training)([^a-z]|$)"
 OLDEST_YEARS = 120
 MOST_CATEGORIES = 1_000
 IDENTITY_SHARE = 0.1  # of a column's distinct values that look like identities: the column is not kept
@@ -37,95 +36,81 @@ IDENTITY_PATTERNS = (
 class Coded:
     """One column as whole-number codes (n,), −1 = blank, and what each code stands for."""
 
-    codes: NDArray[np.int64]
+    codes: NDArray[np.int32]
     meanings: tuple[str, ...]
 
 
 def coded(column: pa.ChunkedArray) -> Coded:
     """Return a column as codes in order of first appearance."""
-    codes, values = _encoded(column)
-    return Coded(codes, tuple(values.to_pylist()))
-
-
-def _encoded(column: pa.ChunkedArray) -> tuple[NDArray[np.int64], pa.Array]:
-    """Return a column as codes, −1 = blank, and the values behind them."""
     if pa.types.is_dictionary(column.type):
         whole = column.unify_dictionaries().combine_chunks()
     else:
         whole = pc.dictionary_encode(column).combine_chunks()
     whole = whole.combine_chunks() if isinstance(whole, pa.ChunkedArray) else whole
-    return pc.fill_null(pc.cast(whole.indices, pa.int64()), -1).to_numpy(zero_copy_only=False), whole.dictionary
+    codes = pc.fill_null(whole.indices, -1).to_numpy(zero_copy_only=False)
+    return Coded(codes, tuple(whole.dictionary.to_pylist()))
 
 
 def translated(column: Coded, meaning: list[str]) -> Coded:
     """Return the column with each value replaced by its meaning ("" = blank), values sorted."""
     names = sorted({name for name in meaning if name})
     place = {name: number for number, name in enumerate(names)}
-    table = np.array([*(place.get(name, -1) for name in meaning), -1], dtype=np.int64)
-    return Coded(table[column.codes], tuple(names))
+    table = np.array([*(place.get(name, -1) for name in meaning), -1], dtype=np.int32)
+    return Coded(taken(table, column.codes), tuple(names))
+
+
+def categorical(codes: NDArray[np.int32], names: tuple[str, ...]) -> pd.Categorical:
+    """Return codes as categories, those left out that no row has."""
+    used = np.flatnonzero(np.bincount(codes + 1, minlength=len(names) + 1)[1:])
+    if used.size < len(names):
+        table = np.full(len(names) + 1, -1, dtype=np.int32)
+        table[used] = np.arange(used.size)
+        codes = taken(table, codes)
+    return pd.Categorical.from_codes(codes, categories=pd.Index(names)[used])
+
+
+def rows_of(column: Coded, which: list[bool]) -> NDArray[np.int64]:
+    """Return the rows whose value is one of those told by ``which`` (one truth for each meaning)."""
+    if not any(which):
+        return np.zeros(0, dtype=np.int64)
+    return np.flatnonzero(taken(np.array([*which, False]), column.codes))
 
 
 @dataclass(frozen=True, slots=True)
 class Wards:
     """Ward of each row, the wards' names, and the rows whose spelling or name was changed."""
 
-    codes: NDArray[np.int64]
+    codes: NDArray[np.int32]
     names: tuple[str, ...]
-    respelled: NDArray[np.bool_]
-    renamed: NDArray[np.bool_]
+    respelled: NDArray[np.int64]
+    renamed: NDArray[np.int64]
 
 
 def read_wards(column: pa.ChunkedArray, chosen: Mapping[str, str]) -> Wards:
     """Which ward is each row's? Spellings that differ in spaces and capitals only become the commonest of them."""
     raw = coded(column)
-    tidy = [without_formula(name) for name in raw.meanings]
-    rows = np.bincount(raw.codes[raw.codes >= 0], minlength=len(tidy))
+    rows = np.bincount(raw.codes[raw.codes >= 0], minlength=len(raw.meanings))
+    spelled = one_spelling(raw.meanings, rows.tolist())
+    final = chosen_names(spelled, chosen)
+    respelled = rows_of(raw, [a != b for a, b in zip(raw.meanings, spelled, strict=True)])
+    renamed = rows_of(raw, [a != b for a, b in zip(spelled, final, strict=True)])
+    wards = translated(raw, final)
+    return Wards(wards.codes, wards.meanings, respelled, renamed)
+
+
+def one_spelling(names: Sequence[str], rows: Sequence[int]) -> list[str]:
+    """Return each name in the spelling most rows have, of those that differ in spaces and capitals only."""
+    tidy = [without_formula(name) for name in names]
     commonest: dict[str, Counter[str]] = {}
     for name, count in zip(tidy, rows, strict=True):
-        commonest.setdefault(name.casefold(), Counter())[name] += int(count)
-    spelled = [commonest[name.casefold()].most_common(1)[0][0] for name in tidy]
+        commonest.setdefault(name.casefold(), Counter())[name] += count
+    return [commonest[name.casefold()].most_common(1)[0][0] for name in tidy]
+
+
+def chosen_names(names: Sequence[str], chosen: Mapping[str, str]) -> list[str]:
+    """Return the names a person wants instead, whatever the capitals; the others stay."""
     wanted = {old.casefold(): without_formula(new) for old, new in chosen.items()}
-    final = [wanted.get(name.casefold(), name) for name in spelled]
-    changed = np.array([*(a != b for a, b in zip(raw.meanings, spelled, strict=True)), False])
-    renamed = np.array([*(a != b for a, b in zip(spelled, final, strict=True)), False])
-    wards = translated(raw, final)
-    return Wards(wards.codes, wards.meanings, changed[raw.codes], renamed[raw.codes])
-
-
-@dataclass(frozen=True, slots=True)
-class Keys:
-    """Random codes in place of a column's keys, what was noticed about them, and which rows are test patients."""
-
-    codes: NDArray[np.int64]
-    is_test: NDArray[np.bool_]
-    looks_real: bool
-
-
-def read_keys(column: pa.ChunkedArray) -> Keys:
-    """Replace keys by random codes; the way back is forgotten here. Each blank key gets a code of its own."""
-    raw, values = _encoded(pc.utf8_trim_whitespace(column))
-    blank = raw < 0
-    known = len(values)
-    shuffled = np.random.default_rng().permutation(known + int(blank.sum()))
-    codes = shuffled[raw]
-    codes[blank] = shuffled[known:]
-    test = pc.match_substring_regex(values, TEST_KEY, ignore_case=True).to_numpy(zero_copy_only=False)
-    real = [is_national_number(value) for value in values[:1_000].to_pylist()]
-    return Keys(codes, np.append(test, False)[raw], sum(real) > len(real) / 2)
-
-
-def is_national_number(key: str) -> bool:
-    """Does this key look like a real person's number? Ten digits whose last one checks modulo 11, or ddd-dd-dddd.
-
-    Source: the modulus 11 check of the English NHS number (from memory).
-    """
-    digits = re.sub(r"[ -]", "", key)
-    if re.fullmatch(r"\d{3}-\d{2}-\d{4}", key):
-        return True
-    if not re.fullmatch(r"\d{10}", digits):
-        return False
-    check = 11 - sum(int(digit) * weight for digit, weight in zip(digits[:9], range(10, 1, -1), strict=True)) % 11
-    return check % 11 == int(digits[9])
+    return [wanted.get(name.casefold(), name) for name in names]
 
 
 def read_category(column: pa.ChunkedArray) -> pd.Categorical | None:
@@ -144,7 +129,7 @@ def looks_like_identity(values: list[str]) -> bool:
     return alike > max(IDENTITY_SHARE * len(values), 2)
 
 
-def age_bands(column: pa.ChunkedArray) -> tuple[pd.Categorical | None, NDArray[np.bool_]]:
+def age_bands(column: pa.ChunkedArray) -> tuple[pd.Categorical | None, NDArray[np.int64]]:
     """Return ages as ten-year bands (never exact ages), and which rows hold an age no person reaches."""
     raw = coded(column)
     meaning, impossible = [], []
@@ -153,7 +138,7 @@ def age_bands(column: pa.ChunkedArray) -> tuple[pd.Categorical | None, NDArray[n
         wrong = age is not None and not 0 <= age <= OLDEST_YEARS
         impossible.append(wrong)
         meaning.append("" if wrong else without_formula(value) if age is None or is_band else _band(age))
-    rows = np.array([*impossible, False])[raw.codes]
+    rows = rows_of(raw, impossible)
     if len(set(meaning)) > MOST_CATEGORIES or looks_like_identity(sorted(set(meaning))):
         return None, rows
     values = translated(raw, meaning)

@@ -149,9 +149,9 @@ def _nearer(
 
 def _one_epoch(start: TimesRead, end: TimesRead) -> tuple[TimesRead, TimesRead, list[str]]:
     """Move spreadsheet day numbers by four years where that, and only that, puts them among the other dates."""
-    plain = start.seconds[~start.serial & (start.seconds > UNREADABLE)]
     serial = start.seconds[start.serial]
-    if not plain.size or not serial.size:
+    plain = start.seconds[~start.serial & (start.seconds > UNREADABLE)] if serial.size else serial
+    if not plain.size:
         return start, end, []
     shift, middle = EPOCHS_APART_DAYS * DAY_SECONDS, float(np.median(serial))
     if plain.min() <= middle <= plain.max() or not plain.min() <= middle + shift <= plain.max():

@@ -10,6 +10,8 @@ import pandas as pd
 import pyarrow as pa
 import pyarrow.compute as pc
 
+from bedplan.data.blocks import each
+
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
@@ -69,24 +71,29 @@ def read_times(
 
     Checked by: tests/data/test_dates.py
     """
-    column = pa.chunked_array(column).combine_chunks() if isinstance(column, pa.ChunkedArray) else column
-    column = column.combine_chunks() if isinstance(column, pa.ChunkedArray) else column
-    fast = _fast_iso(column)
-    if fast is not None:
-        return TimesRead(fast, np.zeros(fast.size, bool), False, 0, 0, 0)
-    return _slow(column, date_order, time_zone)
+    chunks = column.chunks if isinstance(column, pa.ChunkedArray) else [column]
+    parts = each(lambda chunk: _fast_iso(chunk) or _slow(chunk, date_order, time_zone), chunks)
+    none = np.zeros(0, dtype=np.int64)
+    return TimesRead(
+        np.concatenate([none, *(part.seconds for part in parts)]),
+        np.concatenate([none.astype(bool), *(part.serial for part in parts)]),
+        any(part.had_offset for part in parts),
+        sum(part.day_first_only for part in parts),
+        sum(part.month_first_only for part in parts),
+        sum(part.either_order for part in parts),
+    )
 
 
-def _fast_iso(column: pa.Array) -> NDArray[np.int64] | None:
-    """Read a column that is ISO throughout (blanks allowed) in one pass, or return None."""
+def _fast_iso(part: pa.Array) -> TimesRead | None:
+    """Read times that are ISO throughout, blanks allowed, in one pass, or return None."""
     try:
-        stamps = pc.cast(column, pa.timestamp("s"))
+        stamps = pc.cast(part, pa.timestamp("s"))
     except pa.ArrowInvalid:
         return None
-    missing = pc.is_null(stamps).to_numpy(zero_copy_only=False)
-    seconds = pc.fill_null(pc.cast(stamps, pa.int64()), 0).to_numpy(zero_copy_only=False).copy()
-    seconds[missing] = MISSING
-    return seconds
+    seconds = pc.cast(stamps, pa.int64()).fill_null(0).to_numpy(zero_copy_only=False)
+    if stamps.null_count:
+        seconds = np.where(stamps.is_null().to_numpy(zero_copy_only=False), MISSING, seconds)
+    return TimesRead(seconds, np.zeros(seconds.size, dtype=bool), False, 0, 0, 0)
 
 
 def _plain_iso(text: pa.Array, seconds: NDArray[np.int64]) -> NDArray[np.bool_]:

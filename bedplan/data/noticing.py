@@ -42,7 +42,7 @@ def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overl
     gap = same & (end != MISSING) & (rows.start[order[1:]] - end > HOUR_SECONDS)
     if gap.any():
         place = np.flatnonzero(gap)
-        pair = rows.ward[order[place]] * len(table.wards) + rows.ward[order[place + 1]]
+        pair = rows.ward[order[place]].astype(np.int64) * len(table.wards) + rows.ward[order[place + 1]]
         common = int(np.bincount(pair).argmax())
         first, second = (table.wards[code] for code in divmod(common, len(table.wards)))
         notes.append(

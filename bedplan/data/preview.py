@@ -45,8 +45,8 @@ def preview_columns(
     Checked by: tests/data/test_preview.py
     """
     file = open_source(source, name)
-    is_text = not file.content.startswith((b"PK", b"PAR1"))
-    top = SourceFile(file.name, _first_lines(as_utf8(file)[0])) if is_text else file
+    is_text = not file.begins_with(b"PK", b"PAR1")
+    top = SourceFile(file.name, bytes(_first_lines(as_utf8(file)[0]))) if is_text else file
     try:
         table = read_table(top, STAY_HEADINGS, columns)
     except UnreadableRecords:

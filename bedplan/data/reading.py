@@ -2,19 +2,23 @@
 
 from __future__ import annotations
 
+import codecs
 import csv
 import re
 from typing import TYPE_CHECKING
 
+import numpy as np
 import pyarrow as pa
 from pyarrow import csv as arrow_csv
 
+from bedplan.data.blocks import each
 from bedplan.data.columns import match_headings
 from bedplan.data.texttable import MOST_TITLE_LINES, Layout, TextTable, text_table
 from bedplan.data.workbook import read_parquet, read_workbook
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
+    import mmap
     from collections.abc import Iterable, Mapping
 
     from bedplan.data.source import SourceFile
@@ -25,65 +29,84 @@ CLEARLY_HEADINGS = 3  # known names in one line: no title holds so many
 SNIFFED_BYTES = 256 * 1024
 FEW_VALUES = ("ward", "class", "method", "specialty", "destination", "age_band")
 BLOCK_BYTES = 4 * 2**20
+LAST_ASCII = 127
 
 
 def read_table(
-    source: SourceFile, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None = None
+    source: SourceFile,
+    known: Mapping[str, Iterable[str]],
+    chosen: Mapping[str, str] | None = None,
+    times: Iterable[str] = (),
 ) -> TextTable:
     """What does this file hold? Its matched columns as text, from CSV, other separated text, Excel or Parquet.
 
-    ``known``: canonical name → headings; ``chosen``: canonical name → heading, the user's own words.
+    ``known``: canonical name → headings; ``chosen``: canonical name → heading, the user's own words. ``times``: columns
+    that come as times and not as text where a CSV file writes every one of them like 2024-03-31 14:05.
 
     Raises:
         UnreadableRecords: the file is no table, or has no known heading, or no rows.
 
     Checked by: tests/data/test_reading.py, tests/data/test_bad_files.py
     """
-    if source.content.startswith(b"PK"):
+    if source.begins_with(b"PK"):
         return read_workbook(source, known, chosen)
-    if source.content.startswith(b"PAR1"):
+    if source.begins_with(b"PAR1"):
         return read_parquet(source, known, chosen)
     text, encoding = as_utf8(source)
     layout = find_layout(text, known, chosen)
     notes = [] if encoding == "UTF-8" else [f"The file was written in {encoding}; check that ward names look right."]
-    return text_table(source.name, layout, lambda: _parse(source.name, text, layout), notes, list(known))
+    return text_table(source.name, layout, lambda: _parse(source.name, text, layout, times), notes, list(known))
 
 
-def as_utf8(source: SourceFile) -> tuple[bytes, str]:
+def as_utf8(source: SourceFile) -> tuple[bytes | mmap.mmap, str]:
     """Return the text as UTF-8 bytes, and its encoding; tried in the order UTF-8, UTF-16, Windows-1252."""
     content = source.content
-    if content.startswith((b"\xff\xfe", b"\xfe\xff")):
+    if source.begins_with(codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE):
         return _decoded(content, "utf-16", source.name), "UTF-16"
-    if content.startswith(b"\xef\xbb\xbf"):
-        content = content[3:]
-    head = content[:4096]
+    if source.begins_with(codecs.BOM_UTF8):
+        content = memoryview(content)[3:]
+    head = bytes(content[:4096])
     if head.count(b"\0") > len(head) // 4:
         guess = "utf-16-le" if head[1::2].count(b"\0") > head[0::2].count(b"\0") else "utf-16-be"
         return _decoded(content, guess, source.name), "UTF-16"
-    if b"\0" in content:
+    lowest, highest = _extremes(content)
+    if lowest == 0:
         raise UnreadableRecords(
             [f"{source.name} is not a text table (it holds bytes no text has): export it as CSV or Excel (.xlsx)."]
         )
-    if content.isascii():
+    if highest <= LAST_ASCII:
         return content, "UTF-8"
     try:
-        content.decode("utf-8")
+        check = codecs.getincrementaldecoder("utf-8")()
+        for first in range(0, len(content), BLOCK_BYTES):
+            check.decode(content[first : first + BLOCK_BYTES])
+        check.decode(b"", final=True)
     except UnicodeDecodeError:
-        return content.decode("cp1252", errors="replace").encode(), "Windows-1252"
+        return str(content, "cp1252", errors="replace").encode(), "Windows-1252"
     return content, "UTF-8"
 
 
-def _decoded(content: bytes, encoding: str, name: str) -> bytes:
+def _extremes(content: bytes | mmap.mmap) -> tuple[int, int]:
+    """Return the lowest and the highest byte."""
+    signs = np.frombuffer(content, dtype=np.uint8)
+    blocks = [signs[first : first + BLOCK_BYTES] for first in range(0, signs.size, BLOCK_BYTES)]
+    ends = each(lambda block: (int(block.min()), int(block.max())), blocks)
+    return min(low for low, _ in ends), max(high for _, high in ends)
+
+
+def _decoded(content: bytes | mmap.mmap, encoding: str, name: str) -> bytes:
     """Return the text in UTF-8, or say that it is not text."""
     try:
-        return content.decode(encoding).encode()
+        return str(content, encoding).encode()
     except UnicodeError as problem:
         raise UnreadableRecords(
             [f"{name} looks like UTF-16 text but is damaged: export it again as CSV in UTF-8."]
         ) from problem
 
 
-def find_layout(text: bytes, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None) -> Layout:
+def find_layout(
+    text: bytes | mmap.mmap, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None
+) -> Layout:
     """Find the line that holds the headings: the one with most known names, under the separator that shows most."""
     best = Layout(0, 0, ",", (), {})
     for number, line in enumerate(LINE.finditer(text[:SNIFFED_BYTES])):
@@ -106,13 +129,31 @@ def split_cells(line: str, separator: str) -> tuple[str, ...]:
         return ()
 
 
-def _type_of(key: str) -> pa.DataType:
-    """Return how a column is held: few values, many rows in codes from the start; all else as strings."""
+def _type_of(key: str, times: Iterable[str]) -> pa.DataType:
+    """Return how a column is held: few values, many rows in codes from the start; times; all else as strings."""
+    if key in times:
+        return pa.timestamp("s")
     return pa.dictionary(pa.int32(), pa.string()) if key in FEW_VALUES else pa.string()
 
 
-def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
-    """Parse the lines under the headings; lines with another number of cells are counted, not guessed at."""
+def _parse(name: str, text: bytes | mmap.mmap, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
+    """Parse the lines under the headings, or say why they are no table."""
+    try:
+        try:
+            if len(text) > SNIFFED_BYTES:  # most files that can't be read so show it at once
+                _parsed(bytes(text[:SNIFFED_BYTES]).rpartition(b"\n")[0], layout, times)
+            return _parsed(text, layout, times)
+        except pa.ArrowInvalid:  # most likely one of the times is written otherwise: its column is looked at as text
+            return _parsed(text, layout, ())
+    except pa.ArrowInvalid as problem:
+        if "Empty CSV" in str(problem):
+            raise UnreadableRecords([f"{name} has headings but no rows: export it again with its rows."]) from problem
+        said = str(problem).splitlines()[0][:120]
+        raise UnreadableRecords([f"{name} can't be read as a table ({said}): export it again as CSV."]) from problem
+
+
+def _parsed(text: bytes | mmap.mmap, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
+    """Parse the lines; those with another number of cells are counted, not guessed at."""
     misfits = 0
 
     def count(_: object) -> str:
@@ -123,23 +164,21 @@ def _parse(name: str, text: bytes, layout: Layout) -> tuple[pa.Table, int]:
 
     unique = [f"{place}\0{heading}" for place, heading in enumerate(layout.headings)]
     wanted = {heading: unique[layout.headings.index(heading)] for heading in layout.found.values()}
-    try:
-        table = arrow_csv.read_csv(
-            pa.BufferReader(pa.py_buffer(text).slice(layout.rows_start)),
-            read_options=arrow_csv.ReadOptions(column_names=unique, block_size=BLOCK_BYTES),
-            parse_options=arrow_csv.ParseOptions(
-                delimiter=layout.separator, newlines_in_values=b'"' in text, invalid_row_handler=count
-            ),
-            convert_options=arrow_csv.ConvertOptions(
-                column_types={column: _type_of(key) for key, column in zip(layout.found, wanted.values(), strict=True)},
-                include_columns=list(wanted.values()),
-                strings_can_be_null=True,
-                null_values=[""],
-            ),
-        )
-    except pa.ArrowInvalid as problem:
-        if "Empty CSV" in str(problem):
-            raise UnreadableRecords([f"{name} has headings but no rows: export it again with its rows."]) from problem
-        said = str(problem).splitlines()[0][:120]
-        raise UnreadableRecords([f"{name} can't be read as a table ({said}): export it again as CSV."]) from problem
+    table = arrow_csv.read_csv(
+        pa.BufferReader(pa.py_buffer(text).slice(layout.rows_start)),
+        read_options=arrow_csv.ReadOptions(column_names=unique, block_size=BLOCK_BYTES),
+        parse_options=arrow_csv.ParseOptions(
+            delimiter=layout.separator,
+            newlines_in_values=re.search(b'"', text) is not None,
+            invalid_row_handler=count,
+        ),
+        convert_options=arrow_csv.ConvertOptions(
+            column_types={
+                column: _type_of(key, times) for key, column in zip(layout.found, wanted.values(), strict=True)
+            },
+            include_columns=list(wanted.values()),
+            strings_can_be_null=True,
+            null_values=[""],
+        ),
+    )
     return table.rename_columns(list(wanted)), misfits

@@ -11,15 +11,16 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data import cleaning, noticing, sequence
+from bedplan.data.blocks import order_of
 from bedplan.data.choices import HELD, IntakeChoices
 from bedplan.data.columns import STAY_HEADINGS
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
 from bedplan.data.places import LEAVE, kinds_of_places, leave_note, set_places_aside
 from bedplan.data.reading import read_table
-from bedplan.data.report import IntakeReport, why_none
+from bedplan.data.report import SET_ASIDE, IntakeReport, why_none
 from bedplan.data.rows import RULES, Rows
 from bedplan.data.source import FileLike, SourceFile, open_source
-from bedplan.data.table import StayTable, as_stay_table
+from bedplan.data.table import TIMES, StayTable, as_stay_table
 from bedplan.data.wardlinks import WardLink, propose_links
 from bedplan.data.windows import TimesInHospital, chosen_window, find_period, seen_until, times_in_hospital
 from bedplan.errors import UnreadableRecords
@@ -147,7 +148,7 @@ def read_records(
     tell(0.0, "reading the file")
     file = open_source(source, name)
     chosen = choices or IntakeChoices()
-    text = read_table(file, STAY_HEADINGS, columns)
+    text = read_table(file, STAY_HEADINGS, columns, TIMES)
     tell(0.4, "dates, wards and keys")
     table = as_stay_table(text, file.name, date_order, chosen)
     # What was read is in the table now: a large file need not be held three times.
@@ -181,16 +182,17 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
         cleaning.mend_clock_change(rows)
     cleaning.mend_negative(rows, cleaning.longest_stays(rows, wards))
     longest = cleaning.longest_stays(rows, wards)
-    order = sequence.in_order(rows)
+    kinds = kinds_of_places(table.wards, choices.places)
+    is_leave = np.array([kind == LEAVE for kind in kinds.values()])
+    everyone = sequence.in_order(rows)
+    order = sequence.to_look_at(rows, everyone, is_leave)
     if table.knows_patients:
         order = sequence.drop_repeats(rows, order)
     until = seen_until(rows, table.has_times)
     order = sequence.close_forgotten(rows, order, longest, until)
     if table.has_times:
-        cleaning.drop_zero_stays(rows)
+        cleaning.drop_zero_stays(rows, order)
     order = order[rows.live[order]]
-    kinds = kinds_of_places(table.wards, choices.places)
-    is_leave = np.array([kind == LEAVE for kind in kinds.values()])
     notes += leave_note(rows, is_leave, choices.bed_on_leave)
     if table.knows_patients:
         if choices.bed_on_leave == HELD:
@@ -198,7 +200,9 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
         order = sequence.join_same_ward(rows, order)
         if table.has_times:
             order = sequence.merge_pass_throughs(rows, order)
-        order, long_overlaps = sequence.part_overlaps(rows, order)
+        long_overlaps = sequence.part_overlaps(rows, order)
+    order = everyone[rows.live[everyone]]
+    if table.knows_patients:
         notes += noticing.sequences(rows, order, table, long_overlaps)
     set_places_aside(rows, kinds, table.text.get("class"), choices.bed_on_leave)
     times = times_in_hospital(rows, order, knows_patients=table.knows_patients, knows_spells=table.knows_spells)
@@ -211,7 +215,7 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
     live = np.flatnonzero(rows.live)
     if not live.size:
         raise UnreadableRecords(_why_none(rows, file.name))
-    live = live[np.argsort(rows.start[live], kind="stable")]
+    live = live[order_of(rows.start[live])]
     start, end = rows.start[live], rows.end[live]
     choices.check_days(file.name, _day(start.min()), _day(seen.until - 1))
     period = find_period(seen.times, seen.until).narrowed(chosen_window(choices.window))
@@ -252,9 +256,9 @@ def _report(table: StayTable, text: TextTable, until: int, notes: list[str]) -> 
     """Count every row and every bed-day; lines with another number of cells are rows too."""
     rows = table.rows
     recorded = rows.recorded_bed_days(until)
-    live = rows.live
-    kept = float((rows.until(until)[live] - rows.start[live]).sum() / DAY_SECONDS)
-    aside, total = float(recorded[rows.aside].sum()), float(recorded.sum())
+    kept, total = rows.bed_days_used(until), float(recorded.sum())
+    is_aside = np.array([False, *(rule.outcome == SET_ASIDE for rule in RULES.values())])
+    aside = float(recorded[is_aside].sum())
     repaired = (rows.reason > 0) & ~rows.aside
     return IntakeReport(
         rows_in=rows.start.size + text.misfits,
@@ -266,7 +270,7 @@ def _report(table: StayTable, text: TextTable, until: int, notes: list[str]) -> 
         bed_days_added=kept + aside - total,
         bed_days_used=kept,
         bed_days_set_aside=aside,
-        bed_days_repaired=float(recorded[repaired].sum()),
+        bed_days_repaired=float(recorded[1:][~is_aside[1:]].sum()),
         dropped_columns=table.dropped,
         notes=tuple(notes),
     )
@@ -276,4 +280,4 @@ def _why_none(rows: Rows, name: str) -> list[str]:
     """Say why no row of the file could be used."""
     unreadable = (rows.start == UNREADABLE).sum() > rows.start.size // 2
     advice = "write dates as 2024-03-31 14:05" if unreadable else "check the export and try again"
-    return [why_none(name, rows.findings(np.zeros(rows.start.size)), advice)]
+    return [why_none(name, rows.findings(np.zeros(len(RULES) + 1)), advice)]

@@ -7,7 +7,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE
+from bedplan.data.blocks import in_blocks
+from bedplan.data.dates import DAY_SECONDS, MISSING
 from bedplan.data.report import REPAIRED, SET_ASIDE, Finding, Rule
 
 if TYPE_CHECKING:
@@ -67,9 +68,9 @@ class Rows:
     code of :data:`CODES`; ``aside`` and ``merged`` rows give no stay of their own.
     """
 
-    patient: NDArray[np.int64]
-    spell: NDArray[np.int64]
-    ward: NDArray[np.int64]
+    patient: NDArray[np.int32]
+    spell: NDArray[np.int32]
+    ward: NDArray[np.int32]
     start: NDArray[np.int64]
     end: NDArray[np.int64]
     first_start: NDArray[np.int64] = field(init=False)
@@ -106,24 +107,36 @@ class Rows:
             fresh = rows[self.reason[rows] == 0]
             self.reason[fresh] = CODES[key]
 
-    def until(self, until: int) -> NDArray[np.int64]:
-        """Return ends with unfinished stays running to ``until``."""
-        return np.where(self.is_open, np.maximum(until, self.start), self.end)
+    def bed_days_used(self, until: int) -> float:
+        """Return the bed-days of the rows that stand for a stay, unfinished ones running to ``until``."""
+
+        def used(block: slice) -> int:
+            """Return the seconds of one block."""
+            start, end = self.start[block], self.end[block]
+            stay = np.where(end == MISSING, np.maximum(until, start), end) - start
+            return int(stay[self.live[block]].sum())
+
+        return sum(in_blocks(self.start.size, used)) / DAY_SECONDS
 
     def recorded_bed_days(self, until: int) -> NDArray[np.float64]:
-        """Return the bed-days of each row as recorded, 0 where the record gives none."""
-        end = np.where(self.first_end == MISSING, until, self.first_end)
-        known = (self.first_start > UNREADABLE) & (end > UNREADABLE) & (end >= self.first_start)
-        known &= (end <= until) & (self.first_start > 0)
-        return np.where(known, end - np.where(known, self.first_start, 0), 0) / DAY_SECONDS
+        """Return the bed-days as recorded of the rows of each reason (0 = none), 0 where the record gives none."""
+
+        def recorded(block: slice) -> NDArray[np.float64]:
+            """Return the seconds by reason of one block."""
+            start, end = self.first_start[block], self.first_end[block]
+            end = np.where(end == MISSING, until, end)
+            known = (start > 0) & (end >= start) & (end <= until)
+            stay = np.where(known, end - np.where(known, start, 0), 0)
+            return np.bincount(self.reason[block], weights=stay, minlength=len(RULES) + 1)
+
+        return np.sum(in_blocks(self.start.size, recorded), axis=0) / DAY_SECONDS
 
     def findings(self, bed_days: NDArray[np.float64], misfits: int = 0) -> tuple[Finding, ...]:
-        """Return how many rows met each rule, and their recorded bed-days; ``misfits`` were never parsed."""
+        """Return how many rows met each rule, and their bed-days by reason; ``misfits`` were never parsed."""
         counts = np.bincount(self.reason, minlength=len(RULES) + 1)
         counts[CODES["misfit"]] += misfits
-        days = np.bincount(self.reason, weights=bed_days, minlength=len(RULES) + 1)
         return tuple(
-            Finding(rule.outcome, rule.sentence, int(counts[CODES[key]]), float(days[CODES[key]]))
+            Finding(rule.outcome, rule.sentence, int(counts[CODES[key]]), float(bed_days[CODES[key]]))
             for key, rule in RULES.items()
             if counts[CODES[key]]
         )

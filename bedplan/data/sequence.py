@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bedplan.data.blocks import in_blocks, order_of, taken
 from bedplan.data.dates import DAY_SECONDS, MISSING
 from bedplan.data.rows import OPEN_END, SPAN
 
@@ -21,10 +22,12 @@ PASS_THROUGH_SECONDS = 30 * 60
 
 def in_order(rows: Rows) -> NDArray[np.int64]:
     """Return the live rows by patient, then start; of two that start together the one with the later end first."""
-    live = np.flatnonzero(rows.live)
-    place = rows.patient[live] * SPAN + rows.start[live]
-    ranks = np.argsort(place, kind="stable")
-    order, place = live[ranks], place[ranks]
+    order = np.flatnonzero(rows.live)
+    place = _place(rows, order)
+    if (place[1:] < place[:-1]).any():
+        order = order[order_of(rows.start[order])]
+        order = order[order_of(rows.patient[order])]
+        place = _place(rows, order)
     tied = np.zeros(order.size, dtype=bool)
     tied[1:] = place[1:] == place[:-1]
     if tied.any():
@@ -32,6 +35,33 @@ def in_order(rows: Rows) -> NDArray[np.int64]:
         together = order[tied]
         order[tied] = together[np.lexsort((-_ends(rows, together), place[tied]))]
     return order
+
+
+def _place(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return numbers that go up from patient to patient, and from start to start of each."""
+    return rows.patient[order] * SPAN + rows.start[order]
+
+
+def to_look_at(rows: Rows, order: NDArray[np.int64], always: NDArray[np.bool_]) -> NDArray[np.int64]:
+    """Return the stays of patients to whom a rule about stays in a row may apply: in most files few.
+
+    The rules leave a patient alone whose stays all end, last long enough to be no pass-through, and either begin more
+    than an hour after the one before or just when it ends, on another ward. ``always``: wards whose patients are looked
+    at whatever their times are.
+    """
+    asked = np.zeros(int(rows.patient.max(initial=0)) + 1, dtype=bool)
+
+    def ask(block: slice) -> None:
+        """Note the patients of one block."""
+        which = order[block.start : block.stop + 1]
+        patient, ward, start, end = (every[which] for every in (rows.patient, rows.ward, rows.start, rows.end))
+        asked[patient[(end < start + PASS_THROUGH_SECONDS) | always[ward]]] = True  # a missing end is early, too
+        moves = (start[1:] == end[:-1]) & (ward[1:] != ward[:-1])
+        near = (start[1:] <= end[:-1] + BRIDGED_GAP_SECONDS) & ~moves
+        asked[patient[1:][near & (patient[1:] == patient[:-1])]] = True
+
+    in_blocks(order.size, ask)
+    return order[taken(asked, taken(rows.patient, order))]
 
 
 def _still(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
@@ -155,8 +185,8 @@ def merge_pass_throughs(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int6
     return _still(rows, order)
 
 
-def part_overlaps(rows: Rows, order: NDArray[np.int64]) -> tuple[NDArray[np.int64], int]:
-    """Give each patient one bed at a time; returns the order and how many overlaps were longer than 12 hours."""
+def part_overlaps(rows: Rows, order: NDArray[np.int64]) -> int:
+    """Give each patient one bed at a time; returns how many overlaps were longer than 12 hours."""
     order = _drop_nested(rows, order)
     patient, start, end = rows.patient[order], rows.start[order], _ends(rows, order)
     gap = start[1:] - end[:-1]
@@ -167,7 +197,7 @@ def part_overlaps(rows: Rows, order: NDArray[np.int64]) -> tuple[NDArray[np.int6
     bridge = np.flatnonzero(same & (gap > 0) & (gap <= BRIDGED_GAP_SECONDS))
     rows.end[order[bridge]] = rows.start[order[bridge + 1]]
     rows.mark(order[bridge], "bridged")
-    return order, int((gap[cut] < -DAY_SECONDS // 2).sum())
+    return int((gap[cut] < -DAY_SECONDS // 2).sum())
 
 
 def _drop_nested(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import hashlib
+import mmap
+from concurrent.futures import Future, ThreadPoolExecutor
 from dataclasses import dataclass
 from pathlib import Path
 from typing import BinaryIO, TypeAlias
@@ -12,6 +14,7 @@ from bedplan.errors import UnreadableRecords
 FileLike: TypeAlias = str | Path | bytes | BinaryIO
 
 LARGEST_FILE_BYTES = 4 * 2**30
+BLANK_BYTES = 4_096
 # The first bytes of files that are often given a table's name by mistake.
 OTHER_KINDS = (
     (b"\x89PNG", "a picture (PNG)"),
@@ -30,11 +33,20 @@ OTHER_KINDS = (
 
 @dataclass(frozen=True, slots=True)
 class SourceFile:
-    """One file as it came: its name, its bytes, and the SHA-256 fingerprint of them."""
+    """One file as it came: its name and its bytes (of a path, as the system maps them: nothing is copied)."""
 
     name: str
-    content: bytes
-    fingerprint: str = ""
+    content: bytes | mmap.mmap
+    digest: Future[str] | None = None
+
+    @property
+    def fingerprint(self) -> str:
+        """The SHA-256 of the bytes, worked out while the file is read."""
+        return self.digest.result() if self.digest else ""
+
+    def begins_with(self, *starts: bytes) -> bool:
+        """Are these the first bytes?"""
+        return any(self.content[: len(start)] == start for start in starts)
 
 
 def open_source(source: FileLike, name: str | None = None) -> SourceFile:
@@ -45,18 +57,21 @@ def open_source(source: FileLike, name: str | None = None) -> SourceFile:
     """
     given = name or _name_of(source)
     content = _bytes_of(source, given)
-    if not content or content.isspace():
+    if not content[:BLANK_BYTES].strip() and not content[BLANK_BYTES:].strip():
         raise UnreadableRecords([f"{given} is empty: export it again and check that it has rows."])
     if len(content) > LARGEST_FILE_BYTES:
         raise UnreadableRecords(
             [f"{given} holds {len(content) / 2**30:.1f} GB, more than this program reads at once (4 GB): split it."]
         )
     for start, kind in OTHER_KINDS:
-        if content.startswith(start):
+        if content[: len(start)] == start:
             raise UnreadableRecords(
                 [f"{given} is {kind}, not a table: export the table as CSV, Excel (.xlsx) or Parquet."]
             )
-    return SourceFile(given, content, hashlib.sha256(content).hexdigest())
+    beside = ThreadPoolExecutor(1)
+    digest = beside.submit(lambda: hashlib.sha256(content).hexdigest())
+    beside.shutdown(wait=False)
+    return SourceFile(given, content, digest)
 
 
 def _name_of(source: FileLike) -> str:
@@ -66,15 +81,24 @@ def _name_of(source: FileLike) -> str:
     return Path(str(getattr(source, "name", "") or "The file")).name
 
 
-def _bytes_of(source: FileLike, name: str) -> bytes:
+def _bytes_of(source: FileLike, name: str) -> bytes | mmap.mmap:
     """Return the bytes, or say why they can't be had."""
     if isinstance(source, bytes | bytearray | memoryview):
         return bytes(source)
     if isinstance(source, str | Path):
         try:
-            return Path(source).read_bytes()
+            with Path(source).open("rb") as opened:
+                return _mapped(opened)
         except OSError as problem:
             reason = problem.strerror or "it can't be read"
             raise UnreadableRecords([f"{name} can't be opened ({reason}): check the path and try again."]) from problem
     content = source.getvalue() if hasattr(source, "getvalue") else source.read()
     return content.encode("utf-8") if isinstance(content, str) else bytes(content)
+
+
+def _mapped(opened: BinaryIO) -> bytes | mmap.mmap:
+    """Return a file's bytes where the system keeps them; copied only where they can't be mapped (an empty file, a pipe)."""
+    try:
+        return mmap.mmap(opened.fileno(), 0, access=mmap.ACCESS_READ)
+    except (OSError, ValueError):
+        return opened.read()

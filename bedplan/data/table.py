@@ -9,8 +9,10 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data import codes
+from bedplan.data.blocks import BLOCK_ROWS, each, taken
 from bedplan.data.dateorder import start_and_end
 from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE, read_times
+from bedplan.data.keys import read_keys
 from bedplan.data.rows import Rows
 from bedplan.errors import UnreadableRecords
 
@@ -22,6 +24,7 @@ if TYPE_CHECKING:
     from bedplan.data.choices import IntakeChoices
     from bedplan.data.texttable import TextTable
 
+TIMES = ("start", "end", "admitted", "discharged", "ready")
 KEPT_TEXT = ("class", "method", "specialty", "destination")
 BESIDE_STAYS = ("staffed beds", "a census", "a monthly return")  # what no column of ward stays can be
 TOTAL_WORDS = ("total", "grand total", "sub-total", "subtotal", "sum", "all wards", "run on", "page")
@@ -29,12 +32,16 @@ TOTAL_WORDS = ("total", "grand total", "sub-total", "subtotal", "sum", "all ward
 
 @dataclass(slots=True)
 class StayTable:
-    """A stay file in columns; ``rows`` is what the rules work on."""
+    """A stay file in columns; ``rows`` is what the rules work on.
+
+    ``random_keys``: patient_key, spell_key → number of a key in ``rows`` → the random code shown for it.
+    """
 
     rows: Rows
     wards: tuple[str, ...]
     text: Mapping[str, pd.Categorical]
     ready: NDArray[np.int64] | None
+    random_keys: Mapping[str, NDArray[np.int64]]
     has_times: bool
     knows_patients: bool
     knows_spells: bool
@@ -49,22 +56,27 @@ class StayTable:
     ) -> pd.DataFrame:
         """Return some rows as a table for people; times as recorded unless given."""
         rows = self.rows
-        columns: dict[str, object] = {"patient_key": rows.patient[which]}
+        columns: dict[str, object] = {"patient_key": self._keys("patient_key", rows.patient, which)}
         if self.knows_spells:
-            columns["spell_key"] = rows.spell[which]
-        ward = pd.Categorical.from_codes(rows.ward[which], categories=list(self.wards))
-        columns["ward"] = ward.remove_unused_categories()
-        columns["start"] = as_times(rows.first_start[which] if start is None else start)
-        columns["end"] = as_times(rows.first_end[which] if end is None else end)
-        columns |= {name: values[which] for name, values in self.text.items()}
+            columns["spell_key"] = self._keys("spell_key", rows.spell, which)
+        columns["ward"] = codes.categorical(taken(rows.ward, which), self.wards)
+        columns["start"] = as_times(taken(rows.first_start, which) if start is None else start)
+        columns["end"] = as_times(taken(rows.first_end, which) if end is None else end)
+        for name, values in self.text.items():
+            columns[name] = pd.Categorical.from_codes(taken(values.codes, which), dtype=values.dtype)
         if self.ready is not None:
-            columns["ready"] = as_times(self.ready[which])
-        return pd.DataFrame(columns)
+            columns["ready"] = as_times(taken(self.ready, which))
+        return pd.DataFrame(columns, copy=False)
+
+    def _keys(self, name: str, numbers: NDArray[np.int32], which: NDArray[np.int64]) -> NDArray[np.int64]:
+        """Return the random codes of some rows' keys; without keys, the rows' own numbers."""
+        found = taken(numbers, which)
+        return taken(self.random_keys[name], found) if name in self.random_keys else found.astype(np.int64)
 
 
 def as_times(seconds: NDArray[np.int64]) -> NDArray[np.datetime64]:
     """Return seconds as times, missing and unreadable ones as "not a time"."""
-    return np.where(seconds > UNREADABLE, seconds, MISSING).astype("datetime64[s]")
+    return np.where(seconds > UNREADABLE, seconds, MISSING).view("datetime64[s]")
 
 
 def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: IntakeChoices) -> StayTable:
@@ -78,32 +90,35 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
     start, end, notes = start_and_end(text, name, date_order, choices.time_zone)
     wards = codes.read_wards(text.columns["ward"], choices.ward_names)
     rows = Rows(
-        patient=np.arange(text.rows, dtype=np.int64),
-        spell=np.full(text.rows, -1, dtype=np.int64),
+        patient=np.arange(text.rows, dtype=np.int32),
+        spell=np.full(text.rows, -1, dtype=np.int32),
         ward=wards.codes,
         start=start.seconds,
         end=end.seconds,
     )
-    keys = {key: codes.read_keys(text.columns[key]) for key in ("patient_key", "spell_key") if key in text.columns}
-    if keys:
-        rows.patient = keys.get("patient_key", keys.get("spell_key")).codes
+    named = [key for key in ("patient_key", "spell_key") if key in text.columns]
+    keys = dict(zip(named, each(lambda key: read_keys(text.columns[key]), named), strict=True))
+    whose = keys.get("patient_key", keys.get("spell_key"))
+    if whose is not None:
+        rows.patient = whose.codes
     if "spell_key" in keys:
         rows.spell = keys["spell_key"].codes
     kept, dropped = _text_columns(text, rows)
     _mark_report_lines(rows, text, wards.names)
     for key in keys.values():
-        rows.mark(key.is_test, "test patient")
+        rows.mark(key.tests, "test patient")
         if key.looks_real:
             notes.append("Keys in the file look like real persons' numbers; they were replaced by random codes.")
     rows.mark(wards.renamed, "ward renamed")
     rows.mark(wards.respelled, "ward spelling")
-    rows.mark(start.serial | end.serial, "serial date")
+    rows.mark(np.union1d(np.flatnonzero(start.serial), np.flatnonzero(end.serial)), "serial date")
     ready = read_times(text.columns["ready"], date_order or "day first").seconds if "ready" in text.columns else None
     return StayTable(
         rows=rows,
         wards=wards.names,
         text=kept,
         ready=ready,
+        random_keys={key: read.random for key, read in keys.items()} | ({"patient_key": whose.random} if whose else {}),
         has_times=_has_times(start.seconds, end.seconds),
         knows_patients=bool(keys),
         knows_spells="spell_key" in keys,
@@ -158,10 +173,13 @@ def _mark_report_lines(rows: Rows, text: TextTable, wards: tuple[str, ...]) -> N
         for place, ward in enumerate(wards)
         if ward.casefold() == heading or ward.casefold().startswith(TOTAL_WORDS)
     ]
-    no_date = (rows.start <= UNREADABLE) & (rows.end <= UNREADABLE)
-    rows.mark(no_date & ((rows.ward < 0) | np.isin(rows.ward, furniture)), "misfit")
+    no_date = np.flatnonzero((rows.start <= UNREADABLE) & (rows.end <= UNREADABLE))
+    rows.mark(no_date[np.isin(rows.ward[no_date], [-1, *furniture])], "misfit")
 
 
 def _has_times(start: NDArray[np.int64], end: NDArray[np.int64]) -> bool:
-    """Does any readable time differ from midnight?"""
-    return any(bool(((times > UNREADABLE) & (times % DAY_SECONDS != 0)).any()) for times in (start, end))
+    """Does any readable time differ from midnight? Mostly the first rows show it."""
+    return any(
+        bool(((times > UNREADABLE) & (times % DAY_SECONDS != 0)).any())
+        for times in (start[:BLOCK_ROWS], end[:BLOCK_ROWS], start, end)
+    )

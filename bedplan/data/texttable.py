@@ -21,7 +21,7 @@ MOST_TITLE_LINES = 60
 
 @dataclass(frozen=True, slots=True)
 class TextTable:
-    """The matched columns of a file, every value a string or null, by canonical name.
+    """The matched columns of a file, every value a string, a time (where times were asked for) or null, by canonical name.
 
     ``headings``: canonical name → heading as written. ``misfits``: lines with another number of cells than the
     headings. ``dropped``: identity columns that were never read. ``unused``: other headings nothing was made of.
@@ -82,9 +82,8 @@ def text_table(
             [f"{name} has no line of headings: its first row should name the columns, such as {', '.join(asked[:5])}."]
         )
     table, misfits = parse()
-    written = functools.reduce(pc.or_, [pc.is_valid(column) for column in table.columns])
-    if not pc.all(written).as_py():
-        table = table.filter(written)
+    if all(column.null_count for column in table.columns):
+        table = table.filter(functools.reduce(pc.or_, [pc.is_valid(column) for column in table.columns]))
     if table.num_rows + misfits == 0:
         raise UnreadableRecords([f"{name} has headings but no rows: export it again with its rows."])
     said = list(notes)
