@@ -1,4 +1,4 @@
-"""What happened: the share of hours full through the week, and last year's days inside the predicted band."""
+"""What happened: the share of hours full through week and year, and last year's days inside the predicted band."""
 
 from __future__ import annotations
 
@@ -15,21 +15,35 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
 
-def _week() -> Spec:
-    """Build the week: a cell an hour, its share written in it, darker where the ward is full more often."""
-    data = alt.Chart(alt.NamedData("week"))
-    hour = alt.X("hour:O", title="Hour of the day", axis=alt.Axis(labelAngle=0))
-    day = alt.Y("day:O", sort=list(wording.WEEKDAYS), title=None)
+CLOSEST_NAMES = 0.1  # of the picture's height: two names nearer than that would touch
+# two digits in a cell need so many pixels; narrower than the last, the colour alone would be read: no digits there
+DIGITS = alt.ExprRef(expr="width < 300 ? 0 : width < 560 ? 10 : 13")
+
+
+def _cells(name: str, x: alt.X, y: alt.Y, height: alt.Step) -> Spec:
+    """Build shares as cells, each with its share written in it, darker where the ward is full more often."""
+    data = alt.Chart(alt.NamedData(name))
     colour = alt.Color("share:Q", scale=alt.Scale(domain=[0, 1], range=["#FFFFFF", "#08306B"]), legend=None)
-    cells = data.mark_rect(stroke="#B8BEC4", strokeWidth=0.5).encode(
-        x=hour,
-        y=day,
-        color=colour,
-        tooltip=["day:O", "hour:O", alt.Tooltip("share:Q", format=".0%", title="Share of hours full")],
-    )
+    tips = [y.shorthand, x.shorthand, alt.Tooltip("share:Q", format=".0%", title="Share of hours full")]
+    cells = data.mark_rect(stroke="#B8BEC4", strokeWidth=0.5).encode(x=x, y=y, color=colour, tooltip=tips)
     ink = alt.condition("datum.share > 0.5", alt.value("#FFFFFF"), alt.value("#0F1419"))
-    text = data.mark_text(fontSize=12).encode(x=hour, y=day, text="said:N", color=ink)
-    return finished(alt.layer(cells, text).properties(height=alt.Step(30)))
+    text = data.mark_text(fontSize=DIGITS).encode(x=x, y=y, text="said:N", color=ink)
+    return finished(alt.layer(cells, text).properties(height=height))
+
+
+def _week() -> Spec:
+    """Build the week: a cell an hour."""
+    hour = alt.X(
+        "hour:O", title="Hour of the day", axis=alt.Axis(labelAngle=0, labelOverlap="parity", labelSeparation=4)
+    )
+    day = alt.Y("day:O", sort=list(wording.WEEKDAYS), title=None)
+    return _cells("week", hour, day, alt.Step(30))
+
+
+def _year() -> Spec:
+    """Build the year: a cell a month, in a row."""
+    month = alt.X("month:O", sort=list(wording.MONTHS_SHORT), title=None, axis=alt.Axis(labelAngle=0, orient="top"))
+    return _cells("year", month, alt.Y("row:O", title=None), alt.Step(34))
 
 
 def _check() -> Spec:
@@ -48,27 +62,46 @@ def _check() -> Spec:
 
 
 WEEK: Spec = _week()
+YEAR: Spec = _year()
 CHECK: Spec = _check()
 
 
 def week_data(shares: NDArray[np.float64]) -> Datasets:
     """Which cells show these shares of hours full, ``(7, 24)``, Monday first?"""
     rows = [
-        {"day": day, "hour": hour, "share": float(share), "said": "" if np.isnan(share) else f"{100 * share:.0f}"}
+        {"day": day, "hour": hour, **_cell(share)}
         for day, row in zip(wording.WEEKDAYS, shares, strict=True)
         for hour, share in enumerate(row)
     ]
     return {"week": pd.DataFrame(rows)}
 
 
+def year_data(shares: NDArray[np.float64]) -> Datasets:
+    """Which cells show these shares of hours full, ``(12,)``, January first?
+
+    Checked by: tests/charts/test_last_year.py
+    """
+    rows = [
+        {"month": month, "row": "All hours", **_cell(share)}
+        for month, share in zip(wording.MONTHS_SHORT, shares, strict=True)
+    ]
+    return {"year": pd.DataFrame(rows)}
+
+
+def _cell(share: float) -> dict[str, float | str]:
+    """Return a share and how it is written: whole per cent, nothing where nothing was recorded."""
+    return {"share": float(share), "said": "" if np.isnan(share) else f"{100 * share:.0f}"}
+
+
 def check_data(days: pd.DataFrame, beds: float | None) -> Datasets:
     """Which lines show last year? ``days``: columns day, seen, low, middle, high; ``beds`` drawn where known."""
     last = days.iloc[-1]
     names = [
-        {"day": last["day"], "at": float(last["seen"]), "name": "seen", "colour": "#D55E00"},
+        {"day": last["day"], "at": float(last["seen"]), "name": "in beds", "colour": "#D55E00"},
         {"day": last["day"], "at": float(last["high"]), "name": "8 days in 10", "colour": "#0072B2"},
     ]
-    if abs(names[0]["at"] - names[1]["at"]) < 0.08 * float(np.ptp(days[["low", "high"]].to_numpy())):
-        names[1]["at"] = names[0]["at"] + 0.1 * float(np.ptp(days[["low", "high"]].to_numpy()))
+    apart = CLOSEST_NAMES * float(np.ptp(days[["low", "high", "seen"]].to_numpy()))
+    if abs(names[0]["at"] - names[1]["at"]) < apart:
+        names[1]["at"] = names[0]["at"] + apart
     line = pd.DataFrame({"beds": [] if beds is None else [beds]})
     return {"check": days, "check_names": pd.DataFrame(names), "check_beds": line}

@@ -111,6 +111,13 @@ class Forecast:
         return growth_of_bed_days(self.stay_bands)[0]
 
     @property
+    def verdict(self) -> str:
+        """How do admissions and bed-days grow, and how far may that be off? One sentence."""
+        low, high = (wording.signed_percent(share) for share in self.growth_range)
+        beds = f"; bed-days {wording.signed_percent(self.bed_days_growth_per_year)}" if self.stay_bands else ""
+        return f"Admissions {wording.signed_percent(self.growth_per_year)} a year ({low} to {high}){beds}."
+
+    @property
     def per_year(self) -> tuple[float, float, float]:
         """How many come in the first year: low, central, high? Low and high hold 80 %; the days foreseen if fewer."""
         low, high = self.range_of(slice(0, YEAR_DAYS), 0.80)

@@ -204,9 +204,9 @@ def _verdict(result: Backtest) -> str:
     )
     return (
         f"{'Passed' if result.passed else 'Failed'}: trained only on earlier records, the {wording.percent(BAND)} band held "
-        f"{wording.percent(result.coverage_80)} of last year's days, {_found(result)}{_wide(result)}; its middle was "
-        f"{result.middle_error:.1f} beds off on an average day, the same week of the year before "
-        f"{result.same_week_error:.1f}, the average formula {result.average_formula_error:.1f}{full}."
+        f"{wording.percent(result.coverage_80)} of last year's days, {_found(result)}{_wide(result)}; it was "
+        f"{_nearer(result.score, result.same_week_error)} than the same week of the year before and "
+        f"{_nearer(result.score, result.average_formula_error)} than the average formula{full}."
     )
 
 

@@ -25,6 +25,12 @@ NAMES = {
 # AIC differences: Burnham & Anderson 2002, Model Selection and Multimodel Inference, section 2.6 (from memory)
 AS_GOOD, RULED_OUT = 2.0, 10.0
 CLEARLY_LONGER, FEWEST_IN_GROUP = 1.5, 0.05  # two groups worth telling apart; common practice, no source
+EXPLAINED = (
+    "The records' line is the product limit: patients still in count for what was seen of them. "
+    "AIC weighs how likely a curve makes the recorded stays against how many figures it needs; 10 behind is as good as "
+    "ruled out. Beds hang on the mean stay, which is the records' own; the curve's shape acts on waiting, on how late a "
+    "busy season is felt, and on patients who come together."
+)
 SHOWN_UNTIL = 0.01  # the picture ends where so few are still in
 PICTURE_POINTS = 240
 
@@ -62,9 +68,14 @@ class StayFamilies:
 
     def _said(self, family: str, behind: float) -> str:
         """Say what a difference means, and which family the plan draws from."""
-        limits = ((0.0, "fits best"), (AS_GOOD, "fits as well"), (RULED_OUT, "fits less well"))
+        limits = ((0.0, "fits best"), (AS_GOOD, "fits as well"), (RULED_OUT, "a little behind"))
         said = next((words for limit, words in limits if behind <= limit), "as good as ruled out")
         return f"{said}; in the plan" if family == self.planned.shape else said
+
+    @property
+    def explained(self) -> str:
+        """What is being compared, and what hangs on it?"""
+        return EXPLAINED
 
     @property
     def verdict(self) -> str:
@@ -80,7 +91,7 @@ class StayFamilies:
         if self.fit.family in ("lognormal", "gamma"):
             return f"{name.capitalize()} fits best."
         if behind <= RULED_OUT:
-            return f"{name.capitalize()} says as much as two groups of patients: the records hardly tell them apart."
+            return f"{name.capitalize()} does nearly as well as two groups of patients: the records hardly tell them apart."
         return (
             f"A mix of two curves fits better than {name}, but its parts are no two kinds of patient: they stay about "
             "as long, or one holds hardly anyone."

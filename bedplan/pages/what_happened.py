@@ -15,6 +15,7 @@ from bedplan.pages import controls, loaded
 
 if TYPE_CHECKING:
     from bedplan.data import WardDescription
+    from bedplan.data.forecasting import YearAhead
 
 
 def headline(seen: WardDescription) -> str:
@@ -28,17 +29,17 @@ def headline(seen: WardDescription) -> str:
     )
 
 
-def facts(seen: WardDescription) -> pd.DataFrame:
-    """Return what is asked about a ward, a row a figure."""
+def table(rows: dict[str, str]) -> None:
+    """Show figures, a row each, beside what they are."""
+    st.table(pd.DataFrame({"": rows.keys(), "In the records": rows.values()}).set_index(""))
+
+
+def presence(seen: WardDescription) -> dict[str, str]:
+    """Return how full the ward was and how quickly its beds turned over."""
     low, high = seen.variance_interval
-    long = {one.days: one for one in seen.long_stays}[21]
     rows = {
         "Patients at midnight, on average": f"{seen.midnight_mean:.1f}",
         "Patients at the day's peak, on average": f"{seen.daily_peak_mean:.1f}",
-        "Mean stay (for sizing)": wording.days(seen.mean_stay_days),
-        "Median stay (for description only)": wording.days(seen.median_stay_days),
-        "Stays over 21 days": f"{wording.percent(long.share_of_patients)} of patients, {wording.percent(long.share_of_bed_days)} of bed-days",
-        "Beds filled after day 21": f"{long.beds_after:.1f} on average",
         "Swing of the midnight count (variance ÷ mean)": f"{seen.variance_over_mean:.2f} ({low:.2f} to {high:.2f}); 1 = chance alone",
         "Bed-days of other wards' patients": f"{seen.outlier_bed_days:,.0f}",
     }
@@ -52,31 +53,55 @@ def facts(seen: WardDescription) -> pd.DataFrame:
             "Turnover interval": f"{24 * seen.turnover_interval_days:.0f} hours empty between two patients",
             "Throughput": f"{seen.throughput:.0f} patients a bed a year",
         }
-    return pd.DataFrame({"": rows.keys(), "In the records": rows.values()}).set_index("")
+    return rows
 
 
-def show(name: str) -> None:
-    """Show one ward as its records have it."""
-    seen = loaded.description(name)
-    st.header(wording.plain(headline(seen)), anchor=False)
+def staying(seen: WardDescription) -> dict[str, str]:
+    """Return how long patients stayed, and what the long stays took."""
+    long = {one.days: one for one in seen.long_stays}[21]
+    return {
+        "Mean stay (for sizing)": wording.days(seen.mean_stay_days),
+        "Median stay (for description only)": wording.days(seen.median_stay_days),
+        "Stays over 21 days": f"{wording.percent(long.share_of_patients)} of patients, {wording.percent(long.share_of_bed_days)} of bed-days",
+        "Beds filled after day 21": f"{long.beds_after:.1f} on average",
+    }
+
+
+def show_full(name: str, seen: WardDescription) -> None:
+    """Show when a ward was full, and how many patients were there."""
     if seen.full is not None:
-        st.markdown("**Hours in a hundred without a free bed**")
-        week = charts.week_data(seen.full.by_weekday_and_hour)
-        st.vega_lite_chart(charts.live(charts.WEEK, week), theme=None, width="stretch", alt=headline(seen))
-        months = ["–" if np.isnan(share) else wording.percent(float(share), 0) for share in seen.full.by_month]
-        st.table(pd.DataFrame([months], columns=list(wording.MONTHS_SHORT), index=["Full"]))
-        st.caption("Closed beds are not counted as beds.")
+        st.markdown("**Hours in a hundred without a free bed** (closed beds are not counted as beds)")
+        for spec, data, said in (
+            (charts.YEAR, charts.year_data(seen.full.by_month), "month by month"),
+            (charts.WEEK, charts.week_data(seen.full.by_weekday_and_hour), "by weekday and hour"),
+        ):
+            alt = f"{headline(seen)} Share of hours full {said}."
+            st.vega_lite_chart(charts.live(spec, data), theme=None, width="stretch", alt=alt)
     else:
         st.info("Load a file of staffed beds on the page Records to see when this ward was full.")
-    st.table(facts(seen))
+    table(presence(seen))
     census = loaded.files().census
     if census is not None and name in census.wards:
         st.markdown(wording.plain(check_census(loaded.records(), census, name).sentence))
 
 
+def show_stays(name: str, seen: WardDescription) -> None:
+    """Show how long patients stay, and which curve their stays follow."""
+    found = loaded.stays(name)
+    st.markdown(f"**Mean stay {wording.days(seen.mean_stay_days)}. {wording.plain(found.verdict)}**")
+    data = charts.stays_data(found.shares(), found.planned.shape)
+    st.vega_lite_chart(charts.live(charts.STAYS, data), theme=None, width="stretch", alt=found.in_the_plan)
+    st.markdown(wording.plain(found.in_the_plan))
+    table(staying(seen))
+    st.markdown("**Which curve do stays follow?**")
+    columns = ("Stays as", "Behind the best (AIC)", "In words")
+    rows = [(family.capitalize(), f"{behind:.0f}", said) for family, behind, said in found.rows]
+    st.table(pd.DataFrame(rows, columns=columns).set_index(columns[0]))
+    st.caption(wording.plain(found.explained))
+
+
 def show_check(name: str) -> None:
     """Show whether the earlier records would have told the last year."""
-    st.subheader("Would the earlier records have told the last year?", anchor=False)
     found = loaded.checked(name)
     if not found.checked:
         st.info(wording.plain(found.verdict))
@@ -85,43 +110,63 @@ def show_check(name: str) -> None:
     days = found.days.rename(columns={"date": "day", "present": "seen"})
     data = charts.check_data(days[["day", "seen", "middle", "low", "high"]], None)
     st.vega_lite_chart(charts.live(charts.CHECK, data), theme=None, width="stretch", alt=found.verdict)
-    st.caption(f"Patients present at {found.clock}; the band should hold 8 days in 10, more where counts are small.")
+    columns = ("", "Last year", "Held against")
+    st.table(pd.DataFrame(found.figures, columns=columns).set_index(""))
+    st.markdown(f"**{wording.plain(found.promise)}**")
+    kept = charts.live(charts.CALIBRATION, charts.calibration_data(found.kept))
+    st.vega_lite_chart(kept, theme=None, width="content", alt=found.promise)
+    st.caption(f"Each bar allows for chance 19 times in 20: of {len(found.kept)} bands, one outside may be chance.")
+    with st.expander("What the check rests on"):
+        for note in found.notes:
+            st.markdown(f"- {wording.plain(note)}")
 
 
 def show_ahead(name: str) -> None:
     """Show the next ten years, should it go on as before, with ranges that widen."""
-    st.subheader("If it goes on as before", anchor=False)
     try:
         ahead = loaded.forecast(name)
     except BedplanError as error:
         st.info(wording.plain(str(error)))
         return
-    rows = [
-        {
-            "Year from": f"{year.first_day.day} {year.first_day:%B %Y}",
-            "Admissions": f"{year.admissions:,.0f}",
-            "8 in 10 between": f"{year.admissions_80[0]:,.0f} and {year.admissions_80[1]:,.0f}",
-            "Beds in use on average": f"{year.beds_in_use:,.1f}",
-            "8 in 10 between ": f"{year.bed_days_80[0] / 365:,.1f} and {year.bed_days_80[1] / 365:,.1f}",
-        }
-        for year in ahead.years
-    ]
-    st.table(pd.DataFrame(rows).set_index("Year from"))
-    low, high = ahead.growth_range
-    st.markdown(
-        f"Growth of admissions {wording.signed_percent(ahead.growth_per_year)} a year "
-        f"({wording.signed_percent(low)} to {wording.signed_percent(high)}); of bed-days "
-        f"{wording.signed_percent(ahead.bed_days_growth_per_year)}. {wording.plain(ahead.why)}"
-    )
+    st.markdown(f"**{wording.plain(ahead.verdict)}**")
+    data = charts.fan_data(loaded.past(name), ahead.years)
+    st.vega_lite_chart(charts.live(charts.FAN, data), theme=None, width="stretch", alt=ahead.verdict)
+    st.markdown(wording.plain(ahead.why))
     for note in ahead.notes:
         st.markdown(f"- {wording.plain(note)}")
+    with st.expander("Year by year"):
+        st.table(years_ahead(ahead.years))
 
 
+def years_ahead(years: tuple[YearAhead, ...]) -> pd.DataFrame:
+    """Return a row a year: admissions and beds in use, each with the range that holds 8 in 10."""
+    rows = [
+        {
+            "Year from": f"{year.first_day.day} {year.first_day:%b %Y}",
+            "Admissions": f"{year.admissions:,.0f}",
+            "8 in 10 between": f"{year.admissions_80[0]:,.0f} and {year.admissions_80[1]:,.0f}",
+            "Beds in use": f"{year.beds_in_use:,.1f}",
+            "8 in 10 between ": f"{year.bed_days_80[0] / 365:,.1f} and {year.bed_days_80[1] / 365:,.1f}",
+        }
+        for year in years
+    ]
+    return pd.DataFrame(rows).set_index("Year from")
+
+
+SHOWN = {
+    "When full": show_full,
+    "Length of stay": show_stays,
+    "Last year checked": lambda name, _: show_check(name),
+    "Years ahead": lambda name, _: show_ahead(name),
+}
 controls.show_origin()
 ward_name = controls.choose_ward()
 try:
-    show(ward_name)
-    show_check(ward_name)
-    show_ahead(ward_name)
+    described = loaded.description(ward_name)
+    st.header(wording.plain(headline(described)), anchor=False)
+    for tab, show in zip(st.tabs(list(SHOWN), key="happened", on_change="rerun"), SHOWN.values(), strict=True):
+        if tab.open:
+            with tab:
+                show(ward_name, described)
 except BedplanError as error:
     st.error(wording.plain(str(error)))

@@ -134,6 +134,9 @@ def test_what_the_check_rests_on() -> None:
     )
     assert rows["… the average formula"][0] == "1.0"
     assert Backtest("Heron", checked=False).figures == ()
+    assert (
+        "50\u00a0% nearer than the same week of the year before and 70\u00a0% further off than" in made_check().verdict
+    )
 
 
 @pytest.mark.parametrize(

@@ -142,7 +142,7 @@ LONE = LengthOfStay.two_streams(0.02, LengthOfStay(4.0, 0.5), LengthOfStay(40.0,
     [
         (judged("lognormal", (0.0, 40.0, 4.0)), "One lognormal curve fits best."),
         (judged("lognormal", (40.0, 0.0, 4.0)), "One gamma curve fits best."),
-        (judged("lognormal", (9.0, 40.0, 0.0), APART), "says as much as two groups"),
+        (judged("lognormal", (9.0, 40.0, 0.0), APART), "does nearly as well as two groups"),
         (
             judged("lognormal", (30.0, 40.0, 0.0), APART),
             "80\u00a0% stay 3.0 days on average, 20\u00a0% stay 12.0 days.",
@@ -158,11 +158,11 @@ def test_what_is_said(answer: StayFamilies, said: str) -> None:
 
 
 def test_how_far_behind_is_said() -> None:
-    """0 is best, up to 2 as good, up to 10 less good, beyond that ruled out; the plan's own family is marked."""
+    """0 is best, up to 2 as good, up to 10 a little behind, beyond that ruled out; the plan's own family is marked."""
     rows = judged("gamma", (0.0, 1.9, 10.5)).rows
 
     assert [words for _, _, words in rows] == ["fits best", "fits as well; in the plan", "as good as ruled out"]
-    assert judged("gamma", (0.0, 9.9, 30.0)).rows[1][2] == "fits less well; in the plan"
+    assert judged("gamma", (0.0, 9.9, 30.0)).rows[1][2] == "a little behind; in the plan"
 
 
 def test_how_far_the_plan_is_off() -> None:

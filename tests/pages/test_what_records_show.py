@@ -5,11 +5,16 @@ from __future__ import annotations
 import re
 from typing import TYPE_CHECKING
 
+import pyarrow as pa
 import pytest
+
+from bedplan.data import backtest, read_capacity, read_records, stay_families
 
 if TYPE_CHECKING:
     from collections.abc import Callable
+    from pathlib import Path
 
+    import pandas as pd
     from streamlit.testing.v1 import AppTest
 
 BOTH = ("what_happened", "hidden")
@@ -36,6 +41,79 @@ def test_the_ward_in_hand(open_app: Callable[..., AppTest], page: str) -> None:
     assert not app.error
     assert "Teal" in app.header[0].value
     assert go(app, "one_ward").header[0].value.startswith("Teal ")
+
+
+def opened(app: AppTest, tab: str, ward: str = "Kestrel") -> AppTest:
+    """Turn to a tab of What happened, about a ward."""
+    go(app, "what_happened").selectbox(key="ward_looked_at").set_value(ward)
+    app.session_state["happened"] = tab
+    app.run()
+    assert not app.exception
+    assert not app.error
+    return app
+
+
+def drawn(app: AppTest, name: str) -> pd.DataFrame:
+    """Return the rows of a picture's dataset."""
+    found = [one.data.data for chart in app.get("vega_lite_chart") for one in chart.proto.datasets if one.name == name]
+    return pa.ipc.open_stream(found[0]).read_pandas()
+
+
+def test_how_long_patients_stay(open_app: Callable[..., AppTest], demo_data: Path) -> None:
+    """The tab says which curve fits best, how far behind the others are, and that the mean is the records' own."""
+    app = opened(open_app(), "Length of stay", "Plover")
+    found = stay_families(read_records(demo_data / "stays.csv"), "Plover")
+    said = " ".join(one.value for one in app.markdown).replace("\\", "")
+    families = next(table.value for table in app.table if "Behind the best (AIC)" in table.value)
+
+    assert found.verdict in said
+    assert f"the records' own mean, {found.curve.mean_days:.1f} days" in said
+    assert families.index.tolist() == [family.capitalize() for family, _, _ in found.rows]
+    assert families["Behind the best (AIC)"].tolist() == [f"{behind:.0f}" for _, behind, _ in found.rows]
+    lines = drawn(app, "stays")
+    assert lines.loc[lines["line"] == "measured", "share"].tolist() == found.shares()["measured"].tolist()
+    assert any(found.explained == one.value.replace("\\", "") for one in app.caption)
+
+
+@pytest.mark.parametrize("ward", ["Kestrel", "Teal"])
+def test_last_year_checked(open_app: Callable[..., AppTest], demo_data: Path, ward: str) -> None:
+    """The tab shows the verdict, both bands with their ranges, the scores, and how each width of band kept its promise."""
+    app = opened(open_app(), "Last year checked", ward)
+    found = backtest(read_records(demo_data / "stays.csv"), ward, capacity=read_capacity(demo_data / "capacity.csv"))
+    said = " ".join(one.value for one in app.markdown).replace("\\", "")
+    figures = next(table.value for table in app.table if "Held against" in table.value)
+
+    assert found.verdict in said
+    assert found.promise in said
+    assert [(what, *row) for what, row in zip(figures.index, figures.to_numpy(), strict=True)] == list(found.figures)
+    kept = drawn(app, "kept")
+    assert list(zip(kept["promised"], kept["held"], strict=True)) == list(found.calibration)
+    assert list(zip(kept["low"], kept["high"], strict=True)) == list(found.calibration_ranges)
+
+
+def test_years_ahead(open_app: Callable[..., AppTest]) -> None:
+    """The tab draws three recorded years and ten to come, says the method and what it beat, and keeps the table below."""
+    app = opened(open_app(), "Years ahead")
+    table = app.expander[0].table[0].value
+
+    assert len(drawn(app, "past")) == 3
+    assert len(drawn(app, "ahead")) == 11
+    assert len(table) == 10
+    assert f"{drawn(app, 'ahead')['beds'].iloc[1]:,.1f}" == table["Beds in use"].iloc[0]
+    assert any("less than the same week last year" in one.value for one in app.markdown)
+    assert any("Admissions are foreseen" in one.value for one in app.markdown)
+
+
+@pytest.mark.parametrize("tab", ["When full", "Length of stay", "Last year checked", "Years ahead"])
+def test_every_tab_opens_on_a_small_file(open_app: Callable[..., AppTest], stays_csv: bytes, tab: str) -> None:
+    """A file of one year and no beds opens every tab; what it can't tell is said."""
+    app = go(open_app(), "records")
+    app.file_uploader(key="stays_file").upload("stays.csv", stays_csv, "text/csv").run()
+    opened(app, tab, "West")
+
+    assert len(app.get("vega_lite_chart")) == {"When full": 0, "Last year checked": 0}.get(tab, 1)
+    if tab == "Last year checked":
+        assert any("two years" in one.value for one in app.info)
 
 
 def test_planning_on_hidden_demand(open_app: Callable[..., AppTest]) -> None:
