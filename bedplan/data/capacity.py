@@ -3,17 +3,21 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
 import pyarrow as pa
 
-from bedplan.data.columns import TELLTALES, without_formula, words
+from bedplan.data.columns import TELLTALES, without_formula
 from bedplan.data.dateorder import read_ordered
-from bedplan.data.dates import MISSING, UNREADABLE
+from bedplan.data.dates import BLANK_WORDS, MISSING, UNREADABLE
+from bedplan.data.headings import CAPACITY_HEADINGS
+from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
+from bedplan.data.periods import merged, periods_that_count
 from bedplan.data.reading import read_table
+from bedplan.data.report import SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.table import as_times
 from bedplan.errors import UnreadableRecords
@@ -21,17 +25,11 @@ from bedplan.errors import UnreadableRecords
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
+    from numpy.typing import NDArray
+
+    from bedplan.data.records import Records
     from bedplan.data.texttable import TextTable
 
-CAPACITY_HEADINGS: dict[str, tuple[str, ...]] = {
-    "ward": words("ward wardcode wardname location unit"),
-    "from": words("from start startdate datefrom fromdate validfrom date since"),
-    "to": words("to end enddate dateto todate validto until"),
-    "funded": words("fundedbeds funded established establishment budgetedbeds beds"),
-    "staffed": words("staffedbeds staffed openbeds available bedsavailable availablebeds"),
-    "closed": words("closedbeds closed bedsclosed"),
-    "reason": words("reason comment note notes why"),
-}
 OPEN_ENDS = ("1990-01-01", "2100-12-31")  # of a period without a first or a last day
 
 
@@ -39,7 +37,9 @@ OPEN_ENDS = ("1990-01-01", "2100-12-31")  # of a period without a first or a las
 class Capacity:
     """The beds of each ward through time. ``table``: ward, from, to (last day, included), funded, staffed, closed.
 
-    Open beds = staffed beds that are not closed. Days no row covers take the nearest earlier row, else the first.
+    Open beds = staffed beds that are not closed, none where more are closed than staffed. Where periods overlap, the
+    one that starts later counts, of two that start together the shorter. Days no period covers take the one before,
+    else the first. ``unknown_wards``: those without ward stays, once :meth:`linked_to` was asked.
 
     Checked by: tests/data/test_capacity.py
     """
@@ -48,6 +48,8 @@ class Capacity:
     table: pd.DataFrame
     wards: tuple[str, ...]
     notes: tuple[str, ...] = ()
+    report: IntakeReport = field(default_factory=lambda: IntakeReport(0, 0, 0, 0))
+    unknown_wards: tuple[str, ...] = ()
 
     def _rows(self, ward: str) -> pd.DataFrame:
         """Return the rows of one ward, oldest first."""
@@ -57,39 +59,60 @@ class Capacity:
         return rows
 
     def beds_today(self, ward: str) -> int:
-        """How many staffed beds does this ward have by its latest row?"""
-        return int(self._rows(ward)["staffed"].iloc[-1])
+        """How many staffed beds does this ward have in its latest period?"""
+        rows = self._rows(ward)
+        return int(rows["staffed"].iloc[periods_that_count(rows)[1][-1]])
 
     def funded_today(self, ward: str) -> int:
-        """How many funded beds does this ward have by its latest row?"""
-        return int(self._rows(ward)["funded"].iloc[-1])
+        """How many funded beds does this ward have in its latest period?"""
+        rows = self._rows(ward)
+        return int(rows["funded"].iloc[periods_that_count(rows)[1][-1]])
 
     def open_beds_by_day(self, ward: str, days: pd.DatetimeIndex | None = None) -> pd.Series:
         """How many beds could take a patient on each day? Staffed less closed, whole numbers, by date."""
         rows = self._rows(ward)
         if days is None:
             days = pd.date_range(rows["from"].min(), rows["to"].max(), freq="D")
-        starts = rows["from"].to_numpy().astype("datetime64[s]")
+        starts, counts = periods_that_count(rows)
         place = np.searchsorted(starts, days.to_numpy().astype("datetime64[s]"), side="right") - 1
-        beds = (rows["staffed"] - rows["closed"]).to_numpy()
-        return pd.Series(beds[np.maximum(place, 0)], index=days, name=ward)
+        beds = (rows["staffed"] - rows["closed"]).clip(lower=0).to_numpy()
+        return pd.Series(beds[counts[np.maximum(place, 0)]], index=days, name=ward)
 
     def closures(self, ward: str) -> pd.DataFrame:
         """When were beds closed, how many, and why?"""
         rows = self._rows(ward)
         return rows[rows["closed"] > 0].reset_index(drop=True)
 
+    def linked_to(self, records: Records) -> Capacity:
+        """What does this file say of the wards of these stays? Names as the stays have them, by the planner's word.
+
+        Wards that were merged to one, and had beds side by side, have the sum of their beds.
+        """
+        names = names_in_stays(self.wards, records)
+        wards = tuple(sorted(set(names.values())))
+        unknown = without_stays(wards, records)
+        if all(old == new for old, new in names.items()):
+            return replace(self, unknown_wards=unknown)
+        return replace(self, table=merged(self.table, names), wards=wards, unknown_wards=unknown)
+
 
 def beds_in_text(text: str | None) -> tuple[int, int] | None:
     """How many beds does a cell such as ``24 (+2)`` name? (regular, extra); *closed* = 0; None where it says nothing.
+
+    ``24/2`` is 24 and 2 more; ``20/24`` may be 20 of 24, so it says nothing: without a plus, extra beds are at most
+    half of the regular ones (common practice, no source).
 
     Checked by: tests/data/test_capacity.py
     """
     cell = (text or "").strip().lower()
     if cell in ("closed", "shut"):
         return 0, 0
-    fits = re.fullmatch(r"(\d{1,5})(?:[.,]0+)?(?:\s*[(/+]+\s*\+?(\d{1,4})\)?)?", cell)
-    return (int(fits[1]), int(fits[2] or 0)) if fits else None
+    fits = re.fullmatch(r"(\d{1,5})(?:[.,]0+)?(?:\s*([(/+]+\s*\+?)(\d{1,4})\)?)?", cell, re.ASCII)
+    if fits is None:
+        return None
+    regular, extra = int(fits[1]), int(fits[3] or 0)
+    unclear = extra > regular / 2 and "+" not in fits[2]
+    return None if unclear else (regular, extra)
 
 
 def read_capacity(
@@ -103,6 +126,7 @@ def read_capacity(
 
     Columns ward, from, to, funded_beds, staffed_beds, closed_beds, reason; only ward and one of the bed counts are
     needed. Without staffed beds the funded ones stand in, and a note says so. ``24 (+2)`` is 24 funded and 26 staffed.
+    ``columns`` and ``date_order`` as in ``read_records``.
 
     Raises:
         UnreadableRecords: no ward or no bed column, cells that name no number of beds, or dates whose order somebody must
@@ -120,42 +144,92 @@ def read_capacity(
         raise UnreadableRecords(
             [f"{file.name} lacks a column of {lacks}: it should have a row for each ward and period, with both."]
         )
-    frame, notes = _frame(text, file.name, date_order)
-    return Capacity(file.name, frame, tuple(sorted(set(frame["ward"]))), tuple(notes))
+    return _capacity(text, file.name, date_order)
 
 
-def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, list[str]]:
-    """Build the table of periods, one ward after another, oldest first."""
-    notes: list[str] = list(text.notes)
-    wards = [without_formula(ward or "") for ward in text.columns["ward"].to_pylist()]
+def _capacity(text: TextTable, name: str, date_order: str | None) -> Capacity:
+    """Keep the rows that say something, and account for the others."""
+    frame, reason = _frame(text, name, date_order)
+    kept = frame[reason == ""]
+    counts = reason[reason != ""].value_counts()
+    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
+    if kept.empty:
+        told = f"{name} names no ward with a number of beds: check the columns ward and staffed_beds."
+        raise UnreadableRecords([told, why_none(name, findings, "check these columns")] if findings else [told])
+    if text.misfits:
+        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
+    kept = kept.astype({"funded": int, "staffed": int, "closed": int})
+    kept = kept.sort_values(["ward", "from", "to"], ascending=[True, True, False], kind="stable").reset_index(drop=True)
+    notes = (*text.notes, *_notes(text, frame[reason == ""], kept))
+    report = IntakeReport(
+        rows_in=len(frame) + text.misfits,
+        used=len(kept),
+        repaired=0,
+        set_aside=int(counts.sum()) + text.misfits,
+        findings=tuple(findings),
+        dropped_columns=text.dropped,
+        notes=notes,
+    )
+    table = kept.drop(columns="funded_told")
+    return Capacity(name, table, tuple(sorted(set(table["ward"]))), notes, report)
+
+
+def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series]:
+    """Return every row, and why it can't be used ("" = it can)."""
+    wards = spelled_alike([without_formula(ward) for ward in text.strings("ward")])
     counts = {key: _counts(text.columns.get(key), text.rows) for key in ("funded", "staffed", "closed")}
     problems = _bad_cells(text, counts, name)
     if problems:
         raise UnreadableRecords(problems)
     regular = counts["staffed"] if "staffed" in text.columns else counts["funded"]
-    staffed = [cell and cell[0] + cell[1] for cell in regular]
-    funded = [cell and cell[0] for cell in (counts["funded"] if "funded" in text.columns else regular)]
-    if "staffed" not in text.columns:
-        notes.append("The file names funded beds only; they are taken as staffed.")
+    funded = counts["funded"] if "funded" in text.columns else regular
     since, until = _dates(text, name, date_order)
     frame = pd.DataFrame(
         {
-            "ward": wards,
+            "ward": pd.Series(wards, dtype=object),
             "from": since,
             "to": until,
-            "funded": funded,
-            "staffed": staffed,
+            "funded": [(one or other or (0, 0))[0] for one, other in zip(funded, regular, strict=True)],
+            "staffed": [sum(cell) if cell else 0 for cell in regular],
             "closed": [cell[0] if cell else 0 for cell in counts["closed"]],
             "reason": _reasons(text),
+            "funded_told": [cell is not None for cell in funded],
         }
     )
-    frame = frame[(frame["ward"] != "") & frame["staffed"].notna()]
-    if frame.empty:
-        raise UnreadableRecords(
-            [f"{name} names no ward with a number of beds: check the columns ward and staffed_beds."]
+    reason = pd.Series("", index=frame.index, dtype=object)
+    reason[frame.duplicated(keep="first")] = "The same row twice"
+    reason[frame["to"] < frame["from"]] = "The period ends before it starts"
+    reason[[cell is None for cell in regular]] = "No number of beds is named"
+    reason[[is_no_ward(ward, text.headings["ward"]) for ward in wards]] = "No ward is named, or the row is a total"
+    return frame, reason
+
+
+def _notes(text: TextTable, kept: pd.DataFrame, table: pd.DataFrame) -> list[str]:
+    """Return what was taken for granted, and which wards' periods overlap."""
+    notes = []
+    if "staffed" not in text.columns:
+        notes.append("The file names funded beds only; they are taken as staffed.")
+    untold = int((~kept["funded_told"]).sum())
+    if untold:
+        notes.append(f"{_rows_say(untold)} no funded beds: the staffed ones are taken as funded there.")
+    shut = int((kept["closed"] > kept["staffed"]).sum())
+    if shut:
+        notes.append(
+            f"{_rows_say(shut)} more closed beds than staffed ones: no bed counts as open there. If the staffed beds are "
+            "already without the closed ones, leave that column out."
         )
-    frame = frame.astype({"funded": int, "staffed": int, "closed": int})
-    return frame.sort_values(["ward", "from"], kind="stable").reset_index(drop=True), notes
+    same = table["ward"].to_numpy()[1:] == table["ward"].to_numpy()[:-1]
+    reach = table.groupby("ward")["to"].cummax().to_numpy()
+    overlapping = sorted(set(table["ward"].to_numpy()[1:][same & (table["from"].to_numpy()[1:] <= reach[:-1])]))
+    if overlapping:
+        told = ", ".join(overlapping[:5]) + (" and others" if len(overlapping) > 5 else "")
+        notes.append(f"Periods overlap on {told}: on such days the row that starts later counts.")
+    return notes
+
+
+def _rows_say(rows: int) -> str:
+    """Begin a sentence about so many rows."""
+    return "1 row names" if rows == 1 else f"{rows:,} rows name"
 
 
 def _counts(column: pa.ChunkedArray | None, rows: int) -> list[tuple[int, int] | None]:
@@ -167,14 +241,12 @@ def _bad_cells(text: TextTable, counts: Mapping[str, list[tuple[int, int] | None
     """Name the cells that hold something, but no number of beds."""
     problems = []
     for key, cells in counts.items():
-        if key not in text.columns:
-            continue
-        written = text.columns[key].to_pylist()
-        for row, (cell, given) in enumerate(zip(cells, written, strict=True)):
-            if cell is None and given and given.strip().lower() not in ("n/a", "na", "-", ""):
-                problems.append(
-                    f"“{given[:20]}” in row {row + 1} of {name} is no number of {key} beds: write a whole number."
+        for row, (cell, given) in enumerate(zip(cells, text.strings(key), strict=True)):
+            if cell is None and given.lower() not in BLANK_WORDS:
+                advice = (
+                    "write one number, or 20 (+4) for extra beds" if re.search(r"\d", given) else "write a whole number"
                 )
+                problems.append(f"“{given[:20]}” in row {row + 1} of {name} is no number of {key} beds: {advice}.")
     return problems[:10]
 
 
@@ -182,18 +254,21 @@ def _dates(text: TextTable, name: str, date_order: str | None) -> list[np.ndarra
     """Return first and last days, blanks open-ended; both columns are written in one order of day and month."""
     blank = pa.chunked_array([pa.nulls(text.rows, pa.string())])
     columns = [text.columns.get(key, blank) for key in ("from", "to")]
-    together = pa.chunked_array([chunk for column in columns for chunk in column.chunks], pa.string())
-    both = read_ordered(together, name, date_order)
-    if (both == UNREADABLE).any():
-        row = int(np.flatnonzero(both == UNREADABLE)[0])
-        written = together[row].as_py()[:20]
-        raise UnreadableRecords([f"“{written}” in row {row % text.rows + 1} of {name} is no date: write 2024-03-31."])
-    parts = zip(np.split(both, 2), OPEN_ENDS, strict=True)
-    return [np.where(part == MISSING, np.datetime64(end, "s"), as_times(part)) for part, end in parts]
+    both = read_ordered(name, date_order, *columns)
+    for column, seconds in zip(columns, both, strict=True):
+        if (seconds == UNREADABLE).any():
+            row = int(np.flatnonzero(seconds == UNREADABLE)[0])
+            written = str(column[row].as_py())[:20]
+            raise UnreadableRecords([f"“{written}” in row {row + 1} of {name} is no date: write 2024-03-31."])
+    parts = zip(both, OPEN_ENDS, strict=True)
+    return [np.where(part == MISSING, np.datetime64(end, "s"), _day_of(part)) for part, end in parts]
+
+
+def _day_of(seconds: NDArray[np.int64]) -> NDArray[np.datetime64]:
+    """Return the midnight at which each moment's day begins."""
+    return as_times(seconds).astype("datetime64[D]").astype("datetime64[s]")
 
 
 def _reasons(text: TextTable) -> list[str]:
     """Return why beds differ, tidy."""
-    if "reason" not in text.columns:
-        return [""] * text.rows
-    return [without_formula(reason or "") for reason in text.columns["reason"].to_pylist()]
+    return [without_formula(reason) for reason in text.strings("reason")]

@@ -2,49 +2,49 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import re
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
 
 from bedplan.data.capacity import beds_in_text
-from bedplan.data.columns import TELLTALES, plain, without_formula, words
-from bedplan.data.dateorder import read_ordered
-from bedplan.data.dates import DAY_SECONDS, UNREADABLE
-from bedplan.data.logs import WARD_WORDS
+from bedplan.data.columns import TELLTALES, without_formula
+from bedplan.data.headings import CENSUS_HEADINGS
+from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
+from bedplan.data.moments import when
 from bedplan.data.reading import read_table
 from bedplan.data.report import REPAIRED, SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
-from bedplan.data.table import TOTAL_WORDS, as_times
+from bedplan.data.table import as_times
+from bedplan.data.wardlinks import bare_name
 from bedplan.data.wide import read_wide
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from bedplan.data.records import Records
     from bedplan.data.texttable import TextTable
 
-CENSUS_HEADINGS: dict[str, tuple[str, ...]] = {
-    "date": words("date day censusdate datetime snapshot snapshottime when"),
-    "time": words("time censustime clock hour"),
-    "ward": WARD_WORDS,
-    "available": words("bedsavailable available beds availablebeds openbeds staffedbeds bedsopen staffed"),
-    "occupied": words("bedsoccupied occupied occupiedbeds patients census inpatients bedsinuse inuse"),
-    "closed": words("bedsclosed closed closedbeds"),
-}
 CANNOT = (
     "A census shows how many patients were in, not how long each stayed: the length of stay can't be found from it.",
     "It shows fixed times only: peaks between them, and how many came and went, stay hidden.",
 )
 BUSY = 5.0  # patients on average, below which an empty ward is nothing odd
+DECIMALS = re.compile(r"\d{1,5}[.,]\d{1,4}", re.ASCII)
+TWO_NUMBERS = re.compile(r"\d+ ?[/(] ?\d+\)?", re.ASCII)
 RARE = 0.05  # zeros expected by chance in the whole file, below which a zero is taken for a missing figure
 
 
 @dataclass(frozen=True)
 class Census:
-    """Patients present at stated times. ``table``: time, ward, available, extra, occupied, one row a ward and time.
+    """Patients present at stated times. ``table``: time, ward, available, extra, closed, occupied, a row a ward and time.
 
-    ``over_full`` counts rows with more patients than beds: they are real and kept. ``cannot`` says what such a file
-    can't answer.
+    ``available`` is −1 where no beds are told; it is taken to be without the ``closed`` beds. ``over_full`` counts rows
+    with more patients than beds: they are real and kept. ``cannot`` says what such a file can't answer.
+    ``unknown_wards``: those without ward stays, once :meth:`linked_to` was asked.
 
     Checked by: tests/data/test_census.py
     """
@@ -55,6 +55,7 @@ class Census:
     report: IntakeReport
     over_full: int
     cannot: tuple[str, ...] = CANNOT
+    unknown_wards: tuple[str, ...] = ()
 
     def occupied(self, ward: str, clock: str = "00:00") -> pd.Series:
         """How many patients were on this ward each day at this time? By date; days without a count are left out.
@@ -83,24 +84,53 @@ class Census:
         months = counts.groupby(counts.index.month).mean()
         return months / months.mean()
 
+    def linked_to(self, records: Records) -> Census:
+        """What does this file say of the wards of these stays? Names as the stays have them, by the planner's word.
+
+        Wards that became one have the sum of their counts.
+        """
+        names = names_in_stays(self.wards, records)
+        wards = tuple(sorted(set(names.values())))
+        unknown = without_stays(wards, records)
+        if all(old == new for old, new in names.items()):
+            return replace(self, unknown_wards=unknown)
+        return replace(self, table=_added(self.table, names), wards=wards, unknown_wards=unknown)
+
+
+def _added(table: pd.DataFrame, names: Mapping[str, str]) -> pd.DataFrame:
+    """Return the counts under other names, those of wards that get one name added; one ward written two ways counts once."""
+    renamed = table.assign(ward=table["ward"].map(names), bare=table["ward"].map(bare_name))
+    once = renamed.drop_duplicates(["time", "ward", "bare"], keep="last")
+    groups = once.drop(columns="bare").groupby(["time", "ward"], sort=True)
+    summed = groups.sum()
+    summed["available"] = np.where(groups["available"].min() < 0, -1, summed["available"])
+    return summed.reset_index()[list(table.columns)]
+
 
 def read_census(
-    source: FileLike, *, name: str | None = None, date_order: str | None = None, zeros_are_real: bool = False
+    source: FileLike,
+    *,
+    name: str | None = None,
+    columns: Mapping[str, str] | None = None,
+    date_order: str | None = None,
+    zeros_are_real: bool = False,
 ) -> Census:
     """How many patients were on each ward at the stated times?
 
-    Long tables have a row for each time and ward; wide ones a column for each ward. A 0 in a ward that is otherwise
-    busy is set aside as missing unless ``zeros_are_real``; more patients than beds is kept, because it happens.
+    Long tables have a row for each time and ward; wide ones a column for each ward, or several under its name. A 0 in
+    a ward that is otherwise busy is set aside as missing unless ``zeros_are_real``; more patients than beds is kept,
+    because it happens. ``columns`` and ``date_order`` as in ``read_records``.
 
     Raises:
-        UnreadableRecords: no date, no counts, or nothing that can be used.
+        UnreadableRecords: no date, no counts, nothing that can be used, or dates whose order somebody must say (the
+            question is in ``.question``).
 
     Checked by: tests/data/test_census.py
     """
     file = open_source(source, name)
-    text = read_table(file, CENSUS_HEADINGS)
-    if "date" in text.columns and not {"ward", "occupied"} <= set(text.columns):
-        text = read_wide(file, CENSUS_HEADINGS)
+    text = read_table(file, CENSUS_HEADINGS, columns)
+    if not {"date", "ward", "occupied"} <= set(text.columns):
+        text = read_wide(file, CENSUS_HEADINGS, columns) or text
     missing = [key for key in ("date", "ward", "occupied") if key not in text.columns]
     if missing:
         text.refuse_kinds(file.name, "a census", *(kind for kind in TELLTALES if kind != "a census"))
@@ -141,47 +171,70 @@ def _census(text: TextTable, name: str, date_order: str | None, zeros_are_real: 
         set_aside=int(counts.sum()) + text.misfits,
         findings=tuple(findings),
         dropped_columns=text.dropped,
-        notes=text.notes,
+        notes=(*text.notes, *_notes(kept)),
     )
     beds = kept["available"] + kept["extra"]
     over_full = int(((kept["occupied"] > beds) & (kept["available"] >= 0)).sum())
-    table = kept[["time", "ward", "available", "extra", "occupied"]]
+    table = kept[["time", "ward", "available", "extra", "closed", "occupied"]]
     return Census(name, table, tuple(sorted(set(table["ward"]))), report, over_full)
 
 
 def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series]:
     """Return every row, and why it can't be used ("" = it can). ``available`` −1 = not told."""
-    moment = read_ordered(text.columns["date"], name, date_order)
-    clock = [_minutes(value) for value in text.strings("time")]
-    moment = np.where(moment > UNREADABLE, moment + 60 * np.array(clock, dtype=np.int64), moment)
-    wards = pd.Series([without_formula(value) for value in text.strings("ward")], dtype=object)
-    occupied = [beds_in_text(value) for value in text.strings("occupied")]
+    (moment,), clock_unread = when(text, name, date_order)
+    wards = spelled_alike([without_formula(value) for value in text.strings("ward")])
+    occupied = [patients_in_text(value) for value in text.strings("occupied")]
     available = [beds_in_text(value) for value in text.strings("available")]
+    closed = [beds_in_text(value) for value in text.strings("closed")]
+    patients = np.array([cell or 0.0 for cell in occupied])
     frame = pd.DataFrame(
         {
             "time": as_times(moment),
-            "ward": wards,
+            "ward": pd.Series(wards, dtype=object),
             "available": [cell[0] if cell else -1 for cell in available],
             "extra": [cell[1] if cell else 0 for cell in available],
-            "occupied": [sum(cell) if cell else 0 for cell in occupied],
-            "shut": [value.strip().lower() in ("closed", "shut", "0") for value in text.strings("available")],
+            "closed": [cell[0] if cell else 0 for cell in closed],
+            "occupied": patients if (patients % 1).any() else patients.astype(np.int64),
+            "shut": [value.lower() in ("closed", "shut", "0") for value in text.strings("available")],
         }
     )
     reason = pd.Series("", index=frame.index, dtype=object)
     reason[[cell is None for cell in occupied]] = "The number of patients is missing or can't be read"
+    two = [
+        cell is None and TWO_NUMBERS.fullmatch(value) is not None
+        for cell, value in zip(occupied, text.strings("occupied"), strict=True)
+    ]
+    reason[two] = "Two numbers stand for the patients, as in 20/24: which of them is meant can't be told"
+    reason[clock_unread] = "The time of day can't be read"
     reason[frame["time"].isna()] = "The date is missing or can't be read"
-    total = [ward == "" or plain(ward).startswith(tuple(plain(word) for word in TOTAL_WORDS)) for ward in wards]
-    reason[total] = "No ward is named, or the row is a total"
+    reason[[is_no_ward(ward, text.headings.get("ward", "ward")) for ward in wards]] = (
+        "No ward is named, or the row is a total"
+    )
     return frame, reason
 
 
-def _minutes(clock: str) -> int:
-    """Return minutes after midnight of a census time; 0 where none is written."""
-    parts = clock.replace(".", ":").split(":")
-    whole = [int(part) for part in parts[:2] if part.strip().isdigit()]
-    if len(whole) == 1 and whole[0] > 23:
-        return (whole[0] // 100 * 60 + whole[0] % 100) % (DAY_SECONDS // 60)
-    return (whole[0] * 60 + (whole[1] if len(whole) > 1 else 0)) % (DAY_SECONDS // 60) if whole else 0
+def _notes(kept: pd.DataFrame) -> list[str]:
+    """Return what was taken for granted."""
+    notes = []
+    shut = int((kept["closed"] > 0).sum())
+    if shut:
+        notes.append(
+            f"{'1 row names' if shut == 1 else f'{shut:,} rows name'} closed beds: the available ones are taken to be without them."
+        )
+    if (kept["occupied"] % 1).any():
+        notes.append("Some counts have decimals, so they are averages, not counts at a moment: they swing too little.")
+    return notes
+
+
+def patients_in_text(text: str) -> float | None:
+    """How many patients does a cell name? ``24 (+2)`` are 26; averages have decimals; None where it says nothing.
+
+    Checked by: tests/data/test_census.py
+    """
+    beds = beds_in_text(text)
+    if beds is not None:
+        return float(sum(beds))
+    return float(text.replace(",", ".")) if DECIMALS.fullmatch(text) else None
 
 
 def _is_sum(frame: pd.DataFrame, usable: pd.Series) -> pd.Series:

@@ -45,18 +45,30 @@ def start_and_end(
     return start, end, notes + moved
 
 
-def read_ordered(column: pa.ChunkedArray, name: str, date_order: str | None) -> NDArray[np.int64]:
-    """When was it? One column alone; asks which way round its dates are written where that is open.
+def read_ordered(name: str, date_order: str | None, *columns: pa.ChunkedArray) -> list[NDArray[np.int64]]:
+    """When was it? One column, or two of which the second comes after the first, in one order of day and month.
+
+    Asks which way round dates are written where that is open.
 
     Raises:
         UnreadableRecords: dates whose order somebody must say; the question is in ``.question``.
     """
     check_date_order(date_order)
-    return _read_all(name, {"start": column}, date_order, None)["start"].seconds
+    named = dict(zip(("start", "end"), columns, strict=False))
+    if date_order == ROW_BY_ROW:
+        read = _row_by_row(name, named)
+    else:
+        read = _read_all(name, named, date_order, None, are_stays=False)
+    return [times.seconds for times in read.values()]
 
 
 def _read_all(
-    name: str, columns: Mapping[str, pa.ChunkedArray], date_order: str | None, time_zone: str | None
+    name: str,
+    columns: Mapping[str, pa.ChunkedArray],
+    date_order: str | None,
+    time_zone: str | None,
+    *,
+    are_stays: bool = True,
 ) -> dict[str, TimesRead]:
     """Read columns that share one order of day and month; the order comes from the answer or from the dates."""
     read = {key: read_times(column, date_order, time_zone) for key, column in columns.items()}
@@ -64,7 +76,8 @@ def _read_all(
     month_only = sum(times.month_first_only for times in read.values())
     unsure = sum(times.either_order for times in read.values())
     if date_order is None and ((day_only and month_only) or (unsure and not day_only and not month_only)):
-        raise _question(name, columns)
+        unsure_first = columns if are_stays else {"start": columns[max(read, key=lambda key: read[key].either_order)]}
+        raise _question(name, unsure_first)
     if date_order is None and month_only:
         return {key: read_times(column, MONTH_FIRST, time_zone) for key, column in columns.items()}
     return read
@@ -126,6 +139,8 @@ def _row_by_row(name: str, columns: Mapping[str, pa.ChunkedArray]) -> dict[str, 
         )
     around = np.interp(np.arange(first.size), sure, known[sure])
     start = _nearer(first, second, around)
+    if "end" not in columns:
+        return {"start": replace(day["start"], seconds=start)}
     end = _nearer(day["end"].seconds, month["end"].seconds, start.astype(float), not_before=start)
     return {"start": replace(day["start"], seconds=start), "end": replace(day["end"], seconds=end)}
 

@@ -45,6 +45,7 @@ class Records:
     confirm. ``excluded``: periods left out of rates. ``warm_up_days``: days at the window's start in which starts are
     complete and patients present are not; ``chosen_by``: by what the export was chosen, where that can be told;
     ``period_note`` says which patients it leaves out, if any. ``places``: every place in the file → what it was taken for.
+    ``ward_names``: a ward's name in the file → the name the planner gave it.
 
     Checked by: tests/data/test_records.py
     """
@@ -64,6 +65,7 @@ class Records:
     chosen_by: str = ""
     period_note: str = ""
     places: Mapping[str, str] = field(default_factory=dict)
+    ward_names: Mapping[str, str] = field(default_factory=dict)
 
     @property
     def short_fingerprint(self) -> str:
@@ -244,6 +246,7 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
         period_note=period.note if period.is_partial else "",
         excluded=tuple((pd.Timestamp(first), pd.Timestamp(last)) for first, last in choices.excluded),
         places=kinds_of_places(table.wards, choices.places),
+        ward_names=choices.ward_names,
     )
 
 

@@ -77,16 +77,18 @@ class IntakeReport:
     @property
     def summary(self) -> str:
         """What would I say about this file in one sentence?"""
+        bed_days = f" ({self.bed_days_set_aside:,.0f} bed-days)" if self.bed_days_in else ""
         return (
             f"Of {self.rows_in:,} rows, {self.used:,} are used as they stand, {self.repaired:,} after a repair and "
-            f"{self.set_aside:,} ({self.bed_days_set_aside:,.0f} bed-days) are set aside."
+            f"{self.set_aside:,}{bed_days} are set aside."
         )
 
     @property
     def sentences(self) -> tuple[str, ...]:
         """What exactly was done, one sentence a reason?"""
         return tuple(
-            f"{finding.rows:,} {'row was' if finding.rows == 1 else 'rows were'} {finding.outcome} "
-            f"({finding.bed_days:,.1f} bed-days as recorded): {finding.sentence[0].lower()}{finding.sentence[1:]}."
+            f"{finding.rows:,} {'row was' if finding.rows == 1 else 'rows were'} {finding.outcome}"
+            + (f" ({finding.bed_days:,.1f} bed-days as recorded)" if self.bed_days_in else "")
+            + f": {finding.sentence[0].lower()}{finding.sentence[1:]}."
             for finding in self.findings
         )

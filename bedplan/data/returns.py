@@ -9,9 +9,9 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
-from bedplan.data.columns import TELLTALES, without_formula, words
+from bedplan.data.columns import TELLTALES, without_formula
 from bedplan.data.dates import MONTHS
-from bedplan.data.logs import WARD_WORDS
+from bedplan.data.headings import RETURN_HEADINGS
 from bedplan.data.reading import read_table
 from bedplan.data.report import SET_ASIDE, Finding, IntakeReport
 from bedplan.data.source import FileLike, open_source
@@ -21,13 +21,6 @@ from bedplan.models import Demand, LengthOfStay
 if TYPE_CHECKING:
     from bedplan.data.texttable import TextTable
 
-RETURN_HEADINGS: dict[str, tuple[str, ...]] = {
-    "month": words("month period date periodend yearmonth monthending"),
-    "ward": (*WARD_WORDS, *words("specialty specialtygroup site sector group")),
-    "available": words("availablebeddays availablebed availablebeds beddaysavailable available staffedbeddays"),
-    "occupied": words("occupiedbeddays obd beddaysoccupied occupied occupiedbeds beddays"),
-    "discharges": words("discharges discharged dischargesanddeaths dischargesincldeaths separations admissions spells"),
-}
 MONTH_PATTERNS = (
     r"(?P<year>\d{4})[-/. ]?(?P<month>\d{1,2})(?!\d)",  # 2024-04, 2024-04-30
     r"(?:\d{1,2}[-/. ])?(?P<name>[a-z]{3})[a-z]*[-/., ']*(?P<year>\d{4}|\d{2})$",  # Apr 2024, 30 April 2024, April-24

@@ -99,10 +99,15 @@ def _spellings(wards: tuple[str, ...]) -> list[WardLink]:
     seen: dict[str, str] = {}
     links = []
     for name in wards:
-        bare = re.sub(r"[^a-z0-9]", "", re.sub(r"\b(ward|unit|wd|w)(?=[\s\d_-]|$)", " ", name.casefold()))
-        bare = re.sub(r"^0+(?=\d)", "", bare)
+        bare = bare_name(name)
         if bare and bare in seen:
             links.append(WardLink((seen[bare],), (name,), "spelling", None))
         elif bare:
             seen[bare] = name
     return links
+
+
+def bare_name(ward: str) -> str:
+    """Return what is left of a ward's name without "ward", signs, capitals and leading zeros."""
+    bare = re.sub(r"[^a-z0-9]", "", re.sub(r"\b(ward|unit|wd|w)(?=[\s\d_-]|$)", " ", ward.casefold()))
+    return re.sub(r"^0+(?=\d)", "", bare)

@@ -1,42 +1,59 @@
-"""Wide census tables, a column for each ward, brought to the long form."""
+"""Wide census tables, a column or a few for each ward, brought to the long form."""
 
 from __future__ import annotations
 
+import csv
+import io
+from itertools import accumulate
 from typing import TYPE_CHECKING
 
 import pyarrow as pa
 
 from bedplan.data.columns import match_headings, plain
-from bedplan.data.reading import read_table
-from bedplan.data.texttable import TextTable
+from bedplan.data.reading import SEPARATORS, as_utf8, read_table, split_cells
+from bedplan.data.source import SourceFile
+from bedplan.data.texttable import MOST_TITLE_LINES, TextTable
+from bedplan.data.workbook import sheets_as_text
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
-    from bedplan.data.source import SourceFile
+# What a ward's column can end in, "Heron occupied", "Heron beds", or hold in a second row of headings under its name.
+ENDINGS = {
+    "occupied": ("occupied", "occ", "patients", "census", "inuse", "bedsoccupied", "occupiedbeds", "inpatients"),
+    "available": ("available", "avail", "beds", "open", "staffed", "bedsavailable", "availablebeds", "openbeds"),
+    "closed": ("closed", "bedsclosed", "closedbeds"),
+}
+Rows = list[tuple[str, ...]]
 
-# What a ward's column can end in: "Heron occupied", "Heron beds".
-OCCUPIED = ("occupied", "occ", "patients", "census", "inuse")
-AVAILABLE = ("available", "avail", "beds", "open", "staffed")
 
+def read_wide(
+    source: SourceFile, known: Mapping[str, tuple[str, ...]], chosen: Mapping[str, str] | None = None
+) -> TextTable | None:
+    """What does a table with columns for each ward say? The same as a long one, a row for each date and ward.
 
-def read_wide(source: SourceFile, known: Mapping[str, tuple[str, ...]]) -> TextTable:
-    """What does a table with a column for each ward say? The same as a long one, a row for each date and ward.
+    Two rows of headings, wards above and what is counted below, are read as one. None where it is no such table.
 
     Checked by: tests/data/test_census.py
     """
-    first = read_table(source, {"date": known["date"], "time": known["time"]})
+    source = one_row_of_headings(source) or source
+    days = {key: known[key] for key in ("date", "time")}
+    first = read_table(source, known | days, chosen)
+    if "date" not in first.columns:
+        return None
+    first = read_table(source, days, {key: heading for key, heading in (chosen or {}).items() if key in days})
     wards = [heading for heading in first.unused if plain(heading)]
     text = read_table(source, {}, first.headings | {f"ward {heading}": heading for heading in wards})
-    columns: dict[str, list[str]] = {key: [] for key in ("date", "time", "ward", "occupied", "available")}
-    for ward, (occupied, available) in _pairs(wards).items():
+    groups = _groups(wards)
+    columns: dict[str, list[str]] = {key: [] for key in ("date", "time", "ward", *ENDINGS)}
+    for ward, headings in groups.items():
         columns["date"] += text.strings("date")
         columns["time"] += text.strings("time")
         columns["ward"] += [ward] * text.rows
-        columns["occupied"] += text.strings(f"ward {occupied}")
-        columns["available"] += text.strings(f"ward {available}")
+        for key in ENDINGS:
+            columns[key] += text.strings(f"ward {headings.get(key, '')}")
     if not columns["date"]:
-        return first
+        return None
     return TextTable(
         columns={key: pa.chunked_array([values], pa.string()) for key, values in columns.items()},
         headings=first.headings | match_headings(wards, {}),
@@ -44,21 +61,59 @@ def read_wide(source: SourceFile, known: Mapping[str, tuple[str, ...]]) -> TextT
         misfits=text.misfits,
         dropped=first.dropped,
         unused=(),
-        notes=(*first.notes, f"A wide table: {len(_pairs(wards))} columns were read as wards."),
+        notes=(*first.notes, f"A wide table: {len(groups)} columns were read as wards."),
     )
 
 
-def _pairs(headings: list[str]) -> dict[str, tuple[str, str]]:
-    """Return ward → (heading of patients, heading of beds); one heading alone holds patients."""
-    pairs: dict[str, tuple[str, str]] = {}
+def _measure(heading: str) -> str:
+    """Return what a heading says is counted, "" where it doesn't say."""
+    return next((key for key, endings in ENDINGS.items() if plain(heading) in endings), "")
+
+
+def _groups(headings: list[str]) -> dict[str, dict[str, str]]:
+    """Return ward → what is counted → heading; a heading that doesn't say what is counted holds patients."""
+    groups: dict[str, dict[str, str]] = {}
     for heading in headings:
-        words = heading.replace("_", " ").split()
-        ending = plain(words[-1]) if words else ""
-        ward = " ".join(words[:-1])
-        if len(words) > 1 and ending in AVAILABLE:
-            pairs[ward] = (pairs.get(ward, ("", ""))[0], heading)
-        elif len(words) > 1 and ending in OCCUPIED:
-            pairs[ward] = (heading, pairs.get(ward, ("", ""))[1])
-        else:
-            pairs[heading] = (heading, pairs.get(heading, ("", ""))[1])
-    return {ward: pair for ward, pair in pairs.items() if pair[0]}
+        *ward, last = heading.replace("_", " ").split() or [""]
+        measure = _measure(last) if ward else ""
+        groups.setdefault(" ".join(ward) if measure else heading, {})[measure or "occupied"] = heading
+    return {ward: group for ward, group in groups.items() if "occupied" in group}
+
+
+def one_row_of_headings(source: SourceFile) -> SourceFile | None:
+    """Return a table with two rows of headings as one with "Heron occupied", "Heron available"; None where it has one."""
+    for rows in _rows_of(source):
+        for place in range(1, min(len(rows), MOST_TITLE_LINES)):
+            headings = _joined(rows[place - 1], rows[place])
+            if headings:
+                written = io.StringIO()
+                csv.writer(written).writerows([headings, *rows[place + 1 :]])
+                return SourceFile(source.name, written.getvalue().encode(), source.digest)
+    return None
+
+
+def _rows_of(source: SourceFile) -> list[Rows]:
+    """Return the rows of each sheet, or of a text file under the separator that shows most."""
+    if source.begins_with(b"PK"):
+        return sheets_as_text(source)
+    if source.begins_with(b"PAR1"):
+        return []
+    lines = bytes(as_utf8(source)[0]).decode("utf-8", errors="replace").splitlines()
+    top = lines[:MOST_TITLE_LINES]
+    separator = max(SEPARATORS, key=lambda sign: sum(line.count(sign) for line in top))
+    return [[split_cells(line, separator) for line in lines]]
+
+
+def _joined(above: tuple[str, ...], below: tuple[str, ...]) -> list[str]:
+    """Return one row of headings for two, empty unless the lower one counts the same things under several wards."""
+    measures = [_measure(cell) for cell in below]
+    above = (*above, *[""] * (len(below) - len(above)))[: len(below)]
+    under = list(accumulate(above, lambda last, cell: cell or last))  # a merged cell holds its name once
+    counted = [(under[place], measure) for place, measure in enumerate(measures) if measure]
+    wards = {ward for ward, _ in counted}
+    if len(wards) < 2 or "" in wards or len(set(counted)) < len(counted):
+        return []
+    return [
+        f"{under[place]} {measure}" if measure else below[place] or above[place]
+        for place, measure in enumerate(measures)
+    ]

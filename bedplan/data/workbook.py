@@ -58,18 +58,32 @@ def read_workbook(
     Raises:
         UnreadableRecords: not a workbook, too large, or no sheet with known headings.
     """
-    check_archive(source)
-    try:
-        book = openpyxl.load_workbook(io.BytesIO(source.content), read_only=True, data_only=True)
-        sheets = {sheet.title: _cells(sheet) for sheet in book.worksheets}
-    except UnreadableRecords:
-        raise
-    except Exception as problem:  # openpyxl raises whatever a damaged part makes it stumble over
-        raise UnreadableRecords([f"{source.name} is a damaged Excel workbook: save it again and retry."]) from problem
+    sheets = _sheets(source)
     layouts = {title: _layout(cells, known, chosen) for title, cells in sheets.items()}
     title, layout = max(layouts.items(), key=lambda item: len(item[1].found), default=("", Layout(0, 0, "", (), {})))
     notes = [f"Read from the sheet “{title}”; {len(sheets) - 1} other sheets were left out."] if len(sheets) > 1 else []
     return text_table(source.name, layout, lambda: _parsed(sheets[title], layout), notes, list(known))
+
+
+def sheets_as_text(source: SourceFile) -> list[list[tuple[str, ...]]]:
+    """What stands in each sheet? Its rows but for blank ones, every cell as text.
+
+    Raises:
+        UnreadableRecords: not a workbook, or too large.
+    """
+    return [[tuple(_text(cell).strip() for cell in row) for row in cells] for cells in _sheets(source).values()]
+
+
+def _sheets(source: SourceFile) -> dict[str, Cells]:
+    """Return the cells of every sheet by its title."""
+    check_archive(source)
+    try:
+        book = openpyxl.load_workbook(io.BytesIO(source.content), read_only=True, data_only=True)
+        return {sheet.title: _cells(sheet) for sheet in book.worksheets}
+    except UnreadableRecords:
+        raise
+    except Exception as problem:  # openpyxl raises whatever a damaged part makes it stumble over
+        raise UnreadableRecords([f"{source.name} is a damaged Excel workbook: save it again and retry."]) from problem
 
 
 def _cells(sheet: object) -> Cells:

@@ -7,8 +7,9 @@ from typing import TYPE_CHECKING
 import pandas as pd
 import pytest
 
-from bedplan.data import read_capacity
+from bedplan.data import IntakeChoices, read_capacity, read_records
 from bedplan.data.capacity import beds_in_text
+from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -53,6 +54,11 @@ def test_closures_are_listed_with_their_reason() -> None:
         ("24 (+2)", (24, 2)),
         ("24/2", (24, 2)),
         ("24+2", (24, 2)),
+        ("20 (+12)", (20, 12)),
+        ("20/24", None),
+        ("20 (24)", None),
+        ("24/20", None),
+        ("²", None),
         ("24.0", (24, 0)),
         ("closed", (0, 0)),
         ("Closed", (0, 0)),
@@ -85,3 +91,127 @@ def test_the_demo_hospitals_beds(demo_data: Path) -> None:
     assert kestrel[pd.Timestamp("2023-12-15")] == 28
     assert kestrel[pd.Timestamp("2023-12-16")] == 32
     assert capacity.open_beds_by_day("Plover")[pd.Timestamp("2024-02-13")] == 30 - 12
+
+
+def day(text: str) -> pd.DatetimeIndex:
+    """Return one day as an index."""
+    return pd.DatetimeIndex([text])
+
+
+def test_american_dates_are_read_as_such_or_asked_for() -> None:
+    """12/16 shows that months come first; where nothing shows it, the file asks, with both readings."""
+    american = b"ward,from,staffed_beds\nTeal,03/04/2023,12\nTeal,12/16/2023,14\n"
+    capacity = read_capacity(american)
+    assert capacity.open_beds_by_day("Teal", pd.date_range("2023-03-04", "2023-04-03")).tolist() == [12] * 31
+    assert capacity.table["from"].tolist() == [pd.Timestamp("2023-03-04"), pd.Timestamp("2023-12-16")]
+
+    open_order = b"ward,from,staffed_beds\nTeal,03/04/2023,12\n"
+    with pytest.raises(UnreadableRecords) as problem:
+        read_capacity(open_order)
+    assert problem.value.question.examples == (("03/04/2023", "03 April 2023", "04 March 2023"),)
+    for order, first in (("day first", "2023-04-03"), ("month first", "2023-03-04")):
+        assert read_capacity(open_order, date_order=order).table["from"].tolist() == [pd.Timestamp(first)]
+
+
+@pytest.mark.parametrize("cell", ["20/24", "20 (24)"])
+def test_a_cell_that_can_be_read_two_ways_is_asked_for(cell: str) -> None:
+    """20/24 may be 20 of 24 beds or 44: nobody guesses."""
+    with pytest.raises(UnreadableRecords, match=r"row 1 of beds\.csv is no number of staffed beds: write one number"):
+        read_capacity(f"ward,from,staffed_beds\nTeal,2024-01-01,{cell}\n".encode(), name="beds.csv")
+
+
+def test_every_row_is_accounted_for() -> None:
+    """Totals, blank counts, repeated rows, periods that end before they start: counted, each with its reason."""
+    rows = (
+        "Teal,2024-01-01,2024-06-30,12",
+        "Teal,2024-01-01,2024-06-30,12",
+        "Heron,2024-01-01,2024-06-30,n/a",
+        "Merlin,2024-06-30,2024-01-01,8",
+        ",2024-01-01,2024-06-30,8",
+        "Total,2024-01-01,2024-06-30,20",
+        "Teal,2024-07-01",
+    )
+    capacity = read_capacity("\n".join(["ward,from,to,staffed_beds", *rows]).encode())
+
+    assert capacity.wards == ("Teal",)
+    assert (capacity.report.rows_in, capacity.report.used, capacity.report.set_aside) == (7, 1, 6)
+    assert dict(capacity.report.reasons) == {
+        "No ward is named, or the row is a total": 2,
+        "The same row twice": 1,
+        "No number of beds is named": 1,
+        "The period ends before it starts": 1,
+        "A line with another number of cells": 1,
+    }
+
+
+def test_a_ward_whose_name_begins_like_a_total_is_a_ward() -> None:
+    """Summerfield and Paget are wards, not sums and pages."""
+    assert read_capacity(b"ward,beds\nSummerfield,12\nPaget,8\nSum,20\nPage 1,20\n").wards == ("Paget", "Summerfield")
+
+
+@pytest.mark.parametrize("cell", ["n/a", "", "-"])
+def test_funded_beds_may_be_unknown(cell: str) -> None:
+    """Where only the staffed beds of a row are known they stand for the funded ones, and a note says so."""
+    capacity = read_capacity(f"ward,from,funded_beds,staffed_beds\nTeal,2024-01-01,{cell},20\n".encode())
+
+    assert (capacity.funded_today("Teal"), capacity.beds_today("Teal")) == (20, 20)
+    assert any("1 row names no funded beds" in note for note in capacity.notes)
+
+
+def test_a_closure_within_a_longer_period_ends() -> None:
+    """Of periods that overlap the later one counts, on its own days only; the note names the ward."""
+    capacity = read_capacity(
+        b"ward,from,to,staffed,closed\nTeal,2024-01-01,,28,0\nTeal,2024-02-01,2024-02-10,28,6\nHeron,2024-01-01,,9,0\n"
+    )
+
+    assert capacity.open_beds_by_day("Teal", pd.date_range("2024-01-31", periods=12)).tolist() == [28, *[22] * 10, 28]
+    assert any("Periods overlap on Teal:" in note for note in capacity.notes)
+
+
+def test_more_closed_than_staffed_is_no_bed_and_told() -> None:
+    """Beds in use can't be fewer than none."""
+    capacity = read_capacity(b"ward,from,staffed,closed\nTeal,2024-01-01,4,6\n")
+
+    assert capacity.open_beds_by_day("Teal", day("2024-01-01")).tolist() == [0]
+    assert any("more closed beds than staffed ones" in note for note in capacity.notes)
+
+
+STAYS = b"patient_key,ward,start,end\na,W,2024-01-01 10:00,2024-01-04 10:00\nb,Teal,2024-01-01 10:00,2024-01-04 10:00\n"
+
+
+def test_wards_are_matched_to_the_stays_whatever_the_capitals() -> None:
+    """A lower-case name with a blank after it is the same ward; what matches nothing is named."""
+    capacity = read_capacity(b"ward,from,beds\nw ,2024-01-01,20\nOwl,2024-01-01,7\n").linked_to(read_records(STAYS))
+
+    assert capacity.beds_today("W") == 20
+    assert capacity.unknown_wards == ("Owl",)
+
+
+def test_a_renamed_ward_keeps_the_beds_of_its_old_name() -> None:
+    """What the planner said of the stays' names holds for the beds too, one period after the other."""
+    records = read_records(STAYS, choices=IntakeChoices(ward_names={"Ward 7": "W"}))
+    capacity = read_capacity(
+        b"ward,from,to,beds\nWard 7,2024-01-01,2024-01-31,20\nW,2024-02-01,2024-02-28,24\n"
+    ).linked_to(records)
+
+    assert capacity.open_beds_by_day("W", pd.date_range("2024-01-31", periods=2)).tolist() == [20, 24]
+    assert capacity.wards == ("W",)
+
+
+def test_merged_wards_have_the_beds_of_both() -> None:
+    """Two wards side by side became one: before, it had 10 and 12 beds, after the first closed 12, then 22."""
+    records = read_records(STAYS, choices=IntakeChoices(ward_names={"Ash": "W", "Oak": "W"}))
+    rows = "Ash,2024-01-01,2024-01-31,10\nOak,2024-01-01,2024-02-10,12\nW,2024-02-11,2024-03-31,22\n"
+    capacity = read_capacity(f"ward,from,to,beds\n{rows}".encode()).linked_to(records)
+    days = pd.DatetimeIndex(["2024-01-01", "2024-01-31", "2024-02-01", "2024-02-10", "2024-02-11", "2025-01-01"])
+
+    assert capacity.open_beds_by_day("W", days).tolist() == [22, 22, 12, 12, 22, 22]
+    assert capacity.beds_today("W") == 22
+
+
+def test_one_ward_written_two_ways_is_not_counted_twice() -> None:
+    """Ward 7 and W07 are one ward: its beds are not added."""
+    records = read_records(STAYS, choices=IntakeChoices(ward_names={"Ward 7": "W", "W07": "W"}))
+    capacity = read_capacity(b"ward,from,beds\nWard 7,2024-01-01,20\nW07,2024-01-01,20\n").linked_to(records)
+
+    assert capacity.beds_today("W") == 20

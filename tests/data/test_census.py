@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+import io
 from typing import TYPE_CHECKING
 
 import numpy as np
+import openpyxl
 import pandas as pd
 import pytest
 
-from bedplan.data import read_census
+from bedplan.data import IntakeChoices, read_census, read_records
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -125,3 +127,106 @@ def test_a_census_that_cannot_be_used_says_why(content: bytes) -> None:
     """One sentence names the file and what it lacks."""
     with pytest.raises(UnreadableRecords, match=r"census\.csv"):
         read_census(content, name="census.csv")
+
+
+MERGED = (
+    ("Report of wards", "", "", "", "", "", ""),
+    ("", "Heron", "", "", "Teal", "", ""),
+    ("Date", "Occupied", "Available", "Closed", "Occupied", "Available", "Closed"),
+    ("2024-01-01", "20", "26", "2", "9", "12 (+2)", "0"),
+    ("2024-01-02", "30", "28", "0", "8", "12", "0"),
+)
+DATE_ABOVE = (
+    ("Date", "Heron", "", "", "Teal", "", ""),
+    ("", "Occ", "Beds", "Closed", "Occ", "Beds", "Closed"),
+    *MERGED[3:],
+)
+
+
+def as_workbook(rows: tuple[tuple[str, ...], ...]) -> bytes:
+    """Return a workbook of these cells, blanks left empty as under merged headings."""
+    book, packed = openpyxl.Workbook(), io.BytesIO()
+    for row in rows:
+        book.active.append([cell or None for cell in row])
+    book.save(packed)
+    return packed.getvalue()
+
+
+@pytest.mark.parametrize("rows", [MERGED, DATE_ABOVE])
+@pytest.mark.parametrize("kind", ["comma", "semicolon", "workbook"])
+def test_two_rows_of_headings_are_read_as_one(rows: tuple[tuple[str, ...], ...], kind: str) -> None:
+    """Wards in merged cells above, what is counted below: as if each ward had rows of its own."""
+    sign = {"comma": ",", "semicolon": ";"}.get(kind, "")
+    content = "\n".join(sign.join(row) for row in rows).encode() if sign else as_workbook(rows)
+    census = read_census(content)
+
+    assert census.wards == ("Heron", "Teal")
+    columns = ["available", "extra", "closed", "occupied"]
+    assert census.table[columns].to_numpy().tolist() == [[26, 0, 2, 20], [12, 2, 0, 9], [28, 0, 0, 30], [12, 0, 0, 8]]
+    assert any("1 row names closed beds" in note for note in census.report.notes)
+
+
+def test_counts_with_decimals_are_averages_and_told_so() -> None:
+    """A mean over the day is used as it stands; the note says that it swings too little."""
+    census = read_census(b"date;ward;occupied\n2024-01-01;Teal;9,5\n2024-01-02;Teal;8\n")
+
+    assert census.occupied("Teal").tolist() == [9.5, 8.0]
+    assert any("averages" in note for note in census.report.notes)
+
+
+def test_two_numbers_for_the_patients_are_not_added() -> None:
+    """20/24 may be 20 patients in 24 beds: it is set aside, and the reason says why."""
+    census = read_census(b"date,ward,occupied\n2024-01-01,Teal,20/24\n2024-01-02,Teal,20 (+2)\n")
+
+    assert census.occupied("Teal").tolist() == [22]
+    assert list(census.report.reasons) == [
+        "Two numbers stand for the patients, as in 20/24: which of them is meant can't be told"
+    ]
+
+
+@pytest.mark.parametrize("clock", ["\u00b2", "noon", "8 o'clock", "25:00"])
+def test_a_time_nobody_can_read_is_set_aside(clock: str) -> None:
+    """Whatever stands there, the row is counted, not the program stopped."""
+    census = read_census(f"date,time,ward,occupied\n2024-01-01,{clock},Teal,5\n2024-01-02,08:00,Teal,6\n".encode())
+
+    assert census.occupied("Teal", "08:00").tolist() == [6]
+    assert dict(census.report.reasons) == {"The time of day can't be read": 1}
+
+
+def test_a_ward_whose_name_begins_like_a_total_is_kept() -> None:
+    """Summerfield is no sum."""
+    assert read_census(b"date,ward,occupied\n2024-01-01,Summerfield,5\n2024-01-01,Sum,6\n").wards == ("Summerfield",)
+
+
+def test_census_dates_can_be_american() -> None:
+    """Where no day shows the order it is asked for, and the answer holds."""
+    content = b"date,ward,occupied\n03/04/2024,Teal,5\n"
+
+    with pytest.raises(UnreadableRecords) as problem:
+        read_census(content)
+    assert problem.value.question.examples[0][1:] == ("03 April 2024", "04 March 2024")
+    assert read_census(content, date_order="month first").table["time"].tolist() == [pd.Timestamp("2024-03-04")]
+
+
+def test_census_columns_can_be_named_by_a_person() -> None:
+    """Headings nobody knows are no obstacle, in a long table and in a wide one."""
+    named = {"date": "Stichtag", "ward": "Fach", "occupied": "Belegung"}
+    long = read_census(b"Stichtag;Fach;Belegung\n2024-01-01;Teal;5\n", columns=named)
+    wide = read_census(b"Stichtag;Teal;Heron\n2024-01-01;5;6\n", columns={"date": "Stichtag"})
+
+    assert long.occupied("Teal").tolist() == wide.occupied("Teal").tolist() == [5]
+
+
+STAYS = b"patient_key,ward,start,end\na,W,2024-01-01 10:00,2024-01-04 10:00\n"
+
+
+def test_census_wards_are_matched_to_the_stays() -> None:
+    """Capitals don't matter, merged wards are added, a ward written two ways is not; the rest is named."""
+    rows = ["w,5", "Ash,6", "Ward 7,9", "W07,9", "Owl,1"]
+    census = read_census("\n".join(["date,ward,occupied", *(f"2024-01-01,{row}" for row in rows)]).encode())
+    names = {"Ash": "W", "Ward 7": "Seven", "W07": "Seven"}
+    linked = census.linked_to(read_records(STAYS, choices=IntakeChoices(ward_names=names)))
+
+    assert linked.occupied("W").tolist() == [11]
+    assert linked.occupied("Seven").tolist() == [9]
+    assert linked.unknown_wards == ("Owl", "Seven")
