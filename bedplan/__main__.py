@@ -18,7 +18,7 @@ from bedplan.data import Capacity, Records, backtest, estimate_demand, read_capa
 from bedplan.data.choices import DATE_ORDERS
 from bedplan.decision import TurnAwayLimit
 from bedplan.errors import BedplanError, UnreadableRecords
-from bedplan.export import Justification, Source, as_html, as_xlsx, case_for
+from bedplan.export import Justification, Source, as_html, as_xlsx, case_for, with_check
 from bedplan.plan import Answers, Changes, from_estimate, from_json, planned_ward
 
 if TYPE_CHECKING:
@@ -68,15 +68,7 @@ def ward_case(records: Records, capacity: Capacity | None, name: str, asked: arg
     baseline = from_estimate(estimate_demand(records, name, capacity=capacity), beds)
     ward = planned_ward(baseline, baseline.beds, "leaves" if name in asked.leaves else "waits", changes)
     case = case_for(ward, TurnAwayLimit(asked.limit, asked.within), baseline.facts, changes.rows())
-    return replace(case, checked=checked(records, capacity, name))
-
-
-def checked(records: Records, capacity: Capacity | None, name: str) -> str:
-    """Say what came of the check on last year, or why there was none."""
-    try:
-        return backtest(records, name, capacity=capacity).verdict
-    except BedplanError as error:
-        return f"{wording.NOT_YET_CHECKED} {error}"
+    return with_check(case, lambda: backtest(records, name, capacity=capacity))
 
 
 def beside(capacity: Path | None) -> tuple[tuple[str, str], ...]:

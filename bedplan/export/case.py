@@ -2,21 +2,22 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from bedplan import wording
 from bedplan.decision import OverfullLimit, WaitLimit, decide
-from bedplan.errors import TargetOutOfReach
+from bedplan.errors import BedplanError, TargetOutOfReach
 from bedplan.models import MODELS
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Callable, Mapping
 
     from numpy.typing import NDArray
 
+    from bedplan.data import Backtest
     from bedplan.decision import Decision, Rule, Ward
     from bedplan.models import BedCurve
 
@@ -31,7 +32,7 @@ class WardCase:
     """One ward's case: the ward, its models' curves, the limit, the decision (None where out of reach), what it rests on.
 
     ``assumptions`` are (what, value, where from); ``settings`` (slider, value). ``checked`` says what
-    came of the check on last year. The figure that the limit watches, for
+    came of the check on last year; ``check`` holds it, where one could be made. The figure that the limit watches, for
     each bed count of the ward's own curve, is ``over_year`` ``(n,)`` and ``by_month`` ``(12, n)``.
     """
 
@@ -42,6 +43,7 @@ class WardCase:
     assumptions: tuple[tuple[str, str, str], ...] = ()
     settings: tuple[tuple[str, str], ...] = ()
     checked: str = wording.NOT_YET_CHECKED
+    check: Backtest | None = None
 
     @property
     def model(self) -> str:
@@ -151,6 +153,18 @@ class WardCase:
                 "find it full than this says: set the limit on waits to plan for that."
             )
         return tuple(dict.fromkeys(found))
+
+
+def with_check(case: WardCase, check: Callable[[], Backtest]) -> WardCase:
+    """What came of checking this ward on its last year? The case with the verdict, or with the reason why there is none.
+
+    Checked by: tests/export/test_check_on_paper.py
+    """
+    try:
+        found = check()
+    except BedplanError as error:
+        return replace(case, checked=f"{wording.NOT_YET_CHECKED} {error}", check=None)
+    return replace(case, checked=found.verdict, check=found if found.checked else None)
 
 
 def case_for(

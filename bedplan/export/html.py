@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from bedplan.export.justification import Justification, WardCase
 
 VEGA_LITE = "6.1"
+PAGE_WIDTH = 640  # of a drawing that takes the whole page
 WIDE = ' class="wide"'  # the first column holds words, not figures
 _STYLE = """
 @page { size: A4; margin: 16mm 15mm 18mm; @bottom-right { content: "Page " counter(page) " of " counter(pages); font-size: 9pt }
@@ -32,6 +33,7 @@ th, td { text-align: left; padding: 1.2mm 2mm; border-bottom: .5pt solid #b8bec4
 td:first-child, th:first-child { min-width: 24mm } .wide td:first-child { min-width: 42mm } .wide td { overflow-wrap: anywhere }
 thead { display: table-header-group } tr { break-inside: avoid } figure { margin: 3mm 0; break-inside: avoid }
 figure svg { width: 100%; height: auto } figcaption { font-size: 9.5pt }
+.side { display: flex; gap: 6mm; align-items: flex-start; break-inside: avoid } .side figure { flex: 0 0 80mm }
 """
 _PAGE = Template(
     '<!doctype html>\n<html lang="en"><head><meta charset="utf-8"><title>$title</title>'
@@ -81,9 +83,27 @@ def _ward(case: WardCase, number: int) -> str:
         "<h3>What this rests on</h3>",
         _table(("Assumption", "Value", "From"), case.assumptions, WIDE),
         _table(("Changed by the planner", "Value"), case.settings),
+        *_check(case, number),
         _list(case.notes()),
     ]
     return "\n".join(parts)
+
+
+def _check(case: WardCase, number: int) -> list[str]:
+    """Return the check on last year: its verdict, its figures, and how each width of band kept its promise."""
+    parts = ["<h3>Check on last year</h3>", _paragraphs([case.checked])]
+    if case.check is None:
+        return parts
+    figure = f"<figure>{drawing(case, f'kept{number}', 'kept')}<figcaption>A dot a band: the days it held.</figcaption></figure>"
+    rows = [tuple(map(wording.percent, (one.promised, one.held, one.low, one.high))) for one in case.check.kept]
+    heading = ("Band", "Days it held", "Allowing for chance, from", "to")
+    return [
+        *parts,
+        _table(("What was checked", "Last year", "Held against"), case.check.figures, WIDE),
+        _paragraphs([case.check.promise]),
+        f'<div class="side">{figure}{_table(heading, rows)}</div>',
+        _list(case.check.notes),
+    ]
 
 
 def curve_rows(case: WardCase) -> tuple[tuple[str, ...], list[tuple[float, ...]]]:
@@ -136,13 +156,19 @@ def drawing(case: WardCase, prefix: str, kind: str) -> str:
 
     Checked by: tests/export/test_html.py
     """
-    if kind == "curve":
+    width = PAGE_WIDTH
+    if kind == "kept" and case.check is not None:
+        data, spec = charts.calibration_data(case.check.kept), charts.CALIBRATION
+        title, width = f"{case.ward.name}: {case.check.promise}", spec["width"]
+    elif kind == "curve":
         data = charts.curve_data(case.curves, (case.model, case.over_year), case.marked(), case.limit())
         spec, title = charts.CURVE, f"{case.ward.name}: share of patients at each number of staffed beds"
     else:
         data = charts.months_data(case.months(), case.rule.most)
         spec, title = charts.MONTHS, f"{case.ward.name}: share of patients month by month"
-    drawn = vl_convert.vegalite_to_svg(charts.printed(spec, data), vl_version=VEGA_LITE, allowed_base_urls=[])
+    drawn = vl_convert.vegalite_to_svg(
+        charts.printed(spec, data, width=width), vl_version=VEGA_LITE, allowed_base_urls=[]
+    )
     numbers: dict[str, int] = {}  # the engine numbers its ids on from drawing to drawing
     drawn = _IDENTIFIER.sub(lambda found: f"{prefix}-{numbers.setdefault(found.group(0), len(numbers))}", drawn)
     drawn = re.sub(r'(<svg [^>]*?)width="[\d.]+" height="[\d.]+"', r"\1", drawn, count=1)

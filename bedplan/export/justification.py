@@ -151,6 +151,9 @@ class Justification:
         for case in self.cases:
             digest.update(f"{case.ward.name}|{case.ward.beds}|{case.rule!r}|{case.settings!r}".encode())
             digest.update(f"{case.assumptions!r}|{case.checked}|{case.ward.average_formula_beds}".encode())
+            if case.check is not None:
+                bands = [f"{one.held:.9f} {one.low:.9f} {one.high:.9f}" for one in case.check.kept]
+                digest.update(repr((case.check.figures, bands)).encode())
             for figures in (
                 case.over_year,
                 case.by_month,

@@ -91,6 +91,7 @@ def as_xlsx(justification: Justification) -> bytes:
     assumptions = [(case.ward.name, *row) for case in justification.cases for row in case.assumptions]
     settings = [(case.ward.name, *row, "set by the planner") for case in justification.cases for row in case.settings]
     book.sheet("Assumptions", ("Ward", "Assumption", "Value", "From"), [*assumptions, *settings])
+    _check_sheets(book, justification)
     _source_sheets(book, justification)
     return book.bytes()
 
@@ -128,6 +129,26 @@ def _ward_row(case: WardCase) -> tuple[Cell, ...]:
 def _curve_rows(case: WardCase) -> list[tuple[Cell, ...]]:
     columns = [case.over_year, *(curve.turn_away_probability for curve in case.curves.values())]
     return [(int(beds), *(float(column[at]) for column in columns)) for at, beds in enumerate(case.curve.beds)]
+
+
+def _check_sheets(book: _Book, justification: Justification) -> None:
+    """Write what came of the check on last year, and how each width of band kept its promise."""
+    cases = justification.cases
+    rows = [
+        (case.ward.name, *row)
+        for case in cases
+        for row in (("Verdict", case.checked, ""), *(() if case.check is None else case.check.figures))
+    ]
+    book.sheet("Check on last year", ("Ward", "What was checked", "Last year", "Held against"), rows)
+    bands = [
+        (case.ward.name, one.promised, one.held, one.low, one.high, one.outcome)
+        for case in cases
+        if case.check is not None
+        for one in case.check.kept
+    ]
+    if bands:
+        heading = ("Ward", "Days the band promised", "Days it held", "Allowing for chance, from", "to", "Promise")
+        book.sheet("Bands kept", heading, bands, shares=range(1, 5))
 
 
 def _source_sheets(book: _Book, justification: Justification) -> None:

@@ -5,19 +5,28 @@ from __future__ import annotations
 import datetime as dt
 import re
 import textwrap
-from dataclasses import replace
+from typing import TYPE_CHECKING
 
 import streamlit as st
 
 from bedplan import wording
 from bedplan.errors import BedplanError
-from bedplan.export import Justification, as_html, as_xlsx
-from bedplan.pages import controls
+from bedplan.export import Justification, as_html, as_xlsx, with_check
+from bedplan.pages import controls, loaded
+
+if TYPE_CHECKING:
+    from bedplan.export import WardCase
 
 
 def in_groups(value: str) -> str:
     """Break long fingerprints into groups that fit a line."""
     return re.sub(r"\b[0-9a-f]{64}\b", lambda found: " ".join(textwrap.wrap(found[0], 16)), value)
+
+
+def checked(case: WardCase) -> WardCase:
+    """Return a case with the check on its last year; a ward typed by the planner has no records to check it on."""
+    name = case.ward.name
+    return case if name in st.session_state.get("typed", {}) else with_check(case, lambda: loaded.checked(name))
 
 
 controls.show_origin()
@@ -27,7 +36,7 @@ if st.session_state.get("justified_for") != chosen or not set(st.session_state.g
     st.session_state["justified_for"], st.session_state["justified"] = chosen, [chosen]
 wards = st.multiselect("Wards in this justification", names, key="justified", persist_state="session")
 try:
-    cases = [replace(controls.case_of(name), checked=controls.verdict(name)) for name in wards]
+    cases = [checked(controls.case_of(name)) for name in wards]
     paper = Justification(
         tuple(cases),
         controls.source(wards),
