@@ -33,7 +33,7 @@ from bedplan.data import (
     stay_families,
     what_repairs_change,
 )
-from bedplan.errors import BedplanError, UnreadableRecords
+from bedplan.errors import UnreadableRecords
 from bedplan.plan import Answers, Baseline, from_estimate
 
 if TYPE_CHECKING:
@@ -208,14 +208,6 @@ def checked(name: str) -> Backtest:
     """Return the check of a ward's earlier records on its last year."""
     here = files()
     return _once(("checked", name), lambda: backtest(here.records, name, capacity=here.capacity))
-
-
-def verdict(name: str) -> str:
-    """Return what came of that check, or why there was none."""
-    try:
-        return checked(name).verdict
-    except BedplanError as error:
-        return f"{wording.NOT_YET_CHECKED} {error}"
 
 
 def baseline(name: str, *, with_hidden: bool) -> Baseline:
