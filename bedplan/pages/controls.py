@@ -145,11 +145,6 @@ def choose_ward() -> str:
     return name
 
 
-def verdict(name: str) -> str:
-    """Return what came of a ward's check on last year, or why there was none."""
-    return wording.NOT_YET_CHECKED if name in st.session_state.get("typed", {}) else loaded.verdict(name)
-
-
 def baseline(name: str) -> Baseline:
     """Return where the sliders of a ward start, hidden demand added where the planner asked for it."""
     typed = st.session_state.get("typed", {})
