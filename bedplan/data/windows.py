@@ -27,6 +27,8 @@ MOST_QUIET_ARRIVALS = 20.0  # usual gaps between starts after which a silence me
 FEW_QUIET_ARRIVALS = 5.0  # the same where hardly anybody is still in by then
 ALMOST_ALL = 0.99  # of stays are shorter than what is left out at an end where patients are missing
 MOST_LEFT_OUT = 1 / 3  # of the file
+FEWEST_DAYS = 90  # of which some can be left out
+NIGHTS = 9
 # By what an export was chosen.
 ALL_STAYS, BY_ADMISSION, BY_DISCHARGE = "all stays that touch the period", "admission date", "discharge date"
 BY_BOTH = "admission date and by discharge date"
@@ -149,7 +151,7 @@ def find_period(times: TimesInHospital, until: int) -> Period:
     thin = early * (until - first_end) < THIN * later * (first_end - first_start)
     held_before = first_end - first_start > mean and thin
     first = _midnight(first_end if held_before else first_start)
-    last, held_after = _end(start, end, until, mean)
+    last, held_after = _end(times, first, until, mean)
     last = max(last, first + DAY_SECONDS)
     return _told(Period(first, last), times, held_before=held_before, held_after=held_after)
 
@@ -159,14 +161,15 @@ def _midnight(moment: int) -> int:
     return moment // DAY_SECONDS * DAY_SECONDS
 
 
-def _end(start: NDArray[np.int64], end: NDArray[np.int64], until: int, mean: float) -> tuple[int, bool]:
+def _end(times: TimesInHospital, first: int, until: int, mean: float) -> tuple[int, bool]:
     """Return the last moment for which every start is known, and whether those in by then are in the file."""
+    start, end = times.start, times.end
     if start.size < FEWEST_TIMES:
         return until, True
     last_start = int(start.max())
     usual_gap = (last_start - int(np.median(start))) / (start.size / 2)
     quiet, still_in = until - last_start, int((end == MISSING).sum())
-    usual_in = mean / max(usual_gap, 1.0)
+    usual_in = _usually_in(times, first, last_start)
     fewest = min(usual_in / 2, usual_in - 3 * math.sqrt(usual_in))  # by chance less than 1 in 700
     stopped = quiet > mean and still_in < usual_in / 2 and (not still_in or quiet > FEW_QUIET_ARRIVALS * usual_gap)
     if stopped or quiet > max(MOST_QUIET_ARRIVALS * usual_gap, 3 * DAY_SECONDS):
@@ -175,15 +178,24 @@ def _end(start: NDArray[np.int64], end: NDArray[np.int64], until: int, mean: flo
     return until, still_in > 0 and still_in >= fewest
 
 
+def _usually_in(times: TimesInHospital, first: int, last: int) -> float:
+    """Return how many were in at midnight in the middle half of this time: the median of a few days."""
+    start, end = times.start, times.end
+    nights = np.linspace(first + (last - first) / 4, last - (last - first) / 4, NIGHTS) // DAY_SECONDS * DAY_SECONDS
+    return float(np.median([((start <= night) & ((end > night) | (end == MISSING))).sum() for night in nights]))
+
+
 def _told(period: Period, times: TimesInHospital, *, held_before: bool, held_after: bool) -> Period:
     """Leave out what shows too few, and say so; where too few patients are in to tell, change nothing."""
     stay = (times.end - times.start)[times.end != MISSING]
-    usual_in = float(stay.sum()) / (period.last - period.first)
-    if times.start.size < FEWEST_TIMES or stay.mean() < DAY_SECONDS or usual_in < FEWEST_IN:
+    if times.start.size < FEWEST_TIMES or stay.mean() < DAY_SECONDS:
+        return period
+    if _usually_in(times, period.first, period.last) < FEWEST_IN:
         return period
     if held_before and held_after:
         return replace(period, chosen_by=ALL_STAYS, note="This file holds all stays that touch its period.")
-    days = min(_longest_days(times), int((period.last - period.first) / DAY_SECONDS * MOST_LEFT_OUT))
+    span = (period.last - period.first) // DAY_SECONDS
+    days = min(_longest_days(times), int(span * MOST_LEFT_OUT)) if span >= FEWEST_DAYS else 0
     moved = times.moves >= MANY_MOVES
     first = period.first + (days * DAY_SECONDS if moved and not held_before else 0)
     last = period.last - (0 if held_after else days * DAY_SECONDS)
@@ -194,7 +206,9 @@ def _told(period: Period, times: TimesInHospital, *, held_before: bool, held_aft
 def _note(chosen_by: str, days: int, *, moved: bool) -> str:
     """Say by which date the file was chosen, what that leaves out, and what was done about it."""
     told = [f"This file holds stays by {chosen_by}."]
-    if chosen_by != BY_DISCHARGE:
+    if not days:
+        told.append("It is too short to leave out the days on which patients are missing: counts there are too low.")
+    elif chosen_by != BY_DISCHARGE:
         missing = "No stay starts before the first day, so patients who were in already seem to be missing: "
         done = (
             f"its first {days:,} days show too few patients, and too few moves between wards, and are left out."
@@ -203,7 +217,7 @@ def _note(chosen_by: str, days: int, *, moved: bool) -> str:
             "lengths of stay are complete."
         )
         told.append(missing + done)
-    if chosen_by != BY_ADMISSION:
+    if days and chosen_by != BY_ADMISSION:
         told.append(
             f"Patients who were still in at its end are missing: its last {days:,} days show too few admissions and too "
             "few patients, and are left out."

@@ -245,3 +245,26 @@ def test_a_window_that_reaches_into_a_thin_end_is_told() -> None:
 
     assert chosen.days == records.days + (records.seen_until - records.window[1]).days
     assert any("days past what is complete: figures there are too low" in note for note in chosen.report.notes)
+
+
+def test_a_file_too_short_to_trim_says_so() -> None:
+    """Fifty days of admissions keep all their days, and the report says that counts of patients are too low."""
+    start, end = ward(1, 5.0)
+    chosen = (start >= FIRST) & (start < FIRST + 50 * DAY_SECONDS)
+    found = period(start[chosen], end[chosen], int(end[chosen].max()))
+
+    assert found.chosen_by == BY_ADMISSION
+    assert (found.warm_up_days, (found.last - found.first) // DAY_SECONDS) == (0, 50)
+    assert "too short to leave out the days" in found.note
+
+
+def test_a_crowd_on_the_first_day_misleads_nobody() -> None:
+    """A thousand short stays entered for one day don't make those still in at the end look too few."""
+    start, end = ward(2, 5.0)
+    touching = (end >= FIRST) & (start < LAST)
+    start, end = start[touching], np.where(end[touching] < LAST, end[touching], MISSING)
+    crowd = np.full(1_000, FIRST + 3_600)
+    found = period(np.concatenate([start, crowd]), np.concatenate([end, crowd + 7_200]), LAST)
+
+    assert found.last == LAST
+    assert found.chosen_by in (ALL_STAYS, BY_ADMISSION)
