@@ -32,7 +32,6 @@ if TYPE_CHECKING:
 
 _STEPS_HOURS = (24, 12, 6, 3, 2, 1)
 _STEADY_RATES, _RATES = 31, 7
-_MOST_YEARS = 12
 _NO_DRIFT = 1e-4
 # standard deviations: rates beyond are one in a thousand million
 _FARTHEST = 6.0
@@ -111,13 +110,13 @@ def _load_of(demand: Demand) -> _Load:
     )
 
 
-def _steady_queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> _Queue:
+def _steady_queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> tuple[Array, Array]:
     """Read the delay formula at each rate: exact shares for exponential stays, one step for the whole year."""
     spread, loads = spread_of(demand), load.wanted[0]
     below = np.minimum(loads, 0.999999 * counts[:, None])
     delayed = share_who_wait(loads, counts, spread.peakedness)
     days = load.mean_days * wait_ratio(spread, counts[:, None].astype(float), below) / (counts[:, None] - below)
-    return _Queue(delayed.T[None], days.T[None], np.minimum(loads, counts[:, None]).T)
+    return delayed.T[None], days.T[None]
 
 
 def _queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> _Queue:
@@ -125,16 +124,15 @@ def _queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> _Queue:
     settles = load.wanted.mean(axis=0)[:, None] < counts * (1.0 - _TOO_NEAR)
     rates, columns = np.nonzero(settles)
     shape = (load.wanted.shape[0], *settles.shape)
-    wait, days, in_use = np.ones(shape), np.full(shape, np.inf), np.where(settles, 0.0, counts)
+    wait, days = np.ones(shape), np.full(shape, np.inf)
+    in_use = np.minimum(load.wanted.mean(axis=0)[:, None], counts)
     if load.wanted.shape[0] == 1:
-        queue = _steady_queue(demand, load, counts)
-        wait, days = np.where(settles, queue.wait, 1.0), np.where(settles, queue.wait_days, np.inf)
-        in_use = queue.in_use
+        steady = _steady_queue(demand, load, counts)
+        wait, days = np.where(settles, steady[0], 1.0), np.where(settles, steady[1], np.inf)
     elif rates.size:
-        # an uncertain rate brings rates at which the queue takes many years: they hardly count, and are cut short
-        pace = Pace(load.step_days, load.mean_days, _MOST_YEARS if load.chance.size == 1 else 4)
+        pace = Pace(load.step_days, load.mean_days)
         year = settled_queue(spread_of(demand), counts, load.wanted[:, rates], columns, pace)
-        wait[:, settles], days[:, settles], in_use[settles] = year.wait, year.wait_days, year.in_use
+        wait[:, settles], days[:, settles] = year
     return _Queue(wait, days, in_use)
 
 

@@ -8,11 +8,11 @@ Symbols: a(t) beds wanted if nobody ever waited, c beds, m mean time a bed is he
 
 from __future__ import annotations
 
-import math
-from dataclasses import dataclass, fields
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
+from scipy.linalg import blas
 
 from bedplan.models.erlang import erlang_b_table
 from bedplan.models.waiting_spread import wait_ratio
@@ -27,7 +27,7 @@ if TYPE_CHECKING:
 _USES = np.unique(np.concatenate([np.linspace(1e-4, 0.98, 100), 1.0 - np.geomspace(1e-8, 0.3, 90)]))
 _POINTS = 500
 _LONGEST_QUEUE = 1e6
-_SETTLED = 3e-8
+_SETTLED, _MOST_TURNS = 1e-5, 60
 _FEW = 1e-3
 
 
@@ -51,20 +51,19 @@ def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -
 
 
 class Pace(NamedTuple):
-    """How long a step is, how long a bed is held on average, and after how many years a queue is taken as it is."""
+    """How long a step is, and how long a bed is held on average."""
 
     step_days: float
     mean_days: float
-    most_years: int
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class _Columns:
-    """What x says in each column, a bed count at one rate of arrival.
+    """What x says in each column, a bed count at one rate of arrival; ``number``: its place in the sheets.
 
-    Sheets ``(points, columns)`` evenly in arsinh((x − c)·scale), scale = 1/√c: the share of x that waits, the logarithm
-    of the mean wait, in mean stays, of those who wait, and ln C without its power law near no patients (see
-    ``_law``).
+    Sheets ``(points, columns)`` evenly in arsinh((x − c)·scale), scale = 1/√c: patients who wait × free beds, which
+    hardly changes once a queue is long; the logarithm of the mean wait, in mean stays, of those who wait; and ln C
+    without its power law near no patients (see ``_law``).
     """
 
     number: NDArray[np.int64]
@@ -73,25 +72,33 @@ class _Columns:
     first: Array
     steps: Array
     power: Array
-    queued: Array
+    product: Array
     log_stays: Array
     log_wait: Array
 
     def only(self, which: NDArray[np.int64]) -> _Columns:
-        """Return some of the columns."""
-        rest = (np.ascontiguousarray(getattr(self, one.name)[..., which]) for one in fields(self)[1:])
-        return _Columns(np.arange(which.size), *rest)
+        """Return some of the columns, or one several times; the sheets are shared."""
+        some = (getattr(self, name)[which] for name in ("number", "beds", "scale", "first", "steps", "power"))
+        return _Columns(*some, self.product, self.log_stays, self.log_wait)
 
     def place(self, present: Array) -> tuple[NDArray[np.int64], Array]:
         """Return the cell below each x and the way to the next, for x ``(..., columns)``."""
         at = (np.arcsinh((present - self.beds) * self.scale) - self.first) * self.steps
         np.minimum(at, _POINTS - 1.001, out=at)
         point = at.astype(np.int64)
-        return point * self.number.size + self.number, at - point
+        return point * self.product.shape[1] + self.number, at - point
 
-    def in_use(self, present: Array) -> Array:
-        """Return b(x) for x ``(..., columns)``."""
-        return present - present * _read(self.queued, *self.place(present))
+    def in_use(self, present: Array) -> tuple[Array, Array]:
+        """Return b(x) and its slope, for x ``(..., columns)``."""
+        cell, way = self.place(present)
+        flat, over = self.product.reshape(-1), present - self.beds
+        low = flat.take(cell)
+        rise = flat.take(cell + self.product.shape[1]) - low
+        # from (x − b)·(c − b) = product
+        root = np.sqrt(over**2 + 4.0 * (low + way * rise))
+        in_use = (present + self.beds - root) / 2.0
+        grows = rise * self.steps * self.scale / np.sqrt(1.0 + (over * self.scale) ** 2)
+        return in_use, np.clip((self.beds - in_use - grows) / np.maximum(root, 1e-9), 0.0, 1.0)
 
     def waits(self, present: Array) -> tuple[Array, Array]:
         """Return C and the mean wait in mean stays of those who wait, for x ``(..., columns)``."""
@@ -102,8 +109,9 @@ class _Columns:
     def queue_at(self, loads: Array) -> Array:
         """Return the queue of a steady ward at loads ``(..., columns)``; where they aren't below the beds, none."""
         sheet = self.beds + np.sinh(self.first + np.arange(_POINTS)[:, None] / self.steps) / self.scale
-        queued = self.queued * sheet
-        columns = zip(loads.T, queued.T, sheet.T, strict=True)
+        over = sheet - self.beds
+        waiting = (over + np.sqrt(over**2 + 4.0 * self.product[:, self.number])) / 2.0
+        columns = zip(loads.T, waiting.T, sheet.T, strict=True)
         queue = np.array([np.interp(load, present - wait, wait) for load, wait, present in columns]).T
         return np.where(loads < 0.999 * self.beds, np.maximum(queue, 0.0), 0.0)
 
@@ -148,80 +156,75 @@ def _columns(spread: Spread, counts: NDArray[np.int64]) -> _Columns:
     some = sheet > present[:, 0]
     sheets[2] = np.where(some, sheets[2] - _law(power, beds, sheet), 0.0)
     sheets[2, 0] = sheets[2, 1]
-    sheets[0] = np.where(some, np.maximum(1.0 - sheets[0] / np.where(some, sheet, 1.0), 0.0), 0.0)
+    sheets[0] = np.where(some, np.maximum(sheet - sheets[0], 0.0) * (beds - sheets[0]), 0.0)
     return _Columns(np.arange(beds.size), beds, 1.0 / np.sqrt(beds), first, 1.0 / step, power, *sheets)
 
 
-def _a_period(columns: _Columns, wanted: Array, queue: Array, share: float, present: Array) -> Array:
-    """Carry the queues through one period from the first row on, note x in each row, and return the queues after it."""
-    for row in range(wanted.shape[0]):
-        here = np.add(queue, wanted[row], out=present[row])
-        queue = queue + share * (wanted[row] - columns.in_use(here))
-    return queue
+def _at_least_waiting(wanted: Array, beds: Array, share: float) -> Array:
+    """Return the queue if every bed were in use as soon as anybody waits: never more than there is (Lindley 1952)."""
+    grown = np.cumsum(np.tile(share * (wanted - beds), (2, 1)), axis=0)
+    queue = grown - np.minimum.accumulate(np.minimum(grown, 0.0))
+    return queue[wanted.shape[0] - 1 : -1]
 
 
-def _settled(columns: _Columns, wanted: Array, pace: Pace) -> tuple[Array, Array]:
-    """Return x through a period, a year or a week, that comes back to itself, and the mean beds in use, by column.
+def _comes_back(kept: Array, added: Array) -> Array:
+    """Return what repeats with the period and follows δ(k+1) = kept(k)·δ(k) + added(k), all ``(steps, columns)``.
 
-    A queue a period on is nearly a straight line of the queue it starts from: two periods give the line, and the line
-    the queue that stays (Aitken 1926). Where even the busiest step keeps few waiting, nothing is carried.
+    What is added, and what is left of one unit from the start, one column after the other in one long recursion.
+    """
+    steps, columns = kept.shape
+    band = np.ones((2, columns, steps))
+    np.negative(kept.T, out=band[1])
+    band[1, :, -1] = 0.0
+    sums, shares = np.zeros((2, columns, steps))
+    sums[:, 1:], shares[:, 0] = added.T[:, :-1], 1.0
+    for rows in (sums, shares):
+        rows[:] = blas.dtbsv(1, band.reshape(2, -1), rows.ravel(), lower=1, diag=1, overwrite_x=1).reshape(rows.shape)
+    start = (kept[-1] * sums[:, -1] + added[-1]) / np.maximum(1.0 - kept[-1] * shares[:, -1], 1e-12)
+    return (sums + shares * start[:, None]).T
+
+
+def _settled(columns: _Columns, wanted: Array, share: float) -> Array:
+    """Return x through a period, a year or a week, that comes back to itself; beds give up ``share`` of b in a step.
+
+    All steps at once by Newton's method: b(x) bends one way only, so each turn comes nearer from the same side. Where
+    even the busiest step keeps few waiting, nothing is carried.
     """
     light = columns.queue_at(wanted)
     present = wanted + light
     busiest = np.take_along_axis(present, wanted.argmax(axis=0)[None], axis=0)
     keeps_few = columns.waits(busiest)[0][0] < _FEW
     left = np.flatnonzero((wanted.max(axis=0) >= columns.beds) | ~keeps_few)
-    queue, in_use = light[0, left], wanted.mean(axis=0)
-    share = pace.step_days / pace.mean_days
-    period_days = wanted.shape[0] * pace.step_days
-    for _ in range(math.ceil(182.0 * pace.most_years / period_days)):
-        some, asked = columns.only(left), wanted[:, left]
-        sheet = np.empty(asked.shape)
-        after = _a_period(some, asked, queue, share, sheet)
-        later = _a_period(some, asked, after, share, sheet)
-        present[:, left], in_use[left] = sheet, some.in_use(sheet).mean(axis=0)
-        moves = np.abs(later - after) > _SETTLED * some.beds * period_days
-        if not moves.any():
+    some, asked = columns.only(left), wanted[:, left]
+    present[:, left] = asked + np.maximum(
+        _at_least_waiting(asked, some.beds, share), some.queue_at(asked.mean(axis=0)[None])
+    )
+    for _ in range(_MOST_TURNS):
+        if not left.size:
             break
-        queue = _where_it_comes_back(queue, after, later)[moves]
-        left = left[moves]
-    return present, in_use
-
-
-def _where_it_comes_back(before: Array, after: Array, later: Array) -> Array:
-    """Follow the line through two periods' queues to the queue that stays the same."""
-    run, rise = after - before, later - after
-    slope = np.clip(np.divide(rise, run, out=np.zeros_like(run), where=np.abs(run) > 1e-12), 0.0, 0.9999)
-    return np.clip(after + rise / (1.0 - slope), 0.0, _LONGEST_QUEUE)
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class SettledQueue:
-    """The settled year or week, ``(steps, columns)``: who waits of those who come then, and for how long on average.
-
-    ``wait`` is a share; ``wait_days`` the mean over those who wait; ``in_use`` ``(columns,)`` mean beds in use.
-    """
-
-    wait: Array
-    wait_days: Array
-    in_use: Array
+        some, asked, here = columns.only(left), wanted[:, left], present[:, left]
+        in_use, slope = some.in_use(here)
+        queue = here - asked
+        missing = queue + share * (asked - in_use) - np.roll(queue, -1, axis=0)
+        change = np.maximum(_comes_back(1.0 - share * slope, missing), -queue)
+        present[:, left] = np.minimum(here + change, _LONGEST_QUEUE)
+        left = left[np.abs(change).max(axis=0) > _SETTLED * some.beds]
+    return present
 
 
 def settled_queue(
     spread: Spread, counts: NDArray[np.int64], wanted: Array, columns: NDArray[np.int64], pace: Pace
-) -> SettledQueue:
-    """How does the queue go through a year, or a week, that repeats for ever?
+) -> tuple[Array, Array]:
+    """Who waits of those who come in each step of a year, or a week, that repeats for ever, and how long on average?
 
     ``counts`` ``(n,)`` above 0, ascending; ``columns`` ``(k,)``: the place in ``counts`` of each column; ``wanted``
-    ``(steps, k)``: beds wanted if nobody ever waited, on average less than the beds. x follows
-    dx/dt = a'(t) + (a(t) − b(x))/m: without a queue x is a(t), whatever the shape of stay; with one, the beds give up
-    b(x)/m patients a day.
+    ``(steps, k)``: beds wanted if nobody ever waited, on average less than the beds. Returns the share who wait and
+    the mean days of those who do, both ``(steps, k)``. x follows dx/dt = a'(t) + (a(t) − b(x))/m: without a queue x is
+    a(t), whatever the shape of stay; with one, the beds give up b(x)/m patients a day.
 
     Source: Wang, Tipper & Banerjee 1996, IEEE INFOCOM (pointwise stationary fluid flow).
     Checked by: tests/models/test_waiting.py
     """
     wards = _columns(spread, counts).only(columns)
-    quietest = int(np.argmin(wanted[:, 0]))
-    present, in_use = _settled(wards, np.roll(wanted, -quietest, axis=0), pace)
-    wait, stays = wards.waits(np.roll(present, quietest, axis=0))
-    return SettledQueue(wait, pace.mean_days * stays, in_use)
+    wait, stays = wards.waits(_settled(wards, wanted, pace.step_days / pace.mean_days))
+    return wait, pace.mean_days * stays

@@ -21,6 +21,7 @@ from bedplan.models import (
     waiting,
 )
 from bedplan.models.waiting_spread import spread_of, wait_ratio
+from bedplan.models.waiting_year import Pace, settled_queue
 
 WINTER = (1.3, 1.2, 1.1, 1.0, 0.9, 0.9, 0.8, 0.8, 0.9, 1.0, 1.0, 1.1)
 EXPONENTIAL = LengthOfStay(4.0, 1.0, "gamma")
@@ -251,6 +252,18 @@ def test_seasons_of_no_size_change_nothing() -> None:
     assert other.turn_away_probability == pytest.approx(one.turn_away_probability, rel=1e-2)
     assert other.waits.mean_hours == pytest.approx(one.waits.mean_hours, rel=1e-2)
     assert other.occupancy == pytest.approx(one.occupancy, rel=1e-6)
+
+
+@pytest.mark.parametrize("use", [0.8, 0.97, 0.999, 0.99999])
+def test_a_queue_that_takes_lifetimes_to_settle(use: float) -> None:
+    """Carried through a year without seasons the queue comes to rest at Erlang's share and wait, however full the ward."""
+    beds = np.array([30])
+    wanted = np.full((364, 1), use * 30.0)
+    wait, days = settled_queue(spread_of(steady(24.0)), beds, wanted, np.array([0]), Pace(1.0, 4.0))
+
+    # wait of those who wait: m/(c − a)
+    assert wait[:, 0] == pytest.approx(float(erlang_c(use * 30.0, 30)), rel=5e-3)
+    assert days[:, 0] == pytest.approx(4.0 / (30.0 * (1.0 - use)), rel=1e-2)
 
 
 def test_a_very_quiet_ward() -> None:
