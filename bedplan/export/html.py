@@ -83,8 +83,8 @@ def _ward(case: WardCase, number: int) -> str:
         "<h3>What this rests on</h3>",
         _table(("Assumption", "Value", "From"), case.assumptions, WIDE),
         _table(("Changed by the planner", "Value"), case.settings),
-        *_check(case, number),
         _list(case.notes()),
+        *_check(case, number),
     ]
     return "\n".join(parts)
 
