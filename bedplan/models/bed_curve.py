@@ -5,12 +5,14 @@ A ``BedCurve`` holds the demand it was computed from, so that a justification ca
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
 from bedplan.errors import ImpossibleFigure
+from bedplan.models.figures import number, quoted
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -31,7 +33,15 @@ def bed_counts(beds: ArrayLike) -> NDArray[np.int64]:
 
     Checked by: tests/models/test_every_model.py
     """
-    given = np.atleast_1d(np.asarray(beds, dtype=float))
+    try:
+        given = np.atleast_1d(np.asarray(beds))
+    except ValueError:
+        given = np.zeros((0, 0))
+    if given.size and given.dtype.kind not in "iuf":
+        raise ImpossibleFigure(
+            f"{quoted(beds)} beds is not possible: bed counts are whole numbers from 0 to {MOST_BEDS:,}."
+        )
+    given = given.astype(float)
     if given.ndim != 1 or given.size == 0:
         raise ImpossibleFigure("Give at least one bed count, as a plain list.")
     bad = ~np.isfinite(given) | (given < 0) | (given != np.floor(given)) | (given > MOST_BEDS)
@@ -132,10 +142,11 @@ class BedCurve:
         Raises:
             ImpossibleFigure: the curve was not computed for that count.
         """
+        beds = number("{} beds", beds, (-math.inf, math.inf), "bed counts are whole numbers, 0 or more")
         place = int(np.searchsorted(self.beds, beds))
         if place == self.beds.size or self.beds[place] != beds:
             raise ImpossibleFigure(
-                f"{beds} beds is not on this curve, which runs from {self.beds[0]} to {self.beds[-1]} beds."
+                f"{beds:g} beds is not on this curve, which runs from {self.beds[0]} to {self.beds[-1]} beds."
             )
         return BedPoint(
             int(beds), float(self.turn_away_probability[place]), float(self.occupancy[place]), self.by_month[:, place]

@@ -4,39 +4,34 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, field, replace
-from typing import TYPE_CHECKING
 
 from bedplan.errors import ImpossibleFigure
-
-if TYPE_CHECKING:
-    from collections.abc import Iterable
-
-    from bedplan.models.stay import LengthOfStay
+from bedplan.models.figures import all_of_kind, listed, number, quoted, whole
+from bedplan.models.stay import LengthOfStay
 
 LARGEST_LOAD_BEDS = 20_000.0
+MOST_BOOKED_A_DAY = 20_000
 MOST_FACTOR_DRIFT = 0.05
 
 
-def _number(name: str, value: float, lowest: float, highest: float, allowed: str) -> float:
-    """Return the value as a float, or say in a sentence what is allowed."""
-    number = float(value)
-    if not (math.isfinite(number) and lowest <= number <= highest):
-        raise ImpossibleFigure(f"{name} of {value:g} is not possible: {allowed}.")
-    return number
-
-
-def _factors(name: str, values: Iterable[float], count: int) -> tuple[float, ...]:
+def _factors(name: str, values: object, count: int) -> tuple[float, ...]:
     """Return factors with mean exactly 1, or say what is wrong with them."""
-    numbers = tuple(float(value) for value in values)
-    if len(numbers) != count:
-        raise ImpossibleFigure(f"{name} need {count} numbers, but {len(numbers)} were given.")
-    if not all(math.isfinite(number) and number >= 0 for number in numbers):
-        worst = next(number for number in numbers if not (math.isfinite(number) and number >= 0))
-        raise ImpossibleFigure(f"{name} hold {worst:g}: each factor is a number of 0 or more.")
+    given = listed(values, f"{name} need {count} numbers")
+    if len(given) != count:
+        raise ImpossibleFigure(f"{name} need {count} numbers, but {len(given)} were given.")
+    said = f"A factor of {{}} among the {name[0].lower()}{name[1:]}"
+    numbers = [number(said, value, (0.0, 1e6), "each factor is a number of 0 or more") for value in given]
     mean = math.fsum(numbers) / count
     if abs(mean - 1.0) > MOST_FACTOR_DRIFT:
         raise ImpossibleFigure(f"{name} average {mean:.3f}: they must average 1, give or take 5 %.")
-    return tuple(number / mean for number in numbers)
+    return tuple(one / mean for one in numbers)
+
+
+def _checked_stay(stay: object) -> LengthOfStay:
+    """Return the length of stay, or say what was given instead."""
+    if not isinstance(stay, LengthOfStay):
+        raise ImpossibleFigure(f"A length of stay of {quoted(stay)} is not possible: give LengthOfStay(mean_days, …).")
+    return stay
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,18 +49,16 @@ class BookedList:
 
     def __post_init__(self) -> None:
         """Check every figure once, here."""
-        counts = tuple(self.per_weekday)
+        counts = listed(self.per_weekday, "A booked list needs 7 weekday counts, Monday first")
         if len(counts) != 7:
             raise ImpossibleFigure(f"A booked list needs 7 weekday counts, Monday first, but {len(counts)} were given.")
-        for count in counts:
-            if not (math.isfinite(count) and count >= 0 and count == int(count)):
-                raise ImpossibleFigure(
-                    f"{count:g} booked patients on a day is not possible: give whole numbers, 0 or more."
-                )
-        if self.hour not in range(24):
-            raise ImpossibleFigure(f"Hour {self.hour} is not on the clock: give a whole hour from 0 to 23.")
-        _number("A chance of attending", self.attends, 0.0, 1.0, "it lies between 0 and 1")
-        object.__setattr__(self, "per_weekday", tuple(int(count) for count in counts))
+        said, allowed = "{} booked patients on a day", "give whole numbers, 0 or more"
+        counts = tuple(whole(said, count, (0, MOST_BOOKED_A_DAY), allowed) for count in counts)
+        _checked_stay(self.length_of_stay)
+        hour = whole("Hour {}", self.hour, (0, 23), "give a whole hour from 0 to 23")
+        attends = number("A chance of attending of {}", self.attends, (0.0, 1.0), "it lies between 0 and 1")
+        for name, value in (("per_weekday", counts), ("hour", hour), ("attends", attends)):
+            object.__setattr__(self, name, value)
 
     @property
     def arrivals_per_day(self) -> float:
@@ -78,12 +71,12 @@ class BookedList:
         return self.arrivals_per_day * self.length_of_stay.mean_days
 
 
-# field -> (how it is called, lowest, highest, what is allowed)
+# field -> (how it is called, lowest and highest, what is allowed)
 _FIGURES = {
-    "arrivals_per_day": ("An arrival rate", 0.0, 1e6, "it is 0 or more patients a day"),
-    "clustering": ("A clustering", 0.01, 100.0, "variance ÷ mean of daily arrivals lies between 0.01 and 100"),
-    "rate_variation": ("A rate variation", 0.0, 2.0, "SD ÷ mean of the rate lies between 0 and 2"),
-    "turnaround_hours": ("A turnaround", 0.0, 240.0, "it lies between 0 and 240 hours"),
+    "arrivals_per_day": ("An arrival rate", (0.0, 1e6), "it is 0 or more patients a day"),
+    "clustering": ("A clustering", (0.01, 100.0), "variance ÷ mean of daily arrivals lies between 0.01 and 100"),
+    "rate_variation": ("A rate variation", (0.0, 2.0), "SD ÷ mean of the rate lies between 0 and 2"),
+    "turnaround_hours": ("A turnaround", (0.0, 240.0), "it lies between 0 and 240 hours"),
 }
 
 
@@ -121,15 +114,15 @@ class Demand:
     def __post_init__(self) -> None:
         """Check every figure once, here, so that models can trust them."""
         put = object.__setattr__
-        for name, (said, lowest, highest, allowed) in _FIGURES.items():
-            put(self, name, _number(said, getattr(self, name), lowest, highest, allowed))
+        for name, (said, limits, allowed) in _FIGURES.items():
+            put(self, name, number(f"{said} of {{}}", getattr(self, name), limits, allowed))
+        _checked_stay(self.length_of_stay)
         put(self, "month_factors", _factors("Month factors", self.month_factors, 12))
         put(self, "weekday_factors", _factors("Weekday factors", self.weekday_factors, 7))
         put(self, "hour_factors", _factors("Hour factors", self.hour_factors, 24))
-        put(self, "booked", tuple(self.booked))
+        put(self, "booked", all_of_kind(self.booked, BookedList, "Booked patients are a tuple of BookedList"))
         put(self, "weekend_slip", self._slip(self.weekend_slip))
-        if self.discharge_hours:
-            put(self, "discharge_hours", self._shares(self.discharge_hours))
+        put(self, "discharge_hours", self._shares(self.discharge_hours))
         load = self.arrivals_per_day * self.length_of_stay.mean_days
         load += math.fsum(one.offered_load for one in self.booked)
         if load > LARGEST_LOAD_BEDS:
@@ -140,23 +133,31 @@ class Demand:
         put(self, "_offered_load", load)
 
     @staticmethod
-    def _slip(chances: Iterable[float]) -> tuple[float, ...]:
+    def _slip(chances: object) -> tuple[float, ...]:
         """Return the chances for Saturday and Sunday, or say what is wrong."""
-        both = tuple(chances)
+        both = listed(chances, "A weekend slip needs two chances, for Saturday and for Sunday")
         if len(both) != 2:
-            raise ImpossibleFigure("A weekend slip needs two chances: one for Saturday and one for Sunday.")
-        return tuple(_number("A weekend slip", chance, 0.0, 1.0, "a chance lies between 0 and 1") for chance in both)
+            raise ImpossibleFigure(
+                f"A weekend slip needs two chances, for Saturday and for Sunday, but {len(both)} were given."
+            )
+        return tuple(
+            number("A weekend slip of {}", chance, (0.0, 1.0), "a chance lies between 0 and 1") for chance in both
+        )
 
     @staticmethod
-    def _shares(values: Iterable[float]) -> tuple[float, ...]:
-        """Return 24 shares that add up to 1, or say what is wrong."""
-        numbers = tuple(float(value) for value in values)
+    def _shares(values: object) -> tuple[float, ...]:
+        """Return 24 shares that add up to 1, or none, or say what is wrong."""
+        wanted = "Discharge hours need 24 shares of 0 or more, one for each hour from midnight, not all 0"
+        given = listed(values, wanted)
+        if not given:
+            return ()
+        if len(given) != 24:
+            raise ImpossibleFigure(f"{wanted}, but {len(given)} were given.")
+        numbers = [number("A discharge share of {}", one, (0.0, 1e9), "it is 0 or more") for one in given]
         total = math.fsum(numbers)
-        if len(numbers) != 24 or min(numbers) < 0 or not math.isfinite(total) or total <= 0:
-            raise ImpossibleFigure(
-                "Discharge hours need 24 shares of 0 or more, one for each hour from midnight, not all 0."
-            )
-        return tuple(number / total for number in numbers)
+        if total <= 0:
+            raise ImpossibleFigure(f"{wanted}, but all 24 given are 0.")
+        return tuple(one / total for one in numbers)
 
     @property
     def offered_load(self) -> float:

@@ -9,10 +9,9 @@ from scipy import sparse
 from scipy.sparse import linalg
 
 from bedplan.errors import ImpossibleFigure
+from bedplan.models.figures import ABOVE_ZERO, listed, number
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
-
     from numpy.typing import NDArray
 
     Array = NDArray[np.float64]
@@ -80,19 +79,14 @@ class StateGrid:
         return np.maximum(shares, 0.0)
 
 
-def checked_loads(loads: Iterable[float]) -> tuple[float, ...]:
+def checked_loads(loads: object) -> tuple[float, ...]:
     """Return the loads as floats, or say which is impossible."""
-    numbers = tuple(float(load) for load in loads)
-    for load in numbers:
-        if not 0 <= load <= 1e6:
-            raise ImpossibleFigure(f"An offered load of {load:g} beds is not possible: it is 0 or more.")
-    return numbers
+    said, allowed = "An offered load of {} beds", "it is 0 or more"
+    return tuple(number(said, one, (0.0, 1e6), allowed) for one in listed(loads, "Loads need one figure a kind"))
 
 
-def checked_stays(stay_days: Iterable[float]) -> tuple[float, ...]:
+def checked_stays(stay_days: object) -> tuple[float, ...]:
     """Return the mean stays as floats, or say which is impossible."""
-    numbers = tuple(float(days) for days in stay_days)
-    for days in numbers:
-        if not 0 < days <= 3_650:
-            raise ImpossibleFigure(f"A mean stay of {days:g} days is not possible: it is more than 0 days.")
-    return numbers
+    said, allowed = "A mean stay of {} days", "it is more than 0 days"
+    given = listed(stay_days, "Mean stays need one figure a kind")
+    return tuple(number(said, one, (ABOVE_ZERO, 3_650.0), allowed) for one in given)

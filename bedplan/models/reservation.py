@@ -8,8 +8,9 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models.bed_curve import bed_counts
+from bedplan.models.bed_curve import MOST_BEDS, bed_counts
 from bedplan.models.exact_chain import StateGrid, checked_loads, checked_stays
+from bedplan.models.figures import listed, whole
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -17,6 +18,8 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     Array = NDArray[np.float64]
+
+_LARGE = 1e200
 
 
 def beds_held_back(
@@ -36,8 +39,11 @@ def beds_held_back(
     """
     load, stay = checked_loads(loads), checked_stays(stay_days)
     count = int(bed_counts(beds)[0])
-    if not (0 <= held_back <= count and held_back == int(held_back)):
-        raise ImpossibleFigure(f"{held_back:g} beds held back of {count} is not possible: give 0 to {count}.")
+    if not (len(load) == len(stay) == 2):
+        raise ImpossibleFigure(f"Two loads and two stays are needed, but {loads!r} and {stay_days!r} were given.")
+    held_back = whole(
+        f"{{}} beds held back of {count}", held_back, (0, count), f"give a whole number from 0 to {count}"
+    )
     # the two kinds are told apart only where their stays differ
     other_beds = 0 if math.isclose(*stay) else count
     grid = StateGrid((count, other_beds), (slice(0, 2), count))
@@ -70,22 +76,21 @@ def beds_each(
     Checked by: tests/models/test_reservation.py
     """
     load, count = checked_loads(loads), int(bed_counts(beds)[0])
-    kept = [0] * len(load) if held_back is None else held_back
-    if not len(load) == len(beds_per_patient) == len(kept):
+    needs = listed(beds_per_patient, "Beds a patient need one figure a kind")
+    kept = [0] * len(load) if held_back is None else listed(held_back, "Beds held back need one figure a kind")
+    if not len(load) == len(needs) == len(kept):
         raise ImpossibleFigure("Loads, beds a patient and beds held back don't go together: give one for each kind.")
-    for need, spare in zip(beds_per_patient, kept, strict=True):
-        if not (need >= 1 and need == int(need) and spare >= 0 and spare == int(spare)):
-            raise ImpossibleFigure(
-                f"{need:g} beds a patient, {spare:g} held back: give whole numbers, 1 and 0 or more."
-            )
+    needs = [whole("{} beds a patient", need, (1, MOST_BEDS), "give whole numbers from 1") for need in needs]
+    kept = [whole("{} beds held back", spare, (0, MOST_BEDS), "give whole numbers, 0 or more") for spare in kept]
     weight = np.zeros(count + 1)
     weight[0] = 1.0
     for used in range(1, count + 1):
-        for one, need, spare in zip(load, beds_per_patient, kept, strict=True):
+        for one, need, spare in zip(load, needs, kept, strict=True):
             if need <= used <= count - spare:
                 weight[used] += one * need * weight[used - need] / used
+        # only their ratios count: keep them where a float can hold them
+        if weight[used] > _LARGE:
+            weight[: used + 1] /= weight[used]
     time = weight / weight.sum()
-    refused = [
-        time[max(count - need - spare + 1, 0) :].sum() for need, spare in zip(beds_per_patient, kept, strict=True)
-    ]
+    refused = [time[max(count - need - spare + 1, 0) :].sum() for need, spare in zip(needs, kept, strict=True)]
     return np.array(refused), time

@@ -11,8 +11,10 @@ import numpy as np
 from scipy import special
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models.bed_curve import bed_counts
-from bedplan.models.simulation_beds import all_empty, pass_through, settle_leaving
+from bedplan.models.bed_curve import MOST_BEDS
+from bedplan.models.demand import Demand
+from bedplan.models.figures import ABOVE_ZERO, number, whole
+from bedplan.models.simulation_beds import all_empty, pass_through, place_at_once, settle_leaving
 from bedplan.models.simulation_counts import Counts, counts_of, is_patient_in, joined, patient_days_of
 from bedplan.models.simulation_events import Part, draw_comers
 from bedplan.models.simulation_run import WardRun, extent_of
@@ -20,11 +22,11 @@ from bedplan.models.simulation_run import WardRun, extent_of
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from bedplan.models.demand import Demand
     from bedplan.models.simulation_run import Extent
 
     Array = NDArray[np.float64]
 
+WhenWardIsFull = Literal["leaves", "waits", "stays anyway"]
 _CELLS_AT_ONCE = 2_000_000
 _DEFAULT_RUN = WardRun()
 
@@ -34,7 +36,8 @@ class SimulatedWard:
     """What a simulated ward saw in the counted days, booked patients included.
 
     ``arrivals``: patients counted. ``turn_away_probability``: share who found no free bed when they came (booked ones
-    decided ahead: when a bed was looked for). ``occupancy``: mean patients in beds ÷ beds. ``by_month`` ``(12,)``,
+    decided ahead: when a bed was looked for). ``occupancy``: mean patients in beds ÷ beds, the mean of the year's where
+    they change by day; above 1 only where patients stay anyway. ``by_month`` ``(12,)``,
     January first: the same share by month of coming. ``gave_up``: share who waited and then left.
     ``booked_turn_away_probability``: the share among booked patients, 0 without any. ``mean_wait_hours``: over all
     patients, those who gave up included. The last five fields are what all these are counted from.
@@ -43,7 +46,7 @@ class SimulatedWard:
     demand: Demand
     beds: int
     seed: int
-    when_full: Literal["leaves", "waits"]
+    when_full: WhenWardIsFull
     run: WardRun
     arrivals: int
     turn_away_probability: float
@@ -73,6 +76,8 @@ class SimulatedWard:
         Techniques, section 6.3 (ratio).
         Checked by: tests/models/test_simulation.py
         """
+        limits, allowed = (ABOVE_ZERO, 1.0 - 1e-15), "it lies between 0 and 1"
+        confidence = number("A confidence of {}", confidence, limits, allowed)
         share, runs = self.turn_away_probability, self.came.size
         if share in (0.0, 1.0):
             hidden = -math.expm1(math.log((1.0 - confidence) / 2.0) / max(self.arrivals, 1))
@@ -83,43 +88,74 @@ class SimulatedWard:
 
     def share_waiting_over(self, hours: float) -> float:
         """Which share of all patients waited longer than this many hours, for a bed or until they gave up?"""
+        hours = number("A wait of {} hours", hours, (0.0, 1e9), "it is 0 or more")
         return float(np.count_nonzero(self.waited_hours > hours)) / max(self.arrivals, 1)
 
     def share_waiting_over_by_month(self, hours: float) -> Array:
         """Which share of those who came in each month waited longer than this many hours? ``(12,)``, January first."""
+        hours = number("A wait of {} hours", hours, (0.0, 1e9), "it is 0 or more")
         longer = np.bincount(self.waited_month[self.waited_hours > hours], minlength=12)
         by_month = longer / np.maximum(self.came_by_month, 1.0)
         return np.where(self.came_by_month > 0, by_month, self.share_waiting_over(hours))
 
 
-def _block(ward: tuple[Demand, int, WardRun, bool], extent: Extent, seed: int, first: int, count: int) -> Counts:
+@dataclass(frozen=True, slots=True)
+class _Plan:
+    """What is simulated: ``beds`` are all there are on the day on which most are open."""
+
+    demand: Demand
+    beds: int
+    run: WardRun
+    when_full: WhenWardIsFull
+
+    @property
+    def waits(self) -> bool:
+        """Whether patients wait for a bed that may come free."""
+        return self.when_full == "waits" and self.beds > 0
+
+
+def _block(plan: _Plan, extent: Extent, seed: int, first: int, count: int) -> Counts:
     """Play some replications through, side by side: the warm-up, then the counted days."""
-    demand, beds, run, waits = ward
+    demand, run = plan.demand, plan.run
     rate = np.ones(count)
     if demand.rate_variation > 1e-6:
         order = demand.rate_variation**-2
         chance = np.random.default_rng(np.random.SeedSequence(seed, spawn_key=(first, 2)))
         rate = chance.standard_gamma(order, count) / order
-    empties, warm_days = all_empty(count, beds), 0.0
+    at_once = plan.when_full == "stays anyway"
+    empties, held, warm_days = all_empty(count, plan.beds), np.zeros((0, count)), 0.0
     ends = (extent.warm_up_days, extent.end_day)
-    for number, (start_day, end_day) in enumerate(((0.0, ends[0]), ends)):
-        seeds = np.random.SeedSequence(seed, spawn_key=(first, number))
+    for part_number, (start_day, end_day) in enumerate(((0.0, ends[0]), ends)):
+        seeds = np.random.SeedSequence(seed, spawn_key=(first, part_number))
         part = Part(start_day, end_day, extent.warm_up_days, count, seeds)
-        comers = draw_comers(demand, run, part, rate, waits=waits)
-        comers = comers if waits and beds > 0 else settle_leaving(comers, demand)
-        passage = pass_through(empties, comers, demand)
-        if number == 0:
+        comers = draw_comers(demand, run, part, rate, waits=plan.when_full == "waits")
+        comers = comers if plan.waits else settle_leaving(comers, demand)
+        if at_once:
+            passage, held = place_at_once(held, comers, demand, plan.beds)
+        else:
+            passage = pass_through(empties, comers, demand)
+        if part_number == 0:
             warm_days = patient_days_of(comers, passage, extent, is_patient_in(comers, end_day))
-    counts = counts_of(comers, passage, extent, by_month=not demand.is_steady or bool(run.closures))
+    counts = counts_of(comers, passage, extent, by_month=not demand.is_steady or run.has_changing_beds)
     return replace(counts, patient_days=counts.patient_days + warm_days)
 
 
-def _checked(seed: int, when_full: str) -> None:
-    """Refuse a seed or an answer to "what do patients do?" that isn't one."""
-    if isinstance(seed, bool) or not isinstance(seed, int | np.integer) or seed < 0:
-        raise ImpossibleFigure(f"The seed {seed!r} is not possible: give a whole number, 0 or more.")
-    if when_full not in ("leaves", "waits"):
-        raise ImpossibleFigure(f"{when_full!r} is not something a simulated patient does: use 'leaves' or 'waits'.")
+def _plan(demand: Demand, beds: int, run: WardRun, seed: int, when_full: str) -> _Plan:
+    """Refuse what isn't possible, and say how many beds there are on the day on which most are open."""
+    if not isinstance(demand, Demand):
+        raise ImpossibleFigure(f"A demand of {demand!r} is not possible: give Demand(arrivals_per_day, …).")
+    if not isinstance(run, WardRun):
+        raise ImpossibleFigure(f"A run of {run!r} is not possible: give WardRun(…).")
+    whole("The seed {}", seed, (0, 2**63), "give a whole number, 0 or more")
+    if when_full not in ("leaves", "waits", "stays anyway"):
+        raise ImpossibleFigure(
+            f"{when_full!r} is not something a simulated patient does: use 'leaves', 'waits' or 'stays anyway'."
+        )
+    count = whole("{} beds", beds, (0, MOST_BEDS), f"bed counts are whole numbers from 0 to {MOST_BEDS:,}")
+    if not run.extra_by_day:
+        return _Plan(demand, count, run, when_full)
+    extra = tuple(max(one, -count) for one in run.extra_by_day)
+    return _Plan(demand, count + max(extra), replace(run, extra_by_day=extra), when_full)
 
 
 def simulate_ward(
@@ -127,53 +163,56 @@ def simulate_ward(
     beds: int,
     *,
     seed: int,
-    when_full: Literal["leaves", "waits"] = "leaves",
+    when_full: WhenWardIsFull = "leaves",
     run: WardRun = _DEFAULT_RUN,
 ) -> SimulatedWard:
     """What would this ward see, played through patient by patient?
 
     Any stay and rhythm, patients who come together, booked lists, drift of the rate (one rate a replication), hours
-    of leaving, turnaround, closures; who finds no free bed leaves, or waits, first come, first served. The same seed
+    of leaving, turnaround, closures, beds by day; who finds no free bed leaves, or waits, first come, first served, or
+    ``"stays anyway"``: is placed at once, beyond the beds, so that only the share who find the ward full hangs on the
+    beds. Patients of a bed that shuts stay in it until they leave. The same seed
     gives the same run; it gives the same patients whatever the beds, so that the difference between two bed counts
     isn't chance: where patients leave, every one let in with fewer beds is let in with more; where everyone waits as
-    long as it takes and no discharge slips past a weekend, nobody waits longer with more. Exact but for chance (``interval``) and for what is left of the empty start.
+    long as it takes and no discharge slips past a weekend, nobody waits longer with more. Exact but for chance
+    (``interval``) and for what is left of the empty start.
 
     Raises:
-        ImpossibleFigure: a bed count that isn't whole and 0 or more, a seed that isn't, another answer than the two.
+        ImpossibleFigure: a bed count that isn't whole and 0 or more, a seed that isn't, another answer than the three,
+            a closure that begins after the run.
 
     Source: Kiefer & Wolfowitz 1955, Transactions of the American Mathematical Society 78; thinned and grouped
         arrivals by their cumulative rate: Çinlar 1975, Introduction to Stochastic Processes.
     Checked by: tests/models/test_simulation.py (exact formulas, SimPy).
     """
-    _checked(seed, when_full)
-    count = int(bed_counts(beds)[0])
-    waits = when_full == "waits"
-    extent = extent_of(run, demand, count, waits=waits)
+    plan = _plan(demand, beds, run, seed, when_full)
+    extent = extent_of(plan.run, demand, plan.beds, waits=when_full == "waits")
     rows = max(demand.total_arrivals_per_day * extent.days, 1.0)
     blocks = math.ceil(extent.replications / min(max(_CELLS_AT_ONCE / rows, 10), 500))
     ends = np.linspace(0, extent.replications, blocks + 1).astype(int)
-    ward = (demand, count, run, waits)
-    counted = [_block(ward, extent, seed, int(first), int(last - first)) for first, last in pairwise(ends)]
-    return _result(ward, extent, seed, joined(counted))
+    seed = int(seed)
+    counted = [_block(plan, extent, seed, int(first), int(last - first)) for first, last in pairwise(ends)]
+    return _result(plan, int(beds), extent, seed, joined(counted))
 
 
-def _result(ward: tuple[Demand, int, WardRun, bool], extent: Extent, seed: int, counts: Counts) -> SimulatedWard:
+def _result(plan: _Plan, beds: int, extent: Extent, seed: int, counts: Counts) -> SimulatedWard:
     """Turn counts into shares. A month that wasn't counted apart gets the share of all."""
-    demand, beds, run, waits = ward
+    extra = plan.run.extra_by_day
+    open_beds = beds + sum(extra) / len(extra) if extra else float(beds)
     arrivals = float(counts.came.sum())
     share = float(counts.found_full.sum()) / max(arrivals, 1.0)
     months = counts.came_by_month
     by_month = np.where(months > 0, counts.full_by_month / np.maximum(months, 1.0), share)
-    bed_days = max(beds, 1) * extent.days * extent.replications
+    bed_days = open_beds * extent.days * extent.replications
     return SimulatedWard(
-        demand=demand,
+        demand=plan.demand,
         beds=beds,
-        seed=int(seed),
-        when_full="waits" if waits else "leaves",
-        run=run,
+        seed=seed,
+        when_full=plan.when_full,
+        run=plan.run,
         arrivals=int(arrivals),
         turn_away_probability=share,
-        occupancy=counts.patient_days / bed_days,
+        occupancy=counts.patient_days / bed_days if bed_days > 0 else 0.0,
         by_month=by_month,
         gave_up=counts.gave_up / max(arrivals, 1.0),
         booked_turn_away_probability=counts.booked_full / max(counts.booked, 1.0),

@@ -25,10 +25,11 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class Passage:
-    """When each comer's bed was ready, ``(rows, replications)``, and when the patient in it left."""
+    """When each comer's bed was ready, ``(rows, replications)``, when the patient in it left, and who found no free bed."""
 
     bed_ready: Array
     left: Array
+    found_full: NDArray[np.bool_]
 
 
 def all_empty(replications: int, beds: int) -> Array:
@@ -85,7 +86,33 @@ def pass_through(empties: Array, comers: Comers, demand: Demand) -> Passage:
         if latest is not None:
             free_again = np.where(begin <= latest[row], free_again, emptied)
         flat.put(bed, free_again)
-    return Passage(ready, left)
+    return Passage(ready, left, ready > comers.at)
+
+
+def held_until(comers: Comers, demand: Demand) -> Array:
+    """Until when does each comer of a ward where every stay starts at once hold a bed? Turnaround and shut beds included."""
+    until = comers.at + comers.stay_days + demand.turnaround_hours / 24.0
+    if comers.ahead_days is not None:
+        until += comers.ahead_days
+    return until if comers.shut_until is None else np.maximum(until, comers.shut_until)
+
+
+def place_at_once(held: Array, comers: Comers, demand: Demand, beds: int) -> tuple[Passage, Array]:
+    """Give everybody a bed at once, however many there are, and see who finds as many taken as there are beds.
+
+    ``held`` ``(any, replications)``: until when beds are held by those who came before this part, in any order. Returns
+    the same for the next part too.
+
+    Checked by: tests/models/test_simulation.py
+    """
+    until = held_until(comers, demand)
+    everyone = np.concatenate([held, until])
+    emptied = np.sort(everyone, axis=0)
+    taken = np.arange(held.shape[0], everyone.shape[0])[:, None] - np.stack(
+        [np.searchsorted(ends, at, side="right") for ends, at in zip(emptied.T, comers.at.T, strict=True)], axis=1
+    )
+    left = until - demand.turnaround_hours / 24.0
+    return Passage(comers.at, left, taken >= beds), everyone
 
 
 def _end_of_stay(comers: Comers, demand: Demand, row: int, begin: Array) -> Array:

@@ -60,7 +60,7 @@ def patient_days_of(comers: Comers, passage: Passage, extent: Extent, is_patient
 def counts_of(comers: Comers, passage: Passage, extent: Extent, *, by_month: bool) -> Counts:
     """Count everybody who came in the counted days; by month of coming only where months differ."""
     is_patient = is_patient_in(comers, extent.end_day)
-    full = (passage.bed_ready > comers.at) & is_patient
+    full = passage.found_full & is_patient
     places = np.flatnonzero(full)
     at, ready = comers.at.ravel()[places], passage.bed_ready.ravel()[places]
     patience = np.broadcast_to(comers.patience_days, full.shape).reshape(-1)[places]

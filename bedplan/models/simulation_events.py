@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bedplan.models.simulation_run import DAYS_A_YEAR
+from bedplan.models.simulation_run import DAYS_A_YEAR, YEAR_DAYS
 from bedplan.models.year import HOURS_A_YEAR, unbooked_by_hour
 
 if TYPE_CHECKING:
@@ -160,11 +160,37 @@ def _booked(one: BookedList, run: WardRun, part: Part, rng: np.random.Generator)
     return asked, come - asked, columns
 
 
+def _beds_shut_by_day(run: WardRun, part: Part) -> tuple[Array, Array]:
+    """Return from when until when each bed is shut that is open on some days of the year only."""
+    by_day = np.array(run.extra_by_day)
+    starts, ends = [np.zeros(0)], [np.zeros(0)]
+    years = np.arange((part.start_day - part.first_day_of_year) // DAYS_A_YEAR - 1, part.end_day // DAYS_A_YEAR + 1)
+    for level in range(int(by_day.min()), int(by_day.max())):
+        # a bed of this level closes on the first and opens on the second kind of day; some day it is open
+        is_open = by_day > level
+        closes = np.flatnonzero(~is_open & np.roll(is_open, 1))
+        opens = np.flatnonzero(is_open & ~np.roll(is_open, 1))
+        length = (opens[np.searchsorted(opens, closes) % opens.size] - closes) % YEAR_DAYS
+        begin = (part.first_day_of_year + DAYS_A_YEAR * years[:, None] + closes).ravel()
+        starts.append(begin)
+        ends.append(begin + np.tile(length, years.size))
+    begin, end = np.concatenate(starts), np.concatenate(ends)
+    if part.start_day == 0.0:
+        begin = np.where(end > 0.0, np.maximum(begin, 0.0), begin)
+    inside = (begin >= part.start_day) & (begin < part.end_day)
+    return begin[inside], end[inside]
+
+
 def _closures(run: WardRun, part: Part) -> tuple[Array, Array, NDArray[np.int64]]:
     """Draw every shut bed: from, until, and the replication."""
     rng = part.rng(_CLOSURES)
-    starts, ends, columns = [], [], []
     everywhere = np.arange(part.replications)
+    starts, ends, columns = [np.zeros(0)], [np.zeros(0)], [np.zeros(0, dtype=np.int64)]
+    if run.extra_by_day:
+        begin, end = _beds_shut_by_day(run, part)
+        starts.append(np.repeat(begin, part.replications))
+        ends.append(np.repeat(end, part.replications))
+        columns.append(np.tile(everywhere, begin.size))
     for one in run.closures:
         if one.from_day is not None:
             begin = np.full(part.replications, part.first_day_of_year + one.from_day)
@@ -210,7 +236,7 @@ def _listed(demand: Demand, run: WardRun, part: Part, rate: Array) -> Comers:
         at, ahead, column = _booked(one, run, part, booked_rng)
         stay = one.length_of_stay.sample(at.size, booked_rng)
         rows.append((at, column, stay, ahead, np.zeros(at.size), np.full(at.size, BOOKED)))
-    if run.closures:
+    if run.has_changing_beds:
         at, until, column = _closures(run, part)
         none = np.zeros(at.size)
         rows.append((at, column, none, none, until, none + CLOSURE))
@@ -221,7 +247,7 @@ def _listed(demand: Demand, run: WardRun, part: Part, rate: Array) -> Comers:
     at, stay, ahead, until, kind = _packed(part.replications, at, column.astype(np.int64), fields)
     kind += NOBODY
     at = np.where(kind == NOBODY, part.end_day, at)
-    return Comers(at, stay, math.inf, kind, ahead, until if run.closures else None)
+    return Comers(at, stay, math.inf, kind, ahead, until if run.has_changing_beds else None)
 
 
 def _plain(demand: Demand, run: WardRun, part: Part, rate: Array) -> Comers:
@@ -249,7 +275,9 @@ def draw_comers(demand: Demand, run: WardRun, part: Part, rate: Array, *, waits:
 
     Checked by: tests/models/test_simulation.py
     """
-    is_plain = demand.clustering <= 1.0 and not demand.booked and not run.closures and demand.arrivals_per_day > 0
+    is_plain = (
+        demand.clustering <= 1.0 and not demand.booked and not run.has_changing_beds and demand.arrivals_per_day > 0
+    )
     comers = (_plain if is_plain else _listed)(demand, run, part, rate)
     is_idle = comers.at >= part.end_day
     if comers.kind is not None:

@@ -7,22 +7,21 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
 from bedplan.errors import ImpossibleFigure
+from bedplan.models.bed_curve import MOST_BEDS
+from bedplan.models.figures import ABOVE_ZERO, all_of_kind, listed, number, whole
 
 if TYPE_CHECKING:
     from bedplan.models.demand import Demand
 
-DAYS_A_YEAR = 364.0
+YEAR_DAYS = 364
+DAYS_A_YEAR = float(YEAR_DAYS)
 USUAL_ARRIVALS = 1_000_000
 MOST_REPLICATIONS, FEWEST_REPLICATIONS = 1_000, 20
 LONGEST_WARM_UP_DAYS = 40.0 * DAYS_A_YEAR
 MOST_YEARS = 200
+_LONGEST_RUN_DAYS = 1_000.0 * DAYS_A_YEAR
+_MOST_RUNS = 1_000_000
 _FORGOTTEN = 1e-3
-
-
-def _at_least(name: str, value: float, lowest: float) -> None:
-    """Refuse a figure below what it may be."""
-    if not value >= lowest:
-        raise ImpossibleFigure(f"{name} of {value:g} is not possible: it is {lowest:g} or more.")
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,11 +41,14 @@ class Closure:
 
     def __post_init__(self) -> None:
         """Check every figure once, here."""
-        if self.beds != int(self.beds) or self.beds < 1:
-            raise ImpossibleFigure(f"{self.beds:g} closed beds is not possible: give a whole number above 0.")
-        if not (math.isfinite(self.days) and self.days > 0):
-            raise ImpossibleFigure(f"A closure of {self.days:g} days is not possible: it is more than 0.")
-        _at_least("A closure rate", self.per_year, 0.0)
+        put, days = object.__setattr__, (0.0, _LONGEST_RUN_DAYS)
+        beds = whole("{} closed beds", self.beds, (1, MOST_BEDS), "give a whole number above 0")
+        put(self, "beds", beds)
+        put(self, "days", number("A closure of {} days", self.days, (ABOVE_ZERO, days[1]), "it is more than 0"))
+        rate = number("A closure rate of {} a year", self.per_year, (0.0, 36_500.0), "it is 0 to 36,500")
+        put(self, "per_year", rate)
+        if self.from_day is not None:
+            put(self, "from_day", number("A closure from day {} on", self.from_day, days, "0 is the first day"))
         if (self.from_day is None) == (self.per_year == 0.0):
             raise ImpossibleFigure("A closure has either a first day or a number of times a year.")
 
@@ -63,6 +65,8 @@ class WardRun:
     or ``"fixed"`` (the two whole sizes around it; a clustering of 2 is pairs). Below 1 arrivals are evened out by gamma gaps.
     ``booked_decided_at``: the hour at which the bed for a booked patient is looked for, and kept; with none free the
     patient is cancelled. None = a booked patient comes and then leaves or waits like the others.
+    ``extra_by_day``: beds more (or fewer) open on each of the 364 days of the year, the first a Monday in the first
+    week of January; empty = the same beds every day. Beds close at midnight as in a ``Closure``: those that empty first.
 
     Raises:
         ImpossibleFigure: a figure outside its meaning.
@@ -75,22 +79,46 @@ class WardRun:
     groups: Literal["geometric", "fixed"] = "geometric"
     booked_decided_at: int | None = None
     closures: tuple[Closure, ...] = field(default=())
+    extra_by_day: tuple[int, ...] = ()
 
     def __post_init__(self) -> None:
         """Check every figure once, here."""
-        if self.replications is not None and (self.replications != int(self.replications) or self.replications < 2):
-            raise ImpossibleFigure(f"{self.replications:g} replications is not possible: give 2 or more.")
-        if self.days is not None and not (math.isfinite(self.days) and self.days > 0):
-            raise ImpossibleFigure(f"A run of {self.days:g} days is not possible: it is more than 0.")
+        put, days = object.__setattr__, _LONGEST_RUN_DAYS
+        if self.replications is not None:
+            allowed = f"give a whole number from 2 to {_MOST_RUNS:,}"
+            put(self, "replications", whole("{} replications", self.replications, (2, _MOST_RUNS), allowed))
+        if self.days is not None:
+            put(
+                self,
+                "days",
+                number("A run of {} days", self.days, (ABOVE_ZERO, days), f"it is above 0, at most {days:,.0f}"),
+            )
         if self.warm_up_days is not None:
-            _at_least("A warm-up", self.warm_up_days, 0.0)
-        if not self.patience_days > 0:
-            raise ImpossibleFigure(f"A patience of {self.patience_days:g} days is not possible: it is more than 0.")
+            allowed = f"it is 0 to {days:,.0f} days"
+            put(self, "warm_up_days", number("A warm-up of {} days", self.warm_up_days, (0.0, days), allowed))
+        if self.patience_days != math.inf:
+            number("A patience of {} days", self.patience_days, (ABOVE_ZERO, 1e9), "it is more than 0")
         if self.groups not in ("geometric", "fixed"):
             raise ImpossibleFigure(f"Groups of kind {self.groups!r} are not known: use 'geometric' or 'fixed'.")
-        if self.booked_decided_at is not None and self.booked_decided_at not in range(24):
-            raise ImpossibleFigure(f"Hour {self.booked_decided_at} is not on the clock: give 0 to 23.")
-        object.__setattr__(self, "closures", tuple(self.closures))
+        if self.booked_decided_at is not None:
+            put(self, "booked_decided_at", whole("Hour {}", self.booked_decided_at, (0, 23), "give 0 to 23"))
+        put(self, "closures", all_of_kind(self.closures, Closure, "Closures are a tuple of Closure"))
+        put(self, "extra_by_day", self._days_of_beds(self.extra_by_day))
+
+    @staticmethod
+    def _days_of_beds(values: object) -> tuple[int, ...]:
+        """Return extra beds for each day of the year, or none, or say what is wrong."""
+        wanted = f"Extra beds by day need {YEAR_DAYS} whole numbers"
+        given = listed(values, wanted)
+        if given and len(given) != YEAR_DAYS:
+            raise ImpossibleFigure(f"{wanted}, but {len(given)} were given.")
+        limits, allowed = (-MOST_BEDS, MOST_BEDS), "give whole numbers, below 0 for fewer"
+        return tuple(whole("{} extra beds", one, limits, allowed) for one in given)
+
+    @property
+    def has_changing_beds(self) -> bool:
+        """Whether beds open or close in the course of the run."""
+        return bool(self.closures) or len(set(self.extra_by_day)) > 1
 
 
 @dataclass(frozen=True, slots=True)
@@ -147,6 +175,11 @@ def extent_of(run: WardRun, demand: Demand, beds: int, *, waits: bool) -> Extent
         years = USUAL_ARRIVALS / (run.replications or MOST_REPLICATIONS) / (a_day * DAYS_A_YEAR)
         is_dated = any(one.from_day is not None for one in run.closures)
         days = DAYS_A_YEAR * (1 if is_dated else min(max(math.ceil(years), 1), MOST_YEARS))
+    for one in run.closures:
+        if one.from_day is not None and one.from_day >= days:
+            raise ImpossibleFigure(
+                f"A closure from day {one.from_day:g} on is not possible: the run has {days:g} days."
+            )
     wanted = math.ceil(USUAL_ARRIVALS / (a_day * days))
     replications = run.replications or min(max(wanted, FEWEST_REPLICATIONS), MOST_REPLICATIONS)
     return Extent(int(replications), float(days), 7.0 * math.ceil(warm_up / 7.0))

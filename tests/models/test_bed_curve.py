@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 
 import numpy as np
 import pytest
@@ -39,6 +40,15 @@ def test_impossible_counts_are_quoted(beds: object) -> None:
     quoted = beds[-1] if isinstance(beds, list) else beds
     with pytest.raises(ImpossibleFigure, match=rf"^{quoted:g} beds is not possible: .*whole numbers from 0 to 20,000"):
         bed_counts(beds)
+
+
+@pytest.mark.parametrize("beds", ["4", None, True, {}, ["4", "5"], [4, None]])
+def test_what_is_no_count_is_quoted(beds: object) -> None:
+    """Text, nothing, yes and no are no bed counts, alone or in a list, and not on any curve either."""
+    with pytest.raises(ImpossibleFigure, match=rf"^{re.escape(repr(beds))} beds is not possible: "):
+        bed_counts(beds)
+    with pytest.raises(ImpossibleFigure, match=rf"^{re.escape(repr(beds))} beds is not possible: "):
+        curve([4, 6, 9]).at(beds)
 
 
 @pytest.mark.parametrize(("beds", "says"), [([], "at least one"), ([[1], [2]], "plain list"), ([2, 2], "must go up")])

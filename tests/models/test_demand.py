@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -62,8 +63,8 @@ def test_factors_near_mean_one_are_brought_to_it(data: st.DataObject) -> None:
         (lambda flat: flat[:-1], "need .* numbers, but"),
         (lambda flat: [1.06 * one for one in flat], r"average 1\.060: they must average 1, give or take 5 %"),
         (lambda flat: [0.94 * one for one in flat], r"average 0\.940"),
-        (lambda flat: [-1.0, *flat[1:]], "hold -1: each factor"),
-        (lambda flat: [math.nan, *flat[1:]], "hold nan: each factor"),
+        (lambda flat: [-1.0, *flat[1:]], "factor of -1 among .* factors is not possible: each factor"),
+        (lambda flat: [math.nan, *flat[1:]], "factor of nan among"),
     ],
     ids=["too few", "too high", "too low", "negative", "nan"],
 )
@@ -88,8 +89,19 @@ def test_factors_that_mean_nothing_are_refused(name: str, spoil: object, says: s
         ("weekend_slip", (0.3, 1.2), "between 0 and 1"),
         ("weekend_slip", (0.3,), "two chances"),
         ("discharge_hours", (1.0,) * 23, "24 shares"),
-        ("discharge_hours", (0.0,) * 24, "not all 0"),
+        ("discharge_hours", (0.0,) * 24, "all 24 given are 0"),
         ("discharge_hours", (-1.0, *(1.0,) * 23), "0 or more"),
+        ("discharge_hours", None, "24 shares of 0 or more.*None was given"),
+        ("arrivals_per_day", "4", "arrival rate of '4' is not possible"),
+        ("arrivals_per_day", None, "arrival rate of None"),
+        ("arrivals_per_day", [4.0], r"arrival rate of \[4.0\]"),
+        ("length_of_stay", 4.0, "length of stay of 4 is not possible"),
+        ("month_factors", None, "need 12 numbers, but None"),
+        ("hour_factors", "1" * 24, "need 24 numbers, but '1111"),
+        ("weekday_factors", (1, 1, 1, 1, 1, 1, "1"), "factor of '1' among the weekday factors"),
+        ("booked", 3, "tuple of BookedList, but 3"),
+        ("booked", (LengthOfStay(1.0),), "tuple of BookedList, but LengthOfStay"),
+        ("weekend_slip", None, "two chances, for Saturday and for Sunday, but None"),
     ],
 )
 def test_each_figure_says_what_is_allowed(figure: str, value: object, allowed: str) -> None:
@@ -109,6 +121,8 @@ def test_discharge_hours_become_shares() -> None:
     """Discharge counts by hour are brought to shares that add up to 1."""
     hours = Demand(1.0, STAY, discharge_hours=(0.0,) * 12 + (3.0,) + (1.0,) + (0.0,) * 10).discharge_hours
 
+    assert Demand(1.0, STAY, discharge_hours=np.array(hours)).discharge_hours == hours
+    assert Demand(1.0, STAY, discharge_hours=[]).discharge_hours == ()
     assert hours[12:14] == (0.75, 0.25)
     assert math.fsum(hours) == 1.0
 
@@ -139,9 +153,14 @@ def test_any_rhythm_ends_steadiness(figure: str) -> None:
         ({"per_weekday": (1, 1, 1, 1, 1, -2, 0)}, "-2 booked patients"),
         ({"per_weekday": (1, 1, 1, 1, 1, 0.5, 0)}, "0.5 booked patients"),
         ({"per_weekday": (math.nan,) * 7}, "nan booked patients"),
-        ({"hour": 24}, "Hour 24 is not on the clock"),
-        ({"hour": 8.5}, "Hour 8.5 is not on the clock"),
+        ({"hour": 24}, "Hour 24 is not possible: give a whole hour from 0 to 23"),
+        ({"hour": 8.5}, "Hour 8.5 is not possible"),
         ({"attends": 1.1}, "between 0 and 1"),
+        ({"attends": None}, "attending of None"),
+        ({"hour": "9"}, "Hour '9' is not possible"),
+        ({"per_weekday": None}, "7 weekday counts, Monday first, but None"),
+        ({"per_weekday": ("1",) * 7}, "'1' booked patients"),
+        ({"length_of_stay": 2.0}, "length of stay of 2"),
     ],
 )
 def test_a_booked_list_says_what_is_wrong(changes: dict[str, object], says: str) -> None:

@@ -147,11 +147,29 @@ def test_no_beds_refuse_everyone() -> None:
         (lambda: beds_held_back((1.0, 1.0), 250, 1, (1.0, 2.0)), "too large to be solved exactly"),
         (lambda: beds_each([1.0], [1, 2], 5), "one for each kind"),
         (lambda: beds_each([1.0], [0], 5), "0 beds a patient"),
-        (lambda: beds_each([1.0], [1], 5, [-1]), "-1 held back"),
+        (lambda: beds_each([1.0], [1], 5, [-1]), "-1 beds held back"),
         (lambda: beds_each([math.nan], [1], 5), "load of nan beds"),
+        (lambda: beds_each(None, [1], 5), "None was given"),
+        (lambda: beds_each([1.0], ["1"], 5), "'1' beds a patient"),
+        (lambda: beds_held_back((1.0,), 5, 1), "Two loads"),
+        (lambda: beds_held_back((1.0, None), 5, 1), "load of None beds"),
     ],
 )
 def test_impossible_reservations_are_explained(make: Callable[[], object], says: str) -> None:
     """Each figure outside its meaning is quoted in a sentence that says what is allowed."""
     with pytest.raises(ImpossibleFigure, match=says):
         make()
+
+
+def test_a_ward_of_thousands_of_beds_has_shares() -> None:
+    """Weights too large for a float are rescaled: 9,000 beds at loads of 5,000 give what their logarithms give."""
+    weight = np.full(9_001, -np.inf)
+    weight[0] = 0.0
+    for used in range(1, 9_001):
+        # Kaufman 1981: used · weight(used) = Σ load · need · weight(used − need), in logarithms
+        one = math.log(5e3) + weight[used - 1]
+        two = math.log(1e4) + weight[used - 2] if used > 1 else -np.inf
+        weight[used] = np.logaddexp(one, two) - math.log(used)
+    shares = np.exp(weight - np.logaddexp.reduce(weight))
+
+    assert beds_each((5e3, 5e3), (1.0, 2.0), 9_000)[0] == pytest.approx([shares[-1], shares[-2:].sum()], rel=1e-9)

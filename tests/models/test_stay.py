@@ -202,16 +202,42 @@ def test_two_quantiles(low: tuple[float, float], high: tuple[float, float]) -> N
         (lambda: LengthOfStay.measured([], []), "0 were given"),
         (lambda: LengthOfStay.measured([0, 1, 2], [1, 0]), "3 days and 2 shares"),
         (lambda: LengthOfStay.measured([0, 2, 1], [1, 0.5, 0]), "go up"),
-        (lambda: LengthOfStay.measured([-1, 2, 3], [1, 0.5, 0]), "from -1 on"),
-        (lambda: LengthOfStay.measured([0, 2, 3], [1, math.nan, 0]), "never rises"),
+        (lambda: LengthOfStay.measured([-1, 2, 3], [1, 0.5, 0]), "A day -1 of"),
+        (lambda: LengthOfStay.measured([0, 2, 3], [1, math.nan, 0]), "share of nan"),
         (lambda: LengthOfStay.measured([0, 2, 3], [1, 0.5, 0.2]), "ends at 0"),
         (lambda: LengthOfStay.measured(range(80), np.linspace(1, 0, 80)), "80 were given"),
         (lambda: LengthOfStay.from_two_quantiles((0.9, 1.0), (0.1, 2.0)), "0.9 and 0.1"),
         (lambda: LengthOfStay.from_two_quantiles((0.1, 3.0), (0.9, 2.0)), "3 and 2 days"),
         (lambda: LengthOfStay(4.0).quantile([0.5, 1.2]), "between 0 and 1"),
+        (lambda: LengthOfStay(4.0).quantile(-0.1), "between 0 and 1"),
+        (lambda: LengthOfStay(None), "mean stay of None days"),
+        (lambda: LengthOfStay("4"), "mean stay of '4' days"),
+        (lambda: LengthOfStay(4.0, [1.0]), r"spread of stay of \[1.0\]"),
+        (lambda: LengthOfStay.two_streams(None, LengthOfStay(1.0), LengthOfStay(2.0)), "share of None"),
+        (lambda: LengthOfStay.two_streams(0.5, 1.0, LengthOfStay(2.0)), "1.0 was given"),
+        (lambda: LengthOfStay.measured(None, None), "None was given"),
+        (lambda: LengthOfStay.measured([0, 1], [1, "none"]), "share of 'none'"),
+        (lambda: LengthOfStay.measured([0, 1e-300], [1, 0]), "falls to 0 at once"),
+        (lambda: LengthOfStay.from_two_quantiles((0.05, 1.0), (0.0500001, 100.0)), "too far apart"),
+        (lambda: LengthOfStay.from_two_quantiles(0.05, (0.95, 9.0)), "0.05 was given"),
+        (lambda: LengthOfStay.from_two_quantiles((0.05, "1"), (0.95, 9.0)), "length of stay of '1' days"),
+        (lambda: LengthOfStay(4.0).survival(math.nan), "nan days"),
+        (lambda: LengthOfStay(4.0).scaled(0.0), "mean stay of 0 days"),
+        (lambda: LengthOfStay(4.0).scaled("2"), "Stays '2' times as long"),
+        (lambda: LengthOfStay(4.0).sample(1.5, np.random.default_rng(1)), "1.5 stays to draw"),
     ],
 )
 def test_impossible_figures(build: object, words: str) -> None:
     """A figure outside its meaning is refused in a sentence that quotes it."""
     with pytest.raises(ImpossibleFigure, match=words):
         build()
+
+
+@every_stay
+def test_before_a_stay_begins_and_after_all_have_left(stay: LengthOfStay) -> None:
+    """Everyone stays past a day before the first, with all their bed-days ahead; nothing is left in the end."""
+    assert stay.survival([-1.0, 0.0]).tolist() == [1.0, 1.0]
+    assert stay.share_of_bed_days_past(-1.0) == pytest.approx(1.0)
+    assert stay.share_of_bed_days_past(math.inf) < 1e-100
+    assert stay.survival(math.inf) < 1e-100
+    assert stay.squared_days_beyond(math.inf) < 1e-60
