@@ -100,7 +100,7 @@ def _check(case: WardCase, number: int) -> list[str]:
     return [
         *parts,
         _table(("What was checked", "Last year", "Held against"), case.check.figures, WIDE),
-        _paragraphs([case.check.promise]),
+        f'<p class="lead">{html.escape(case.check.promise)}</p>',
         f'<div class="side">{figure}{_table(heading, rows)}</div>',
         _list(case.check.notes),
     ]

@@ -86,7 +86,7 @@ def test_the_document_holds_the_check(paper: Justification, failed: Backtest) ->
 
     for what, figure, beside in failed.figures:
         assert f"<tr><td>{what}</td><td>{figure}</td><td>{beside}</td></tr>" in page
-    assert f"<p>{failed.promise}</p>" in page
+    assert f'<p class="lead">{failed.promise}</p>' in page
     for level, held in failed.calibration:
         assert f"<tr><td>{wording.percent(level)}</td><td>{wording.percent(held)}</td>" in page
     for note in failed.notes:
