@@ -70,7 +70,10 @@ def use_files(given: Files | None) -> None:
 def use_files_again(given: Files) -> None:
     """Plan with the same file read another way: what was set stays, what stood as it started starts anew."""
     settings = st.session_state.get("settings", {})
-    as_started = [name for name, values in settings.items() if values.get("beds") == beds_at_start(name)]
+    listed = () if given.capacity is None else given.capacity.wards
+    as_started = [
+        name for name, values in settings.items() if name not in listed and values.get("beds") == beds_at_start(name)
+    ]
     for name in as_started:
         settings[name] = {key: value for key, value in settings[name].items() if key != "beds"}
     loaded.use(given)

@@ -114,7 +114,7 @@ def _whole_period(days: tuple[dt.date | None, dt.date | None], found: Period) ->
 def ask_periods(choices: IntakeChoices) -> pd.DataFrame:
     """Ask for periods to leave out of rates and rhythms."""
     st.caption("Periods to leave out, such as a pandemic or a major incident. They are named in the document.")
-    days = [pd.to_datetime(pd.Series([period[end] for period in choices.excluded], dtype=object)) for end in (0, 1)]
+    days = [pd.Series([period[end] for period in choices.excluded], dtype=object) for end in (0, 1)]
     config = {name: st.column_config.DateColumn(min_value=EARLIEST, max_value=LATEST) for name in (FIRST, LAST)}
     return st.data_editor(
         pd.DataFrame(dict(zip((FIRST, LAST), days, strict=True))),
@@ -134,7 +134,7 @@ def _periods(rows: pd.DataFrame) -> tuple[Period, ...]:
     filled = rows.dropna(how="all")
     if filled.isna().any(axis=None):
         raise ImpossibleFigure("A period to leave out needs a first and a last day: give both.")
-    days = [pd.to_datetime(filled[name]).dt.date for name in (FIRST, LAST)]
+    days = ([pd.Timestamp(day).date() for day in filled[name]] for name in (FIRST, LAST))
     return tuple(zip(*days, strict=True))
 
 

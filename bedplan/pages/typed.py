@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import streamlit as st
 
+from bedplan.errors import BedplanError
 from bedplan.pages import controls
 
 if TYPE_CHECKING:
@@ -26,7 +27,10 @@ def remove_totals(name: str) -> None:
     st.session_state["typed"] = {other: base for other, base in typed.items() if other != name}
     st.session_state.get("settings", {}).pop(name, None)
     if st.session_state.get("ward") == name:
-        controls.forget_inputs()
+        try:
+            controls.show_ward(controls.first_shown(controls.ward_names()))
+        except BedplanError:
+            controls.forget_inputs()
 
 
 def offer_removal(name: str) -> None:
