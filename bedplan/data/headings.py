@@ -56,7 +56,7 @@ CENSUS_HEADINGS: dict[str, tuple[str, ...]] = {
     "closed": words("bedsclosed closed closedbeds"),
 }
 RETURN_HEADINGS: dict[str, tuple[str, ...]] = {
-    "month": words("month period date periodend yearmonth monthending"),
+    "month": words("month period date periodend yearmonth monthending monthend quarter quarterend quarterending"),
     "ward": (*WARD_WORDS, *words("specialty specialtygroup site sector group")),
     "available": words("availablebeddays availablebed availablebeds beddaysavailable available staffedbeddays"),
     "occupied": words("occupiedbeddays obd beddaysoccupied occupied occupiedbeds beddays"),

@@ -2,33 +2,30 @@
 
 from __future__ import annotations
 
-import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
-import numpy as np
 import pandas as pd
 
-from bedplan.data.columns import TELLTALES, without_formula
-from bedplan.data.dates import MONTHS
+from bedplan.data.columns import TELLTALES, plain, without_formula
+from bedplan.data.figures import read_figures
 from bedplan.data.headings import RETURN_HEADINGS
+from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
+from bedplan.data.months import QUARTER, month_of, months_apart, order_of_dates
 from bedplan.data.reading import read_table
-from bedplan.data.report import SET_ASIDE, Finding, IntakeReport
+from bedplan.data.report import SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
-from bedplan.errors import UnreadableRecords
+from bedplan.data.wardlinks import bare_name
+from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from bedplan.data.records import Records
     from bedplan.data.texttable import TextTable
 
-MONTH_PATTERNS = (
-    r"(?P<year>\d{4})[-/. ]?(?P<month>\d{1,2})(?!\d)",  # 2024-04, 2024-04-30
-    r"(?:\d{1,2}[-/. ])?(?P<name>[a-z]{3})[a-z]*[-/., ']*(?P<year>\d{4}|\d{2})$",  # Apr 2024, 30 April 2024, April-24
-    r"(?P<month>\d{1,2})[-/.](?P<year>\d{4})$",  # 04/2024
-    r"(?:1[3-9]|2\d|3[01])[-/.](?P<month>\d{1,2})[-/.](?P<year>\d{4})$",  # 30/04/2024, the month's last day
-    r"0?1[-/.](?P<month>\d{1,2})[-/.](?P<year>\d{4})$",  # 01/04/2024, the month's first day
-    r"(?P<month>\d{1,2})[-/.](?:1[3-9]|2\d|3[01])[-/.](?P<year>\d{4})$",  # 04/30/2024
-)
+FIGURES = ("available", "occupied", "discharges")
 CANNOT = (
     "A return holds averages only: how far demand and stays swing is assumed, not measured.",
     "It counts nights at midnight: day stays and daytime peaks are not in it.",
@@ -39,6 +36,8 @@ CANNOT = (
 class MonthlyReturn:
     """Bed-days and discharges by month. ``table``: month, ward, available, occupied, discharges, days.
 
+    ``unknown_wards``: those without ward stays, once :meth:`linked_to` was asked.
+
     Checked by: tests/data/test_returns.py
     """
 
@@ -47,6 +46,7 @@ class MonthlyReturn:
     wards: tuple[str, ...]
     report: IntakeReport
     cannot: tuple[str, ...] = CANNOT
+    unknown_wards: tuple[str, ...] = ()
 
     def _rows(self, ward: str) -> pd.DataFrame:
         """Return one ward's months."""
@@ -94,82 +94,130 @@ class MonthlyReturn:
             month_factors=tuple(rates / rates.mean()) if whole else (1.0,) * 12,
         )
 
+    def linked_to(self, records: Records) -> MonthlyReturn:
+        """What does this file say of the wards of these stays? Names as the stays have them, by the planner's word.
 
-def read_monthly_return(source: FileLike, *, name: str | None = None) -> MonthlyReturn:
+        Wards that became one have the sum of their figures; one ward written two ways counts once.
+        """
+        names = names_in_stays(self.wards, records)
+        wards = tuple(sorted(set(names.values())))
+        renamed = self.table.assign(ward=self.table["ward"].map(names), bare=self.table["ward"].map(bare_name))
+        table = _by_month(renamed.drop_duplicates(["ward", "month", "bare"], keep="last").drop(columns="bare"))
+        return replace(self, table=table, wards=wards, unknown_wards=without_stays(wards, records))
+
+
+def read_monthly_return(
+    source: FileLike,
+    *,
+    name: str | None = None,
+    columns: Mapping[str, str] | None = None,
+    date_order: str | None = None,
+    months_a_row: int | None = None,
+) -> MonthlyReturn:
     """How many bed-days and discharges did each ward have each month?
 
-    Months are written 2024-04, Apr 2024, April-24 or as any date within the month.
+    Months are written 2024-04, Apr 2024, April-24 or as any date within the month. ``months_a_row``: how many months
+    a row holds, up to the one it names; unless it is given, rows three months apart are taken as quarters.
+    ``columns`` and ``date_order`` as in ``read_records``.
 
     Raises:
-        UnreadableRecords: no month, ward, occupied bed-days or discharges, or nothing that can be used.
+        UnreadableRecords: no month, ward, occupied bed-days or discharges, nothing that can be used, or dates whose order
+            somebody must say (the question is in ``.question``).
+        ImpossibleFigure: fewer than one month a row, or more than twelve.
 
     Checked by: tests/data/test_returns.py
     """
+    if months_a_row is not None and not 1 <= months_a_row <= 12:
+        raise ImpossibleFigure(f"{months_a_row} months a row is not possible: a row holds 1 to 12 months.")
     file = open_source(source, name)
-    text = read_table(file, RETURN_HEADINGS)
+    text = read_table(file, RETURN_HEADINGS, columns)
     missing = [key for key in ("month", "ward", "occupied", "discharges") if key not in text.columns]
     if missing:
         text.refuse_kinds(file.name, "a monthly return", *(kind for kind in TELLTALES if kind != "a monthly return"))
-        columns = "month, ward, occupied bed-days and discharges"
-        raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a monthly return has columns {columns}."])
-    frame, bad = _frame(text)
-    if bad.all():
-        told = f"No row of {file.name} names a ward, a month, occupied bed-days and discharges"
-        raise UnreadableRecords([f"{told}: write months as 2024-04 and figures as numbers."])
-    table = frame[~bad].reset_index(drop=True)
-    aside = int(bad.sum()) + text.misfits
-    sentence = "A total, a footer, or a row whose month or figures can't be read"
+        wanted = "month, ward, occupied bed-days and discharges"
+        raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a monthly return has columns {wanted}."])
+    frame, reason, notes = _frame(text, file.name, date_order)
+    counts = reason[reason != ""].value_counts()
+    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
+    kept = frame[reason == ""]
+    if kept.empty:
+        raise UnreadableRecords([why_none(file.name, findings, "write months as 2024-04 and figures as 1234.5")])
+    if text.misfits:
+        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
+    months, said = _months_held(kept, text.headings["month"], months_a_row)
     report = IntakeReport(
         rows_in=len(frame) + text.misfits,
-        used=len(table),
+        used=len(kept),
         repaired=0,
-        set_aside=aside,
-        findings=(Finding(SET_ASIDE, sentence, aside, 0.0),) if aside else (),
+        set_aside=int(counts.sum()) + text.misfits,
+        findings=tuple(findings),
         dropped_columns=text.dropped,
-        notes=(*text.notes, *CANNOT),
+        notes=(*text.notes, *notes, *said, *CANNOT),
     )
+    table = _by_month(_spread(kept, months))
     return MonthlyReturn(file.name, table, tuple(sorted(set(table["ward"]))), report)
 
 
-def _frame(text: TextTable) -> tuple[pd.DataFrame, np.ndarray]:
-    """Return every row, and which can't be used."""
-    months = [month_of(value) for value in text.strings("month")]
-    figures = {key: _numbers(text.strings(key)) for key in ("available", "occupied", "discharges")}
+def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series, list[str]]:
+    """Return every row, why it can't be used ("" = it can), and what was decided about figures."""
+    cells = text.strings("month")
+    order = order_of_dates(cells, name, date_order)
+    months = [month_of(value, order) for value in cells]
+    figures, notes = read_figures({key: text.strings(key) for key in FIGURES})
+    wards = spelled_alike([without_formula(value) for value in text.strings("ward")])
+    year_and_month = [one or (1970, 1) for one in months]
     frame = pd.DataFrame(
         {
-            "month": pd.PeriodIndex(
-                [pd.Period(year=y, month=m, freq="M") for y, m in (one or (1970, 1) for one in months)]
-            ),
-            "ward": pd.Series([without_formula(value) for value in text.strings("ward")], dtype=object),
+            "month": pd.PeriodIndex([pd.Period(year=y, month=m, freq="M") for y, m in year_and_month]),
+            "ward": pd.Series(wards, dtype=object),
             **figures,
         }
     )
-    frame["days"] = frame["month"].dt.days_in_month
-    frame["month_number"] = frame["month"].dt.month
-    bad = np.array([one is None for one in months]) | (frame["ward"] == "").to_numpy()
-    bad |= np.isnan(figures["occupied"]) | np.isnan(figures["discharges"])
-    frame[["available", "occupied", "discharges"]] = frame[["available", "occupied", "discharges"]].fillna(0.0)
-    return frame, bad | frame["ward"].str.lower().str.startswith("total").to_numpy()
+    reason = pd.Series("", index=frame.index, dtype=object)
+    repeated = frame.duplicated(keep="first")
+    reason[repeated] = "The same row twice"
+    reason[frame[["occupied", "discharges"]].isna().any(axis=1)] = "A figure is missing or can't be read"
+    reason[[one is None for one in months]] = "The month can't be read"
+    reason[[is_no_ward(ward, text.headings["ward"]) for ward in wards]] = "No ward is named, or the row is a total"
+    frame[list(FIGURES)] = frame[list(FIGURES)].fillna(0.0)
+    said = [text.headings[key] for key in FIGURES[:2] if "beds" in plain(text.headings.get(key, ""))]
+    notes += [f"“{heading}” is read as bed-days of the whole month, not as beds." for heading in said]
+    doubled = int(frame[reason == ""].duplicated(["ward", "month"], keep=False).sum())
+    if doubled:
+        notes.append(f"{doubled:,} rows share their ward and month with another: their figures are added.")
+    return frame, reason, notes
 
 
-def month_of(text: str) -> tuple[int, int] | None:
-    """Which year and month does this name? None where it names none.
+def _months_held(kept: pd.DataFrame, heading: str, said: int | None) -> tuple[tuple[int, ...], list[str]]:
+    """Return which months a row holds, counted from the one it names, and a sentence about it."""
+    apart = months_apart({(month.year, month.month) for month in kept["month"]})
+    is_quarterly = "quarter" in plain(heading) or (apart == QUARTER and kept["month"].nunique() > 2)
+    several = said or (QUARTER if is_quarterly else 1)
+    if several > 1:
+        begins = several == QUARTER and bool((kept["month"].dt.month % QUARTER == 1).all())  # January, April and so on
+        told = "from the one it names on" if begins else "up to the one it names"
+        sentence = f"Each row is taken to hold {several} months, {told}, spread evenly over them."
+        return tuple(range(several) if begins else range(1 - several, 1)), [sentence]
+    if said is None and apart >= QUARTER:
+        told = (
+            f"The rows are {apart} months apart, and each is taken to hold one month. If a row holds {apart}, the beds"
+        )
+        return (0,), [f"{told} in use are {apart} times too many here: say how many months a row holds."]
+    return (0,), []
 
-    Checked by: tests/data/test_returns.py
-    """
-    word = text.strip().lower()
-    for pattern in MONTH_PATTERNS:
-        fits = re.match(pattern, word)
-        if fits:
-            parts = fits.groupdict()
-            year, month = int(parts["year"]), parts.get("month")
-            number = int(month) if month else MONTHS.index(parts["name"]) + 1 if parts["name"] in MONTHS else 0
-            return (year + 2000 if year < 100 else year, number) if 1 <= number <= 12 else None
-    return None
+
+def _spread(kept: pd.DataFrame, months: tuple[int, ...]) -> pd.DataFrame:
+    """Return a row for each month that a row holds; its figures are spread over them by days."""
+    parts = [kept.assign(month=kept["month"] + step) for step in months]
+    days = [part["month"].dt.days_in_month for part in parts]
+    figures, total = list(FIGURES), sum(days)
+    shares = [part.assign(**part[figures].mul(one / total, axis=0)) for part, one in zip(parts, days, strict=True)]
+    return pd.concat(shares, ignore_index=True)
 
 
-def _numbers(cells: list[str]) -> np.ndarray:
-    """Return cells as figures of 0 or more, not-a-number where they hold none; thousands may carry commas or spaces."""
-    series = pd.Series(cells, dtype=object).str.replace(r"[, \u00a0](?=\d{3}\b)", "", regex=True)
-    numbers = pd.to_numeric(series, errors="coerce").to_numpy(dtype=float)
-    return np.where(numbers >= 0, numbers, np.nan)
+def _by_month(rows: pd.DataFrame) -> pd.DataFrame:
+    """Return one row a ward and month, figures added."""
+    table = rows.groupby(["ward", "month"], sort=True)[list(FIGURES)].sum().reset_index()
+    table["days"] = table["month"].dt.days_in_month
+    table["month_number"] = table["month"].dt.month
+    return table[["month", "ward", *FIGURES, "days", "month_number"]]
