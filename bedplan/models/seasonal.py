@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from bedplan.models.bed_curve import BedCurve, bed_counts
-from bedplan.models.clusters import loss_table, swing_when_full
+from bedplan.models.clusters import clustering_notes, loss_table, swing_when_full
 from bedplan.models.load_grid import load_grid
 from bedplan.models.rhythm_correction import LARGEST_CORRECTED_LOAD, rhythm_correction, season_correction
 from bedplan.models.uncertain_rate import possible_rates
@@ -108,13 +108,7 @@ def _notes(demand: Demand) -> tuple[str, ...]:
     """Say how the figures were found, and which way they may be off."""
     large = demand.offered_load > LARGEST_CORRECTED_LOAD and not demand.is_steady
     notes = [_LARGE_WARD if large else _METHOD]
-    if demand.clustering > 1:
-        notes.append(
-            "Patients who come together: groups of equal size are assumed. Up to a tenth of the figure too high with a "
-            "weekly rhythm; up to 8 % too low if group sizes differ widely."
-        )
-    if demand.clustering < 1:
-        notes.append("Arrivals smoother than chance: Hayward's approximation, up to a tenth too low on small wards.")
+    notes.extend(clustering_notes(demand))
     if demand.booked:
         notes.append(
             "Booked patients: beds come free at the rate of everyone in the ward. Where booked stays are shorter than "
