@@ -29,6 +29,7 @@ ALMOST_ALL = 0.99  # of stays are shorter than what is left out at an end where 
 MOST_LEFT_OUT = 1 / 3  # of the file
 FEWEST_DAYS = 90  # of which some can be left out
 NIGHTS = 9
+MOST_LOOKED_AT = 100_000
 # By what an export was chosen.
 ALL_STAYS, BY_ADMISSION, BY_DISCHARGE = "all stays that touch the period", "admission date", "discharge date"
 BY_BOTH = "admission date and by discharge date"
@@ -119,10 +120,11 @@ def times_in_hospital(
     if not order.size:
         return TimesInHospital(start, end, rows.ward[order], 0.0)
     if knows_patients:
-        together = (end[:-1] != MISSING) & (start[1:] - end[:-1] <= MOVE_GAP_SECONDS)
+        again = np.flatnonzero(patient[1:] == patient[:-1]) + 1
+        together = (end[again - 1] != MISSING) & (start[again] - end[again - 1] <= MOVE_GAP_SECONDS)
         if knows_spells:
-            together |= rows.spell[order[1:]] == rows.spell[order[:-1]]
-        goes_on[1:] = (patient[1:] == patient[:-1]) & together
+            together |= rows.spell[order[again]] == rows.spell[order[again - 1]]
+        goes_on[again] = together
     heads = np.flatnonzero(~goes_on)
     tails = np.append(heads[1:], order.size) - 1
     return TimesInHospital(start[heads], end[tails], rows.ward[order[tails]], float(goes_on.mean()))
@@ -180,9 +182,11 @@ def _end(times: TimesInHospital, first: int, until: int, mean: float) -> tuple[i
 
 def _usually_in(times: TimesInHospital, first: int, last: int) -> float:
     """Return how many were in at midnight in the middle half of this time: the median of a few days."""
-    start, end = times.start, times.end
+    every = max(times.start.size // MOST_LOOKED_AT, 1)  # one patient in so many is enough of a large file
+    start, end = times.start[::every], times.end[::every]
     nights = np.linspace(first + (last - first) / 4, last - (last - first) / 4, NIGHTS) // DAY_SECONDS * DAY_SECONDS
-    return float(np.median([((start <= night) & ((end > night) | (end == MISSING))).sum() for night in nights]))
+    present = [((start <= night) & ((end > night) | (end == MISSING))).sum() for night in nights]
+    return every * float(np.median(present))
 
 
 def _told(period: Period, times: TimesInHospital, *, held_before: bool, held_after: bool) -> Period:
