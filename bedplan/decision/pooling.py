@@ -11,10 +11,12 @@ import numpy as np
 
 from bedplan.decision.changing_beds import BedChanges, arrivals_by_month
 from bedplan.decision.comparing import DAYS_PER_YEAR, patients_per_year
+from bedplan.decision.pooled_rhythm import with_rhythm_of_all
 from bedplan.decision.sharing import named_once
 from bedplan.decision.ward import Ward
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay
+from bedplan.models.clusters import peakedness
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterable, Sequence
@@ -22,18 +24,21 @@ if TYPE_CHECKING:
     from bedplan.models import BedCurve
 
 POOLING_NOTE = (
-    "Sharing all beds: arrivals are added, stays mixed by patients, rhythms averaged by patients. Swings from day to "
-    "day are taken as independent of each other; slower drift and the forecast's error as hitting all wards at once, "
-    "so that sharing does not promise too much."
+    "Sharing all beds: arrivals are added, stays mixed by patients, and the year, week and day follow the beds the wards "
+    "want together: every month, and the busiest hour within 1 in 100; single hours up to 7 in 100 off where a day of "
+    "short stays meets a week of long ones. Swings from day to day are taken as independent of each other; slower drift "
+    "and the forecast's error as hitting all wards at once, so that sharing does not promise too much."
 )
 
 
 def pool_wards(wards: Iterable[Ward]) -> Ward:
     """Which one ward do these become when they share all their beds?
 
-    Arrivals, beds, booked lists, closures and extra beds are added; stays are a mix by patients; month, weekday, hour
-    and discharge rhythms are means by arrivals. Clustering is the mean by arrivals: variances of independent streams
-    add up. Rate variation is the mean by load, as if all wards' demand were off the same way together; independent
+    Arrivals, beds, booked lists, closures and extra beds are added; stays are a mix by patients. Month, weekday and hour
+    factors are fitted to the beds the wards want together, so that a winter of few long stays isn't lost among many
+    short ones; the busiest month never wants fewer. Hours of leaving are a mean by patients, and where they differ the
+    mixed stay is scaled so that the beds wanted on average stay what they were. Clustering keeps the variance of the
+    beds wanted, for variances of independent streams add up. Rate variation is the mean by load, as if all wards' demand were off the same way together; independent
     drift, √Σ(load·variation)² ÷ Σ load, would be smaller, so this errs towards more beds.
 
     Raises:
@@ -95,13 +100,12 @@ def _pooled_demand(demands: Sequence[Demand]) -> Demand:
         """Return the mean of one figure over the wards, by weight."""
         return np.average([figure(one) for one in demands], axis=0, weights=weights if weights.sum() > 0 else None)
 
-    return Demand(
+    pooled = Demand(
         arrivals_per_day=float(arrivals.sum()),
         length_of_stay=_mixed_stay(demands),
         month_factors=tuple(mean(lambda one: one.month_factors, arrivals)),
         weekday_factors=tuple(mean(lambda one: one.weekday_factors, arrivals)),
         hour_factors=tuple(mean(lambda one: one.hour_factors, arrivals)),
-        clustering=float(mean(lambda one: one.clustering, arrivals)),
         rate_variation=float(mean(lambda one: one.rate_variation, loads)),
         booked=tuple(booked for one in demands for booked in one.booked),
         # where some leave by the clock and some when their stay ends, the latter are spread over the day
@@ -111,6 +115,25 @@ def _pooled_demand(demands: Sequence[Demand]) -> Demand:
         weekend_slip=tuple(mean(lambda one: one.weekend_slip, everyone)),
         turnaround_hours=float(mean(lambda one: one.turnaround_hours, everyone)),
     )
+    return with_rhythm_of_all(pooled.with_changes(clustering=_pooled_clustering(demands, pooled)), demands)
+
+
+def _pooled_clustering(demands: Sequence[Demand], pooled: Demand) -> float:
+    """Return the clustering with which the beds wanted swing as they do apart: their variances add up.
+
+    The beds wanted have variance ÷ mean 1 + (clustering − 1)·ω, ω = ∫S²/∫S of the stay: people who come together and
+    stay alike count more.
+    """
+    if all(one.clustering == 1.0 for one in demands) or pooled.arrivals_per_day == 0:
+        return pooled.clustering
+    alone = sum(_unbooked_beds(one) * (peakedness(one) - 1.0) for one in demands)
+    clustered = pooled.with_changes(clustering=2.0)
+    return float(np.clip(1.0 + alone / (_unbooked_beds(pooled) * (peakedness(clustered) - 1.0)), 0.01, 100.0))
+
+
+def _unbooked_beds(demand: Demand) -> float:
+    """Return the beds unbooked patients want on average, turnaround included."""
+    return demand.arrivals_per_day * (demand.length_of_stay.mean_days + demand.turnaround_hours / 24.0)
 
 
 def _mixed_stay(demands: Sequence[Demand]) -> LengthOfStay:
