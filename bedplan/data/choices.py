@@ -8,12 +8,15 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
+from bedplan.wording import PLACES
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
+    from bedplan.data.ready import ReadyDates
+
 DATE_ORDERS = ("day first", "month first", "row by row")
-PLACE_KINDS = ("bed ward", "waiting place", "procedure place", "virtual", "cot", "delivery", "leave")
+PLACE_KINDS = tuple(PLACES)
 HELD, GIVEN_AWAY = "held", "given away"
 
 
@@ -37,6 +40,7 @@ class IntakeChoices:
     is complete. ``excluded``: periods (first day, last day) left out of rates and rhythms, such as a pandemic.
     ``time_zone``: the hospital's zone (``"Europe/London"``), to bring times with an offset to its clock.
     ``bed_on_leave``: ``"held"`` (leave counts on the ward that was left) or ``"given away"`` while a patient is on leave.
+    ``ready_dates``: a file of its own that says when patients were ready to leave, as ``read_ready_dates`` gives it.
 
     Raises:
         ImpossibleFigure: a kind of place, a time zone or an answer nobody knows, or a period that ends before it starts.
@@ -50,6 +54,7 @@ class IntakeChoices:
     excluded: tuple[tuple[dt.date, dt.date], ...] = ()
     time_zone: str | None = None
     bed_on_leave: str | None = None
+    ready_dates: ReadyDates | None = field(default=None, compare=False, repr=False)
 
     def __post_init__(self) -> None:
         """Check every answer once, here."""
@@ -70,7 +75,9 @@ class IntakeChoices:
 
     def said(self) -> tuple[str, ...]:
         """What did the planner decide about this file, in sentences for the page and the document?"""
-        places = [f"“{place}” is taken for: {kind}, as the planner said." for place, kind in self.places.items()]
+        places = [
+            f"“{place}” is taken for: {PLACES[kind]}, as the planner said." for place, kind in self.places.items()
+        ]
         window = (
             [f"The file is taken as complete from {_span(*self.window)}, as the planner said."] if self.window else []
         )

@@ -15,6 +15,10 @@ def words(text: str) -> tuple[str, ...]:
     return tuple(text.split())
 
 
+# Headings of hospital stays with the ward they began and ended on.
+FIRST_WARD = words("firstward admissionward wardonadmission wardatadmission admittingward admitward wardofadmission")
+LAST_WARD = words("lastward dischargeward wardondischarge wardatdischarge dischargingward wardofdischarge finalward")
+
 # Canonical name -> headings met in practice, written as `plain` writes them. The order matters: the first
 # canonical name that claims a heading keeps it.
 STAY_HEADINGS: dict[str, tuple[str, ...]] = {
@@ -26,23 +30,31 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
         "spellkey spell spellno spellid spellnumber admissionid admissionno encounter encounterid providerspellno "
         "hospitalproviderspellno visitid visit csn accountno stayid episodeid"
     ),
-    "ward": words(
-        "ward wardcode wardname location unit nursingunit clinicward wardid locationname bedward wardlocation "
-        "department wardunit careunit currentward"
+    "ward": (
+        *words(
+            "ward wardcode wardname location unit nursingunit clinicward wardid locationname bedward wardlocation "
+            "department wardunit careunit currentward"
+        ),
+        *FIRST_WARD,
+        *LAST_WARD,
     ),
+    "last_ward": LAST_WARD,
     "start": words(
         "start wardstart admdttm in from wardstaystart wardstaystartdatetime startdatetime starttime wardin "
         "timein datein wardstartdatetime wardstaystartdttm arrival arrived intime transferin begin startdttm indttm "
-        "entered wardadmitted"
+        "entered wardadmitted episodestart epistart episodestartdatetime"
     ),
-    "start_date": words("startdate wardstartdate wardstaystartdate indate fromdate arrivaldate wardstaydate"),
-    "start_time": words("wardstarttime wardstaystarttime timestart fromtime arrivaltime"),
+    "start_date": words(
+        "startdate wardstartdate wardstaystartdate indate fromdate arrivaldate wardstaydate episodestartdate"
+    ),
+    "start_time": words("wardstarttime wardstaystarttime timestart fromtime arrivaltime episodestarttime"),
     "end": words(
         "end wardend dischdttm out to wardstayend wardstayenddatetime enddatetime endtime wardout timeout "
-        "dateout wardenddatetime wardstayenddttm departure departed outtime transferout finish enddttm outdttm left"
+        "dateout wardenddatetime wardstayenddttm departure departed outtime transferout finish enddttm outdttm left "
+        "episodeend epiend episodeenddatetime"
     ),
-    "end_date": words("enddate wardenddate wardstayenddate outdate todate departuredate"),
-    "end_time": words("wardendtime wardstayendtime timeend totime departuretime"),
+    "end_date": words("enddate wardenddate wardstayenddate outdate todate departuredate episodeenddate"),
+    "end_time": words("wardendtime wardstayendtime timeend totime departuretime episodeendtime"),
     "admitted": words("admitted admdate admissiondate admission admissiondatetime dateofadmission admissiondttm"),
     "discharged": words("discharged disdate dischargedate discharge dischargedatetime dateofdischarge dischargedttm"),
     "class": words("class patclass patientclass patientclassification classpat intendedclass"),

@@ -62,3 +62,10 @@ RETURN_HEADINGS: dict[str, tuple[str, ...]] = {
     "occupied": words("occupiedbeddays obd beddaysoccupied occupied occupiedbeds beddays"),
     "discharges": words("discharges discharged dischargesanddeaths dischargesincldeaths separations admissions spells"),
 }
+READY_HEADINGS: dict[str, tuple[str, ...]] = {
+    "date": words(
+        "date ready readydate drd mffd nctr dischargereadydate readyfordischarge medicallyfit datemedicallyready readyat "
+        "dischargeready mffddate nctrdate medicallyfitdate fitdate dateready readyon dateoptimised"
+    ),
+    "time": words("time readytime clock hour"),
+}

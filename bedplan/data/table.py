@@ -11,8 +11,10 @@ import pandas as pd
 from bedplan.data import codes
 from bedplan.data.blocks import BLOCK_ROWS, each, taken
 from bedplan.data.dateorder import start_and_end
-from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE, read_times
+from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE
+from bedplan.data.grain import what_rows_are
 from bedplan.data.keys import read_keys
+from bedplan.data.ready import ready_column
 from bedplan.data.rows import Rows
 from bedplan.errors import UnreadableRecords
 
@@ -88,6 +90,7 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
     """
     _check_columns(text, name)
     start, end, notes = start_and_end(text, name, date_order, choices.time_zone)
+    notes += what_rows_are(text)
     wards = codes.read_wards(text.columns["ward"], choices.ward_names)
     rows = Rows(
         patient=np.arange(text.rows, dtype=np.int32),
@@ -112,7 +115,13 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
     rows.mark(wards.renamed, "ward renamed")
     rows.mark(wards.respelled, "ward spelling")
     rows.mark(np.union1d(np.flatnonzero(start.serial), np.flatnonzero(end.serial)), "serial date")
-    ready = read_times(text.columns["ready"], date_order or "day first").seconds if "ready" in text.columns else None
+    ready = None
+    if "ready" in text.columns:
+        ready = ready_column(text.columns["ready"], rows, date_order, choices.time_zone)
+    if choices.ready_dates is not None:
+        joined, told = choices.ready_dates.joined(text, rows, knows_spells="spell_key" in keys)
+        ready = joined if ready is None else np.where(joined > UNREADABLE, joined, ready)
+        notes += told
     return StayTable(
         rows=rows,
         wards=wards.names,
