@@ -12,7 +12,8 @@ from bedplan.data.hidden_demand import DemandStep, HiddenDemand, hidden_demand
 from bedplan.data.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
 from bedplan.data.past_years import PastYear, past_years
 from bedplan.data.preview import ColumnPreview, preview_columns
-from bedplan.data.ready import ReadyDates, read_ready_dates
+from bedplan.data.ready import ReadyDates
+from bedplan.data.ready_reading import read_ready_dates
 from bedplan.data.reconciling import CensusCheck, Flows, check_census, flows
 from bedplan.data.records import Records, read_records
 from bedplan.data.repairs import RepairEffect, what_repairs_change

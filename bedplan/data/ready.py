@@ -1,4 +1,4 @@
-"""When patients were ready to leave: a column of the ward stays, or a file of its own, joined by patient or stay."""
+"""When patients were ready to leave, by a file of its own: joined to the ward stays by patient or stay."""
 
 from __future__ import annotations
 
@@ -6,18 +6,10 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 import numpy as np
-import pandas as pd
 import pyarrow as pa
 import pyarrow.compute as pc
 
-from bedplan.data.choices import DATE_ORDERS
-from bedplan.data.columns import STAY_HEADINGS
-from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE, read_times
-from bedplan.data.headings import READY_HEADINGS
-from bedplan.data.moments import when
-from bedplan.data.reading import read_table
-from bedplan.data.report import SET_ASIDE, Finding, IntakeReport, why_none
-from bedplan.data.source import FileLike, open_source
+from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -25,12 +17,12 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
+    from bedplan.data.report import IntakeReport
     from bedplan.data.rows import Rows
     from bedplan.data.texttable import TextTable
 
     Seconds = NDArray[np.int64]
 
-DAY_FIRST, MONTH_FIRST, ROW_BY_ROW = DATE_ORDERS
 KEYS = ("spell_key", "patient_key")
 
 
@@ -100,73 +92,3 @@ def _first_day(rows: Rows, *, knows_spells: bool) -> Seconds:
         np.minimum.at(first, rows.spell, begin)
         begin = first[rows.spell]
     return begin - begin % DAY_SECONDS
-
-
-def read_ready_dates(
-    source: FileLike,
-    *,
-    name: str | None = None,
-    columns: Mapping[str, str] | None = None,
-    date_order: str | None = None,
-) -> ReadyDates:
-    """Since when was each patient ready to leave? A row for each stay or patient, for ``IntakeChoices.ready_dates``.
-
-    Columns spell_key or patient_key, and date, or date and time. ``columns`` and ``date_order`` as in ``read_records``.
-
-    Raises:
-        UnreadableRecords: no key or no date, nothing that can be used, or dates whose order somebody must say (the
-            question is in ``.question``).
-
-    Checked by: tests/data/test_ready.py
-    """
-    file = open_source(source, name)
-    text = read_table(file, READY_HEADINGS | {key: STAY_HEADINGS[key] for key in KEYS}, columns)
-    if not {"date", "time"} & set(text.columns) or not set(KEYS) & set(text.columns):
-        told = f"{file.name} lacks a column of keys or of ready dates: it should have a row for each stay or patient"
-        raise UnreadableRecords([f"{told}, with spell_key or patient_key and date."])
-    (ready,), _ = when(text, file.name, date_order)
-    reason = pd.Series("", index=range(text.rows), dtype=object)
-    reason[ready == UNREADABLE] = "The ready date can't be read"
-    reason[ready == MISSING] = "No ready date: the patient was not ready, or nobody noted it"
-    named = [pd.Series(text.strings(key)) != "" for key in KEYS if key in text.columns]
-    reason[~np.logical_or.reduce(named)] = "No patient or stay is named"
-    kept = pa.array((reason == "").to_numpy())
-    counts = reason[reason != ""].value_counts()
-    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
-    if not (reason == "").any():
-        raise UnreadableRecords([why_none(file.name, findings, "write dates as 2024-03-31 14:05")])
-    if text.misfits:
-        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
-    report = IntakeReport(
-        rows_in=text.rows + text.misfits,
-        used=int((reason == "").sum()),
-        repaired=0,
-        set_aside=int(counts.sum()) + text.misfits,
-        findings=tuple(findings),
-        dropped_columns=text.dropped,
-        notes=text.notes,
-    )
-    keys = {key: text.columns[key].filter(kept) for key in KEYS if key in text.columns}
-    return ReadyDates(file.name, report, keys, ready[(reason == "").to_numpy()])
-
-
-def ready_column(column: pa.ChunkedArray, rows: Rows, date_order: str | None, time_zone: str | None = None) -> Seconds:
-    """When was each stay's patient ready, by a column of the stays' own file?
-
-    Read in the order of day and month that somebody said, else the one that puts more of them within their stays.
-    """
-    said = date_order in (DAY_FIRST, MONTH_FIRST)
-    day_first = read_times(column, date_order if said else DAY_FIRST, time_zone)
-    if said or not (day_first.either_order or day_first.month_first_only):
-        return day_first.seconds
-    first, second = day_first.seconds, read_times(column, MONTH_FIRST, time_zone).seconds
-    within = [_within(one, rows) for one in (first, second)]
-    if date_order == ROW_BY_ROW:
-        return np.where(within[1] & ~within[0], second, first)
-    return second if within[1].sum() > within[0].sum() else first
-
-
-def _within(ready: Seconds, rows: Rows) -> NDArray[np.bool_]:
-    """Which dates lie in their stay, from its first day to its end?"""
-    ended = (rows.end > UNREADABLE) & (ready > rows.end)
-    return (ready > UNREADABLE) & (ready >= rows.start - rows.start % DAY_SECONDS) & (rows.start > UNREADABLE) & ~ended

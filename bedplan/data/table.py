@@ -14,7 +14,7 @@ from bedplan.data.dateorder import start_and_end
 from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE
 from bedplan.data.grain import what_rows_are
 from bedplan.data.keys import read_keys
-from bedplan.data.ready import ready_column
+from bedplan.data.ready_reading import ready_column
 from bedplan.data.rows import Rows
 from bedplan.errors import UnreadableRecords
 
