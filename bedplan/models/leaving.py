@@ -7,6 +7,7 @@ then for its turnaround.
 from __future__ import annotations
 
 from functools import lru_cache
+from itertools import chain
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
@@ -114,9 +115,11 @@ def _hours_of_leaving(stay: LengthOfStay, leaving: Leaving, horizon: int) -> Arr
         ends = _moved_to_discharge_hours(ends, leaving.discharge_hours)
     found = np.empty((HOURS_A_WEEK, horizon))
     for weekday in range(7):
-        moved = _moved_past_weekend(ends, weekday, leaving.weekend_slip).reshape(24, -1)
-        for hour in range(24):
-            found[24 * weekday + hour] = moved[hour, hour : hour + horizon]
+        moved = _moved_past_weekend(ends, weekday, leaving.weekend_slip)
+        # one place further in each row: the hour of coming is that of the row
+        found[24 * weekday : 24 * (weekday + 1)] = as_strided(
+            moved, (24, horizon), (moved.strides[0] + moved.itemsize, moved.itemsize)
+        )
     return found
 
 
@@ -166,6 +169,16 @@ def hours_held(stay: LengthOfStay, leaving: Leaving, period: int, *, at_end: boo
     return held if leaving.has_rhythm else held.reshape(1, -1, period).sum(axis=1)
 
 
+def _weeks_on(held: Array) -> Array:
+    """Return who of those in hour c of a week holds a bed in hour h, 1, 2 … weeks later, ``(weeks, 168, 168)``: a view.
+
+    They came h − c hours and those weeks ago: one column further for each row, in weeks of ``held`` ``(168, k)``.
+    """
+    size, width = held.itemsize, held.shape[1]
+    shape = (width // HOURS_A_WEEK - 1, HOURS_A_WEEK, HOURS_A_WEEK)
+    return as_strided(held.ravel()[HOURS_A_WEEK:], shape, (HOURS_A_WEEK * size, (width - 1) * size, size))
+
+
 def beds_held(arrivals: Array, held: Array) -> Array:
     """How many beds do these arrivals, ``(period,)``, hold in each hour, if the period repeats for ever?
 
@@ -176,12 +189,9 @@ def beds_held(arrivals: Array, held: Array) -> Array:
         beds = np.fft.irfft(np.fft.rfft(arrivals) * np.fft.rfft(held[0]), arrivals.size)
         return np.maximum(beds, 0.0)
     weeks = arrivals.reshape(-1, HOURS_A_WEEK)
-    # who came in hour c of a week some weeks ago is, at hour h, h − c hours and those weeks on: a slanted view of held
-    padded = np.pad(held, ((0, 0), (HOURS_A_WEEK, HOURS_A_WEEK)))
-    size, width = padded.itemsize, padded.shape[1]
-    shape = (held.shape[1] // HOURS_A_WEEK + 1, HOURS_A_WEEK, HOURS_A_WEEK)
-    slanted = as_strided(padded.ravel()[HOURS_A_WEEK:], shape, (HOURS_A_WEEK * size, (width - 1) * size, size))
+    first = np.pad(held[:, :HOURS_A_WEEK], ((0, 0), (HOURS_A_WEEK, 0)))
+    last = np.pad(held[:, -HOURS_A_WEEK:], ((0, 0), (0, HOURS_A_WEEK)))
     beds = np.zeros_like(weeks)
-    for ago, since in enumerate(slanted):
+    for ago, since in enumerate(chain(_weeks_on(first), _weeks_on(held), _weeks_on(last))):
         beds += np.roll(weeks, ago, axis=0) @ since
     return beds.ravel()

@@ -227,17 +227,18 @@ def _one_hour(
     patients = sum(group.patients for group in groups)
     hurried = int(min(rates[1].max() / _LEAVING_A_PART, _MOST_LEAVING_PARTS))
     parts = max(min(patients, _MOST_PARTS), hurried, 1)
-    coming, leaving = (rate / parts / (2 if groups else 1) for rate in rates)
-    for part in range(parts):
-        state, full = wards.step(state, coming, leaving)
-        if groups:
-            for group in groups:
-                some = group._replace(patients=_share(group.patients, part, parts))
-                state, turned_away = wards.take_in(state, some)
-                found.booked[hour] += turned_away
-            state, after = wards.step(state, coming, leaving)
-            full = (full + after) / 2.0
-        found.unbooked[hour] += full / parts
+    lengths = np.full(parts, 1.0 / parts)
+    if groups:
+        # a booked patient comes in the middle of a part: from one to the next is a whole part's time
+        lengths = np.append(lengths, lengths[0])
+        lengths[[0, -1]] /= 2.0
+    for part, length in enumerate(lengths):
+        state, full = wards.step(state, rates[0] * length, rates[1] * length)
+        found.unbooked[hour] += full * length
+        for group in groups if part < parts else ():
+            some = group._replace(patients=_share(group.patients, part, parts))
+            state, turned_away = wards.take_in(state, some)
+            found.booked[hour] += turned_away
     found.booked[hour] /= max(patients, 1)
     found.mean_in_use[hour] = wards.total(state * wards.in_use)
     return state

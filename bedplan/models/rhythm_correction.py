@@ -40,7 +40,7 @@ _TOO_FEW_TO_COMPARE = 1e-8
 
 
 class Correction(NamedTuple):
-    """Natural logarithms of chain ÷ first cut, at points ``spare[level]`` of u for each level of demand.
+    """Natural logarithms of chain ÷ first cut, at evenly spaced points ``spare[level]`` of u for each level of demand.
 
     ``levels`` of unbooked demand, 1 = the year's mean; ``loads`` (unbooked at level 1, booked); ``unbooked`` and
     ``booked`` for each level ``(weekdays or months, points)``.
@@ -65,14 +65,20 @@ class Correction(NamedTuple):
         # Below the fewest beds worked out, down to no beds, where both are 1.
         first = load + max(grid[0] for grid in self.spare) * np.sqrt(load)
         taper = np.clip(counts / np.maximum(first, 1.0), 0.0, 1.0)
-        found = []
-        for logs in (self.unbooked, self.booked)[: 2 if self.loads[1] else 1]:
-            total = np.zeros(spare.shape)
-            for level, (grid, rows) in enumerate(zip(self.spare, logs, strict=True)):
-                for one, row in enumerate(rows):
-                    here = part == one
-                    total[:, here] += by_level[:, here, level, None] * np.interp(spare[:, here], grid, row)
-            found.append(np.exp(total * taper))
+        kinds = (self.unbooked, self.booked)[: 2 if self.loads[1] else 1]
+        totals = [np.zeros(spare.shape) for _ in kinds]
+        for level, grid in enumerate(self.spare):
+            place = (spare - grid[0]) * ((grid.size - 1) / max(grid[-1] - grid[0], 1e-12))
+            np.clip(place, 0.0, max(grid.size - 1 - 1e-9, 0.0), out=place)
+            cell = place.astype(np.int64)
+            place -= cell
+            cell += (part * grid.size)[:, None]
+            for logs, total in zip(kinds, totals, strict=True):
+                flat = logs[level].ravel()
+                low = flat.take(cell)
+                rise = flat.take(cell + 1, mode="clip") - low
+                np.add(total, by_level[:, :, level, None] * (low + place * rise), out=total)
+        found = [np.exp(total * taper) for total in totals]
         return found[0], found[-1]
 
 
@@ -166,12 +172,13 @@ def _compared(
     for level, counts in enumerate(beds):
         first_cut = erlang_b_table(loads[:, level], counts).T
         load = loads[:, level].mean()
-        points = (counts - load) / np.sqrt(load)
-        weights = np.eye(points.size)
-        if not kinks and counts[-1] - counts[0] >= counts.size:
-            fine = np.linspace(points[0], points[-1], _FINE)
-            points, weights = fine, _joined(points, fine)
-        found[0].append(points)
+        fine = np.arange(counts[0], counts[-1] + 1.0)
+        if kinks or counts.size == fine.size:
+            weights = np.stack([np.interp(fine, counts, one) for one in np.eye(counts.size)], axis=1)
+        else:
+            fine = np.linspace(counts[0], counts[-1], _FINE)
+            weights = _joined(counts.astype(float), fine)
+        found[0].append((fine - load) / np.sqrt(load))
         for kind, full in enumerate((chain.unbooked[level], chain.booked[level])):
             found[1 + kind].append(_log_ratio(full, first_cut, patients[kind], part) @ weights.T)
     return found
