@@ -151,36 +151,44 @@ def uneven_groups_loss(load: float, counts: NDArray[np.int64], clustering: float
     return shares[counts]
 
 
-def more_if_groups_differ(demand: Demand) -> float:
-    """By which part of the figure more are turned away if group sizes differ widely instead of being equal, at most?
+def more_if_groups_differ(demand: Demand, *, waits: bool = False) -> float:
+    """By which part of the figure more find no bed if group sizes differ widely instead of being equal, at most?
 
-    At a steady rate, over the bed counts that turn 1 in 100 or more away.
+    At a steady rate, over the bed counts at which 1 in 100 or more are turned away (or wait).
 
-    Checked by: tests/models/test_clusters.py
+    Checked by: tests/models/test_clusters.py, tests/models/test_waiting.py
     """
     load = beds_wanted(demand)
     if demand.clustering <= 1.0 or load == 0.0:
         return 0.0
     unbooked = demand.arrivals_per_day * (demand.length_of_stay.mean_days + demand.turnaround_hours / 24.0)
-    clustering = 1.0 + 2.0 * (swing_when_full(demand) - 1.0) * min(unbooked / load, 1.0)
-    counts = np.arange(1, math.ceil(load + 6.0 * math.sqrt(load * clustering) + 6.0 * clustering))
+    swing = peakedness(demand) if waits else swing_when_full(demand)
+    clustering = 1.0 + 2.0 * (swing - 1.0) * min(unbooked / load, 1.0)
+    most = load + 6.0 * math.sqrt(load * clustering) + 6.0 * clustering
+    counts = np.arange(math.floor(load) + 1 if waits else 1, math.ceil(most) + 1)
     differing = uneven_groups_loss(load, counts, clustering)
     equal = _groups_table(np.array([load]), counts, clustering)[:, 0]
-    return max(float((differing / equal)[differing >= _RARE].max()) - 1.0, 0.0)
+    if waits:
+        # Erlang 1917: the share who wait from the share turned away
+        differing, equal = (one / (1.0 - load / counts * (1.0 - one)) for one in (differing, equal))
+    often = differing >= _RARE
+    return max(float((differing[often] / equal[often]).max(initial=1.0)) - 1.0, 0.0)
 
 
-def clustering_notes(demand: Demand) -> tuple[str, ...]:
+def clustering_notes(demand: Demand, *, waits: bool = False) -> tuple[str, ...]:
     """What is assumed of patients who come together, or spread out, and which way does it err?
 
-    Checked by: tests/models/test_clusters.py (exact chains)
+    Checked by: tests/models/test_clusters.py, tests/models/test_waiting.py (exact chains)
     """
     if demand.clustering > 1.0:
-        more = math.ceil(100.0 * more_if_groups_differ(demand))
+        more = math.ceil(100.0 * more_if_groups_differ(demand, waits=waits))
         many = f"up to {more} % more" if more <= 100 else "more than twice as many"
-        note = (
-            "Patients who come together: groups of equal size are assumed, and with a weekly rhythm the figure is up to a "
-            f"tenth too high. If group sizes differ widely, {many} are turned away than this says, where 1 in 100 or more "
-            "are."
+        note = "Patients who come together: groups of equal size are assumed"
+        note += "." if waits else ", and with a weekly rhythm the figure is up to a tenth too high."
+        share = (
+            "wait than this says, where 1 in 100 or more do"
+            if waits
+            else ("are turned away than this says, where 1 in 100 or more are")
         )
-        return (note,)
-    return (_SMOOTH_NOTE,) if demand.clustering < 1.0 else ()
+        return (f"{note} If group sizes differ widely, {many} {share}.",)
+    return (_SMOOTH_NOTE,) if demand.clustering < 1.0 and not waits else ()

@@ -9,6 +9,7 @@ import numpy as np
 from scipy import special
 
 from bedplan.models.bed_curve import BedCurve, Waits, bed_counts
+from bedplan.models.clusters import clustering_notes
 from bedplan.models.waiting_spread import spread_of, wait_ratio
 from bedplan.models.waiting_year import Pace, settled_queue, share_who_wait
 from bedplan.models.year import (
@@ -198,11 +199,7 @@ def _notes(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> tuple[str,
         )
     if max(demand.weekday_factors) - min(demand.weekday_factors) > 0.1:
         notes.append("With a weekly rhythm up to a sixth more patients wait than this line says.")
-    if demand.clustering > 1.0:
-        notes.append(
-            "Patients who come together: from 15 beds on up to an eighth more wait than this line says where one in ten "
-            "waits, on smaller wards up to a third more."
-        )
+    notes.extend(clustering_notes(demand, waits=True))
     if demand.rate_variation > 0.0:
         notes.append(
             "The mean wait leaves out rates at which the queue only grows, so it is too short; the shares count everyone as waiting there."

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 from scipy.linalg import blas
 
-from bedplan.models.erlang import erlang_b_table
+from bedplan.models.clusters import loss_table
 from bedplan.models.waiting_spread import wait_ratio
 
 if TYPE_CHECKING:
@@ -32,19 +32,14 @@ _FEW = 1e-3
 
 
 def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -> Array:
-    """Return the delay share C for each count above 0 and each load, ``(n, k)``; peaked demand by Hayward, C(c/z, a/z).
+    """Return the delay share C for each count above 0 and each load, ``(n, k)``.
 
-    Loss at parts of a bed is read between whole ones on a straight line of logarithms.
+    Exact for exponential stays, in groups of equal size too: up to c patients loss and delay have the same ratios
+    between neighbouring states, and beyond c beds come free at one rate.
 
-    Source: Erlang 1917: C = B / (1 − (a/c)·(1 − B)); Fredericks 1980, Bell System Technical Journal 59 (Hayward).
+    Source: Erlang 1917: C = B / (1 − (a/c)·(1 − B)).
     """
-    beds = counts / peakedness
-    below = np.floor(beds).astype(np.int64)
-    needed = np.unique(np.concatenate([below, below + 1]))
-    logs = np.log(np.maximum(erlang_b_table(loads / peakedness, needed), 1e-300))
-    part = (beds - below)[:, None]
-    low, high = np.searchsorted(needed, below), np.searchsorted(needed, below + 1)
-    blocked = np.where(part > 0.0, np.exp((1.0 - part) * logs[low] + part * logs[high]), np.exp(logs[low]))
+    blocked = loss_table(loads, counts, peakedness)
     use = np.minimum(loads / counts[:, None], 1.0)
     steady = use < 1.0
     return np.where(steady, blocked / np.where(steady, 1.0 - use * (1.0 - blocked), 1.0), 1.0)
