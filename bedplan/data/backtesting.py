@@ -54,7 +54,8 @@ def backtest(records: Records, ward: str, *, capacity: Capacity | None = None) -
     """
     records = records.settled
     readings = take_readings(records, ward)
-    trial = _Trial(records, readings, capacity if capacity and ward in capacity.wards else None)
+    beds = capacity and capacity.linked_to(records)
+    trial = _Trial(records, readings, beds if beds and ward in beds.wards else None)
     reason = trial.why_not()
     return Backtest(ward, checked=False, reason=reason) if reason else trial.judged()
 

@@ -57,9 +57,7 @@ def by_list(evidence: Evidence, logs: tuple[EventLog, ...], share: Range) -> Dem
     found = [_not_given(evidence, log, share if log.kind == "refusals" else (1.0, 1.0)) for log in logs]
     not_given, variance = (sum(part) for part in zip(*found, strict=True))
     if not_given == 0:
-        return not_used(
-            LIST, f"Nobody is listed for {ward} in {names}: either nobody was sent away, or nobody noted it."
-        )
+        return not_used(LIST, _nobody_listed(ward, names, logs))
     listed = sum(listed_per_day(evidence, log)[0] for log in logs)
     stands = f", which stand for {not_given:.2f} if {share_text(share)} are written down" if not_given > listed else ""
     reason = (
@@ -67,6 +65,16 @@ def by_list(evidence: Evidence, logs: tuple[EventLog, ...], share: Range) -> Dem
         f"could not be given one here{stands}."
     )
     return evidence.found(LIST, reason, not_given, variance + evidence.by_chance(evidence.had_a_bed_per_day))
+
+
+def _nobody_listed(ward: str, names: str, logs: tuple[EventLog, ...]) -> str:
+    """Say why lists hold nobody for a ward: reasons nobody understands, perhaps another name, or nobody was noted."""
+    unclear = [note for log in logs for note in log.notes_on(ward)]
+    if unclear:
+        return " ".join(unclear)
+    told = f"Nobody is listed for {ward} in {names}: either nobody was sent away, or nobody noted it"
+    other = [f"“{name}”" for log in logs for name in log.unknown_wards][:5]
+    return f"{told}, or it stands there as {' or '.join(other)}, which have no stays." if other else f"{told}."
 
 
 def _not_given(evidence: Evidence, log: EventLog, share: Range) -> Range:

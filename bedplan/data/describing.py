@@ -99,7 +99,8 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
     curve = stay_curve(records, stays, ward)
     starts = (stays["start"] >= records.window[0]) & (stays["start"] < records.window[1])
     days_used = float(bed_days(records, stays).sum())
-    known = capacity if capacity is not None and ward in capacity.wards else None
+    beds = capacity and capacity.linked_to(records)
+    known = beds if beds and ward in beds.wards else None
     full = None if known is None else full_times(records, ward, present(records, stays, 60), known)
     turnover = throughput = None
     if full is not None and len(finished) and full.available_bed_days > 0:

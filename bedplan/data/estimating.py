@@ -135,7 +135,7 @@ def estimate_demand(
 
     Checked by: tests/data/test_estimating.py
     """
-    stays = stays_in_window(records, ward)
+    stays, beds = stays_in_window(records, ward), capacity and capacity.linked_to(records)
     booked = is_booked(stays)
     every = arrivals_of(records, stays["start"])
     curve = stay_curve(records, stays, ward)
@@ -166,7 +166,7 @@ def estimate_demand(
         measured_stay=LengthOfStay.measured(*curve.points()),
         swing=arrivals.swing,
         booked_share=booked_share,
-        beds_today=capacity.beds_today(ward) if capacity and ward in capacity.wards else None,
+        beds_today=beds.beds_today(ward) if beds and ward in beds.wards else None,
     )
 
 

@@ -128,8 +128,9 @@ def hidden_demand(
     Checked by: tests/data/test_hidden_demand.py
     """
     share = _share(share_recorded)
-    logs = refusals if isinstance(refusals, tuple) else () if refusals is None else (refusals,)
-    evidence = gather(own_patients(records.settled, ward), capacity)
+    brought = refusals if isinstance(refusals, tuple) else () if refusals is None else (refusals,)
+    logs = tuple(log.linked_to(records) for log in brought)
+    evidence = gather(own_patients(records.settled, ward), capacity and capacity.linked_to(records))
     methods = (
         by_list(evidence, logs, share),
         by_specialty(evidence),
@@ -148,7 +149,11 @@ def hidden_demand(
         beds_interval=followed.beds_interval,
         spread=(min(one.interval[0] for one in shown), max(one.interval[1] for one in shown)),
         beds_spread=(min(one.beds_interval[0] for one in shown), max(one.beds_interval[1] for one in shown)),
-        notes=(*_notes(evidence, can_tell=bool(used)), *_listed_too_few(evidence, logs, share, used)),
+        notes=(
+            *_notes(evidence, can_tell=bool(used)),
+            *(note for log in logs for note in log.notes_on(ward)),
+            *_listed_too_few(evidence, logs, share, used),
+        ),
     )
 
 

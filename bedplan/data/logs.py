@@ -109,12 +109,19 @@ class EventLog:
         )
         return (f"{told} which of them are, or demand may be higher.",)
 
+    def notes_on(self, ward: str) -> tuple[str, ...]:
+        """What should be said beside a figure of this ward?"""
+        return replace(self, table=self.of_ward(ward), wards=(ward,)).notes
+
     def linked_to(self, records: Records) -> EventLog:
         """What does this file say of the wards of these stays? Names as the stays have them, by the planner's word."""
         names = names_in_stays(self.wards, records)
         wards = tuple(sorted(set(names.values())))
+        unknown = without_stays(wards, records)
+        if all(old == new for old, new in names.items()):
+            return replace(self, unknown_wards=unknown)
         table = self.table.assign(ward=self.table["ward"].map(names))
-        return replace(self, table=table, wards=wards, unknown_wards=without_stays(wards, records))
+        return replace(self, table=table, wards=wards, unknown_wards=unknown)
 
 
 def read_refusals(

@@ -54,7 +54,7 @@ def check_census(records: Records, census: Census, ward: str, clock: str = "00:0
 
     Checked by: tests/data/test_reconciling.py
     """
-    official, records = census.occupied(ward, clock), records.settled
+    official, records = census.linked_to(records).occupied(ward, clock), records.settled
     hour, minute = (int(part) for part in clock.split(":"))
     steps = present(records, stays_in_window(records, ward), 60)
     rebuilt = steps.reshape(records.days, 1_440)[:, hour * 60 + minute]
