@@ -100,7 +100,12 @@ def ask_window(here: Records) -> tuple[dt.date | None, dt.date | None]:
     columns, labels = st.columns(2), ("First complete day", "Last complete day")
     return tuple(
         column.date_input(
-            label, day, EARLIEST, LATEST, key=f"{label.split()[0].lower()}_complete_{intake.times_read()}"
+            label,
+            day,
+            EARLIEST,
+            LATEST,
+            format="YYYY-MM-DD",
+            key=f"{label.split()[0].lower()}_complete_{intake.times_read()}",
         )
         for column, label, day in zip(columns, labels, _found(here), strict=True)
     )

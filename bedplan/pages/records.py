@@ -84,7 +84,7 @@ def type_totals() -> None:
         known = st.radio(
             "What do you know of the stay?", [knows_mean, "how early and how late patients leave"], horizontal=True
         )
-        one, two, three = st.columns(3)
+        one, two, three = st.columns(3, vertical_alignment="bottom")
         mean = one.number_input("Mean stay, days", 0.1, 1000.0, 6.0, 0.1)
         early = two.number_input("1 in 20 leave before … days", 0.01, 1000.0, 1.0, 0.1)
         late = three.number_input("1 in 20 stay past … days", 0.02, 3000.0, 18.0, 0.5)

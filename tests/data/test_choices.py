@@ -139,7 +139,7 @@ def test_every_place_in_the_file_is_told(read: Callable[..., Records]) -> None:
     said = read(*rows, choices=IntakeChoices(places={"Main Theatre": "bed ward"}))
     assert said.places["Main Theatre"] == "bed ward"
     assert said.wards == ("Heron", "Main Theatre")
-    assert any("“Main Theatre” is taken for: bed ward" in note for note in said.report.notes)
+    assert any("“Main Theatre” is taken for: ward with beds" in note for note in said.report.notes)
 
 
 def test_chosen_days_are_named(read: Callable[..., Records]) -> None:

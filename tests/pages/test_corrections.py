@@ -98,7 +98,7 @@ def test_a_place_is_corrected_and_forgotten_again(app: AppTest) -> None:
     take_as(app, "Main Theatre", "ward with beds")
     press(app, SEND)
     assert app.session_state["files"].records.wards == ("East", "Main Theatre", "West")
-    assert any("Main Theatre” is taken for: bed ward" in one.value.replace("\\", "") for one in app.markdown)
+    assert any("Main Theatre” is taken for: ward with beds" in one.value.replace("\\", "") for one in app.markdown)
     assert_all_else_stays(app)
     assert "Main Theatre" in go(app, "one_ward").selectbox(key="ward").options
 
