@@ -15,41 +15,43 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
 
+APART = {"labelOverlap": "parity", "labelSeparation": 4}
 CLOSEST_NAMES = 0.1  # of the picture's height: two names nearer than that would touch
-# two digits in a cell need so many pixels; narrower than the last, the colour alone would be read: no digits there
-DIGITS = alt.ExprRef(expr="width < 300 ? 0 : width < 560 ? 10 : 13")
+# two digits in a cell of so many pixels; where they would touch, the colour is read alone
+DIGITS = "width / {cells} < 13 ? 0 : width / {cells} < 22 ? 10 : 13"
 
 
-def _cells(name: str, x: alt.X, y: alt.Y, height: alt.Step) -> Spec:
-    """Build shares as cells, each with its share written in it, darker where the ward is full more often."""
+def _cells(name: str, cells: int, x: alt.X, y: alt.Y, height: alt.Step) -> Spec:
+    """Build shares as so many cells a row, each with its share written in it, darker where the ward is full more often."""
     data = alt.Chart(alt.NamedData(name))
     colour = alt.Color("share:Q", scale=alt.Scale(domain=[0, 1], range=["#FFFFFF", "#08306B"]), legend=None)
     tips = [y.shorthand, x.shorthand, alt.Tooltip("share:Q", format=".0%", title="Share of hours full")]
-    cells = data.mark_rect(stroke="#B8BEC4", strokeWidth=0.5).encode(x=x, y=y, color=colour, tooltip=tips)
+    colours = data.mark_rect(stroke="#B8BEC4", strokeWidth=0.5).encode(x=x, y=y, color=colour, tooltip=tips)
     ink = alt.condition("datum.share > 0.5", alt.value("#FFFFFF"), alt.value("#0F1419"))
-    text = data.mark_text(fontSize=DIGITS).encode(x=x, y=y, text="said:N", color=ink)
-    return finished(alt.layer(cells, text).properties(height=height))
+    size = alt.ExprRef(expr=DIGITS.format(cells=cells))
+    text = data.mark_text(fontSize=size).encode(x=x, y=y, text="said:N", color=ink)
+    return finished(alt.layer(colours, text).properties(height=height))
 
 
 def _week() -> Spec:
     """Build the week: a cell an hour."""
-    hour = alt.X(
-        "hour:O", title="Hour of the day", axis=alt.Axis(labelAngle=0, labelOverlap="parity", labelSeparation=4)
-    )
+    hour = alt.X("hour:O", title="Hour of the day", axis=alt.Axis(labelAngle=0, **APART))
     day = alt.Y("day:O", sort=list(wording.WEEKDAYS), title=None)
-    return _cells("week", hour, day, alt.Step(30))
+    return _cells("week", 24, hour, day, alt.Step(30))
 
 
 def _year() -> Spec:
     """Build the year: a cell a month, in a row."""
-    month = alt.X("month:O", sort=list(wording.MONTHS_SHORT), title=None, axis=alt.Axis(labelAngle=0, orient="top"))
-    return _cells("year", month, alt.Y("row:O", title=None), alt.Step(34))
+    month = alt.X(
+        "month:O", sort=list(wording.MONTHS_SHORT), title=None, axis=alt.Axis(labelAngle=0, orient="top", **APART)
+    )
+    return _cells("year", 12, month, alt.Y("row:O", title=None), alt.Step(34))
 
 
 def _check() -> Spec:
     """Build last year: the band that was predicted, the middle of it, and the patients who were there."""
     data = alt.Chart(alt.NamedData("check"))
-    day = alt.X("day:T", title=None, axis=alt.Axis(format="%b %Y", tickCount=8))
+    day = alt.X("day:T", title=None, axis=alt.Axis(format="%b %Y", tickCount=8, **APART))
     patients = alt.Y("low:Q", title="Patients", scale=alt.Scale(zero=False), axis=alt.Axis(grid=True, gridOpacity=0.3))
     band = data.mark_area(color="#0072B2", opacity=0.25).encode(x=day, y=patients, y2="high:Q")
     middle = data.mark_line(color="#0072B2", strokeDash=[6, 4], strokeWidth=1.5).encode(x=day, y="middle:Q")

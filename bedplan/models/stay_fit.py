@@ -31,6 +31,7 @@ _NARROWEST = 0.02
 _WEIGHT_LIMIT = 6.0
 # what lies out of a curve's reach: a curve may not excuse stays that it calls impossible by entries it calls so too
 _FAINT, _HOPELESS = -600.0, -1e4
+_SEARCH = {"ftol": 1e-9, "maxiter": 300}
 _HALF_LOG_TWO_PI = 0.5 * math.log(2.0 * math.pi)
 _STEEPEST = 600.0  # a slope's logarithm where a stay is called impossible: steep enough to turn back from, and finite
 
@@ -184,7 +185,11 @@ def _best(family: Callable[..., Array], stays: tuple[Array, ...], starts: list[l
 
     given = slope if family in _SLOPES else None
     bounds = [(-_WEIGHT_LIMIT, _WEIGHT_LIMIT)] * (len(starts[0]) % 2) + _BOUNDS[family] * (len(starts[0]) // 2)
-    tries = [optimize.minimize(unlikeliness, start, jac=given, method="L-BFGS-B", bounds=bounds) for start in starts]
+    # a search without large matrices: others wait for a second thread longer than they compute
+    tries = [
+        optimize.minimize(unlikeliness, start, jac=given, method="SLSQP", bounds=bounds, options=_SEARCH)
+        for start in starts
+    ]
     best = min(tries, key=lambda one: one.fun)
     return -float(best.fun), best.x
 
