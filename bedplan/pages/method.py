@@ -15,7 +15,8 @@ METHODS = {
     "number about the load. Eick, Massey & Whitt 1993. It answers for wards whose patients wait or are placed elsewhere.",
     "seasonal_loss": "Patients who find the ward full go elsewhere, hour by hour through the week at each month's level of "
     "demand, with the delay that stays cause: a chain of the ward's beds near the decision, Erlang's formula on the load of "
-    "each hour elsewhere. Massey & Whitt 1994; groups by Fredericks 1980; its note says how far it may err.",
+    "each hour elsewhere. Massey & Whitt 1994; patients in groups by a chain of the beds, smooth arrivals by Fredericks 1980; "
+    "its note says how far it may err.",
     "waiting": "Patients wait for a bed instead of leaving, and the queue carries over: Erlang's delay formula (1917), "
     "corrected for the spread of stay by Allen & Cunneen. Where the load reaches the beds the queue only grows.",
 }
