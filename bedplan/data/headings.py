@@ -2,7 +2,12 @@
 
 from __future__ import annotations
 
-from bedplan.data.columns import words
+from typing import TYPE_CHECKING
+
+from bedplan.data.columns import STAY_HEADINGS, words
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
 
 CAPACITY_HEADINGS: dict[str, tuple[str, ...]] = {
     "ward": words("ward wardcode wardname location unit"),
@@ -63,9 +68,21 @@ RETURN_HEADINGS: dict[str, tuple[str, ...]] = {
     "discharges": words("discharges discharged dischargesanddeaths dischargesincldeaths separations admissions spells"),
 }
 READY_HEADINGS: dict[str, tuple[str, ...]] = {
+    "spell_key": STAY_HEADINGS["spell_key"],
+    "patient_key": STAY_HEADINGS["patient_key"],
     "date": words(
         "date ready readydate drd mffd nctr dischargereadydate readyfordischarge medicallyfit datemedicallyready readyat "
         "dischargeready mffddate nctrdate medicallyfitdate fitdate dateready readyon dateoptimised"
     ),
     "time": words("time readytime clock hour"),
+}
+HEADINGS_OF: Mapping[str, Mapping[str, tuple[str, ...]]] = {  # kind of file -> its headings
+    "ward stays": STAY_HEADINGS,
+    "staffed beds": CAPACITY_HEADINGS,
+    "refusals": REFUSAL_HEADINGS,
+    "bed requests": REQUEST_HEADINGS,
+    "cancellations": CANCELLATION_HEADINGS,
+    "census": CENSUS_HEADINGS,
+    "monthly return": RETURN_HEADINGS,
+    "ready dates": READY_HEADINGS,
 }

@@ -1,4 +1,4 @@
-"""What the headings of a ward-stay file were taken for, with three rows, so that a person can confirm or correct it."""
+"""What the headings of a file were taken for, with three rows, so that a person can confirm or correct it."""
 
 from __future__ import annotations
 
@@ -6,10 +6,11 @@ from dataclasses import dataclass
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
-from bedplan.data.columns import STAY_HEADINGS, is_identity
+from bedplan.data.columns import is_identity
+from bedplan.data.headings import HEADINGS_OF
 from bedplan.data.reading import LINE, SEPARATORS, as_utf8, read_table, split_cells
 from bedplan.data.source import FileLike, SourceFile, open_source
-from bedplan.errors import UnreadableRecords
+from bedplan.errors import ImpossibleFigure, UnreadableRecords
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -23,39 +24,49 @@ MATCHED = ("ward", "start", "end", "patient_key", "spell_key", "class", "method"
 class ColumnPreview:
     """``headings``: every heading but those of identity columns. ``matched``: our name → heading as written.
 
-    ``samples``: our name → the first three values under its heading.
+    ``samples``: our name → the first three values under its heading. ``asked``: our names to ask a person about.
     """
 
     headings: tuple[str, ...]
     matched: Mapping[str, str]
     samples: Mapping[str, tuple[str, ...]]
+    asked: tuple[str, ...] = MATCHED
 
 
 def preview_columns(
-    source: FileLike, *, name: str | None = None, columns: Mapping[str, str] | None = None
+    source: FileLike,
+    *,
+    name: str | None = None,
+    columns: Mapping[str, str] | None = None,
+    kind: str = "ward stays",
 ) -> ColumnPreview:
     """Which heading was taken for what, and what do three rows hold? ``columns`` as in :func:`read_records`.
 
     Looks at the first lines only. A file without one known heading still lists its headings, so that the ward, start
-    and end columns can be chosen.
+    and end columns can be chosen. ``kind``: ``"ward stays"``, ``"staffed beds"``, ``"refusals"``, ``"bed requests"``,
+    ``"cancellations"``, ``"census"``, ``"monthly return"`` or ``"ready dates"``.
 
     Raises:
         UnreadableRecords: the file is no table at all.
+        ImpossibleFigure: a kind of file nobody knows.
 
     Checked by: tests/data/test_preview.py
     """
+    if kind not in HEADINGS_OF:
+        raise ImpossibleFigure(f"The kind of file {kind!r} is not known: it is one of {', '.join(HEADINGS_OF)}.")
+    asked = MATCHED if kind == "ward stays" else tuple(HEADINGS_OF[kind])
     file = open_source(source, name)
     is_text = not file.begins_with(b"PK", b"PAR1")
     top = SourceFile(file.name, bytes(_first_lines(as_utf8(file)[0]))) if is_text else file
     try:
-        table = read_table(top, STAY_HEADINGS, columns)
+        table = read_table(top, HEADINGS_OF[kind], columns)
     except UnreadableRecords:
         if not is_text:
             raise
-        return ColumnPreview(_plain_headings(top.content), MappingProxyType({}), MappingProxyType({}))
+        return ColumnPreview(_plain_headings(top.content), MappingProxyType({}), MappingProxyType({}), asked)
     samples = {key: _sample(key, table.strings(key)[:SAMPLE_ROWS]) for key in table.headings}
     headings = (*table.headings.values(), *table.unused)
-    return ColumnPreview(headings, MappingProxyType(dict(table.headings)), MappingProxyType(samples))
+    return ColumnPreview(headings, MappingProxyType(dict(table.headings)), MappingProxyType(samples), asked)
 
 
 def _sample(key: str, values: list[str]) -> tuple[str, ...]:

@@ -9,7 +9,6 @@ import pandas as pd
 import pyarrow as pa
 
 from bedplan.data.choices import DATE_ORDERS
-from bedplan.data.columns import STAY_HEADINGS
 from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE, read_times
 from bedplan.data.headings import READY_HEADINGS
 from bedplan.data.moments import when
@@ -49,7 +48,7 @@ def read_ready_dates(
     Checked by: tests/data/test_ready.py
     """
     file = open_source(source, name)
-    text = read_table(file, READY_HEADINGS | {key: STAY_HEADINGS[key] for key in KEYS}, columns)
+    text = read_table(file, READY_HEADINGS, columns)
     if not {"date", "time"} & set(text.columns) or not set(KEYS) & set(text.columns):
         told = f"{file.name} lacks a column of keys or of ready dates: it should have a row for each stay or patient"
         raise UnreadableRecords([f"{told}, with spell_key or patient_key and date."])

@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import pytest
+
 from bedplan.data import preview_columns, read_records
+from bedplan.errors import ImpossibleFigure
 
 ROWS = b"Location,In,Out,Surname,Note\nA,2024-01-01 10:00,2024-01-02 10:00,Smith,x\nB,2024-01-03 10:00,2024-01-04 10:00,Jones,y\n"
 
@@ -50,3 +53,30 @@ def test_keys_are_not_shown() -> None:
 
     assert seen.matched["patient_key"] == "MRN"
     assert "9434765919" not in str(seen)
+
+
+@pytest.mark.parametrize(
+    ("kind", "content", "matched"),
+    [
+        ("staffed beds", b"ward,from,staffed_beds\nTeal,2024-01-01,12\n", ("ward", "from", "staffed")),
+        ("refusals", b"Date,Time,Ward,Reason\n2024-01-01,10:00,Teal,no bed\n", ("ward", "time", "date", "reason")),
+        ("bed requests", b"ward,requested_at,placed_at\nTeal,2024-01-01,2024-01-02\n", ("ward", "time", "placed")),
+        ("cancellations", b"planned_date,ward,cancelled\n2024-01-01,Teal,Y\n", ("ward", "date", "outcome")),
+        ("census", b"date,ward,occupied\n2024-01-01,Teal,5\n", ("date", "ward", "occupied")),
+        ("monthly return", b"month,ward,discharges\n2024-01,Teal,5\n", ("month", "ward", "discharges")),
+        ("ready dates", b"spell_key,ready\ns1,2024-01-01\n", ("spell_key", "date")),
+    ],
+)
+def test_other_files_show_their_columns_too(kind: str, content: bytes, matched: tuple[str, ...]) -> None:
+    """Each kind of file has its own names, and keys are not shown."""
+    seen = preview_columns(content, kind=kind)
+
+    assert tuple(seen.matched) == matched
+    assert set(matched) <= set(seen.asked)
+    assert not any("s1" in cells for cells in seen.samples.values())
+
+
+def test_a_kind_of_file_nobody_knows_is_refused() -> None:
+    """A wrong name is a mistake of the caller."""
+    with pytest.raises(ImpossibleFigure, match="staffed beds"):
+        preview_columns(b"ward,from\nTeal,2024-01-01\n", kind="beds")
