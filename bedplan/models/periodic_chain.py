@@ -175,14 +175,16 @@ def _coarser(rhythm: Rhythm, size: int, fine: int) -> Rhythm:
 def _settled_start(wards: _Wards, rhythm: Rhythm) -> Array:
     """Return the state in which the period starts: a few periods in coarse steps, and one in less coarse ones."""
     coarse = _coarser(rhythm, _COARSE_STEPS, 0)
+    rates = leaving_rates(coarse)
     states = [wards.truncated_poisson(rhythm.load_at_end[-1])]
     for turn in range(6):
-        states.append(wards.scaled(_one_period(wards, coarse, states[-1])[0]))
+        states.append(wards.scaled(_one_period(wards, coarse, rates, states[-1])[0]))
         if wards.total(np.abs(states[-1] - states[-2])).max() < _SETTLED_START:
             break
         if turn % 2:
             states = [_jump_ahead(wards, states[-3:])]
-    return _one_period(wards, _coarser(rhythm, _LESS_COARSE_STEPS, _FINE_STEPS), states[-1])[0]
+    finer = _coarser(rhythm, _LESS_COARSE_STEPS, _FINE_STEPS)
+    return _one_period(wards, finer, leaving_rates(finer), states[-1])[0]
 
 
 def _jump_ahead(wards: _Wards, states: Sequence[Array]) -> Array:
@@ -198,19 +200,18 @@ def fullness(rhythm: Rhythm, beds: Sequence[NDArray[np.int64]], most_periods: in
     ``beds``: for each level whole numbers of 1 or more. Followed until the end of a period looks like its start.
     """
     wards = _Wards(rhythm.load_at_end, beds)
-    state = _settled_start(wards, rhythm)
+    state, rates = _settled_start(wards, rhythm), leaving_rates(rhythm)
     for _ in range(most_periods):
         start = state
-        state, found = _one_period(wards, rhythm, start)
+        state, found = _one_period(wards, rhythm, rates, start)
         if wards.total(np.abs(state - start)).max() < _SETTLED:
             break
     ends = np.cumsum([counts.size for counts in beds])[:-1]
     return Fullness(*(np.split(np.maximum(part, 0.0), ends, axis=1) for part in found))
 
 
-def _one_period(wards: _Wards, rhythm: Rhythm, state: Array) -> tuple[Array, Fullness]:
+def _one_period(wards: _Wards, rhythm: Rhythm, rates: Array, state: Array) -> tuple[Array, Fullness]:
     """Carry the wards through one period: the state after it, and how full they were, all wards side by side."""
-    rates = leaving_rates(rhythm)
     groups: dict[int, list[Group]] = {}
     for group in rhythm.booked:
         groups.setdefault(group.hour, []).append(group)

@@ -99,10 +99,14 @@ def _joined(nodes: Array, at: Array) -> Array:
     if nodes.size < 4:
         return between(nodes, at)
     first = np.clip(np.searchsorted(nodes, at, side="right") - 2, 0, nodes.size - 4)
+    column = first[:, None] + np.arange(4)
+    four, shares = nodes[column], np.ones(column.shape)
+    for j in range(4):
+        for other in range(4):
+            if other != j:
+                shares[:, j] *= (at - four[:, other]) / (four[:, j] - four[:, other])
     weights = np.zeros((at.size, nodes.size))
-    for start in np.unique(first):
-        here = first == start
-        weights[here, start : start + 4] = between(nodes[start : start + 4], at[here])
+    np.put_along_axis(weights, column, shares, axis=1)
     return weights
 
 
