@@ -3,14 +3,21 @@
 from __future__ import annotations
 
 import functools
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any
 
 import streamlit as st
 
 from bedplan import wording
-from bedplan.data import read_cancellations, read_capacity, read_census, read_monthly_return, read_refusals
-from bedplan.errors import BedplanError
+from bedplan.data import (
+    read_cancellations,
+    read_capacity,
+    read_census,
+    read_monthly_return,
+    read_ready_dates,
+    read_refusals,
+)
+from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.pages import controls, intake, loaded, typed
 from bedplan.plan import from_return
 
@@ -68,7 +75,7 @@ def load_capacity() -> None:
         """Take today's staffed beds from it."""
         found = read_capacity(content, name=name, date_order=date_order)
         controls.use_capacity(found, content)
-        return list(found.notes)
+        return [*found.report.sentences, *found.notes]
 
     offer(
         "capacity",
@@ -89,6 +96,8 @@ def load_more() -> None:
     with st.expander("More files"):
         for kind, (label, reader) in kinds.items():
             offer(kind, label, functools.partial(take_beside, kind, reader), disabled=loaded.is_demo())
+            ask_reasons(kind)
+        offer("ready", "Ready to leave: stay or patient key, date", take_ready, disabled=loaded.is_demo())
         label = (
             "Monthly return, where there is nothing better: month, ward, available and occupied bed-days, discharges"
         )
@@ -100,25 +109,55 @@ def load_more() -> None:
 def take_beside(kind: str, reader: Callable[..., Any], content: bytes, name: str, date_order: str | None) -> list[str]:
     """Add a list or a census beside the records."""
     found = reader(content, name=name, date_order=date_order)
-    loaded.use_file(content, **{kind: found})
-    return list(found.cannot)
+    loaded.use_file(content, kind, found)
+    return [*found.report.sentences, *found.cannot]
 
 
-def take_return(content: bytes, name: str, _date_order: str | None) -> list[str]:
+def take_ready(content: bytes, name: str, date_order: str | None) -> list[str]:
+    """Read the ward stays again, with the dates on which patients were ready to leave."""
+    found = read_ready_dates(content, name=name, date_order=date_order)
+    here = loaded.files().marked("ready", name, content)
+    choices = replace(here.answers.choices, ready_dates=found)
+    problems = intake.read_again(replace(here.answers, choices=choices))
+    if problems:
+        raise UnreadableRecords(problems)
+    loaded.use(replace(loaded.files(), marks=here.marks))
+    return [*found.report.sentences]
+
+
+def ask_reasons(kind: str) -> None:
+    """Ask which reasons in a list mean that no bed was free, where that can't be told."""
+    log = loaded.files().given.get(kind)
+    unclear = getattr(log, "unclear_reasons", None)
+    if not unclear:
+        return
+    with st.form(f"{kind}_reasons", border=False):
+        chosen = st.multiselect(
+            "Which of these reasons mean that no bed was free?",
+            list(unclear),
+            format_func=lambda reason: f"{reason or 'no reason given'} ({unclear[reason]:,})",
+            key=f"{kind}_no_bed",
+        )
+        if st.form_submit_button("Count these"):
+            loaded.use_reasons(kind, tuple(chosen))
+            st.rerun()
+
+
+def take_return(content: bytes, name: str, date_order: str | None) -> list[str]:
     """Make a ward to plan of each ward in a monthly return that the planner's records don't hold."""
-    returned = read_monthly_return(content, name=name)
-    known = () if loaded.is_demo() else loaded.records().wards
-    made, told = [], []
-    for ward in returned.wards:
-        if ward in known:
-            continue
+    returned = read_monthly_return(content, name=name, date_order=date_order)
+    if not loaded.is_demo():
+        returned = returned.linked_to(loaded.records())
+    made, told = [], [*returned.report.sentences, *returned.report.notes]
+    known = () if loaded.is_demo() else set(returned.wards) - set(returned.unknown_wards)
+    for ward in sorted(set(returned.wards) - set(known)):
         try:
             made.append(from_return(returned, ward))
         except BedplanError as error:
             told.append(f"{ward}: {error}")
     for ward in made:
         typed.use_totals(ward)
-    if len(made) + len(told) < len(returned.wards):
+    if known:
         told.append("Wards that have ward stays were left as they are: stays say more than a return.")
     ready = "1 ward is" if len(made) == 1 else f"{len(made)} wards are"
     return [f"{ready} ready on the page One ward, from averages only.", *told]

@@ -100,9 +100,9 @@ def forget_inputs() -> None:
 
 def use_capacity(beds: Capacity, content: bytes) -> None:
     """Take today's staffed beds from this file from now on; every other input stays."""
-    loaded.use_file(content, capacity=beds)
-    settings = st.session_state.get("settings", {})
-    for name in [name for name in settings if name in beds.wards]:
+    loaded.use_file(content, "capacity", beds)
+    settings, listed = st.session_state.get("settings", {}), loaded.files().capacity.wards
+    for name in [name for name in settings if name in listed]:
         settings[name] = settings[name] | {"beds": baseline(name).beds}
     st.session_state.pop("beds", None)
 

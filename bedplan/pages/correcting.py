@@ -66,7 +66,7 @@ def correct() -> None:
 
 def _names_only(choices: IntakeChoices) -> IntakeChoices:
     """Return the answers without what is corrected here."""
-    return IntakeChoices(ward_names=choices.ward_names)
+    return IntakeChoices(ward_names=choices.ward_names, ready_dates=choices.ready_dates)
 
 
 def ask_places(here: Records) -> pd.DataFrame:

@@ -62,7 +62,7 @@ def take_in(name: str, content: bytes, answers: Answers) -> None:
         return
     st.session_state.pop("refused", None)
     st.session_state["times_read"] = times_read() + 1
-    for kind in loaded.OTHER_FILES:  # what is still in their boxes belongs to the new file too
+    for kind in loaded.MARKED:  # what is still in their boxes belongs to the new file too
         st.session_state.pop(f"{kind}_taken", None)
     controls.use_files(found)
 
@@ -73,7 +73,7 @@ def read_again(answers: Answers) -> tuple[str, ...]:
     found = read(here.records.name, here.content, answers)
     if isinstance(found, Refused):
         return found.problems
-    controls.use_files_again(replace(here, records=found.records, answers=answers))
+    controls.use_files_again(replace(here, records=found.records, answers=answers).linked())
     st.session_state["times_read"] = times_read() + 1
     return ()
 
@@ -191,7 +191,7 @@ def confirm_columns(name: str, content: bytes, answers: Answers, use: Callable[[
 def confirm_links() -> None:
     """Offer to count names that may be one ward together."""
     answers = loaded.files().answers
-    for place, link in enumerate(loaded.records().links):
+    for place, link in enumerate(loaded.links()):
         left, right = st.columns([4, 1])
         left.markdown(wording.plain(link.sentence))
         if len(link.new) == 1 and right.button("Count together", key=f"link_{place}"):

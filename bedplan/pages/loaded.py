@@ -33,13 +33,23 @@ from bedplan.data import (
     stay_families,
     what_repairs_change,
 )
+from bedplan.data.linking import likely_links
 from bedplan.errors import UnreadableRecords
 from bedplan.plan import Answers, Baseline, from_estimate
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
-    from bedplan.data import Backtest, Forecast, HiddenDemand, PastYear, RepairEffect, StayFamilies, WardDescription
+    from bedplan.data import (
+        Backtest,
+        Forecast,
+        HiddenDemand,
+        PastYear,
+        RepairEffect,
+        StayFamilies,
+        WardDescription,
+        WardLink,
+    )
 
 DEMO = Path(__file__).resolve().parents[2] / "demo_data"
 OTHER_FILES: Mapping[str, str] = {
@@ -48,6 +58,7 @@ OTHER_FILES: Mapping[str, str] = {
     "cancellations": "Cancelled booked patients",
     "census": "Census",
 }
+MARKED = {**OTHER_FILES, "ready": "Ready dates"}
 # What the wards of the invented demo hospital do when full, and the share of their refusals that is written down;
 # for other records the planner answers.
 DEMO_LEAVES = frozenset({"Merlin", "Curlew", "Dunlin", "Sandpiper"})
@@ -58,7 +69,8 @@ DEMO_RECORDED_SHARES: Mapping[str, float] = {"Curlew": 0.6, "Dunlin": 0.6}
 class Files:
     """Every file the planner plans with; ``marks`` = (what, name and SHA-256) of those beside the records.
 
-    ``content`` is the records' file, to read it again; ``answers`` is how it was read.
+    ``content`` is the records' file, to read it again; ``answers`` is how it was read. ``given``: the other files with their
+    wards as they name them; beside it they stand with the names that the records have.
     """
 
     records: Records
@@ -69,6 +81,24 @@ class Files:
     marks: tuple[tuple[str, str], ...] = ()
     content: bytes = b""
     answers: Answers = field(default_factory=Answers)
+    given: Mapping[str, Any] = field(default_factory=dict)
+
+    def linked(self) -> Files:
+        """Return these files with the wards of the others named as the records name them."""
+        return replace(self, **{kind: one.linked_to(self.records) for kind, one in self.given.items()})
+
+    def marked(self, kind: str, name: str, content: bytes) -> Files:
+        """Return these files with one more named for the document.
+
+        Raises:
+            UnreadableRecords: the same file is in use already, for something else: it would count twice.
+        """
+        what, value = _mark(kind, name, content)
+        mark = value[-64:]
+        for other, known in {"Ward stays": self.records.fingerprint, **dict(self.marks)}.items():
+            if known.endswith(mark) and other != what:
+                raise UnreadableRecords([f"{name} is in use already, as “{other}”: choose another file here."])
+        return replace(self, marks=tuple({**dict(self.marks), what: value}.items()))
 
 
 @st.cache_resource(max_entries=1, show_spinner="Opening the Larkmere demo…")
@@ -105,44 +135,47 @@ def use(given: Files | None) -> None:
     st.session_state["worked_out"] = {}
 
 
-def use_file(content: bytes, **given: Capacity | EventLog | Census) -> None:
+def use_file(content: bytes, kind: str, found: Capacity | EventLog | Census) -> None:
     """Add a file beside the planner's records.
 
     Raises:
         UnreadableRecords: the same file is in use already, for something else.
     """
+    here = files().marked(kind, found.name, content)
+    marks = tuple(row for row in here.marks if row[0] != _reasons_row(kind))
+    use(replace(here, marks=marks, given={**here.given, kind: found}).linked())
+
+
+def use_reasons(kind: str, reasons: tuple[str, ...]) -> None:
+    """Take the planner's word for which reasons in a list mean that no bed was free."""
     here = files()
-    refuse_twice(content, *given)
-    marks = dict(here.marks) | {
-        _mark(kind, one.name, content)[0]: _mark(kind, one.name, content)[1] for kind, one in given.items()
-    }
-    use(replace(here, marks=tuple(marks.items()), **given))
+    said = (_reasons_row(kind), "; ".join(reasons) or "none")
+    log = replace(here.given[kind], no_bed_reasons=reasons)
+    use(replace(here, marks=(*here.marks, said), given={**here.given, kind: log}).linked())
 
 
-def refuse_twice(content: bytes, kind: str) -> None:
-    """Refuse a file that is in use already for something else: it would count twice.
-
-    Raises:
-        UnreadableRecords: it is.
-    """
-    mark = hashlib.sha256(content).hexdigest()
-    in_use = {"Ward stays": files().records.fingerprint} | dict(files().marks)
-    for what, value in in_use.items():
-        if value.endswith(mark) and what != OTHER_FILES.get(kind):
-            raise UnreadableRecords([f"This file is in use already, as “{what}”: choose another one here."])
+def _reasons_row(kind: str) -> str:
+    """Return what the document calls the reasons that the planner took for lack of a bed."""
+    return f"Reasons taken for lack of a bed, {OTHER_FILES[kind].lower()}"
 
 
 def without_stays() -> tuple[str, ...]:
     """Say which wards of the other files have no stays in the records, so that nothing is left out silently."""
     here = files()
-    other = [one for one in (here.capacity, here.refusals, here.cancellations, here.census) if one is not None]
-    names = [(one.name, [ward for ward in one.wards if ward not in here.records.wards]) for one in other]
-    return tuple(wording.not_used(name, wards) for name, wards in names if wards)
+    unused = [(one.name, list(getattr(here, kind).unknown_wards)) for kind, one in here.given.items()]
+    return tuple(wording.not_used(name, wards) for name, wards in unused if wards)
+
+
+def links() -> tuple[WardLink, ...]:
+    """Return which names, in the records and in the files beside them, may be one ward."""
+    here = files()
+    unknown = dict.fromkeys(ward for kind in here.given for ward in getattr(here, kind).unknown_wards)
+    return (*here.records.links, *likely_links(unknown, here.records))
 
 
 def _mark(kind: str, name: str, content: bytes) -> tuple[str, str]:
     """Return (what, name and fingerprint) of a file for the document."""
-    return OTHER_FILES[kind], f"{name}, SHA-256 {hashlib.sha256(content).hexdigest()}"
+    return MARKED[kind], f"{name}, SHA-256 {hashlib.sha256(content).hexdigest()}"
 
 
 def recorded_share(name: str) -> float:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import tomllib
+from datetime import timedelta
 from typing import TYPE_CHECKING
 
 import pytest
@@ -237,6 +238,86 @@ def test_wards_without_stays_are_named(app: AppTest) -> None:
     said = text(app.caption)
     assert "beds.csv: the records hold no stays on Ward 1, Ward 2, Ward 3, Ward 4 and 3 more" in said
     assert "log.csv: the records hold no stays on North, so" in said
+
+
+@pytest.fixture
+def keyed(open_app: Callable[..., AppTest], stays_csv: bytes) -> AppTest:
+    """Return the page Records with the same ward stays loaded, each with a key."""
+    heading, *rows = stays_csv.decode().split("\n")
+    content = "\n".join([f"spell_key,{heading}", *(f"s{place},{row}" for place, row in enumerate(rows))])
+    return give(go(open_app(), "records"), "stays_file", "stays.csv", content.encode())
+
+
+def test_ready_dates_are_joined(keyed: AppTest) -> None:
+    """Dates on which patients were ready to leave are joined by key; the document names their file; corrections keep them."""
+    stays = keyed.session_state["files"].records.stays
+    ready = "\n".join(
+        f"s{place},{moment - timedelta(days=1):%Y-%m-%d %H:%M}" for place, moment in enumerate(stays["end"])
+    )
+    give(keyed, "ready_file", "ready.csv", f"spell_key,date\n{ready}\n".encode())
+    assert not keyed.exception
+    assert not keyed.error
+    found = keyed.session_state["files"].records.stays
+    assert set((found["end"] - found["ready"]).dt.total_seconds()) == {86_400}
+    press(keyed, "Read it again with these corrections")
+    assert "ready" in keyed.session_state["files"].records.stays
+
+    go(keyed, "justification")
+    assert any("ready.csv" in one.value.to_csv().replace("\\", "") for one in keyed.table)
+
+
+@pytest.mark.parametrize(
+    ("content", "told"),
+    [
+        (b"", "empty"),
+        (b"ward,date\nEast,2024-02-01\n", "lacks a column of keys"),
+        (b"spell_key,date\ns1,soon\n", "can't be read (1 row)"),
+        (b"patient_key,date\np1,2024-02-01\n", "can't be joined"),
+    ],
+)
+def test_ready_dates_that_cannot_be_used_change_nothing(keyed: AppTest, content: bytes, told: str) -> None:
+    """A file of ready dates that is none, or has no key in common with the stays, is refused in a sentence."""
+    before = keyed.session_state["files"]
+    give(keyed, "ready_file", "ready.csv", content)
+
+    assert len(keyed.error) == 1
+    assert told in text(keyed.error)
+    assert keyed.session_state["files"] is before
+
+
+def press(app: AppTest, label: str) -> AppTest:
+    """Press a button."""
+    return next(one for one in app.button if one.label == label).click().run()
+
+
+def test_reasons_that_are_not_understood_are_asked_about(app: AppTest) -> None:
+    """The planner says which reasons mean that no bed was free; those count, and the document says which they are."""
+    rows = "2024-02-01 10:00,East,code 7\n2024-02-02 10:00,East,code 9\n2024-02-03 10:00,East,no bed\n"
+    give(app, "refusals_file", "log.csv", f"time,ward,reason\n{rows}".encode())
+    log = app.session_state["files"].refusals
+    assert len(log.for_lack_of_beds("East")) == 1
+    app.multiselect(key="refusals_no_bed").set_value(["code 7"])
+    press(app, "Count these")
+
+    assert not app.exception
+    assert len(app.session_state["files"].refusals.for_lack_of_beds("East")) == 2
+    assert not app.multiselect
+    go(app, "justification")
+    assert any("code 7" in one.value.to_csv() for one in app.table)
+
+
+def test_names_of_other_files_are_brought_together(app: AppTest) -> None:
+    """Other capitals are the same ward at once; another spelling is, once the planner says so."""
+    give(app, "capacity_file", "beds.csv", b"ward,from,to,staffed beds\nEAST,2024-01-01,,9\nWard West,2024-01-01,,7\n")
+    assert app.session_state["files"].capacity.beds_today("East") == 9
+    assert "no stays on Ward West" in text(app.caption)
+    press(app, "Count together")
+
+    assert not app.exception
+    assert app.session_state["files"].capacity.beds_today("West") == 7
+    assert "hold no stays" not in text(app.caption)
+    go(app, "one_ward").selectbox(key="ward").set_value("West").run()
+    assert app.number_input(key="beds").value == 7
 
 
 @pytest.mark.parametrize("box", ["capacity_file", "refusals_file", "cancellations_file", "census_file"])
