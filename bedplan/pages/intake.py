@@ -41,7 +41,7 @@ def read(name: str, content: bytes, answers: Answers) -> loaded.Files | Refused:
 
     def tell(share: float, doing: str) -> None:
         """Show how far reading is; the server may stop it here."""
-        bar.progress(share, f"Reading {wording.plain(name)}: {doing}")
+        bar.progress(share, f"Reading {wording.plain(name)}: {doing}. To stop, take the file out of its box.")
 
     try:
         found = read_records(content, name=name, progress=tell, **answers.to_read())
@@ -163,12 +163,14 @@ def ask_date_order(kind: str, question: DateQuestion, use: Callable[[str], None]
 
 def confirm_columns(name: str, content: bytes, answers: Answers, use: Callable[[Answers], None]) -> None:
     """Show which heading was taken for what, with three rows, and let the planner correct it."""
+    refused: Refused | None = st.session_state.get("refused")
+    unsure = refused is not None and refused.question is None
     try:
         seen = preview_columns(content, name=name, columns=answers.columns)
     except BedplanError:
         return
     with (
-        st.expander("How the columns were read", expanded="refused" in st.session_state),
+        st.expander("How the columns were read", expanded=unsure),
         st.form("columns", border=False),
     ):
         chosen = {}

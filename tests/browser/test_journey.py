@@ -165,6 +165,53 @@ def test_after_a_reload(page: Page, server: str, stays_csv: bytes) -> None:
     assert page.get_by_text("which are not loaded").count() == 0
 
 
+def test_a_reload_on_another_page(page: Page, server: str) -> None:
+    """Settings stand in the address of other pages too: reloaded there, One ward still shows them."""
+    page.goto(server)
+    page.get_by_role("heading", name=re.compile("Kestrel has")).wait_for()
+    slider = page.locator(".st-key-demand input[type=range]")
+    slider.focus()
+    page.keyboard.press("ArrowRight")
+    page.get_by_text("go elsewhere", exact=True).click()
+    page.wait_for_url(re.compile(r"full=leaves"))
+    turn_to(page, "Compare wards")
+    page.get_by_role("heading", name=re.compile("The next bed")).wait_for()
+    page.wait_for_url(re.compile(r"compare\?.*demand=1"))
+    page.reload()
+    page.get_by_role("heading", name=re.compile("The next bed")).wait_for()
+    turn_to(page, "One ward")
+    page.get_by_role("heading", name=re.compile("Kestrel has .* turned away")).wait_for()
+    page.wait_for_url(re.compile(r"demand=1(&|$)"))
+    assert slider.input_value() == "1"
+
+
+def test_the_file_is_corrected(page: Page, server: str, stays_csv: bytes) -> None:
+    """A place is chosen from the table's own list and a period typed into it; the file is read again as said."""
+    page.goto(server)
+    load_file(page, stays_csv + b"\nMain Theatre,2024-02-01 09:00,2024-02-01 15:00")
+    page.get_by_text("Correct how the file was taken").click()
+    cell(page, "places", 0.75, 1)
+    page.get_by_role("option", name="ward with beds").click()
+    for at, day in ((0.3, "2024-03-01"), (0.8, "2024-03-31")):
+        cell(page, "left_out", at, 1)
+        page.locator("input[type=date]").last.fill(day)
+        page.keyboard.press("Enter")
+    settle(page)
+    page.get_by_role("button", name="Read it again with these corrections").click()
+    page.get_by_text("“Main Theatre” is taken for: ward with beds").wait_for()
+    page.get_by_text("01 March 2024 to 31 March 2024 is left out").wait_for()
+
+
+def cell(page: Page, table: str, across: float, row: int) -> None:
+    """Open a cell of a table that can be edited, by its place."""
+    grid = page.locator(f'[class*="st-key-{table}"] canvas').first
+    grid.scroll_into_view_if_needed()
+    settle(page)
+    box = grid.bounding_box()
+    page.mouse.dblclick(box["x"] + across * box["width"], box["y"] + 35 * row + 17)
+    page.wait_for_timeout(300)
+
+
 def choose(page: Page, key: str, ward: str) -> None:
     """Choose a ward from a list."""
     page.locator(f".st-key-{key} input").click()
