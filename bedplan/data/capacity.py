@@ -12,7 +12,7 @@ import pyarrow as pa
 
 from bedplan.data.columns import TELLTALES, without_formula
 from bedplan.data.dateorder import read_ordered
-from bedplan.data.dates import BLANK_WORDS, MISSING, UNREADABLE
+from bedplan.data.dates import BLANK_WORDS, UNREADABLE
 from bedplan.data.headings import CAPACITY_HEADINGS
 from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
 from bedplan.data.periods import merged, periods_that_count
@@ -30,6 +30,7 @@ if TYPE_CHECKING:
     from bedplan.data.records import Records
     from bedplan.data.texttable import TextTable
 
+MOST_NAMED = 10  # cells nobody can read that are named one by one
 OPEN_ENDS = ("1990-01-01", "2100-12-31")  # of a period without a first or a last day
 
 
@@ -129,8 +130,8 @@ def read_capacity(
     ``columns`` and ``date_order`` as in ``read_records``.
 
     Raises:
-        UnreadableRecords: no ward or no bed column, cells that name no number of beds, or dates whose order somebody must
-            say (the question is in ``.question``).
+        UnreadableRecords: no ward or no bed column, nothing that can be used, or dates whose order somebody must say (the
+            question is in ``.question``).
 
     Checked by: tests/data/test_capacity.py
     """
@@ -149,18 +150,18 @@ def read_capacity(
 
 def _capacity(text: TextTable, name: str, date_order: str | None) -> Capacity:
     """Keep the rows that say something, and account for the others."""
-    frame, reason = _frame(text, name, date_order)
+    frame, reason, unread = _frame(text, name, date_order)
     kept = frame[reason == ""]
     counts = reason[reason != ""].value_counts()
     findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
     if kept.empty:
         told = f"{name} names no ward with a number of beds: check the columns ward and staffed_beds."
-        raise UnreadableRecords([told, why_none(name, findings, "check these columns")] if findings else [told])
+        raise UnreadableRecords(unread or [told, why_none(name, findings, "check these columns")])
     if text.misfits:
         findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
-    kept = kept.astype({"funded": int, "staffed": int, "closed": int})
     kept = kept.sort_values(["ward", "from", "to"], ascending=[True, True, False], kind="stable").reset_index(drop=True)
-    notes = (*text.notes, *_notes(text, frame[reason == ""], kept))
+    left_out = ["Where a row is left out, the period before it stands for its days."] if unread else []
+    notes = (*text.notes, *unread, *left_out, *_notes(text, kept))
     report = IntakeReport(
         rows_in=len(frame) + text.misfits,
         used=len(kept),
@@ -174,16 +175,13 @@ def _capacity(text: TextTable, name: str, date_order: str | None) -> Capacity:
     return Capacity(name, table, tuple(sorted(set(table["ward"]))), notes, report)
 
 
-def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series]:
-    """Return every row, and why it can't be used ("" = it can)."""
+def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series, list[str]]:
+    """Return every row, why it can't be used ("" = it can), and the cells nobody can read."""
     wards = spelled_alike([without_formula(ward) for ward in text.strings("ward")])
-    counts = {key: _counts(text.columns.get(key), text.rows) for key in ("funded", "staffed", "closed")}
-    problems = _bad_cells(text, counts, name)
-    if problems:
-        raise UnreadableRecords(problems)
+    counts = {key: [beds_in_text(cell) for cell in text.strings(key)] for key in ("funded", "staffed", "closed")}
     regular = counts["staffed"] if "staffed" in text.columns else counts["funded"]
     funded = counts["funded"] if "funded" in text.columns else regular
-    since, until = _dates(text, name, date_order)
+    (since, until), bad_dates = _dates(text, name, date_order)
     frame = pd.DataFrame(
         {
             "ward": pd.Series(wards, dtype=object),
@@ -192,7 +190,7 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
             "funded": [(one or other or (0, 0))[0] for one, other in zip(funded, regular, strict=True)],
             "staffed": [sum(cell) if cell else 0 for cell in regular],
             "closed": [cell[0] if cell else 0 for cell in counts["closed"]],
-            "reason": _reasons(text),
+            "reason": [without_formula(reason) for reason in text.strings("reason")],
             "funded_told": [cell is not None for cell in funded],
         }
     )
@@ -200,19 +198,22 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
     reason[frame.duplicated(keep="first")] = "The same row twice"
     reason[frame["to"] < frame["from"]] = "The period ends before it starts"
     reason[[cell is None for cell in regular]] = "No number of beds is named"
-    reason[[is_no_ward(ward, text.headings["ward"]) for ward in wards]] = "No ward is named, or the row is a total"
-    return frame, reason
+    no_ward = [is_no_ward(ward, text.headings["ward"]) for ward in wards]
+    unread = {row: told for row, told in (bad_dates | _bad_cells(text, counts, name)).items() if not no_ward[row]}
+    reason[list(unread)] = "A date or a number of beds can't be read"
+    reason[no_ward] = "No ward is named, or the row is a total"
+    return frame, reason, list(unread.values())[:MOST_NAMED]
 
 
-def _notes(text: TextTable, kept: pd.DataFrame, table: pd.DataFrame) -> list[str]:
+def _notes(text: TextTable, table: pd.DataFrame) -> list[str]:
     """Return what was taken for granted, and which wards' periods overlap."""
     notes = []
     if "staffed" not in text.columns:
         notes.append("The file names funded beds only; they are taken as staffed.")
-    untold = int((~kept["funded_told"]).sum())
+    untold = int((~table["funded_told"]).sum())
     if untold:
         notes.append(f"{_rows_say(untold)} no funded beds: the staffed ones are taken as funded there.")
-    shut = int((kept["closed"] > kept["staffed"]).sum())
+    shut = int((table["closed"] > table["staffed"]).sum())
     if shut:
         notes.append(
             f"{_rows_say(shut)} more closed beds than staffed ones: no bed counts as open there. If the staffed beds are "
@@ -232,43 +233,33 @@ def _rows_say(rows: int) -> str:
     return "1 row names" if rows == 1 else f"{rows:,} rows name"
 
 
-def _counts(column: pa.ChunkedArray | None, rows: int) -> list[tuple[int, int] | None]:
-    """Return (regular, extra) beds for each row."""
-    return [None] * rows if column is None else [beds_in_text(cell) for cell in column.to_pylist()]
-
-
-def _bad_cells(text: TextTable, counts: Mapping[str, list[tuple[int, int] | None]], name: str) -> list[str]:
-    """Name the cells that hold something, but no number of beds."""
-    problems = []
+def _bad_cells(text: TextTable, counts: Mapping[str, list[tuple[int, int] | None]], name: str) -> dict[int, str]:
+    """Name the cells that hold something, but no number of beds: row → sentence."""
+    bad = {}
     for key, cells in counts.items():
         for row, (cell, given) in enumerate(zip(cells, text.strings(key), strict=True)):
             if cell is None and given.lower() not in BLANK_WORDS:
-                advice = (
-                    "write one number, or 20 (+4) for extra beds" if re.search(r"\d", given) else "write a whole number"
-                )
-                problems.append(f"“{given[:20]}” in row {row + 1} of {name} is no number of {key} beds: {advice}.")
-    return problems[:10]
+                several = re.search(r"\d", given)
+                advice = "write one number, or 20 (+4) for extra beds" if several else "write a whole number"
+                bad[row] = f"“{given[:20]}” in row {row + 1} of {name} is no number of {key} beds: {advice}."
+    return bad
 
 
-def _dates(text: TextTable, name: str, date_order: str | None) -> list[np.ndarray]:
-    """Return first and last days, blanks open-ended; both columns are written in one order of day and month."""
+def _dates(text: TextTable, name: str, date_order: str | None) -> tuple[list[np.ndarray], dict[int, str]]:
+    """Return first and last days, blanks and the year 9999 open-ended, in one order of day and month; and bad cells."""
     blank = pa.chunked_array([pa.nulls(text.rows, pa.string())])
-    columns = [text.columns.get(key, blank) for key in ("from", "to")]
-    both = read_ordered(name, date_order, *columns)
-    for column, seconds in zip(columns, both, strict=True):
-        if (seconds == UNREADABLE).any():
-            row = int(np.flatnonzero(seconds == UNREADABLE)[0])
-            written = str(column[row].as_py())[:20]
-            raise UnreadableRecords([f"“{written}” in row {row + 1} of {name} is no date: write 2024-03-31."])
-    parts = zip(both, OPEN_ENDS, strict=True)
-    return [np.where(part == MISSING, np.datetime64(end, "s"), _day_of(part)) for part, end in parts]
+    both = read_ordered(name, date_order, *(text.columns.get(key, blank) for key in ("from", "to")))
+    days, bad = [], {}
+    for key, seconds, open_end in zip(("from", "to"), both, OPEN_ENDS, strict=True):
+        written = text.strings(key)
+        for row in np.flatnonzero(seconds == UNREADABLE).tolist():
+            if "9999" not in written[row]:
+                bad[row] = f"“{written[row][:20]}” in row {row + 1} of {name} is no date: write 2024-03-31."
+        known = np.where(seconds > UNREADABLE, _day_of(seconds), np.datetime64(open_end, "s"))
+        days.append(np.clip(known, *(np.datetime64(end, "s") for end in OPEN_ENDS)))
+    return days, bad
 
 
 def _day_of(seconds: NDArray[np.int64]) -> NDArray[np.datetime64]:
     """Return the midnight at which each moment's day begins."""
     return as_times(seconds).astype("datetime64[D]").astype("datetime64[s]")
-
-
-def _reasons(text: TextTable) -> list[str]:
-    """Return why beds differ, tidy."""
-    return [without_formula(reason) for reason in text.strings("reason")]

@@ -130,6 +130,6 @@ def was_given_a_bed(outcomes: pd.Series, wards: pd.Series) -> pd.Series:
 def not_cancelled(outcomes: pd.Series, _wards: pd.Series) -> pd.Series:
     """Which of these outcomes say that a booking was kept? Blanks and other words do where any cell says cancelled."""
     plain = outcomes.map(plain_reason).astype(str)
-    kept = plain.isin(NO) | plain.map(lambda text: _says(KEPT, text))
-    cancelled = ~kept & (plain.isin(YES) | plain.map(lambda text: _says(CANCELLED, text)))
+    kept = plain.isin(NO) | plain.map(lambda text: _says(KEPT, text)).astype(bool)
+    cancelled = ~kept & (plain.isin(YES) | plain.map(lambda text: _says(CANCELLED, text)).astype(bool))
     return kept | ~cancelled & cancelled.any()

@@ -168,7 +168,7 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
     year_and_month = [one or (1970, 1) for one in months]
     frame = pd.DataFrame(
         {
-            "month": pd.PeriodIndex([pd.Period(year=y, month=m, freq="M") for y, m in year_and_month]),
+            "month": pd.PeriodIndex([pd.Period(year=y, month=m, freq="M") for y, m in year_and_month], freq="M"),
             "ward": pd.Series(wards, dtype=object),
             **figures,
         }

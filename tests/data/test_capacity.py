@@ -215,3 +215,30 @@ def test_one_ward_written_two_ways_is_not_counted_twice() -> None:
     capacity = read_capacity(b"ward,from,beds\nWard 7,2024-01-01,20\nW07,2024-01-01,20\n").linked_to(records)
 
     assert capacity.beds_today("W") == 20
+
+
+def test_a_cell_nobody_can_read_costs_its_row_and_is_named() -> None:
+    """The other rows are used; the note quotes the cell, its row, and says what stands for those days."""
+    rows = [
+        "Teal,2024-01-01,12",
+        "Teal,2024-02-01,many",
+        "Teal,soon,14",
+        "Total,2024-02-01,lots",
+        "Teal,2024-03-01,20/24",
+    ]
+    capacity = read_capacity("\n".join(["ward,from,staffed_beds", *rows]).encode(), name="beds.csv")
+
+    assert capacity.beds_today("Teal") == 12
+    assert (capacity.report.rows_in, capacity.report.used, capacity.report.set_aside) == (5, 1, 4)
+    assert capacity.report.reasons["A date or a number of beds can't be read"] == 3
+    for told in ("“many” in row 2", "“soon” in row 3", "“20/24” in row 5", "the period before it stands"):
+        assert any(told in note for note in capacity.notes)
+    assert not any("lots" in note for note in capacity.notes)
+
+
+@pytest.mark.parametrize("end", ["9999-12-31", "31/12/9999", "31.12.9999", "", "current"])
+def test_an_end_far_away_is_open(end: str) -> None:
+    """The year 9999 stands for no end."""
+    capacity = read_capacity(f"ward,from,to,staffed_beds\nTeal,2024-01-01,{end},12\n".encode())
+
+    assert capacity.table["to"].tolist() == [pd.Timestamp("2100-12-31")]
