@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -11,6 +12,7 @@ from scipy import special
 from bedplan.data.columns import plain
 from bedplan.data.dates import DAY_SECONDS
 from bedplan.data.rhythm import Rhythm, Swing, fit_rhythm, measure_swing, shrink_factors
+from bedplan.data.trend import fit_trend
 from bedplan.models import BookedList
 
 if TYPE_CHECKING:
@@ -23,6 +25,8 @@ if TYPE_CHECKING:
 YEAR_DAYS = 365
 DEFAULT_TIME_SHARE = 1 / 3  # of arrivals in one minute of the day; common practice, no source
 FEWEST_STAYS, FEWEST_DAYS = 200, 90
+LATELY_DAYS = (28, 56, 182)  # looked at for a change of level
+CLEAR_CHANGE = 2.75  # standard errors: the most that chance gives to about one steady ward in a hundred
 # Methods of admission that mean a booked patient. Codes 11 to 13 are the English elective ones.
 BOOKED_METHODS = ("11", "12", "13", "booked", "elective", "waitinglist", "planned", "electivebooked", "electiveplanned")
 
@@ -68,6 +72,16 @@ class Arrivals:
         return self.recent / int(self.counted.sum()) * YEAR_DAYS
 
     @property
+    def period(self) -> str:
+        """From which days does the rate come, in words?"""
+        days = int(self.counted.sum())
+        if days == self.counts.size:
+            return f"all {days:,} days of the file"
+        if self.counts.size < 2 * YEAR_DAYS or self.counted[:-YEAR_DAYS].any():
+            return f"the {days:,} days of the file that count"
+        return "the last 12 months" if days == YEAR_DAYS else f"the {days:,} days of the last 12 months that count"
+
+    @property
     def hour_factors(self) -> tuple[float, ...]:
         """How busy is each hour of the day? Drawn towards the average by what chance alone explains.
 
@@ -110,6 +124,43 @@ def arrivals_of(records: Records, start: pd.Series | NDArray[np.datetime64]) -> 
     return Arrivals(
         came, counts, calendar, recent, use if use.any() else ~use, rhythm, measure_swing(counts, rhythm, use)
     )
+
+
+@dataclass(frozen=True, slots=True)
+class ArrivalsChange:
+    """How many came in the last ``days`` that count, and how many the days before them would have led one to expect."""
+
+    days: int
+    came: int
+    expected: float
+
+    @property
+    def share(self) -> float:
+        """By which share did arrivals change?"""
+        return self.came / self.expected - 1.0
+
+
+def arrivals_change(arrivals: Arrivals) -> ArrivalsChange | None:
+    """Did arrivals change lately: far more or fewer in the last 4, 8 or 26 weeks than trend and season before them gave?
+
+    None where chance explains it, or where the file is too short or too empty to tell.
+
+    Checked by: tests/data/test_estimating.py
+    """
+    counts = arrivals.counts[arrivals.used]
+    numbers = arrivals.calendar.to_numpy().astype("datetime64[D]").astype(np.int64)[arrivals.used]
+    clearest, found = CLEAR_CHANGE, None
+    for days in LATELY_DAYS:
+        if counts.size - days < FEWEST_DAYS or counts[:-days].sum() < FEWEST_STAYS:
+            break
+        trend = fit_trend(counts[:-days], numbers[:-days])
+        expected = trend.expected(numbers[-days:])
+        total, came = float(expected.sum()), float(counts[-days:].sum())
+        level = float(trend.variance_of_rate(numbers[-days:]) @ expected) * total
+        off = abs(came - total) / math.sqrt(total * max(trend.swing.dispersion, 1.0) + level)
+        if off > clearest:
+            clearest, found = off, ArrivalsChange(days, int(came), total)
+    return found
 
 
 def is_booked(stays: pd.DataFrame) -> NDArray[np.bool_]:

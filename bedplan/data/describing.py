@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data.occupancy import bed_days, open_beds, present
+from bedplan.data.silence import without_silences
 from bedplan.data.specialty import find_home_wards
 from bedplan.data.stays import stay_curve, stays_in_window
 
@@ -90,7 +91,7 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
 
     Checked by: tests/data/test_describing.py
     """
-    records = records.settled
+    records = without_silences(records.settled, ward, settled=True)
     stays = stays_in_window(records, ward)
     counts = present(records, stays, 3_600)
     by_day = counts.reshape(records.days, 24)

@@ -6,15 +6,17 @@ import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-import pandas as pd
-
-from bedplan.data.arrivals import FEWEST_STAYS, Arrivals, arrivals_of, booked_list, is_booked
-from bedplan.data.stays import fitted_stay, stay_change, stay_curve, stays_in_window
+from bedplan.data.arrivals import Arrivals, arrivals_of, booked_list, is_booked
+from bedplan.data.demand_notes import demand_notes
+from bedplan.data.readings import take_readings
+from bedplan.data.silence import without_silences
+from bedplan.data.stay_bands import fit_stay_bands, growth_of_bed_days
+from bedplan.data.stays import fitted_stay, stay_curve, stays_in_window
 from bedplan.models import Demand, LengthOfStay
-from bedplan.wording import few
 
 if TYPE_CHECKING:
     import numpy as np
+    import pandas as pd
 
     from bedplan.data.capacity import Capacity
     from bedplan.data.hidden_demand import HiddenDemand
@@ -23,12 +25,7 @@ if TYPE_CHECKING:
     from bedplan.data.survival import StayCurve
     from bedplan.models import BookedList
 
-MUCH_BOOKED = 0.1  # share of admissions from which booked patients are mentioned
 FEWEST_BOOKED = 100
-ADMISSIONS_NOTE = (
-    "Admissions are not arrivals: the records hold patients who got a bed here. Patients who were turned away, waited "
-    "elsewhere or were cancelled are missing, so true demand may be higher."
-)
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,8 +43,9 @@ class Uncertainty:
 class DemandEstimate:
     """What a ward is asked for, as its records show it, with the facts behind it.
 
-    ``admissions_per_year`` are recorded admissions; ``demand`` holds arrivals. ``growth_per_year`` is a share with its
-    standard error, not yet applied to ``demand``. ``booked_share`` is the share of admissions that were booked.
+    ``admissions_per_year`` are recorded admissions; ``demand`` holds arrivals. ``growth_per_year`` (of admissions) and
+    ``bed_days_growth_per_year`` (of bed-days, by how long patients have been in: what beds follow) are shares with
+    their standard errors, not yet applied to ``demand``; 0 where the file is too short. ``booked_share`` is the share of admissions that were booked.
     ``beds_today`` is None without a capacity file.
     """
 
@@ -63,6 +61,8 @@ class DemandEstimate:
     admissions_per_year: float
     growth_per_year: float
     growth_error: float
+    bed_days_growth_per_year: float
+    bed_days_growth_error: float
     stay_curve: StayCurve
     measured_stay: LengthOfStay
     swing: Swing
@@ -135,6 +135,7 @@ def estimate_demand(
 
     Checked by: tests/data/test_estimating.py
     """
+    whole, records = records, without_silences(records, ward)
     stays, beds = stays_in_window(records, ward), capacity and capacity.linked_to(records)
     booked = is_booked(stays)
     every = arrivals_of(records, stays["start"])
@@ -147,27 +148,38 @@ def estimate_demand(
     if hidden is not None and hidden.mean_stay_days > 0:
         stay = LengthOfStay(hidden.mean_stay_days, stay.variation, stay.shape)
     demand = _demand(records, arrivals, stay, lists, raised)
-    booked_share = float(booked.mean())
-    days = int(every.counted.sum())
+    growth, bed_days = _growth(records, ward, every)
     return DemandEstimate(
         ward=ward,
         demand=demand,
         uncertainty=_uncertainty(every, curve, demand.offered_load, raised, hidden),
         method=_method(every, demand, hidden),
-        notes=(*_notes(records, every, curve, stays, booked_share, hidden), *_change_notes(records, stays, ward)),
+        notes=demand_notes(whole, every, curve, stays, hidden),
         stays=len(stays),
         unfinished=int(stays["end"].isna().sum()),
         window=records.window,
-        counted_from=records.window[1] - pd.Timedelta(days=days),
+        counted_from=every.calendar[every.counted][0],
         admissions_per_year=every.per_year,
-        growth_per_year=every.rhythm.growth_per_year,
-        growth_error=every.rhythm.growth_error * math.sqrt(max(every.swing.dispersion, 1.0)),
+        growth_per_year=growth[0],
+        growth_error=growth[1],
+        bed_days_growth_per_year=bed_days[0],
+        bed_days_growth_error=bed_days[1],
         stay_curve=curve,
         measured_stay=LengthOfStay.measured(*curve.points()),
         swing=arrivals.swing,
-        booked_share=booked_share,
+        booked_share=float(booked.mean()),
         beds_today=beds.beds_today(ward) if beds and ward in beds.wards else None,
     )
+
+
+def _growth(records: Records, ward: str, arrivals: Arrivals) -> tuple[tuple[float, float], tuple[float, float]]:
+    """Return by which share admissions, then bed-days, grow a year, each with its standard error; 0 if too short."""
+    growth = arrivals.rhythm.growth_per_year
+    error = arrivals.rhythm.growth_error * math.sqrt(max(arrivals.swing.dispersion, 1.0))
+    if error == 0:
+        return (0.0, 0.0), (0.0, 0.0)
+    readings = take_readings(records, ward)
+    return (growth, error), growth_of_bed_days(fit_stay_bands(readings, readings.days, growth), error)
 
 
 def _booked_lists(records: Records, stays: pd.DataFrame, booked: np.ndarray, ward: str) -> tuple[BookedList, ...]:
@@ -200,15 +212,16 @@ def _uncertainty(
     arrivals: Arrivals, curve: StayCurve, beds: float, raised: float, hidden: HiddenDemand | None
 ) -> Uncertainty:
     """Return 95 % intervals; with hidden demand they reach from the lowest method's to the highest one's."""
+    per_day = arrivals.per_day * raised
     low, high = (bound * raised for bound in arrivals.interval())
     arrivals_error = max(arrivals.worth, 1.0) ** -0.5
     if hidden is not None and hidden.demand_per_day > 0:
         # Its bounds are those of 90 %, for the whole file; taken here to 95 %, and to the level of the latest year.
-        bounds = [
-            arrivals.per_day * raised * (bound / hidden.demand_per_day) ** (1.96 / 1.645) for bound in hidden.spread
-        ]
+        bounds = [per_day * (bound / hidden.demand_per_day) ** (1.96 / 1.645) for bound in hidden.spread]
         low, high = min(low, bounds[0]), max(high, bounds[1])
-        arrivals_error = max(arrivals_error, math.log(max(high / max(low, 1e-9), 1.0)) / 3.92)
+        # A range that reaches far up must not look narrow because it hardly reaches down.
+        width = max(math.log(max(high / max(low, 1e-9), 1.0)) / 2, math.log(max(bounds[1] / per_day, 1.0)))
+        arrivals_error = max(arrivals_error, width / 1.96)
     stay_error = curve.mean_standard_error / max(curve.mean_days, 1e-9)
     spread, both = math.exp(1.96 * stay_error), math.exp(1.96 * math.hypot(arrivals_error, stay_error))
     return Uncertainty(
@@ -222,63 +235,10 @@ def _uncertainty(
 
 def _method(arrivals: Arrivals, demand: Demand, hidden: HiddenDemand | None) -> str:
     """Say in a few sentences how the figures were found."""
-    whole = arrivals.counts.size == int(arrivals.counted.sum())
-    period = f"all {arrivals.counts.size:,} days of the file" if whole else "the last 12 months"
     raised = "" if hidden is None else f", changed to what was asked for by {hidden.method}"
     return (
-        f"Arrivals: recorded admissions of {period}{raised}. Mean and spread of stay: product limit over "
+        f"Arrivals: recorded admissions of {arrivals.period}{raised}. Mean and spread of stay: product limit over "
         "finished stays, unfinished ones counted for as long as they were seen; "
         f"shape: {demand.length_of_stay.shape}, the closer of two with that mean and spread. "
         "Months, weekdays and growth: one Poisson regression, drawn towards no effect by what chance explains."
     )
-
-
-def _notes(
-    records: Records,
-    arrivals: Arrivals,
-    curve: StayCurve,
-    stays: pd.DataFrame,
-    booked_share: float,
-    hidden: HiddenDemand | None,
-) -> list[str]:
-    """Return what does not stop the answer but belongs beside it."""
-    notes = [ADMISSIONS_NOTE] if hidden is None else [ADMISSIONS_NOTE, *hidden.notes]
-    days, unfinished = records.days, int(stays["end"].isna().sum())
-    if not arrivals.enough:
-        notes.append(
-            f"Only {arrivals.came.size:,} admissions in {days:,} days: too few to tell months, weekdays or hours apart, "
-            f"so none is assumed; {FEWEST_STAYS} in 90 days are needed. Take the wide intervals seriously."
-        )
-    elif not arrivals.rhythm.has_season:
-        notes.append(f"The file covers {days:,} days: too few to tell the seasons, so none is assumed.")
-    if records.period_note:
-        notes.append(records.period_note)
-    if records.excluded:
-        notes.append(f"{int((~records.counted_days).sum()):,} days were left out, as chosen.")
-    if unfinished:
-        notes.append(
-            f"{few(unfinished).capitalize()} patients were still in; their stays are treated as unfinished, not dropped."
-        )
-    if curve.open_share > 0:
-        notes.append(
-            f"The longest stays had not ended; letting them go on as the last ten departures suggest "
-            f"adds {curve.tail_days:.2f} days to the mean stay."
-        )
-    if booked_share >= MUCH_BOOKED:
-        notes.append(
-            f"{booked_share:.0%} of admissions were booked. Booked patients come more evenly than chance; a model that "
-            "takes them for chance arrivals errs towards more beds."
-        )
-    if not records.has_times:
-        notes.append("Dates without times: stays are counted in nights and no hour of the day is known.")
-    return notes
-
-
-def _change_notes(records: Records, stays: pd.DataFrame, ward: str) -> list[str]:
-    """Say whether stays grew longer or shorter lately: the whole file's mean then misses the latest year's."""
-    change = stay_change(records, stays, ward)
-    if change is None:
-        return []
-    word = "longer" if change[1] > change[0] else "shorter"
-    told = f"{change[0]:.1f} days before the latest year, {change[1]:.1f} in it"
-    return [f"Stays grew {word}: {told}. The whole file's mean is used; move the stay where the change will last."]

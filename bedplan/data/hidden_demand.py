@@ -21,6 +21,7 @@ from bedplan.data.demand_methods import (
 )
 from bedplan.data.evidence import NINETY, DemandMethod, Evidence, Range, gather
 from bedplan.data.patients import beds_used, own_patients, started
+from bedplan.data.silence import without_silences
 from bedplan.errors import ImpossibleFigure
 from bedplan.wording import percent
 
@@ -130,7 +131,8 @@ def hidden_demand(
     share = _share(share_recorded)
     brought = refusals if isinstance(refusals, tuple) else () if refusals is None else (refusals,)
     logs = tuple(log.linked_to(records) for log in brought)
-    evidence = gather(own_patients(records.settled, ward), capacity and capacity.linked_to(records))
+    found = without_silences(records.settled, ward, settled=True)
+    evidence = gather(own_patients(found, ward), capacity and capacity.linked_to(records))
     methods = (
         by_list(evidence, logs, share),
         by_specialty(evidence),

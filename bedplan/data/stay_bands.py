@@ -65,11 +65,19 @@ def _bands(readings: Readings, origin: int, arrivals_growth: float) -> Iterator[
             yield StayBand(name, float(beds[-LEVEL_DAYS:].mean()), trend)
 
 
-def growth_of_bed_days(bands: tuple[StayBand, ...]) -> tuple[float, float]:
-    """How fast do bed-days grow a year, all bands together, and how far may that be off? (share, standard error)."""
+def growth_of_bed_days(bands: tuple[StayBand, ...], arrivals_error: float = 0.0) -> tuple[float, float]:
+    """How fast do bed-days grow a year, all bands together, and how far may that be off? (share, standard error).
+
+    The same patients pass from band to band, so that the bands' errors are taken to go together; to them comes
+    ``arrivals_error``, that of the growth towards which each band was drawn, by as much as it was.
+
+    Checked by: tests/data/test_readings.py
+    """
     total = math.fsum(band.beds_in_use for band in bands)
     if total <= 0:
         return 0.0, 0.0
-    growth = math.fsum(band.beds_in_use * band.growth_per_year for band in bands) / total
-    error = math.sqrt(math.fsum((band.beds_in_use * band.growth_error) ** 2 for band in bands)) / total
-    return growth, error
+    share = [band.beds_in_use / total for band in bands]
+    growth = math.fsum(part * band.growth_per_year for part, band in zip(share, bands, strict=True))
+    error = math.fsum(part * band.growth_error for part, band in zip(share, bands, strict=True))
+    drawn = [min((band.growth_error / GROWTH_APART) ** 2, 1.0) for band in bands]
+    return growth, math.hypot(error, arrivals_error * math.fsum(p * d for p, d in zip(share, drawn, strict=True)))

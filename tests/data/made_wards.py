@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import heapq
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
@@ -111,3 +111,9 @@ def _in_beds(came: np.ndarray, stay: np.ndarray, beds: int, *, waits: bool) -> t
         kept.append((begin, begin + days))
     begins, ends = np.array(kept).T
     return begins, ends
+
+
+def without_arrivals(records: Records, first: int, last: int) -> Records:
+    """Return the records without those who came from day ``first`` up to ``last``, not among them."""
+    day = (records.stays["start"] - records.window[0]).dt.days
+    return replace(records, stays=records.stays[~day.between(first, last - 1)].reset_index(drop=True))
