@@ -1,160 +1,158 @@
 """Beds that change: closures, winter bays, five-day wards, and beds nobody may be put in.
 
-A model answers for a fixed bed count. A ward whose count changes is read as a mixture over time: the share of time
-spent at each count, times the model's answer at that count. That takes the ward to settle at once after each change:
-against an exact chain it is 0–8 % of the figure too low, most where half a small ward of long stays closes.
+One rule for all of them: a bed that closes takes no new patient, and a patient who is in it stays until the stay ends.
+So a ward may hold more patients than it has beds open; somebody is let in once fewer are in than are open.
 """
 
 from __future__ import annotations
 
-import calendar
 import math
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
-from scipy import special
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models import Waits
-from bedplan.models.year import arrivals_by_hour, month_of_hour, patients_wanted, weekday_of_hour
+from bedplan.models import Closure
+from bedplan.models.figures import all_of_kind, listed, number, whole
+from bedplan.models.settling import DAYS, AtRandom, shares_in_force
+from bedplan.models.year import MONTH_DAYS, arrivals_by_hour
 
 if TYPE_CHECKING:
-    from datetime import date
-
     from numpy.typing import NDArray
 
-    from bedplan.models import BedCurve, Demand
+    from bedplan.models import Demand
 
     Array = NDArray[np.float64]
+    Counts = NDArray[np.int64]
 
-MONTHS = 12
+MONTHS, WEEKDAYS = 12, 7
 MOST_CHANGE = 2_000
-DAYS_PER_YEAR = 365.0
+_MOST_IN_FORCE = 20.0
+_MIXED = {
+    "leaves": "each month is the mixture of the curve at each open bed count, corrected by following the patients in the "
+    "beds, who stay until their stay ends. Against simulations of stays from half a day to 200 days up to 1 in 20 too "
+    "low over the year, and up to 1 in 8 in a closure's own month where stays are spread widely; up to a third too high "
+    "there for stays all alike, and up to twice for booked patients alone.",
+    "waits": "each month is the mixture of the curve at each open bed count, as if the ward settled at once, and the time "
+    "that queues left over take to go. Against simulations up to a half too high.",
+    "stays anyway": "each month is the mixture of the curve at each open bed count.",
+}
+_month_of_day = np.repeat(np.arange(MONTHS), MONTH_DAYS)
+_weekday_of_day = np.arange(DAYS) % WEEKDAYS
 
 
-@dataclass(frozen=True, slots=True)
-class Closure:
-    """Which beds are out of use, and for which share of each month (12,), January first?
-
-    Raises:
-        ImpossibleFigure: beds not whole or outside 1–2,000, not 12 shares, a share outside 0–1.
-
-    Checked by: tests/decision/test_changing_beds.py
-    """
-
-    beds: int
-    share_of_month: tuple[float, ...]
-
-    def __post_init__(self) -> None:
-        """Check every figure once, here."""
-        if not (1 <= self.beds <= MOST_CHANGE and self.beds == int(self.beds)):
-            raise ImpossibleFigure(f"A closure of {self.beds:g} beds is not possible: give a whole number from 1.")
-        if len(self.share_of_month) != MONTHS:
-            raise ImpossibleFigure(f"A closure needs 12 months, January first, not {len(self.share_of_month)}.")
-        for share in self.share_of_month:
-            if not 0 <= share <= 1:
-                raise ImpossibleFigure(f"Beds closed for {share:.4g} of a month is not possible: it lies from 0 to 1.")
-
-    @classmethod
-    def expected(cls, beds: int, per_year: float, days: float) -> Closure:
-        """What if so many closures a year, at any time, take these beds out for so many days each?
-
-        Closed for ``per_year × days ÷ 365`` of the time: 1.33 closures of 7.9 days close a unit 2.9 % of the time.
-        """
-        share = per_year * days / DAYS_PER_YEAR
-        if not (per_year >= 0 and days >= 0 and share <= 1):
-            raise ImpossibleFigure(
-                f"{per_year:g} closures a year of {days:g} days each is not possible: both are 0 or more, "
-                "and together at most 365 days."
-            )
-        return cls(beds, (share,) * MONTHS)
-
-    @classmethod
-    def between(cls, beds: int, first_day: date, last_day: date) -> Closure:
-        """What if these beds are closed from one day to another, both included, in each year like the planned one?"""
-        days = (last_day - first_day).days + 1
-        if not 1 <= days <= DAYS_PER_YEAR:
-            raise ImpossibleFigure(f"A closure from {first_day} to {last_day} is not possible: it lasts 1 to 365 days.")
-        shares = [0.0] * MONTHS
-        for ordinal in range(first_day.toordinal(), last_day.toordinal() + 1):
-            day = first_day.fromordinal(ordinal)
-            shares[day.month - 1] += 1.0 / calendar.monthrange(day.year, day.month)[1]
-        return cls(beds, tuple(min(share, 1.0) for share in shares))
+def _extra_beds(values: object, count: int, said: str) -> tuple[int, ...]:
+    """Return extra beds for each month or weekday, or say what is wrong."""
+    given = listed(values, f"Extra beds need {count} {said}")
+    if len(given) != count:
+        raise ImpossibleFigure(f"Extra beds need {count} {said}, but {len(given)} were given.")
+    limits, allowed = (-MOST_CHANGE, MOST_CHANGE), "give whole numbers, below 0 for fewer"
+    return tuple(whole("{} extra beds", beds, limits, allowed) for beds in given)
 
 
 @dataclass(frozen=True, slots=True)
 class BedChanges:
     """How do a ward's open beds differ from the count that is read off its curve?
 
-    ``closures``; ``extra_by_month`` (12,) beds more (or fewer) open in each month, January first; ``open_weekdays``
-    (7,) Monday first; ``unassignable`` beds, on average, that are empty but that nobody may be put in (single-sex bays,
-    isolation): their number is taken to vary as Poisson counts do.
+    ``closures``, on their dates each year or at random; ``extra_by_month`` (12,) beds more (or fewer) open in each
+    month, January first, ``extra_by_weekday`` (7,) on each weekday, Monday first, both added; ``open_weekdays`` (7,):
+    on the others nobody is let in, and who is there stays; ``unassignable`` beds, on average, that are empty but that
+    nobody may be put in (single-sex bays, isolation): their number is taken to vary as Poisson counts do, each for a
+    mean stay.
+
+    Raises:
+        ImpossibleFigure: a figure outside its meaning, or a list of another length.
+
+    Checked by: tests/decision/test_changing_beds.py
     """
 
     closures: tuple[Closure, ...] = ()
     extra_by_month: tuple[int, ...] = (0,) * MONTHS
-    open_weekdays: tuple[bool, ...] = (True,) * 7
+    open_weekdays: tuple[bool, ...] = (True,) * WEEKDAYS
     unassignable: float = 0.0
+    extra_by_weekday: tuple[int, ...] = (0,) * WEEKDAYS
 
     def __post_init__(self) -> None:
         """Check every figure once, here."""
-        extra, weekdays = tuple(self.extra_by_month), tuple(self.open_weekdays)
-        if len(extra) != MONTHS:
-            raise ImpossibleFigure(f"Extra beds need 12 months, January first, but {len(extra)} were given.")
-        for beds in extra:
-            if not (abs(beds) <= MOST_CHANGE and beds == int(beds)):
-                raise ImpossibleFigure(f"{beds:g} extra beds is not possible: give whole numbers, below 0 for fewer.")
-        if len(weekdays) != 7 or not any(weekdays):
-            raise ImpossibleFigure("A ward needs 7 weekdays, Monday first, and is open on one of them at least.")
-        if not (math.isfinite(self.unassignable) and 0 <= self.unassignable <= MOST_CHANGE):
-            raise ImpossibleFigure(
-                f"{self.unassignable:g} beds nobody may be put in is not possible: give 0 or more, on average."
-            )
-        object.__setattr__(self, "extra_by_month", tuple(int(beds) for beds in extra))
-        object.__setattr__(self, "open_weekdays", tuple(bool(is_open) for is_open in weekdays))
-        object.__setattr__(self, "closures", tuple(self.closures))
+        put = object.__setattr__
+        put(self, "extra_by_month", _extra_beds(self.extra_by_month, MONTHS, "months, January first"))
+        put(self, "extra_by_weekday", _extra_beds(self.extra_by_weekday, WEEKDAYS, "weekdays, Monday first"))
+        wanted = "A ward needs 7 weekdays, Monday first, each open or not, and is open on one of them at least"
+        weekdays = listed(self.open_weekdays, wanted)
+        if len(weekdays) != WEEKDAYS or not any(weekdays) or not all(one in (True, False) for one in weekdays):
+            raise ImpossibleFigure(f"{wanted}, but {self.open_weekdays!r} was given.")
+        put(self, "open_weekdays", tuple(bool(is_open) for is_open in weekdays))
+        said, allowed = "{} beds nobody may be put in", f"give 0 to {MOST_CHANGE:,}, on average"
+        put(self, "unassignable", number(said, self.unassignable, (0.0, MOST_CHANGE), allowed))
+        put(self, "closures", all_of_kind(self.closures, Closure, "Closures are a tuple of Closure"))
+        for one in self.closures:
+            if one.from_day is not None and not (one.from_day + 1 <= DAYS and one.days <= DAYS):
+                raise ImpossibleFigure(f"A closure from day {one.from_day:g} for {one.days:g} days is not in a year.")
+            if one.per_year * one.days / 365.0 > _MOST_IN_FORCE:
+                raise ImpossibleFigure(
+                    f"{one.per_year:g} closures a year of {one.days:g} days each is not possible: "
+                    f"at most {_MOST_IN_FORCE:g} may be in force at once, on average."
+                )
 
     @property
     def is_neutral(self) -> bool:
         """Whether the open beds are simply the count that is read off the curve."""
-        return not (self.closures or any(self.extra_by_month) or self.unassignable) and all(self.open_weekdays)
+        changes = (self.closures, any(self.extra_by_month), any(self.extra_by_weekday), self.unassignable)
+        return not any(changes) and all(self.open_weekdays)
+
+    @property
+    def extra_by_day(self) -> Counts:
+        """How many beds more or fewer are open on each day of the 364-day year, closed weekdays aside? ``(364,)``."""
+        extra = np.array(self.extra_by_month)[_month_of_day] + np.array(self.extra_by_weekday)[_weekday_of_day]
+        for one in self.closures:
+            if one.from_day is not None:
+                extra[(int(one.from_day) + np.arange(math.ceil(one.days))) % DAYS] -= one.beds
+        return extra
+
+    @property
+    def is_open_by_day(self) -> NDArray[np.bool_]:
+        """On which days of the 364-day year does the ward take anybody in? ``(364,)``."""
+        return np.array(self.open_weekdays)[_weekday_of_day]
+
+    def beds_by_day(self, beds: Counts) -> Counts:
+        """How many beds are open on each day, if a ward of these beds starts from them? ``(n,)`` -> ``(364, n)``."""
+        return np.where(self.is_open_by_day[:, None], np.maximum(beds + self.extra_by_day[:, None], 0), 0)
+
+    def at_random(self, stay_days: float) -> tuple[AtRandom, ...]:
+        """Which beds go out of use at random? Those nobody may be put in for a mean stay each."""
+        kinds = [AtRandom(one.beds, one.per_year * one.days / 365.0, one.days) for one in self.closures if one.per_year]
+        return (*kinds, AtRandom(1, self.unassignable, stay_days)) if self.unassignable else tuple(kinds)
+
+    def out_of_use(self) -> tuple[Counts, Array]:
+        """How many beds are out of use at random, and for which share of time? Each kind independent of the others."""
+        shares = np.ones(1)
+        for one in self.at_random(1.0):
+            in_force = shares_in_force(one.mean_in_force)
+            spread = np.zeros((in_force.size - 1) * one.beds + 1)
+            spread[:: one.beds] = in_force
+            shares = np.convolve(shares, spread)
+        some = np.flatnonzero(shares > 0)
+        return some, shares[some]
 
     @property
     def most_out_of_use(self) -> int:
-        """The most beds worth allowing for when a curve is drawn: every closure at once, and missing beds."""
-        unassignable = math.ceil(self.unassignable + 3.0 * math.sqrt(self.unassignable))
-        return sum(one.beds for one in self.closures) + unassignable - min(0, *self.extra_by_month)
+        """The most beds worth allowing for when a curve is drawn: closures at once, and missing beds."""
+        most = -int(min(0, self.extra_by_day.min()))
+        for one in self.at_random(1.0):
+            most += one.beds * max(1, math.ceil(one.mean_in_force + 3.0 * math.sqrt(one.mean_in_force)))
+        return most
 
-    def states(self, month: int) -> tuple[NDArray[np.int64], Array]:
-        """How many beds more or fewer are open in a month (0 = January), and for which share of it?
-
-        Closures and missing beds come and go independently of each other.
-        """
-        out_of_use = _poisson_shares(self.unassignable)
-        for closure in self.closures:
-            share = closure.share_of_month[month]
-            longer = np.zeros(out_of_use.size + closure.beds)
-            longer[: out_of_use.size] += (1.0 - share) * out_of_use
-            longer[closure.beds :] += share * out_of_use
-            out_of_use = longer
-        some = np.flatnonzero(out_of_use > 0)
-        return self.extra_by_month[month] - some, out_of_use[some]
-
-    def notes(self) -> tuple[str, ...]:
+    def notes(self, when_full: str) -> tuple[str, ...]:
         """Say what was done, and which way it errs."""
         said = []
-        if self.closures or any(self.extra_by_month):
-            said.append(
-                "Open beds change over the year: each month is the mixture of the curve at each open bed count, as if "
-                "the ward settled at once. Patients already there need time to leave, so up to a twelfth more are "
-                "turned away than this says."
-            )
+        if self.closures or any(self.extra_by_month) or any(self.extra_by_weekday):
+            said.append(f"Open beds change: {_MIXED.get(when_full, _MIXED['stays anyway'])}")
         if self.unassignable:
             said.append(f"On average {self.unassignable:.1f} empty beds that nobody may be put in are taken off.")
         if not all(self.open_weekdays):
             said.append(
-                "Closed on some weekdays: patients who come then find no bed, and those there are taken to stay on. "
+                "Closed on some weekdays: patients who come then find no bed, and those there stay until their stay ends. "
                 "Where they go home or move out before the ward closes, it turns fewer away than this says; the beds "
                 "they move to are not counted."
             )
@@ -164,117 +162,19 @@ class BedChanges:
 NO_BED_CHANGES = BedChanges()
 
 
+def arrivals_by_day(demand: Demand) -> Array:
+    """How many patients come on each day of the year? ``(364,)``; days alike when none come.
+
+    Checked by: tests/decision/test_changing_beds.py
+    """
+    arrivals = arrivals_by_hour(demand).reshape(DAYS, 24).sum(axis=1)
+    return arrivals if arrivals.sum() > 0 else np.ones(DAYS)
+
+
 def arrivals_by_month(demand: Demand) -> Array:
     """Which share of a year's patients comes in each month? ``(12,)``, adding up to 1; month lengths when none come.
 
     Checked by: tests/decision/test_changing_beds.py
     """
-    arrivals = arrivals_by_hour(demand)
-    counts = np.bincount(month_of_hour, weights=arrivals if arrivals.sum() > 0 else None, minlength=MONTHS)
+    counts = np.bincount(_month_of_day, weights=arrivals_by_day(demand), minlength=MONTHS)
     return counts / counts.sum()
-
-
-def _poisson_shares(mean: float) -> Array:
-    """Return the chance of 0, 1, 2, … for a Poisson count, what is left of its tail put on the last."""
-    most = math.ceil(mean + 10.0 * math.sqrt(mean)) + 10 if mean else 0
-    count = np.arange(most + 1)
-    shares = np.exp(special.xlogy(count, mean) - mean - special.gammaln(count + 1))
-    shares[-1] += max(0.0, 1.0 - shares.sum())
-    return shares
-
-
-def _share_on_closed_days(demand: Demand, open_weekdays: tuple[bool, ...]) -> float:
-    """Return the share of patients who come on a weekday on which the ward is closed."""
-    arrivals = arrivals_by_hour(demand)
-    closed = arrivals[~np.array(open_weekdays)[weekday_of_hour]].sum()
-    return float(closed / arrivals.sum()) if closed > 0 else 0.0
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Mixture:
-    """The open counts of each month with their shares of time, for each count read off a curve."""
-
-    places: tuple[NDArray[np.int64], ...]
-    shares: tuple[Array, ...]
-    patients: Array
-
-    def by_month(self, figures: Array) -> Array:
-        """Mix figures known at each open count, ``(12, counts)`` or ``(counts,)``, in each month: ``(12, n)``."""
-        rows = np.broadcast_to(figures, (MONTHS, figures.shape[-1]))
-        return np.array([row[place] @ share for row, place, share in zip(rows, self.places, self.shares, strict=True)])
-
-    def over_hours(self, by_month: Array) -> Array:
-        """Average over the hours of the year."""
-        return np.bincount(month_of_hour) / month_of_hour.size @ by_month
-
-    def over_patients(self, by_month: Array) -> Array:
-        """Average over the patients of the year; months in which nobody comes don't count, however full they are."""
-        some = self.patients > 0
-        return self.patients[some] @ by_month[some]
-
-
-def _mixture(curve: BedCurve, changes: BedChanges, beds: NDArray[np.int64]) -> _Mixture:
-    states = [changes.states(month) for month in range(MONTHS)]
-    places = tuple(np.maximum(beds[:, None] + more, 0) for more, _ in states)
-    return _Mixture(places, tuple(share for _, share in states), arrivals_by_month(curve.demand))
-
-
-def with_changing_beds(curve: BedCurve, changes: BedChanges, beds: NDArray[np.int64]) -> BedCurve:
-    """What does a curve say for a ward whose open beds change, at each count it starts from?
-
-    ``curve`` must hold every count from 0 to the last of ``beds`` plus the extra beds of any month. Each month's share
-    is the time-weighted mixture of the curve at each open count, (1 − p)·B(c) + p·B(c − k) for one closure of k beds;
-    the year's is the months' weighed by patients. Occupancy is patients in beds ÷ open beds on average.
-
-    Source: the law of total probability, as if the ward settled at once; common practice.
-    Checked by: tests/decision/test_changing_beds.py
-    """
-    if changes.is_neutral:
-        return curve
-    mixture = _mixture(curve, changes, beds)
-    closed = _share_on_closed_days(curve.demand, changes.open_weekdays)
-    by_month = _or_closed(mixture.by_month(curve.by_month), closed)
-    year = mixture.over_patients(by_month)
-    overfull = None if curve.overfull_by_month is None else mixture.by_month(curve.overfull_by_month)
-    return replace(
-        curve,
-        beds=beds,
-        turn_away_probability=year,
-        occupancy=_occupancy(curve, mixture, year),
-        by_month=by_month,
-        notes=(*curve.notes, *changes.notes()),
-        overfull_share_of_hours=None if overfull is None else mixture.over_hours(overfull),
-        overfull_by_month=overfull,
-        waits=None if curve.waits is None else _mixed_waits(curve.waits, mixture, closed, changes),
-    )
-
-
-def _or_closed(shares: Array, closed: float) -> Array:
-    """Count everyone who comes on a closed day as finding no bed."""
-    return shares + closed * (1.0 - shares)
-
-
-def _occupancy(curve: BedCurve, mixture: _Mixture, turned_away: Array) -> Array:
-    """Return patients in beds ÷ open beds; those who aren't turned away are in the beds (Little 1961)."""
-    if curve.when_full == "leaves":
-        present = patients_wanted(curve.demand) * (1.0 - turned_away)
-    else:
-        present = mixture.over_hours(mixture.by_month(curve.occupancy * curve.beds))
-    open_beds = mixture.over_hours(mixture.by_month(curve.beds.astype(float)))
-    share = np.divide(present, open_beds, out=np.zeros(present.size), where=open_beds > 0)
-    return share if curve.when_full == "stays anyway" else np.minimum(share, 1.0)
-
-
-def _mixed_waits(waits: Waits, mixture: _Mixture, closed: float, changes: BedChanges) -> Waits:
-    """Mix the waits of each open count; who comes on a closed day waits past every limit, and until the ward opens."""
-    closed_hours = 24.0 * changes.open_weekdays.count(False)
-
-    def share_over_by_month(hours: float) -> Array:
-        """Return the share waiting longer in each month, closed days included."""
-        return _or_closed(mixture.by_month(waits.share_over_by_month(hours)), closed)
-
-    return Waits(
-        mean_hours=mixture.over_patients(mixture.by_month(waits.mean_hours)) + closed * closed_hours,
-        share_over=lambda hours: mixture.over_patients(share_over_by_month(hours)),
-        share_over_by_month=share_over_by_month,
-    )

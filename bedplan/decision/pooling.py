@@ -86,6 +86,7 @@ def _pooled_changes(changes: Sequence[BedChanges]) -> BedChanges:
     return BedChanges(
         closures=tuple(closure for one in changes for closure in one.closures),
         extra_by_month=tuple(map(sum, zip(*(one.extra_by_month for one in changes), strict=True))),
+        extra_by_weekday=tuple(map(sum, zip(*(one.extra_by_weekday for one in changes), strict=True))),
         open_weekdays=changes[0].open_weekdays,
         unassignable=math.fsum(one.unassignable for one in changes),
     )

@@ -9,9 +9,11 @@ from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
-from bedplan.decision.changing_beds import NO_BED_CHANGES, BedChanges, with_changing_beds
+from bedplan.decision.bed_mixture import with_changing_beds
+from bedplan.decision.changing_beds import NO_BED_CHANGES, BedChanges
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import MODELS, BedCurve, Demand, average_beds
+from bedplan.models.figures import all_of_kind, number, quoted, whole
 from bedplan.models.year import beds_wanted
 
 if TYPE_CHECKING:
@@ -47,17 +49,20 @@ class Ward:
 
     def __post_init__(self) -> None:
         """Check every figure once, here."""
-        if not (0 <= self.beds <= MOST_WARD_BEDS and self.beds == int(self.beds)):
-            raise ImpossibleFigure(
-                f"{self.beds:g} beds is not possible: give a whole number from 0 to {MOST_WARD_BEDS:,}."
-            )
+        if not isinstance(self.name, str):
+            raise ImpossibleFigure(f"A name of {quoted(self.name)} is not possible: give the ward's name in letters.")
+        allowed = f"give a whole number from 0 to {MOST_WARD_BEDS:,}"
+        object.__setattr__(self, "beds", whole("{} beds", self.beds, (0, MOST_WARD_BEDS), allowed))
+        for said, value, kind in (("A demand", self.demand, Demand), ("Bed changes", self.bed_changes, BedChanges)):
+            if not isinstance(value, kind):
+                raise ImpossibleFigure(f"{said} of {quoted(value)} is not possible: give {kind.__name__}(…).")
         if self.when_full not in ("leaves", "waits"):
             raise ImpossibleFigure(
                 f"{self.when_full!r} is not an answer: patients of a full ward either 'leaves' or 'waits'."
             )
-        if self.admissions_per_year is not None and not 0 <= self.admissions_per_year < math.inf:
-            raise ImpossibleFigure(f"{self.admissions_per_year:g} admissions a year is not possible: give 0 or more.")
-        object.__setattr__(self, "beds", int(self.beds))
+        if self.admissions_per_year is not None:
+            number("{} admissions a year", self.admissions_per_year, (0.0, 1e9), "give 0 or more")
+        object.__setattr__(self, "notes", all_of_kind(self.notes, str, "Notes are a tuple of sentences"))
 
     @property
     def model(self) -> str:
@@ -90,13 +95,20 @@ class Ward:
 
         Closures, winter bays and the like are in it: each count is what those changes start from.
         """
-        beds = self.bed_counts
-        more = max(0, *self.bed_changes.extra_by_month)
-        curve = _curve(model or self.model, self.demand, int(beds[-1]) + more)
-        return with_changing_beds(curve, self.bed_changes, beds)
+        name = self.model if model is None else model
+        if name not in MODELS:
+            raise ImpossibleFigure(f"The model {name!r} is not known: there are {', '.join(MODELS)}.")
+        return _changed_curve(name, self.demand, self.bed_changes, int(self.bed_counts[-1]))
 
 
 @lru_cache(maxsize=512)
 def _curve(model: str, demand: Demand, most_beds: int) -> BedCurve:
     """Return a model's curve, remembered: a page asks for the same wards again and again."""
     return MODELS[model](demand, np.arange(most_beds + 1))
+
+
+@lru_cache(maxsize=256)
+def _changed_curve(model: str, demand: Demand, changes: BedChanges, most_beds: int) -> BedCurve:
+    """Return a model's curve for beds that change, remembered too."""
+    more = max(0, int(changes.extra_by_day.max()))
+    return with_changing_beds(_curve(model, demand, most_beds + more), changes, np.arange(most_beds + 1))

@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, field
+from datetime import date
 from typing import TYPE_CHECKING, Literal
 
 from bedplan.errors import ImpossibleFigure
 from bedplan.models.bed_curve import MOST_BEDS
 from bedplan.models.figures import ABOVE_ZERO, all_of_kind, listed, number, whole
+from bedplan.models.year import MONTH_DAYS
 
 if TYPE_CHECKING:
     from bedplan.models.demand import Demand
@@ -22,6 +24,12 @@ MOST_YEARS = 200
 _LONGEST_RUN_DAYS = 1_000.0 * DAYS_A_YEAR
 _MOST_RUNS = 1_000_000
 _FORGOTTEN = 1e-3
+
+
+def _day_of_year(day: date) -> int:
+    """Return which day of the 364-day year this is, 1 January being 0."""
+    days = MONTH_DAYS[day.month - 1]
+    return sum(MONTH_DAYS[: day.month - 1]) + min(day.day, days) - 1
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,6 +59,26 @@ class Closure:
             put(self, "from_day", number("A closure from day {} on", self.from_day, days, "0 is the first day"))
         if (self.from_day is None) == (self.per_year == 0.0):
             raise ImpossibleFigure("A closure has either a first day or a number of times a year.")
+
+    @classmethod
+    def expected(cls, beds: int, per_year: float, days: float) -> Closure:
+        """What if so many closures a year, at any time, take these beds out for so many days each?
+
+        They come independently of each other, so that several may be in force: on average ``per_year × days ÷ 365``.
+        """
+        return cls(beds, days, per_year=per_year)
+
+    @classmethod
+    def between(cls, beds: int, first_day: date, last_day: date) -> Closure:
+        """What if these beds are closed from one day to another, both included, in each year like the planned one?
+
+        Read on the year of 364 days: 29 February and 31 December count as the day before.
+        """
+        if not (isinstance(first_day, date) and isinstance(last_day, date) and 0 <= (last_day - first_day).days < 366):
+            raise ImpossibleFigure(f"A closure from {first_day} to {last_day} is not possible: it lasts 1 to 365 days.")
+        first, last = _day_of_year(first_day), _day_of_year(last_day)
+        years = last_day.year - first_day.year
+        return cls(beds, min(last - first + YEAR_DAYS * years + 1, YEAR_DAYS), from_day=first)
 
 
 @dataclass(frozen=True, slots=True)

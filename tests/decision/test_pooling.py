@@ -154,10 +154,18 @@ def test_one_ward_takes_over_every_figure() -> None:
     booked = BookedList((1, 1, 1, 1, 1, 0, 0), LengthOfStay(2.0))
     first = Demand(3.0, LengthOfStay(4.0), clustering=1.8, rate_variation=0.06, turnaround_hours=4.0)
     second = Demand(1.0, LengthOfStay(8.0), booked=(booked,))
-    closure = Closure(4, (0.1,) * 12)
+    closure = Closure.expected(4, 2.0, 18.0)
     wards = [
         Ward("Plover", 14, first, "waits", 1_000.0, ("A note.",), BedChanges((closure,), unassignable=0.4)),
-        Ward("Teal", 9, second, "waits", None, ("A note.",), BedChanges(extra_by_month=(2,) + (0,) * 11)),
+        Ward(
+            "Teal",
+            9,
+            second,
+            "waits",
+            None,
+            ("A note.",),
+            BedChanges((), (2,) + (0,) * 11, extra_by_weekday=(0,) * 6 + (-1,)),
+        ),
     ]
     pooled = pool_wards(wards)
     demand = pooled.demand
@@ -175,7 +183,9 @@ def test_one_ward_takes_over_every_figure() -> None:
     everyone = 3 + 1 + 5 / 7
     assert demand.turnaround_hours == pytest.approx(4.0 * 3 / everyone)
     assert pooled.admissions_per_year == pytest.approx(1_000 + 365 * (1 + 5 / 7))
-    assert pooled.bed_changes == BedChanges((closure,), (2,) + (0,) * 11, unassignable=0.4)
+    assert pooled.bed_changes == BedChanges(
+        (closure,), (2,) + (0,) * 11, unassignable=0.4, extra_by_weekday=(0,) * 6 + (-1,)
+    )
     assert pooled.notes[0] == "A note."
     assert len(pooled.notes) == 2
 

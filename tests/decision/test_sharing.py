@@ -143,17 +143,17 @@ def test_more_beds_than_anyone_wants_are_still_dealt_out() -> None:
 
 
 def test_each_ward_is_read_on_its_own_curve() -> None:
-    """A ward that often has beds closed is read so: each of its counts mixes the open counts it stands for."""
-    closures = BedChanges((Closure(4, (0.5,) * 12),))
+    """A ward with four beds closed all year is read so: each of its counts stands for four fewer."""
+    closures = BedChanges((Closure(4, 364.0, from_day=0.0),))
     wards = [ward("Plover", 10, 6.0), ward("Teal", 10, 6.0, bed_changes=closures)]
     shared = share_beds(wards)
 
-    def mixed(beds: int) -> float:
-        return (patients(wards[1], beds) + patients(wards[1], max(beds - 4, 0))) / 2
+    def with_fewer(beds: int) -> float:
+        return patients(wards[1], max(beds - 4, 0))
 
-    best = min(range(21), key=lambda n: patients(wards[0], n) + mixed(20 - n))
+    best = min(range(21), key=lambda n: patients(wards[0], n) + with_fewer(20 - n))
     assert shared.beds == {"Plover": best, "Teal": 20 - best}
-    assert shared.patients["Teal"] == pytest.approx(mixed(20 - best), rel=1e-6)
+    assert shared.patients["Teal"] == pytest.approx(with_fewer(20 - best), rel=1e-6)
 
 
 def test_eight_wards_of_a_hospital_are_dealt_out_at_once() -> None:
