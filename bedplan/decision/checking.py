@@ -5,8 +5,10 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from bedplan.errors import ImpossibleFigure
-from bedplan.models import simulate_ward
+from bedplan.models import Closure, WardRun, simulate_ward
 
 if TYPE_CHECKING:
     from bedplan.decision.ward import Ward
@@ -20,7 +22,8 @@ class SimulationCheck:
     """One bed count: the formula's share who find no free bed, the simulation's with its 95 % range, and the patients.
 
     ``low`` says by how much, as a share of the simulated figure, the formula lies below the whole range (0 inside or
-    above it): the direction in which too few beds would come out.
+    above it): the direction in which too few beds would come out. ``if_they_queue``: where the formula places everyone
+    at once, the share who would find the ward full if they waited in line instead; otherwise None.
     """
 
     beds: int
@@ -29,6 +32,7 @@ class SimulationCheck:
     interval: tuple[float, float]
     arrivals: int
     seed: int
+    if_they_queue: float | None = None
 
     @property
     def low(self) -> float:
@@ -39,12 +43,12 @@ class SimulationCheck:
 def check_by_simulation(ward: Ward, curve: BedCurve, beds: int, *, seed: int = SEED) -> SimulationCheck:
     """What does a simulation of this ward say at this bed count, beside the curve's own figure?
 
-    The ward's demand as it stands: rhythm, stays, clusters, booked lists; leaving or waiting as the curve's model has
-    it. Closures and winter bays are left out, so a ward that has them is refused. On a curve of a model where
-    everyone finds a bed at once, the simulated patients wait in line instead: they then find the ward full more often.
+    The ward's demand as it stands: rhythm, stays, clusters, booked lists; closures, winter bays and missing beds as
+    well. Patients of a full ward do what the curve's model has them do: leave, wait, or are placed at once; then a
+    second run says how many more find the ward full if they wait in line.
 
     Raises:
-        ImpossibleFigure: the ward's beds change through the year, or the curve leaves chance out.
+        ImpossibleFigure: the curve leaves chance out, or is of another demand than the ward's.
 
     Checked by: tests/decision/test_checking.py
     """
@@ -52,11 +56,25 @@ def check_by_simulation(ward: Ward, curve: BedCurve, beds: int, *, seed: int = S
         raise ImpossibleFigure(
             "The average formula leaves chance out, so there is nothing for a simulation to agree with."
         )
-    if ward.bed_changes != type(ward.bed_changes)():
+    if curve.demand != ward.demand:
         raise ImpossibleFigure(
-            "This check needs a ward with the same beds all year: leave closures and winter bays out."
+            f"The curve is of another demand than that of {ward.name}, so it can't be checked by it."
         )
-    formula = curve.at(beds).turn_away_probability
-    when_full = "leaves" if curve.when_full == "leaves" else "waits"
-    run = simulate_ward(ward.demand, beds, seed=seed, when_full=when_full)
-    return SimulationCheck(beds, formula, run.turn_away_probability, run.interval, run.arrivals, seed)
+    formula, run = curve.at(beds).turn_away_probability, _run_of(ward, beds)
+    simulated = simulate_ward(ward.demand, beds, seed=seed, when_full=curve.when_full, run=run)
+    queue = None
+    if curve.when_full == "stays anyway":
+        queue = simulate_ward(ward.demand, beds, seed=seed, when_full="waits", run=run).turn_away_probability
+    share = simulated.turn_away_probability
+    return SimulationCheck(beds, formula, share, simulated.interval, simulated.arrivals, seed, queue)
+
+
+def _run_of(ward: Ward, beds: int) -> WardRun:
+    """Return how to simulate this ward: which beds are open on each day, and which go out of use at random."""
+    changes = ward.bed_changes
+    if changes.is_neutral:
+        return WardRun()
+    extra = np.where(changes.is_open_by_day, changes.extra_by_day, -int(beds))
+    kinds = changes.at_random(max(ward.demand.length_of_stay.mean_days, 1e-3))
+    closures = tuple(Closure.expected(one.beds, one.mean_in_force * 365.0 / one.days, one.days) for one in kinds)
+    return WardRun(closures=closures, extra_by_day=tuple(extra) if extra.any() else ())

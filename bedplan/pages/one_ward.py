@@ -18,7 +18,8 @@ if TYPE_CHECKING:
 SIMULATED = {
     "leaves": "Simulated patients who find no bed leave.",
     "waits": "Simulated patients who find no bed wait in line, first come, first served.",
-    "stays anyway": "Simulated patients wait in line; the formula has them placed at once, so it is lower.",
+    "stays anyway": "Simulated patients who find no bed are placed at once, as in the formula; where they wait in line "
+    "instead, they keep beds busier and more find the ward full.",
 }
 
 
@@ -163,6 +164,11 @@ def simulation(case: WardCase) -> None:
                 f"Formula ({wording.LINES[case.model]})": wording.percent(check.formula, 1),
                 "Simulation": wording.percent(check.simulated, 1),
                 "95 % range": f"{wording.percent(check.interval[0], 1)} to {wording.percent(check.interval[1], 1)}",
+                **(
+                    {}
+                    if check.if_they_queue is None
+                    else {"If they wait in line": wording.percent(check.if_they_queue, 1)}
+                ),
             }
             for check in checks
         ]

@@ -6,8 +6,9 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from scipy import stats
 
-from bedplan.decision import Ward, check_by_simulation
+from bedplan.decision import BedChanges, Closure, Ward, check_by_simulation
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import MODELS, Demand, LengthOfStay, erlang_b
 
@@ -38,12 +39,50 @@ def test_formula_that_leaves_the_season_out_is_caught() -> None:
     assert check.low > 0.1
 
 
-def test_patients_who_wait_find_the_ward_full_more_often() -> None:
-    """Against the model where everyone finds a bed at once, patients who queue keep beds busier."""
-    one = replace(ward(), when_full="waits")
-    check = check_by_simulation(one, one.curve("unlimited_beds"), 10)
+@pytest.mark.parametrize("seed", range(3))
+def test_everyone_placed_at_once_is_checked_as_such(seed: int) -> None:
+    """The formula in which everyone is placed is exact with steady demand: it lies in the range of patients who are.
 
-    assert check.interval[0] > check.formula
+    Those who would wait in line instead keep beds busier, and more find the ward full.
+    """
+    one = replace(ward(), when_full="waits")
+    check = check_by_simulation(one, one.curve("unlimited_beds"), 10, seed=seed)
+    half = (check.interval[1] - check.interval[0]) / 2
+
+    # a Poisson number of mean 8 is there, whatever the stays (Palm 1943)
+    assert check.formula == pytest.approx(stats.poisson.sf(9, 8), rel=1e-5)
+    assert abs(check.simulated - check.formula) < 2 * half  # four standard errors
+    assert check.if_they_queue > 1.2 * check.simulated
+    assert check_by_simulation(one, one.curve("waiting"), 10).if_they_queue is None
+
+
+@pytest.mark.parametrize("model", ["seasonal_loss", "unlimited_beds"])
+def test_changing_beds_are_simulated_too(model: str) -> None:
+    """A closure at random, fewer beds at weekends, a summer and missing beds: formula and patients agree to 1 in 20."""
+    changes = BedChanges(
+        (Closure.expected(3, 4.0, 10.0),),
+        (0,) * 6 + (-2, -2) + (0,) * 4,
+        unassignable=0.5,
+        extra_by_weekday=(0,) * 5 + (-2,) * 2,
+    )
+    one = replace(ward(), bed_changes=changes)
+    check = check_by_simulation(one, one.curve(model), 12)
+
+    assert check.interval[0] * 0.95 < check.formula < check.interval[1] * 1.05
+    assert check.simulated > 1.5 * check_by_simulation(ward(), ward().curve(model), 12).simulated
+
+
+def test_a_five_day_ward_takes_nobody_in_at_weekends() -> None:
+    """Two of seven patients of a ward closed at weekends find no bed, however many there are."""
+    one = replace(ward(), bed_changes=BedChanges(open_weekdays=(True,) * 5 + (False,) * 2))
+
+    assert check_by_simulation(one, one.curve(), 19).simulated == pytest.approx(2 / 7, abs=0.005)
+
+
+def test_a_curve_of_another_demand_is_refused() -> None:
+    """A curve is checked by its own ward only."""
+    with pytest.raises(ImpossibleFigure, match="another demand than that of Merlin"):
+        check_by_simulation(ward(), Ward("Teal", 10, Demand(1.0, LengthOfStay(4.0))).curve(), 10)
 
 
 def test_nothing_to_check_is_a_sentence() -> None:
