@@ -154,11 +154,11 @@ def _capacity(text: TextTable, name: str, date_order: str | None) -> Capacity:
     kept = frame[reason == ""]
     counts = reason[reason != ""].value_counts()
     findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
-    if kept.empty:
-        told = f"{name} names no ward with a number of beds: check the columns ward and staffed_beds."
-        raise UnreadableRecords(unread or [told, why_none(name, findings, "check these columns")])
     if text.misfits:
         findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
+    if kept.empty:
+        told = f"{name} names no ward with a number of beds: check the columns ward and staffed_beds."
+        raise UnreadableRecords(unread or [told, why_none(name, findings, "check the rows too")])
     kept = kept.sort_values(["ward", "from", "to"], ascending=[True, True, False], kind="stable").reset_index(drop=True)
     left_out = ["Where a row is left out, the period before it stands for its days."] if unread else []
     notes = (*text.notes, *unread, *left_out, *_notes(text, kept))

@@ -134,8 +134,8 @@ def read_census(
     missing = [key for key in ("date", "ward", "occupied") if key not in text.columns]
     if missing:
         text.refuse_kinds(file.name, "a census", *(kind for kind in TELLTALES if kind != "a census"))
-        columns = "date, ward and occupied, or date and one for each ward"
-        raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a census has columns {columns}."])
+        wanted = "date, ward and occupied, or date and one for each ward"
+        raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a census has columns {wanted}."])
     return _census(text, file.name, date_order, zeros_are_real)
 
 
@@ -158,12 +158,12 @@ def _census(text: TextTable, name: str, date_order: str | None, zeros_are_real: 
     counts = reason[reason != ""].value_counts()
     split = int((frame["extra"] > 0)[reason == ""].sum())
     findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
+    if text.misfits:
+        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
     if kept.empty:
         raise UnreadableRecords([why_none(name, findings, "write dates as 2024-03-31 and patients as whole numbers")])
     if split:
         findings.append(Finding(REPAIRED, "Regular and extra beds stood in one cell, as in 24 (+2)", split, 0.0))
-    if text.misfits:
-        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
     report = IntakeReport(
         rows_in=len(frame) + text.misfits,
         used=len(kept) - split,

@@ -131,6 +131,8 @@ def _row_by_row(name: str, columns: Mapping[str, pa.ChunkedArray]) -> dict[str, 
     day = {key: read_times(column, DAY_FIRST) for key, column in columns.items()}
     month = {key: read_times(column, MONTH_FIRST) for key, column in columns.items()}
     first, second = day["start"].seconds, month["start"].seconds
+    if all(np.array_equal(day[key].seconds, month[key].seconds) for key in columns):
+        return day  # no date can be read two ways
     sure = np.flatnonzero((first == second) & (first > UNREADABLE) | (first <= UNREADABLE) ^ (second <= UNREADABLE))
     known = np.where(first > UNREADABLE, first, second)
     if sure.size < 10 or np.corrcoef(np.argsort(np.argsort(known[sure])), np.arange(sure.size))[0, 1] < IN_ORDER:

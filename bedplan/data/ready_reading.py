@@ -61,10 +61,10 @@ def read_ready_dates(
     kept = pa.array((reason == "").to_numpy())
     counts = reason[reason != ""].value_counts()
     findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
-    if not (reason == "").any():
-        raise UnreadableRecords([why_none(file.name, findings, "write dates as 2024-03-31 14:05")])
     if text.misfits:
         findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
+    if not (reason == "").any():
+        raise UnreadableRecords([why_none(file.name, findings, "write dates as 2024-03-31 14:05")])
     report = IntakeReport(
         rows_in=text.rows + text.misfits,
         used=int((reason == "").sum()),

@@ -140,10 +140,10 @@ def read_monthly_return(
     counts = reason[reason != ""].value_counts()
     findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
     kept = frame[reason == ""]
-    if kept.empty:
-        raise UnreadableRecords([why_none(file.name, findings, "write months as 2024-04 and figures as 1234.5")])
     if text.misfits:
         findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
+    if kept.empty:
+        raise UnreadableRecords([why_none(file.name, findings, "write months as 2024-04 and figures as 1234.5")])
     months, said = _months_held(kept, text.headings["month"], months_a_row)
     report = IntakeReport(
         rows_in=len(frame) + text.misfits,
