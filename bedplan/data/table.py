@@ -115,13 +115,8 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
     rows.mark(wards.renamed, "ward renamed")
     rows.mark(wards.respelled, "ward spelling")
     rows.mark(np.union1d(np.flatnonzero(start.serial), np.flatnonzero(end.serial)), "serial date")
-    ready = None
-    if "ready" in text.columns:
-        ready = ready_column(text.columns["ready"], rows, date_order, choices.time_zone)
-    if choices.ready_dates is not None:
-        joined, told = choices.ready_dates.joined(text, rows, knows_spells="spell_key" in keys)
-        ready = joined if ready is None else np.where(joined > UNREADABLE, joined, ready)
-        notes += told
+    ready, told = _ready(text, rows, date_order, choices)
+    notes += told
     return StayTable(
         rows=rows,
         wards=wards.names,
@@ -134,6 +129,19 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
         dropped=dropped,
         notes=tuple(notes),
     )
+
+
+def _ready(
+    text: TextTable, rows: Rows, date_order: str | None, choices: IntakeChoices
+) -> tuple[NDArray[np.int64] | None, list[str]]:
+    """Return when each stay's patient was ready to leave, None where no column and no file says so; and what to say."""
+    ready, told = None, []
+    if "ready" in text.columns:
+        ready = ready_column(text.columns["ready"], rows, date_order, choices.time_zone)
+    if choices.ready_dates is not None:
+        joined, told = choices.ready_dates.joined(text, rows, knows_spells="spell_key" in text.columns)
+        ready = joined if ready is None else np.where(joined > UNREADABLE, joined, ready)
+    return ready, told
 
 
 def _check_columns(text: TextTable, name: str) -> None:
