@@ -38,7 +38,7 @@ def arguments() -> argparse.ArgumentParser:
     parser.add_argument(
         "--answers", type=Path, help="a saved plan, for how the stays are to be read: columns, dates, places, periods"
     )
-    parser.add_argument("--dates", choices=DATE_ORDERS, help="how the stays' dates are written")
+    parser.add_argument("--dates", choices=DATE_ORDERS, help="how dates are written in the files")
     parser.add_argument("--ward", action="append", help="a ward to justify; repeat for more (default: every ward)")
     parser.add_argument("--capacity", type=Path, help="staffed beds by ward: CSV")
     parser.add_argument("--beds", type=int, help="today's staffed beds, where there is no capacity file")
@@ -71,6 +71,16 @@ def ward_case(records: Records, capacity: Capacity | None, name: str, asked: arg
     return with_check(case, lambda: backtest(records, name, capacity=capacity))
 
 
+def staffed_beds(path: Path | None, records: Records, date_order: str | None) -> Capacity | None:
+    """Read the file of staffed beds, its wards named as the records name them; say which have no stays."""
+    if path is None:
+        return None
+    capacity = read_capacity(path, date_order=date_order).linked_to(records)
+    if capacity.unknown_wards:
+        print(wording.not_used(capacity.name, list(capacity.unknown_wards)), file=sys.stderr)
+    return capacity
+
+
 def beside(capacity: Path | None) -> tuple[tuple[str, str], ...]:
     """Return (what, name and fingerprint) of the file beside the records, for the document."""
     if capacity is None:
@@ -90,7 +100,7 @@ def write(asked: argparse.Namespace) -> Justification:
     if asked.dates:
         answers = replace(answers, date_order=asked.dates)
     records = read_records(asked.stays, **answers.to_read())
-    capacity = read_capacity(asked.capacity) if asked.capacity else None
+    capacity = staffed_beds(asked.capacity, records, asked.dates)
     unknown = [name for name in (*(asked.ward or ()), *asked.leaves) if name not in records.wards]
     if unknown:
         raise UnreadableRecords([f"Ward “{unknown[0]}” is not in {records.name}; it holds {', '.join(records.wards)}."])

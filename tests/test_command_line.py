@@ -69,6 +69,23 @@ def test_a_plans_answers_are_taken(stays_csv: bytes, tmp_path: Path, capsys: pyt
     assert "West = virtual" in document
 
 
+def test_staffed_beds_follow_the_wards_names(
+    stays_csv: bytes, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """A ward in other capitals has its beds; one without stays is named and left out; dates are read as said."""
+    stays, beds = tmp_path / "stays.csv", tmp_path / "beds.csv"
+    stays.write_bytes(stays_csv)
+    beds.write_text("ward,from,staffed beds\nEAST,01/02/2024,9\nNorth,01/02/2024,30\n")
+    words = [str(stays), "--ward", "East", "--capacity", str(beds), "--out", str(tmp_path)]
+    assert main(words) == 2
+    assert "beds.csv can be read day first or month first" in capsys.readouterr().err
+
+    assert main([*words, "--dates", "day first"]) == 0
+    said = capsys.readouterr()
+    assert "(today 9)" in said.out
+    assert "no stays on North" in said.err
+
+
 def test_the_order_of_dates_can_be_said(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     """A file whose dates read two ways is taken once the command line says which it is."""
     stays = tmp_path / "stays.csv"

@@ -53,6 +53,7 @@ def _forget_figures() -> None:
     st.session_state["settings"] = {
         name: values for name, values in st.session_state.get("settings", {}).items() if name in typed
     }
+    st.session_state.pop("recorded_shares", None)
 
 
 def use_files(given: Files | None) -> None:
@@ -61,7 +62,7 @@ def use_files(given: Files | None) -> None:
     loaded.use(given)
     planned = st.session_state.get("planned")
     if given is not None and planned is not None and planned.records == given.records.fingerprint:
-        st.session_state["settings"] |= {name: inputs_from(values) for name, values in planned.settings.items()}
+        take_settings(planned.settings)
         st.session_state.pop("planned")
     st.session_state["asked_records"] = loaded.records().fingerprint[:FINGERPRINT_SHOWN]
     st.session_state.pop("asked_ward", None)
@@ -109,7 +110,22 @@ def use_capacity(beds: Capacity, content: bytes) -> None:
 
 def show_ward(name: str) -> None:
     """Put a ward and its own settings on the page One ward."""
+    st.session_state.pop("asked_ward", None)
     st.session_state.update(settings_of(name) | {"ward": name})
+
+
+def take_settings(saved: Mapping[str, Mapping[str, Any]]) -> None:
+    """Take up saved inputs of wards, and the shares of refusals that were written down.
+
+    Raises:
+        UnreadableRecords: an input that is not the number or the answer it should be.
+    """
+    known = {name: inputs_from(values) for name, values in saved.items()}
+    st.session_state["settings"] = st.session_state.get("settings", {}) | known
+    for name, values in saved.items():
+        share = values.get("written")
+        if isinstance(share, int | float) and 0.1 <= share <= 1.0:
+            loaded.use_recorded_share(name, float(share))
 
 
 def inputs_from(values: Mapping[str, Any]) -> dict[str, Any]:
@@ -126,8 +142,8 @@ def inputs_from(values: Mapping[str, Any]) -> dict[str, Any]:
         beds = {"beds": min(max(int(values["beds"]), 0), 2000)} if "beds" in values else {}
     except (OverflowError, TypeError, ValueError) as problem:
         raise UnreadableRecords(["The plan file holds a setting that is not a number: save it again."]) from problem
-    full = "leaves" if values.get("full") == "leaves" else "waits"
-    return sliders | beds | {"full": full, "hidden": values.get("hidden") is True}
+    full = {"full": "leaves" if values["full"] == "leaves" else "waits"} if "full" in values else {}
+    return sliders | beds | full | {"hidden": values.get("hidden") is True}
 
 
 def ward_names() -> list[str]:

@@ -19,7 +19,10 @@ if TYPE_CHECKING:
 def plan_as_json() -> str:
     """Return the plan of this browser tab as a file's text."""
     typed = {name: as_totals(base) for name, base in st.session_state.get("typed", {}).items()}
-    settings = st.session_state.get("settings", {})
+    said = st.session_state.get("recorded_shares", {})
+    shares = {name: {"written": share} for name, share in said.items() if share != loaded.share_at_start(name)}
+    inputs = st.session_state.get("settings", {})
+    settings = {name: inputs.get(name, {}) | shares.get(name, {}) for name in (*inputs, *shares)}
     limit = {key: st.session_state[key] for key in ("limit", "within", "measure") if key in st.session_state}
     return as_json(SavedPlan(loaded.records().fingerprint, settings, typed, loaded.files().answers, limit))
 
@@ -43,13 +46,14 @@ def use_plan(plan: SavedPlan) -> None:
         UnreadableRecords: an input that is not the number or the answer it should be.
     """
     typed = {name: from_saved_totals(name, row) for name, row in plan.typed.items()}
-    known = {name: controls.inputs_from(values) for name, values in plan.settings.items()}
+    for values in plan.settings.values():
+        controls.inputs_from(values)
     st.session_state["typed"] = st.session_state.get("typed", {}) | typed
     st.session_state.update(_limit(plan.limit))
     if plan.records == loaded.records().fingerprint:
-        st.session_state["settings"] = st.session_state.get("settings", {}) | known
+        controls.take_settings(plan.settings)
         shown = st.session_state.get("ward")
-        if shown in known:
+        if shown in plan.settings:
             controls.show_ward(shown)
     else:
         st.session_state["planned"] = plan

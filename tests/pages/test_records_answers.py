@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import pytest
 
+from bedplan.pages import saved
 from bedplan.plan import SavedPlan, as_json
 
 if TYPE_CHECKING:
@@ -80,6 +81,29 @@ def test_a_saved_plan_is_opened(open_app: Callable[..., AppTest], demo_data: Pat
     assert (app.slider(key="demand").value, app.number_input(key="beds").value) == (7, 33)
     app.selectbox(key="ward").set_value("Annex").run()
     assert "Annex has 11 staffed beds" in app.header[0].value
+
+
+def test_the_share_written_down_is_saved(open_app: Callable[..., AppTest], monkeypatch: pytest.MonkeyPatch) -> None:
+    """The plan keeps the share of refusals that is written down, and nothing of a ward that was only looked at."""
+    plans: list[SavedPlan] = []
+    monkeypatch.setattr(saved, "as_json", lambda plan: plans.append(plan) or as_json(plan))
+    app = go(open_app(), "hidden")
+    app.selectbox(key="ward_looked_at").set_value("Merlin").run()
+    app.slider(key="recorded_Merlin").set_value(45).run()
+    app.selectbox(key="ward_looked_at").set_value("Dunlin").run()
+    go(app, "records")
+    plan = plans[-1]
+    assert plan.settings["Merlin"]["written"] == 0.45
+    assert "written" not in plan.settings.get("Dunlin", {})
+
+    again = go(open_app(), "records")
+    again.file_uploader(key="plan_file").upload("plan.json", as_json(plan).encode()).run()
+    assert not again.error
+    go(again, "hidden").selectbox(key="ward_looked_at").set_value("Merlin").run()
+    assert again.slider(key="recorded_Merlin").value == 45
+    go(again, "one_ward")
+    assert again.radio(key="full").value == "leaves"
+    assert not again.exception
 
 
 @pytest.mark.parametrize(
