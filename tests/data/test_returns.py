@@ -240,3 +240,9 @@ def test_wards_of_a_return_are_matched_to_the_stays() -> None:
 
     assert figures.demand("W").offered_load == pytest.approx(10)
     assert figures.unknown_wards == ("Owl",)
+
+
+def test_a_return_whose_every_row_has_a_cell_too_many_says_so() -> None:
+    """Lines that don't fit the headings are named, not stumbled over."""
+    with pytest.raises(UnreadableRecords, match=r"a line with another number of cells \(2 rows\)"):
+        read_monthly_return(lines("2024-01;Heron;310;248;62;9", "2024-02;Heron;290;248;62;9"))
