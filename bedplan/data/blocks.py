@@ -16,7 +16,7 @@ if TYPE_CHECKING:
 Item = TypeVar("Item")
 Done = TypeVar("Done")
 
-BLOCK_ROWS = 2**18  # a few columns of a block fit the processor's cache
+BLOCK_ROWS = 2**17  # a few columns of a block fit the processor's cache
 MOST_THREADS = 8
 
 
@@ -27,6 +27,11 @@ def each(work: Callable[[Item], Done], items: Iterable[Item]) -> list[Done]:
         return [work(item) for item in waiting]
     with ThreadPoolExecutor(min(os.cpu_count() or 1, MOST_THREADS, len(waiting))) as pool:
         return list(pool.map(work, waiting))
+
+
+def side_by_side(*jobs: Callable[[], object]) -> list:
+    """Do several jobs at once; results in the jobs' order."""
+    return each(lambda job: job(), jobs)
 
 
 def in_blocks(rows: int, work: Callable[[slice], Done]) -> list[Done]:
@@ -56,10 +61,13 @@ def order_of(values: NDArray[np.int64]) -> NDArray[np.int64]:
     bits, lowest = values.size.bit_length(), int(values.min())
     if int(values.max()) - lowest >= 2 ** (63 - bits):
         return np.argsort(values, kind="stable")
-    packed = values.astype(np.int64)
-    packed -= lowest
-    packed <<= bits
-    packed |= np.arange(values.size)
+    packed = np.empty(values.size, dtype=np.int64)
+
+    def pack(block: slice) -> None:
+        """Pack one block."""
+        packed[block] = (values[block].astype(np.int64) - lowest) << bits | np.arange(block.start, block.stop)
+
+    in_blocks(values.size, pack)
     packed.sort()
     packed &= 2**bits - 1
     return packed

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import itertools
+import math
 import re
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -11,7 +12,7 @@ import numpy as np
 import pyarrow as pa
 import pyarrow.compute as pc
 
-from bedplan.data.blocks import each, order_of, taken
+from bedplan.data.blocks import each, in_blocks, order_of
 from bedplan.data.codes import coded
 
 if TYPE_CHECKING:
@@ -20,6 +21,7 @@ if TYPE_CHECKING:
 # At the start of a key, or as a word of its own: a random key may hold such letters by chance.
 TEST_KEY = r"^(test|dummy|zzz|training)|[^a-z](test|dummy|training)([^a-z]|$)"
 TEST_LETTERS = (b"test", b"dummy", b"zzz", b"training")
+LAST_ASCII, SMALL = 127, 32  # the bit that makes a letter small
 LONGEST_PACKED = 20  # signs; longer keys are told apart by a dictionary
 LOOKED_AT = 1_000  # keys looked at to tell whether they are real persons' numbers
 
@@ -39,12 +41,12 @@ class Keys:
 
 def read_keys(column: pa.ChunkedArray) -> Keys:
     """Which rows have the same key? Each blank key counts as one of its own."""
-    column = pc.utf8_trim_whitespace(column)
-    parts = [part for part in column.chunks if len(part)]
-    blank = np.flatnonzero(pc.fill_null(pc.equal(column, ""), True).to_numpy(zero_copy_only=False))
+    parts = each(pc.utf8_trim_whitespace, [part for part in column.chunks if len(part)])
     codes = _packed_codes(parts)
-    codes = coded(column).codes.copy() if codes is None else codes
+    if codes is None:
+        codes = coded(pa.chunked_array(parts, pa.string())).codes.copy()
     known = int(codes.max(initial=-1)) + 1
+    blank = np.flatnonzero(np.concatenate([np.zeros(0, dtype=bool), *each(_is_blank, parts)]))
     codes[blank] = np.arange(known, known + blank.size)
     sample = pc.unique(column.slice(0, 100 * LOOKED_AT)).drop_null()[:LOOKED_AT].to_pylist()
     real = sum(is_national_number(key) for key in sample) > len(sample) / 2
@@ -59,27 +61,38 @@ def _packed_codes(parts: list[pa.Array]) -> NDArray[np.int32] | None:
     width = max(each(lambda part: int(np.diff(_offsets(part)).max()), parts), default=0)
     if not 0 < width <= LONGEST_PACKED:
         return None
-    signs = each(lambda part: _signs(part, width), parts)
-    low = np.min(each(lambda part: part.min(axis=1), signs), axis=0)
-    spread = [int(most) + 1 for most in np.max(each(lambda part: part.max(axis=1), signs), axis=0) - low]
-    if np.prod(spread, dtype=object) >= 2**62:
+    ends = each(lambda part: _lowest_and_highest(_signs(part, width)), parts)
+    low = np.min([lowest for lowest, _ in ends], axis=0)
+    spread = [int(most) + 1 for most in np.max([highest for _, highest in ends], axis=0) - low]
+    if math.prod(spread) >= 2**62:
         return None
 
-    def pack(part: NDArray[np.uint8]) -> NDArray[np.int64]:
+    def pack(part: pa.Array) -> NDArray[np.int64]:
         """Return the keys of one part as numbers."""
-        number = np.zeros(part.shape[1], dtype=np.int64)
-        for sign, lowest, many in zip(part, low, spread, strict=True):
+        number = np.zeros(len(part), dtype=np.int64)
+        for sign, lowest, many in zip(_signs(part, width), low, spread, strict=True):
             if many > 1:
                 number *= many
                 number += sign - lowest
         return number
 
-    return _dense(np.concatenate(each(pack, signs)))
+    return _dense(np.concatenate(each(pack, parts)))
+
+
+def _lowest_and_highest(signs: NDArray[np.uint8]) -> tuple[NDArray[np.uint8], NDArray[np.uint8]]:
+    """Return the lowest and the highest sign met at each place of a key."""
+    return signs.min(axis=1), signs.max(axis=1)
 
 
 def _offsets(part: pa.Array) -> NDArray[np.int32]:
     """Return where each string of an array starts, and where the last one ends."""
     return np.frombuffer(part.buffers()[1], dtype=np.int32)[part.offset : part.offset + len(part) + 1]
+
+
+def _is_blank(part: pa.Array) -> NDArray[np.bool_]:
+    """Return which strings of an array are empty or missing."""
+    empty = np.diff(_offsets(part)) == 0
+    return empty | part.is_null().to_numpy(zero_copy_only=False) if part.null_count else empty
 
 
 def _letters(part: pa.Array) -> memoryview:
@@ -101,9 +114,14 @@ def _signs(part: pa.Array, width: int) -> NDArray[np.uint8]:
 def _dense(numbers: NDArray[np.int64]) -> NDArray[np.int32]:
     """Return numbers counted from 0 without gaps, equal where ``numbers`` are equal."""
     order = order_of(numbers)
-    ranked = taken(numbers, order)
     new = np.zeros(order.size, dtype=bool)
-    np.not_equal(ranked[1:], ranked[:-1], out=new[1:])
+
+    def compare(block: slice) -> None:
+        """Find where the number goes up within one block, and from it to the next."""
+        ranked = numbers[order[block.start : block.stop + 1]]
+        new[block.start + 1 : block.stop + 1] = ranked[1:] != ranked[:-1]
+
+    in_blocks(order.size, compare)
     codes = np.empty(order.size, dtype=np.int32)
     codes[order] = np.cumsum(new, dtype=np.int32)
     return codes
@@ -114,8 +132,11 @@ def _test_rows(parts: list[pa.Array]) -> NDArray[np.int64]:
 
     def look(part: pa.Array) -> NDArray[np.int64]:
         """Return the places within one part."""
-        letters = bytes(_letters(part))
-        if letters.isascii() and not any(word in letters.lower() for word in TEST_LETTERS):
+        letters = np.frombuffer(_letters(part), dtype=np.uint8)
+        small = letters | SMALL
+        if letters.max(initial=0) <= LAST_ASCII and not any((small == sign).any() for sign in b"tdz"):
+            return np.zeros(0, dtype=np.int64)
+        if bytes(letters).isascii() and not any(word in bytes(letters).lower() for word in TEST_LETTERS):
             return np.zeros(0, dtype=np.int64)
         return np.flatnonzero(
             pc.fill_null(pc.match_substring_regex(part, TEST_KEY, ignore_case=True), False).to_numpy(

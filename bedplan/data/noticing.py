@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bedplan.data.blocks import in_blocks
 from bedplan.data.dates import DAY_SECONDS, MISSING
 from bedplan.wording import few
 
@@ -30,18 +31,13 @@ def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overl
         )
     if not table.knows_spells:
         return notes
-    order = order[rows.live[order]]
-    same = (rows.spell[order[1:]] == rows.spell[order[:-1]]) & (rows.patient[order[1:]] == rows.patient[order[:-1]])
-    moves = int(same.sum())
+    moves, place = _moves(rows, order)
     if moves:
         notes.append(
             f"{order.size:,} arrivals on wards are {order.size - moves:,} arrivals in hospital and {moves:,} moves "
             "between wards; both are counted, apart."
         )
-    end = rows.end[order[:-1]]
-    gap = same & (end != MISSING) & (rows.start[order[1:]] - end > HOUR_SECONDS)
-    if gap.any():
-        place = np.flatnonzero(gap)
+    if place.size:
         pair = rows.ward[order[place]].astype(np.int64) * len(table.wards) + rows.ward[order[place + 1]]
         common = int(np.bincount(pair).argmax())
         first, second = (table.wards[code] for code in divmod(common, len(table.wards)))
@@ -50,6 +46,22 @@ def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overl
             f"most often between {first} and {second}; no bed is counted in them."
         )
     return notes
+
+
+def _moves(rows: Rows, order: NDArray[np.int64]) -> tuple[int, NDArray[np.int64]]:
+    """Count moves inside a hospital stay; return the places in ``order`` after which more than an hour is missing."""
+
+    def look(block: slice) -> tuple[int, NDArray[np.int64]]:
+        """Look at one block, and from it to the next."""
+        which = order[block.start : block.stop + 1]
+        spell, patient, start, end = (every[which] for every in (rows.spell, rows.patient, rows.start, rows.end))
+        same = (spell[1:] == spell[:-1]) & (patient[1:] == patient[:-1])
+        gap = same & (end[:-1] != MISSING) & (start[1:] - end[:-1] > HOUR_SECONDS)
+        return int(same.sum()), block.start + np.flatnonzero(gap)
+
+    found = in_blocks(order.size, look)
+    places = [np.zeros(0, dtype=np.int64), *(places for _, places in found)]
+    return sum(moves for moves, _ in found), np.concatenate(places)
 
 
 def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, period: Period) -> list[str]:
@@ -81,32 +93,51 @@ def _clock_notes(start: NDArray[np.int64], end: NDArray[np.int64]) -> list[str]:
     """Say whether times of day can be trusted."""
     notes = []
     if start.size >= FEWEST_STAYS:
-        minutes = np.bincount(start % DAY_SECONDS // 60, minlength=1_440)
+        by_day = _by_day_and_minute(start)
+        minutes = by_day.sum(axis=0)
         worst = int(minutes.argmax())
         if minutes[worst] > DEFAULT_SHARE * start.size:
             notes.append(
                 f"{minutes[worst] / start.size:.0%} of stays start at {worst // 60:02d}:{worst % 60:02d}, which looks like a "
                 "default and not a time: don't rely on hours of the day."
             )
-        notes += _world_time_note(start)
-    finished = end != MISSING
-    same_day = finished & (start // DAY_SECONDS == end // DAY_SECONDS)
-    if same_day.any():
-        hours = (end - start)[same_day].sum() / max(float((end - start)[finished].sum()), 1.0)
+        notes += _world_time_note(by_day, int(start.min()) // DAY_SECONDS)
+    stays, inside, whole = np.sum(in_blocks(start.size, lambda block: _same_day(start[block], end[block])), axis=0)
+    if stays:
+        hours = inside / max(float(whole), 1.0)
         notes.append(
-            f"{same_day.mean():.0%} of stays start and end on one day ({hours:.1%} of bed-hours): no night, but a bed; "
+            f"{stays / start.size:.0%} of stays start and end on one day ({hours:.1%} of bed-hours): no night, but a bed; "
             "they are counted by the hour."
         )
     return notes
 
 
-def _world_time_note(start: NDArray[np.int64]) -> list[str]:
+def _by_day_and_minute(start: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return how many stays start on each day from the first on, in each minute of it, (days, 1440)."""
+    first = int(start.min()) // DAY_SECONDS
+    days = int(start.max()) // DAY_SECONDS - first + 1
+    counts = np.bincount(start // 60 - first * 1_440, minlength=days * 1_440)
+    return counts.reshape(days, 1_440)
+
+
+def _same_day(start: NDArray[np.int64], end: NDArray[np.int64]) -> tuple[int, int, int]:
+    """Return how many stays start and end on one day, their seconds, and the seconds of all finished stays."""
+    finished = end != MISSING
+    stay = np.where(finished, end - start, 0)
+    same = finished & (start // DAY_SECONDS == end // DAY_SECONDS)
+    return int(same.sum()), int(stay[same].sum()), int(stay.sum())
+
+
+def _world_time_note(by_day: NDArray[np.int64], first_day: int) -> list[str]:
     """Compare the hours of arrival of summer and winter: a shift of a whole hour betrays world time (UTC)."""
-    month = start.astype("datetime64[s]").astype("datetime64[M]").astype(np.int64) % 12 + 1
+    days = (first_day + np.arange(len(by_day))).astype("datetime64[D]")
+    month = days.astype("datetime64[M]").astype(np.int64) % 12 + 1
     summer = (month >= 4) & (month <= 10)
-    if min(summer.sum(), (~summer).sum()) < 2_000:
+    by_half_hour = by_day.reshape(-1, 48, 30).sum(axis=2)
+    halves = [by_half_hour[half].sum(axis=0) for half in (summer, ~summer)]
+    if min(half.sum() for half in halves) < 2_000:
         return []
-    halves = [np.bincount(start[half] % DAY_SECONDS // 1_800, minlength=48) / half.sum() for half in (summer, ~summer)]
+    halves = [half / half.sum() for half in halves]
     misfit = {shift: float(((halves[0] - np.roll(halves[1], shift)) ** 2).sum()) for shift in (-2, 0, 2)}
     best = min(misfit, key=misfit.get)
     if best == 0 or misfit[best] > 0.5 * misfit[0]:

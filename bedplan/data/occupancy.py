@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bedplan.data.blocks import in_blocks
 from bedplan.data.dates import DAY_SECONDS
 
 if TYPE_CHECKING:
@@ -33,6 +34,32 @@ def present(records: Records, stays: pd.DataFrame, step_seconds: int) -> NDArray
     left = np.where(open_end, steps, np.clip(-(-(np.where(open_end, first, end) - first) // step_seconds), 0, steps))
     change = np.bincount(came, minlength=steps + 1) - np.bincount(left, minlength=steps + 1)
     return np.cumsum(change[:steps]).astype(np.int32)
+
+
+def present_by_ward(records: Records, step_seconds: int) -> dict[str, NDArray[np.int32]]:
+    """How many patients are in on each ward at the start of each step of the window? As :func:`present`, all at once.
+
+    Checked by: tests/data/test_occupancy.py
+    """
+    first = int(records.window[0].timestamp())
+    steps = records.days * DAY_SECONDS // step_seconds
+    codes, wards = records.stays["ward"].cat.codes.to_numpy(), records.stays["ward"].cat.categories
+
+    def counted(times: NDArray[np.datetime64]) -> NDArray[np.int64]:
+        """Count these moments by ward and step, (wards, steps + 1); those not known after the last step."""
+
+        def places(block: slice) -> NDArray[np.int64]:
+            """Return ward and step of one block as one number."""
+            known = ~np.isnat(times[block])
+            late = np.where(known, times[block].astype("datetime64[s]").astype(np.int64) - first, 0)
+            step = np.where(known, np.clip(-(-late // step_seconds), 0, steps), steps)
+            return codes[block].astype(np.int64) * (steps + 1) + step
+
+        found = np.concatenate(in_blocks(times.size, places))
+        return np.bincount(found, minlength=len(wards) * (steps + 1)).reshape(len(wards), -1)
+
+    came, left = (counted(records.stays[column].to_numpy()) for column in ("start", "end"))
+    return dict(zip(wards, np.cumsum((came - left)[:, :steps], axis=1, dtype=np.int32), strict=True))
 
 
 def open_beds(records: Records, ward: str, capacity: Capacity, steps_a_day: int) -> NDArray[np.int64]:

@@ -57,7 +57,7 @@ def preview_columns(
     asked = MATCHED if kind == "ward stays" else tuple(HEADINGS_OF[kind])
     file = open_source(source, name)
     is_text = not file.begins_with(b"PK", b"PAR1")
-    top = SourceFile(file.name, bytes(_first_lines(as_utf8(file)[0]))) if is_text else file
+    top = SourceFile(file.name, _first_lines(as_utf8(file)[0].head)) if is_text else file
     try:
         table = read_table(top, HEADINGS_OF[kind], columns)
     except UnreadableRecords:

@@ -13,22 +13,18 @@ from pyarrow import csv as arrow_csv
 
 from bedplan.data.blocks import each
 from bedplan.data.columns import match_headings
+from bedplan.data.source import BLOCK_BYTES, HEAD_BYTES, SourceFile
 from bedplan.data.texttable import MOST_TITLE_LINES, Layout, TextTable, text_table
 from bedplan.data.workbook import read_parquet, read_workbook
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
-    import mmap
     from collections.abc import Iterable, Mapping
-
-    from bedplan.data.source import SourceFile
 
 LINE = re.compile(rb"[^\r\n]*(?:\r\n|\n|\r)")
 SEPARATORS = (",", ";", "\t", "|")
 CLEARLY_HEADINGS = 3  # known names in one line: no title holds so many
-SNIFFED_BYTES = 256 * 1024
 FEW_VALUES = ("ward", "class", "method", "specialty", "destination", "age_band")
-BLOCK_BYTES = 4 * 2**20
 LAST_ASCII = 127
 
 
@@ -53,63 +49,59 @@ def read_table(
     if source.begins_with(b"PAR1"):
         return read_parquet(source, known, chosen)
     text, encoding = as_utf8(source)
-    layout = find_layout(text, known, chosen)
+    layout = find_layout(text.head, known, chosen)
     notes = [] if encoding == "UTF-8" else [f"The file was written in {encoding}; check that ward names look right."]
-    return text_table(source.name, layout, lambda: _parse(source.name, text, layout, times), notes, list(known))
+    return text_table(source.name, layout, lambda: _parse(text, layout, times), notes, list(known))
 
 
-def as_utf8(source: SourceFile) -> tuple[bytes | mmap.mmap, str]:
-    """Return the text as UTF-8 bytes, and its encoding; tried in the order UTF-8, UTF-16, Windows-1252."""
-    content = source.content
-    if source.begins_with(codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE):
-        return _decoded(content, "utf-16", source.name), "UTF-16"
-    if source.begins_with(codecs.BOM_UTF8):
-        content = memoryview(content)[3:]
-    head = bytes(content[:4096])
+def as_utf8(source: SourceFile) -> tuple[SourceFile, str]:
+    """Return the file as UTF-8 text, and its encoding; tried in the order UTF-8, UTF-16, Windows-1252."""
+    head = source.head
+    if head.startswith((codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE)):
+        return _decoded(source, "utf-16"), "UTF-16"
+    if head.startswith(codecs.BOM_UTF8):
+        source = SourceFile(source.name, source.content[len(codecs.BOM_UTF8) :])
+    head = head[:4096]
     if head.count(b"\0") > len(head) // 4:
         guess = "utf-16-le" if head[1::2].count(b"\0") > head[0::2].count(b"\0") else "utf-16-be"
-        return _decoded(content, guess, source.name), "UTF-16"
-    lowest, highest = _extremes(content)
-    if lowest == 0:
+        return _decoded(source, guess), "UTF-16"
+    ends = each(lambda first: _lowest_and_highest(source.block(first)), range(0, source.size, BLOCK_BYTES))
+    if min(low for low, _ in ends) == 0:
         raise UnreadableRecords(
             [f"{source.name} is not a text table (it holds bytes no text has): export it as CSV or Excel (.xlsx)."]
         )
-    if highest <= LAST_ASCII:
-        return content, "UTF-8"
     try:
-        check = codecs.getincrementaldecoder("utf-8")()
-        for first in range(0, len(content), BLOCK_BYTES):
-            check.decode(content[first : first + BLOCK_BYTES])
-        check.decode(b"", final=True)
+        if max(high for _, high in ends) > LAST_ASCII:
+            check = codecs.getincrementaldecoder("utf-8")()
+            for block in source.blocks():
+                check.decode(block)
+            check.decode(b"", final=True)
     except UnicodeDecodeError:
-        return str(content, "cp1252", errors="replace").encode(), "Windows-1252"
-    return content, "UTF-8"
+        text = source.content.decode("cp1252", errors="replace").encode()
+        return SourceFile(source.name, text), "Windows-1252"
+    return source, "UTF-8"
 
 
-def _extremes(content: bytes | mmap.mmap) -> tuple[int, int]:
+def _lowest_and_highest(block: bytes | memoryview) -> tuple[int, int]:
     """Return the lowest and the highest byte."""
-    signs = np.frombuffer(content, dtype=np.uint8)
-    blocks = [signs[first : first + BLOCK_BYTES] for first in range(0, signs.size, BLOCK_BYTES)]
-    ends = each(lambda block: (int(block.min()), int(block.max())), blocks)
-    return min(low for low, _ in ends), max(high for _, high in ends)
+    signs = np.frombuffer(block, dtype=np.uint8)
+    return int(signs.min()), int(signs.max())
 
 
-def _decoded(content: bytes | mmap.mmap, encoding: str, name: str) -> bytes:
+def _decoded(source: SourceFile, encoding: str) -> SourceFile:
     """Return the text in UTF-8, or say that it is not text."""
     try:
-        return str(content, encoding).encode()
+        return SourceFile(source.name, source.content.decode(encoding).encode())
     except UnicodeError as problem:
         raise UnreadableRecords(
-            [f"{name} looks like UTF-16 text but is damaged: export it again as CSV in UTF-8."]
+            [f"{source.name} looks like UTF-16 text but is damaged: export it again as CSV in UTF-8."]
         ) from problem
 
 
-def find_layout(
-    text: bytes | mmap.mmap, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None
-) -> Layout:
+def find_layout(text: bytes, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None) -> Layout:
     """Find the line that holds the headings: the one with most known names, under the separator that shows most."""
     best = Layout(0, 0, ",", (), {})
-    for number, line in enumerate(LINE.finditer(text[:SNIFFED_BYTES])):
+    for number, line in enumerate(LINE.finditer(text)):
         if number == MOST_TITLE_LINES or len(best.found) >= CLEARLY_HEADINGS:
             break
         words = line[0].decode("utf-8", errors="replace").strip("\r\n")
@@ -136,23 +128,26 @@ def _type_of(key: str, times: Iterable[str]) -> pa.DataType:
     return pa.dictionary(pa.int32(), pa.string()) if key in FEW_VALUES else pa.string()
 
 
-def _parse(name: str, text: bytes | mmap.mmap, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
+def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
     """Parse the lines under the headings, or say why they are no table."""
     try:
         try:
-            if len(text) > SNIFFED_BYTES:  # most files that can't be read so show it at once
-                _parsed(bytes(text[:SNIFFED_BYTES]).rpartition(b"\n")[0], layout, times)
+            if text.size > HEAD_BYTES:  # most files whose times are written otherwise show it at once
+                _parsed(SourceFile(text.name, text.head.rpartition(b"\n")[0]), layout, times)
             return _parsed(text, layout, times)
-        except pa.ArrowInvalid:  # most likely one of the times is written otherwise: its column is looked at as text
+        except pa.ArrowInvalid:  # most likely a time that is written otherwise: those columns are looked at as text
             return _parsed(text, layout, ())
-    except pa.ArrowInvalid as problem:
+    except (pa.ArrowInvalid, OSError) as problem:
         if "Empty CSV" in str(problem):
-            raise UnreadableRecords([f"{name} has headings but no rows: export it again with its rows."]) from problem
+            told = f"{text.name} has headings but no rows: export it again with its rows."
+            raise UnreadableRecords([told]) from problem
         said = str(problem).splitlines()[0][:120]
-        raise UnreadableRecords([f"{name} can't be read as a table ({said}): export it again as CSV."]) from problem
+        raise UnreadableRecords(
+            [f"{text.name} can't be read as a table ({said}): export it again as CSV."]
+        ) from problem
 
 
-def _parsed(text: bytes | mmap.mmap, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
+def _parsed(text: SourceFile, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
     """Parse the lines; those with another number of cells are counted, not guessed at."""
     misfits = 0
 
@@ -165,11 +160,11 @@ def _parsed(text: bytes | mmap.mmap, layout: Layout, times: Iterable[str]) -> tu
     unique = [f"{place}\0{heading}" for place, heading in enumerate(layout.headings)]
     wanted = {heading: unique[layout.headings.index(heading)] for heading in layout.found.values()}
     table = arrow_csv.read_csv(
-        pa.BufferReader(pa.py_buffer(text).slice(layout.rows_start)),
+        text.stream(layout.rows_start),
         read_options=arrow_csv.ReadOptions(column_names=unique, block_size=BLOCK_BYTES),
         parse_options=arrow_csv.ParseOptions(
             delimiter=layout.separator,
-            newlines_in_values=re.search(b'"', text) is not None,
+            newlines_in_values=any(re.search(b'"', block) for block in text.blocks()),
             invalid_row_handler=count,
         ),
         convert_options=arrow_csv.ConvertOptions(
@@ -177,6 +172,7 @@ def _parsed(text: bytes | mmap.mmap, layout: Layout, times: Iterable[str]) -> tu
                 column: _type_of(key, times) for key, column in zip(layout.found, wanted.values(), strict=True)
             },
             include_columns=list(wanted.values()),
+            check_utf8=False,  # the whole file was looked at before
             strings_can_be_null=True,
             null_values=[""],
         ),

@@ -9,9 +9,10 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 import pandas as pd
+import pyarrow as pa
 
 from bedplan.data import cleaning, noticing, sequence
-from bedplan.data.blocks import order_of
+from bedplan.data.blocks import order_of, side_by_side, taken
 from bedplan.data.choices import HELD, IntakeChoices
 from bedplan.data.columns import STAY_HEADINGS
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
@@ -151,10 +152,11 @@ def read_records(
     file = open_source(source, name)
     chosen = choices or IntakeChoices()
     text = read_table(file, STAY_HEADINGS, columns, TIMES)
+    file = replace(file, held=b"")  # what was read is in the text now: a large file need not be held three times
     tell(0.4, "dates, wards and keys")
     table = as_stay_table(text, file.name, date_order, chosen)
-    # What was read is in the table now: a large file need not be held three times.
-    file, text = replace(file, content=b""), replace(text, columns={})
+    text = replace(text, columns={})  # what was read is in the table now
+    pa.default_memory_pool().release_unused()
     tell(0.7, "patients' ways through the wards")
     seen = _clean(table, chosen)
     tell(0.9, "counting every row")
@@ -203,7 +205,7 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
         if table.has_times:
             order = sequence.merge_pass_throughs(rows, order)
         long_overlaps = sequence.part_overlaps(rows, order)
-    order = everyone[rows.live[everyone]]
+    order = everyone[taken(rows.live, everyone)]
     if table.knows_patients:
         notes += noticing.sequences(rows, order, table, long_overlaps)
     set_places_aside(rows, kinds, table.text.get("class"), choices.bed_on_leave)
@@ -217,19 +219,21 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
     live = np.flatnonzero(rows.live)
     if not live.size:
         raise UnreadableRecords(_why_none(rows, file.name))
-    live = live[order_of(rows.start[live])]
-    start, end = rows.start[live], rows.end[live]
+    live = live[order_of(taken(rows.start, live))]
+    start, end = taken(rows.start, live), taken(rows.end, live)
     choices.check_days(file.name, _day(start.min()), _day(seen.until - 1))
     period = find_period(seen.times, seen.until).narrowed(chosen_window(choices.window))
-    about = noticing.whole_file(rows, live, table, period)
+    about, links, changed, stays = side_by_side(
+        lambda: noticing.whole_file(rows, live, table, period),
+        lambda: propose_links(table.wards, taken(rows.ward, live), start, period.window),
+        lambda: taken(rows.changed, live),
+        lambda: table.frame(live, start, end),
+    )
     notes = [*choices.said(), *text.notes, *table.notes, *seen.notes, *about]
-    stays = table.frame(live, start, end)
-    changed = (rows.reason[live] > 0) | (start != rows.first_start[live]) | (end != rows.first_end[live])
     stays["repaired"] = changed
     removed = table.frame(np.flatnonzero(rows.aside))
     sentences = np.array(["", *(rule.sentence for rule in RULES.values())], dtype=object)
     removed.insert(0, "reason", pd.Categorical(sentences[rows.reason[rows.aside]]))
-    links = propose_links(table.wards, rows.ward[live], start, period.window)
     return Records(
         name=file.name,
         stays=stays,

@@ -96,6 +96,17 @@ class Rows:
         """Rows without an end."""
         return self.end == MISSING
 
+    @property
+    def changed(self) -> NDArray[np.bool_]:
+        """Rows that a rule repaired, or that another row of the patient made longer or shorter."""
+
+        def differ(block: slice) -> NDArray[np.bool_]:
+            """Compare one block."""
+            moved = (self.start[block] != self.first_start[block]) | (self.end[block] != self.first_end[block])
+            return (self.reason[block] > 0) | moved
+
+        return np.concatenate(in_blocks(self.start.size, differ))
+
     def mark(self, which: NDArray, key: str) -> None:
         """Apply one rule to rows (mask or positions). Setting aside beats a repair; else the first reason stays."""
         rows = np.flatnonzero(which) if which.dtype == bool else which

@@ -23,23 +23,22 @@ PASS_THROUGH_SECONDS = 30 * 60
 def in_order(rows: Rows) -> NDArray[np.int64]:
     """Return the live rows by patient, then start; of two that start together the one with the later end first."""
     order = np.flatnonzero(rows.live)
-    place = _place(rows, order)
-    if (place[1:] < place[:-1]).any():
-        order = order[order_of(rows.start[order])]
-        order = order[order_of(rows.patient[order])]
-        place = _place(rows, order)
-    tied = np.zeros(order.size, dtype=bool)
-    tied[1:] = place[1:] == place[:-1]
-    if tied.any():
-        tied[:-1] |= tied[1:]
-        together = order[tied]
-        order[tied] = together[np.lexsort((-_ends(rows, together), place[tied]))]
+    if any(in_blocks(order.size, lambda block: bool((_steps(rows, order, block) < 0).any()))):
+        order = taken(order, order_of(taken(rows.start, order)))
+        order = taken(order, order_of(taken(rows.patient, order)))
+    tied = np.zeros(order.size + 1, dtype=bool)
+    tied[1:-1] = np.concatenate([tied[:0], *in_blocks(order.size, lambda block: _steps(rows, order, block) == 0)])
+    tied[:-1] |= tied[1:]
+    which = np.flatnonzero(tied[:-1])
+    together = order[which]
+    order[which] = together[np.lexsort((-_ends(rows, together), rows.start[together], rows.patient[together]))]
     return order
 
 
-def _place(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Return numbers that go up from patient to patient, and from start to start of each."""
-    return rows.patient[order] * SPAN + rows.start[order]
+def _steps(rows: Rows, order: NDArray[np.int64], block: slice) -> NDArray[np.int64]:
+    """Return how far it is from each row of a block to the next one: above 0 where patients, or their starts, go up."""
+    which = order[block.start : block.stop + 1]
+    return np.diff(rows.patient[which] * SPAN + rows.start[which])
 
 
 def to_look_at(rows: Rows, order: NDArray[np.int64], always: NDArray[np.bool_]) -> NDArray[np.int64]:

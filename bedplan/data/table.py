@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -9,7 +10,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data import codes
-from bedplan.data.blocks import BLOCK_ROWS, each, taken
+from bedplan.data.blocks import BLOCK_ROWS, side_by_side, taken
 from bedplan.data.dateorder import start_and_end
 from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE
 from bedplan.data.grain import what_rows_are
@@ -89,9 +90,14 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
             question is in ``.question``).
     """
     _check_columns(text, name)
-    start, end, notes = start_and_end(text, name, date_order, choices.time_zone)
+    named = [key for key in ("patient_key", "spell_key") if key in text.columns]
+    (start, end, notes), wards, *read = side_by_side(
+        lambda: start_and_end(text, name, date_order, choices.time_zone),
+        lambda: codes.read_wards(text.columns["ward"], choices.ward_names),
+        *(functools.partial(read_keys, text.columns[key]) for key in named),
+    )
+    keys = dict(zip(named, read, strict=True))
     notes += what_rows_are(text)
-    wards = codes.read_wards(text.columns["ward"], choices.ward_names)
     rows = Rows(
         patient=np.arange(text.rows, dtype=np.int32),
         spell=np.full(text.rows, -1, dtype=np.int32),
@@ -99,8 +105,6 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
         start=start.seconds,
         end=end.seconds,
     )
-    named = [key for key in ("patient_key", "spell_key") if key in text.columns]
-    keys = dict(zip(named, each(lambda key: read_keys(text.columns[key]), named), strict=True))
     whose = keys.get("patient_key", keys.get("spell_key"))
     if whose is not None:
         rows.patient = whose.codes

@@ -88,7 +88,7 @@ def one_row_of_headings(source: SourceFile) -> SourceFile | None:
             if headings:
                 written = io.StringIO()
                 csv.writer(written).writerows([headings, *rows[place + 1 :]])
-                return SourceFile(source.name, written.getvalue().encode(), source.digest)
+                return SourceFile(source.name, written.getvalue().encode(), digest=source.digest)
     return None
 
 
@@ -98,7 +98,7 @@ def _rows_of(source: SourceFile) -> list[Rows]:
         return sheets_as_text(source)
     if source.begins_with(b"PAR1"):
         return []
-    lines = bytes(as_utf8(source)[0]).decode("utf-8", errors="replace").splitlines()
+    lines = as_utf8(source)[0].content.decode("utf-8", errors="replace").splitlines()
     top = lines[:MOST_TITLE_LINES]
     separator = max(SEPARATORS, key=lambda sign: sum(line.count(sign) for line in top))
     return [[split_cells(line, separator) for line in lines]]

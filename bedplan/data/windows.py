@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
+from bedplan.data.blocks import in_blocks, order_of, taken
 from bedplan.data.dates import DAY_SECONDS, MISSING
 
 if TYPE_CHECKING:
@@ -114,20 +115,25 @@ def times_in_hospital(
 
     Exports are mostly chosen by these two, not by when a patient came to a ward.
     """
-    order = order[rows.live[order]]
-    start, end, patient = rows.start[order], rows.end[order], rows.patient[order]
+    order = order[taken(rows.live, order)]
     goes_on = np.zeros(order.size, dtype=bool)
-    if not order.size:
-        return TimesInHospital(start, end, rows.ward[order], 0.0)
-    if knows_patients:
-        again = np.flatnonzero(patient[1:] == patient[:-1]) + 1
-        together = (end[again - 1] != MISSING) & (start[again] - end[again - 1] <= MOVE_GAP_SECONDS)
+
+    def look(block: slice) -> None:
+        """Find the moves from one ward to the next within one block, and from it to the next."""
+        which = order[block.start : block.stop + 1]
+        start, end, patient, spell = (every[which] for every in (rows.start, rows.end, rows.patient, rows.spell))
+        together = (end[:-1] != MISSING) & (start[1:] - end[:-1] <= MOVE_GAP_SECONDS)
         if knows_spells:
-            together |= rows.spell[order[again]] == rows.spell[order[again - 1]]
-        goes_on[again] = together
+            together |= spell[1:] == spell[:-1]
+        goes_on[block.start + 1 : block.stop + 1] = (patient[1:] == patient[:-1]) & together
+
+    if knows_patients:
+        in_blocks(order.size, look)
     heads = np.flatnonzero(~goes_on)
-    tails = np.append(heads[1:], order.size) - 1
-    return TimesInHospital(start[heads], end[tails], rows.ward[order[tails]], float(goes_on.mean()))
+    tails = np.append(heads[1:], order.size)[: heads.size] - 1
+    moves = float(goes_on.mean()) if order.size else 0.0
+    heads, tails = order[heads], order[tails]
+    return TimesInHospital(taken(rows.start, heads), taken(rows.end, tails), taken(rows.ward, tails), moves)
 
 
 def find_period(times: TimesInHospital, until: int) -> Period:
@@ -235,5 +241,7 @@ def _longest_days(times: TimesInHospital) -> int:
     """Within how many days do 99 % of stays end, on the ward where that takes longest? Whole days."""
     finished = times.end != MISSING
     ward, stay = times.ward[finished], (times.end - times.start)[finished] / DAY_SECONDS
-    groups = [stay[ward == code] for code in np.flatnonzero(np.bincount(ward) >= FEWEST_TIMES)] or [stay]
+    counts = np.bincount(ward)
+    groups = np.split(stay[order_of(ward)], np.cumsum(counts)[:-1])
+    groups = [group for group in groups if group.size >= FEWEST_TIMES] or [stay]
     return math.ceil(max(float(np.quantile(group, ALMOST_ALL)) for group in groups))

@@ -9,7 +9,7 @@ import pandas as pd
 import pytest
 
 from bedplan.data import read_records
-from bedplan.data.occupancy import bed_days, present
+from bedplan.data.occupancy import bed_days, present, present_by_ward
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -56,3 +56,13 @@ def test_mean_census_is_bed_days_over_days(ward: Records) -> None:
     counts = present(ward, ward.stays, 60)
 
     assert counts.mean() == pytest.approx(bed_days(ward, ward.stays).sum() / ward.days, rel=1e-4)
+
+
+@pytest.mark.parametrize("step_minutes", [60, 1_440])
+def test_all_wards_at_once_are_the_wards_one_by_one(larkmere: Records, step_minutes: int) -> None:
+    """Counting every ward in one go gives each ward's own counts."""
+    together = present_by_ward(larkmere, step_minutes * 60)
+
+    assert set(together) == set(larkmere.wards)
+    for ward in larkmere.wards:
+        assert (together[ward] == present(larkmere, larkmere.of_ward(ward), step_minutes * 60)).all()
