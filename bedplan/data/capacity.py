@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass, field, replace
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -97,6 +98,7 @@ class Capacity:
         return replace(self, table=merged(self.table, names), wards=wards, unknown_wards=unknown)
 
 
+@lru_cache(maxsize=4_096)
 def beds_in_text(text: str | None) -> tuple[int, int] | None:
     """How many beds does a cell such as ``24 (+2)`` name? (regular, extra); *closed* = 0; None where it says nothing.
 
@@ -177,7 +179,7 @@ def _capacity(text: TextTable, name: str, date_order: str | None) -> Capacity:
 
 def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series, list[str]]:
     """Return every row, why it can't be used ("" = it can), and the cells nobody can read."""
-    wards = spelled_alike([without_formula(ward) for ward in text.strings("ward")])
+    wards = spelled_alike(text.strings("ward"))
     counts = {key: [beds_in_text(cell) for cell in text.strings(key)] for key in ("funded", "staffed", "closed")}
     regular = counts["staffed"] if "staffed" in text.columns else counts["funded"]
     funded = counts["funded"] if "funded" in text.columns else regular

@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
 
 from bedplan.data.capacity import beds_in_text
-from bedplan.data.columns import TELLTALES, without_formula
+from bedplan.data.columns import TELLTALES
 from bedplan.data.headings import CENSUS_HEADINGS
 from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
 from bedplan.data.moments import when
@@ -182,7 +183,7 @@ def _census(text: TextTable, name: str, date_order: str | None, zeros_are_real: 
 def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series]:
     """Return every row, and why it can't be used ("" = it can). ``available`` −1 = not told."""
     (moment,), clock_unread = when(text, name, date_order)
-    wards = spelled_alike([without_formula(value) for value in text.strings("ward")])
+    wards = spelled_alike(text.strings("ward"))
     occupied = [patients_in_text(value) for value in text.strings("occupied")]
     available = [beds_in_text(value) for value in text.strings("available")]
     closed = [beds_in_text(value) for value in text.strings("closed")]
@@ -226,6 +227,7 @@ def _notes(kept: pd.DataFrame) -> list[str]:
     return notes
 
 
+@lru_cache(maxsize=4_096)
 def patients_in_text(text: str) -> float | None:
     """How many patients does a cell name? ``24 (+2)`` are 26; averages have decimals; None where it says nothing.
 

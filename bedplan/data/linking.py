@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from collections import Counter
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 from bedplan.data.codes import chosen_names, one_spelling
@@ -21,6 +22,7 @@ TOTAL = re.compile(
 )
 
 
+@lru_cache(maxsize=4_096)
 def is_no_ward(ward: str, heading: str = "ward") -> bool:
     """Does this cell of a ward column name no ward: blank, a total, a footer or the heading once more?"""
     return not ward or TOTAL.match(ward) is not None or ward.casefold() == heading.casefold()

@@ -90,10 +90,10 @@ class EventLog:
 
         Entries without a reason, on a ward that gives reasons, are among them, as "".
         """
-        if self.no_bed_reasons is not None:
+        if self.no_bed_reasons is not None or "reason" not in self.table:
             return {}
-        given = self.table[self.table["ward"].isin([ward for ward in self.wards if self._gives_reasons(ward)])]
-        counts = given["reason"].value_counts() if len(given) else pd.Series(dtype=int)
+        with_reasons = self.table.loc[self.table["reason"] != "", "ward"].unique()
+        counts = self.table.loc[self.table["ward"].isin(with_reasons), "reason"].value_counts()
         return {str(reason): int(rows) for reason, rows in counts.items() if means_no_bed(str(reason)) is None}
 
     @property
@@ -260,8 +260,8 @@ def _tells_why(frame: pd.DataFrame) -> bool:
 
 def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, np.ndarray]:
     """Return all rows, and which of them have a day but no readable time of day beside it."""
-    ward = [without_formula(value) for value in text.strings("ward")]
-    ward = ["" if is_no_ward(one, text.headings["ward"]) else one for one in spelled_alike(ward)]
+    wards = spelled_alike(text.strings("ward"))
+    ward = ["" if is_no_ward(one, text.headings["ward"]) else one for one in wards]
     then = ("placed",) if "placed" in text.columns else ()
     (time, *placed), day_only = when(text, name, date_order, *then)
     frame = pd.DataFrame({"time": as_times(time), "ward": pd.Series(ward, dtype=object)})

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import pandas as pd
 
-from bedplan.data.columns import TELLTALES, plain, without_formula
+from bedplan.data.columns import TELLTALES, plain
 from bedplan.data.figures import read_figures
 from bedplan.data.headings import RETURN_HEADINGS
 from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
@@ -164,7 +164,7 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
     order = order_of_dates(cells, name, date_order)
     months = [month_of(value, order) for value in cells]
     figures, notes = read_figures({key: text.strings(key) for key in FIGURES})
-    wards = spelled_alike([without_formula(value) for value in text.strings("ward")])
+    wards = spelled_alike(text.strings("ward"))
     year_and_month = [one or (1970, 1) for one in months]
     frame = pd.DataFrame(
         {
