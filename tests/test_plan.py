@@ -125,6 +125,7 @@ def test_a_saved_plan_comes_back_as_it_was() -> None:
                 places={"Aufwachraum": "procedure place"},
                 window=(dt.date(2023, 4, 1), dt.date(2025, 3, 31)),
                 excluded=((dt.date(2023, 5, 1), dt.date(2023, 5, 9)), (dt.date(2024, 2, 1), dt.date(2024, 2, 2))),
+                excluded_because=("pandemic", ""),
                 time_zone="Europe/London",
                 bed_on_leave="held",
             ),
@@ -167,13 +168,14 @@ def test_damaged_answers_are_not_a_plan(answers: dict) -> None:
 
 def test_every_answer_is_named_in_a_document() -> None:
     """A row an answer given, none for what was not said."""
-    choices = IntakeChoices(places={"Recovery": "bed ward"}, excluded=((dt.date(2024, 2, 1), dt.date(2024, 2, 9)),))
+    left_out = (dt.date(2024, 2, 1), dt.date(2024, 2, 9))
+    choices = IntakeChoices(places={"Recovery": "bed ward"}, excluded=(left_out,), excluded_because=("flood",))
 
     assert Answers().rows() == ()
     assert [value for _, value in Answers(date_order="day first", choices=choices).rows()] == [
         "day first",
         "Recovery = bed ward",
-        "2024-02-01 to 2024-02-09",
+        "2024-02-01 to 2024-02-09 (flood)",
     ]
 
 

@@ -37,7 +37,8 @@ class IntakeChoices:
     ``ward_names``: name in the file → name to use (a renamed or merged ward). ``places``: ward → what it is
     (``"bed ward"``, ``"waiting place"``, ``"procedure place"``, ``"virtual"``, ``"cot"``, ``"delivery"``, ``"leave"``),
     where the program's own list of names is wrong. ``window``: first day and last day (included) for which the file
-    is complete. ``excluded``: periods (first day, last day) left out of rates and rhythms, such as a pandemic.
+    is complete. ``excluded``: periods (first day, last day) left out of rates and rhythms, and ``excluded_because``: why,
+    in the same order, such as "pandemic".
     ``time_zone``: the hospital's zone (``"Europe/London"``), to bring times with an offset to its clock.
     ``bed_on_leave``: ``"held"`` (leave counts on the ward that was left) or ``"given away"`` while a patient is on leave.
     ``ready_dates``: a file of its own that says when patients were ready to leave, as ``read_ready_dates`` gives it.
@@ -52,6 +53,7 @@ class IntakeChoices:
     places: Mapping[str, str] = field(default_factory=dict)
     window: tuple[dt.date, dt.date] | None = None
     excluded: tuple[tuple[dt.date, dt.date], ...] = ()
+    excluded_because: tuple[str, ...] = ()
     time_zone: str | None = None
     bed_on_leave: str | None = None
     ready_dates: ReadyDates | None = field(default=None, compare=False, repr=False)
@@ -81,9 +83,17 @@ class IntakeChoices:
         window = (
             [f"The file is taken as complete from {_span(*self.window)}, as the planner said."] if self.window else []
         )
-        left_out = [f"{_span(first, last)} is left out of rates and rhythms." for first, last in self.excluded]
+        left_out = [
+            f"{_span(first, last)} is left out of rates and rhythms{f': {why}' if why else ''}."
+            for (first, last), why in self.left_out()
+        ]
         leave = [f"While a patient is on leave the bed is {self.bed_on_leave}, as the planner said."]
         return (*places, *window, *left_out, *(leave if self.bed_on_leave else ()))
+
+    def left_out(self) -> tuple[tuple[tuple[dt.date, dt.date], str], ...]:
+        """Which periods are left out, and why? "" where nobody said."""
+        because = (*self.excluded_because, *("" for _ in self.excluded))
+        return tuple(zip(self.excluded, because, strict=False))
 
     def check_days(self, name: str, first: dt.date, last: dt.date) -> None:
         """Refuse days that leave nothing of a file whose stays run from ``first`` to ``last``.

@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     Period = tuple[dt.date, dt.date]
 
 PLACE, KIND = "Place in the file", "Taken for"
-FIRST, LAST = "First day", "Last day"
+FIRST, LAST, WHY = "First day", "Last day", "Why"
 EARLIEST, LATEST = dt.date(1990, 1, 1), dt.date(2099, 12, 31)
 ONE_DAY = dt.timedelta(days=1)
 
@@ -50,11 +50,13 @@ def correct() -> None:
         if not sent:
             return
         try:
+            left_out, because = _periods(excluded)
             chosen = replace(
                 _names_only(answers.choices),
                 places=_corrected(places),
                 window=answers.choices.window if window == _found(here) else _whole_period(window, _found(here)),
-                excluded=_periods(excluded),
+                excluded=left_out,
+                excluded_because=because,
                 time_zone=zone.strip() or None,
                 bed_on_leave=leave,
             )
@@ -119,28 +121,28 @@ def _whole_period(days: tuple[dt.date | None, dt.date | None], found: Period) ->
 def ask_periods(choices: IntakeChoices) -> pd.DataFrame:
     """Ask for periods to leave out of rates and rhythms."""
     st.caption("Periods to leave out, such as a pandemic or a major incident. They are named in the document.")
-    days = [pd.Series([period[end] for period in choices.excluded], dtype=object) for end in (0, 1)]
+    rows = [(*period, why) for period, why in choices.left_out()]
     config = {name: st.column_config.DateColumn(min_value=EARLIEST, max_value=LATEST) for name in (FIRST, LAST)}
     return st.data_editor(
-        pd.DataFrame(dict(zip((FIRST, LAST), days, strict=True))),
-        column_config=config,
+        pd.DataFrame(rows, columns=[FIRST, LAST, WHY], dtype=object),
+        column_config={**config, WHY: st.column_config.TextColumn(max_chars=60)},
         num_rows="dynamic",
         hide_index=True,
         key=f"left_out_{intake.times_read()}",
     )
 
 
-def _periods(rows: pd.DataFrame) -> tuple[Period, ...]:
-    """Return the periods that were filled in.
+def _periods(rows: pd.DataFrame) -> tuple[tuple[Period, ...], tuple[str, ...]]:
+    """Return the periods that were filled in, and why each is left out.
 
     Raises:
         ImpossibleFigure: one day of a period is missing.
     """
     filled = rows.dropna(how="all")
-    if filled.isna().any(axis=None):
+    if filled[[FIRST, LAST]].isna().any(axis=None):
         raise ImpossibleFigure("A period to leave out needs a first and a last day: give both.")
     days = ([pd.Timestamp(day).date() for day in filled[name]] for name in (FIRST, LAST))
-    return tuple(zip(*days, strict=True))
+    return tuple(zip(*days, strict=True)), tuple(" ".join(str(why).split()) for why in filled[WHY].fillna(""))
 
 
 def ask_leave(here: Records, choices: IntakeChoices) -> str | None:

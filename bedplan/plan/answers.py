@@ -33,7 +33,9 @@ class Answers:
             "Ward names": _pairs(said.ward_names),
             "Places": _pairs(said.places),
             "Complete": said.window and _span(*said.window),
-            "Left out of rates": "; ".join(_span(*period) for period in said.excluded),
+            "Left out of rates": "; ".join(
+                _span(*period) + (f" ({why})" if why else "") for period, why in said.left_out()
+            ),
             "Time zone": said.time_zone,
             "Bed while a patient is on leave": said.bed_on_leave,
         }
@@ -48,7 +50,7 @@ class Answers:
             "ward_names": dict(said.ward_names),
             "places": dict(said.places),
             "window": said.window and [day.isoformat() for day in said.window],
-            "excluded": [[day.isoformat() for day in period] for period in said.excluded],
+            "excluded": [[*(day.isoformat() for day in period), why] for period, why in said.left_out()],
             "time_zone": said.time_zone,
             "bed_on_leave": said.bed_on_leave,
         }
@@ -73,7 +75,7 @@ def saved_answers(held: Mapping[str, Any]) -> Answers:
 
     Checked by: tests/test_plan.py
     """
-    window = held.get("window")
+    window, left_out = held.get("window"), held.get("excluded", ())
     return Answers(
         _texts(held.get("columns", {})),
         _text(held.get("date_order")),
@@ -81,7 +83,8 @@ def saved_answers(held: Mapping[str, Any]) -> Answers:
             ward_names=_texts(held.get("ward_names", {})),
             places=_texts(held.get("places", {})),
             window=_period(window) if window else None,
-            excluded=tuple(_period(period) for period in held.get("excluded", ())),
+            excluded=tuple(_period(period[:2]) for period in left_out),
+            excluded_because=tuple(str(period[2]) if len(period) > 2 else "" for period in left_out),
             time_zone=_text(held.get("time_zone")),
             bed_on_leave=_text(held.get("bed_on_leave")),
         ),

@@ -192,7 +192,7 @@ def test_the_file_is_corrected(page: Page, server: str, stays_csv: bytes) -> Non
     page.get_by_text("Correct how the file was taken").click()
     cell(page, "places", 0.75, 1)
     page.get_by_role("option", name="ward with beds").click()
-    for at, day in ((0.3, "2024-03-01"), (0.8, "2024-03-31")):
+    for at, day in ((0.2, "2024-03-01"), (0.5, "2024-03-31")):
         cell(page, "left_out", at, 1)
         page.locator("input[type=date]").last.fill(day)
         page.keyboard.press("Enter")

@@ -154,25 +154,25 @@ def test_days_are_chosen(app: AppTest) -> None:
     assert_all_else_stays(app)
 
 
-def leave_out(app: AppTest, *periods: tuple[str | None, str | None]) -> AppTest:
-    """Fill in periods to leave out, and send them."""
-    rows = [
-        {name: day for name, day in zip(("First day", "Last day"), period, strict=True) if day} for period in periods
-    ]
+def leave_out(app: AppTest, *periods: tuple[str | None, ...]) -> AppTest:
+    """Fill in periods to leave out, with the reason where there is one, and send them."""
+    headings = ("First day", "Last day", "Why")
+    rows = [{name: cell for name, cell in zip(headings, period, strict=False) if cell} for period in periods]
     app.session_state[key(app, "left_out")] = {"edited_rows": {}, "added_rows": rows, "deleted_rows": []}
     return press(app, SEND)
 
 
 def test_periods_are_left_out_and_stand_in_the_document(app: AppTest) -> None:
     """Two periods count in no rate, and the justification names both."""
-    leave_out(app, ("2024-03-01", "2024-03-31"), ("2024-08-05", "2024-08-06"))
+    leave_out(app, ("2024-03-01", "2024-03-31", "pandemic"), ("2024-08-05", "2024-08-06"))
     assert int((~app.session_state["files"].records.counted_days).sum()) == 31 + 2
     assert_all_else_stays(app)
     shown = table(app, "First day")
     assert [day.day for day in shown["First day"]] == [1, 5]
 
     go(app, "justification")
-    assert any("2024-03-01 to 2024-03-31; 2024-08-05 to 2024-08-06" in one.value.to_csv() for one in app.table)
+    said = "2024-03-01 to 2024-03-31 (pandemic); 2024-08-05 to 2024-08-06"
+    assert any(said in one.value.to_csv() for one in app.table)
 
 
 @pytest.mark.parametrize(
