@@ -11,7 +11,7 @@ from scipy import special
 from bedplan.models.bed_curve import BedCurve, Waits, bed_counts
 from bedplan.models.clusters import clustering_notes
 from bedplan.models.waiting_spread import spread_of, wait_ratio
-from bedplan.models.waiting_year import Pace, settled_queue, share_who_wait
+from bedplan.models.waiting_year import Pace, raised_by_swing, settled_queue, share_who_wait
 from bedplan.models.year import (
     HOURS_A_WEEK,
     HOURS_A_YEAR,
@@ -38,6 +38,8 @@ _NO_DRIFT = 1e-4
 _FARTHEST = 6.0
 # a load this near its beds counts as reaching them: its queue would take lifetimes to settle
 _TOO_NEAR = 1e-6
+# range of beds wanted in a week ÷ √beds wanted from which the week's rhythm is worth a note
+_SWINGS = 0.4
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -111,6 +113,11 @@ def _load_of(demand: Demand) -> _Load:
     )
 
 
+def _weeks(load: _Load) -> int:
+    """Return how many weeks the period has."""
+    return round(load.wanted.shape[0] * load.step_days / 7.0)
+
+
 def _steady_queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> tuple[Array, Array]:
     """Read the delay formula at each rate: exact shares for exponential stays, one step for the whole year."""
     spread, loads = spread_of(demand), load.wanted[0]
@@ -134,6 +141,7 @@ def _queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> _Queue:
         pace = Pace(load.step_days, load.mean_days)
         year = settled_queue(spread_of(demand), counts, load.wanted[:, rates], columns, pace)
         wait[:, settles], days[:, settles] = year
+        wait = raised_by_swing(wait, load.wanted, load.patients.sum(axis=0), _weeks(load))
     return _Queue(wait, days, in_use)
 
 
@@ -197,8 +205,14 @@ def _notes(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> tuple[str,
             "the busiest month wants more beds than there are: there the share who wait may be up to an eighth too low "
             "and the mean wait up to a quarter too long."
         )
-    if max(demand.weekday_factors) - min(demand.weekday_factors) > 0.1:
-        notes.append("With a weekly rhythm up to a sixth more patients wait than this line says.")
+    weeks = wanted.reshape(_weeks(load), -1)
+    if np.median(np.ptp(weeks, axis=1) / np.sqrt(weeks.mean(axis=1))) > _SWINGS:
+        notes.append(
+            "With a rhythm of weekdays or hours the share who wait may be up to a tenth of it off, with very uneven stays up "
+            "to a seventh too low, with very even ones up to a fifth too high. The mean wait may be up to a fifth too long, "
+            "with short stays up to a half; the share who wait for hours up to a seventh too low where few beds are free. "
+            "Where booked lists bring many, up to a third fewer wait."
+        )
     notes.extend(clustering_notes(demand, waits=True))
     if demand.rate_variation > 0.0:
         notes.append(

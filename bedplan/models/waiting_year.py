@@ -29,6 +29,7 @@ _POINTS = 500
 _LONGEST_QUEUE = 1e6
 _SETTLED, _MOST_TURNS = 1e-5, 60
 _FEW = 1e-3
+_SWING = 0.9
 
 
 def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -> Array:
@@ -223,3 +224,24 @@ def settled_queue(
     wards = _columns(spread, counts).only(columns)
     wait, stays = wards.waits(_settled(wards, wanted, pace.step_days / pace.mean_days))
     return wait, pace.mean_days * stays
+
+
+def raised_by_swing(wait: Array, wanted: Array, patients: Array, weeks: int) -> Array:
+    """Which share waits of those who come in each step, if demand swings through the week? ``(steps, rates, n)``.
+
+    A steady ward that holds x patients has emptier and fuller days behind it than one filled from Monday to Wednesday:
+    at the same x fewer find all beds in use. So p, the share of a whole week, is raised by p²·(1 − p)·s²/(s² + 0.9);
+    s is half the range of beds wanted in the week ÷ √beds wanted. Fitted to exact chains with exponential stays. ``wait``
+    is the share at x, ``wanted`` and ``patients`` ``(steps, rates)`` for whole weeks, so many of them.
+
+    Checked by: tests/models/test_waiting.py
+    """
+    by_week = (weeks, -1, wanted.shape[1])
+    wanted, patients = wanted.reshape(by_week), patients.reshape(by_week)
+    swing = np.ptp(wanted, axis=1) ** 2 / 4.0 / np.maximum(wanted.mean(axis=1), 1e-300)
+    part = (swing / (swing + _SWING))[:, :, None]
+    in_weeks = wait.reshape(*wanted.shape, -1)
+    everyone = np.maximum(patients.sum(axis=1), 1e-300)[:, :, None]
+    share = np.einsum("wsr,wsrn->wrn", patients, in_weeks) / everyone
+    raised = in_weeks * (1.0 + part * share * (1.0 - share))[:, None]
+    return np.minimum(raised, 1.0).reshape(wait.shape)

@@ -6,7 +6,8 @@ import math
 
 import numpy as np
 import pytest
-from scipy import integrate, stats
+from scipy import integrate, special, stats
+from scipy.linalg import expm
 
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import (
@@ -23,6 +24,7 @@ from bedplan.models import (
 from bedplan.models.clusters import more_if_groups_differ
 from bedplan.models.waiting_spread import spread_of, wait_ratio
 from bedplan.models.waiting_year import Pace, settled_queue
+from bedplan.models.year import unbooked_by_hour
 
 WINTER = (1.3, 1.2, 1.1, 1.0, 0.9, 0.9, 0.8, 0.8, 0.9, 1.0, 1.0, 1.1)
 EXPONENTIAL = LengthOfStay(4.0, 1.0, "gamma")
@@ -266,17 +268,77 @@ def test_a_queue_is_carried_into_the_next_month() -> None:
     assert any("carried into the next" in note for note in curve.notes)
 
 
-@pytest.mark.parametrize("beds", [45, 50])
-def test_weekdays_against_simulation(beds: int) -> None:
-    """A strong weekly rhythm keeps up to a sixth more patients waiting than the line, as noted."""
-    week = (1.2097, 1.4713, 1.3779, 1.0, 0.6221, 0.5287, 0.7903)
-    demand = Demand(10.0, EXPONENTIAL, weekday_factors=week)
-    curve = waiting(demand, [beds])
-    ward = simulate_ward(demand, beds, seed=1, when_full="waits")
+def exact_week(demand: Demand, beds: int, step_hours: int, over_hours: float) -> tuple[float, float, float]:
+    """Solve the chain of patients present through a week, exponential stays, by full matrix exponentials.
 
-    assert -0.05 < 1.0 - curve.turn_away_probability[0] / ward.turn_away_probability < 1.0 / 6.0
-    assert curve.turn_away_probability[0] > float(erlang_c(40.0, beds))
-    assert any("weekly rhythm" in note for note in curve.notes)
+    The share who wait, the mean hours over everybody, and the share who wait longer than some hours.
+    """
+    present, stay_hours = np.arange(beds + 130), 24.0 * demand.length_of_stay.mean_days
+    # with n present a patient waits for n − beds + 1 stays to end, each after an exponential time
+    longer = np.where(
+        present >= beds, special.gammaincc(np.maximum(present - beds + 1, 1), beds * over_hours / stay_hours), 0.0
+    )
+    watched = np.stack([present >= beds, np.maximum(present - beds, 0), longer], axis=1)
+    week = unbooked_by_hour(demand)[:168].reshape(-1, step_hours).mean(axis=1)
+    known = {}
+    for coming in np.unique(week):
+        rates = np.zeros((present.size + 3, present.size + 3))
+        up, down = np.full(present.size - 1, coming), np.minimum(present[1:], beds) / stay_hours
+        rates[: present.size, : present.size] = np.diag(up, 1) + np.diag(down, -1)
+        rates[present[:-1], present[:-1]] -= up
+        rates[present[1:], present[1:]] -= down
+        rates[: present.size, present.size :] = watched
+        whole = expm(rates * step_hours)
+        known[coming] = whole[: present.size, : present.size], whole[: present.size, present.size :]
+    round_week = np.linalg.multi_dot([known[coming][0] for coming in week])
+    balance = round_week.T - np.eye(present.size)
+    balance[-1] = 1.0
+    state = np.linalg.solve(balance, np.eye(present.size)[-1])
+    total = np.zeros(3)
+    for coming in week:
+        move, seen = known[coming]
+        total += state @ seen * np.array([coming, 1.0, coming])
+        state = state @ move
+    total /= week.sum() * step_hours
+    return float(total[0]), float(total[1]), float(total[2])
+
+
+STRONG = (1.2097, 1.4713, 1.3779, 1.0, 0.6221, 0.5287, 0.7903)
+WILD = (1.9, 1.6, 1.3, 0.9, 0.6, 0.3, 0.4)
+MILD = (1.10, 1.03, 1.02, 1.01, 1.03, 0.91, 0.90)
+# kind of week: its factors, beds wanted, bed counts, and the share who wait, too low and too high at most
+WEEKS = {
+    "mild": (MILD, 40.0, (45, 53), 0.002, 0.003),
+    "strong": (STRONG, 40.0, (45, 49, 53, 59), 0.015, 0.03),
+    "strong, small ward": (STRONG, 8.0, (10, 12, 16), 0.015, 0.03),
+    "wild": (WILD, 40.0, (45, 49, 59), 0.04, 0.04),
+}
+
+
+@pytest.mark.parametrize("kind", WEEKS)
+def test_weekdays_against_the_exact_chain(kind: str) -> None:
+    """From mild to wild weeks: who waits, how long and who waits over half a day, and which way each errs at most."""
+    week, load, counts, low, high = WEEKS[kind]
+    demand = Demand(load / 4.0, EXPONENTIAL, weekday_factors=week)
+    curve = waiting(demand, counts)
+    for place, beds in enumerate(counts):
+        share, mean_hours, longer = exact_week(demand, beds, 24, 12.0)
+        assert 1.0 - low < curve.turn_away_probability[place] / share < 1.0 + high
+        assert 0.98 < curve.waits.mean_hours[place] / mean_hours < 1.3
+        assert 0.95 < curve.waits.share_over(12.0)[place] / longer < 1.3
+    assert any("rhythm of weekdays" in note for note in curve.notes) is (kind != "mild")
+
+
+def test_short_stays_and_hours_against_the_exact_chain() -> None:
+    """Stays of a day, a strong week and hours of the day: who waits within a tenth, the mean wait up to a half too long."""
+    hours = (0.4,) * 8 + (1.6,) * 12 + (0.4,) * 4
+    demand = Demand(40.0, LengthOfStay(1.0, 1.0, "gamma"), weekday_factors=STRONG, hour_factors=hours)
+    curve = waiting(demand, (45, 59))
+    for place, beds in enumerate((45, 59)):
+        share, mean_hours, longer = exact_week(demand, beds, 4, 4.0)
+        assert 0.90 < curve.turn_away_probability[place] / share < 1.10
+        assert 0.98 < curve.waits.mean_hours[place] / mean_hours < 1.5
+        assert curve.waits.share_over(4.0)[place] > 6.0 / 7.0 * longer
 
 
 def test_booked_lists_wait_too() -> None:
