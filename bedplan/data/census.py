@@ -130,14 +130,20 @@ def read_census(
     """
     file = open_source(source, name)
     text = read_table(file, CENSUS_HEADINGS, columns)
-    if not {"date", "ward", "occupied"} <= set(text.columns):
+    if _lacks(text):
         text = read_wide(file, CENSUS_HEADINGS, columns) or text
-    missing = [key for key in ("date", "ward", "occupied") if key not in text.columns]
+    missing = _lacks(text)
     if missing:
         text.refuse_kinds(file.name, "a census", *(kind for kind in TELLTALES if kind != "a census"))
         wanted = "date, ward and occupied, or date and one for each ward"
         raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a census has columns {wanted}."])
     return _census(text, file.name, date_order, zeros_are_real)
+
+
+def _lacks(text: TextTable) -> list[str]:
+    """Return what is missing of a census; a column of times may hold the dates too."""
+    found = {*text.columns, *(("date",) if "time" in text.columns else ())}
+    return [key for key in ("date", "ward", "occupied") if key not in found]
 
 
 def _census(text: TextTable, name: str, date_order: str | None, zeros_are_real: bool) -> Census:
@@ -217,7 +223,7 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
 def _notes(kept: pd.DataFrame) -> list[str]:
     """Return what was taken for granted."""
     notes = []
-    shut = int((kept["closed"] > 0).sum())
+    shut = int(((kept["closed"] > 0) & (kept["available"] >= 0)).sum())
     if shut:
         notes.append(
             f"{'1 row names' if shut == 1 else f'{shut:,} rows name'} closed beds: the available ones are taken to be without them."

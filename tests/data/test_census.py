@@ -193,6 +193,13 @@ def test_a_time_nobody_can_read_is_set_aside(clock: str) -> None:
     assert dict(census.report.reasons) == {"The time of day can't be read": 1}
 
 
+def test_times_may_hold_the_dates() -> None:
+    """One column of moments is enough, whatever it is called."""
+    census = read_census(b"time,ward,occupied\n2024-01-01 08:00,Teal,5\n2024-01-02 08:00,Teal,6\n")
+
+    assert census.occupied("Teal", "08:00").tolist() == [5, 6]
+
+
 def test_a_ward_whose_name_begins_like_a_total_is_kept() -> None:
     """Summerfield is no sum."""
     assert read_census(b"date,ward,occupied\n2024-01-01,Summerfield,5\n2024-01-01,Sum,6\n").wards == ("Summerfield",)
