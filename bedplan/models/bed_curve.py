@@ -76,6 +76,16 @@ class BedPoint:
         return int(np.argmin(self.by_month))
 
 
+def _of_hours(share_over: Callable[[float], NDArray[np.float64]]) -> Callable[[float], NDArray[np.float64]]:
+    """Return the same question, refusing waits that are none."""
+
+    def checked(hours: float) -> NDArray[np.float64]:
+        """Return the share waiting longer than so many hours."""
+        return share_over(number("A wait of {} hours", hours, (0.0, 1e9), "it is 0 or more"))
+
+    return checked
+
+
 @dataclass(frozen=True, slots=True)
 class Waits:
     """How long patients wait, for the bed counts of a curve whose patients wait.
@@ -87,6 +97,11 @@ class Waits:
     mean_hours: NDArray[np.float64]
     share_over: Callable[[float], NDArray[np.float64]]
     share_over_by_month: Callable[[float], NDArray[np.float64]]
+
+    def __post_init__(self) -> None:
+        """Have every wait that is asked about checked."""
+        for name in ("share_over", "share_over_by_month"):
+            object.__setattr__(self, name, _of_hours(getattr(self, name)))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -78,6 +78,24 @@ def all_of_kind(values: object, kind: type, wanted: str) -> tuple[object, ...]:
     return found
 
 
+def array_of(said: str, values: object, limits: tuple[float, float], allowed: str) -> np.ndarray:
+    """Which numbers are these? Any shape with at least one; as :func:`number` for each.
+
+    Checked by: tests/models/test_figures.py
+    """
+    try:
+        given = np.asarray(values)
+    except ValueError:
+        given = np.zeros(0, dtype=object)
+    if given.size == 0 or given.dtype.kind not in "iuf":
+        raise ImpossibleFigure(f"{said.format(quoted(values))} is not possible: {allowed}.")
+    found = given.astype(float)
+    bad = ~(np.isfinite(found) & (found >= limits[0]) & (found <= limits[1]))
+    if bad.any():
+        raise ImpossibleFigure(f"{said.format(quoted(float(found[bad][0])))} is not possible: {allowed}.")
+    return found
+
+
 def days_given(said: str, values: object) -> np.ndarray:
     """Which days of a stay were asked about? Any shape; before a stay begins reads as its beginning.
 

@@ -12,7 +12,9 @@ import numpy as np
 from scipy import special
 
 from bedplan.errors import ImpossibleFigure
+from bedplan.models.bed_curve import MOST_BEDS
 from bedplan.models.erlang import erlang_b, erlang_b_log
+from bedplan.models.figures import ABOVE_ZERO, array_of, number
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
@@ -38,6 +40,7 @@ class Patience:
 
     def share_waiting_over(self, stays: float) -> Array:
         """Which share of everyone waits longer than this many mean stays, for a bed or until giving up?"""
+        stays = number("A wait of {} mean stays", stays, (0.0, 1e12), "it is 0 or more")
         left = np.exp(-stays / self._patience_stays)
         x, y = self._beds_at_stake, self._patients_at_stake
         whole = special.gammainc(x, y)
@@ -70,12 +73,16 @@ def erlang_a(offered_load: ArrayLike, beds: ArrayLike, patience_stays: ArrayLike
     Source: Palm 1957; Garnett, Mandelbaum & Reiman 2002, Manufacturing & Service Operations Management 4.
     Checked by: tests/models/test_waiting.py
     """
-    load, count, patience = np.broadcast_arrays(
-        *(np.asarray(figure, dtype=float) for figure in (offered_load, beds, patience_stays))
+    figures = (
+        array_of("An offered load of {} beds", offered_load, (0.0, 1e6), "it is 0 or more"),
+        array_of("{} beds", beds, (0.0, MOST_BEDS), f"give 0 to {MOST_BEDS:,}"),
+        array_of("A patience of {} mean stays", patience_stays, (ABOVE_ZERO, 1e12), "it is above 0"),
     )
-    bad = ~((patience > 0) & np.isfinite(patience))
-    if bad.any():
-        raise ImpossibleFigure(f"A patience of {patience[bad].flat[0]:g} mean stays is not possible: it is above 0.")
+    try:
+        load, count, patience = np.broadcast_arrays(*figures)
+    except ValueError:
+        shapes = ", ".join(str(one.shape) for one in figures)
+        raise ImpossibleFigure(f"Loads, beds and patience of the shapes {shapes} don't go together.") from None
     is_ward = (load > 0) & (count > 0)
     a, c = np.where(is_ward, load, 1.0), np.where(is_ward, count, 1.0)
     longer, log_blocked = _log_full_longer(c * patience, a * patience), erlang_b_log(a, c)

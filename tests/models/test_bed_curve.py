@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models import BedCurve, Demand, LengthOfStay, bed_counts
+from bedplan.models import BedCurve, Demand, LengthOfStay, Waits, bed_counts
 
 
 def curve(beds: list[int]) -> BedCurve:
@@ -81,3 +81,14 @@ def test_a_curve_can_not_be_changed(name: str) -> None:
     """Pages, documents and caches share one curve, so writing into its arrays fails."""
     with pytest.raises(ValueError, match="read-only"):
         getattr(curve([4, 6, 9]), name)[0] = 0
+
+
+@pytest.mark.parametrize("hours", [-1.0, math.nan, math.inf, None, "4", [4.0]])
+def test_a_wait_is_a_number_of_hours(hours: object) -> None:
+    """Waits below 0, without end, missing or written as text are quoted, for the year and by month."""
+    waits = Waits(np.zeros(2), lambda over: np.full(2, over), lambda over: np.full((12, 2), over))
+
+    assert waits.share_over(4).tolist() == [4.0, 4.0]
+    for ask in (waits.share_over, waits.share_over_by_month):
+        with pytest.raises(ImpossibleFigure, match=r"A wait of .* hours is not possible: it is 0 or more"):
+            ask(hours)

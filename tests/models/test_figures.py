@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models.figures import ABOVE_ZERO, all_of_kind, days_given, listed, number, quoted, whole
+from bedplan.models.figures import ABOVE_ZERO, all_of_kind, array_of, days_given, listed, number, quoted, whole
 
 
 @pytest.mark.parametrize("value", [4, 4.0, np.float64(4), np.float32(4), np.int8(4), Fraction(4)])
@@ -61,6 +61,21 @@ def test_lists_come_back_as_tuples_of_their_kind() -> None:
     assert all_of_kind(["a", "b"], str, "") == ("a", "b")
     with pytest.raises(ImpossibleFigure, match="Names are texts, but 3 was given"):
         all_of_kind(["a", 3], str, "Names are texts")
+
+
+def test_arrays_of_figures() -> None:
+    """Whole numbers and floats of any shape pass; one figure too large, text, nothing and no figure at all are quoted."""
+    assert array_of("{} beds", [[1, 2.5]], (0.0, 9.0), "some").tolist() == [[1.0, 2.5]]
+    for bad, says in (
+        (10, "10"),
+        ([1, math.nan], "nan"),
+        ("4", "'4'"),
+        (None, "None"),
+        ([], r"\[\]"),
+        ([[1], [1, 2]], r"\[\[1"),
+    ):
+        with pytest.raises(ImpossibleFigure, match=rf"^{says}.* beds is not possible: give 0 to 9\."):
+            array_of("{} beds", bad, (0.0, 9.0), "give 0 to 9")
 
 
 def test_days_asked_about() -> None:
