@@ -206,7 +206,7 @@ def _notes(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> tuple[str,
             "and the mean wait up to a quarter too long."
         )
     weeks = wanted.reshape(_weeks(load), -1)
-    if np.median(np.ptp(weeks, axis=1) / np.sqrt(weeks.mean(axis=1))) > _SWINGS:
+    if np.median(np.ptp(weeks, axis=1) / np.sqrt(np.maximum(weeks.mean(axis=1), 1e-9))) > _SWINGS:
         notes.append(
             "With a rhythm of weekdays or hours the share who wait may be up to a tenth of it off, with very uneven stays up "
             "to a seventh too low, with very even ones up to a fifth too high. The mean wait may be up to a fifth too long, "

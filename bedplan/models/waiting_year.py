@@ -201,8 +201,10 @@ def _settled(columns: _Columns, wanted: Array, share: float) -> Array:
         some, asked, here = columns.only(left), wanted[:, left], present[:, left]
         in_use, slope = some.in_use(here)
         queue = here - asked
-        missing = queue + share * (asked - in_use) - np.roll(queue, -1, axis=0)
-        change = np.maximum(_comes_back(1.0 - share * slope, missing), -queue)
+        # stays shorter than a step: within it the queue nears what the load keeps waiting, and never swings past it
+        gives = share if share <= 1.0 else -np.expm1(-share * slope) / np.maximum(slope, 1e-12)
+        missing = queue + gives * (asked - in_use) - np.roll(queue, -1, axis=0)
+        change = np.maximum(_comes_back(1.0 - gives * slope, missing), -queue)
         present[:, left] = np.minimum(here + change, _LONGEST_QUEUE)
         left = left[np.abs(change).max(axis=0) > _SETTLED * some.beds]
     return present

@@ -374,6 +374,19 @@ def test_a_queue_that_takes_lifetimes_to_settle(use: float) -> None:
     assert days[:, 0] == pytest.approx(4.0 / (30.0 * (1.0 - use)), rel=1e-2)
 
 
+def test_stays_of_seconds_and_months_without_anybody() -> None:
+    """Stays of seconds leave each hour's own delay share; half a year without patients lets nobody wait in it."""
+    rates = (0.0,) * 8 + (2.4,) * 10 + (0.0,) * 6
+    short = waiting(Demand(1000.0, LengthOfStay(1e-4, 1.0, "gamma"), hour_factors=rates), [1, 2])
+    assert short.turn_away_probability == pytest.approx(erlang_c(0.24, [1, 2]), rel=0.01)
+
+    half = waiting(Demand(3.0, EXPONENTIAL, month_factors=(0.0,) * 6 + (2.0,) * 6), [30, 35])
+    assert not half.by_month[:6].any()
+    # July to December have 183 of the 364 days
+    load = 12.0 * 364 / 183
+    assert half.by_month[8] == pytest.approx(erlang_c(load, [30, 35]), rel=0.01)
+
+
 def test_a_very_quiet_ward() -> None:
     """A patient every three years, more in winter, uses a bed four thousandths of the time and seldom finds it taken."""
     curve = waiting(Demand(0.001, EXPONENTIAL, month_factors=WINTER), [1, 2])
