@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+import itertools
 import json
 from typing import TYPE_CHECKING
 
@@ -240,3 +241,20 @@ def test_a_ward_that_hosts_others_is_warned_of(demo_data: Path, ward: str, warne
 
     assert found.takes_away is warned
     assert (start.notes[0] == wording.GUESTS_OUT) is warned
+
+
+def test_growth_starts_from_bed_days_not_heads(demo_data: Path) -> None:
+    """Where later days of a stay grow faster than admissions, the slider's trend is that of beds: bed-days of each year."""
+    records = read_records(demo_data / "stays.csv")
+    start = from_estimate(estimate_demand(records, "Heron"), 30)
+    stays = records.of_ward("Heron")
+    first, last = records.window
+    years = [first + (last - first) * part for part in (0.0, 1 / 3, 2 / 3, 1.0)]
+    ends = stays["end"].fillna(last)
+    used = [
+        (ends.clip(upper=end) - stays["start"].clip(lower=begin)).dt.total_seconds().clip(lower=0).sum()
+        for begin, end in itertools.pairwise(years)
+    ]
+
+    assert start.growth_per_year == pytest.approx((used[2] / used[0]) ** 0.5 - 1.0, abs=0.02)
+    assert start.growth_per_year > start.admissions_growth_per_year + 0.01

@@ -30,7 +30,7 @@ SLIDERS: Mapping[str, tuple[str, int, int, int, int, str]] = {
     "stay": ("Mean stay", -50, 100, 0, 1, "%+d %%"),
     "spread": ("Spread of stay", -75, 150, 0, 5, "%+d %%"),
     "peak": ("Winter peak", 0, 250, 100, 5, "%d %% of recorded"),
-    "growth": ("Growth to next year", -10, 20, 0, 1, "%+d %%"),
+    "growth": ("Growth of bed-days to next year", -10, 20, 0, 1, "%+d %%"),
 }
 LIMIT = ("Limit", 1, 20, 5, 1, "%d %%")
 # what a limit watches on a ward whose patients wait: key -> (label, the rule it makes)

@@ -14,6 +14,7 @@ from bedplan.pages import controls, loaded, typed
 
 if TYPE_CHECKING:
     from bedplan.export import WardCase
+    from bedplan.plan import Baseline
 
 SIMULATED = {
     "leaves": "Simulated patients who find no bed leave.",
@@ -43,9 +44,18 @@ def slider_label(key: str, name: str) -> str:
         "stay": wording.days(stay.mean_days * (1 + value)),
         "spread": f"SD is {stay.variation * (1 + value):.2f} × the mean",
         "peak": _peak_text(base.demand.month_factors, value),
-        "growth": f"recorded trend {wording.signed_percent(base.growth_per_year)} a year",
+        "growth": _growth_text(base),
     }
     return f"{title}: {now[key]}"
+
+
+def _growth_text(base: Baseline) -> str:
+    if not base.admissions_growth_per_year and not base.growth_per_year:
+        return "none known"
+    return (
+        f"recorded {wording.signed_percent(base.growth_per_year)} a year, "
+        f"of admissions {wording.signed_percent(base.admissions_growth_per_year)}"
+    )
 
 
 def _peak_text(factors: tuple[float, ...], size: float) -> str:

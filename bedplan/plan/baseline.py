@@ -22,7 +22,8 @@ class Baseline:
     """Where every slider of one ward starts: the demand its records (or typed totals) show, and today's beds.
 
     ``facts`` are (what, value, where from) rows for the assumptions table; ``notes`` whole sentences; ``origin`` where the figures
-    come from, where that is not the records file.
+    come from, where that is not the records file. ``growth_per_year``: of bed-days, which is what beds follow;
+    ``admissions_growth_per_year``: of heads.
 
     Raises:
         ImpossibleFigure: beds not whole or outside 0–2,000.
@@ -33,6 +34,7 @@ class Baseline:
     admissions_per_year: float
     beds: int
     growth_per_year: float = 0.0
+    admissions_growth_per_year: float = 0.0
     facts: tuple[tuple[str, str, str], ...] = ()
     notes: tuple[str, ...] = ()
     origin: str = ""
@@ -63,7 +65,7 @@ class Changes:
             ("Mean stay, against the records", wording.signed_percent(self.stay)),
             ("Spread of stay, against the records", wording.signed_percent(self.spread)),
             ("Size of the winter peak, against the records", wording.percent(self.peak)),
-            ("Growth to the planned year", wording.signed_percent(self.growth)),
+            ("Growth of bed-days to the planned year", wording.signed_percent(self.growth)),
         )
 
 
@@ -135,7 +137,8 @@ def from_estimate(estimate: DemandEstimate, beds: int | None, hidden: HiddenDema
         demand=estimate.demand,
         admissions_per_year=estimate.admissions_per_year,
         beds=start,
-        growth_per_year=estimate.growth_per_year,
+        growth_per_year=estimate.bed_days_growth_per_year,
+        admissions_growth_per_year=estimate.growth_per_year,
         facts=_facts(estimate),
         notes=(*guests, *estimate.notes, *((unknown,) if beds is None else ())),
     )
@@ -159,7 +162,16 @@ def _facts(estimate: DemandEstimate) -> tuple[tuple[str, str, str], ...]:
             "patients a day × mean stay",
         ),
         ("Busiest month", peak, "admissions by month, all years"),
-        ("Growth in the records", f"{wording.signed_percent(estimate.growth_per_year)} a year", "trend over the file"),
+        (
+            "Growth of bed-days in the records",
+            f"{wording.signed_percent(estimate.bed_days_growth_per_year)} a year",
+            "trend over the file, by how long patients have been in",
+        ),
+        (
+            "Growth of admissions in the records",
+            f"{wording.signed_percent(estimate.growth_per_year)} a year",
+            "trend over the file; more short stays need few beds",
+        ),
         (
             "Swing of daily arrivals (variance ÷ mean)",
             f"{demand.clustering:.2f}",
