@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import pandas as pd
 
 from bedplan.data.carried_load import load_behind
 from bedplan.data.evidence import NINETY, DemandMethod, Evidence, Range
-from bedplan.data.open_time import RUSH
+from bedplan.data.open_time import RUSH, OpenTime
 from bedplan.data.patients import beds_used, started
 from bedplan.errors import ImpossibleFigure
-from bedplan.wording import percent
+from bedplan.wording import beds_text, percent
 
 if TYPE_CHECKING:
     from bedplan.data.logs import EventLog
@@ -25,6 +26,9 @@ LIST, SPECIALTY, OPEN_TIME, CARRIED = (
 LEAST_SHARE_ELSEWHERE = 0.01  # of its patients' beds: below, they don't matter
 MOST_WAITING = 0.05  # of own patients who lay on another ward first or instead, from which they queue; no source
 MOSTLY = 0.5
+LEAST_TO_TELL = (
+    0.1  # of all time with a free bed: with less, free hours don't even tell what there was at most; no source
+)
 LEAST_SLOPE = 0.15  # beds in use gained for each bed more wanted; below, a ward is too full to tell
 NOTABLE = 0.02  # of the time, by which a formula may miss the hours that a ward was full before it is said
 SILENCE = 10.0  # usual gaps between a list's entries, from which it was not kept (by chance: 1 in 20,000)
@@ -152,8 +156,11 @@ def by_open_time(evidence: Evidence) -> DemandMethod:
         reason = "The file has dates without times, so the hours with a free bed are not known."
     elif not reason and not opening.can_tell:
         reason = f"In some hour of the week or month a bed was free only {percent(opening.least_open)} of the time: too little."
-    if reason:
-        return not_used(OPEN_TIME, reason)
+    return not_used(OPEN_TIME, reason) if reason else _open_time(evidence, opening)
+
+
+def _open_time(evidence: Evidence, opening: OpenTime) -> DemandMethod:
+    """Return what free hours tell."""
     others = evidence.moved_in_per_day + evidence.elsewhere_per_day
     added = f"; {others:.2f} a day who came from other wards of the hospital are added" if others else ""
     reason = (
@@ -166,11 +173,13 @@ def by_open_time(evidence: Evidence) -> DemandMethod:
 
 def by_carried_load(evidence: Evidence) -> DemandMethod:
     """How many wanted a bed, by the beds in use and the formula for a ward whose patients leave when it is full?"""
-    records, reason = evidence.own.records, why_not_loss(evidence)
-    if reason:
-        return not_used(CARRIED, reason)
-    in_use = beds_used(records, evidence.on_ward)
-    beds = evidence.capacity.open_beds_by_day(evidence.own.ward, records.calendar[records.counted_days])
+    reason = why_not_loss(evidence)
+    return not_used(CARRIED, reason) if reason else _carried_load(evidence)
+
+
+def _carried_load(evidence: Evidence) -> DemandMethod:
+    """Return what beds in use tell, if patients go elsewhere at once when the ward is full."""
+    in_use, beds = beds_used(evidence.own.records, evidence.on_ward), evidence.beds
     told = f"{in_use:.1f} of {beds.mean():.1f} beds were in use on average"
     try:
         load, slope = load_behind(in_use, beds)
@@ -193,12 +202,40 @@ def by_carried_load(evidence: Evidence) -> DemandMethod:
     return evidence.found(CARRIED, told, not_given, chance + by_use**2 + misfit**2)
 
 
+def most_by_beds(evidence: Evidence) -> DemandMethod | None:
+    """How many may have wanted a bed at most, by free hours or beds in use where these were refused as too uncertain?
+
+    Where stated beds were hardly ever used: at the level of beds that was. Where patients queue: those who came while
+    a bed was free, some of whom may have waited for it. None where neither can be told: no bed is known, most patients
+    come by list, or the ward was hardly ever open.
+    """
+    if evidence.capacity is None or evidence.booked_share > MOSTLY:
+        return None
+    level = replace(evidence, fewer_beds=evidence.never_used)
+    if level.direct is None:
+        return next((method for method in (_carried_load(level),) if method.used), None)
+    return _open_time(level, level.direct) if level.direct.share_full <= 1 - LEAST_TO_TELL else None
+
+
+def wall_text(evidence: Evidence) -> str:
+    """Say that stated beds were hardly ever used though the ward was often as full as it got; nothing where they were."""
+    if not evidence.never_used:
+        return ""
+    most, ward, fewer = int(evidence.beds.max()), evidence.own.ward, evidence.never_used
+    return (
+        f"Hardly ever were more than {most - fewer} patients on {ward}, though {beds_text(most)} are stated as staffed and "
+        f"it often had {most - fewer}: {'one of them seems' if fewer == 1 else f'{fewer} of them seem'} not to be there, or to be kept free."
+    )
+
+
 def why_not_loss(evidence: Evidence) -> str:
     """Why can't demand be read from free and full hours here? Nothing where it can: patients then go elsewhere at once."""
     if evidence.capacity is None:
         return "The beds of each day are not known: bring a file of beds by ward and date."
     if evidence.booked_share > MOSTLY:
         return f"{percent(evidence.booked_share)} of its patients are booked: they come by list, not by chance."
+    if evidence.never_used:
+        return f"{wall_text(evidence)} When the ward was full is not known until that is checked."
     own, rush, moved = evidence.own, evidence.rush, evidence.moved_in_per_day / max(evidence.had_a_bed_per_day, 1e-9)
     told, rushed = "", rush is None or rush >= RUSH
     if own.waiting_share > MOST_WAITING:

@@ -56,6 +56,13 @@ def _arrival_notes(records: Records, arrivals: Arrivals) -> list[str]:
         )
     elif not arrivals.rhythm.has_season:
         notes.append(f"Only {days:,} days of the file count: too few to tell the seasons, so none is assumed.")
+    drift = arrivals.swing.rate_variation
+    if drift:
+        notes.append(
+            f"Beyond season and growth arrivals drift by about {percent(drift)} (SD ÷ mean). If it errs, this is too low, "
+            "towards too few beds: season and growth take up a part of a slow drift, in made wards a tenth where it lasts "
+            "two months, a quarter where it lasts half a year or longer."
+        )
     if records.period_note:
         notes.append(records.period_note)
     if records.excluded:

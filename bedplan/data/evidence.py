@@ -7,13 +7,19 @@ from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from bedplan.data.arrivals import arrivals_of, is_booked
+from bedplan.data.carried_load import beds_below_wall
+from bedplan.data.dates import DAY_SECONDS
+from bedplan.data.occupancy import open_beds, present
 from bedplan.data.open_time import OpenTime, WardMinutes, ward_minutes, watch_open_time
 from bedplan.data.patients import OwnPatients, beds_used, counted_days, started
 from bedplan.data.stays import stay_curve
 
 if TYPE_CHECKING:
     import pandas as pd
+    from numpy.typing import NDArray
 
     from bedplan.data.capacity import Capacity
 
@@ -41,6 +47,7 @@ class Evidence:
 
     ``direct_per_day`` came from outside the hospital, ``moved_in_per_day`` from another of its wards,
     ``elsewhere_per_day`` lay on other wards only; ``beds_here`` and ``beds_elsewhere`` they used on average.
+    ``fewer_beds``: so many of the stated beds are taken not to be there.
     """
 
     own: OwnPatients
@@ -53,6 +60,7 @@ class Evidence:
     beds_here: float
     beds_elsewhere: float
     booked_share: float
+    fewer_beds: int = 0
 
     @property
     def had_a_bed_per_day(self) -> float:
@@ -84,7 +92,26 @@ class Evidence:
         """When was the ward full? None without beds by date, or without times of day."""
         if self.capacity is None or not self.own.records.has_times:
             return None
-        return ward_minutes(self.own.records, self.on_ward, self.own.ward, self.capacity)
+        return ward_minutes(self.own.records, self.on_ward, self.own.ward, self.capacity, self.fewer_beds)
+
+    @cached_property
+    def beds(self) -> NDArray[np.int64] | None:
+        """How many beds were open on each day that counts? None without beds by date."""
+        if self.capacity is None:
+            return None
+        beds = open_beds(self.own.records, self.own.ward, self.capacity, 1)[self.own.records.counted_days]
+        return np.maximum(beds - self.fewer_beds, 0)
+
+    @cached_property
+    def never_used(self) -> int:
+        """How many of the stated beds were hardly ever used, though the ward was often as full as it could be?"""
+        if self.beds is None or self.fewer_beds:
+            return 0
+        records = self.own.records
+        step, a_day = (60, 1_440) if records.has_times else (DAY_SECONDS, 1)
+        free = open_beds(records, self.own.ward, self.capacity, a_day) - present(records, self.on_ward, step)
+        share = np.bincount(np.maximum(free[np.repeat(records.counted_days, a_day)], 0)) / (self.days * a_day)
+        return beds_below_wall(share, self.beds, beds_used(records, self.on_ward), self.days / self.mean_stay_days)
 
     @cached_property
     def direct(self) -> OpenTime | None:

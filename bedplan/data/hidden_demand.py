@@ -17,7 +17,9 @@ from bedplan.data.demand_methods import (
     by_specialty,
     list_and,
     listed_per_day,
+    most_by_beds,
     share_text,
+    wall_text,
 )
 from bedplan.data.evidence import NINETY, DemandMethod, Evidence, Range, gather
 from bedplan.data.patients import beds_used, own_patients, started
@@ -141,7 +143,8 @@ def hidden_demand(
     )
     used = {name: method for name in BEST_FIRST for method in methods if method.name == name and method.used}
     followed = next(iter(used.values()), None) or evidence.found(RECORDED, "")
-    shown = list(used.values()) or [followed]
+    most = _at_most(evidence, followed)
+    shown = [*(list(used.values()) or [followed]), *([most] if most else [])]
     return HiddenDemand(
         ward=ward,
         method=followed.name,
@@ -152,7 +155,8 @@ def hidden_demand(
         spread=(min(one.interval[0] for one in shown), max(one.interval[1] for one in shown)),
         beds_spread=(min(one.beds_interval[0] for one in shown), max(one.beds_interval[1] for one in shown)),
         notes=(
-            *_notes(evidence, can_tell=bool(used)),
+            *_notes(evidence, followed),
+            *_range_notes(evidence, most),
             *(note for log in logs for note in log.notes_on(ward)),
             *_listed_too_few(evidence, logs, share, used),
         ),
@@ -185,7 +189,27 @@ def _steps(evidence: Evidence, followed: DemandMethod) -> tuple[DemandStep, ...]
     return tuple(step for place, step in enumerate(steps) if place == 0 or step.beds or step.patients_per_day)
 
 
-def _notes(evidence: Evidence, *, can_tell: bool) -> list[str]:
+def _at_most(evidence: Evidence, followed: DemandMethod) -> DemandMethod | None:
+    """Return what the range must reach up to, where the method followed sees nobody who went elsewhere."""
+    blind = followed.name == RECORDED or (followed.name == SPECIALTY and evidence.never_used)
+    return most_by_beds(evidence) if blind else None
+
+
+def _range_notes(evidence: Evidence, most: DemandMethod | None) -> list[str]:
+    """Say what to check in the file of beds, and why the range reaches up."""
+    notes, wall = [], wall_text(evidence)
+    if wall:
+        notes.append(f"{wall} Check the file of beds: every bed too many hides patients who found the ward full.")
+    if most:
+        as_if = (
+            "with the beds that were used" if wall else "if none of those who came while one was free had waited for it"
+        )
+        high = f"{most.patients_per_day:.2f} patients a day, at most {most.interval[1]:.2f}"
+        notes.append(f"The range reaches up to what {most.name} would give {as_if}: {high}.")
+    return notes
+
+
+def _notes(evidence: Evidence, followed: DemandMethod) -> list[str]:
     """Return what belongs beside the answer."""
     own, records = evidence.own, evidence.own.records
     notes = [f"Averages over the {evidence.days:,} days of the file that count, not the latest year alone."]
@@ -208,7 +232,12 @@ def _notes(evidence: Evidence, *, can_tell: bool) -> list[str]:
         notes.append(
             "No patient has two stays in the file, so those on their way to or from the ward can't be told apart."
         )
-    if not can_tell:
+    if followed.name == SPECIALTY:
+        notes.append(
+            "Patients who found a bed on none of these wards, and went to another hospital or home, are not in the "
+            "file: demand may be higher."
+        )
+    if followed.name == RECORDED:
         notes.append(
             "These files can't tell how many could not be given a bed: those who waited and then came in are in the "
             "records, those who went elsewhere are not, so demand may be higher."

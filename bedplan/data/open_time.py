@@ -90,9 +90,12 @@ def _moments(times: pd.Series, first_second: int, minutes: int) -> NDArray[np.in
     return inside[(inside > 0) & (inside < minutes)]
 
 
-def ward_minutes(records: Records, on_ward: pd.DataFrame, ward: str, capacity: Capacity) -> WardMinutes:
-    """When was this ward full, and when had it had a free bed for four hours? ``on_ward``: all stays on it."""
-    is_full = present(records, on_ward, 60) >= open_beds(records, ward, capacity, DAY_MINUTES)
+def ward_minutes(records: Records, on_ward: pd.DataFrame, ward: str, capacity: Capacity, fewer: int = 0) -> WardMinutes:
+    """When was this ward full, and when had it had a free bed for four hours? ``on_ward``: all stays on it.
+
+    ``fewer``: so many of its stated beds are taken not to be there.
+    """
+    is_full = present(records, on_ward, 60) >= open_beds(records, ward, capacity, DAY_MINUTES) - fewer
     minute = np.arange(is_full.size, dtype=np.int32)
     last_full = np.maximum.accumulate(np.where(is_full, minute, np.int32(-SETTLING_MINUTES - 1)))
     counts = records.counted_days
@@ -134,25 +137,33 @@ def watch_open_time(minutes: WardMinutes, asking: pd.DataFrame) -> OpenTime:
         per_day=float(by_hour.sum() / days),
         error=float(np.sqrt((by_hour**2 / seen).sum()) / days),
         share_full=float(minutes.is_full[minutes.cell >= 0].mean()),
-        least_open=min(_least_share(open_time, all_time, axis) for axis in (0, 1)),
+        least_open=min(float(_open_shares(open_time, all_time, axis).min()) for axis in (0, 1)),
         taken=taken,
         taken_usually=usually,
     )
 
 
 def _rates(came: NDArray[np.int64], open_time: NDArray[np.int64], all_time: NDArray[np.int64]) -> NDArray[np.float64]:
-    """Return patients a minute for each hour of the week and month (168, 12): an hour's rate × a month's factor."""
+    """Return patients a minute for each hour of the week and month (168, 12): an hour's rate × a month's factor.
+
+    An hour or month with hardly any open time is taken to be as busy as the busiest of the others.
+    """
+    told = [_open_shares(open_time, all_time, axis) >= LEAST_OPEN for axis in (0, 1)]
     month = (all_time.sum(axis=0) > 0).astype(float)
     for _ in range(ROUNDS):
         hour = came.sum(axis=1) / np.maximum(open_time @ month, 1e-9)
         month = came.sum(axis=0) / np.maximum(hour @ open_time, 1e-9)
+    month, hour = (
+        np.where(known | ~known.any(), factors, factors[known].max(initial=0.0))
+        for known, factors in zip(told, (month, hour), strict=True)
+    )
     return hour[:, None] * month
 
 
-def _least_share(part: NDArray[np.int64], whole: NDArray[np.int64], axis: int) -> float:
-    """Return the smallest share of part in whole over the hours (axis 1) or months (axis 0) that the file has."""
-    some = whole.sum(axis=axis) > 0
-    return float((part.sum(axis=axis)[some] / whole.sum(axis=axis)[some]).min())
+def _open_shares(part: NDArray[np.int64], whole: NDArray[np.int64], axis: int) -> NDArray[np.float64]:
+    """Return the share of part in whole for the months (axis 0) or hours (axis 1); 1 for those that the file lacks."""
+    seen = whole.sum(axis=axis)
+    return np.where(seen > 0, part.sum(axis=axis) / np.maximum(seen, 1), 1.0)
 
 
 def _after_full(minutes: WardMinutes, asked: NDArray[np.int64], rates: NDArray[np.float64]) -> tuple[int, float]:

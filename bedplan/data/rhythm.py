@@ -110,7 +110,8 @@ class Swing:
     """How far arrivals swing around their rhythm, fast and slow.
 
     ``clustering``: variance ÷ mean of daily arrivals after a 28-day moving level is taken out, and its standard
-    error. ``rate_variation``: SD ÷ mean of the 28-day level itself beyond chance; None where it can't be measured.
+    error. ``rate_variation``: SD ÷ mean of the 28-day level itself beyond chance; None where it can't be measured. It
+    is too low where the drift is slow: season and growth, fitted to the same days, take up a part of it.
     ``dispersion``: variance ÷ mean of 28-day totals, what an interval for the yearly rate needs.
     """
 

@@ -23,8 +23,8 @@ MINUTES_A_DAY = 1_440
 class MadeWard:
     """Poisson arrivals with season, weekday and growth; lognormal stays. ``jump`` multiplies arrivals of the last year.
 
-    ``beds``: patients who find that many taken leave, or wait in turn outside (``waits``). ``stays_grow``: a share by
-    which stays lengthen each year.
+    ``beds``: patients who find that many taken leave, or wait in turn outside (``waits``: a share of them);
+    ``handover_days`` pass before a freed bed is theirs. ``stays_grow``: a share by which stays lengthen each year.
     """
 
     per_day: float
@@ -35,7 +35,8 @@ class MadeWard:
     jump: float = 1.0
     stays_grow: float = 0.0
     beds: int | None = None
-    waits: bool = False
+    waits: float = 0.0
+    handover_days: float = 0.0
 
     def rates(self) -> np.ndarray:
         """Return the true arrivals a day, from the start of the run-in."""
@@ -53,7 +54,10 @@ def made_records(ward: MadeWard, seed: int, *, dates_only: bool = False) -> Reco
     sigma = math.sqrt(math.log1p(ward.variation**2))
     stay = rng.lognormal(math.log(ward.mean_days) - sigma**2 / 2, sigma, came.size)
     stay = stay * (1 + ward.stays_grow) ** (came / 365.25)
-    begin, end = (came, came + stay) if ward.beds is None else _in_beds(came, stay, ward.beds, waits=ward.waits)
+    begin, end = came, came + stay
+    if ward.beds is not None:
+        waits = rng.random(came.size) < ward.waits
+        begin, end = _in_beds(came, stay, waits, ward.beds, ward.handover_days)
     touching = (end >= 0) & (begin < ward.days)
     return as_records(begin[touching], end[touching], ward.days, dates_only=dates_only)
 
@@ -94,17 +98,19 @@ def with_beds(beds: int, days: int = 1_096) -> Capacity:
     return Capacity("capacity.csv", table, ("Heron",))
 
 
-def _in_beds(came: np.ndarray, stay: np.ndarray, beds: int, *, waits: bool) -> tuple[np.ndarray, np.ndarray]:
+def _in_beds(
+    came: np.ndarray, stay: np.ndarray, waits: np.ndarray, beds: int, handover_days: float
+) -> tuple[np.ndarray, np.ndarray]:
     """Return begins and ends of those who get a bed: at once, or, where they wait, when it is their turn."""
     leaving: list[float] = []
     kept = []
-    for moment, days in zip(came.tolist(), stay.tolist(), strict=True):
+    for moment, days, stands_by in zip(came.tolist(), stay.tolist(), waits.tolist(), strict=True):
         while leaving and leaving[0] <= moment:
             heapq.heappop(leaving)
         if len(leaving) < beds:
             begin = moment
-        elif waits:
-            begin = heapq.heappop(leaving)
+        elif stands_by:
+            begin = heapq.heappop(leaving) + handover_days
         else:
             continue
         heapq.heappush(leaving, begin + days)

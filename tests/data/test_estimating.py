@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -11,7 +12,7 @@ import pytest
 
 from bedplan.data import IntakeChoices, estimate_demand, read_capacity, read_records
 from bedplan.models import LengthOfStay
-from tests.data.made_wards import MadeWard, made_records
+from tests.data.made_wards import MadeWard, as_records, made_records
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -249,3 +250,17 @@ def test_a_short_file_has_no_growth_of_bed_days() -> None:
     found = estimate_demand(made_records(MadeWard(6.0, 5.0, 1.1, days=365), 1), "Heron")
 
     assert (found.growth_per_year, found.bed_days_growth_per_year, found.bed_days_growth_error) == (0.0, 0.0, 0.0)
+
+
+def test_a_drift_says_which_way_it_errs() -> None:
+    """A level that moves by 20 % each month is told, with the way the figure errs; a short file can't tell any."""
+    rng = np.random.default_rng(5)
+    level = np.repeat(np.exp(0.2 * rng.normal(size=40)), 28)[:1_096]
+    came = np.repeat(np.arange(1_096.0), rng.poisson(8.0 * level)) + 0.5
+    long = estimate_demand(as_records(came, came + 2.0, 1_096), "Heron")
+    short = estimate_demand(as_records(came[came < 200], came[came < 200] + 2.0, 200), "Heron")
+
+    (note,) = (note for note in long.notes if "drift by about" in note)
+    assert "too few beds" in note
+    assert 12 <= int(re.search(r"about (\d+)", note)[1]) <= 26
+    assert not any("drift by about" in note for note in short.notes)

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import datetime as dt
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
 import pytest
+from scipy import stats
 
 from bedplan.data import (
     IntakeChoices,
@@ -20,11 +22,12 @@ from bedplan.data import (
     read_records,
     read_refusals,
 )
-from bedplan.data.carried_load import load_behind
+from bedplan.data.carried_load import beds_below_wall, load_behind
 from bedplan.data.patients import own_patients
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay, erlang_b
 from demo_data.generate import DEMO_SEED, write_demo
+from tests.data.made_wards import RUN_IN_DAYS, MadeWard, made_records, with_beds
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -567,3 +570,85 @@ def test_an_estimate_can_be_raised_to_demand(larkmere: Records, beds: Capacity) 
     assert raised.admissions_per_year == plain.admissions_per_year
     assert found.method in raised.method
     assert plain.arrivals_per_day < low < raised.arrivals_per_day < high
+
+
+def _free(beds: int, load: float, stated: int) -> np.ndarray:
+    """Return the shares of time with 0, 1, 2, ... of the stated beds free in a ward whose patients leave when it is full.
+
+    Source: Erlang 1917, the Poisson shares cut off at the beds there are.
+    """
+    taken = stats.poisson.pmf(np.arange(beds + 1), load)
+    return np.concatenate((np.zeros(stated - beds), taken[::-1] / taken.sum()))
+
+
+@pytest.mark.parametrize("too_many", [0, 1, 2])
+def test_a_wall_below_the_stated_beds_is_found(too_many: int) -> None:
+    """Nineteen beds that twenty or more are stated for; none where the beds are stated right."""
+    free = _free(19, 20.0, 19 + too_many)
+    in_use = float(free @ (19 + too_many - np.arange(free.size)))
+
+    assert beds_below_wall(free, 19 + too_many, in_use, 250.0) == too_many
+
+
+def test_free_beds_alone_are_no_wall() -> None:
+    """A ward half empty, one that falls smoothly towards its last beds, and one seen for two stays have none."""
+    smooth = stats.norm.pdf(20 - np.arange(21), 15.0, 2.0)  # less spread than chance has: patients come by list
+
+    assert beds_below_wall(_free(40, 8.0, 40)[20:], 20, 8.0, 250.0) == 0
+    assert beds_below_wall(smooth / smooth.sum(), 20, 15.0, 250.0) == 0
+    assert beds_below_wall(_free(19, 20.0, 20), 20, 15.9, 2.0) == 0
+
+
+@pytest.mark.parametrize("too_many", [0, 1, 2])
+@pytest.mark.parametrize("dates_only", [False, True])
+def test_beds_stated_too_many_never_hide_demand(too_many: int, dates_only: bool) -> None:
+    """Where one or two beds too many are stated the methods that need them are refused, and the range holds the truth."""
+    ward = MadeWard(5.0, 4.0, 1.0, growth=0.0, beds=19)
+    truth = ward.rates()[RUN_IN_DAYS:].mean()
+    for seed in range(3):
+        records = made_records(ward, seed, dates_only=dates_only)
+        found = hidden_demand(records, "Heron", capacity=with_beds(19 + too_many))
+        told = [
+            note
+            for note in found.notes
+            if note.startswith(f"Hardly ever were more than 19 patients on Heron, though {19 + too_many} beds")
+        ]
+        assert bool(told) == found.methods[BY_FORMULA].reason.startswith("Hardly ever") == bool(too_many)
+        assert found.methods[BY_FORMULA].used == (not too_many)
+        assert found.spread[0] < truth < found.spread[1]
+        estimate = estimate_demand(records, "Heron", hidden=found)
+        assert estimate.uncertainty.beds_wanted[0] < truth * 4.0 < estimate.uncertainty.beds_wanted[1]
+
+
+def test_beds_stated_right_are_not_doubted() -> None:
+    """Wards that lose patients, that are queued for, or both, small and large, long and short: no bed is called unused."""
+    rng = np.random.default_rng(3)
+    for seed in range(24):
+        mean_days, per_day = float(rng.choice([1.5, 4.0, 8.0])), float(rng.uniform(0.5, 4.0))
+        beds = round(mean_days * per_day + rng.uniform(0.2, 2.0) * math.sqrt(mean_days * per_day)) + 1
+        ward = MadeWard(per_day, mean_days, 1.0, days=400, beds=beds, waits=seed % 3 / 2, handover_days=0.05)
+        found = hidden_demand(made_records(ward, seed), "Heron", capacity=with_beds(beds, 400))
+        assert not any("are stated as staffed" in note for note in found.notes)
+
+
+@pytest.mark.parametrize("waits", [0.6, 0.9])
+def test_where_some_wait_and_others_leave_the_range_reaches_up(waits: float) -> None:
+    """Some who find the ward full wait, the others are lost: recorded admissions are too few, the range holds the truth."""
+    ward = MadeWard(5.0, 4.0, 1.0, growth=0.0, beds=20, waits=waits)
+    truth = ward.rates()[RUN_IN_DAYS:].mean()
+    found = [hidden_demand(made_records(ward, seed), "Heron", capacity=with_beds(20)) for seed in range(5)]
+
+    for one in found:
+        assert one.method == "recorded admissions alone"
+        assert one.interval[1] < truth
+        assert any("The range reaches up" in note for note in one.notes)
+    # 95 chances in 100 each by its upper bound: fewer than 4 of 5 would come once in 44 times.
+    assert sum(one.spread[0] < truth < one.spread[1] for one in found) >= 4
+
+
+def test_a_specialty_does_not_show_who_found_no_bed_at_all(years: Years) -> None:
+    """Where the ward's specialty is followed, those whom every ward turned away are said to be missing."""
+    for ward in ("Teal", "Plover"):
+        found = hidden_demand(years.records, ward, capacity=years.beds)
+        assert found.method == "patients of its specialty on every ward"
+        assert any("are not in the file: demand may be higher" in note for note in found.notes)
