@@ -39,7 +39,7 @@ if TYPE_CHECKING:
 
 _MONTH = month_of_hour[::24]
 _WEEKDAY = np.arange(DAYS) % WEEKDAYS
-_MOST_BY_DAY, _MOST_AT_RANDOM = 16, 32
+_MOST_FOLLOWED = 32
 _NEARLY_ALL, _NEARLY_NONE = 0.95, 1e-6
 _TINY = 1e-12
 
@@ -184,7 +184,8 @@ def _settling(curve: BedCurve, changes: BedChanges, beds: Counts) -> Array:
     near = np.flatnonzero((share < _NEARLY_ALL) & (share > _NEARLY_NONE))
     ends = (int(near[0]), min(int(near[-1]) + changes.most_out_of_use, beds.size - 1)) if near.size else (0, 0)
     factor = np.ones((MONTHS, beds.size))
-    for follow, most in ((_settling_by_day, _MOST_BY_DAY), (_settling_at_random, _MOST_AT_RANDOM)):
+    at_random = _MOST_FOLLOWED if demand.is_steady else _MOST_FOLLOWED // 2
+    for follow, most in ((_settling_by_day, _MOST_FOLLOWED // 2), (_settling_at_random, at_random)):
         some = beds[np.unique(np.linspace(*ends, most).astype(np.int64))]
         logs = np.log(np.maximum(follow(demand, changes, some), _TINY))
         factor *= np.exp(np.array([np.interp(beds, some, row) for row in logs]))

@@ -17,6 +17,7 @@ from bedplan.decision.ward import Ward
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay
 from bedplan.models.clusters import peakedness
+from bedplan.models.figures import all_of_kind
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterable, Sequence
@@ -48,7 +49,7 @@ def pool_wards(wards: Iterable[Ward]) -> Ward:
     Source: Smith & Whitt 1981, Bell System Technical Journal 60:39-55, on when sharing helps.
     Checked by: tests/decision/test_pooling.py
     """
-    wards = named_once(wards)
+    wards = named_once(all_of_kind(wards, Ward, "Wards that share their beds are a list of Ward"))
     if len(wards) == 1:
         return wards[0]
     _alike("what their patients do when they are full", [ward.when_full for ward in wards])
@@ -211,7 +212,7 @@ def pooling_effect(wards: Iterable[Ward], model: str | None = None) -> PoolingEf
     Source: Smith & Whitt 1981, Bell System Technical Journal 60:39-55.
     Checked by: tests/decision/test_pooling.py
     """
-    wards = tuple(wards)
+    wards = all_of_kind(wards, Ward, "Wards that share their beds are a list of Ward")
     pooled = pool_wards(wards)
     curve = pooled.curve(model)
     by_month = curve.at(pooled.beds).by_month

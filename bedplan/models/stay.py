@@ -70,6 +70,10 @@ class LengthOfStay:
             raise ImpossibleFigure(f"The stay shape {self.shape!r} is not known: use 'lognormal' or 'gamma'.")
         if (self.shape == "two streams") != bool(self.streams) or (self.shape == "measured") != bool(self.points):
             raise ImpossibleFigure("Two streams and measured curves are built by two_streams(...) and measured(...).")
+        for given in (self.streams, self.points):
+            pairs = all_of_kind(given, tuple, "Two streams and measured curves are built of pairs")
+            if any(len(one) != 2 for one in pairs):
+                raise ImpossibleFigure(f"Two streams and measured curves are built of pairs, but {given!r} was given.")
 
     @classmethod
     def two_streams(cls, share_of_second: float, first: LengthOfStay, second: LengthOfStay) -> LengthOfStay:

@@ -349,3 +349,7 @@ def test_wards_that_work_differently_are_not_read_as_one() -> None:
         pool_wards([ward("Teal", 9, 8.0), ward("Teal", 9, 8.0)])
     with pytest.raises(ImpossibleFigure, match="at least one ward"):
         pool_wards([])
+    for pool in (pool_wards, pooling_effect):
+        for bad in (None, 3, "Teal", [STAY]):
+            with pytest.raises(ImpossibleFigure, match="are a list of Ward, but"):
+                pool(bad)

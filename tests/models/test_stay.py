@@ -211,6 +211,8 @@ def test_two_quantiles(low: tuple[float, float], high: tuple[float, float]) -> N
         (lambda: LengthOfStay(4.0).quantile([0.5, 1.2]), "between 0 and 1"),
         (lambda: LengthOfStay(4.0).quantile(-0.1), "between 0 and 1"),
         (lambda: LengthOfStay(None), "mean stay of None days"),
+        (lambda: LengthOfStay(4.0, shape="two streams", streams=3), "3 was given"),
+        (lambda: LengthOfStay(4.0, shape="measured", points=((0.0, 1.0), 2.0)), "2.0 was given"),
         (lambda: LengthOfStay("4"), "mean stay of '4' days"),
         (lambda: LengthOfStay(4.0, [1.0]), r"spread of stay of \[1.0\]"),
         (lambda: LengthOfStay.two_streams(None, LengthOfStay(1.0), LengthOfStay(2.0)), "share of None"),
