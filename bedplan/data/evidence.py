@@ -123,6 +123,17 @@ class Evidence:
         """How many times as fast as usual does anybody take a bed that the full ward frees?"""
         return self.minutes and watch_open_time(self.minutes, self.on_ward).rush
 
+    @cached_property
+    def all_full_share(self) -> float | None:
+        """Which share of the time had neither the ward nor any ward its patients lay on a free bed? None if not known."""
+        hosts = [str(name) for name, stays in self.own.elsewhere["ward"].value_counts().items() if stays]
+        if self.minutes is None or not set(hosts) <= set(self.capacity.wards):
+            return None
+        records, full = self.own.records, self.minutes.is_full & (self.minutes.cell >= 0)
+        for host in hosts:
+            full &= present(records, records.of_ward(host), 60) >= open_beds(records, host, self.capacity, 1_440)
+        return float(full.sum()) / (self.days * 1_440)
+
     def by_chance(self, per_day: float) -> float:
         """Return the variance by chance of a number of patients a day, counted over the file's days."""
         return self.swing * per_day / self.days

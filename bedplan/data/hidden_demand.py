@@ -233,9 +233,11 @@ def _notes(evidence: Evidence, followed: DemandMethod) -> list[str]:
             "No patient has two stays in the file, so those on their way to or from the ward can't be told apart."
         )
     if followed.name == SPECIALTY:
+        all_full = evidence.all_full_share
+        share = "" if all_full is None else f" All of them were full at once {percent(all_full)} of the time."
         notes.append(
-            "Patients who found a bed on none of these wards, and went to another hospital or home, are not in the "
-            "file: demand may be higher."
+            "Patients who found a bed on none of these wards, and went to another hospital or home, are not in the file "
+            f"nor in the range: demand may be higher.{share}"
         )
     if followed.name == RECORDED:
         notes.append(
