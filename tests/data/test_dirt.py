@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import random
 from typing import TYPE_CHECKING
 
 import pandas as pd
 import pytest
 
-from bedplan.data import IntakeChoices
+from bedplan.data import IntakeChoices, sequence
 from bedplan.data.rows import RULES
 from bedplan.errors import UnreadableRecords
 
@@ -506,3 +507,31 @@ def test_date_and_time_in_two_columns_are_put_together(read: Read) -> None:
     )
 
     assert stay_times(records) == [("Heron", "01-01 10:30", "01-04 09:15"), ("Heron", "01-02 00:00", "01-04 09:15")]
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_rules_that_skip_untroubled_patients_do_as_if_they_looked_at_all(
+    read: Read, monkeypatch: pytest.MonkeyPatch, seed: int
+) -> None:
+    """Stays thrown together at random end up the same whether or not patients are skipped to whom no rule can apply."""
+    chance = random.Random(seed)  # noqa: S311  not for secrets
+    lengths = (0, 10, 20, 45, 60, 90, 600, 1_440, 4_000)
+    rows = []
+    for number in range(300):
+        if number % 3 == 0 or chance.random() < 0.2:
+            end = pd.Timestamp("2024-01-01") + pd.Timedelta(minutes=chance.choice(lengths) * chance.randrange(9))
+        start = end  # most go from ward to ward without a gap, as a rule may not touch them
+        end = start + pd.Timedelta(
+            minutes=chance.choice(lengths[4:]) if chance.random() < 0.8 else chance.choice(lengths)
+        )
+        ward = chance.choice(("Heron", "Teal", "Theatre", "Home leave"))
+        shape = "%Y-%m-%d %H:%M" if seed % 3 else "%Y-%m-%d"
+        ends = f"{end:{shape}}" if chance.random() > 0.05 else ""
+        rows.append(f"p{number // 3},s{number // 4},{ward},{start:{shape}},{ends}")
+    choices = IntakeChoices(bed_on_leave="held" if seed % 2 else "given away")
+    skipping = read(*rows, choices=choices)
+    monkeypatch.setattr(sequence, "to_look_at", lambda _rows, order, _always: order)
+    thorough = read(*rows, choices=choices)
+
+    assert stay_times(skipping) == stay_times(thorough)
+    assert skipping.report == thorough.report

@@ -4,12 +4,16 @@ from __future__ import annotations
 
 import datetime as dt
 import io
+from typing import TYPE_CHECKING
 
 import openpyxl
 import pandas as pd
 import pytest
 
 from bedplan.data import read_records
+
+if TYPE_CHECKING:
+    from pathlib import Path
 
 TEXT = (
     "patient_key,ward,start,end,destination\n"
@@ -113,3 +117,17 @@ def test_parquet_gives_the_same_stays(unit: str) -> None:
     records = read_records(packed.getvalue())
 
     pd.testing.assert_frame_equal(records.stays.drop(columns="patient_key"), PLAIN)
+
+
+@pytest.mark.parametrize("last", ["2024-01-05 10:00", "5 Jan 2024 10:00", '"2024-01-05 10:00"'])
+def test_a_large_file_is_read_alike_however_its_last_time_is_written(tmp_path: Path, last: str) -> None:
+    """Times are read straight away where the head of a file allows it; one odd cell, or one quote, far below changes nothing."""
+    rows = [f"p{number},Teal,2024-01-0{number % 3 + 1} 10:00,2024-01-04 10:00" for number in range(30_000)]
+    content = "\n".join(["patient_key,ward,start,end", *rows, f"last,Teal,2024-01-02 10:00,{last}\n"]).encode()
+    path = tmp_path / "stays.csv"
+    path.write_bytes(content)
+    at_path, in_memory = (read_records(source).stays.drop(columns="patient_key") for source in (path, content))
+
+    assert len(at_path) == 30_001
+    assert at_path["end"].max() == pd.Timestamp("2024-01-05 10:00")
+    pd.testing.assert_frame_equal(at_path, in_memory)
