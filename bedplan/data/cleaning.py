@@ -19,13 +19,16 @@ LEAST_LONG_STAY_SECONDS = 60 * DAY_SECONDS
 
 
 def check_dates(rows: Rows, now: int) -> None:
-    """Set aside rows whose dates are missing, unreadable or impossible."""
+    """Set aside rows whose dates are missing, unreadable or impossible; an end yet to come is an unfinished stay."""
     rows.mark(rows.ward < 0, "no ward")
     rows.mark(rows.start == MISSING, "no start")
     rows.mark(rows.start == UNREADABLE, "start unreadable")
     rows.mark(rows.end == UNREADABLE, "end unreadable")
     early = (rows.start < EARLIEST) | (~rows.is_open & (rows.end < EARLIEST))
-    rows.mark(early | (rows.start > now) | (rows.end > now), "unlikely date")
+    rows.mark(early | (rows.start > now), "unlikely date")
+    expected = np.flatnonzero(rows.end > now)
+    rows.mark(expected, "end to come")
+    rows.end[expected] = MISSING
 
 
 def backward(rows: Rows) -> NDArray[np.int64]:

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 MISSING = np.iinfo(np.int64).min  # a blank cell
 UNREADABLE = MISSING + 1  # something is written there, but no date
 DAY_SECONDS = 86_400
+LAST_SECOND = 253_402_300_799  # of the year 9999: what systems write where there is no end yet
 MONTHS = ("jan", "feb", "mar", "apr", "may", "jun", "jul", "aug", "sep", "oct", "nov", "dec")
 BLANK_WORDS = ("", "null", "none", "na", "n/a", "nan", "nat", "-", "--", ".", "?", "still in", "open", "current")
 
@@ -53,13 +54,14 @@ def seconds_of(
     year: NDArray[np.int64], month: NDArray[np.int64], day: NDArray[np.int64], clock_seconds: NDArray[np.int64]
 ) -> NDArray[np.int64]:
     """Return seconds since 1970 of calendar dates, UNREADABLE where the date is on no calendar."""
-    possible = (month >= 1) & (month <= 12) & (day >= 1) & (year >= 1) & (year <= 9998) & (clock_seconds >= 0)
+    possible = (month >= 1) & (month <= 12) & (day >= 1) & (year >= 1) & (year <= 9999) & (clock_seconds >= 0)
     safe_year, safe_month = np.where(possible, year, 2000), np.where(possible, month, 1)
     months = ((safe_year - 1970) * 12 + safe_month - 1).astype("datetime64[M]")
     first = months.astype("datetime64[D]").astype(np.int64)
     length = (months + 1).astype("datetime64[D]").astype(np.int64) - first
     possible &= day <= length
-    return np.where(possible, (first + day - 1) * DAY_SECONDS + clock_seconds, UNREADABLE)
+    seconds = (first + day - 1) * DAY_SECONDS + clock_seconds
+    return np.where(possible, np.minimum(seconds, LAST_SECOND), UNREADABLE)
 
 
 def read_times(

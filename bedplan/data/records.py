@@ -16,6 +16,7 @@ from bedplan.data.blocks import order_of, side_by_side, taken
 from bedplan.data.choices import HELD, IntakeChoices
 from bedplan.data.columns import STAY_HEADINGS
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
+from bedplan.data.mistyped import set_mistyped_aside
 from bedplan.data.places import LEAVE, kinds_of_places, leave_note, set_places_aside
 from bedplan.data.reading import read_table
 from bedplan.data.report import SET_ASIDE, IntakeReport, why_none
@@ -184,6 +185,7 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
     wards = max(len(table.wards), 1)
     if table.has_times:
         cleaning.mend_clock_change(rows)
+    notes += set_mistyped_aside(rows, wards)
     cleaning.mend_negative(rows, cleaning.longest_stays(rows, wards))
     longest = cleaning.longest_stays(rows, wards)
     kinds = kinds_of_places(table.wards, choices.places)

@@ -24,7 +24,8 @@ RULES: dict[str, Rule] = {
     "no start": Rule(SET_ASIDE, "The start is missing"),
     "start unreadable": Rule(SET_ASIDE, "The start can't be read as a date"),
     "end unreadable": Rule(SET_ASIDE, "The end can't be read as a date"),
-    "unlikely date": Rule(SET_ASIDE, "A date lies in the future or before 1990"),
+    "unlikely date": Rule(SET_ASIDE, "The start lies in the future, or a date before 1990"),
+    "mistyped year": Rule(SET_ASIDE, "Dated far from every other stay: a mistyped year"),
     "test patient": Rule(SET_ASIDE, "A test patient, or an age no person reaches"),
     "negative": Rule(SET_ASIDE, "The stay ends before it starts"),
     "duplicate": Rule(SET_ASIDE, "The same stay is in the file twice"),
@@ -45,6 +46,7 @@ RULES: dict[str, Rule] = {
     "leave, ward unknown": Rule(
         SET_ASIDE, "Home leave without a stay just before: which ward held the bed isn't known"
     ),
+    "end to come": Rule(REPAIRED, "The end lies in the future: the patient is taken to be still in"),
     "clock change": Rule(REPAIRED, "Ended in the hour that the clock shows twice in autumn: an hour was added"),
     "ward spelling": Rule(REPAIRED, "The ward's name was written with other spaces or capitals"),
     "ward renamed": Rule(REPAIRED, "The ward's name was changed to the one you chose"),

@@ -535,3 +535,13 @@ def test_rules_that_skip_untroubled_patients_do_as_if_they_looked_at_all(
 
     assert stay_times(skipping) == stay_times(thorough)
     assert skipping.report == thorough.report
+
+
+@pytest.mark.parametrize("end", ["9999-12-31 00:00", "31.12.9999", "2999-01-04 11:00"])
+def test_an_end_that_is_yet_to_come_is_no_end(read: Read, end: str) -> None:
+    """Systems write the year 9999, or the day expected, for a patient who is still in."""
+    records = read(*PLAIN, f"a,b,Heron,2024-01-22 09:00,{end}", date_order="day first")
+
+    assert reasons(records) == {"end to come": 1}
+    assert ("Heron", "01-22 09:00", "still in") in stay_times(records)
+    assert str(records.seen_until.date()) == "2024-01-24"
