@@ -180,7 +180,7 @@ DATED = {
 def test_beds_by_date_against_simulated_patients(case: str) -> None:
     """Closures with patients in the beds, winter bays, weekends: the worst month as simulated, the year to 1 in 20."""
     demand, beds, changes, worst = DATED[case]
-    ward = simulated(demand, beds, changes, "leaves", replications=500)
+    ward = simulated(demand, beds, changes, "leaves", replications=500 if demand.arrivals_per_day < 5.0 else 250)
     point = Ward("Teal", beds, demand, bed_changes=changes).curve().at(beds)
     low, high = ward.interval_at(0.99)
     month = int(ward.by_month.argmax()) if case != "missing beds" else slice(None)
@@ -193,7 +193,7 @@ def test_beds_by_date_against_simulated_patients(case: str) -> None:
 def test_everyone_placed_at_once_against_simulated_patients(case: str) -> None:
     """Where everyone is placed the number present doesn't hang on the beds: the mixture is what simulated patients see."""
     demand, beds, changes, _ = DATED[case]
-    ward = simulated(demand, beds, changes, "stays anyway", replications=500)
+    ward = simulated(demand, beds, changes, "stays anyway")
     point = Ward("Heron", beds, demand, "waits", bed_changes=changes).curve().at(beds)
     low, high = ward.interval_at(0.99)
 
@@ -215,7 +215,7 @@ def test_everyone_placed_at_once_against_simulated_patients(case: str) -> None:
 def test_patients_who_queue_are_never_read_as_fewer(stay_days: float, beds: int, changes: BedChanges) -> None:
     """A queue outlives the closure it came from: the share who wait isn't below what simulated patients see."""
     demand = Demand(30.0 / stay_days, LengthOfStay(stay_days))
-    ward = simulated(demand, beds, changes, "waits", days=364 * 2)
+    ward = simulated(demand, beds, changes, "waits", replications=90 if stay_days > 1.0 else 40, days=364 * 2)
     low, high = ward.interval_at(0.99)
     curve = Ward("Heron", beds, demand, "waits", bed_changes=changes).curve("waiting")
     place = list(curve.beds).index(beds)
