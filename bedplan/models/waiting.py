@@ -162,7 +162,9 @@ class _Reading:
 
     def _over(self, hours: float) -> Array:
         """Return who waits longer, ``(steps × rates, n)``: waits are exponential about their mean."""
-        shares = self.queue.wait * np.exp(-hours / 24.0 / self.queue.wait_days)
+        shares = self.queue.wait
+        if hours > 0.0:
+            shares = shares * np.exp(-hours / 24.0 / self.queue.wait_days)
         return shares.reshape(self.weights.size, -1)
 
     def share_over(self, hours: float) -> Array:

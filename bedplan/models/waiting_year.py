@@ -104,11 +104,12 @@ class _Columns:
 
     def queue_at(self, loads: Array) -> Array:
         """Return the queue of a steady ward at loads ``(..., columns)``; where they aren't below the beds, none."""
-        sheet = self.beds + np.sinh(self.first + np.arange(_POINTS)[:, None] / self.steps) / self.scale
-        over = sheet - self.beds
-        waiting = (over + np.sqrt(over**2 + 4.0 * self.product[:, self.number])) / 2.0
-        columns = zip(loads.T, waiting.T, sheet.T, strict=True)
-        queue = np.array([np.interp(load, present - wait, wait) for load, wait, present in columns]).T
+        _, ward, place = np.unique(self.number, return_index=True, return_inverse=True)
+        over = np.sinh(self.first[ward] + np.arange(_POINTS)[:, None] / self.steps[ward]) / self.scale[ward]
+        waiting = (over + np.sqrt(over**2 + 4.0 * self.product[:, self.number[ward]])) / 2.0
+        in_use = (self.beds[ward] + over - waiting).T
+        queue = [np.interp(load, in_use[one], waiting[:, one]) for load, one in zip(loads.T, place, strict=True)]
+        queue = np.stack(queue, axis=-1)
         return np.where(loads < 0.999 * self.beds, np.maximum(queue, 0.0), 0.0)
 
 
@@ -186,15 +187,13 @@ def _settled(columns: _Columns, wanted: Array, share: float) -> Array:
     All steps at once by Newton's method: b(x) bends one way only, so each turn comes nearer from the same side. Where
     even the busiest step keeps few waiting, nothing is carried.
     """
-    light = columns.queue_at(wanted)
-    present = wanted + light
+    *light, usual = columns.queue_at(np.vstack([wanted, wanted.mean(axis=0)]))
+    present = wanted + np.array(light)
     busiest = np.take_along_axis(present, wanted.argmax(axis=0)[None], axis=0)
     keeps_few = columns.waits(busiest)[0][0] < _FEW
     left = np.flatnonzero((wanted.max(axis=0) >= columns.beds) | ~keeps_few)
     some, asked = columns.only(left), wanted[:, left]
-    present[:, left] = asked + np.maximum(
-        _at_least_waiting(asked, some.beds, share), some.queue_at(asked.mean(axis=0)[None])
-    )
+    present[:, left] = asked + np.maximum(_at_least_waiting(asked, some.beds, share), usual[left])
     for _ in range(_MOST_TURNS):
         if not left.size:
             break
