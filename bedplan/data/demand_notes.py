@@ -60,8 +60,8 @@ def _arrival_notes(records: Records, arrivals: Arrivals) -> list[str]:
     if drift:
         notes.append(
             f"Beyond season and growth arrivals drift by about {percent(drift)} (SD ÷ mean). If it errs, this is too low, "
-            "towards too few beds: season and growth take up a part of a slow drift, in made wards a tenth where it lasts "
-            "two months, a quarter where it lasts half a year or longer."
+            "towards too few beds: season and growth take up a part of a slow drift: on made-up wards a tenth where it lasts "
+            "two months, up to a third where it lasts a year."
         )
     if records.period_note:
         notes.append(records.period_note)

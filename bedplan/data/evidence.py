@@ -108,9 +108,11 @@ class Evidence:
         if self.beds is None or self.fewer_beds:
             return 0
         records = self.own.records
-        step, a_day = (60, 1_440) if records.has_times else (DAY_SECONDS, 1)
-        free = open_beds(records, self.own.ward, self.capacity, a_day) - present(records, self.on_ward, step)
-        share = np.bincount(np.maximum(free[np.repeat(records.counted_days, a_day)], 0)) / (self.days * a_day)
+        if self.minutes is not None:
+            share = self.minutes.free_share
+        else:
+            free = self.beds - present(records, self.on_ward, DAY_SECONDS)[records.counted_days]
+            share = np.bincount(np.maximum(free, 0)) / self.days
         return beds_below_wall(share, self.beds, beds_used(records, self.on_ward), self.days / self.mean_stay_days)
 
     @cached_property
@@ -129,10 +131,10 @@ class Evidence:
         hosts = [str(name) for name, stays in self.own.elsewhere["ward"].value_counts().items() if stays]
         if self.minutes is None or not set(hosts) <= set(self.capacity.wards):
             return None
-        records, full = self.own.records, self.minutes.is_full & (self.minutes.cell >= 0)
+        records, full = self.own.records, self.minutes.is_full[::60] & (self.minutes.cell[::60] >= 0)
         for host in hosts:
-            full &= present(records, records.of_ward(host), 60) >= open_beds(records, host, self.capacity, 1_440)
-        return float(full.sum()) / (self.days * 1_440)
+            full &= present(records, records.of_ward(host), 3_600) >= open_beds(records, host, self.capacity, 24)
+        return float(full.sum()) / (self.days * 24)
 
     def by_chance(self, per_day: float) -> float:
         """Return the variance by chance of a number of patients a day, counted over the file's days."""

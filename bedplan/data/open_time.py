@@ -63,12 +63,14 @@ class OpenTime:
 class WardMinutes:
     """Every minute of the window: is the ward full, and has a bed been free for a while; who came and left when.
 
+    ``free_share[k]``: share of the hours that count, looked at half past, with k beds free (0: full, or fuller than its beds).
     ``cell`` (minutes,): hour of the week × 12 + month, −1 on days that don't count. ``came`` and ``left``: minutes of
     the window, ascending.
     """
 
     first_second: int
     is_full: NDArray[np.bool_]
+    free_share: NDArray[np.float64]
     is_open: NDArray[np.bool_]
     cell: NDArray[np.int16]
     came: NDArray[np.int64]
@@ -95,7 +97,9 @@ def ward_minutes(records: Records, on_ward: pd.DataFrame, ward: str, capacity: C
 
     ``fewer``: so many of its stated beds are taken not to be there.
     """
-    is_full = present(records, on_ward, 60) >= open_beds(records, ward, capacity, DAY_MINUTES) - fewer
+    free = open_beds(records, ward, capacity, DAY_MINUTES) - fewer - present(records, on_ward, 60)
+    is_full, half_hours = free <= 0, free[HOUR_MINUTES // 2 :: HOUR_MINUTES]  # beds change hands on the hour
+    free_hours = np.bincount(np.maximum(half_hours, 0)[np.repeat(records.counted_days, 24)])
     minute = np.arange(is_full.size, dtype=np.int32)
     last_full = np.maximum.accumulate(np.where(is_full, minute, np.int32(-SETTLING_MINUTES - 1)))
     counts = records.counted_days
@@ -105,6 +109,7 @@ def ward_minutes(records: Records, on_ward: pd.DataFrame, ward: str, capacity: C
     return WardMinutes(
         first_second=first,
         is_full=is_full,
+        free_share=free_hours / max(free_hours.sum(), 1),
         is_open=np.repeat(counts, DAY_MINUTES) & (minute - last_full > SETTLING_MINUTES),
         cell=np.repeat(np.where(np.repeat(counts, 24), cell, -1).astype(np.int16), HOUR_MINUTES),
         came=_moments(on_ward["start"], first, is_full.size),

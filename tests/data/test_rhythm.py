@@ -141,7 +141,7 @@ def test_slow_drift_is_told_apart_from_clustering() -> None:
 
 @pytest.mark.parametrize(("lasts_days", "found"), [(60, (0.08, 0.10)), (365, (0.055, 0.085))])
 def test_a_slow_drift_is_found_too_low(lasts_days: int, found: tuple[float, float]) -> None:
-    """A drift of 10 % that lasts two months is found about a tenth too low, of a year a quarter or more: as notes say."""
+    """A drift of 10 % that lasts two months is found about a tenth too low, one of a year by about a third: as notes say."""
     calendar = pd.date_range("2022-04-01", periods=1_096)
     months, weekdays = calendar.month.to_numpy() - 1, calendar.day_of_week.to_numpy()
     drifts = []
