@@ -5,6 +5,7 @@ from __future__ import annotations
 import codecs
 import csv
 import re
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -13,8 +14,9 @@ from pyarrow import csv as arrow_csv
 
 from bedplan.data.blocks import each
 from bedplan.data.columns import match_headings
+from bedplan.data.misfits import MOST_LISTED, QUOTE, Misfit, commonest_cells, lines_under, mend_quotes, numbered
 from bedplan.data.source import BLOCK_BYTES, HEAD_BYTES, SourceFile
-from bedplan.data.texttable import MOST_TITLE_LINES, Layout, TextTable, text_table
+from bedplan.data.texttable import MOST_TITLE_LINES, Layout, Parsed, TextTable, text_table
 from bedplan.data.workbook import read_parquet, read_workbook
 from bedplan.errors import UnreadableRecords
 
@@ -128,15 +130,26 @@ def _type_of(key: str, times: Iterable[str]) -> pa.DataType:
     return pa.dictionary(pa.int32(), pa.string()) if key in FEW_VALUES else pa.string()
 
 
-def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
-    """Parse the lines under the headings, or say why they are no table."""
+def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+    """Parse the lines under the headings, stray quotation marks undone, or say why they are no table."""
+    quoted = any(re.search(QUOTE, block) for block in text.blocks())
     try:
         try:
-            if text.size > HEAD_BYTES:  # most files whose times are written otherwise show it at once
-                _parsed(SourceFile(text.name, text.head.rpartition(b"\n")[0]), layout, times)
-            return _parsed(text, layout, times)
-        except pa.ArrowInvalid:  # most likely a time that is written otherwise: those columns are looked at as text
-            return _parsed(text, layout, ())
+            parsed = _tried(text, layout, times)
+        except pa.ArrowInvalid:
+            if not quoted:
+                raise
+            parsed = None
+        if quoted and (
+            parsed is None or parsed.table.num_rows + parsed.misfits != lines_under(text, layout.rows_start)
+        ):
+            body = text.content[layout.rows_start :]
+            mended = mend_quotes(body, layout.separator, len(layout.headings), layout.line + 2)
+            if mended is not None:
+                found = _tried(SourceFile(text.name, mended.body), replace(layout, rows_start=0), times)
+                lines = tuple(sorted((*found.lines, *mended.left_out), key=lambda one: one.line))
+                return Parsed(found.table, found.misfits + len(mended.left_out), lines, tuple(mended.notes))
+        return parsed or _tried(text, layout, times)
     except (pa.ArrowInvalid, OSError) as problem:
         if "Empty CSV" in str(problem):
             told = f"{text.name} has headings but no rows: export it again with its rows."
@@ -147,14 +160,42 @@ def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> tuple[pa.T
         ) from problem
 
 
-def _parsed(text: SourceFile, layout: Layout, times: Iterable[str]) -> tuple[pa.Table, int]:
-    """Parse the lines; those with another number of cells are counted, not guessed at."""
-    misfits = 0
+def _tried(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+    """Parse the lines with as many cells as the headings have, or as most lines have where the rest are blank."""
+    parsed = _with_times(text, layout, times)
+    if parsed.misfits > parsed.table.num_rows:
+        cells, known = commonest_cells(parsed.lines), len(layout.headings)
+        more = layout.separator * (cells - known)
+        headings = layout.headings[:cells]
+        if more and all(one.text.rstrip("\r\n").endswith(more) for one in parsed.lines if one.cells == cells):
+            headings = (*layout.headings, *[""] * (cells - known))
+        if len(headings) > known or (len(headings) < known and not any(layout.headings[cells:])):
+            parsed = _with_times(text, replace(layout, headings=headings), times)
+    if not parsed.lines:
+        return parsed
+    return parsed._replace(lines=numbered(parsed.lines, text.content[layout.rows_start :], layout.line + 2))
 
-    def count(_: object) -> str:
+
+def _with_times(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+    """Parse with times as times; else as text."""
+    try:
+        if text.size > HEAD_BYTES:  # most files whose times are written otherwise show it at once
+            _parsed(SourceFile(text.name, text.head.rpartition(b"\n")[0]), layout, times)
+        return _parsed(text, layout, times)
+    except pa.ArrowInvalid:  # most likely a time that is written otherwise: those columns are looked at as text
+        return _parsed(text, layout, ())
+
+
+def _parsed(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+    """Parse the lines; those with another number of cells are counted, not guessed at."""
+    misfits, lines = 0, []
+
+    def count(row: arrow_csv.InvalidRow) -> str:
         """Count a line with another number of cells, and leave it out."""
         nonlocal misfits
         misfits += 1
+        if len(lines) < MOST_LISTED:
+            lines.append(Misfit(row.actual_columns, row.text))
         return "skip"
 
     unique = [f"{place}\0{heading}" for place, heading in enumerate(layout.headings)]
@@ -164,7 +205,7 @@ def _parsed(text: SourceFile, layout: Layout, times: Iterable[str]) -> tuple[pa.
         read_options=arrow_csv.ReadOptions(column_names=unique, block_size=BLOCK_BYTES),
         parse_options=arrow_csv.ParseOptions(
             delimiter=layout.separator,
-            newlines_in_values=any(re.search(b'"', block) for block in text.blocks()),
+            newlines_in_values=any(re.search(QUOTE, block) for block in text.blocks()),
             invalid_row_handler=count,
         ),
         convert_options=arrow_csv.ConvertOptions(
@@ -177,4 +218,4 @@ def _parsed(text: SourceFile, layout: Layout, times: Iterable[str]) -> tuple[pa.
             null_values=[""],
         ),
     )
-    return table.rename_columns(list(wanted)), misfits
+    return Parsed(table.rename_columns(list(wanted)), misfits, tuple(lines))

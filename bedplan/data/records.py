@@ -16,6 +16,7 @@ from bedplan.data.blocks import order_of, side_by_side, taken
 from bedplan.data.choices import HELD, IntakeChoices
 from bedplan.data.columns import STAY_HEADINGS
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
+from bedplan.data.misfits import with_lines
 from bedplan.data.mistyped import set_mistyped_aside
 from bedplan.data.places import LEAVE, kinds_of_places, leave_note, set_places_aside
 from bedplan.data.reading import read_table
@@ -239,7 +240,7 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
     return Records(
         name=file.name,
         stays=stays,
-        set_aside=removed.drop(columns=["patient_key", "spell_key"], errors="ignore"),
+        set_aside=with_lines(removed.drop(columns=["patient_key", "spell_key"], errors="ignore"), text.lines),
         wards=tuple(sorted(stays["ward"].cat.categories)),
         report=_report(table, text, seen.until, notes + [link.sentence for link in links]),
         window=tuple(pd.Timestamp(int(moment), unit="s") for moment in period.window),

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import functools
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import pyarrow.compute as pc
 
@@ -16,6 +16,8 @@ if TYPE_CHECKING:
 
     import pyarrow as pa
 
+    from bedplan.data.misfits import Misfit
+
 MOST_TITLE_LINES = 60
 
 
@@ -24,7 +26,7 @@ class TextTable:
     """The matched columns of a file, every value a string, a time (where times were asked for) or null, by canonical name.
 
     ``headings``: canonical name → heading as written. ``misfits``: lines with another number of cells than the
-    headings. ``dropped``: identity columns that were never read. ``unused``: other headings nothing was made of.
+    headings, the first of them in ``lines``. ``dropped``: identity columns that were never read. ``unused``: other headings nothing was made of.
     """
 
     columns: Mapping[str, pa.ChunkedArray]
@@ -34,6 +36,7 @@ class TextTable:
     dropped: tuple[str, ...]
     unused: tuple[str, ...]
     notes: tuple[str, ...]
+    lines: tuple[Misfit, ...] = ()
 
     def strings(self, key: str) -> list[str]:
         """Return one column as tidy strings, blanks where it is missing."""
@@ -54,6 +57,15 @@ class TextTable:
             raise UnreadableRecords([f"{told}: choose another file here, or leave that column out."])
 
 
+class Parsed(NamedTuple):
+    """What parsing gave: the rows; how many lines were none, the first of them; and what to say."""
+
+    table: pa.Table
+    misfits: int = 0
+    lines: tuple[Misfit, ...] = ()
+    notes: tuple[str, ...] = ()
+
+
 @dataclass(frozen=True, slots=True)
 class Layout:
     """Where the headings are (line, and where the rows under it start), what separates them, which are known."""
@@ -68,7 +80,7 @@ class Layout:
 def text_table(
     name: str,
     layout: Layout,
-    parse: Callable[[], tuple[pa.Table, int]],
+    parse: Callable[[], Parsed],
     notes: Iterable[str],
     asked: list[str],
 ) -> TextTable:
@@ -81,12 +93,12 @@ def text_table(
         raise UnreadableRecords(
             [f"{name} has no line of headings: its first row should name the columns, such as {', '.join(asked[:5])}."]
         )
-    table, misfits = parse()
+    table, misfits, lines, told = parse()
     if all(column.null_count for column in table.columns):
         table = table.filter(functools.reduce(pc.or_, [pc.is_valid(column) for column in table.columns]))
     if table.num_rows + misfits == 0:
         raise UnreadableRecords([f"{name} has headings but no rows: export it again with its rows."])
-    said = list(notes)
+    said = [*notes, *told]
     if layout.line:
         said.append(f"{layout.line} lines above the headings were skipped as report titles.")
     known = set(layout.found.values())
@@ -99,4 +111,5 @@ def text_table(
         dropped=dropped,
         unused=tuple(heading for heading in layout.headings if heading and heading not in {*known, *dropped}),
         notes=tuple(said),
+        lines=lines,
     )

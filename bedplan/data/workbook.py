@@ -13,7 +13,7 @@ import pyarrow.compute as pc
 from pyarrow import parquet
 
 from bedplan.data.columns import match_headings
-from bedplan.data.texttable import MOST_TITLE_LINES, Layout, TextTable, text_table
+from bedplan.data.texttable import MOST_TITLE_LINES, Layout, Parsed, TextTable, text_table
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -108,7 +108,7 @@ def _layout(cells: Cells, known: Mapping[str, Iterable[str]], chosen: Mapping[st
     return best
 
 
-def _parsed(cells: Cells, layout: Layout) -> tuple[pa.Table, int]:
+def _parsed(cells: Cells, layout: Layout) -> Parsed:
     """Return the matched columns as text."""
     below = cells[layout.line + 1 :]
     places = {heading: layout.headings.index(heading) for heading in layout.found.values()}
@@ -118,7 +118,7 @@ def _parsed(cells: Cells, layout: Layout) -> tuple[pa.Table, int]:
         )
         for heading, place in places.items()
     }
-    return pa.table(columns), 0
+    return Parsed(pa.table(columns))
 
 
 def _text(cell: object) -> str:
@@ -145,7 +145,7 @@ def read_parquet(
         headings = tuple(file.schema_arrow.names)
         layout = Layout(0, 0, "", headings, match_headings(headings, known, chosen))
         return text_table(
-            source.name, layout, lambda: (_as_text(file.read(list(layout.found.values()))), 0), [], list(known)
+            source.name, layout, lambda: Parsed(_as_text(file.read(list(layout.found.values())))), [], list(known)
         )
     except (pa.ArrowException, OSError) as problem:
         raise UnreadableRecords([f"{source.name} is a damaged Parquet file: write it again and retry."]) from problem
