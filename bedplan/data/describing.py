@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data.occupancy import bed_days, open_beds, present
+from bedplan.data.patients import beds_used
 from bedplan.data.silence import without_silences
 from bedplan.data.specialty import find_home_wards
 from bedplan.data.stays import stay_curve, stays_in_window
@@ -193,7 +194,7 @@ def _delay_beds(records: Records, stays: pd.DataFrame) -> float | None:
         return None
     ready = stays[stays["ready"].notna()]
     since = np.maximum(ready["ready"].to_numpy(), ready["start"].to_numpy())
-    return float(bed_days(records, ready.assign(start=since)).sum()) / records.days
+    return beds_used(records, ready.assign(start=since))
 
 
 def _median(stays: pd.DataFrame) -> float:
@@ -209,9 +210,9 @@ def _long_stays(records: Records, stays: pd.DataFrame, days: int) -> LongStays:
     used = bed_days(records, stays)
     is_long = length > days
     later = stays["start"] + pd.Timedelta(days=days)
-    after = bed_days(records, stays.assign(start=np.maximum(later.to_numpy(), stays["start"].to_numpy())))
+    after = beds_used(records, stays.assign(start=np.maximum(later.to_numpy(), stays["start"].to_numpy())))
     total = max(float(used.sum()), 1e-9)
-    return LongStays(days, float(is_long.mean()), float(used[is_long].sum()) / total, float(after.sum()) / records.days)
+    return LongStays(days, float(is_long.mean()), float(used[is_long].sum()) / total, after)
 
 
 def _outlier_bed_days(records: Records, ward: str) -> float:

@@ -119,3 +119,26 @@ def test_a_chosen_period_is_not_told_as_a_silence() -> None:
 def test_no_ward_of_the_invented_hospital_was_closed(larkmere: Records) -> None:
     """All eight wards were open for three years, the booked one over Christmas too."""
     assert all(find_silences(larkmere, ward) == () for ward in larkmere.wards)
+
+
+def test_a_ward_that_is_filling_up_is_not_taken_for_one_with_few_patients() -> None:
+    """After a ward opens its beds fill for weeks where stays are long: counts of patients present begin after that."""
+    ratios = []
+    for seed in range(3):
+        records = made_records(MadeWard(6.0, 20.0, 0.8, growth=0.0), seed)
+        open_all_along = describe_ward(records, "Heron").hourly.to_numpy()[-24 * 182 :: 24].mean()
+        opened = describe_ward(without_arrivals(records, -999, DAYS - 182), "Heron").midnight_mean
+        ratios.append(opened / open_all_along)
+
+    assert np.mean(ratios) == pytest.approx(
+        1.0, abs=0.05
+    )  # with the first weeks counted: 1 − 20 · (1 + 0.8²) / 2 / 182 = 0.91
+
+
+def test_beds_of_long_stays_are_those_since_the_ward_opened() -> None:
+    """Days in which the ward was not open yet don't thin out the beds that late days of long stays fill."""
+    records = made_records(MadeWard(6.0, 8.0, 1.2, growth=0.0), 4)
+    whole, opened = (describe_ward(one, "Heron") for one in (records, without_arrivals(records, -999, DAYS - 182)))
+
+    for all_along, since in zip(whole.long_stays, opened.long_stays, strict=True):
+        assert since.beds_after == pytest.approx(all_along.beds_after, rel=0.35)  # a winter; spread over all days: 0.17
