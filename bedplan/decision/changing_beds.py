@@ -35,7 +35,8 @@ _MIXED = {
     "low over the year, and up to 1 in 8 in a closure's own month where stays are spread widely; up to a third too high "
     "there for stays all alike, and up to twice for booked patients alone.",
     "waits": "each month is the mixture of the curve at each open bed count, as if the ward settled at once, and the time "
-    "that queues left over take to go. Against simulations up to a half too high.",
+    "that queues left over take to go. Against simulations up to a half too high over the year, up to twice "
+    "in a closure's own month.",
     "stays anyway": "each month is the mixture of the curve at each open bed count.",
 }
 _month_of_day = np.repeat(np.arange(MONTHS), MONTH_DAYS)
