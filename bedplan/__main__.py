@@ -14,7 +14,16 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from bedplan import wording
-from bedplan.data import Capacity, Records, backtest, estimate_demand, read_capacity, read_records
+from bedplan.data import (
+    Capacity,
+    Records,
+    adds_up,
+    backtest,
+    estimate_demand,
+    read_capacity,
+    read_ready_dates,
+    read_records,
+)
 from bedplan.data.choices import DATE_ORDERS
 from bedplan.decision import TurnAwayLimit
 from bedplan.errors import BedplanError, UnreadableRecords
@@ -37,6 +46,9 @@ def arguments() -> argparse.ArgumentParser:
     parser.add_argument("stays", type=Path, help="ward stays: CSV with ward, start and end")
     parser.add_argument(
         "--answers", type=Path, help="a saved plan, for how the stays are to be read: columns, dates, places, periods"
+    )
+    parser.add_argument(
+        "--ready", type=Path, help="when patients were ready to leave: CSV with stay or patient key and date"
     )
     parser.add_argument("--dates", choices=DATE_ORDERS, help="how dates are written in the files")
     parser.add_argument("--ward", action="append", help="a ward to justify; repeat for more (default: every ward)")
@@ -81,11 +93,24 @@ def staffed_beds(path: Path | None, records: Records, date_order: str | None) ->
     return capacity
 
 
-def beside(capacity: Path | None) -> tuple[tuple[str, str], ...]:
-    """Return (what, name and fingerprint) of the file beside the records, for the document."""
-    if capacity is None:
+def answers_of(asked: argparse.Namespace) -> Answers:
+    """Return how the stays are to be read; say which file of ready dates a saved plan was made with, if it is not here."""
+    answers = from_json(asked.answers.read_bytes()).answers if asked.answers else Answers()
+    if asked.dates:
+        answers = replace(answers, date_order=asked.dates)
+    if asked.ready:
+        ready = read_ready_dates(asked.ready, date_order=asked.dates)
+        answers = replace(answers, choices=replace(answers.choices, ready_dates=ready))
+    if answers.ready_sentence:
+        print(answers.ready_sentence, file=sys.stderr)
+    return answers
+
+
+def beside(what: str, path: Path | None) -> tuple[tuple[str, str], ...]:
+    """Return (what, name and fingerprint) of a file beside the records, for the document."""
+    if path is None:
         return ()
-    return (("Staffed beds", f"{capacity.name}, SHA-256 {hashlib.sha256(capacity.read_bytes()).hexdigest()}"),)
+    return ((what, f"{path.name}, SHA-256 {hashlib.sha256(path.read_bytes()).hexdigest()}"),)
 
 
 def write(asked: argparse.Namespace) -> Justification:
@@ -96,9 +121,7 @@ def write(asked: argparse.Namespace) -> Justification:
 
     Checked by: tests/test_command_line.py
     """
-    answers = from_json(asked.answers.read_bytes()).answers if asked.answers else Answers()
-    if asked.dates:
-        answers = replace(answers, date_order=asked.dates)
+    answers = answers_of(asked)
     records = read_records(asked.stays, **answers.to_read())
     capacity = staffed_beds(asked.capacity, records, asked.dates)
     unknown = [name for name in (*(asked.ward or ()), *asked.leaves) if name not in records.wards]
@@ -106,7 +129,8 @@ def write(asked: argparse.Namespace) -> Justification:
         raise UnreadableRecords([f"Ward “{unknown[0]}” is not in {records.name}; it holds {', '.join(records.wards)}."])
     names = asked.ward or records.wards
     cases = tuple(ward_case(records, capacity, name, asked) for name in names)
-    source = Source.from_records(records, (*beside(asked.capacity), *answers.rows()))
+    others = (*beside("Staffed beds", asked.capacity), *beside("Ready dates", asked.ready), *answers.rows())
+    source = Source.from_records(records, others, adds_up(records))
     paper = Justification(cases, source, dt.datetime.now().astimezone().date())
     asked.out.mkdir(parents=True, exist_ok=True)
     for ending, content in (("html", as_html(paper)), ("xlsx", as_xlsx(paper))):

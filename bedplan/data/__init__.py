@@ -14,7 +14,7 @@ from bedplan.data.past_years import PastYear, past_years
 from bedplan.data.preview import ColumnPreview, preview_columns
 from bedplan.data.ready import ReadyDates
 from bedplan.data.ready_reading import read_ready_dates
-from bedplan.data.reconciling import CensusCheck, Flows, check_census, flows
+from bedplan.data.reconciling import CensusCheck, Check, Flows, adds_up, check_census, flows
 from bedplan.data.records import Records, read_records
 from bedplan.data.repairs import RepairEffect, what_repairs_change
 from bedplan.data.report import IntakeReport
@@ -27,6 +27,7 @@ __all__ = [
     "Capacity",
     "Census",
     "CensusCheck",
+    "Check",
     "ColumnPreview",
     "DateQuestion",
     "DemandEstimate",
@@ -49,6 +50,7 @@ __all__ = [
     "Uncertainty",
     "WardDescription",
     "WardLink",
+    "adds_up",
     "backtest",
     "check_census",
     "describe_ward",

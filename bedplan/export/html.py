@@ -131,10 +131,10 @@ def _source(justification: Justification) -> str:
         (reason, count_or_withheld(count), "*" if 0 < count < SMALLEST_COUNT_SHOWN else f"{bed_days:,.0f}")
         for reason, count, bed_days in source.reasons
     ]
-    stars = any(row[1] == "*" for row in rows) or "*" in source.sentences()[0]
-    withheld = "<p>* counts of 1 to 7 are withheld.</p>" if stars else ""
+    withheld = "<p>* counts of 1 to 7 are withheld.</p>" if source.withholds else ""
     table = _table(("What was done, and why", "Rows", "Bed-days"), rows) if rows else ""
-    return f"<h2>Where the data came from</h2>{_paragraphs(source.sentences())}{table}{withheld}"
+    checks = _table(("Does it add up?", "Figures", "Verdict"), source.checks, WIDE)
+    return f"<h2>Where the data came from</h2>{_paragraphs(source.sentences())}{table}{checks}{withheld}"
 
 
 def _paragraphs(sentences: Iterable[str]) -> str:

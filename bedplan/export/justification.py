@@ -11,7 +11,7 @@ from bedplan import wording
 from bedplan.errors import ImpossibleFigure
 
 if TYPE_CHECKING:
-    from bedplan.data import Records
+    from bedplan.data import Check, Records
     from bedplan.export.case import WardCase
 
 SMALLEST_COUNT_SHOWN = 8  # counts of 1 to 7 are withheld: common disclosure practice for health statistics
@@ -22,7 +22,7 @@ class Source:
     """Where the figures came from: the file as it was read, in counts only.
 
     ``reasons`` are (what was done and why, rows, bed-days). ``rows_in`` 0 means that no file of ward stays was read.
-    ``others``: other files by name and fingerprint, and how the file was read.
+    ``others``: other files by name and fingerprint, and how the file was read. ``checks``: (what must agree, figures, verdict).
     """
 
     name: str
@@ -35,10 +35,15 @@ class Source:
     reasons: tuple[tuple[str, int, float], ...] = ()
     notes: tuple[str, ...] = ()
     others: tuple[tuple[str, str], ...] = ()
+    checks: tuple[tuple[str, str, str], ...] = ()
 
     @classmethod
-    def from_records(cls, records: Records, others: tuple[tuple[str, str], ...] = ()) -> Source:
+    def from_records(
+        cls, records: Records, others: tuple[tuple[str, str], ...] = (), checks: tuple[Check, ...] = ()
+    ) -> Source:
         """Return what a document says about these records; ``others`` = (what, value) of whatever else shaped figures.
+
+        ``checks``: whether the figures agree; those that rest on 1 to 7 rows or patients are withheld.
 
         Checked by: tests/export/test_justification.py
         """
@@ -59,7 +64,14 @@ class Source:
             reasons=tuple((finding.sentence, finding.rows, finding.bed_days) for finding in report.findings),
             notes=(*about_dropped, *report.notes),
             others=others,
+            checks=tuple((one.what, "*" if one.points_at_few else one.figures, one.verdict) for one in checks),
         )
+
+    @property
+    def withholds(self) -> bool:
+        """Is any count withheld?"""
+        few = (count_or_withheld(count) for count in (self.repaired, self.set_aside, *(row[1] for row in self.reasons)))
+        return "*" in few or any(figures == "*" for _, figures, _ in self.checks)
 
     def sentences(self) -> tuple[str, ...]:
         """Say where the data came from."""

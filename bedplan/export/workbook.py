@@ -157,11 +157,13 @@ def _source_sheets(book: _Book, justification: Justification) -> None:
         (reason, "*", "*") if count_or_withheld(count) == "*" else (reason, count, float(bed_days))
         for reason, count, bed_days in source.reasons
     ]
-    if any(row[1] == "*" for row in reasons) or "*" in source.sentences()[0]:
+    if source.withholds:
         reasons.append(("* counts of 1 to 7 are withheld.", "", ""))
     book.sheet(
         "Data", ("What was done, and why", "Rows", "Bed-days"), [*((line,) for line in source.sentences()), *reasons]
     )
+    if source.checks:
+        book.sheet("Does it add up", ("What must agree", "Figures", "Verdict"), source.checks)
     notes = [(case.ward.name, note) for case in justification.cases for note in case.notes()]
     book.sheet("Cautions", ("About", "Caution"), [*(("All wards", line) for line in wording.CAUTIONS), *notes])
     book.sheet("Same figures again", ("What", "Value"), justification.reproducibility())

@@ -10,6 +10,7 @@ import streamlit as st
 
 from bedplan import wording
 from bedplan.data import (
+    read_bed_requests,
     read_cancellations,
     read_capacity,
     read_census,
@@ -29,6 +30,9 @@ if TYPE_CHECKING:
     Take = Callable[[bytes, str, str | None], list[str]]  # content, name and order of dates -> what to tell
 
 
+MONTHS_A_ROW = {None: "what the file shows", 1: "1 month"}
+
+
 @dataclass(frozen=True)
 class Told:
     """What came of one more file, and the question whose answer would help, if any."""
@@ -36,16 +40,23 @@ class Told:
     sentences: tuple[str, ...]
     refused: bool = False
     question: DateQuestion | None = None
+    date_order: str | None = None
 
 
-def offer(kind: str, label: str, take: Take, **options: Any) -> None:
-    """Offer one more file, take it in once, and tell what came of it for as long as it is in its box."""
+def offer(kind: str, label: str, take: Take, *, ask: Callable[[str], Any] | None = None, **options: Any) -> None:
+    """Offer one more file, take it in once, and tell what came of it for as long as it is in its box.
+
+    ``ask`` asks something about the file of this id; where the answer changes, the file is taken again.
+    """
     given = st.file_uploader(label, key=f"{kind}_file", **options)
     if given is None or options.get("disabled"):
         return
-    if st.session_state.get(f"{kind}_taken") != given.file_id:
-        take_more(kind, take, given.getvalue(), given.name)
-        st.session_state[f"{kind}_taken"] = given.file_id
+    asked = (given.file_id, ask(given.file_id) if ask else None)
+    taken = st.session_state.get(f"{kind}_taken", (None, None))
+    if taken != asked:
+        order = st.session_state[f"{kind}_told"].date_order if taken[0] == given.file_id else None
+        take_more(kind, take, given.getvalue(), given.name, order)
+        st.session_state[f"{kind}_taken"] = asked
     told: Told = st.session_state[f"{kind}_told"]
     for sentence in told.sentences:
         (st.error if told.refused else st.caption)(wording.plain(sentence))
@@ -62,9 +73,9 @@ def offer(kind: str, label: str, take: Take, **options: Any) -> None:
 def take_more(kind: str, take: Take, content: bytes, name: str, date_order: str | None = None) -> None:
     """Take in a file beside the stays, and keep what came of it."""
     try:
-        told = Told(tuple(take(content, name, date_order)))
+        told = Told(tuple(take(content, name, date_order)), date_order=date_order)
     except BedplanError as error:
-        told = Told((str(error),), refused=True, question=getattr(error, "question", None))
+        told = Told((str(error),), refused=True, question=getattr(error, "question", None), date_order=date_order)
     st.session_state[f"{kind}_told"] = told
 
 
@@ -90,6 +101,7 @@ def load_more() -> None:
     """Offer the files that show what full wards could not take, and the official count."""
     kinds = {
         "refusals": ("Patients not given a bed: time, ward, reason", read_refusals),
+        "bed_requests": ("Bed requests, all of them: time, ward, time the bed was given", read_bed_requests),
         "cancellations": ("Cancelled booked patients: planned date, ward, reason", read_cancellations),
         "census": ("Census: date, time, ward, patients", read_census),
     }
@@ -101,7 +113,7 @@ def load_more() -> None:
         label = (
             "Monthly return, where there is nothing better: month, ward, available and occupied bed-days, discharges"
         )
-        offer("return", label, take_return)
+        offer("monthly_return", label, take_return, ask=ask_months)
     for sentence in loaded.without_stays():
         st.caption(wording.plain(sentence))
 
@@ -143,11 +155,26 @@ def ask_reasons(kind: str) -> None:
             st.rerun()
 
 
+def ask_months(file_id: str) -> int | None:
+    """Ask how many months a row of the return holds; None = as the file shows."""
+    chosen = st.selectbox(
+        "A row of this return holds",
+        [None, *range(1, 13)],
+        format_func=lambda months: MONTHS_A_ROW.get(months, f"{months} months"),
+        key=f"months_{file_id}",
+    )
+    st.session_state["months_a_row"] = chosen
+    return chosen
+
+
 def take_return(content: bytes, name: str, date_order: str | None) -> list[str]:
     """Make a ward to plan of each ward in a monthly return that the planner's records don't hold."""
-    returned = read_monthly_return(content, name=name, date_order=date_order)
+    returned = read_monthly_return(
+        content, name=name, date_order=date_order, months_a_row=st.session_state["months_a_row"]
+    )
     if not loaded.is_demo():
-        returned = returned.linked_to(loaded.records())
+        loaded.use_file(content, "monthly_return", returned)
+        returned = loaded.files().monthly_return
     made, told = [], [*returned.report.sentences, *returned.report.notes]
     known = () if loaded.is_demo() else set(returned.wards) - set(returned.unknown_wards)
     for ward in sorted(set(returned.wards) - set(known)):

@@ -233,7 +233,9 @@ def source(wards: list[str]) -> Source:
     if wards and all(name in typed for name in wards):
         return Source("; ".join(origins))
     return Source.from_records(
-        loaded.records(), (*loaded.files().marks, *_how_read(wards), *(("Also from", one) for one in origins))
+        loaded.records(),
+        (*loaded.files().marks, *_how_read(wards), *(("Also from", one) for one in origins)),
+        loaded.checks(),
     )
 
 

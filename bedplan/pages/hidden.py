@@ -26,14 +26,15 @@ def headline(found: HiddenDemand) -> str:
 
 def methods(found: HiddenDemand) -> pd.DataFrame:
     """Return a row a method: its answer with the range, or why it can't tell."""
+    said = [wording.plain(method.reason) for method in found.methods]
     rows = [
         {
             "Method": method.name[0].upper() + method.name[1:],
             "Patients a day": f"{method.patients_per_day:.2f}" if method.used else "can't tell",
             "Range": "{:.2f} to {:.2f}".format(*method.interval) if method.used else "",
-            "Why": wording.plain(method.reason),
+            "Why": "As above." if place and said[place] == said[place - 1] else said[place],
         }
-        for method in found.methods
+        for place, method in enumerate(found.methods)
     ]
     return pd.DataFrame(rows).set_index("Method")
 

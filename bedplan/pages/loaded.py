@@ -19,6 +19,7 @@ from bedplan.data import (
     Census,
     EventLog,
     Records,
+    adds_up,
     backtest,
     describe_ward,
     estimate_demand,
@@ -42,8 +43,10 @@ if TYPE_CHECKING:
 
     from bedplan.data import (
         Backtest,
+        Check,
         Forecast,
         HiddenDemand,
+        MonthlyReturn,
         PastYear,
         RepairEffect,
         StayFamilies,
@@ -57,7 +60,10 @@ OTHER_FILES: Mapping[str, str] = {
     "refusals": "Patients not given a bed",
     "cancellations": "Cancelled booked patients",
     "census": "Census",
+    "bed_requests": "Bed requests",
+    "monthly_return": "Monthly return",
 }
+DEMO_FILES = ("capacity", "refusals", "cancellations", "census")
 MARKED = {**OTHER_FILES, "ready": "Ready dates"}
 # What the wards of the invented demo hospital do when full, and the share of their refusals that is written down;
 # for other records the planner answers.
@@ -78,6 +84,8 @@ class Files:
     refusals: EventLog | None = None
     cancellations: EventLog | None = None
     census: Census | None = None
+    bed_requests: EventLog | None = None
+    monthly_return: MonthlyReturn | None = None
     marks: tuple[tuple[str, str], ...] = ()
     content: bytes = b""
     answers: Answers = field(default_factory=Answers)
@@ -109,7 +117,7 @@ def _demo() -> tuple[Files, dict[tuple[str, ...], Any]]:
         refusals=read_refusals(DEMO / "refusals.csv"),
         cancellations=read_cancellations(DEMO / "cancellations.csv"),
         census=read_census(DEMO / "census.csv"),
-        marks=tuple(_mark(kind, f"{kind}.csv", (DEMO / f"{kind}.csv").read_bytes()) for kind in OTHER_FILES),
+        marks=tuple(_mark(kind, f"{kind}.csv", (DEMO / f"{kind}.csv").read_bytes()) for kind in DEMO_FILES),
     )
     return files, {}
 
@@ -135,7 +143,7 @@ def use(given: Files | None) -> None:
     st.session_state["worked_out"] = {}
 
 
-def use_file(content: bytes, kind: str, found: Capacity | EventLog | Census) -> None:
+def use_file(content: bytes, kind: str, found: Capacity | EventLog | Census | MonthlyReturn) -> None:
     """Add a file beside the planner's records.
 
     Raises:
@@ -144,14 +152,23 @@ def use_file(content: bytes, kind: str, found: Capacity | EventLog | Census) -> 
     here = files().marked(kind, found.name, content)
     marks = tuple(row for row in here.marks if row[0] != _reasons_row(kind))
     use(replace(here, marks=marks, given={**here.given, kind: found}).linked())
+    said = st.session_state.get("planned_reasons", {}).get(fingerprint_of(kind))
+    if said is not None:
+        use_reasons(kind, tuple(said))
 
 
 def use_reasons(kind: str, reasons: tuple[str, ...]) -> None:
     """Take the planner's word for which reasons in a list mean that no bed was free."""
     here = files()
-    said = (_reasons_row(kind), "; ".join(reasons) or "none")
+    said = {_reasons_row(kind): "; ".join(reasons) or "none"}
     log = replace(here.given[kind], no_bed_reasons=reasons)
-    use(replace(here, marks=(*here.marks, said), given={**here.given, kind: log}).linked())
+    marks = tuple({**dict(here.marks), **said}.items())
+    use(replace(here, marks=marks, given={**here.given, kind: log}).linked())
+
+
+def fingerprint_of(kind: str) -> str:
+    """Return the fingerprint of a file beside the records."""
+    return dict(files().marks)[OTHER_FILES[kind]][-64:]
 
 
 def _reasons_row(kind: str) -> str:
@@ -162,7 +179,8 @@ def _reasons_row(kind: str) -> str:
 def without_stays() -> tuple[str, ...]:
     """Say which wards of the other files have no stays in the records, so that nothing is left out silently."""
     here = files()
-    unused = [(one.name, list(getattr(here, kind).unknown_wards)) for kind, one in here.given.items()]
+    kinds = [kind for kind in here.given if kind != "monthly_return"]  # its wards are planned by its averages
+    unused = [(here.given[kind].name, list(getattr(here, kind).unknown_wards)) for kind in kinds]
     return tuple(wording.not_used(name, wards) for name, wards in unused if wards)
 
 
@@ -206,6 +224,12 @@ def repairs() -> tuple[RepairEffect, ...]:
     return _once(("repairs",), lambda: what_repairs_change(records()))
 
 
+def checks() -> tuple[Check, ...]:
+    """Return whether the figures of the files agree."""
+    here = files()
+    return _once(("adds up",), lambda: adds_up(here.records, here.census, here.monthly_return))
+
+
 def description(name: str) -> WardDescription:
     """Return what a ward was like."""
     here = files()
@@ -216,6 +240,8 @@ def hidden(name: str) -> HiddenDemand:
     """Return the demand a ward's records do not show."""
     here, share = files(), recorded_share(name)
     lists = tuple(one for one in (here.refusals, here.cancellations) if one is not None)
+    if here.bed_requests is not None and not lists:
+        lists = (here.bed_requests,)  # most of them had a bed: the page says why they can't be used
     return _once(
         ("hidden", name, f"{share:.2f}"),
         lambda: hidden_demand(here.records, name, capacity=here.capacity, refusals=lists, share_recorded=share),

@@ -46,6 +46,7 @@ def show_intake(here: Records) -> None:
         st.markdown(f"- {wording.plain(note)}")
     if report.repaired:
         show_repairs()
+    show_checks()
     if len(here.set_aside):
         rows = here.set_aside
         st.download_button(
@@ -55,6 +56,15 @@ def show_intake(here: Records) -> None:
             mime="text/csv",
             on_click="ignore",
         )
+
+
+def show_checks() -> None:
+    """Show whether bed-days, comings and goings, and counts of other files agree."""
+    rows = [
+        {"Does it add up?": one.what, "Figures": one.figures, "Verdict": one.verdict[0].upper() + one.verdict[1:]}
+        for one in loaded.checks()
+    ]
+    st.table(pd.DataFrame(rows).map(wording.plain).set_index("Does it add up?"))
 
 
 def show_repairs() -> None:
@@ -117,11 +127,12 @@ def open_plan(content: bytes, _name: str, _date_order: str | None) -> list[str]:
     plan = from_json(content)
     here = loaded.files()
     if not loaded.is_demo() and saved.is_of(plan, here.content) and plan.answers != here.answers:
-        problems = intake.read_again(plan.answers)
+        problems = intake.read_again(plan.answers.with_ready_dates(here.answers))
         if problems:
             raise UnreadableRecords(problems)
     saved.use_plan(plan)
-    return ["The plan is open. Settings of wards wait for the records it was made with, if those are not loaded yet."]
+    told = "The plan is open. Settings of wards wait for the records it was made with, if those are not loaded yet."
+    return [told, *filter(None, [plan.answers.with_ready_dates(loaded.files().answers).ready_sentence])]
 
 
 def keep_plan() -> None:

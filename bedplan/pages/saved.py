@@ -11,7 +11,7 @@ from bedplan.pages import controls, loaded
 from bedplan.plan import SavedPlan, as_json, as_totals, from_saved_totals
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
     from bedplan.plan import Answers
 
@@ -24,7 +24,9 @@ def plan_as_json() -> str:
     inputs = st.session_state.get("settings", {})
     settings = {name: inputs.get(name, {}) | shares.get(name, {}) for name in (*inputs, *shares)}
     limit = {key: st.session_state[key] for key in ("limit", "within", "measure") if key in st.session_state}
-    return as_json(SavedPlan(loaded.records().fingerprint, settings, typed, loaded.files().answers, limit))
+    return as_json(
+        SavedPlan(loaded.records().fingerprint, settings, typed, loaded.files().answers, limit, _reasons_said())
+    )
 
 
 def answers_for(content: bytes) -> Answers | None:
@@ -50,6 +52,7 @@ def use_plan(plan: SavedPlan) -> None:
         controls.inputs_from(values)
     st.session_state["typed"] = st.session_state.get("typed", {}) | typed
     st.session_state.update(_limit(plan.limit))
+    _take_reasons(plan.reasons)
     if plan.records == loaded.records().fingerprint:
         controls.take_settings(plan.settings)
         shown = st.session_state.get("ward")
@@ -57,6 +60,20 @@ def use_plan(plan: SavedPlan) -> None:
             controls.show_ward(shown)
     else:
         st.session_state["planned"] = plan
+
+
+def _reasons_said() -> dict[str, list[str]]:
+    """Return which reasons the planner took for lack of a bed, by the fingerprint of their list."""
+    said = {kind: getattr(log, "no_bed_reasons", None) for kind, log in loaded.files().given.items()}
+    return {loaded.fingerprint_of(kind): list(reasons) for kind, reasons in said.items() if reasons is not None}
+
+
+def _take_reasons(planned: Mapping[str, Sequence[str]]) -> None:
+    """Take up what a plan says of reasons; it waits for exactly the lists that it was said of."""
+    st.session_state["planned_reasons"] = {**st.session_state.get("planned_reasons", {}), **planned}
+    for kind in loaded.files().given:
+        if loaded.fingerprint_of(kind) in planned:
+            loaded.use_reasons(kind, tuple(planned[loaded.fingerprint_of(kind)]))
 
 
 def _limit(saved: Mapping[str, Any]) -> dict[str, Any]:

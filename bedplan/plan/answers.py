@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
 from bedplan.data import IntakeChoices
@@ -14,11 +14,29 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class Answers:
-    """What a person said about a file: ``columns`` = our name → heading, ``date_order``, and the other ``choices``."""
+    """What a person said about a file: ``columns`` = our name → heading, ``date_order``, and the other ``choices``.
+
+    ``ready_file``: the file of ready dates that a plan was made with; a plan holds its name, not the keys in it.
+    """
 
     columns: Mapping[str, str] = field(default_factory=dict)
     date_order: str | None = None
     choices: IntakeChoices = field(default_factory=IntakeChoices)
+    ready_file: str | None = field(default=None, compare=False)
+
+    def with_ready_dates(self, here: Answers) -> Answers:
+        """Return these answers with the ready dates in hand, which no plan holds."""
+        return replace(self, choices=replace(self.choices, ready_dates=here.choices.ready_dates))
+
+    @property
+    def ready_sentence(self) -> str:
+        """What has to be given again, or nothing?"""
+        if self.ready_file is None or self.choices.ready_dates is not None:
+            return ""
+        return (
+            f"This plan was made with ready dates from {self.ready_file}; a plan holds no keys of patients. Give that file "
+            "again, or planning goes on without it."
+        )
 
     def to_read(self) -> dict[str, Any]:
         """Return the answers as the arguments of ``read_records``."""
@@ -53,6 +71,7 @@ class Answers:
             "excluded": [[*(day.isoformat() for day in period), why] for period, why in said.left_out()],
             "time_zone": said.time_zone,
             "bed_on_leave": said.bed_on_leave,
+            "ready_file": said.ready_dates and said.ready_dates.name,
         }
 
 
@@ -88,6 +107,7 @@ def saved_answers(held: Mapping[str, Any]) -> Answers:
             time_zone=_text(held.get("time_zone")),
             bed_on_leave=_text(held.get("bed_on_leave")),
         ),
+        _text(held.get("ready_file")),
     )
 
 

@@ -13,7 +13,7 @@ from bedplan.plan.answers import Answers, saved_answers
 from bedplan.plan.baseline import Baseline, from_totals
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
 PLAN_FORMAT = 1
 TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "beds")
@@ -23,7 +23,8 @@ TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "
 class SavedPlan:
     """What a plan file holds: settings, typed totals and answers about the records; never a row or a count of rows.
 
-    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read; ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the records it was made with.
+    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read; ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the records it was made with;
+    ``reasons``: the fingerprint of a list of refusals or cancellations → its reasons that mean no bed was free.
     """
 
     records: str
@@ -31,6 +32,7 @@ class SavedPlan:
     typed: Mapping[str, Mapping[str, Any]]
     answers: Answers = field(default_factory=Answers)
     limit: Mapping[str, str | float] = field(default_factory=dict)
+    reasons: Mapping[str, Sequence[str]] = field(default_factory=dict)
 
 
 def as_json(plan: SavedPlan) -> str:
@@ -45,6 +47,7 @@ def as_json(plan: SavedPlan) -> str:
         "typed": plan.typed,
         "answers": plan.answers.as_saved(),
         "limit": plan.limit,
+        "reasons": plan.reasons,
     }
     return json.dumps(held, indent=1, ensure_ascii=False, default=dict)
 
@@ -66,6 +69,7 @@ def from_json(text: str | bytes) -> SavedPlan:
         typed = {str(name): _typed(row) for name, row in plan.typed.items()}
         answers = saved_answers(plan.answers)
         limit = dict(plan.limit)
+        reasons = {str(name): _texts(said) for name, said in plan.reasons.items()}
     except ImpossibleFigure:
         raise
     except (ValueError, TypeError, AttributeError, KeyError) as problem:
@@ -74,7 +78,14 @@ def from_json(text: str | bytes) -> SavedPlan:
         ) from problem
     if version != PLAN_FORMAT:
         raise UnreadableRecords([f"This plan has format {version}; this program reads format {PLAN_FORMAT}."])
-    return SavedPlan(str(plan.records), settings, typed, answers, limit)
+    return SavedPlan(str(plan.records), settings, typed, answers, limit, reasons)
+
+
+def _texts(held: object) -> list[str]:
+    """Return a list of texts."""
+    if not isinstance(held, list):
+        raise TypeError("not a list")
+    return [str(one) for one in held]
 
 
 def _typed(row: Mapping[str, Any]) -> dict[str, Any]:

@@ -20,7 +20,8 @@ BOXES = {
     "refusals_file": "refusals.csv",
     "cancellations_file": "cancellations.csv",
     "census_file": "census.csv",
-    "return_file": "monthly_return.csv",
+    "bed_requests_file": "bed_requests.csv",
+    "monthly_return_file": "monthly_return.csv",
 }
 
 
@@ -166,7 +167,7 @@ def test_the_largest_upload_is_the_servers(open_app: Callable[..., AppTest], roo
 
     assert limit == 300
     assert f"Largest upload {st.get_option('server.maxUploadSize')} MB" in said
-    assert "python -m bedplan folder/stays.csv" in said
+    assert "`python -m bedplan folder/stays.csv --capacity beds.csv`" in said
 
 
 @pytest.mark.parametrize("box", BOXES)
@@ -199,7 +200,7 @@ def test_a_bad_file_in_any_box_changes_nothing(app: AppTest, box: str, content: 
 def test_a_file_for_another_box_is_refused(app: AppTest, box: str, demo_data: Path) -> None:
     """A file of another kind is told by what shows it, and changes nothing."""
     before = app.session_state["files"]
-    other = "census.csv" if box in ("refusals_file", "cancellations_file") else "bed_requests.csv"
+    other = "census.csv" if box in ("refusals_file", "cancellations_file", "bed_requests_file") else "bed_requests.csv"
     give(app, box, other, (demo_data / other).read_bytes()[:2000].rsplit(b"\n", 1)[0])
 
     assert len(app.error) == 1
@@ -340,7 +341,7 @@ def test_dates_that_read_two_ways_are_asked_for(app: AppTest, box: str) -> None:
 def test_a_return_leaves_wards_with_stays_alone(app: AppTest) -> None:
     """A monthly return makes wards of those that have no stays; one it can't make is named, and the others are made."""
     rows = b"2024-01,East,310,300,40\n2024-01,North,310,200,30\n2024-01,Closed,0,0,0\n"
-    give(app, "return_file", "return.csv", b"month,ward,available bed days,occupied bed days,discharges\n" + rows)
+    give(app, "monthly_return_file", "return.csv", b"month,ward,available bed days,occupied bed days,discharges\n" + rows)
 
     said = text(app.caption)
     assert "1 ward is ready" in said
