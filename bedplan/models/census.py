@@ -1,34 +1,36 @@
 """How many patients want a bed at once, if nobody is ever turned away: the whole distribution, not its mean alone.
 
-Unbooked patients: Poisson about the load of the hour; negative binomial when they come together or their rate is
-uncertain, binomial when they come more evenly than chance. Booked patients: each is there or not, with a known chance.
+Unbooked patients: Poisson about the load of the hour; negative binomial when their rate is uncertain, the exact law of
+equal groups when they come together, binomial when they come more evenly than chance. Booked patients: each is there or
+not, with a known chance.
 """
 
 from __future__ import annotations
 
-from functools import lru_cache
 from itertools import pairwise
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Literal, NamedTuple
 
 import numpy as np
 from scipy import special
 
-from bedplan.models.clusters import group_sizes, peakedness
-from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, hours_held
+from bedplan.models.booked_census import booked_census
+from bedplan.models.clusters import peakedness
+from bedplan.models.group_census import ahead_in_group, at_least_in_groups, loads_by_number
+from bedplan.models.leaving import HOURS_A_WEEK
 from bedplan.models.load_grid import load_grid
-from bedplan.models.year import leaving_of, unbooked_load_by_hour
+from bedplan.models.within_hour import looks, parts_of_hour, unbooked_load_within
+from bedplan.models.year import leaving_of
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from bedplan.models.demand import BookedList, Demand
+    from bedplan.models.demand import Demand
 
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]
 
-_NOBODY = 1e-9
 _INDEPENDENT = 1e-6
-_HOUR_OF_WEEK = np.arange(HOURS_A_YEAR) % HOURS_A_WEEK
+_NEVER = 1e-17
 
 
 def at_least(counts: Counts, mean: Array, swing: Array | float) -> Array:
@@ -52,96 +54,77 @@ def at_least(counts: Counts, mean: Array, swing: Array | float) -> Array:
     return np.where(counts[:, None] > 0, chance, 1.0)
 
 
-def chances_present(booked: BookedList, leaving: Leaving) -> Array:
-    """With which chance is each booked patient in a bed in each hour of the week? ``(168, patients)``.
-
-    One column for each patient of each of the past weeks who may still be there.
-    """
-    held = hours_held(booked.length_of_stay, leaving, HOURS_A_YEAR)
-    hours, columns = np.arange(HOURS_A_WEEK), []
-    for day, patients in enumerate(booked.per_weekday):
-        came = 24 * day + booked.hour
-        since = (hours - came) % HOURS_A_WEEK
-        row = held[came % held.shape[0]]
-        weeks = since[:, None] + HOURS_A_WEEK * np.arange(row.size // HOURS_A_WEEK)
-        chance = booked.attends * np.clip(row[weeks], 0.0, 1.0)
-        chance = chance[:, chance.max(axis=0) > _NOBODY]
-        columns.append(np.repeat(chance, patients, axis=1))
-    return np.concatenate(columns, axis=1)
-
-
-def number_present(chances: Array) -> Array:
-    """How likely is each number of patients, if each is there with its own chance? ``(..., patients)`` -> ``(..., k)``.
-
-    Numbers too large to happen (chance below 1e-15 or so) are left out.
-
-    Source: Gallivan & Utley 2005, IMA Journal of Management Mathematics 16:173-186; Hong 2013 (Poisson-binomial).
-    Checked by: tests/models/test_unlimited.py
-    """
-    mean = float(chances.sum(axis=-1).max(initial=0.0))
-    most = int(min(chances.shape[-1], np.ceil(mean + 12.0 * np.sqrt(mean) + 30.0)))
-    likely = np.zeros((most + 1, *chances.shape[:-1]))
-    likely[0] = 1.0
-    for patient, chance in enumerate(np.moveaxis(chances, -1, 0)):
-        so_far = likely[: patient + 2]
-        moved = so_far[:-1] * chance
-        so_far *= 1.0 - chance
-        so_far[1:] += moved
-    return np.ascontiguousarray(np.moveaxis(likely, 0, -1))
-
-
-@lru_cache(maxsize=128)
-def booked_present(booked: tuple[BookedList, ...], leaving: Leaving) -> Array:
-    """How likely is each number of booked patients in beds in each hour of the week? ``(168, k)``."""
-    if not booked:
-        return np.ones((1, 1))
-    return number_present(np.concatenate([chances_present(one, leaving) for one in booked], axis=1))
-
-
-def ahead_in_group(demand: Demand) -> Array:
-    """How likely is it that 0, 1, 2 … others of a patient's own group took a bed just before?"""
-    if demand.clustering <= 1.0:
-        return np.ones(1)
-    shares = group_sizes(demand.clustering)
-    return np.cumsum((shares / np.arange(1, shares.size + 1))[::-1])[::-1]
-
-
 class Watch(NamedTuple):
     """Which hours to look at, as whom: weight of each hour, and its group, ``(8736,)`` each.
 
-    ``as_unbooked``: as a patient of the unbooked stream, who comes oftener when the rate is high and may come with
-    others.
+    ``who``: at any moment; or as a patient of the unbooked stream, who comes oftener when the rate is high and may
+    come with others; or as a booked patient, who finds a part of the own list there.
     """
 
     weights: Array
     group: Counts
-    as_unbooked: bool = False
+    who: Literal["anyone", "unbooked", "booked"] = "anyone"
+
+
+def _unbooked_at_least(demand: Demand, counts: Counts, loads: Array, *, weighed: bool) -> Array:
+    """Return the chance of this many unbooked patients or more at each load, ``(n, k)``."""
+    drift = demand.rate_variation**2
+    if demand.clustering > 1.0 + _INDEPENDENT:
+        return at_least_in_groups(counts, loads, loads_by_number(demand), (drift, weighed))
+    mean = loads * (1.0 + drift) if weighed else loads
+    return at_least(counts, mean, peakedness(demand) + drift * loads)
+
+
+def _with_others(counts: Counts, others: tuple[Counts, Array], unbooked: tuple[Counts, Array]) -> Array:
+    """Return the chance of this many or more, ``(groups, n)``, where so many others ``(k,)`` are there too.
+
+    ``others``: numbers, and the weight of each group's hours at each load ``(k, groups, g)`` with that number.
+    ``unbooked``: numbers ``(m,)`` and the chance of as many or more at each load, ``(m, g)``.
+    """
+    (numbers, mixed), (fewer, chance) = others, unbooked
+    certain, possible = int((chance.min(axis=1) >= 1.0).sum()), int((chance.max(axis=1) > 0.0).sum())
+    limits = np.append(fewer, np.iinfo(np.int64).max)[[certain, possible]]
+    found, up_to = np.zeros((2, mixed.shape[1], counts.size + 1))
+    for number, weight, total in zip(numbers.tolist(), mixed, mixed.sum(axis=2), strict=True):
+        lowest, highest = np.searchsorted(counts - number, limits)
+        up_to[:, lowest] += total
+        at = np.searchsorted(fewer, counts[lowest:highest] - number)
+        found[:, lowest:highest] += weight @ chance[at].T
+    return found[:, :-1] + np.cumsum(up_to[:, :0:-1], axis=1)[:, ::-1]
 
 
 def chance_of(demand: Demand, counts: Counts, watch: Watch) -> Array:
     """What is the chance of this many beds wanted or more, averaged over the hours of each group? ``(groups, n)``.
 
-    The unbooked census is convolved with the booked one exactly, hour of the week by hour of the week.
+    The unbooked census is convolved with the booked one exactly, hour of the week by hour of the week; where the
+    number changes fast within an hour, part by part.
 
     Checked by: tests/models/test_unlimited.py
     """
-    extra = booked_present(demand.booked, leaving_of(demand))
-    if watch.as_unbooked:
+    parts, looked = parts_of_hour(demand), np.flatnonzero(watch.weights > 0)
+    groups = int(watch.group.max()) + 1
+    if looked.size == 0:
+        return np.zeros((groups, counts.size))
+    census = booked_census(demand.booked, leaving_of(demand), parts)
+    extra = census.when_booked_come if watch.who == "booked" else census.at_any_moment
+    if watch.who == "unbooked":
         ahead = ahead_in_group(demand)
         extra = np.stack([np.convolve(row, ahead) for row in extra])
-    groups, rows = int(watch.group.max()) + 1, extra.shape[0]
-    cells, cell = np.unique(watch.group * rows + _HOUR_OF_WEEK % rows, return_inverse=True)
-    grid = load_grid(unbooked_load_by_hour(demand), watch.weights, cell, cells.size)
+    rows = extra.shape[0]
+    row_of_look = (looked % HOURS_A_WEEK * parts + np.arange(parts)[:, None]) % rows
+    cells, cell = np.unique((watch.group[looked] * rows + row_of_look).ravel(), return_inverse=True)
+    weights = (looks(parts)[1][:, None] * watch.weights[looked]).ravel()
+    grid = load_grid(unbooked_load_within(demand, parts)[:, looked].ravel(), weights, cell, cells.size)
     of_group, row = np.divmod(cells, rows)
-    drift = demand.rate_variation**2
-    fewer = np.unique(np.maximum(counts[:, None] - np.arange(extra.shape[1]), 0))
-    mean = grid.loads * (1.0 + drift) if watch.as_unbooked else grid.loads
-    chance = at_least(fewer, mean, peakedness(demand) + drift * grid.loads)
+    happens = np.flatnonzero(extra.max(axis=0) > _NEVER)
     ends = np.searchsorted(of_group, np.arange(groups + 1))
     inside = [slice(*pair) for pair in pairwise(ends)]
-    mixed = np.stack([extra[row[here]].T @ grid.weights[here] for here in inside], axis=1)
-    found = np.zeros((groups, counts.size))
-    for number, weights in enumerate(mixed):
-        found += weights @ chance[np.searchsorted(fewer, np.maximum(counts - number, 0))].T
+    mixed = np.stack([extra[row[here]][:, happens].T @ grid.weights[here] for here in inside], axis=1)
+    needed = np.zeros(int(counts.max(initial=0)) + 1, dtype=bool)
+    for number in happens.tolist():
+        needed[np.maximum(counts - number, 0)] = True
+    fewer = np.flatnonzero(needed)
+    chance = _unbooked_at_least(demand, fewer, grid.loads, weighed=watch.who == "unbooked")
+    found = _with_others(counts, (happens, mixed), (fewer, chance))
     total = np.bincount(of_group, grid.weights.sum(axis=1), groups)[:, None]
     return np.clip(np.divide(found, total, out=np.zeros_like(found), where=total > 0), 0.0, 1.0)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -9,6 +10,7 @@ import numpy as np
 
 from bedplan.models.bed_curve import BedCurve, bed_counts
 from bedplan.models.census import Watch, chance_of
+from bedplan.models.group_census import more_find_full_if_groups_differ
 from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR
 from bedplan.models.year import (
     WEEKS,
@@ -32,6 +34,11 @@ _GROUPS = 12 * 7
 _GROUP_OF_HOUR = month_of_hour * 7 + weekday_of_hour
 _MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 _BUSY = 0.05
+_SMOOTH_NOTE = (
+    "Arrivals smoother than chance: the number present is taken as binomial. Where 1 in 20 or more find the ward full the "
+    "figure is up to a quarter too high; where fewer than 1 in 100 do, up to a quarter too low."
+)
+_GROUPS_IN_RHYTHM = ", and with a rhythm of the week or day the figure is up to an eighth too low"
 _MOST_COUNTS = 2_000
 
 
@@ -47,18 +54,20 @@ def unlimited_beds(demand: Demand, beds: ArrayLike) -> BedCurve:
 
     Also the share of hours with more patients than beds, for the year and each month. Averaged over patients: who
     comes with others finds them there, and more come when the rate is high. Beds under turnaround count as wanted;
-    occupancy counts patients only. A booked patient counts half in the hour of coming, so booked shares are a little
-    too high.
+    occupancy counts patients only. Booked patients come at any moment of their hour, and each finds those of the list
+    who came before. Exact for patients who come one by one, booked or not, and for groups of equal size at a steady
+    rate; the notes say how far it may err for others.
 
-    Source: Eick, Massey & Whitt 1993, Management Science 39(2); Gallivan & Utley 2005; Greenwood & Yule 1920.
+    Source: Eick, Massey & Whitt 1993, Management Science 39(2); Gallivan & Utley 2005; Greenwood & Yule 1920; Daw &
+        Pender 2019.
     Checked by: tests/models/test_unlimited.py
     """
     counts = bed_counts(beds)
     unbooked, booked = unbooked_by_hour(demand), np.tile(all_booked_in_week(demand), WEEKS)
     patients = [np.bincount(_GROUP_OF_HOUR, weights=one) for one in (unbooked, booked)]
-    finds_full = [chance_of(demand, counts, Watch(unbooked, _GROUP_OF_HOUR, as_unbooked=True)), np.zeros(1)]
+    finds_full = [chance_of(demand, counts, Watch(unbooked, _GROUP_OF_HOUR, "unbooked")), np.zeros(1)]
     if demand.booked:
-        finds_full[1] = chance_of(demand, counts, Watch(booked, _GROUP_OF_HOUR))
+        finds_full[1] = chance_of(demand, counts, Watch(booked, _GROUP_OF_HOUR, "booked"))
     everyone = patients[0] + patients[1]
     found = sum(one[:, None] * shares for one, shares in zip(patients, finds_full, strict=True))
     shares = np.where(counts > 0, found / np.maximum(everyone, 1e-300)[:, None], (everyone > 0)[:, None])
@@ -82,14 +91,18 @@ def unlimited_beds(demand: Demand, beds: ArrayLike) -> BedCurve:
 
 
 def _notes(demand: Demand) -> tuple[str, ...]:
-    """Say what the distribution rests on."""
-    if demand.clustering == 1.0 and demand.rate_variation == 0.0:
+    """Say what is assumed of patients who come together, or spread out, and which way it errs."""
+    if demand.arrivals_per_day == 0.0 or demand.clustering == 1.0:
         return ()
+    if demand.clustering < 1.0:
+        return (_SMOOTH_NOTE,)
+    more = math.ceil(100.0 * more_find_full_if_groups_differ(demand))
+    many = f"up to {more} % more" if more <= 100 else "more than twice as many"
+    rhythm = "" if demand.with_changes(booked=()).is_steady else _GROUPS_IN_RHYTHM
     note = (
-        "Beds wanted swing more or less than chance alone: a negative binomial (or binomial) spread with the right "
-        "mean and variance stands for the clusters and the uncertain rate."
+        f"Patients who come together: groups of equal size are assumed{rhythm}. If group sizes differ widely, {many} "
     )
-    return (note,)
+    return (note + "find the ward full than this says, where 1 in 100 or more do.",)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
