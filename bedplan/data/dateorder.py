@@ -2,27 +2,30 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
+import pyarrow as pa
 import pyarrow.compute as pc
 
 from bedplan.data.choices import DATE_ORDERS, DateQuestion, check_date_order
+from bedplan.data.columns import plain
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE, TimesRead, read_times
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
-    import pyarrow as pa
     from numpy.typing import NDArray
 
     from bedplan.data.texttable import TextTable
 
 DAY_FIRST, MONTH_FIRST, ROW_BY_ROW = DATE_ORDERS
 EPOCHS_APART_DAYS = 1_462  # between the 1900 and the 1904 day numbers of spreadsheets
+CLOCK_HEADING = re.compile("(?<!date)time$")  # beside a column of dates
 IN_ORDER = 0.99  # rank correlation of row number and time, from which a file counts as sorted by time
 
 
@@ -88,16 +91,27 @@ def _columns(text: TextTable) -> tuple[dict[str, pa.ChunkedArray], list[str]]:
     columns, notes = {}, []
     for key, other in (("start", "admitted"), ("end", "discharged")):
         day, clock = text.columns.get(f"{key}_date"), text.columns.get(f"{key}_time")
-        if key in text.columns:
+        if key in text.columns and day is not None and CLOCK_HEADING.search(plain(text.headings[key])):
+            columns[key] = _joined(day, text.columns[key])
+        elif key in text.columns:
             columns[key] = text.columns[key]
         elif day is not None:
-            columns[key] = day if clock is None else pc.binary_join_element_wise(day, pc.fill_null(clock, ""), " ")
+            columns[key] = day if clock is None else _joined(day, clock)
         else:
             columns[key] = text.columns[other]
             notes.append(
                 f"The hospital's “{text.headings[other]}” stands in for the {key} on the ward: moves between wards are hidden."
             )
     return columns, notes
+
+
+def _joined(day: pa.ChunkedArray, clock: pa.ChunkedArray) -> pa.ChunkedArray:
+    """Return days and times of day as one text; a spreadsheet's day comes with midnight, its time with a day or as 0905."""
+    day = pc.replace_substring_regex(pc.cast(day, pa.string()), r"[T ]+0{1,2}:00(:00(\.0*)?)?\s*$", "")
+    clock = pc.replace_substring_regex(
+        pc.cast(clock, pa.string()), r"^\s*\d{1,4}[-/.]\d{1,2}[-/.]\d{2,4}[T ]+(\d)", r"\1"
+    )
+    return pc.binary_join_element_wise(day, pc.fill_null(clock, ""), " ")
 
 
 def _question(name: str, columns: Mapping[str, pa.ChunkedArray]) -> UnreadableRecords:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -18,22 +19,49 @@ if TYPE_CHECKING:
 MISSING = np.iinfo(np.int64).min  # a blank cell
 UNREADABLE = MISSING + 1  # something is written there, but no date
 DAY_SECONDS = 86_400
+MOST_LOOKED_AT = 10_000  # to tell 23-01-31 from 31-01-23
 LAST_SECOND = 253_402_300_799  # of the year 9999: what systems write where there is no end yet
 MONTHS = ("jan", "feb", "mar", "apr", "may", "jun", "jul", "aug", "sep", "oct", "nov", "dec")
+# The first three letters of months in English, German, French, Dutch, Italian, Spanish.
+MONTH_NAMES = {
+    name: number + 1
+    for number, names in enumerate(
+        (
+            "jan gen ene jän",
+            "feb fév",
+            "mar mär mrz mae maa mrt",
+            "apr avr abr",
+            "may mai mei mag",
+            "jun giu",
+            "jul lug",
+            "aug aoû aou ago",
+            "sep set",
+            "oct okt ott",
+            "nov",
+            "dec dez déc dic",
+        )
+    )
+    for name in names.split()
+}
 BLANK_WORDS = ("", "null", "none", "na", "n/a", "nan", "nat", "-", "--", ".", "?", "still in", "open", "current")
 
-CLOCK = (
-    r"(?:[T ]+(?P<hour>\d{1,2})[:.h](?P<minute>\d{2})(?:[:.](?P<second>\d{2})(?:[.,]\d+)?)?"
-    r"\s*(?P<half>[AaPp])?\.?[Mm]?\.?\s*(?P<offset>Z|[+-]\d{2}:?\d{2})?)?"
+TIME = (
+    r"(?P<hour>\d{1,2})[:.h]?(?P<minute>\d{2})(?:[:.](?P<second>\d{2})(?:[.,]\d+)?)?"
+    r"\s*(?P<half>[AaPp])?\.?[Mm]?\.?\s*(?:[Uu]hr|uur|h|hrs)?\s*(?P<offset>Z|[+-]\d{2}:?\d{2})?"
 )
-ISO = r"^(?P<year>\d{4})[-/.]?(?P<month>\d{2})[-/.]?(?P<day>\d{2})" + CLOCK + "$"
+CLOCK = f"(?:[T ]+(?:at |um )?{TIME})?"
+ISO = r"^(?P<year>\d{4})[-/.](?P<month>\d{1,2})[-/.](?P<day>\d{1,2})" + CLOCK + "$"
+DIGITS = (
+    r"^(?P<year>\d{4})(?P<month>\d{2})(?P<day>\d{2})(?:[T ]*(?P<hour>\d{2}):?(?P<minute>\d{2})"
+    r"(?::?(?P<second>\d{2})(?:[.,]\d+)?)?(?P<half>)\s*(?P<offset>Z|[+-]\d{2}:?\d{2})?)?$"
+)
 NUMBERS = r"^(?P<first>\d{1,2})[/.\- ](?P<second_part>\d{1,2})[/.\- ](?P<year>\d{4}|\d{2})" + CLOCK + "$"
 NAMED = (
-    r"^(?:[A-Za-z]{2,9}\.?,? +)?(?P<day>\d{1,2})[-/ .]*(?P<name>[A-Za-z]{3})[A-Za-z]*[-/ .,]*(?P<year>\d{4}|\d{2})"
-    + CLOCK
-    + "$"
+    r"^(?:\pL{2,10}\.?,? +)?(?P<day>\d{1,2})(?:er|st|nd|rd|th)?(?:[-/ .]| de )*(?P<name>\pL{3,})"
+    r"(?:[-/ .,]| de )*(?P<year>\d{4}|\d{2})" + CLOCK + "$"
 )
-NAME_FIRST = r"^(?P<name>[A-Za-z]{3})[A-Za-z]*[-/ .]*(?P<day>\d{1,2})(?:st|nd|rd|th)?,? +(?P<year>\d{4})" + CLOCK + "$"
+NAME_FIRST = r"^(?P<name>\pL{3,})[-/ .]*(?P<day>\d{1,2})(?:st|nd|rd|th)?,? +(?P<year>\d{4})" + CLOCK + "$"
+YEAR_FIRST = r"^\d{2}[-/.]\d{1,2}[-/.]\d{2}([T ]|$)"
 PLAIN_ISO = r"^\d{4}-\d{2}-\d{2}[ T]\d{2}:\d{2}(:\d{2})?$"
 SERIAL = r"^(?P<serial>[2-6]\d{4}(?:[.,]\d+)?)$"
 
@@ -73,7 +101,7 @@ def read_times(
 
     Checked by: tests/data/test_dates.py
     """
-    chunks = column.chunks if isinstance(column, pa.ChunkedArray) else [column]
+    chunks = _with_century(column.chunks if isinstance(column, pa.ChunkedArray) else [column])
     parts = each(lambda chunk: _fast_iso(chunk) or _slow(chunk, date_order, time_zone), chunks)
     none = np.zeros(0, dtype=np.int64)
     return TimesRead(
@@ -84,6 +112,21 @@ def read_times(
         sum(part.month_first_only for part in parts),
         sum(part.either_order for part in parts),
     )
+
+
+def _with_century(chunks: list[pa.Array]) -> list[pa.Array]:
+    """Complete years in dates such as 23-01-31, told from 31-01-23 by which number changes least."""
+    first = next((value for chunk in chunks for value in chunk[:100].to_pylist() if value), None)
+    if not isinstance(first, str) or re.match(YEAR_FIRST, first.strip()) is None:
+        return chunks
+    texts = [pc.utf8_trim_whitespace(chunk) for chunk in chunks]
+    some = [value for value in texts[0][:MOST_LOOKED_AT].to_pylist() if value and re.match(YEAR_FIRST, value)]
+    outer = [{re.split(r"[-/.T ]", value)[place] for value in some} for place in (0, 2)]
+    if len(outer[0]) >= len(outer[1]) or max(outer[1]) > "31":
+        return chunks
+    return [
+        pc.replace_substring_regex(text, r"^(\d{2})([-/.]\d{1,2}[-/.]\d{2}(?:[T ]|$))", r"20\1\2") for text in texts
+    ]
 
 
 def _fast_iso(part: pa.Array) -> TimesRead | None:
@@ -120,7 +163,7 @@ def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> Ti
     left = ~blank
     left[_plain_iso(text, seconds)] = False
     had_offset, serial, counts = False, np.zeros(size, bool), (0, 0, 0)
-    for pattern in (ISO, NUMBERS, NAMED, NAME_FIRST, SERIAL):
+    for pattern in (ISO, DIGITS, NUMBERS, NAMED, NAME_FIRST, SERIAL):
         rows = np.flatnonzero(left)
         if not rows.size:
             break
@@ -136,7 +179,7 @@ def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> Ti
         if pattern is NUMBERS:
             seconds[rows], counts = _from_numbers(parts, date_order)
         else:
-            seconds[rows] = _from_names(parts) if pattern is not ISO else _from_iso(parts)
+            seconds[rows] = _from_names(parts) if pattern in (NAMED, NAME_FIRST) else _from_iso(parts)
         offset = pc.not_equal(parts.field("offset"), "").to_numpy(zero_copy_only=False)
         if offset.any():
             had_offset = True
@@ -175,8 +218,11 @@ def _from_iso(parts: pa.StructArray) -> NDArray[np.int64]:
 
 
 def _from_names(parts: pa.StructArray) -> NDArray[np.int64]:
-    found = pc.index_in(pc.utf8_lower(parts.field("name")), value_set=pa.array(MONTHS))
-    month = pc.fill_null(pc.cast(found, pa.int64()), -1).to_numpy(zero_copy_only=False) + 1
+    name = pc.utf8_normalize(pc.utf8_lower(parts.field("name")), "NFC")
+    name = pc.replace_substring_regex(name, "^jui([nl])", r"ju\1")  # juin, juillet
+    found = pc.index_in(pc.utf8_slice_codeunits(name, 0, 3), value_set=pa.array(list(MONTH_NAMES)))
+    numbers = np.array([*MONTH_NAMES.values(), 0])
+    month = numbers[pc.fill_null(found, -1).to_numpy(zero_copy_only=False)]
     year, day = _four_digits(_whole(parts.field("year"))), _whole(parts.field("day"))
     return seconds_of(year, month, day, _clock(parts))
 

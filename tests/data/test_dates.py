@@ -55,6 +55,17 @@ FOURTH_OF_MARCH = seconds(at("2023-03-04 14:05"))
         "March 4, 2023 2:05 pm",
         "Mar 4th, 2023 14:05",
         " 2023-03-04 14:05 ",
+        "2023-3-4 14:05",
+        "2023-03-04 1405",
+        "202303041405",
+        "20230304140500",
+        "04.03.2023 14:05 Uhr",
+        "04.03.2023 um 14:05 Uhr",
+        "4. März 2023 14:05",
+        "4 mars 2023 14h05",
+        "4 maart 2023 14:05",
+        "4 mrt. 2023 14:05",
+        "4 de marzo de 2023 14:05",
     ],
 )
 def test_one_moment_in_many_spellings(text: str) -> None:
@@ -151,3 +162,34 @@ def test_day_first_dates_round_trip(moment: dt.datetime, sign: str) -> None:
     moment = moment.replace(second=0, microsecond=0)
 
     assert read_one(moment.strftime(f"%d{sign}%m{sign}%Y %H:%M"), "day first") == seconds(moment)
+
+
+# Months 1 to 12 as their languages write them, in full and short (from memory).
+MONTHS = {
+    "German": "Januar Februar März April Mai Juni Juli August September Oktober November Dezember",
+    "German, short": "Jän. Feb. Mrz Apr. Mai Jun. Jul. Aug. Sept. Okt. Nov. Dez.",
+    "French": "janvier février mars avril mai juin juillet août septembre octobre novembre décembre",
+    "French, short": "janv. févr. mars avr. mai juin juil. aout sept. oct. nov. déc.",
+    "Dutch": "januari februari maart april mei juni juli augustus september oktober november december",
+    "Italian": "gennaio febbraio marzo aprile maggio giugno luglio agosto settembre ottobre novembre dicembre",
+    "Spanish": "enero febrero marzo abril mayo junio julio agosto septiembre octubre noviembre diciembre",
+}
+
+
+@pytest.mark.parametrize("language", MONTHS)
+def test_months_of_other_languages(language: str) -> None:
+    """Every month is read, in full and as it is cut short, whatever its capitals."""
+    for number, name in enumerate(MONTHS[language].split(), 1):
+        wanted = seconds(dt.datetime(2023, number, 5))  # noqa: DTZ001  the ward's clock has no zone
+        assert read_one(f"5 {name} 2023") == wanted
+        assert read_one(f"05-{name.upper()}-23") == wanted
+
+
+@pytest.mark.parametrize("sign", "-./")
+def test_years_of_two_digits_may_stand_first(sign: str) -> None:
+    """A column whose first numbers are 22 and 23 and whose last ones run to 31 is written year first; else day first."""
+    days = [dt.datetime(2022, 12, 20) + dt.timedelta(days=day) for day in range(40)]  # noqa: DTZ001
+    for form in (f"%y{sign}%m{sign}%d %H:%M", f"%d{sign}%m{sign}%y %H:%M"):
+        read = read_times(pa.chunked_array([[None, *(f"{day:{form}}" for day in days)]]), "day first").seconds
+
+        assert list(read[1:]) == [seconds(day) for day in days]

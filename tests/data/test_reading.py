@@ -131,3 +131,18 @@ def test_a_large_file_is_read_alike_however_its_last_time_is_written(tmp_path: P
     assert len(at_path) == 30_001
     assert at_path["end"].max() == pd.Timestamp("2024-01-05 10:00")
     pd.testing.assert_frame_equal(at_path, in_memory)
+
+
+@pytest.mark.parametrize("times", [("14:05", "09:05"), ("1405", "905"), ("14.05", "9.05"), ("14:05:00", "09:05 Uhr")])
+@pytest.mark.parametrize("midnight", ["", " 00:00:00", " 00:00"])
+def test_date_cells_beside_time_cells(times: tuple[str, str], midnight: str) -> None:
+    """A spreadsheet's date cell comes with a midnight that its time cell takes the place of."""
+    rows = [
+        f"p{n},Heron,2024-01-{n:02d}{midnight},{times[0]},2024-01-{n + 2:02d}{midnight},{times[1]}"
+        for n in range(1, 20)
+    ]
+    text = "\n".join(["patient_key,ward,start date,start time,end date,end time", *rows])
+    stays = read_records(text.encode(), name="stays.csv").stays
+
+    assert set(stays["start"].dt.strftime("%H:%M")) == {"14:05"}
+    assert set(stays["end"].dt.strftime("%H:%M")) == {"09:05"}
