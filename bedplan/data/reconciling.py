@@ -187,9 +187,7 @@ def _comings_and_goings(records: Records) -> Check:
     off = [str(ward) for ward in gap.index[gap != 0]]
     return Check(
         "Came in + moved in − moved out − left = change in patients",
-        f"{came.sum():,} + {moved_in.sum():,} − {moved_out.sum():,} − {left.sum():,} = {change.sum():+,}".replace(
-            "-", "−"
-        ),
+        f"{came.sum():,} + {moved_in.sum():,} − {moved_out.sum():,} − {left.sum():,} = {_signed(int(change.sum()))}",
         f"does not add up on {', '.join(off[:5])}" if off else "adds up on every ward",
         any(_few(int(one.sum())) for one in (came, moved_in, moved_out, left)) or _few(abs(int(change.sum()))),
     )
@@ -228,7 +226,7 @@ def _against_census(records: Records, census: Census) -> Check:
     wards = [ward for ward in records.wards if (kept["ward"] == ward).any()]
     checks = [check_census(records, replace(census, table=kept), ward, clock) for ward in wards]
     sums = {one.ward: (one.days["rebuilt"].sum(), one.days["official"].sum()) for one in checks if len(one.days)}
-    return _compared(f"Patients at {clock}: from stays, against {census.name}", sums)
+    return _compared(f"Patients at {clock}, all days: from stays, against {census.name}", sums)
 
 
 def _against_return(records: Records, returned: MonthlyReturn) -> Check:
@@ -258,5 +256,10 @@ def _compared(what: str, sums: Mapping[str, tuple[float, float]]) -> Check:
 
 
 def _change(gap: float, of: float) -> str:
-    """Write a difference as percent."""
-    return (f"{100 * gap / of:+.1f} %" if of > 0 else f"{gap:+,.0f}").replace("-", "−")
+    """Write a difference as percent, or as a count where there is nothing to compare it with."""
+    return f"{100 * gap / of:+.1f} %".replace("-", "−") if of > 0 else _signed(round(gap))
+
+
+def _signed(count: int) -> str:
+    """Write a change of a count."""
+    return f"{count:+,}".replace("-", "−") if count else "0"

@@ -105,7 +105,7 @@ def load_stays() -> None:
     )
     st.caption(
         f"Files stay in this computer's memory. Largest upload {st.get_option('server.maxUploadSize')} MB; a larger file is "
-        "read where it lies, by the command `python -m bedplan folder/stays.csv --capacity beds.csv`."
+        "read where it lies, by the command python -m bedplan folder/stays.csv"
     )
     if given is None:
         st.session_state.pop("refused", None)
