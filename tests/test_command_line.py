@@ -10,7 +10,7 @@ import openpyxl
 import pytest
 
 from bedplan.__main__ import main
-from bedplan.data import IntakeChoices, estimate_demand, read_capacity, read_records
+from bedplan.data import IntakeChoices, estimate_demand, read_capacity, read_ready_dates, read_records
 from bedplan.decision import TurnAwayLimit, decide
 from bedplan.plan import Answers, Changes, SavedPlan, as_json, from_estimate, planned_ward
 
@@ -95,6 +95,28 @@ def test_the_order_of_dates_can_be_said(tmp_path: Path, capsys: pytest.CaptureFi
     assert "day first" in capsys.readouterr().err
 
     assert main([str(stays), "--dates", "day first", "--out", str(tmp_path)]) == 0
+
+
+def test_ready_dates_are_joined(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """A file of ready dates is read and named in the document; a plan made with one asks for it where it is not given."""
+    first = dt.datetime(2024, 1, 1, 9)  # noqa: DTZ001  records hold local clock times
+    stays, ready, plan = (tmp_path / name for name in ("stays.csv", "ready.csv", "plan.json"))
+    moments = [first + dt.timedelta(hours=17 * count) for count in range(300)]
+    rows = [f"p{n},East,{at:%Y-%m-%d %H:%M},{at + dt.timedelta(days=4):%Y-%m-%d %H:%M}" for n, at in enumerate(moments)]
+    stays.write_text("\n".join(["patient_key,ward,start,end", *rows]))
+    days = [f"p{n},{at + dt.timedelta(days=3):%Y-%m-%d %H:%M}" for n, at in enumerate(moments)]
+    ready.write_text("\n".join(["patient_key,date", *days]))
+    answers = Answers(choices=IntakeChoices(ready_dates=read_ready_dates(ready)))
+    plan.write_text(as_json(SavedPlan("", {}, {}, answers)), encoding="utf-8")
+    words = [str(stays), "--beds", "9", "--answers", str(plan), "--out", str(tmp_path)]
+
+    assert main(words) == 0
+    assert "ready dates from ready.csv" in capsys.readouterr().err
+    assert main([*words, "--ready", str(ready)]) == 0
+    assert capsys.readouterr().err == ""
+    pages = [path.read_text(encoding="utf-8") for path in tmp_path.glob("*.html")]
+    mark = hashlib.sha256(ready.read_bytes()).hexdigest()
+    assert any(mark in page and "300 ward stays have a ready date from it" in page for page in pages)
 
 
 @pytest.mark.parametrize(

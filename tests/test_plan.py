@@ -10,7 +10,15 @@ from typing import TYPE_CHECKING
 import pytest
 
 from bedplan import wording
-from bedplan.data import IntakeChoices, estimate_demand, hidden_demand, read_capacity, read_monthly_return, read_records
+from bedplan.data import (
+    IntakeChoices,
+    estimate_demand,
+    hidden_demand,
+    read_capacity,
+    read_monthly_return,
+    read_ready_dates,
+    read_records,
+)
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 from bedplan.plan import (
@@ -132,6 +140,7 @@ def test_a_saved_plan_comes_back_as_it_was() -> None:
             ),
         ),
         limit={"limit": 3, "within": "year", "measure": "wait4"},
+        reasons={"ab" * 32: ["Code 7", "überbelegt"]},
     )
 
     assert from_json(as_json(plan)) == plan
@@ -165,6 +174,28 @@ def test_damaged_answers_are_not_a_plan(answers: dict) -> None:
     """Days that are none make the file no plan."""
     with pytest.raises(UnreadableRecords, match="not a plan saved by bedplan"):
         from_json(json.dumps({"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": answers}))
+
+
+@pytest.mark.parametrize("reasons", [["Code 7"], {"ab": "Code 7"}, {"ab": 7}])
+def test_damaged_reasons_are_not_a_plan(reasons: object) -> None:
+    """Reasons that are no lists by fingerprint make the file no plan; a text is not taken for its letters."""
+    held = {"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": {}, "reasons": reasons}
+    with pytest.raises(UnreadableRecords, match="not a plan saved by bedplan"):
+        from_json(json.dumps(held))
+
+
+def test_ready_dates_are_named_and_never_kept() -> None:
+    """A plan names the file of ready dates and holds no key of it; opened, it asks for the file unless it is in use."""
+    ready = read_ready_dates(b"patient_key,date\nSECRET-1,2024-02-01 10:00\n", name="ready.csv")
+    used = Answers(choices=IntakeChoices(ready_dates=ready))
+    text = as_json(SavedPlan("", {}, {}, used))
+    opened = from_json(text).answers
+
+    assert "SECRET" not in text
+    assert "ready dates from ready.csv" in opened.ready_sentence
+    assert opened.with_ready_dates(used).ready_sentence == ""
+    assert opened.with_ready_dates(used).choices.ready_dates is ready
+    assert Answers().ready_sentence == ""
 
 
 def test_every_answer_is_named_in_a_document() -> None:

@@ -3,15 +3,21 @@
 from __future__ import annotations
 
 import datetime as dt
+import io
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
+import openpyxl
 import pytest
 
 from bedplan import wording
+from bedplan.data import Check, adds_up, read_records
+from bedplan.decision import TurnAwayLimit, Ward
 from bedplan.errors import ImpossibleFigure
-from bedplan.export import Justification, Source
+from bedplan.export import Justification, Source, as_html, as_xlsx, case_for
 from bedplan.export.justification import count_or_withheld
+from bedplan.models import LengthOfStay
+from bedplan.plan import from_totals
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -83,3 +89,24 @@ def test_demo_source_balances(demo_data: Path) -> None:
     assert source.rows_in == source.used + source.repaired + source.set_aside
     assert source.fingerprint == hashlib.sha256((demo_data / "stays.csv").read_bytes()).hexdigest()
     assert source.window == "01 April 2022 to 31 March 2025"
+
+
+def test_figures_that_add_up_are_in_the_document(demo_data: Path) -> None:
+    """Every check is printed with its verdict, in the page and in the workbook; figures of a few patients are withheld."""
+    records = read_records(demo_data / "stays.csv")
+    checks = (*adds_up(records), Check("Odd patients", "3 against 4", "do not agree", points_at_few=True))
+    source = Source.from_records(records, checks=checks)
+    ward = from_totals("Annex", 1000.0, LengthOfStay(5.0), 14)
+    paper = Justification(
+        (case_for(Ward("Annex", 14, ward.demand), TurnAwayLimit(0.05)),), source, dt.date(2026, 12, 1)
+    )
+    page = as_html(paper).decode()
+    book = openpyxl.load_workbook(io.BytesIO(as_xlsx(paper)))
+    cells = list(book["Does it add up"].iter_rows(min_row=2, values_only=True))
+
+    for check in checks[:-1]:
+        assert f"<td>{check.what}</td><td>{check.figures}</td><td>{check.verdict}</td>" in page
+        assert (check.what, check.figures, check.verdict) in cells
+    assert "<td>Odd patients</td><td>*</td><td>do not agree</td>" in page
+    assert ("Odd patients", "*", "do not agree") in cells
+    assert "counts of 1 to 7 are withheld" in page
