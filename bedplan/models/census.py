@@ -15,8 +15,8 @@ from scipy import special
 
 from bedplan.models.booked_census import booked_census
 from bedplan.models.clusters import peakedness
-from bedplan.models.group_census import ahead_in_group, at_least_in_groups, loads_by_number
-from bedplan.models.leaving import HOURS_A_WEEK
+from bedplan.models.group_census import HoursOfGroups, ahead_in_group, at_least_in_groups, groups_by_hour
+from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR
 from bedplan.models.load_grid import load_grid
 from bedplan.models.within_hour import looks, parts_of_hour, unbooked_load_within
 from bedplan.models.year import leaving_of
@@ -66,11 +66,18 @@ class Watch(NamedTuple):
     who: Literal["anyone", "unbooked", "booked"] = "anyone"
 
 
-def _unbooked_at_least(demand: Demand, counts: Counts, loads: Array, *, weighed: bool) -> Array:
+def _levels(demand: Demand) -> HoursOfGroups:
+    """Return hours in which groups are about as whole as each other; all of them where nobody comes in groups."""
+    if demand.clustering > 1.0 + _INDEPENDENT and demand.arrivals_per_day > 0:
+        return groups_by_hour(demand)
+    return HoursOfGroups(np.ones((1, 1)), np.ones((1, HOURS_A_YEAR)))
+
+
+def _unbooked_at_least(demand: Demand, counts: Counts, loads: Array, rates: Array, *, weighed: bool) -> Array:
     """Return the chance of this many unbooked patients or more at each load, ``(n, k)``."""
     drift = demand.rate_variation**2
-    if demand.clustering > 1.0 + _INDEPENDENT:
-        return at_least_in_groups(counts, loads, loads_by_number(demand), (drift, weighed))
+    if rates.size > 1:
+        return at_least_in_groups(counts, loads, rates, (drift, weighed))
     mean = loads * (1.0 + drift) if weighed else loads
     return at_least(counts, mean, peakedness(demand) + drift * loads)
 
@@ -113,18 +120,30 @@ def chance_of(demand: Demand, counts: Counts, watch: Watch) -> Array:
     rows = extra.shape[0]
     row_of_look = (looked % HOURS_A_WEEK * parts + np.arange(parts)[:, None]) % rows
     cells, cell = np.unique((watch.group[looked] * rows + row_of_look).ravel(), return_inverse=True)
-    weights = (looks(parts)[1][:, None] * watch.weights[looked]).ravel()
-    grid = load_grid(unbooked_load_within(demand, parts)[:, looked].ravel(), weights, cell, cells.size)
+    rates, level_shares = _levels(demand)
+    load, grids = unbooked_load_within(demand, parts)[:, looked], []
+    for of_level in level_shares[:, looked]:
+        weights = looks(parts)[1][:, None] * watch.weights[looked] * of_level
+        grid = load_grid(load.ravel(), weights.ravel(), cell, cells.size)
+        used = grid.weights.any(axis=0)
+        grids.append((grid.loads[used], grid.weights[:, used]))
+    weights = np.hstack([weights for _, weights in grids])
     of_group, row = np.divmod(cells, rows)
     happens = np.flatnonzero(extra.max(axis=0) > _NEVER)
     ends = np.searchsorted(of_group, np.arange(groups + 1))
     inside = [slice(*pair) for pair in pairwise(ends)]
-    mixed = np.stack([extra[row[here]][:, happens].T @ grid.weights[here] for here in inside], axis=1)
+    mixed = np.stack([extra[row[here]][:, happens].T @ weights[here] for here in inside], axis=1)
     needed = np.zeros(int(counts.max(initial=0)) + 1, dtype=bool)
     for number in happens.tolist():
         needed[np.maximum(counts - number, 0)] = True
     fewer = np.flatnonzero(needed)
-    chance = _unbooked_at_least(demand, fewer, grid.loads, weighed=watch.who == "unbooked")
+    weighed = watch.who == "unbooked"
+    chance = np.hstack(
+        [
+            _unbooked_at_least(demand, fewer, loads, one, weighed=weighed)
+            for one, (loads, _) in zip(rates, grids, strict=True)
+        ]
+    )
     found = _with_others(counts, (happens, mixed), (fewer, chance))
-    total = np.bincount(of_group, grid.weights.sum(axis=1), groups)[:, None]
+    total = np.bincount(of_group, weights.sum(axis=1), groups)[:, None]
     return np.clip(np.divide(found, total, out=np.zeros_like(found), where=total > 0), 0.0, 1.0)

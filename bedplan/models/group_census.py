@@ -9,13 +9,15 @@ from __future__ import annotations
 
 import math
 from functools import lru_cache
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 from scipy import special
 
 from bedplan.models.clusters import group_sizes
+from bedplan.models.leaving import HOURS_A_YEAR, beds_held, hours_held
 from bedplan.models.within_hour import looks
+from bedplan.models.year import leaving_of, unbooked_by_hour, unbooked_load_by_hour
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -32,6 +34,7 @@ _DIGITS = 11
 _CELLS_AT_ONCE = 200_000
 _RARE = 0.01
 _UNSEEN = 1e-12
+_ALIKE, _STEP = 0.01, 0.1
 
 
 def _days_and_survival(stay: LengthOfStay) -> tuple[Array, Array]:
@@ -61,6 +64,49 @@ def loads_by_number(demand: Demand) -> Array:
         at_least = special.betainc(number, size - number + 1.0, left) @ days + demand.turnaround_hours / 24.0
         rates[:size] += shares[size - 1] * (at_least - np.append(at_least[1:], 0.0)) / at_least.sum()
     return rates
+
+
+class HoursOfGroups(NamedTuple):
+    """Hours in which groups are about as whole as each other: the rates ``(levels, k)`` of :func:`loads_by_number`.
+
+    ``shares`` ``(levels, 8736)``: how much each hour of the year counts to each level; they add up to 1.
+    """
+
+    rates: Array
+    shares: Array
+
+
+@lru_cache(maxsize=64)
+def groups_by_hour(demand: Demand) -> HoursOfGroups:
+    """How whole are the groups who are there in each hour? After a busy time more of each are still there.
+
+    Of each hour the variance ÷ mean is right, from pairs of one group who are both still there; the numbers between
+    are those of a steady rate, shifted towards whole groups or last members.
+
+    Checked by: tests/models/test_group_census.py (simulation)
+    """
+    steady = loads_by_number(demand)
+    number = np.arange(1, steady.size + 1)
+    swing = float(number**2 @ steady)
+    held = hours_held(demand.length_of_stay, leaving_of(demand), HOURS_A_YEAR)
+    both = held**2
+    both[:, 0] *= 2.0
+    arrivals = unbooked_by_hour(demand)
+    pairs = beds_held(arrivals, both) / np.maximum(unbooked_load_by_hour(demand), 1e-300)
+    by_hour = 1.0 + (swing - 1.0) * pairs * (held.sum() / both.sum())
+    by_hour = np.clip(by_hour, 1.0, demand.clustering)
+    lowest, highest = float(by_hour.min()), float(by_hour.max())
+    if highest - lowest < _ALIKE * swing:
+        return HoursOfGroups(steady[None], np.ones((1, HOURS_A_YEAR)))
+    levels = np.linspace(lowest, highest, 2 + int((highest - lowest) / swing / _STEP))
+    place = (by_hour - lowest) / (levels[1] - levels[0])
+    shares = np.maximum(1.0 - np.abs(place - np.arange(levels.size)[:, None]), 0.0)
+    whole, last = group_sizes(demand.clustering) / number, number == 1
+    part = np.where(
+        levels > swing, (levels - swing) / max(demand.clustering - swing, 1e-9), (swing - levels) / (swing - 1.0)
+    )
+    towards = np.where((levels > swing)[:, None], whole, last)
+    return HoursOfGroups((1.0 - part[:, None]) * steady + part[:, None] * towards, shares)
 
 
 def loads_by_number_if_groups_differ(demand: Demand) -> Array:
@@ -113,12 +159,13 @@ def _reach(loads: Array, rates: Array) -> tuple[int, int]:
 def _likely_in_groups(reach: tuple[int, int], loads: Array, rates: Array, mixing: tuple[float, bool]) -> Array:
     """Return how likely each number is, at each load, from the first on, over as many as the second: ``(k, numbers)``."""
     lowest, count = reach
-    points = 1 << (2 * count - 1).bit_length()
-    radius = 10.0 ** (-_DIGITS / points)
+    spread, weighed = mixing
+    # An uncertain rate reaches far beyond these numbers: damped, so that what is further off hardly counts.
+    points = (2 if spread > _CERTAIN else 1) * 64 * math.ceil(count / 64)
+    radius = 10.0 ** (-_DIGITS / points) if spread > _CERTAIN else 1.0
     number = np.arange(1, rates.size + 1)
     jumps = np.bincount(number % points, weights=rates * radius**number, minlength=points)
     exponent = loads[:, None] * (np.fft.rfft(jumps) - rates.sum())
-    spread, weighed = mixing
     if spread > _CERTAIN:
         exponent = -(1.0 / spread + weighed) * np.log(1.0 - spread * exponent)
     shift = lowest * (2j * np.pi * np.arange(points // 2 + 1) / points - math.log(radius))
