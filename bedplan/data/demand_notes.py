@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from bedplan.data.records import Records
     from bedplan.data.survival import StayCurve
 
+MUCH_LOST = 0.01  # of a ward's stays, and so of its bed-days
 MUCH_BOOKED = 0.1  # share of admissions from which booked patients are mentioned
 ADMISSIONS_NOTE = (
     "Admissions are not arrivals: the records hold patients who got a bed here. Patients who were turned away, waited "
@@ -37,6 +38,7 @@ def demand_notes(
     ward = str(stays["ward"].iloc[0])
     return (
         ADMISSIONS_NOTE,
+        *_lost_notes(records, ward),
         *(hidden.notes if hidden else ()),
         *_arrival_notes(records, arrivals),
         *silence_notes(records, ward),
@@ -44,6 +46,17 @@ def demand_notes(
         *_stay_notes(records, curve, stays),
         *_change_notes(records, stays, ward),
     )
+
+
+def _lost_notes(records: Records, ward: str) -> list[str]:
+    """Say how many of the ward's stays could not be read, where that matters."""
+    lost = records.unread.get(ward, 0)
+    share = lost / (lost + len(records.of_ward(ward)))
+    if share <= MUCH_LOST:
+        return []
+    return [
+        f"About {percent(share)} of this ward's stays could not be read, so its demand is at least that much too low."
+    ]
 
 
 def _arrival_notes(records: Records, arrivals: Arrivals) -> list[str]:

@@ -15,13 +15,14 @@ from bedplan.data import cleaning, noticing, sequence
 from bedplan.data.blocks import order_of, side_by_side, taken
 from bedplan.data.choices import HELD, IntakeChoices
 from bedplan.data.columns import STAY_HEADINGS
-from bedplan.data.dates import DAY_SECONDS, UNREADABLE
+from bedplan.data.counting import count_rows, why_no_row
+from bedplan.data.dates import DAY_SECONDS
 from bedplan.data.misfits import with_lines
 from bedplan.data.mistyped import set_mistyped_aside
-from bedplan.data.places import LEAVE, kinds_of_places, leave_note, set_places_aside
+from bedplan.data.nesting import part_nested
+from bedplan.data.places import LEAVE, PASSED_THROUGH, kinds_of_places, leave_note, place_notes, set_places_aside
 from bedplan.data.reading import read_table
-from bedplan.data.report import SET_ASIDE, IntakeReport, why_none
-from bedplan.data.rows import RULES, Rows
+from bedplan.data.rows import RULES
 from bedplan.data.source import FileLike, SourceFile, open_source
 from bedplan.data.table import TIMES, StayTable, as_stay_table
 from bedplan.data.wardlinks import WardLink, propose_links
@@ -34,6 +35,7 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
+    from bedplan.data.report import IntakeReport
     from bedplan.data.texttable import TextTable
 
 
@@ -48,7 +50,8 @@ class Records:
     confirm. ``excluded``: periods left out of rates. ``warm_up_days``: days at the window's start in which starts are
     complete and patients present are not; ``chosen_by``: by what the export was chosen, where that can be told;
     ``period_note`` says which patients it leaves out, if any. ``places``: every place in the file → what it was taken for.
-    ``ward_names``: a ward's name in the file → the name the planner gave it.
+    ``ward_names``: a ward's name in the file → the name the planner gave it. ``unread``: ward → stays set aside because
+    they could not be read.
 
     Checked by: tests/data/test_records.py
     """
@@ -69,6 +72,7 @@ class Records:
     period_note: str = ""
     places: Mapping[str, str] = field(default_factory=dict)
     ward_names: Mapping[str, str] = field(default_factory=dict)
+    unread: Mapping[str, int] = field(default_factory=dict)
 
     @property
     def short_fingerprint(self) -> str:
@@ -177,6 +181,7 @@ class _Seen(NamedTuple):
     until: int
     times: TimesInHospital
     notes: list[str]
+    kinds: dict[str, str]
 
 
 def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
@@ -189,9 +194,9 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
     notes += set_mistyped_aside(rows, wards)
     cleaning.mend_negative(rows, cleaning.longest_stays(rows, wards))
     longest = cleaning.longest_stays(rows, wards)
-    kinds = kinds_of_places(table.wards, choices.places)
-    is_leave = np.array([kind == LEAVE for kind in kinds.values()])
     everyone = sequence.in_order(rows)
+    kinds = kinds_of_places(rows, everyone, table.wards, choices.places, has_times=table.has_times)
+    is_leave = np.array([kind == LEAVE for kind in kinds.values()])
     order = sequence.to_look_at(rows, everyone, is_leave)
     if table.knows_patients:
         order = sequence.drop_repeats(rows, order)
@@ -207,13 +212,17 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
         order = sequence.join_same_ward(rows, order)
         if table.has_times:
             order = sequence.merge_pass_throughs(rows, order)
-        long_overlaps = sequence.part_overlaps(rows, order)
+        has_bed = np.array([kind not in PASSED_THROUGH for kind in kinds.values()])
+        order, long_nested = part_nested(rows, order, has_bed, held=choices.bed_on_leave == HELD)
+        long_overlaps = sequence.part_overlaps(rows, order) + long_nested
+        table.follow_parts()
+        everyone = sequence.in_order(rows) if rows.parts.size else everyone
     order = everyone[taken(rows.live, everyone)]
     if table.knows_patients:
         notes += noticing.sequences(rows, order, table, long_overlaps)
     set_places_aside(rows, kinds, table.text.get("class"), choices.bed_on_leave)
     times = times_in_hospital(rows, order, knows_patients=table.knows_patients, knows_spells=table.knows_spells)
-    return _Seen(until, times, notes)
+    return _Seen(until, times, notes + place_notes(rows, kinds), kinds)
 
 
 def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: IntakeChoices, seen: _Seen) -> Records:
@@ -221,7 +230,7 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
     rows = table.rows
     live = np.flatnonzero(rows.live)
     if not live.size:
-        raise UnreadableRecords(_why_none(rows, file.name))
+        raise UnreadableRecords(why_no_row(rows, file.name))
     live = live[order_of(taken(rows.start, live))]
     start, end = taken(rows.start, live), taken(rows.end, live)
     choices.check_days(file.name, _day(start.min()), _day(seen.until - 1))
@@ -234,15 +243,17 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
     )
     notes = [*choices.said(), *text.notes, *table.notes, *seen.notes, *about]
     stays["repaired"] = changed
-    removed = table.frame(np.flatnonzero(rows.aside))
+    gone = np.flatnonzero(rows.aside[: rows.file_rows])
+    removed = table.frame(gone)
     sentences = np.array(["", *(rule.sentence for rule in RULES.values())], dtype=object)
-    removed.insert(0, "reason", pd.Categorical(sentences[rows.reason[rows.aside]]))
+    removed.insert(0, "reason", pd.Categorical(sentences[rows.reason[gone]]))
+    report, unread = count_rows(table, text, seen.until, notes + [link.sentence for link in links])
     return Records(
         name=file.name,
         stays=stays,
         set_aside=with_lines(removed.drop(columns=["patient_key", "spell_key"], errors="ignore"), text.lines),
         wards=tuple(sorted(stays["ward"].cat.categories)),
-        report=_report(table, text, seen.until, notes + [link.sentence for link in links]),
+        report=report,
         window=tuple(pd.Timestamp(int(moment), unit="s") for moment in period.window),
         seen_until=pd.Timestamp(int(seen.until), unit="s"),
         fingerprint=file.fingerprint,
@@ -252,42 +263,12 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
         chosen_by=period.chosen_by,
         period_note=period.note if period.is_partial else "",
         excluded=tuple((pd.Timestamp(first), pd.Timestamp(last)) for first, last in choices.excluded),
-        places=kinds_of_places(table.wards, choices.places),
+        places=seen.kinds,
         ward_names=choices.ward_names,
+        unread=unread,
     )
 
 
 def _day(seconds: int) -> dt.date:
     """Return the day of a moment."""
     return pd.Timestamp(int(seconds), unit="s").date()
-
-
-def _report(table: StayTable, text: TextTable, until: int, notes: list[str]) -> IntakeReport:
-    """Count every row and every bed-day; lines with another number of cells are rows too."""
-    rows = table.rows
-    recorded = rows.recorded_bed_days(until)
-    kept, total = rows.bed_days_used(until), float(recorded.sum())
-    is_aside = np.array([False, *(rule.outcome == SET_ASIDE for rule in RULES.values())])
-    aside = float(recorded[is_aside].sum())
-    repaired = (rows.reason > 0) & ~rows.aside
-    return IntakeReport(
-        rows_in=rows.start.size + text.misfits,
-        used=int((rows.reason == 0).sum()),
-        repaired=int(repaired.sum()),
-        set_aside=int(rows.aside.sum()) + text.misfits,
-        findings=rows.findings(recorded, misfits=text.misfits),
-        bed_days_in=total,
-        bed_days_added=kept + aside - total,
-        bed_days_used=kept,
-        bed_days_set_aside=aside,
-        bed_days_repaired=float(recorded[1:][~is_aside[1:]].sum()),
-        dropped_columns=table.dropped,
-        notes=tuple(notes),
-    )
-
-
-def _why_none(rows: Rows, name: str) -> list[str]:
-    """Say why no row of the file could be used."""
-    unreadable = (rows.start == UNREADABLE).sum() > rows.start.size // 2
-    advice = "write dates as 2024-03-31 14:05" if unreadable else "check the export and try again"
-    return [why_none(name, rows.findings(np.zeros(len(RULES) + 1)), advice)]

@@ -57,6 +57,9 @@ RULES: dict[str, Rule] = {
     "joined": Rule(REPAIRED, "Went on in the same ward: joined to one stay"),
     "bridged": Rule(REPAIRED, "Up to an hour before the next stay of the same patient: ended when that one starts"),
     "passed through": Rule(REPAIRED, "Less than 30 minutes on the way: counted in the stay before or after"),
+    "parted": Rule(
+        REPAIRED, "Another stay of the patient lay inside it: parted round that one, and counted on both sides"
+    ),
     "overlap": Rule(REPAIRED, "Overlapped the patient's next stay: ended when that one starts"),
 }
 CODES = {key: np.uint8(place + 1) for place, key in enumerate(RULES)}
@@ -67,7 +70,8 @@ class Rows:
     """One row a line of the file, in file order. ``-1`` = not known; ``MISSING`` end = still in.
 
     ``start`` and ``end`` are seconds; ``first_start``, ``first_end`` keep them as recorded. ``reason`` holds 0 or a
-    code of :data:`CODES`; ``aside`` and ``merged`` rows give no stay of their own.
+    code of :data:`CODES`; ``aside`` and ``merged`` rows give no stay of their own. Rows behind ``file_rows`` are second
+    parts of stays, of the rows in ``parts``: they are no lines of the file.
     """
 
     patient: NDArray[np.int32]
@@ -80,6 +84,7 @@ class Rows:
     reason: NDArray[np.uint8] = field(init=False)
     aside: NDArray[np.bool_] = field(init=False)
     merged: NDArray[np.bool_] = field(init=False)
+    parts: NDArray[np.int64] = field(init=False)
 
     def __post_init__(self) -> None:
         """Start with every row used as it stands."""
@@ -87,6 +92,22 @@ class Rows:
         self.reason = np.zeros(self.start.size, dtype=np.uint8)
         self.aside = np.zeros(self.start.size, dtype=bool)
         self.merged = np.zeros(self.start.size, dtype=bool)
+        self.parts = np.zeros(0, dtype=np.int64)
+
+    @property
+    def file_rows(self) -> int:
+        """How many rows does the file have?"""
+        return self.start.size - self.parts.size
+
+    def go_on(self, row: NDArray[np.int64], start: NDArray[np.int64], end: NDArray[np.int64]) -> None:
+        """Let stays go on after another one: a second part each, behind the file's rows."""
+        unknown = np.full(row.size, MISSING)
+        for name, added in (("start", start), ("end", end), ("first_start", unknown), ("first_end", unknown)):
+            setattr(self, name, np.concatenate((getattr(self, name), added)))
+        for name in ("patient", "spell", "ward", "reason", "aside", "merged"):
+            values = getattr(self, name)
+            setattr(self, name, np.concatenate((values, values[row])))
+        self.parts = np.concatenate((self.parts, row))
 
     @property
     def live(self) -> NDArray[np.bool_]:
@@ -146,7 +167,7 @@ class Rows:
 
     def findings(self, bed_days: NDArray[np.float64], misfits: int = 0) -> tuple[Finding, ...]:
         """Return how many rows met each rule, and their bed-days by reason; ``misfits`` were never parsed."""
-        counts = np.bincount(self.reason, minlength=len(RULES) + 1)
+        counts = np.bincount(self.reason[: self.file_rows], minlength=len(RULES) + 1)
         counts[CODES["misfit"]] += misfits
         return tuple(
             Finding(rule.outcome, rule.sentence, int(counts[CODES[key]]), float(bed_days[CODES[key]]))

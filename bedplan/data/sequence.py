@@ -185,8 +185,7 @@ def merge_pass_throughs(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int6
 
 
 def part_overlaps(rows: Rows, order: NDArray[np.int64]) -> int:
-    """Give each patient one bed at a time; returns how many overlaps were longer than 12 hours."""
-    order = _drop_nested(rows, order)
+    """Give each patient one bed at a time where stays overlap; returns how many overlaps were longer than 12 hours."""
     patient, start, end = rows.patient[order], rows.start[order], _ends(rows, order)
     gap = start[1:] - end[:-1]
     same = patient[1:] == patient[:-1]
@@ -197,15 +196,3 @@ def part_overlaps(rows: Rows, order: NDArray[np.int64]) -> int:
     rows.end[order[bridge]] = rows.start[order[bridge + 1]]
     rows.mark(order[bridge], "bridged")
     return int((gap[cut] < -DAY_SECONDS // 2).sum())
-
-
-def _drop_nested(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Set aside stays that lie wholly inside an earlier stay of the same patient."""
-    patient, end = rows.patient[order], _ends(rows, order)
-    rank = np.concatenate(([0], np.cumsum(patient[1:] != patient[:-1])))
-    shift = rank * SPAN
-    reach = np.maximum.accumulate(end + shift) - shift
-    nested = np.zeros(order.size, dtype=bool)
-    nested[1:] = (patient[1:] == patient[:-1]) & (end[1:] <= reach[:-1])
-    rows.mark(order[nested], "nested")
-    return _still(rows, order)

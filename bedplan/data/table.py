@@ -71,6 +71,16 @@ class StayTable:
             columns["ready"] = as_times(taken(self.ready, which))
         return pd.DataFrame(columns, copy=False)
 
+    def follow_parts(self) -> None:
+        """Give the second parts of stays the text of their first parts."""
+        parts = self.rows.parts
+        if parts.size:
+            self.text = {
+                name: pd.Categorical.from_codes(np.concatenate((values.codes, values.codes[parts])), dtype=values.dtype)
+                for name, values in self.text.items()
+            }
+            self.ready = None if self.ready is None else np.concatenate((self.ready, self.ready[parts]))
+
     def _keys(self, name: str, numbers: NDArray[np.int32], which: NDArray[np.int64]) -> NDArray[np.int64]:
         """Return the random codes of some rows' keys; without keys, the rows' own numbers."""
         found = taken(numbers, which)

@@ -12,11 +12,13 @@ import streamlit as st
 from bedplan import wording
 from bedplan.data import IntakeChoices
 from bedplan.data.choices import GIVEN_AWAY, HELD
-from bedplan.data.places import BED_WARD, LEAVE, kind_of_place
+from bedplan.data.places import BED_WARD, LEAVE
 from bedplan.errors import BedplanError, ImpossibleFigure
 from bedplan.pages import intake, loaded
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     from bedplan.data import Records
 
     Period = tuple[dt.date, dt.date]
@@ -53,7 +55,7 @@ def correct() -> None:
             left_out, because = _periods(excluded)
             chosen = replace(
                 _names_only(answers.choices),
-                places=_corrected(places),
+                places=_corrected(places, here.places, answers.choices.places),
                 window=answers.choices.window if window == _found(here) else _whole_period(window, _found(here)),
                 excluded=left_out,
                 excluded_because=because,
@@ -85,11 +87,11 @@ def ask_places(here: Records) -> pd.DataFrame:
     )
 
 
-def _corrected(places: pd.DataFrame) -> dict[str, str]:
-    """Return the places that are not what their names say."""
+def _corrected(places: pd.DataFrame, found: Mapping[str, str], said: Mapping[str, str]) -> dict[str, str]:
+    """Return the places that are not what was found, and those the planner spoke of before."""
     kinds = {label: kind for kind, label in wording.PLACES.items()}
     chosen = {str(place): kinds[str(label)] for place, label in zip(places[PLACE], places[KIND], strict=True)}
-    return {place: kind for place, kind in chosen.items() if kind != kind_of_place(place)}
+    return {place: kind for place, kind in chosen.items() if place in said or kind != found[place]}
 
 
 def _found(here: Records) -> Period:

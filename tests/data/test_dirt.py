@@ -176,12 +176,14 @@ def test_overlapping_stays_are_cut_where_the_next_one_starts(read: Read) -> None
     assert any("longer than 12 hours" in note for note in records.report.notes)
 
 
-def test_a_stay_inside_another_is_set_aside(read: Read) -> None:
-    """Where one stay covers another whole, the bed is counted once."""
+def test_a_stay_is_parted_round_one_inside_it(read: Read) -> None:
+    """Where one stay covers another whole, the patient is in one bed at a time and comes back."""
     records = read(*PLAIN, "b,b,Heron,2024-01-05 10:00,2024-01-09 10:00", "b,b,Teal,2024-01-06 12:00,2024-01-07 12:00")
 
-    assert reasons(records) == {"nested": 1}
-    assert ("Heron", "01-05 10:00", "01-09 10:00") in stay_times(records)
+    assert reasons(records) == {"parted": 1}
+    assert ("Heron", "01-05 10:00", "01-06 12:00") in stay_times(records)
+    assert ("Teal", "01-06 12:00", "01-07 12:00") in stay_times(records)
+    assert ("Heron", "01-07 12:00", "01-09 10:00") in stay_times(records)
 
 
 def test_a_gap_of_up_to_an_hour_is_bridged(read: Read) -> None:
