@@ -12,7 +12,8 @@ METHODS = {
     "erlang_loss": "Erlang's loss formula (1917) at the year's mean load: independent arrivals at one steady rate, patients "
     "who find the ward full go elsewhere. The spread of stay does not matter to it. de Bruin et al. 2010.",
     "unlimited_beds": "Patients who want a bed if nobody were ever turned away, hour by hour through the year: a Poisson "
-    "number about the load. Eick, Massey & Whitt 1993. It answers for wards whose patients wait or are placed elsewhere.",
+    "number about the load, patients in groups by their own law, booked lists patient by "
+    "patient. Eick, Massey & Whitt 1993. It answers for wards whose patients wait or are placed elsewhere.",
     "seasonal_loss": "Patients who find the ward full go elsewhere, hour by hour through the week at each month's level of "
     "demand, with the delay that stays cause: a chain of the ward's beds near the decision, Erlang's formula on the load of "
     "each hour elsewhere. Massey & Whitt 1994; patients in groups by a chain of the beds, smooth arrivals by Fredericks 1980; "
