@@ -168,7 +168,10 @@ def read_bed_requests(
 
     Checked by: tests/data/test_logs.py
     """
-    cannot = ("A log of requests shows waits, not how long patients stay once they have a bed.",)
+    cannot = (
+        "A log of requests shows waits, not how long patients stay once they have a bed.",
+        "It holds all who asked, so nobody in it counts as not given a bed: bring the list of those who were not.",
+    )
     file = open_source(source, name)
     text = _table("bed requests", file, REQUEST_HEADINGS, columns)
     return _read("bed requests", text, file.name, date_order, cannot)

@@ -183,7 +183,8 @@ def take_return(content: bytes, name: str, date_order: str | None) -> list[str]:
         except BedplanError as error:
             told.append(f"{ward}: {error}")
     for ward in made:
-        typed.use_totals(ward)
+        if st.session_state.get("typed", {}).get(ward.name) != ward:  # one taken already keeps its settings
+            typed.use_totals(ward)
     if known:
         told.append("Wards that have ward stays were left as they are: stays say more than a return.")
     ready = "1 ward is" if len(made) == 1 else f"{len(made)} wards are"

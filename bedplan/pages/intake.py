@@ -12,7 +12,7 @@ from bedplan import wording
 from bedplan.data import preview_columns, read_records
 from bedplan.data.preview import MATCHED
 from bedplan.errors import BedplanError, UnreadableRecords
-from bedplan.pages import controls, loaded, saved
+from bedplan.pages import controls, loaded, saved, typed
 from bedplan.plan import Answers
 
 if TYPE_CHECKING:
@@ -74,6 +74,7 @@ def read_again(answers: Answers) -> tuple[str, ...]:
     if isinstance(found, Refused):
         return found.problems
     controls.use_files_again(replace(here, records=found.records, answers=answers).linked())
+    typed.remove_known()
     st.session_state["times_read"] = times_read() + 1
     return ()
 

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 import streamlit as st
 
 from bedplan.errors import BedplanError
-from bedplan.pages import controls
+from bedplan.pages import controls, loaded
 
 if TYPE_CHECKING:
     from bedplan.plan import Baseline
@@ -31,6 +31,16 @@ def remove_totals(name: str) -> None:
             controls.show_ward(controls.first_shown(controls.ward_names()))
         except BedplanError:
             controls.forget_inputs()
+
+
+def remove_known() -> None:
+    """Take off what a monthly return says of wards that turned out to be wards of the records under another name."""
+    here = loaded.files()
+    if here.monthly_return is None:
+        return
+    named = set(here.given["monthly_return"].wards)
+    for name in named - set(here.monthly_return.unknown_wards) - set(here.records.wards):
+        remove_totals(name)
 
 
 def offer_removal(name: str) -> None:

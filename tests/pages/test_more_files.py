@@ -124,6 +124,40 @@ def test_a_return_of_known_wards_is_compared(app: AppTest) -> None:
     assert "hold no stays" not in text(app.caption)
 
 
+def test_wards_of_a_return_can_be_counted_together(app: AppTest) -> None:
+    """A ward of the return under another spelling is one of the records' wards once the planner says so, and no other."""
+    give(
+        app,
+        "monthly_return_file",
+        "return.csv",
+        RETURN + b"2024-03,Ward East,31000,29000,40\n2024-03,North,400,310,40\n",
+    )
+    assert set(app.session_state["typed"]) == {"Ward East", "North"}
+    press(app, "Count together")
+
+    assert not app.exception
+    assert set(app.session_state["typed"]) == {"North"}
+    assert "against 29,000" in checks(app)["Nights: from stays, against return.csv"][0]
+
+
+def test_a_return_in_its_box_keeps_what_was_set(app: AppTest, stays_csv: bytes) -> None:
+    """The next file of stays is compared with the return that is still in its box; the slider of its ward stays."""
+    give(app, "monthly_return_file", "return.csv", RETURN + b"2024-03,East,31000,29000,40\n2024-03,North,400,310,40\n")
+    go(app, "one_ward").slider(key="demand").set_value(-20).run()
+    assert app.selectbox(key="ward").value == "North"
+    give(
+        go(app, "records"),
+        "monthly_return_file",
+        "return.csv",
+        RETURN + b"2024-03,East,31000,29000,40\n2024-03,North,400,310,40\n",
+    )
+    give(app, "stays_file", "later.csv", stays_csv + b"\n")
+    assert "against 29,000" in checks(app)["Nights: from stays, against return.csv"][0]
+
+    go(app, "one_ward").selectbox(key="ward").set_value("North").run()
+    assert app.slider(key="demand").value == -20
+
+
 def why_no_list(app: AppTest) -> str:
     """Return what the page Hidden demand says of the method by lists."""
     table = next(one.value for one in go(app, "hidden").table if "Why" in one.value)
@@ -134,7 +168,7 @@ def test_bed_requests_are_told_what_they_cannot_say(app: AppTest) -> None:
     """Alone they are refused as a list of those without a bed; a list of refusals beside them is used all the same."""
     requests = b"ward,requested at,placed at\nEast,2024-02-01 10:00,2024-02-01 15:00\n"
     give(app, "bed_requests_file", "requests.csv", requests)
-    assert "not how long patients stay" in text(app.caption)
+    assert "nobody in it counts as not given a bed" in text(app.caption)
     assert "requests.csv holds all who asked for a bed" in why_no_list(app)
     give(go(app, "records"), "refusals_file", "log.csv", b"time,ward,reason\n2024-02-02 10:00,East,no bed\n")
 
