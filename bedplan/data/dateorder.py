@@ -13,7 +13,7 @@ import pyarrow.compute as pc
 
 from bedplan.data.choices import DATE_ORDERS, DateQuestion, check_date_order
 from bedplan.data.columns import plain
-from bedplan.data.dates import DAY_SECONDS, UNREADABLE, TimesRead, read_times
+from bedplan.data.dates import DAY_SECONDS, EPOCHS_APART_DAYS, UNREADABLE, TimesRead, read_times
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -24,7 +24,6 @@ if TYPE_CHECKING:
     from bedplan.data.texttable import TextTable
 
 DAY_FIRST, MONTH_FIRST, ROW_BY_ROW = DATE_ORDERS
-EPOCHS_APART_DAYS = 1_462  # between the 1900 and the 1904 day numbers of spreadsheets
 CLOCK_HEADING = re.compile("(?<!date)time$")  # beside a column of dates
 IN_ORDER = 0.99  # rank correlation of row number and time, from which a file counts as sorted by time
 

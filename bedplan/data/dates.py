@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 MISSING = np.iinfo(np.int64).min  # a blank cell
 UNREADABLE = MISSING + 1  # something is written there, but no date
 DAY_SECONDS = 86_400
+EPOCHS_APART_DAYS = 1_462  # between the 1900 and the 1904 day numbers of spreadsheets
 MOST_LOOKED_AT = 10_000  # to tell 23-01-31 from 31-01-23
 LAST_SECOND = 253_402_300_799  # of the year 9999: what systems write where there is no end yet
 MONTHS = ("jan", "feb", "mar", "apr", "may", "jun", "jul", "aug", "sep", "oct", "nov", "dec")

@@ -78,7 +78,9 @@ def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, period: Pe
     else:
         notes.append("The file has dates without times: stays are counted in nights, and hours of the day are unknown.")
     if not table.knows_patients:
-        notes.append("No patient key was found: repeated rows, moves and overlaps of one patient can't be recognised.")
+        notes.append(
+            "No patient key was found: rows sent again, moves and overlaps of one patient can't be recognised."
+        )
     if period.note:
         notes.append(period.note)
     days = (period.last - period.first) // DAY_SECONDS
@@ -94,13 +96,7 @@ def _clock_notes(start: NDArray[np.int64], end: NDArray[np.int64]) -> list[str]:
     notes = []
     if start.size >= FEWEST_STAYS:
         by_day = _by_day_and_minute(start)
-        minutes = by_day.sum(axis=0)
-        worst = int(minutes.argmax())
-        if minutes[worst] > DEFAULT_SHARE * start.size:
-            notes.append(
-                f"{minutes[worst] / start.size:.0%} of stays start at {worst // 60:02d}:{worst % 60:02d}, which looks like a "
-                "default and not a time: don't rely on hours of the day."
-            )
+        notes += _default_note("start", by_day.sum(axis=0)) + _default_note("end", _minutes(end))
         notes += _world_time_note(by_day, int(start.min()) // DAY_SECONDS)
     stays, inside, whole = np.sum(in_blocks(start.size, lambda block: _same_day(start[block], end[block])), axis=0)
     if stays:
@@ -110,6 +106,26 @@ def _clock_notes(start: NDArray[np.int64], end: NDArray[np.int64]) -> list[str]:
             "they are counted by the hour."
         )
     return notes
+
+
+def _default_note(word: str, minutes: NDArray[np.int64]) -> list[str]:
+    """Say where too many stays share one of the day's minutes (1440,)."""
+    worst, every = int(minutes.argmax()), int(minutes.sum())
+    if minutes[worst] <= DEFAULT_SHARE * every:
+        return []
+    told = f"{minutes[worst] / every:.0%} of stays {word} at {worst // 60:02d}:{worst % 60:02d}"
+    return [f"{told}, which looks like a default and not a time: don't rely on hours of the day."]
+
+
+def _minutes(times: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return how many known times fall into each minute of the day."""
+
+    def count(block: slice) -> NDArray[np.int64]:
+        """Count one block; the last place holds those not known."""
+        some = times[block]
+        return np.bincount(np.where(some == MISSING, 1_440, some % DAY_SECONDS // 60), minlength=1_441)
+
+    return np.sum(in_blocks(times.size, count), axis=0)[:1_440]
 
 
 def _by_day_and_minute(start: NDArray[np.int64]) -> NDArray[np.int64]:

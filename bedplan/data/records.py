@@ -194,6 +194,8 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
     notes += set_mistyped_aside(rows, wards)
     cleaning.mend_negative(rows, cleaning.longest_stays(rows, wards))
     longest = cleaning.longest_stays(rows, wards)
+    if table.has_times and not table.knows_patients:
+        sequence.drop_copies(rows, [values.codes for values in table.text.values()])
     everyone = sequence.in_order(rows)
     kinds = kinds_of_places(rows, everyone, table.wards, choices.places, has_times=table.has_times)
     is_leave = np.array([kind == LEAVE for kind in kinds.values()])

@@ -30,6 +30,9 @@ RULES: dict[str, Rule] = {
     "negative": Rule(SET_ASIDE, "The stay ends before it starts"),
     "duplicate": Rule(SET_ASIDE, "The same stay is in the file twice"),
     "resubmitted": Rule(SET_ASIDE, "An earlier version of a stay that was sent again with another end"),
+    "two ends": Rule(
+        SET_ASIDE, "In the file twice with another end, and which was sent last can't be told: the longer counts"
+    ),
     "zero stay": Rule(SET_ASIDE, "The stay ends in the minute it starts"),
     "forgotten, aside": Rule(
         SET_ASIDE, "No end, and far longer ago than stays on this ward last: a forgotten discharge"

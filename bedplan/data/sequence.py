@@ -11,6 +11,8 @@ from bedplan.data.dates import DAY_SECONDS, MISSING
 from bedplan.data.rows import OPEN_END, SPAN
 
 if TYPE_CHECKING:
+    from collections.abc import Iterable
+
     from numpy.typing import NDArray
 
     from bedplan.data.rows import Rows
@@ -77,7 +79,8 @@ def _ends(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
 def drop_repeats(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
     """Keep one of the rows that show the same patient starting on the same ward at the same time.
 
-    The row sent last is kept when only one has an end or the last is the longest; else the longest.
+    Of those that end, the one sent last is kept: the last row of the file, where others lie between it and the one
+    before. Rows next to each other may stand in any order: of these the longest is kept.
     """
     patient, start = rows.patient[order], rows.start[order]
     new_time = np.ones(order.size, dtype=bool)
@@ -93,6 +96,7 @@ def drop_repeats(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
             (
                 -busy,
                 -np.where(finished, rows.end[busy], 0),
+                ~_sent_last(rows, busy, finished),
                 ~finished,
                 rows.ward[busy],
                 rows.start[busy],
@@ -109,8 +113,41 @@ def drop_repeats(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
     head = np.maximum.accumulate(np.where(same, 0, np.arange(ranked.size)))
     equal = same & (rows.end[ranked] == rows.end[ranked[head]])
     rows.mark(ranked[equal], "duplicate")
-    rows.mark(ranked[same & ~equal], "resubmitted")
+    unsure = same & (ranked == ranked[head] + 1) & ~rows.is_open[ranked]
+    rows.mark(ranked[same & ~equal & unsure], "two ends")
+    rows.mark(ranked[same & ~equal & ~unsure], "resubmitted")
     return _still(rows, order)
+
+
+def _sent_last(rows: Rows, busy: NDArray[np.int64], finished: NDArray[np.bool_]) -> NDArray[np.bool_]:
+    """Return which of these rows end, and come so late in the file after their like that they were sent again."""
+    last = np.zeros(busy.size, dtype=bool)
+    which = np.flatnonzero(finished)
+    ranked = which[
+        np.lexsort((busy[which], rows.ward[busy[which]], rows.start[busy[which]], rows.patient[busy[which]]))
+    ]
+    row = busy[ranked]
+    like = np.ones(max(row.size - 1, 0), dtype=bool)
+    for every in (rows.patient, rows.start, rows.ward):
+        like &= every[row[1:]] == every[row[:-1]]
+    again = like & (np.diff(row) > 1) & ~np.append(like[1:], [False][: like.size])
+    last[ranked[1:][again]] = True
+    return last
+
+
+def drop_copies(rows: Rows, text: Iterable[NDArray[np.int8]]) -> None:
+    """Without patients' keys, keep one of the rows alike in all else: to the minute that is no chance."""
+    which = np.flatnonzero(rows.live & ~rows.is_open)
+    which = which[order_of(rows.start[which])]
+    tied = np.flatnonzero(rows.start[which[1:]] == rows.start[which[:-1]])
+    which = which[np.union1d(tied, tied + 1)]
+    which = which[(rows.start[which] % DAY_SECONDS > 0) | (rows.end[which] % DAY_SECONDS > 0)]
+    columns = [every[which] for every in (rows.start, rows.end, rows.ward, *text)]
+    order = np.lexsort((which, *columns))
+    alike = np.ones(max(order.size - 1, 0), dtype=bool)
+    for values in columns:
+        alike &= values[order[1:]] == values[order[:-1]]
+    rows.mark(which[order[1:][alike]], "duplicate")
 
 
 def close_forgotten(rows: Rows, order: NDArray[np.int64], longest: NDArray[np.int64], until: int) -> NDArray[np.int64]:

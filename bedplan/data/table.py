@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import functools
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -25,9 +25,11 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from bedplan.data.choices import IntakeChoices
+    from bedplan.data.dates import TimesRead
     from bedplan.data.texttable import TextTable
 
 TIMES = ("start", "end", "admitted", "discharged", "ready")
+FEWEST_DATES = 20  # without a time of day, to say that none has one
 KEPT_TEXT = ("class", "method", "specialty", "destination")
 BESIDE_STAYS = ("staffed beds", "a census", "a monthly return")  # what no column of ward stays can be
 TOTAL_WORDS = ("total", "grand total", "sub-total", "subtotal", "sum", "all wards", "run on", "page")
@@ -107,7 +109,8 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
         *(functools.partial(read_keys, text.columns[key]) for key in named),
     )
     keys = dict(zip(named, read, strict=True))
-    notes += what_rows_are(text)
+    has_times, start, end, told = _clocks(start, end)
+    notes += told + what_rows_are(text)
     rows = Rows(
         patient=np.arange(text.rows, dtype=np.int32),
         spell=np.full(text.rows, -1, dtype=np.int32),
@@ -137,7 +140,7 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
         text=kept,
         ready=ready,
         random_keys={key: read.random for key, read in keys.items()} | ({"patient_key": whose.random} if whose else {}),
-        has_times=_has_times(start.seconds, end.seconds),
+        has_times=has_times,
         knows_patients=bool(keys),
         knows_spells="spell_key" in keys,
         dropped=dropped,
@@ -208,9 +211,23 @@ def _mark_report_lines(rows: Rows, text: TextTable, wards: tuple[str, ...]) -> N
     rows.mark(no_date[np.isin(rows.ward[no_date], [-1, *furniture])], "misfit")
 
 
-def _has_times(start: NDArray[np.int64], end: NDArray[np.int64]) -> bool:
-    """Does any readable time differ from midnight? Mostly the first rows show it."""
-    return any(
-        bool(((times > UNREADABLE) & (times % DAY_SECONDS != 0)).any())
-        for times in (start[:BLOCK_ROWS], end[:BLOCK_ROWS], start, end)
+def _clocks(start: TimesRead, end: TimesRead) -> tuple[bool, TimesRead, TimesRead, list[str]]:
+    """Are there times of day? Where only starts or only ends have them, they are left out: stays are counted in nights.
+
+    An end without a time would lie at midnight, hours before its patient left.
+    """
+    has = [_has_times(times.seconds) for times in (start, end)]
+    bare = end.seconds if has[0] else start.seconds
+    if has[0] == has[1] or int((bare > UNREADABLE).sum()) < FEWEST_DATES:
+        return any(has), start, end, []
+    start, end = (
+        replace(one, seconds=np.where(one.seconds > UNREADABLE, one.seconds // DAY_SECONDS * DAY_SECONDS, one.seconds))
+        for one in (start, end)
     )
+    with_times, without = ("Starts", "ends") if has[0] else ("Ends", "starts")
+    return False, start, end, [f"{with_times} have a time of day and {without} have none: only the dates are used."]
+
+
+def _has_times(times: NDArray[np.int64]) -> bool:
+    """Does any readable time differ from midnight? Mostly the first rows show it."""
+    return any(bool(((some > UNREADABLE) & (some % DAY_SECONDS != 0)).any()) for some in (times[:BLOCK_ROWS], times))

@@ -10,9 +10,11 @@ from typing import TYPE_CHECKING
 import openpyxl
 import pyarrow as pa
 import pyarrow.compute as pc
+from openpyxl.utils.datetime import CALENDAR_MAC_1904
 from pyarrow import parquet
 
 from bedplan.data.columns import match_headings
+from bedplan.data.dates import EPOCHS_APART_DAYS
 from bedplan.data.texttable import MOST_TITLE_LINES, Layout, Parsed, TextTable, text_table
 from bedplan.errors import UnreadableRecords
 
@@ -21,6 +23,8 @@ if TYPE_CHECKING:
 
     from bedplan.data.source import SourceFile
 
+FIRST_DAY_NUMBER, LAST_DAY_NUMBER = 20_000, 70_000
+DATE_COLUMNS = ("start", "end", "start_date", "end_date", "admitted", "discharged", "ready", "date")
 MOST_ROWS = 1_048_576  # a worksheet holds no more
 LARGEST_UNPACKED_BYTES = 2 * 2**30
 MOST_SWELLING = 200  # times; honest workbooks unpack to 5–30 times their size
@@ -58,11 +62,11 @@ def read_workbook(
     Raises:
         UnreadableRecords: not a workbook, too large, or no sheet with known headings.
     """
-    sheets = _sheets(source)
+    sheets, days_apart = _sheets(source)
     layouts = {title: _layout(cells, known, chosen) for title, cells in sheets.items()}
     title, layout = max(layouts.items(), key=lambda item: len(item[1].found), default=("", Layout(0, 0, "", (), {})))
     notes = [f"Read from the sheet “{title}”; {len(sheets) - 1} other sheets were left out."] if len(sheets) > 1 else []
-    return text_table(source.name, layout, lambda: _parsed(sheets[title], layout), notes, list(known))
+    return text_table(source.name, layout, lambda: _parsed(sheets[title], layout, days_apart), notes, list(known))
 
 
 def sheets_as_text(source: SourceFile) -> list[list[tuple[str, ...]]]:
@@ -71,15 +75,16 @@ def sheets_as_text(source: SourceFile) -> list[list[tuple[str, ...]]]:
     Raises:
         UnreadableRecords: not a workbook, or too large.
     """
-    return [[tuple(_text(cell).strip() for cell in row) for row in cells] for cells in _sheets(source).values()]
+    return [[tuple(_text(cell).strip() for cell in row) for row in cells] for cells in _sheets(source)[0].values()]
 
 
-def _sheets(source: SourceFile) -> dict[str, Cells]:
-    """Return the cells of every sheet by its title."""
+def _sheets(source: SourceFile) -> tuple[dict[str, Cells], int]:
+    """Return the cells of every sheet by its title, and how many days after 1900's its day numbers begin."""
     check_archive(source)
     try:
         book = openpyxl.load_workbook(io.BytesIO(source.content), read_only=True, data_only=True)
-        return {sheet.title: _cells(sheet) for sheet in book.worksheets}
+        days_apart = EPOCHS_APART_DAYS if book.epoch == CALENDAR_MAC_1904 else 0
+        return {sheet.title: _cells(sheet) for sheet in book.worksheets}, days_apart
     except UnreadableRecords:
         raise
     except Exception as problem:  # openpyxl raises whatever a damaged part makes it stumble over
@@ -108,17 +113,23 @@ def _layout(cells: Cells, known: Mapping[str, Iterable[str]], chosen: Mapping[st
     return best
 
 
-def _parsed(cells: Cells, layout: Layout) -> Parsed:
-    """Return the matched columns as text."""
+def _parsed(cells: Cells, layout: Layout, days_apart: int) -> Parsed:
+    """Return the matched columns as text; day numbers of workbooks that count from 1904 as those that count from 1900."""
     below = cells[layout.line + 1 :]
     places = {heading: layout.headings.index(heading) for heading in layout.found.values()}
-    columns = {
-        heading: pa.chunked_array(
-            [[_text(row[place]) or None if place < len(row) else None for row in below]], pa.string()
-        )
-        for heading, place in places.items()
-    }
+    columns = {}
+    for key, heading in layout.found.items():
+        place, later = places[heading], days_apart if key in DATE_COLUMNS else 0
+        values = [row[place] if place < len(row) else None for row in below]
+        if later:
+            values = [value + later if _is_day_number(value) else value for value in values]
+        columns[heading] = pa.chunked_array([[_text(value) or None for value in values]], pa.string())
     return Parsed(pa.table(columns))
+
+
+def _is_day_number(cell: object) -> bool:
+    """May this number be a date that was never formatted as one?"""
+    return isinstance(cell, int | float) and FIRST_DAY_NUMBER <= cell <= LAST_DAY_NUMBER
 
 
 def _text(cell: object) -> str:
@@ -147,12 +158,15 @@ def read_parquet(
         return text_table(
             source.name, layout, lambda: Parsed(_as_text(file.read(list(layout.found.values())))), [], list(known)
         )
-    except (pa.ArrowException, OSError) as problem:
+    except UnreadableRecords:
+        raise
+    except (pa.ArrowException, OSError, ValueError, OverflowError, MemoryError) as problem:
         raise UnreadableRecords([f"{source.name} is a damaged Parquet file: write it again and retry."]) from problem
 
 
 def _as_text(table: pa.Table) -> pa.Table:
     """Return every column as text; times lose their zone and fractions of a second."""
+    table.validate(full=True)  # a damaged file may hold text that is none
     columns = {}
     for name in table.column_names:
         column = table.column(name)

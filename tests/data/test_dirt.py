@@ -547,3 +547,61 @@ def test_an_end_that_is_yet_to_come_is_no_end(read: Read, end: str) -> None:
     assert reasons(records) == {"end to come": 1}
     assert ("Heron", "01-22 09:00", "still in") in stay_times(records)
     assert str(records.seen_until.date()) == "2024-01-24"
+
+
+@pytest.mark.parametrize("shorter", [True, False])
+def test_a_stay_sent_again_counts_as_it_was_sent_last(read: Read, shorter: bool) -> None:
+    """With other rows between, the later row is the correction, longer or shorter."""
+    ends = ["2024-01-09 10:00", "2024-01-07 10:00"]
+    first, last = ends if shorter else ends[::-1]
+    records = read(f"c,c,Teal,2024-01-05 10:00,{first}", *PLAIN, f"c,c,Teal,2024-01-05 10:00,{last}")
+
+    assert reasons(records) == {"resubmitted": 1}
+    assert ("Teal", "01-05 10:00", last[5:]) in stay_times(records)
+
+
+def test_of_two_ends_side_by_side_the_longer_counts(read: Read) -> None:
+    """Rows next to each other don't show which was sent last; a shorter one below is set aside for that reason."""
+    records = read(*PLAIN, "c,c,Teal,2024-01-05 10:00,2024-01-09 10:00", "c,c,Teal,2024-01-05 10:00,2024-01-07 10:00")
+
+    assert reasons(records) == {"two ends": 1}
+    assert ("Teal", "01-05 10:00", "01-09 10:00") in stay_times(records)
+
+
+def test_without_patient_keys_exact_copies_are_found(read: Read) -> None:
+    """Alike in ward, start and end to the minute, and in all else: one counts. Another class is another stay."""
+    rows = [f"{row.split(',', 2)[2]},a" for row in PLAIN]
+    records = read(*rows, rows[3], rows[3], rows[5][:-1] + "b", headings="ward,start,end,specialty")
+
+    assert reasons(records) == {"duplicate": 2}
+    assert len(records.stays) == len(PLAIN) + 1
+
+
+@pytest.mark.parametrize("bare", ["start", "end"])
+def test_dates_beside_times_are_read_as_dates(read: Read, bare: str) -> None:
+    """Where ends have no time, a stay that ends on its first day is no stay that ends before it starts."""
+    rows = []
+    for place in range(60):
+        start = pd.Timestamp("2024-01-01 10:00") + pd.Timedelta(days=place)
+        end = start + pd.Timedelta(hours=4 if place % 4 == 0 else 60)
+        times = [f"{one:%Y-%m-%d}" if bare == name else f"{one}" for name, one in (("start", start), ("end", end))]
+        rows.append(f"p{place},s{place},Heron,{','.join(times)}")
+    records = read(*rows)
+
+    assert reasons(records) == {}
+    assert not records.has_times
+    nights = (records.stays["end"] - records.stays["start"]).dt.days
+    assert sorted(set(nights)) == [0, 2]
+    assert any("only the dates are used" in note for note in records.report.notes)
+
+
+def test_default_times_of_ends_are_noticed(read: Read) -> None:
+    """Two in five stays that end at 23:59 didn't: the report says so."""
+    rows = []
+    for place in range(300):
+        start = pd.Timestamp("2024-01-01 06:00") + pd.Timedelta(minutes=317 * place)
+        end = start + pd.Timedelta(days=2, minutes=13 * place % 400)
+        end = end.replace(hour=23, minute=59) if place % 5 < 2 else end
+        rows.append(f"p{place},s{place},Heron,{start},{end}")
+
+    assert any("40% of stays end at 23:59" in note for note in read(*rows).report.notes)

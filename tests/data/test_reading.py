@@ -6,11 +6,14 @@ import datetime as dt
 import io
 from typing import TYPE_CHECKING
 
+import numpy as np
 import openpyxl
 import pandas as pd
 import pytest
+from openpyxl.utils.datetime import CALENDAR_MAC_1904
 
 from bedplan.data import read_records
+from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -146,3 +149,45 @@ def test_date_cells_beside_time_cells(times: tuple[str, str], midnight: str) -> 
 
     assert set(stays["start"].dt.strftime("%H:%M")) == {"14:05"}
     assert set(stays["end"].dt.strftime("%H:%M")) == {"09:05"}
+
+
+def test_day_numbers_of_a_workbook_that_counts_from_1904() -> None:
+    """Numbers that were never formatted as dates are read by the workbook's own first day: 44,927 is 1 January 2027 there."""
+    book = openpyxl.Workbook()
+    book.epoch = CALENDAR_MAC_1904
+    book.active.append(["patient_key", "ward", "start", "end"])
+    for place in range(60):
+        book.active.append([f"p{place}", "Heron", 43_465.5 + place, 43_468.25 + place])
+    packed = io.BytesIO()
+    book.save(packed)
+    stays = read_records(packed.getvalue(), name="stays.xlsx").stays
+
+    # 1 January 1904 + 43,465 days, by the standard library.
+    first = dt.datetime(1904, 1, 1, 12) + dt.timedelta(days=43_465)  # noqa: DTZ001  the ward's clock has no zone
+    assert stays["start"].iloc[0] == first
+    assert stays["end"].iloc[0] == first + dt.timedelta(days=2, hours=18)
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_a_damaged_parquet_file_says_so(seed: int) -> None:
+    """With one byte changed anywhere, the file is read or refused in a sentence, and rows still add up."""
+    frame = pd.DataFrame(
+        {
+            "patient_key": [f"p{n}" for n in range(200)],
+            "ward": ["Heron", "Teal"] * 100,
+            "start": [f"2024-{n % 12 + 1:02d}-01 10:{n % 60:02d}" for n in range(200)],
+            "end": [f"2024-{n % 12 + 1:02d}-04 10:{n % 60:02d}" for n in range(200)],
+        }
+    )
+    packed = io.BytesIO()
+    frame.to_parquet(packed)
+    rng = np.random.default_rng(seed)
+    for place, value in zip(rng.integers(4, len(packed.getvalue()), 50), rng.integers(0, 256, 50), strict=True):
+        content = bytearray(packed.getvalue())
+        content[place] = value
+        try:
+            report = read_records(bytes(content), name="stays.parquet").report
+        except UnreadableRecords as problem:
+            assert problem.problems  # noqa: PT017  whether it is refused depends on the byte
+            continue
+        assert report.rows_in == report.used + report.repaired + report.set_aside
