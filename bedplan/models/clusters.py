@@ -184,7 +184,7 @@ def clustering_notes(demand: Demand, *, waits: bool = False) -> tuple[str, ...]:
         more = math.ceil(100.0 * more_if_groups_differ(demand, waits=waits))
         many = f"up to {more} % more" if more <= 100 else "more than twice as many"
         note = "Patients who come together: groups of equal size are assumed"
-        note += "." if waits else ", and with a weekly rhythm the figure is up to a tenth too high."
+        note += "." if waits else ", and with a weekly or daily rhythm the figure is up to a fifth too high."
         share = (
             "wait than this says, where 1 in 100 or more do"
             if waits

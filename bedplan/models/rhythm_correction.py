@@ -27,7 +27,6 @@ if TYPE_CHECKING:
 
     Array = NDArray[np.float64]
 
-LARGEST_CORRECTED_LOAD = 1_500.0
 _LARGE_LOAD = 150.0
 _STATES_IN_ALL = 2_600
 _FEWEST_COUNTS, _MOST_COUNTS, _COUNTS_OF_SEASON = 10, 40, 16
@@ -188,23 +187,23 @@ def _compared(
     return found
 
 
-def _has_rhythm(demand: Demand, week: Week) -> bool:
+def _has_rhythm(week: Week) -> bool:
     """Whether anything changes from hour to hour of the mean week."""
     load = week.unbooked_load
-    return bool(demand.booked) or any(np.ptp(hours) > 1e-9 * hours.mean() for hours in (week.unbooked, load))
+    return bool(week.booked.any()) or any(np.ptp(hours) > 1e-9 * hours.mean() for hours in (week.unbooked, load))
 
 
 @lru_cache(maxsize=128)
 def rhythm_correction(demand: Demand, lowest: float, highest: float) -> Correction | None:
     """What does the rhythm of the week add, for levels of unbooked demand from ``lowest`` to ``highest``?
 
-    By weekday. None where the week has no rhythm (the first cut is then right) and above 1,500 beds wanted.
+    By weekday. None where the week has no rhythm: the first cut is then right.
 
     Checked by: tests/models/test_seasonal.py
     """
     week = mean_week(demand)
     mean_loads = float(week.unbooked_load.mean()), float(week.booked_load.mean())
-    if not _has_rhythm(demand, week) or sum(mean_loads) > LARGEST_CORRECTED_LOAD:
+    if not _has_rhythm(week):
         return None
     levels = _levels(lowest, highest) if mean_loads[0] > 0 else np.ones(1)
     loads = week.unbooked_load[:, None] * levels + week.booked_load[:, None]
@@ -218,13 +217,13 @@ def rhythm_correction(demand: Demand, lowest: float, highest: float) -> Correcti
 def season_correction(demand: Demand) -> Correction | None:
     """What does the memory of the ward add from month to month, the rhythm of the week apart?
 
-    By month, for the level of the year. None without seasons and above 1,500 beds wanted.
+    By month, for the level of the year. None without seasons.
 
     Checked by: tests/models/test_seasonal.py
     """
     week = mean_week(demand)
     mean_loads = float(week.unbooked_load.mean()), float(week.booked_load.mean())
-    if np.ptp(demand.month_factors) < 1e-9 or not 0 < mean_loads[0] <= LARGEST_CORRECTED_LOAD - mean_loads[1]:
+    if np.ptp(demand.month_factors) < 1e-9 or not mean_loads[0] > 0:
         return None
     smooth = demand.with_changes(weekday_factors=(1.0,) * 7, hour_factors=(1.0,) * 24)
     arrivals = unbooked_by_hour(smooth)

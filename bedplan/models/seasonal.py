@@ -9,11 +9,12 @@ import numpy as np
 from bedplan.models.bed_curve import BedCurve, bed_counts
 from bedplan.models.clusters import clustering_notes, loss_table, swing_when_full
 from bedplan.models.load_grid import load_grid
-from bedplan.models.rhythm_correction import LARGEST_CORRECTED_LOAD, rhythm_correction, season_correction
+from bedplan.models.rhythm_correction import rhythm_correction, season_correction
 from bedplan.models.uncertain_rate import possible_rates
 from bedplan.models.year import (
     WEEKS,
     all_booked_in_week,
+    beds_wanted,
     booked_load_in_week,
     mean_week,
     month_of_hour,
@@ -37,13 +38,34 @@ _MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 _WIDEST_LEVELS = 5.0
 _METHOD = (
     "With seasons: a chain of the ward's beds, hour by hour through the week and day by day through the year. Exact "
-    "for exponential stays; with others at most 2 % of the figure too low and 7 % too high in trials with usual weeks. Where "
-    "patients come on a few weekdays only, as by booked lists, up to a fifth too high."
+    "for exponential stays; with others at most 2 % of the figure too low and 7 % too high in trials with usual weeks, "
+    "where 1 in 50 or more are turned away; below, up to a tenth too low. Where patients come on a few weekdays only, "
+    "up to a fifth too high."
 )
-_LARGE_WARD = (
-    f"Above {LARGEST_CORRECTED_LOAD:,.0f} beds wanted only the load of each hour counts, not who was let in before: with "
-    "a weekly rhythm the figure may be up to half too low."
+_LARGE_LOAD = 1_500.0
+_LARGE = "Above 1,500 beds wanted few wards were checked: up to a tenth too low or too high."
+_MONTH_OFF = "A single month may be up to 6 % of its figure too low"
+_EVEN_MONTH_OFF = ", with stays as long and even as here up to a quarter: plan with more."
+_EVEN = (
+    "Even stays and a weekly rhythm: the figure may be up to a quarter too low, where stays of one, two or three days end "
+    "together up to a fifth too high. Plan with more, or run the simulation."
 )
+_SHARP = (
+    "Patients leave within a few hours of the day: where under 1 in 50 are turned away the figure may be up to a half too "
+    "low, where more are up to twice too high, on wards of hundreds of beds many times. Run the simulation."
+)
+_SHORT_BOOKED = "Booked stays shorter than the others: the figure may be up to a half too low. Plan with more, or run the simulation."
+_BOOKED = (
+    "Booked patients: where their stays are even, long, or nearly all there are, the figure may be up to half too high, "
+    "several times where under 1 in 50 are turned away."
+)
+_GROUPS_AND_BOOKED = (
+    "Patients who come together beside a booked list: the figure may be up to a half too low. Plan with more, or run the "
+    "simulation."
+)
+_TOGETHER = "Several of these together were not checked: run the simulation under the picture."
+_SHORTER, _RATHER_EVEN, _LONG_DAYS = 0.75, 0.7, 14.0
+_MOST_IN_AN_HOUR, _SHORT_DAYS, _SWING_OF_WEEK = 0.25, 0.25, 0.1
 
 
 class _TurnedAway(NamedTuple):
@@ -104,16 +126,37 @@ def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[_TurnedAway
     return found[0], found[1]
 
 
+def _kinds_of_ward_notes(demand: Demand) -> list[str]:
+    """Say which way and how far wards of some kinds were off in simulations, where 1 in 100 or so are turned away."""
+    notes, stay = [], demand.length_of_stay
+    comes = demand.arrivals_per_day > 0
+    even = comes and stay.variation < _RATHER_EVEN
+    if even and np.ptp(demand.weekday_factors) > _SWING_OF_WEEK:
+        notes.append(_EVEN)
+    if demand.discharge_hours and (
+        max(demand.discharge_hours) > _MOST_IN_AN_HOUR or (comes and stay.mean_days < _SHORT_DAYS)
+    ):
+        notes.append(_SHARP)
+    if demand.booked:
+        means = [one.length_of_stay.mean_days for one in demand.booked if one.arrivals_per_day > 0]
+        longest = max([*means, stay.mean_days if comes else 0.0])
+        notes.append(_SHORT_BOOKED if any(mean < _SHORTER * longest for mean in means) else _BOOKED)
+        if demand.clustering > 1.0:
+            notes.append(_GROUPS_AND_BOOKED)
+    return [*notes, _TOGETHER] if len(notes) > 1 else notes
+
+
 def _notes(demand: Demand) -> tuple[str, ...]:
     """Say how the figures were found, and which way they may be off."""
-    large = demand.offered_load > LARGEST_CORRECTED_LOAD and not demand.is_steady
-    notes = [_LARGE_WARD if large else _METHOD]
+    notes = [_METHOD]
+    if np.ptp(demand.month_factors) > 1e-9:
+        stay = demand.length_of_stay
+        long_and_even = stay.mean_days > _LONG_DAYS and stay.variation < _RATHER_EVEN
+        notes.append(_MONTH_OFF + (_EVEN_MONTH_OFF if long_and_even else "."))
+    if beds_wanted(demand) > _LARGE_LOAD:
+        notes.append(_LARGE)
     notes.extend(clustering_notes(demand))
-    if demand.booked:
-        notes.append(
-            "Booked patients: beds come free at the rate of everyone in the ward. Where booked stays are shorter than "
-            "the others the figure may be up to a tenth too low, where they are more even up to a seventh too high."
-        )
+    notes.extend(_kinds_of_ward_notes(demand))
     if demand.rate_variation > 0:
         notes.append("Averaged over the rates that demand may turn out to have; booked lists stay as they are.")
     return tuple(notes)

@@ -10,6 +10,7 @@ from scipy import special
 
 from bedplan.models.bed_curve import BedCurve, Waits, bed_counts
 from bedplan.models.clusters import clustering_notes
+from bedplan.models.waiting_notes import kinds_of_ward_notes
 from bedplan.models.waiting_spread import spread_of, wait_ratio
 from bedplan.models.waiting_year import Pace, raised_by_swing, settled_queue, share_who_wait
 from bedplan.models.year import (
@@ -32,6 +33,8 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
 
 _STEPS_HOURS = (24, 12, 6, 3, 2, 1)
+# a longer step would level the peak at which patients wait, before discharges or as a list comes in
+_STEP_WITH_DISCHARGES, _STEP_WITH_LISTS = 3, 1
 _STEADY_RATES, _RATES = 31, 7
 _NO_DRIFT = 1e-4
 # standard deviations: rates beyond are one in a thousand million
@@ -47,7 +50,8 @@ class _Load:
     """Beds wanted in each step of a period that repeats, a column a rate of arrival, and who comes when.
 
     ``wanted`` ``(steps, rates)``; ``patients`` ``(12, steps, rates)`` by month of coming, each rate by its ``chance``;
-    ``mean_days`` a bed is held, turnaround included, and ``patient_share`` of it that a patient is in it.
+    ``mean_days`` a bed is held, turnaround included, and ``patient_share`` of it that a patient is in it. The queue is
+    carried over ``steps_at_once``.
     """
 
     wanted: Array
@@ -56,6 +60,7 @@ class _Load:
     step_days: float
     mean_days: float
     patient_share: float
+    steps_at_once: int
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -78,20 +83,27 @@ def _rates(variation: float, many: int) -> tuple[Array, Array]:
     return rates / (rates @ chance), chance
 
 
-def _period_and_step(demand: Demand, by_hour: Array, mean_days: float) -> tuple[int, int]:
-    """Return the hours after which demand repeats, and the hours of a step: one step where all hours are alike."""
+def _period_and_step(demand: Demand, by_hour: Array, mean_days: float) -> tuple[int, int, int]:
+    """Return the hours after which demand repeats, the hours of a step, and how many are carried over at once.
+
+    One step where all hours are alike.
+    """
     if demand.is_steady and np.ptp(by_hour) <= 1e-9 * by_hour.mean():
-        return HOURS_A_WEEK, HOURS_A_WEEK
+        return HOURS_A_WEEK, HOURS_A_WEEK, 1
     has_seasons = max(demand.month_factors) - min(demand.month_factors) > 1e-12
-    step = next((hours for hours in _STEPS_HOURS if hours <= 8.0 * mean_days), 1)
-    return HOURS_A_YEAR if has_seasons else HOURS_A_WEEK, step
+    at_once = next((hours for hours in _STEPS_HOURS if hours <= 8.0 * mean_days), 1)
+    finest = _STEP_WITH_LISTS if demand.booked else _STEP_WITH_DISCHARGES if demand.discharge_hours else at_once
+    step = min(at_once, finest)
+    if not has_seasons:
+        return HOURS_A_WEEK, step, 1
+    return HOURS_A_YEAR, step, at_once // step
 
 
 def _load_of(demand: Demand) -> _Load:
     """Work out what is wanted in each step of the period."""
     by_hour, present = offered_load_by_hour(demand), patients_by_hour(demand)
     mean_days = by_hour.mean() / demand.total_arrivals_per_day
-    period, hours = _period_and_step(demand, by_hour, mean_days)
+    period, hours, at_once = _period_and_step(demand, by_hour, mean_days)
     steps = period // hours
     rates, chance = _rates(demand.rate_variation, _STEADY_RATES if steps == 1 else _RATES)
     booked_wanted = np.tile(booked_load_in_week(demand), period // HOURS_A_WEEK)
@@ -110,6 +122,7 @@ def _load_of(demand: Demand) -> _Load:
         step_days=hours / 24.0,
         mean_days=mean_days,
         patient_share=present.mean() / by_hour.mean(),
+        steps_at_once=at_once,
     )
 
 
@@ -138,7 +151,7 @@ def _queue(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> _Queue:
         steady = _steady_queue(demand, load, counts)
         wait, days = np.where(settles, steady[0], 1.0), np.where(settles, steady[1], np.inf)
     elif rates.size:
-        pace = Pace(load.step_days, load.mean_days)
+        pace = Pace(load.step_days, load.mean_days, load.steps_at_once)
         year = settled_queue(spread_of(demand), counts, load.wanted[:, rates], columns, pace)
         wait[:, settles], days[:, settles] = year
         wait = raised_by_swing(wait, load.wanted, load.patients.sum(axis=0), _weeks(load))
@@ -212,9 +225,9 @@ def _notes(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> tuple[str,
         notes.append(
             "With a rhythm of weekdays or hours the share who wait may be up to a tenth of it off, with very uneven stays up "
             "to a seventh too low, with very even ones up to a fifth too high. The mean wait may be up to a fifth too long, "
-            "with short stays up to a half; the share who wait for hours up to a seventh too low where few beds are free. "
-            "Where booked lists bring many, up to a third fewer wait."
+            "with short stays up to a half; the share who wait for hours up to a seventh too low where few beds are free."
         )
+    notes.extend(kinds_of_ward_notes(demand))
     notes.extend(clustering_notes(demand, waits=True))
     if demand.rate_variation > 0.0:
         notes.append(

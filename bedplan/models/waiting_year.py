@@ -47,10 +47,11 @@ def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -
 
 
 class Pace(NamedTuple):
-    """How long a step is, and how long a bed is held on average."""
+    """How long a step is, how long a bed is held on average, and how many steps the queue is carried over at once."""
 
     step_days: float
     mean_days: float
+    steps_at_once: int = 1
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -209,6 +210,17 @@ def _settled(columns: _Columns, wanted: Array, share: float) -> Array:
     return present
 
 
+def _carried(wards: _Columns, wanted: Array, pace: Pace) -> Array:
+    """Return x in every step, carried over several at once."""
+    share = pace.steps_at_once * pace.step_days / pace.mean_days
+    if pace.steps_at_once == 1:
+        return _settled(wards, wanted, share)
+    together = wanted.reshape(-1, pace.steps_at_once, wanted.shape[1])
+    mean = together.mean(axis=1)
+    queue = _settled(wards, mean, share) - mean
+    return (together + queue[:, None]).reshape(wanted.shape)
+
+
 def settled_queue(
     spread: Spread, counts: NDArray[np.int64], wanted: Array, columns: NDArray[np.int64], pace: Pace
 ) -> tuple[Array, Array]:
@@ -217,13 +229,14 @@ def settled_queue(
     ``counts`` ``(n,)`` above 0, ascending; ``columns`` ``(k,)``: the place in ``counts`` of each column; ``wanted``
     ``(steps, k)``: beds wanted if nobody ever waited, on average less than the beds. Returns the share who wait and
     the mean days of those who do, both ``(steps, k)``. x follows dx/dt = a'(t) + (a(t) − b(x))/m: without a queue x is
-    a(t), whatever the shape of stay; with one, the beds give up b(x)/m patients a day.
+    a(t), whatever the shape of stay; with one, the beds give up b(x)/m patients a day. Steps carried over at once share
+    one queue, on which each step's own load rides.
 
     Source: Wang, Tipper & Banerjee 1996, IEEE INFOCOM (pointwise stationary fluid flow).
     Checked by: tests/models/test_waiting.py
     """
     wards = _columns(spread, counts).only(columns)
-    wait, stays = wards.waits(_settled(wards, wanted, pace.step_days / pace.mean_days))
+    wait, stays = wards.waits(_carried(wards, wanted, pace))
     return wait, pace.mean_days * stays
 
 

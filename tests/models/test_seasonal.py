@@ -7,7 +7,16 @@ import math
 import numpy as np
 import pytest
 
-from bedplan.models import BookedList, Demand, LengthOfStay, erlang_b, erlang_loss, seasonal_loss, simulate_ward
+from bedplan.models import (
+    BookedList,
+    Demand,
+    LengthOfStay,
+    WardRun,
+    erlang_b,
+    erlang_loss,
+    seasonal_loss,
+    simulate_ward,
+)
 from bedplan.models.leaving import HOURS_A_YEAR, Leaving, beds_held, hours_held
 from bedplan.models.periodic_chain import Rhythm, fullness
 from bedplan.models.year import mean_week, month_of_hour, patients_by_hour, unbooked_by_hour
@@ -208,7 +217,7 @@ def test_booked_stays_unlike_the_others_stay_within_a_seventh(booked_days: float
     curve = seasonal_loss(demand, [beds])
 
     assert (curve.unbooked_turn_away[0], curve.booked_turn_away[0]) == pytest.approx(exact, rel=0.14)
-    assert any("Booked patients" in note for note in curve.notes)
+    assert any(note.startswith("Booked") for note in curve.notes)
 
 
 @pytest.mark.parametrize(("size", "load", "beds", "share"), [(2, 25.0, 30, 0.08234), (3, 30.0, 40, 0.05053)])
@@ -320,15 +329,127 @@ def test_months_weekdays_and_groups_add_up_to_the_year() -> None:
     assert (curve.by_weekday.max(axis=0) >= curve.turn_away_probability).all()
 
 
-def test_small_stays_and_very_large_wards() -> None:
-    """Stays of seconds leave Erlang's share at each hour's own load; above 1,500 beds the first cut stands, and says so."""
+def test_stays_of_seconds() -> None:
+    """Stays of seconds leave Erlang's share at each hour's own load."""
     rates = (0.0,) * 8 + (2.4,) * 10 + (0.0,) * 6
     short = seasonal_loss(Demand(1000.0, LengthOfStay(1e-4), hour_factors=rates), [1, 2]).turn_away_probability
     assert short == pytest.approx(erlang_b(0.24, [1, 2]), rel=5e-3)
 
-    large = seasonal_loss(Demand(1_000.0, LengthOfStay(4.0), weekday_factors=WEEK), [0, 4_000, 4_400])
-    assert (np.diff(large.turn_away_probability) < 0).all()
-    assert "half too low" in large.notes[0]
+
+def test_very_large_wards_feel_their_rhythm_too() -> None:
+    """1,800 beds wanted, 600 of them by turnaround: within a tenth of a simulated ward, as the note says."""
+    demand = Demand(300.0, LengthOfStay(4.0), weekday_factors=WEEK, turnaround_hours=48.0)
+    ward = simulate_ward(demand, 1_900, seed=1, run=WardRun(replications=20, days=182.0))
+    curve = seasonal_loss(demand, [1_900])
+
+    assert curve.turn_away_probability[0] == pytest.approx(ward.turn_away_probability, rel=0.1)
+    assert any("Above 1,500 beds" in note for note in curve.notes)
+
+
+FIVE = (1.4,) * 5 + (0.0, 0.0)
+MORNING = (0,) * 9 + (1,) + (0,) * 14
+EVERY_WORKDAY = (1,) * 5 + (0, 0)
+
+
+def with_list(unbooked: Demand, patients: int, stay: LengthOfStay, hour: int = 8) -> Demand:
+    """Return a ward to which so many booked patients come each workday."""
+    slots = tuple(patients * day for day in EVERY_WORKDAY)
+    return unbooked.with_changes(booked=(BookedList(slots, stay, hour),))
+
+
+EVEN_NOTE = ("Even stays and a weekly rhythm", "a quarter too low", 0.25)
+SHARP_NOTE = (
+    "Patients leave within a few hours",
+    "under 1 in 50 are turned away the figure may be up to a half too low",
+    0.5,
+)
+SHORT_NOTE = ("Booked stays shorter", "a half too low", 0.5)
+GROUPS_NOTE = ("beside a booked list", "a half too low", 0.5)
+# kind of ward -> the ward, its bed counts, and the note, how it puts the size of the error, and that size
+LOW_KINDS = {
+    "five days each, workdays only": (Demand(4.8, LengthOfStay(5.0, 0.0), weekday_factors=FIVE), (28, 35), EVEN_NOTE),
+    "the same, a larger ward": (Demand(16.0, LengthOfStay(5.0, 0.0), weekday_factors=FIVE), (91,), EVEN_NOTE),
+    "rather even, a strong week": (Demand(4.8, LengthOfStay(5.0, 0.3), weekday_factors=WEEK), (25, 31), EVEN_NOTE),
+    "all leave at nine, a day": (Demand(12.0, LengthOfStay(1.0, 0.8), discharge_hours=MORNING), (22, 23), SHARP_NOTE),
+    "all leave at nine, four days": (
+        Demand(3.0, LengthOfStay(4.0, 0.8), discharge_hours=MORNING),
+        (19, 21),
+        SHARP_NOTE,
+    ),
+    "day surgery": (
+        with_list(Demand(2.0, LengthOfStay(8.0)), 12, LengthOfStay(0.3, 0.3)),
+        (25, 29, 33),
+        SHORT_NOTE,
+    ),
+    "a day beside ten": (with_list(Demand(2.0, LengthOfStay(10.0)), 8, LengthOfStay(1.0, 0.3)), (27, 33), SHORT_NOTE),
+    "a day beside five": (with_list(Demand(2.0, LengthOfStay(5.0)), 5, LengthOfStay(1.0, 0.3)), (19, 22), SHORT_NOTE),
+    "groups and a list": (
+        with_list(Demand(3.0, LengthOfStay(4.0), clustering=3.0), 4, LengthOfStay(4.0)),
+        (32, 35),
+        GROUPS_NOTE,
+    ),
+}
+
+
+@pytest.mark.parametrize("kind", LOW_KINDS)
+def test_kinds_of_wards_that_err_low_say_how_far(kind: str) -> None:
+    """Where a simulated ward turns more away, the note of its kind is printed and its size is not exceeded."""
+    demand, counts, (begins, size, most) = LOW_KINDS[kind]
+    curve = seasonal_loss(demand, counts)
+    run = WardRun(replications=int(np.clip(1_000.0 / demand.total_arrivals_per_day, 40, 400)), days=364.0)
+    off = []
+    for share, beds in zip(curve.turn_away_probability, counts, strict=True):
+        low, high = simulate_ward(demand, beds, seed=4, run=run).interval_at(0.99)
+        off.append(share / low - 1.0)
+        assert share >= (1.0 - most) * low
+        assert share <= 2.0 * high
+
+    assert min(off) < -0.02
+    assert any(begins in note and size in note for note in curve.notes)
+
+
+def test_an_even_list_alone_errs_high_and_says_so() -> None:
+    """Five booked a workday, three days each: never too low, and a note says half or several times too high."""
+    demand = with_list(Demand(0.0, LengthOfStay(4.0)), 5, LengthOfStay(3.0, 0.0))
+    curve = seasonal_loss(demand, [12, 17])
+    for share, beds in zip(curve.turn_away_probability, (12, 17), strict=True):
+        assert share > simulate_ward(demand, beds, seed=4).interval[0]
+
+    assert any("up to half too high, several times where under 1 in 50" in note for note in curve.notes)
+
+
+def test_kinds_together_and_usual_wards() -> None:
+    """Kinds that meet on one ward weren't checked together, and it says so; a usual ward gets no kind's note."""
+    usual = seasonal_loss(Demand(6.0, LengthOfStay(4.0), SEASON, MILD, DAY, discharge_hours=AFTERNOON), [30]).notes
+    both = seasonal_loss(Demand(5.0, LengthOfStay(5.0, 0.0), weekday_factors=FIVE, discharge_hours=MORNING), [30]).notes
+
+    assert len(usual) == 2
+    assert "6 % of its figure too low" in usual[1]
+    assert any("together were not checked" in note for note in both)
+    assert len(both) <= 4
+
+
+@pytest.mark.parametrize(
+    ("stay", "most", "words"),
+    [(LengthOfStay(4.0, 0.0), 0.06, "up to 6 %"), (LengthOfStay(60.0, 0.3), 0.25, "a quarter")],
+)
+def test_months_err_as_their_note_says(stay: LengthOfStay, most: float, words: str) -> None:
+    """Month by month through a strong winter, even stays: no month is further too low than the note says."""
+    demand = Demand(24.0 / stay.mean_days, stay, SEASON)
+    beds = 28
+    ward = simulate_ward(demand, beds, seed=2)
+    curve = seasonal_loss(demand, [beds])
+    chance = 3.0 * np.sqrt(ward.by_month * 25.0 / ward.came_by_month)
+
+    assert (curve.by_month[:, 0] > (1.0 - most) * ward.by_month - chance).all()
+    assert any(words in note for note in curve.notes if "A single month" in note)
+
+
+def test_a_list_of_nobody() -> None:
+    """A list on which nobody stands, or nobody attends, beside no other patients: nobody is turned away."""
+    for nobody in (BookedList((0,) * 7, LengthOfStay(1.0)), BookedList((2,) * 7, LengthOfStay(1.0), attends=0.0)):
+        curve = seasonal_loss(Demand(0.0, LengthOfStay(4.0), booked=(nobody,)), [0, 5])
+        assert curve.turn_away_probability[1] == 0.0
 
 
 def test_no_demand_and_no_beds() -> None:
