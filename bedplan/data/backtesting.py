@@ -16,6 +16,7 @@ from bedplan.data.chances import count_at, ranked_score, share_above, share_with
 from bedplan.data.last_year import BAND, WIDE_BAND, Backtest
 from bedplan.data.outlook import forecast_from, past_origins
 from bedplan.data.readings import take_readings
+from bedplan.data.silence import silence_notes, without_silences
 from bedplan.models import average_beds
 
 if TYPE_CHECKING:
@@ -43,8 +44,9 @@ def backtest(records: Records, ward: str, *, capacity: Capacity | None = None) -
 
     Each month of the last year is predicted from what was known when it began, twelve times in all: patients in beds
     at 11:00 (at midnight where records hold dates alone) as a distribution, not as one number. With ``capacity``,
-    the band ends at the staffed beds; closures of the year itself are not known to it. Needs two years of records;
-    with less, the answer says so.
+    the band ends at the staffed beds; closures of the year itself are not known to it. Days in which the ward was
+    closed or missing from the file, and those after them until it had filled up again, are left out. Needs two years of
+    records; with less, the answer says so.
 
     Raises:
         UnreadableRecords: the file has no such ward.
@@ -52,12 +54,20 @@ def backtest(records: Records, ward: str, *, capacity: Capacity | None = None) -
     Source: rolling origin: Tashman 2000, International Journal of Forecasting 16(4).
     Checked by: tests/data/test_backtesting.py
     """
-    records = records.settled
+    whole, records = records.settled, without_silences(records.settled, ward, settled=True)
     readings = take_readings(records, ward)
     beds = capacity and capacity.linked_to(records)
     trial = _Trial(records, readings, beds if beds and ward in beds.wards else None)
     reason = trial.why_not()
-    return Backtest(ward, checked=False, reason=reason) if reason else trial.judged()
+    return Backtest(ward, checked=False, reason=reason) if reason else replace(trial.judged(), **_left_out(whole, ward))
+
+
+def _left_out(records: Records, ward: str) -> dict[str, tuple[str, ...]]:
+    """Return why days are left out, in words: when nobody came, and which were chosen."""
+    chosen = ("as chosen for this file",) if records.excluded else ()
+    silent = silence_notes(records, ward)
+    filling = ("because nobody came then or the ward filled up again after",) if silent else ()
+    return {"left_out_because": (*chosen, *filling), "silences": tuple(silent)}
 
 
 class _Trial:
@@ -142,12 +152,14 @@ class _Trial:
             calibration_ranges=tuple(coverage_range(inside[level]) for level in LEVELS),
             score=ranked_score(chances[counted], actual[counted]),
             middle_error=float((happened["present"] - happened["middle"]).abs().mean()),
-            same_week_error=float((happened["present"] - happened["same_week_last_year"]).abs().mean()),
+            same_week_error=self._same_week_error(days),
             average_formula_error=float((happened["present"] - average).abs().mean()),
             average_formula_beds=formula_beds,
             days_above_average_formula=int((happened["present"] > formula_beds).sum()),
             days_left_out=int((~counted).sum()),
-            full_share=None if self.open is None else float((self.census >= self.open)[:start].mean()),
+            full_share=None
+            if self.open is None
+            else float((self.census >= self.open)[:start][self.records.counted_days[:start]].mean()),
             when_full=months[0].when_full,
             methods=tuple(sorted({month.outlook.choice.method for month in months})),
             months=self._by_month(share_within(chances, actual, BAND)),
@@ -168,12 +180,22 @@ class _Trial:
             }
         )
 
-    def _by_month(self, inside: Array) -> tuple[tuple[pd.Timestamp, float], ...]:
-        """Return the share of days inside the band, month by month."""
+    def _same_week_error(self, days: pd.DataFrame) -> float:
+        """Return how far the same week of the year before was off, where both days count; 0 where none do."""
+        counted = self.readings.arrivals.counted
         start = self.origins[0]
-        bounds = [*self.origins, self.readings.days]
+        both = counted[start:] & counted[start - SAME_WEEKDAY_DAYS : -SAME_WEEKDAY_DAYS]
+        wrong = (days["present"] - days["same_week_last_year"])[both].abs()
+        return float(wrong.mean()) if both.any() else 0.0
+
+    def _by_month(self, inside: Array) -> tuple[tuple[pd.Timestamp, float], ...]:
+        """Return the share of days that count inside the band, month by month; months without such days are left out."""
+        start = self.origins[0]
+        bounds, counted = [*self.origins, self.readings.days], self.readings.arrivals.counted
         return tuple(
-            (self._date(begin), float(inside[begin - start : end - start].mean())) for begin, end in pairwise(bounds)
+            (self._date(begin), float(inside[begin - start : end - start][counted[begin:end]].mean()))
+            for begin, end in pairwise(bounds)
+            if counted[begin:end].any()
         )
 
     def _average_formula(self) -> tuple[float, int]:
@@ -182,8 +204,10 @@ class _Trial:
         stays = self.records.of_ward(self.readings.ward)
         recent = stays[(stays["end"] < start) & (stays["end"] >= start - pd.Timedelta(days=YEAR_DAYS))]
         mean_days = float(((recent["end"] - recent["start"]) / pd.Timedelta(days=1)).mean()) if len(recent) else 0.0
-        came = stays["start"]
-        admissions = int(((came < start) & (came >= start - pd.Timedelta(days=YEAR_DAYS))).sum())
-        if mean_days <= 0:
+        place = (stays["start"] - self.records.window[0]).dt.days
+        year = np.arange(max(self.origins[0] - YEAR_DAYS, 0), self.origins[0])
+        year = year[self.records.counted_days[year]]
+        if mean_days <= 0 or not year.size:
             return 0.0, 0
+        admissions = int(place.isin(year).sum()) / year.size * YEAR_DAYS
         return admissions * mean_days / YEAR_DAYS, math.ceil(average_beds(admissions, mean_days, USUAL_OCCUPANCY))

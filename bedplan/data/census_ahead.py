@@ -97,7 +97,8 @@ def _stay_growth(readings: Readings, origin: int, outlook: Outlook, back: int) -
     """Return how stays have changed at each reading against the middle of the known time: bed-days grow by stay band."""
     growth = outlook.trend.growth_per_year
     of_bed_days, _ = growth_of_bed_days(fit_stay_bands(readings, origin, growth))
-    years = (np.arange(-back, outlook.expected.size) + origin / 2.0) / YEAR_DAYS
+    middle = float(np.flatnonzero(readings.arrivals.counted[:origin]).mean())
+    years = (np.arange(-back, outlook.expected.size) + origin - middle) / YEAR_DAYS
     return ((1.0 + of_bed_days) / (1.0 + growth)) ** years
 
 
@@ -119,6 +120,8 @@ def _fit_to_past(
     """Return what beds do when full and how much more the census swung than told: what fits the year before best."""
     back = slice(origin - told[0].size, origin)
     use = readings.arrivals.counted[back]
+    if not use.any():  # closed all the year before
+        return "stays anyway", 1.0
     limit = None if beds is None else beds[back][use]
     past = _Past(readings.present()[back][use], told[0][use], told[1][use], limit)
     if limit is None or (past.patients > limit).mean() > MOST_OVER_BEDS:

@@ -148,7 +148,7 @@ def estimate_demand(
     if hidden is not None and hidden.mean_stay_days > 0:
         stay = LengthOfStay(hidden.mean_stay_days, stay.variation, stay.shape)
     demand = _demand(records, arrivals, stay, lists, raised)
-    growth, bed_days = _growth(records, ward, every)
+    growth, bed_days = _growth(whole, ward, every)
     return DemandEstimate(
         ward=ward,
         demand=demand,

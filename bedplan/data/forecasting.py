@@ -12,22 +12,13 @@ import pandas as pd
 from scipy import special
 
 from bedplan import wording
+from bedplan.data.arrivals import arrivals_of
 from bedplan.data.chances import at_most, count_at
 from bedplan.data.dates import DAY_SECONDS
-from bedplan.data.outlook import (
-    FEWEST_PAST_FORECASTS,
-    NAIVE,
-    REGRESSION,
-    SPECTRUM,
-    Choice,
-    DailyCounts,
-    Outlook,
-    forecast_from,
-    look_ahead,
-    past_origins,
-)
+from bedplan.data.forecast_notes import change_notes, outlook_notes, why_method
+from bedplan.data.outlook import DailyCounts, forecast_from, look_ahead, past_origins
 from bedplan.data.readings import take_readings
-from bedplan.data.rhythm import LEAST_DAYS_FOR_GROWTH, LEAST_DAYS_FOR_SEASON
+from bedplan.data.silence import silence_notes, without_silences
 from bedplan.data.stay_bands import StayBand, fit_stay_bands, growth_of_bed_days
 from bedplan.errors import ImpossibleFigure
 
@@ -46,7 +37,6 @@ MOST_DAYS = 3_653
 LEAST_DAYS, FEWEST_PATIENTS = 56, 50
 LEVELS = (0.80, 0.95)
 EPOCH = pd.Timestamp("1970-01-01")
-AS_BEFORE = "It goes on as before: no new service, no new rule and no change among neighbours is foreseen."
 ADMISSIONS = (
     "Admissions are foreseen, as the records hold them. Patients who found no bed are not among them; add the demand "
     "that the records hide before planning beds on this."
@@ -158,7 +148,8 @@ def forecast_arrivals(records: Records, ward: str, *, horizon_days: int = YEAR_D
     """How many patients will come to this ward in the days after its records, and how many bed-days will they use?
 
     Growth is carried to bed-days by how long patients have been in, not by heads: one more patient in the long tail
-    takes more beds than ten who leave next day. Excluded days are left out, and days before the ward's first patient.
+    takes more beds than ten who leave next day. Left out are excluded days, days in which the ward was closed or missing
+    from the file, and days before its first patient.
 
     Raises:
         UnreadableRecords: the file has no such ward.
@@ -166,19 +157,21 @@ def forecast_arrivals(records: Records, ward: str, *, horizon_days: int = YEAR_D
 
     Checked by: tests/data/test_forecasting.py
     """
-    stays = records.of_ward(ward)
+    stays, used = records.of_ward(ward), without_silences(records, ward)
     first = int(records.window[0].timestamp())
     start = stays["start"].to_numpy().astype("datetime64[s]").astype(np.int64)
     place = (start - first) // DAY_SECONDS
     inside = place[(place >= 0) & (place < records.days)]
-    counted = records.counted_days.copy()
+    counted = used.counted_days.copy()
     counted[: max(int(place.min()), 0)] = False
     counts = np.bincount(inside, minlength=records.days).astype(float)
     forecast = _forecast(DailyCounts(first // DAY_SECONDS, counts, counted), horizon_days)
     readings = take_readings(records, ward)
     bands = fit_stay_bands(readings, readings.days, forecast.growth_per_year)
     years = tuple(_with_bed_days(year, place, bands, forecast) for place, year in enumerate(forecast.years))
-    return replace(forecast, ward=ward, stay_bands=bands, years=years, notes=(ADMISSIONS, *forecast.notes))
+    lately = change_notes(arrivals_of(used, stays["start"]))
+    notes = (ADMISSIONS, *forecast.notes, *silence_notes(records, ward), *lately)
+    return replace(forecast, ward=ward, stay_bands=bands, years=years, notes=notes)
 
 
 def forecast_counts(
@@ -211,7 +204,7 @@ def _forecast(series: DailyCounts, horizon_days: int) -> Forecast:
         )
     past = [forecast_from(series, place, YEAR_DAYS) for place in past_origins(series)]
     outlook = look_ahead(series, series.counts.size, horizon_days, past)
-    latest = series.counts[-YEAR_DAYS:][series.counted[-YEAR_DAYS:]]
+    latest = np.where(series.counted, series.counts, outlook.trend.expected(series.days))[-YEAR_DAYS:]
     forecast = Forecast(
         ward="",
         first_day=EPOCH + pd.Timedelta(days=series.first_day + series.counts.size),
@@ -221,12 +214,12 @@ def _forecast(series: DailyCounts, horizon_days: int) -> Forecast:
         growth_per_year=outlook.trend.growth_per_year,
         growth_error=outlook.trend.growth_error,
         method=outlook.choice.method,
-        why=_why(outlook.choice),
+        why=why_method(outlook.choice),
         errors={name: error for name, error in outlook.choice.errors.items() if math.isfinite(error)},
-        last_year=float(latest.mean()) * YEAR_DAYS if latest.size else 0.0,
+        last_year=float(latest.mean()) * YEAR_DAYS,
         years=(),
         stay_bands=(),
-        notes=tuple(_notes(outlook, days)),
+        notes=tuple(outlook_notes(outlook, days)),
     )
     return replace(forecast, years=tuple(_years(forecast)))
 
@@ -243,14 +236,17 @@ def _years(forecast: Forecast) -> list[YearAhead]:
 
 
 def _with_bed_days(year: YearAhead, number: int, bands: tuple[StayBand, ...], forecast: Forecast) -> YearAhead:
-    """Return a year with its bed-days: every stay band by its own trend; as unsure as arrivals, and as its stays."""
+    """Return a year with its bed-days: every stay band by its own trend; as unsure as arrivals, and as its stays.
+
+    The same patients pass from band to band, so that the bands' errors are taken to go together.
+    """
     place = slice(number * YEAR_DAYS, (number + 1) * YEAR_DAYS)
     days = (forecast.first_day - EPOCH).days + np.arange(place.start, place.stop)
     by_band = [float(band.trend.expected(days).sum()) for band in bands]
-    off = [float(band.trend.variance_of_rate(days).mean()) for band in bands]
+    off = [math.sqrt(float(band.trend.variance_of_rate(days).mean())) for band in bands]
     total = math.fsum(by_band)
-    unsure = math.fsum(beds**2 * error for beds, error in zip(by_band, off, strict=True)) / max(total, 1e-9) ** 2
-    variance = unsure + float(forecast.variance_of_rate[place].mean())
+    unsure = math.fsum(beds * error for beds, error in zip(by_band, off, strict=True)) / max(total, 1e-9)
+    variance = unsure**2 + float(forecast.variance_of_rate[place].mean())
     ranges = {f"bed_days_{100 * level:.0f}": _range(total, variance, level) for level in LEVELS}
     return replace(year, bed_days=total, **ranges)
 
@@ -266,35 +262,3 @@ def _range(total: float, variance: float, level: float) -> Range:
         return total, total
     low, high = (special.gammaincinv(1.0 / variance, share) for share in ((1.0 - level) / 2.0, (1.0 + level) / 2.0))
     return total * variance * float(low), total * variance * float(high)
-
-
-def _why(choice: Choice) -> str:
-    """Say which method is used and how it did against the others."""
-    if choice.forecasts < FEWEST_PAST_FORECASTS:
-        return f"{choice.method.capitalize()}: the records are too short to try others on their own past."
-    used, naive = choice.errors[choice.method], choice.errors[NAIVE]
-    other = choice.errors[SPECTRUM if choice.method == REGRESSION else REGRESSION]
-    name = SPECTRUM if choice.method == REGRESSION else REGRESSION
-    against = "less" if used < naive else "more"
-    share = wording.percent(abs(1.0 - used / naive)) if naive > 0 else "0"
-    return (
-        f"{choice.method.capitalize()}: in {choice.forecasts} forecasts of past days it missed a week's patients by "
-        f"{used:.1f} on average, {share} {against} than the same week last year ({naive:.1f}); {name} missed by {other:.1f}."
-    )
-
-
-def _notes(outlook: Outlook, days: int) -> list[str]:
-    """Return what belongs beside the forecast."""
-    notes = [AS_BEFORE]
-    if days < LEAST_DAYS_FOR_SEASON:
-        notes.append("Too few days to tell the seasons: every month is taken as average.")
-    if days < LEAST_DAYS_FOR_GROWTH:
-        notes.append("Too few days to tell growth from season: none is foreseen, and it may be there.")
-    choice = outlook.choice
-    if choice.forecasts < FEWEST_PAST_FORECASTS:
-        notes.append("Too short to look at past forecasts: the range takes the usual drift of demand, 3 % a year.")
-    elif choice.errors[choice.method] >= choice.errors[NAIVE]:
-        notes.append(
-            "The same week last year was nearer than any method: expect surprises, and take the range seriously."
-        )
-    return notes

@@ -47,6 +47,7 @@ class Backtest:
     ahead. ``calibration``: (level, share of days inside), ``calibration_ranges`` what chance allows each (95 %).
     ``score``: ranked probability score of what was told; the ``…_error`` are mean misses of one number; all in beds. ``days``: a row a day: date, present, low, middle, high
     (80 %), low_95, high_95, same_week_last_year, counted. ``months``: (first day, share inside the 80 % band).
+    ``left_out_because``: why days are left out, ``silences``: in which nobody came, both in words.
     ``full_share``: readings before the year at which no open bed was free; None without capacity.
     """
 
@@ -71,6 +72,8 @@ class Backtest:
     average_formula_beds: int = 0
     days_above_average_formula: int = 0
     days_left_out: int = 0
+    left_out_because: tuple[str, ...] = ()
+    silences: tuple[str, ...] = ()
     full_share: float | None = None
     when_full: WhenFull = "stays anyway"
     methods: tuple[str, ...] = ()
@@ -242,4 +245,6 @@ def _notes(result: Backtest) -> Iterator[str]:
     if result.middle_error >= min(result.same_week_error, result.average_formula_error):
         yield "One number, told by a plainer way, was as near on an average day as the middle of the band."
     if result.days_left_out:
-        yield f"{result.days_left_out} days of the year are left out, as chosen for this file."
+        because = " and ".join(result.left_out_because)
+        yield f"{result.days_left_out} days of the year are left out{', ' if because else ''}{because}."
+    yield from result.silences

@@ -10,7 +10,7 @@ import numpy as np
 from scipy import optimize
 
 from bedplan.data.accuracy import seasonal_naive
-from bedplan.data.rhythm import YEAR_DAYS
+from bedplan.data.rhythm import LEAST_DAYS_FOR_SEASON, YEAR_DAYS
 from bedplan.data.spectrum import singular_spectrum
 from bedplan.data.trend import Trend, fit_trend
 
@@ -32,6 +32,7 @@ LEAST_TRAINING_DAYS = 364
 MOST_PAST_FORECASTS = 36
 FEWEST_PAST_FORECASTS = 6
 USUAL_DRIFT = 0.03  # SD ÷ mean of demand from year to year where the file is too short to tell
+USUAL_SEASON = 0.10  # SD ÷ mean by which the seasons may lift a file too short to tell them; common practice, no source
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -119,6 +120,8 @@ def look_ahead(series: DailyCounts, origin: int, steps: int, past: Sequence[Past
     years = (np.arange(steps) + 0.5) / YEAR_DAYS
     at_once, a_year = choice.drift
     variance = np.maximum(at_once + a_year * years, own.trend.variance_of_rate(ahead))
+    if int(known.counted.sum()) < LEAST_DAYS_FOR_SEASON:
+        variance = variance + USUAL_SEASON**2
     return Outlook(own.expected[choice.method], variance, own.trend, choice)
 
 

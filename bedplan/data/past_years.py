@@ -28,8 +28,8 @@ class PastYear:
 def past_years(records: Records, ward: str) -> tuple[PastYear, ...]:
     """How many came in each year of the records, and how many beds did they use? Counted back from the end, oldest first.
 
-    Read once a day as the forecast is, so that the two join. Excluded days are left out of a year's mean; a year with
-    too few days left, or that began before all who were in are known, is not shown.
+    Read once a day as the forecast is, so that the two join. Excluded days, and those in which the ward was closed or
+    missing from the file, are left out of a year's mean; a year with too few days left, or that began before all who were in are known, is not shown.
 
     Raises:
         UnreadableRecords: the file has no such ward.

@@ -9,6 +9,7 @@ import numpy as np
 
 from bedplan.data.outlook import DailyCounts
 from bedplan.data.rhythm import shrink_factors
+from bedplan.data.silence import without_silences
 from bedplan.data.survival import StayCurve, product_limit
 
 if TYPE_CHECKING:
@@ -105,7 +106,8 @@ class Readings:
 def take_readings(records: Records, ward: str) -> Readings:
     """What does this ward look like once a day: at 11:00, or at midnight where the records hold dates alone?
 
-    Days before the first patient was in don't count, as if the ward had not been open.
+    Days before the first patient was in don't count, nor those in which the ward was closed or missing from the file, nor
+    those after them in which it filled up again.
 
     Checked by: tests/data/test_readings.py
     """
@@ -118,8 +120,9 @@ def take_readings(records: Records, ward: str) -> Readings:
     days = records.days
     inside = (first >= 0) & (first < days)
     counts = np.bincount(first[inside], minlength=days).astype(float)
-    counted = records.counted_days.copy()
-    counted[1:] &= records.counted_days[:-1]  # a reading's day begins at the reading before
+    used = without_silences(records, ward, settled=True).counted_days
+    counted = used.copy()
+    counted[1:] &= used[:-1]  # a reading's day begins at the reading before
     counted[0] &= hour == 0
     counted[: max(int(first.min()), 0)] = False
     return Readings(ward, hour, DailyCounts(begin // DAY_SECONDS, counts, counted), first, last)

@@ -56,7 +56,7 @@ def _bands(readings: Readings, origin: int, arrivals_growth: float) -> Iterator[
     """Yield the bands that hold enough."""
     counted = readings.arrivals.counted[:origin].copy()
     if not (readings.first < 0).any():
-        counted[:RUN_IN_DAYS] = False
+        counted[: min(RUN_IN_DAYS, origin // 2)] = False
     days = readings.arrivals.days[:origin][counted]
     for name, begin, end in zip(NAMES, EDGES[:-1], EDGES[1:], strict=True):
         beds = readings.present(begin, end)[:origin][counted].astype(float)

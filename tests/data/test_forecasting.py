@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime as dt
+from dataclasses import replace
 
 import numpy as np
 import pandas as pd
@@ -13,7 +14,7 @@ from bedplan.data import IntakeChoices, forecast_arrivals, read_records
 from bedplan.data.forecasting import forecast_counts
 from bedplan.data.outlook import NAIVE, REGRESSION, SPECTRUM, DailyCounts, forecast_from, look_ahead
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
-from tests.data.made_wards import RUN_IN_DAYS, MadeWard, made_records
+from tests.data.made_wards import RUN_IN_DAYS, MadeWard, made_records, without_arrivals
 
 FIRST = dt.date(2022, 4, 1)
 
@@ -209,6 +210,52 @@ def test_what_can_not_be_foreseen_is_refused() -> None:
         forecast_counts(np.full(400, 9.0), FIRST, horizon_days=4_000)
     with pytest.raises(UnreadableRecords, match="no stay on ward"):
         forecast_arrivals(made_records(MadeWard(4.0, 5.0, 1.0, days=100), 0), "Kestrel")
+
+
+@pytest.mark.parametrize(
+    ("first", "last", "off"),
+    [(500, 560, 0.03), (731, 791, 0.03), (-999, None, 0.08)],
+    ids=["closed in the middle", "closed at the start of last year", "opened half a year ago"],
+)
+def test_a_closed_ward_is_foreseen_as_open(first: int, last: int | None, off: float) -> None:
+    """Of 12 wards, the next year's admissions and bed-days lie in the 80 % range for 7 at least; their mean is the truth.
+
+    7 or fewer would be 1 in 14, 6 or fewer 1 in 50 (binomial). Opened half a year ago no season is known: the ends of
+    these files go round the year, and the mean may be off by more.
+    """
+    inside, held, ratio, bed_days = 0, 0, [], []
+    for seed in range(12):
+        days = 1_096 - (30 * seed if last is None else 0)
+        ward = MadeWard(6.0, 5.0, 1.1, days=days, growth=0.0)
+        records = without_arrivals(made_records(ward, seed), first, days - 182 if last is None else last)
+        forecast = forecast_arrivals(records, "Heron")
+        rates = replace(ward, days=days + 365).rates()[-365:]
+        low, central, high = forecast.per_year
+        inside += low <= np.random.default_rng(100 + seed).poisson(rates).sum() <= high
+        ratio.append(central / rates.sum())
+        year = forecast.years[0]
+        held += year.bed_days_80[0] <= 5.0 * rates.sum() <= year.bed_days_80[1]
+        bed_days.append(year.bed_days / (5.0 * rates.sum()))
+        assert any(note.startswith("Nobody came ") for note in forecast.notes)
+        assert forecast.last_year == pytest.approx(rates.sum(), rel=0.2 if last is None else 0.08)
+
+    assert inside >= 7
+    assert held >= 7
+    assert np.mean(ratio) == pytest.approx(1.0, abs=off)
+    assert np.mean(bed_days) == pytest.approx(1.0, abs=off + 0.02)
+
+
+def test_what_changed_lately_is_said() -> None:
+    """A third more in the last four weeks is named, with the way the forecast errs; a steady ward has no such note."""
+    records = made_records(MadeWard(8.0, 5.0, 1.0, growth=0.0), 3)
+    lately = records.stays[records.stays["start"] >= records.window[1] - pd.Timedelta(days=28)]
+    more = replace(records, stays=pd.concat([records.stays, lately.iloc[::2]]).reset_index(drop=True))
+
+    (note,) = (note for note in forecast_arrivals(more, "Heron").notes if " lately: " in note)
+    assert note.startswith("Arrivals grew by ")
+    assert f"in the last 4 weeks {len(lately) + len(lately.iloc[::2])} came" in note
+    assert "too few beds if the change lasts" in note
+    assert not any(" lately: " in note for note in forecast_arrivals(records, "Heron").notes)
 
 
 def test_excluded_periods_of_a_file_are_honoured() -> None:

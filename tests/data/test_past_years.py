@@ -10,7 +10,7 @@ import pytest
 
 from bedplan.data import forecast_arrivals
 from bedplan.data.past_years import past_years
-from tests.data.made_wards import FIRST_DAY, MadeWard, as_records, made_records
+from tests.data.made_wards import FIRST_DAY, MadeWard, as_records, made_records, without_arrivals
 
 
 def test_years_by_hand() -> None:
@@ -35,6 +35,15 @@ def test_days_left_out_do_not_lower_a_year() -> None:
     assert [year.admissions for year in past_years(quiet, "Heron")] == pytest.approx([730, 730], rel=0.01)
     assert [year.first_day.year for year in past_years(long, "Heron")] == [2023]
     assert past_years(as_records(np.arange(0.0, 300.0), np.arange(1.0, 301.0), 300), "Heron") == ()
+
+
+def test_a_year_with_a_closure_is_one_of_open_days() -> None:
+    """Two months without anyone, chosen by nobody, lower neither the year's admissions nor its beds in use."""
+    begin = np.arange(-3.0, 740.0, 0.5) + 0.2
+    years = past_years(without_arrivals(as_records(begin, begin + 2.0, 740), 500, 560), "Heron")
+
+    assert [year.admissions for year in years] == pytest.approx([730, 730], rel=0.01)
+    assert [year.beds_in_use for year in years] == pytest.approx([4.0, 4.0], rel=0.01)
 
 
 def test_past_and_future_join() -> None:

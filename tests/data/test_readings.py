@@ -52,12 +52,12 @@ def test_arrivals_are_those_since_the_reading_before() -> None:
 
 
 def test_a_ward_that_opened_late_does_not_count_as_empty() -> None:
-    """Days before the first patient are left out."""
+    """Days before the first patient are left out, and at most three mean stays after, in which it fills."""
     begin = np.arange(200.0, 400.0, 0.5)
     readings = take_readings(as_records(begin, begin + 3.0, 400), "Heron")
 
     assert not readings.arrivals.counted[:200].any()
-    assert readings.arrivals.counted[201:].all()
+    assert readings.arrivals.counted[200 + 3 * 3 + 1 :].all()
 
 
 def test_how_long_patients_stay_is_known_from_readings() -> None:
