@@ -58,10 +58,10 @@ DIGITS = (
 )
 NUMBERS = r"^(?P<first>\d{1,2})[/.\- ](?P<second_part>\d{1,2})[/.\- ](?P<year>\d{4}|\d{2})" + CLOCK + "$"
 NAMED = (
-    r"^(?:\pL{2,10}\.?,? +)?(?P<day>\d{1,2})(?:er|st|nd|rd|th)?(?:[-/ .]| de )*(?P<name>\pL{3,})"
+    r"^(?:[^\s\d.,]{2,10}\.?,? +)?(?P<day>\d{1,2})(?:er|st|nd|rd|th)?(?:[-/ .]| de )*(?P<name>[^\s\d.,/-]{3,})"
     r"(?:[-/ .,]| de )*(?P<year>\d{4}|\d{2})" + CLOCK + "$"
 )
-NAME_FIRST = r"^(?P<name>\pL{3,})[-/ .]*(?P<day>\d{1,2})(?:st|nd|rd|th)?,? +(?P<year>\d{4})" + CLOCK + "$"
+NAME_FIRST = r"^(?P<name>[^\s\d.,/-]{3,})[-/ .]*(?P<day>\d{1,2})(?:st|nd|rd|th)?,? +(?P<year>\d{4})" + CLOCK + "$"
 YEAR_FIRST = r"^\d{2}[-/.]\d{1,2}[-/.]\d{2}([T ]|$)"
 PLAIN_ISO = r"^\d{4}-\d{2}-\d{2}[ T]\d{2}:\d{2}(:\d{2})?$"
 SERIAL = r"^(?P<serial>[2-6]\d{4}(?:[.,]\d+)?)$"
@@ -164,7 +164,7 @@ def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> Ti
     left = ~blank
     left[_plain_iso(text, seconds)] = False
     had_offset, serial, counts = False, np.zeros(size, bool), (0, 0, 0)
-    for pattern in (ISO, DIGITS, NUMBERS, NAMED, NAME_FIRST, SERIAL):
+    for pattern in (ISO, DIGITS, SERIAL, NUMBERS, NAMED, NAME_FIRST):
         rows = np.flatnonzero(left)
         if not rows.size:
             break
