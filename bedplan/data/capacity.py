@@ -11,6 +11,7 @@ import numpy as np
 import pandas as pd
 import pyarrow as pa
 
+from bedplan.data.accounting import account
 from bedplan.data.columns import TELLTALES, without_formula
 from bedplan.data.dateorder import read_ordered
 from bedplan.data.dates import BLANK_WORDS, UNREADABLE
@@ -18,7 +19,7 @@ from bedplan.data.headings import CAPACITY_HEADINGS
 from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
 from bedplan.data.periods import merged, periods_that_count
 from bedplan.data.reading import read_table
-from bedplan.data.report import SET_ASIDE, Finding, IntakeReport, why_none
+from bedplan.data.report import IntakeReport
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.table import as_times
 from bedplan.errors import UnreadableRecords
@@ -153,26 +154,16 @@ def read_capacity(
 def _capacity(text: TextTable, name: str, date_order: str | None) -> Capacity:
     """Keep the rows that say something, and account for the others."""
     frame, reason, unread = _frame(text, name, date_order)
+    if unread and not (reason == "").any():
+        raise UnreadableRecords(unread)
+    report = account(
+        text, reason, name, "name a ward and a number of beds in each: check the columns ward and staffed_beds"
+    )
     kept = frame[reason == ""]
-    counts = reason[reason != ""].value_counts()
-    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
-    if text.misfits:
-        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
-    if kept.empty:
-        told = f"{name} names no ward with a number of beds: check the columns ward and staffed_beds."
-        raise UnreadableRecords(unread or [told, why_none(name, findings, "check the rows too")])
     kept = kept.sort_values(["ward", "from", "to"], ascending=[True, True, False], kind="stable").reset_index(drop=True)
     left_out = ["Where a row is left out, the period before it stands for its days."] if unread else []
     notes = (*text.notes, *unread, *left_out, *_notes(text, kept))
-    report = IntakeReport(
-        rows_in=len(frame) + text.misfits,
-        used=len(kept),
-        repaired=0,
-        set_aside=int(counts.sum()) + text.misfits,
-        findings=tuple(findings),
-        dropped_columns=text.dropped,
-        notes=notes,
-    )
+    report = replace(report, notes=notes)
     table = kept.drop(columns="funded_told")
     return Capacity(name, table, tuple(sorted(set(table["ward"]))), notes, report)
 

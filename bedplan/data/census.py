@@ -10,13 +10,13 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
+from bedplan.data.accounting import account
 from bedplan.data.capacity import beds_in_text
 from bedplan.data.columns import TELLTALES
 from bedplan.data.headings import CENSUS_HEADINGS
 from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
 from bedplan.data.moments import when
 from bedplan.data.reading import read_table
-from bedplan.data.report import REPAIRED, SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.table import as_times
 from bedplan.data.wardlinks import bare_name
@@ -27,6 +27,7 @@ if TYPE_CHECKING:
     from collections.abc import Mapping
 
     from bedplan.data.records import Records
+    from bedplan.data.report import IntakeReport
     from bedplan.data.texttable import TextTable
 
 CANNOT = (
@@ -162,24 +163,10 @@ def _census(text: TextTable, name: str, date_order: str | None, zeros_are_real: 
     repeated = (reason == "") & frame.duplicated(["time", "ward"], keep="last")
     reason[repeated] = "An earlier count of the same ward and time"
     kept = frame[reason == ""].sort_values(["time", "ward"], kind="stable").reset_index(drop=True)
-    counts = reason[reason != ""].value_counts()
     split = int((frame["extra"] > 0)[reason == ""].sum())
-    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
-    if text.misfits:
-        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
-    if kept.empty:
-        raise UnreadableRecords([why_none(name, findings, "write dates as 2024-03-31 and patients as whole numbers")])
-    if split:
-        findings.append(Finding(REPAIRED, "Regular and extra beds stood in one cell, as in 24 (+2)", split, 0.0))
-    report = IntakeReport(
-        rows_in=len(frame) + text.misfits,
-        used=len(kept) - split,
-        repaired=split,
-        set_aside=int(counts.sum()) + text.misfits,
-        findings=tuple(findings),
-        dropped_columns=text.dropped,
-        notes=(*text.notes, *_notes(kept)),
-    )
+    told = "Regular and extra beds stood in one cell, as in 24 (+2)"
+    report = account(text, reason, name, "write dates as 2024-03-31 and patients as whole numbers", (told, split))
+    report = replace(report, notes=(*report.notes, *_notes(kept)))
     beds = kept["available"] + kept["extra"]
     over_full = int(((kept["occupied"] > beds) & (kept["available"] >= 0)).sum())
     table = kept[["time", "ward", "available", "extra", "closed", "occupied"]]

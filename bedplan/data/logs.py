@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pandas as pd
 
+from bedplan.data.accounting import account
 from bedplan.data.columns import TELLTALES, plain, without_formula
 from bedplan.data.dates import DAY_SECONDS, UNREADABLE
 from bedplan.data.headings import CANCELLATION_HEADINGS, REFUSAL_HEADINGS, REQUEST_HEADINGS
@@ -15,7 +16,6 @@ from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, with
 from bedplan.data.moments import when
 from bedplan.data.reading import read_table
 from bedplan.data.reasons import means_no_bed, not_cancelled, plain_reason, was_given_a_bed
-from bedplan.data.report import REPAIRED, SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, SourceFile, open_source
 from bedplan.data.table import as_times
 from bedplan.errors import UnreadableRecords
@@ -24,6 +24,7 @@ if TYPE_CHECKING:
     from collections.abc import Mapping
 
     from bedplan.data.records import Records
+    from bedplan.data.report import IntakeReport
     from bedplan.data.texttable import TextTable
 
 MEANT = {  # kind of log -> what its file is called in sentences
@@ -234,25 +235,9 @@ def _read(kind: str, text: TextTable, name: str, date_order: str | None, cannot:
     reason[frame["time"].isna()] = "The time is missing or can't be read"
     reason[frame["ward"] == ""] = "No ward is named"
     table = frame[reason == ""].sort_values("time", kind="stable").reset_index(drop=True)
-    counts = reason[reason != ""].value_counts()
-    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
-    if text.misfits:
-        told = "A title, total or footer, or a line with another number of cells"
-        findings.append(Finding(SET_ASIDE, told, text.misfits, 0.0))
-    if table.empty:
-        raise UnreadableRecords([why_none(name, findings, "name a ward and write times as 2024-03-31 14:05")])
     repaired = int((day_only & (reason == "")).sum())
-    if repaired:
-        findings.append(Finding(REPAIRED, "The time of day can't be read: the day alone counts", repaired, 0.0))
-    report = IntakeReport(
-        rows_in=len(frame) + text.misfits,
-        used=len(table) - repaired,
-        repaired=repaired,
-        set_aside=int(counts.sum()) + text.misfits,
-        findings=tuple(findings),
-        dropped_columns=text.dropped,
-        notes=text.notes,
-    )
+    told = "The time of day can't be read: the day alone counts"
+    report = account(text, reason, name, "name a ward and write times as 2024-03-31 14:05", (told, repaired))
     return EventLog(kind, name, table, tuple(sorted(set(table["ward"]))), report, cannot)
 
 

@@ -8,13 +8,13 @@ import numpy as np
 import pandas as pd
 import pyarrow as pa
 
+from bedplan.data.accounting import account
 from bedplan.data.choices import DATE_ORDERS
 from bedplan.data.dates import DAY_SECONDS, MISSING, UNREADABLE, read_times
 from bedplan.data.headings import READY_HEADINGS
 from bedplan.data.moments import when
 from bedplan.data.reading import read_table
 from bedplan.data.ready import KEYS, ReadyDates
-from bedplan.data.report import SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
 from bedplan.errors import UnreadableRecords
 
@@ -59,21 +59,7 @@ def read_ready_dates(
     named = [pd.Series(text.strings(key)) != "" for key in KEYS if key in text.columns]
     reason[~np.logical_or.reduce(named)] = "No patient or stay is named"
     kept = pa.array((reason == "").to_numpy())
-    counts = reason[reason != ""].value_counts()
-    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
-    if text.misfits:
-        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
-    if not (reason == "").any():
-        raise UnreadableRecords([why_none(file.name, findings, "write dates as 2024-03-31 14:05")])
-    report = IntakeReport(
-        rows_in=text.rows + text.misfits,
-        used=int((reason == "").sum()),
-        repaired=0,
-        set_aside=int(counts.sum()) + text.misfits,
-        findings=tuple(findings),
-        dropped_columns=text.dropped,
-        notes=text.notes,
-    )
+    report = account(text, reason, file.name, "write dates as 2024-03-31 14:05")
     keys = {key: text.columns[key].filter(kept) for key in KEYS if key in text.columns}
     return ReadyDates(file.name, report, keys, ready[(reason == "").to_numpy()])
 

@@ -7,13 +7,13 @@ from typing import TYPE_CHECKING
 
 import pandas as pd
 
+from bedplan.data.accounting import account
 from bedplan.data.columns import TELLTALES, plain
 from bedplan.data.figures import read_figures
 from bedplan.data.headings import RETURN_HEADINGS
 from bedplan.data.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
 from bedplan.data.months import QUARTER, month_of, months_apart, order_of_dates
 from bedplan.data.reading import read_table
-from bedplan.data.report import SET_ASIDE, Finding, IntakeReport, why_none
 from bedplan.data.source import FileLike, open_source
 from bedplan.data.wardlinks import bare_name
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from collections.abc import Mapping
 
     from bedplan.data.records import Records
+    from bedplan.data.report import IntakeReport
     from bedplan.data.texttable import TextTable
 
 FIGURES = ("available", "occupied", "discharges")
@@ -137,23 +138,10 @@ def read_monthly_return(
         wanted = "month, ward, occupied bed-days and discharges"
         raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a monthly return has columns {wanted}."])
     frame, reason, notes = _frame(text, file.name, date_order)
-    counts = reason[reason != ""].value_counts()
-    findings = [Finding(SET_ASIDE, sentence, int(rows), 0.0) for sentence, rows in counts.items()]
+    report = account(text, reason, file.name, "write months as 2024-04 and figures as 1234.5")
     kept = frame[reason == ""]
-    if text.misfits:
-        findings.append(Finding(SET_ASIDE, "A line with another number of cells", text.misfits, 0.0))
-    if kept.empty:
-        raise UnreadableRecords([why_none(file.name, findings, "write months as 2024-04 and figures as 1234.5")])
     months, said = _months_held(kept, text.headings["month"], months_a_row)
-    report = IntakeReport(
-        rows_in=len(frame) + text.misfits,
-        used=len(kept),
-        repaired=0,
-        set_aside=int(counts.sum()) + text.misfits,
-        findings=tuple(findings),
-        dropped_columns=text.dropped,
-        notes=(*text.notes, *notes, *said, *CANNOT),
-    )
+    report = replace(report, notes=(*report.notes, *notes, *said, *CANNOT))
     table = _by_month(_spread(kept, months))
     return MonthlyReturn(file.name, table, tuple(sorted(set(table["ward"]))), report)
 

@@ -140,7 +140,7 @@ def test_every_row_is_accounted_for() -> None:
         "The same row twice": 1,
         "No number of beds is named": 1,
         "The period ends before it starts": 1,
-        "A line with another number of cells": 1,
+        "A title, total or footer, or a line with another number of cells": 1,
     }
 
 
