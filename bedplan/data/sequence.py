@@ -127,10 +127,12 @@ def _sent_last(rows: Rows, busy: NDArray[np.int64], finished: NDArray[np.bool_])
         np.lexsort((busy[which], rows.ward[busy[which]], rows.start[busy[which]], rows.patient[busy[which]]))
     ]
     row = busy[ranked]
-    like = np.ones(max(row.size - 1, 0), dtype=bool)
+    if row.size < 2:
+        return last
+    like = np.ones(row.size - 1, dtype=bool)
     for every in (rows.patient, rows.start, rows.ward):
         like &= every[row[1:]] == every[row[:-1]]
-    again = like & (np.diff(row) > 1) & ~np.append(like[1:], [False][: like.size])
+    again = like & (np.diff(row) > 1) & ~np.append(like[1:], False)
     last[ranked[1:][again]] = True
     return last
 
