@@ -132,10 +132,10 @@ def _type_of(key: str, times: Iterable[str]) -> pa.DataType:
 
 def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
     """Parse the lines under the headings, stray quotation marks undone, or say why they are no table."""
-    quoted = any(re.search(QUOTE, block) for block in text.blocks())
+    quoted = _is_quoted(text)
     try:
         try:
-            parsed = _tried(text, layout, times)
+            parsed = _tried(text, layout, times, quoted=quoted)
         except pa.ArrowInvalid:
             if not quoted:
                 raise
@@ -146,10 +146,11 @@ def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
             body = text.content[layout.rows_start :]
             mended = mend_quotes(body, layout.separator, len(layout.headings), layout.line + 2)
             if mended is not None:
-                found = _tried(SourceFile(text.name, mended.body), replace(layout, rows_start=0), times)
+                body = SourceFile(text.name, mended.body)
+                found = _tried(body, replace(layout, rows_start=0), times, quoted=_is_quoted(body))
                 lines = tuple(sorted((*found.lines, *mended.left_out), key=lambda one: one.line))
                 return Parsed(found.table, found.misfits + len(mended.left_out), lines, tuple(mended.notes))
-        return parsed or _tried(text, layout, times)
+        return parsed or _tried(text, layout, times, quoted=quoted)
     except (pa.ArrowInvalid, OSError) as problem:
         if "Empty CSV" in str(problem):
             told = f"{text.name} has headings but no rows: export it again with its rows."
@@ -160,9 +161,14 @@ def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
         ) from problem
 
 
-def _tried(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+def _is_quoted(text: SourceFile) -> bool:
+    """Does the text hold any quotation mark? Where it holds none, every line is a row."""
+    return any(QUOTE in bytes(block) for block in text.blocks())
+
+
+def _tried(text: SourceFile, layout: Layout, times: Iterable[str], *, quoted: bool) -> Parsed:
     """Parse the lines with as many cells as the headings have, or as most lines have where the rest are blank."""
-    parsed = _with_times(text, layout, times)
+    parsed = _with_times(text, layout, times, quoted=quoted)
     if parsed.misfits > parsed.table.num_rows:
         cells, known = commonest_cells(parsed.lines), len(layout.headings)
         more = layout.separator * (cells - known)
@@ -170,23 +176,23 @@ def _tried(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
         if more and all(one.text.rstrip("\r\n").endswith(more) for one in parsed.lines if one.cells == cells):
             headings = (*layout.headings, *[""] * (cells - known))
         if len(headings) > known or (len(headings) < known and not any(layout.headings[cells:])):
-            parsed = _with_times(text, replace(layout, headings=headings), times)
+            parsed = _with_times(text, replace(layout, headings=headings), times, quoted=quoted)
     if not parsed.lines:
         return parsed
     return parsed._replace(lines=numbered(parsed.lines, text.content[layout.rows_start :], layout.line + 2))
 
 
-def _with_times(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+def _with_times(text: SourceFile, layout: Layout, times: Iterable[str], *, quoted: bool) -> Parsed:
     """Parse with times as times; else as text."""
     try:
         if text.size > HEAD_BYTES:  # most files whose times are written otherwise show it at once
-            _parsed(SourceFile(text.name, text.head.rpartition(b"\n")[0]), layout, times)
-        return _parsed(text, layout, times)
+            _parsed(SourceFile(text.name, text.head.rpartition(b"\n")[0]), layout, times, quoted=quoted)
+        return _parsed(text, layout, times, quoted=quoted)
     except pa.ArrowInvalid:  # most likely a time that is written otherwise: those columns are looked at as text
-        return _parsed(text, layout, ())
+        return _parsed(text, layout, (), quoted=quoted)
 
 
-def _parsed(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+def _parsed(text: SourceFile, layout: Layout, times: Iterable[str], *, quoted: bool) -> Parsed:
     """Parse the lines; those with another number of cells are counted, not guessed at."""
     misfits, lines = 0, []
 
@@ -205,7 +211,7 @@ def _parsed(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
         read_options=arrow_csv.ReadOptions(column_names=unique, block_size=BLOCK_BYTES),
         parse_options=arrow_csv.ParseOptions(
             delimiter=layout.separator,
-            newlines_in_values=any(re.search(QUOTE, block) for block in text.blocks()),
+            newlines_in_values=quoted,
             invalid_row_handler=count,
         ),
         convert_options=arrow_csv.ConvertOptions(
