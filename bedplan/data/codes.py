@@ -51,11 +51,11 @@ def coded(column: pa.ChunkedArray) -> Coded:
     return Coded(codes, tuple(whole.dictionary.to_pylist()))
 
 
-def translated(column: Coded, meaning: list[str]) -> Coded:
+def translated(column: Coded, meaning: list[str], width: np.dtype | type[np.int32] = np.int32) -> Coded:
     """Return the column with each value replaced by its meaning ("" = blank), values sorted."""
     names = sorted({name for name in meaning if name})
     place = {name: number for number, name in enumerate(names)}
-    table = np.array([*(place.get(name, -1) for name in meaning), -1], dtype=np.int32)
+    table = np.array([*(place.get(name, -1) for name in meaning), -1], dtype=width)
     return Coded(taken(table, column.codes), tuple(names))
 
 
@@ -119,8 +119,7 @@ def read_category(column: pa.ChunkedArray) -> pd.Categorical | None:
     tidy = [without_formula(value) for value in raw.meanings]
     if len(tidy) > MOST_CATEGORIES or looks_like_identity(tidy):
         return None
-    values = translated(raw, tidy)
-    return pd.Categorical.from_codes(values.codes, categories=list(values.meanings))
+    return _categories(raw, tidy)
 
 
 def looks_like_identity(values: list[str]) -> bool:
@@ -141,8 +140,13 @@ def age_bands(column: pa.ChunkedArray) -> tuple[pd.Categorical | None, NDArray[n
     rows = rows_of(raw, impossible)
     if len(set(meaning)) > MOST_CATEGORIES or looks_like_identity(sorted(set(meaning))):
         return None, rows
-    values = translated(raw, meaning)
-    return pd.Categorical.from_codes(values.codes, categories=list(values.meanings)), rows
+    return _categories(raw, meaning), rows
+
+
+def _categories(column: Coded, meaning: list[str]) -> pd.Categorical:
+    """Return a column as categories, sorted, each value replaced by its meaning ("" = blank)."""
+    values = translated(column, meaning, np.min_scalar_type(-len(meaning) - 1))
+    return pd.Categorical.from_codes(values.codes, categories=list(values.meanings))
 
 
 def _age(text: str) -> tuple[int | None, bool]:

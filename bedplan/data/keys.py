@@ -21,7 +21,8 @@ if TYPE_CHECKING:
 # At the start of a key, or as a word of its own: a random key may hold such letters by chance.
 TEST_KEY = r"^(test|dummy|zzz|training)|[^a-z](test|dummy|training)([^a-z]|$)"
 TEST_LETTERS = (b"test", b"dummy", b"zzz", b"training")
-LAST_ASCII, SMALL = 127, 32  # the bit that makes a letter small
+LAST_ASCII, BLANK = 127, 32
+SMALL = 32  # the bit that makes a letter small
 LONGEST_PACKED = 20  # signs; longer keys are told apart by a dictionary
 LOOKED_AT = 1_000  # keys looked at to tell whether they are real persons' numbers
 
@@ -41,7 +42,7 @@ class Keys:
 
 def read_keys(column: pa.ChunkedArray) -> Keys:
     """Which rows have the same key? Each blank key counts as one of its own."""
-    parts = each(pc.utf8_trim_whitespace, [part for part in column.chunks if len(part)])
+    parts = each(_trimmed, [part for part in column.chunks if len(part)])
     codes = _packed_codes(parts)
     if codes is None:
         codes = coded(pa.chunked_array(parts, pa.string())).codes.copy()
@@ -51,6 +52,13 @@ def read_keys(column: pa.ChunkedArray) -> Keys:
     sample = pc.unique(column.slice(0, 100 * LOOKED_AT)).drop_null()[:LOOKED_AT].to_pylist()
     real = sum(is_national_number(key) for key in sample) > len(sample) / 2
     return Keys(codes, np.random.default_rng().permutation(known + blank.size), _test_rows(parts), real)
+
+
+def _trimmed(part: pa.Array) -> pa.Array:
+    """Return keys without blanks around them; a column of plain signs throughout is not copied."""
+    letters = np.frombuffer(_letters(part), dtype=np.uint8)
+    plain = letters.size and letters.min() > BLANK and letters.max() < LAST_ASCII
+    return part if plain else pc.utf8_trim_whitespace(part)
 
 
 def _packed_codes(parts: list[pa.Array]) -> NDArray[np.int32] | None:
@@ -67,16 +75,19 @@ def _packed_codes(parts: list[pa.Array]) -> NDArray[np.int32] | None:
     if math.prod(spread) >= 2**62:
         return None
 
-    def pack(part: pa.Array) -> NDArray[np.int64]:
-        """Return the keys of one part as numbers."""
-        number = np.zeros(len(part), dtype=np.int64)
+    lasts = list(itertools.accumulate(map(len, parts)))
+    numbers = np.zeros(lasts[-1], dtype=np.int64)
+
+    def pack(part: pa.Array, last: int) -> None:
+        """Write the keys of one part as numbers."""
+        number = numbers[last - len(part) : last]
         for sign, lowest, many in zip(_signs(part, width), low, spread, strict=True):
             if many > 1:
                 number *= many
                 number += sign - lowest
-        return number
 
-    return _dense(np.concatenate(each(pack, parts)))
+    each(lambda one: pack(*one), zip(parts, lasts, strict=True))
+    return _dense(numbers)
 
 
 def _lowest_and_highest(signs: NDArray[np.uint8]) -> tuple[NDArray[np.uint8], NDArray[np.uint8]]:
@@ -113,11 +124,20 @@ def _signs(part: pa.Array, width: int) -> NDArray[np.uint8]:
 
 def _dense(numbers: NDArray[np.int64]) -> NDArray[np.int32]:
     """Return numbers counted from 0 without gaps, equal where ``numbers`` are equal."""
+    new = np.zeros(numbers.size, dtype=bool)
+
+    def rises(block: slice) -> bool:
+        """Find where the number goes up within one block, and from it to the next; does it never go down?"""
+        before, after = numbers[block.start : block.stop], numbers[block.start + 1 : block.stop + 1]
+        np.greater(after, before[: after.size], out=new[block.start + 1 : block.stop + 1])
+        return not (after < before[: after.size]).any()
+
+    if all(in_blocks(numbers.size, rises)):  # most exports come by patient: nothing to sort
+        return np.cumsum(new, dtype=np.int32)
     order = order_of(numbers)
-    new = np.zeros(order.size, dtype=bool)
 
     def compare(block: slice) -> None:
-        """Find where the number goes up within one block, and from it to the next."""
+        """Find where the sorted number goes up within one block, and from it to the next."""
         ranked = numbers[order[block.start : block.stop + 1]]
         new[block.start + 1 : block.stop + 1] = ranked[1:] != ranked[:-1]
 

@@ -64,9 +64,8 @@ def _moves(rows: Rows, order: NDArray[np.int64]) -> tuple[int, NDArray[np.int64]
     return sum(moves for moves, _ in found), np.concatenate(places)
 
 
-def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, period: Period) -> list[str]:
-    """Say what the stays show together; ``live`` are the kept rows."""
-    start, end = rows.start[live], rows.end[live]
+def whole_file(start: NDArray[np.int64], end: NDArray[np.int64], table: StayTable, period: Period) -> list[str]:
+    """Say what the stays show together: starts and ends of the kept rows."""
     notes = []
     unfinished = int((end == MISSING).sum())
     if unfinished:
@@ -84,9 +83,9 @@ def whole_file(rows: Rows, live: NDArray[np.int64], table: StayTable, period: Pe
     if period.note:
         notes.append(period.note)
     days = (period.last - period.first) // DAY_SECONDS
-    if live.size < FEWEST_STAYS or days < 90:
+    if start.size < FEWEST_STAYS or days < 90:
         notes.append(
-            f"A small file ({live.size:,} stays in {days:,} days): intervals are wide and no season is read from it."
+            f"A small file ({start.size:,} stays in {days:,} days): intervals are wide and no season is read from it."
         )
     return notes
 

@@ -238,7 +238,7 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
     choices.check_days(file.name, _day(start.min()), _day(seen.until - 1))
     period = find_period(seen.times, seen.until).narrowed(chosen_window(choices.window))
     about, links, changed, stays = side_by_side(
-        lambda: noticing.whole_file(rows, live, table, period),
+        lambda: noticing.whole_file(start, end, table, period),
         lambda: propose_links(table.wards, taken(rows.ward, live), start, period.window),
         lambda: taken(rows.changed, live),
         lambda: table.frame(live, start, end),
