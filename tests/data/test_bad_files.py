@@ -100,7 +100,7 @@ def test_a_ward_nobody_left_gives_no_length_of_stay() -> None:
         (b"ward,from,to\nHeron,2024-01-01,2024-12-31\n", "staffed or funded beds"),
         (b"ward,from,staffed_beds\nHeron,2024-01-01,many\n", "“many” in row 1"),
         (b"ward,from,staffed_beds\nHeron,soon,20\n", "“soon” in row 1"),
-        (b"ward,from,staffed_beds\nHeron,2024-01-01,\n", "no ward with a number of beds"),
+        (b"ward,from,staffed_beds\nHeron,2024-01-01,\n", "name a ward and a number of beds in each"),
     ],
 )
 def test_a_capacity_file_that_cannot_be_used_says_why(content: bytes, told: str) -> None:

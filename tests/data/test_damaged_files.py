@@ -11,6 +11,7 @@ import pytest
 
 from bedplan.data import estimate_demand, read_records
 from bedplan.errors import BedplanError
+from tests.data.spoiling import spoiled_bytes
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -43,19 +44,6 @@ CELLS = (
     '"',
     "';--",
     "\t",
-)
-BYTES = (
-    b"\x00",
-    b"\xff\xfe",
-    b"\xef\xbb\xbf",
-    b"\r",
-    b"\n\n",
-    b",,,,,,,,,,,",
-    b'"',
-    b"PK\x03\x04",
-    b"\x80\x81",
-    b";",
-    b"\t",
 )
 
 
@@ -126,13 +114,7 @@ def damaged(seed: int) -> bytes:
     for _ in range(chance.randrange(1, 7)):
         rows = chance.choice(DAMAGE)(rows, chance)
     text = "\n".join(rows).replace(",", chance.choice((",", ",", ";", "\t")))
-    content = text.encode(chance.choice(("utf-8", "utf-8", "utf-8-sig", "utf-16", "cp1252")), errors="replace")
-    if chance.random() < 0.3:
-        place = chance.randrange(len(content))
-        content = content[:place] + chance.choice(BYTES) + content[place:]
-    if chance.random() < 0.1:
-        content = content[: chance.randrange(len(content))]
-    return content
+    return spoiled_bytes(text, chance)
 
 
 def outcome(seed: int) -> str:

@@ -20,6 +20,7 @@ from bedplan.data import (
     read_refusals,
 )
 from bedplan.errors import BedplanError
+from tests.data.spoiling import spoiled_bytes
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -92,19 +93,6 @@ CELLS = (
     *("é" * 300, '"', "';--", "\t", "20/24", "24 (+2)", "closed", "1.234,5", "1'234", "25:00", "Q1", "K7", "admitted"),
     *("31/12/9999", "00000-1", "٣", "1/1/0", "Mai 0000", "inf", "nan", "0x1F", "1_000"),
 )
-BYTES = (
-    b"\x00",
-    b"\xff\xfe",
-    b"\xef\xbb\xbf",
-    b"\r",
-    b"\n\n",
-    b",,,,,,,,,",
-    b'"',
-    b"PK\x03\x04",
-    b"\x80\x81",
-    b";",
-    b"\t",
-)
 
 
 def damaged(kind: Kind, seed: int) -> bytes:
@@ -114,13 +102,7 @@ def damaged(kind: Kind, seed: int) -> bytes:
     for _ in range(chance.randrange(1, 7)):
         chance.choice((_cell, _cell, _cell, _column, _swap, _drop, _repeat, _longer))(table, chance)
     text = "\n".join(chance.choice((",", ";", "\t") if seed % 3 == 0 else (",",)).join(row) for row in table)
-    content = text.encode(chance.choice(("utf-8", "utf-8", "utf-8-sig", "utf-16", "cp1252")), errors="replace")
-    if chance.random() < 0.3:
-        place = chance.randrange(len(content))
-        content = content[:place] + chance.choice(BYTES) + content[place:]
-    if chance.random() < 0.1:
-        content = content[: chance.randrange(len(content))]
-    return content
+    return spoiled_bytes(text, chance)
 
 
 def _cell(table: list[list[str]], chance: random.Random) -> None:
