@@ -10,8 +10,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from scipy import special
 
-from bedplan.errors import ImpossibleFigure
 from bedplan.models.bed_curve import MOST_BEDS, BedCurve, bed_counts
+from bedplan.models.figures import array_of
 from bedplan.models.year import beds_wanted, leaving_of, patients_wanted
 
 if TYPE_CHECKING:
@@ -26,13 +26,9 @@ MOST_LOAD_BEDS = 1e9
 
 def _checked(offered_load: ArrayLike, beds: ArrayLike) -> tuple[Array, Array]:
     """Return both as broadcast float arrays, or say which figure is impossible."""
-    load, count = np.broadcast_arrays(np.asarray(offered_load, dtype=float), np.asarray(beds, dtype=float))
-    bad_load = ~((load >= 0) & (load <= MOST_LOAD_BEDS))
-    if bad_load.any():
-        raise ImpossibleFigure(f"An offered load of {load[bad_load].flat[0]:g} beds is not possible: it is 0 or more.")
-    bad_count = ~((count >= 0) & (count <= MOST_BEDS))
-    if bad_count.any():
-        raise ImpossibleFigure(f"{count[bad_count].flat[0]:g} beds is not possible: give 0 to {MOST_BEDS:,} beds.")
+    load = array_of("An offered load of {} beds", offered_load, (0.0, MOST_LOAD_BEDS), "it is 0 or more")
+    count = array_of("{} beds", beds, (0.0, MOST_BEDS), f"give 0 to {MOST_BEDS:,} beds")
+    load, count = np.broadcast_arrays(load, count)
     return load, count
 
 

@@ -292,9 +292,19 @@ def test_square_root_rule_in_the_limit() -> None:
 
 @pytest.mark.parametrize(
     ("load", "beds", "words"),
-    [(-1.0, 3, "-1"), (math.nan, 3, "nan"), (2.0, -1, "-1 beds"), (2.0, 20_001, "20001 beds"), (math.inf, 1, "inf")],
+    [
+        (-1.0, 3, "-1"),
+        (math.nan, 3, "nan"),
+        (2.0, -1, "-1 beds"),
+        (2.0, 20_001, "20,?001 beds"),
+        (math.inf, 1, "inf"),
+        ("4", 3, "'4'"),
+        (None, 3, "None"),
+        ([], 3, r"\[\]"),
+        (2.0, "3", "'3' beds"),
+    ],
 )
-def test_impossible_figures(load: float, beds: float, words: str) -> None:
+def test_impossible_figures(load: object, beds: object, words: str) -> None:
     """A figure outside its meaning is refused in a sentence that quotes it."""
     for formula in (erlang_b, erlang_b_log, erlang_c):
         with pytest.raises(ImpossibleFigure, match=words):
