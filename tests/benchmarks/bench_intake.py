@@ -33,13 +33,16 @@ from bedplan.data.occupancy import present_by_ward
 counts = present_by_ward(read_records(PATH), 3_600)
 """
 MEASURE = """
-import resource, sys, time
+import sys, time
 sys.path.insert(0, {root!r})
 PATH = {path!r}
 {imports}
 began, worked = time.perf_counter(), time.process_time()
 {code}
-print(time.perf_counter() - began, time.process_time() - worked, resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 2**20)
+seconds, worked = time.perf_counter() - began, time.process_time() - worked
+with open("/proc/self/status") as status:  # not getrusage: it counts what the parent held before
+    held = next(int(line.split()[1]) for line in status if line.startswith("VmHWM"))
+print(seconds, worked, held / 2**20)
 """
 
 

@@ -185,33 +185,6 @@ def test_a_reload_on_another_page(page: Page, server: str) -> None:
     assert slider.input_value() == "1"
 
 
-def test_the_file_is_corrected(page: Page, server: str, stays_csv: bytes) -> None:
-    """A place is chosen from the table's own list and a period typed into it; the file is read again as said."""
-    page.goto(server)
-    load_file(page, stays_csv + b"\nMain Theatre,2024-02-01 09:00,2024-02-01 15:00")
-    page.get_by_text("Correct how the file was taken").click()
-    cell(page, "places", 0.75, 1)
-    page.get_by_role("option", name="ward with beds").click()
-    for at, day in ((0.2, "2024-03-01"), (0.5, "2024-03-31")):
-        cell(page, "left_out", at, 1)
-        page.locator("input[type=date]").last.fill(day)
-        page.keyboard.press("Enter")
-    settle(page)
-    page.get_by_role("button", name="Read it again with these corrections").click()
-    page.get_by_text("“Main Theatre” is taken for: ward with beds").wait_for()
-    page.get_by_text("01 March 2024 to 31 March 2024 is left out").wait_for()
-
-
-def cell(page: Page, table: str, across: float, row: int) -> None:
-    """Open a cell of a table that can be edited, by its place."""
-    grid = page.locator(f'[class*="st-key-{table}"] canvas').first
-    grid.scroll_into_view_if_needed()
-    settle(page)
-    box = grid.bounding_box()
-    page.mouse.dblclick(box["x"] + across * box["width"], box["y"] + 35 * row + 17)
-    page.wait_for_timeout(300)
-
-
 def choose(page: Page, key: str, ward: str) -> None:
     """Choose a ward from a list."""
     page.locator(f".st-key-{key} input").click()
