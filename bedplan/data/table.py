@@ -26,6 +26,7 @@ if TYPE_CHECKING:
 
     from bedplan.data.choices import IntakeChoices
     from bedplan.data.dates import TimesRead
+    from bedplan.data.keys import Keys
     from bedplan.data.texttable import TextTable
 
 TIMES = ("start", "end", "admitted", "discharged", "ready")
@@ -111,18 +112,7 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
     keys = dict(zip(named, read, strict=True))
     has_times, start, end, told = _clocks(start, end)
     notes += told + what_rows_are(text)
-    rows = Rows(
-        patient=np.arange(text.rows, dtype=np.int32),
-        spell=np.full(text.rows, -1, dtype=np.int32),
-        ward=wards.codes,
-        start=start.seconds,
-        end=end.seconds,
-    )
-    whose = keys.get("patient_key", keys.get("spell_key"))
-    if whose is not None:
-        rows.patient = whose.codes
-    if "spell_key" in keys:
-        rows.spell = keys["spell_key"].codes
+    rows = _numbered(text.rows, keys, wards.codes, (start.seconds, end.seconds))
     kept, dropped = _text_columns(text, rows)
     _mark_report_lines(rows, text, wards.names)
     for key in keys.values():
@@ -139,13 +129,33 @@ def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: I
         wards=wards.names,
         text=kept,
         ready=ready,
-        random_keys={key: read.random for key, read in keys.items()} | ({"patient_key": whose.random} if whose else {}),
+        random_keys=_random_keys(keys),
         has_times=has_times,
         knows_patients=bool(keys),
         knows_spells="spell_key" in keys,
         dropped=dropped,
         notes=tuple(notes),
     )
+
+
+def _numbered(
+    size: int, keys: Mapping[str, Keys], ward: NDArray[np.int32], times: tuple[NDArray[np.int64], NDArray[np.int64]]
+) -> Rows:
+    """Return the rows by numbers: patients by their key, else by their hospital stay's, else each row its own."""
+    whose, spell = keys.get("patient_key", keys.get("spell_key")), keys.get("spell_key")
+    return Rows(
+        patient=np.arange(size, dtype=np.int32) if whose is None else whose.codes,
+        spell=np.full(size, -1, dtype=np.int32) if spell is None else spell.codes,
+        ward=ward,
+        start=times[0],
+        end=times[1],
+    )
+
+
+def _random_keys(keys: Mapping[str, Keys]) -> dict[str, NDArray[np.int64]]:
+    """Return the random codes of each key; patients without one of their own go by their hospital stay's."""
+    random = {key: read.random for key, read in keys.items()}
+    return {"patient_key": random["spell_key"]} | random if "spell_key" in random else random
 
 
 def _ready(
