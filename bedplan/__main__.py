@@ -24,7 +24,7 @@ from bedplan.data import (
     read_ready_dates,
     read_records,
 )
-from bedplan.data.choices import DATE_ORDERS
+from bedplan.data.values.choices import DATE_ORDERS
 from bedplan.decision import TurnAwayLimit
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.export import Justification, Source, as_html, as_xlsx, case_for, with_check

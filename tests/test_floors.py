@@ -25,6 +25,8 @@ PARTS: dict[str, tuple[int, set[str]]] = {
     "__main__": (6, set()),
     "app": (6, {"streamlit"}),
 }
+# inside data, each folder may use those before it: from bytes to text, to meaning, to stays, to wards, to demand
+DATA_STEPS = ("files", "values", "cleaning", "beside", "wards", "ahead", "demand")
 # bedplan/__init__.py re-exports the public names for people; nobody inside imports it.
 FACE = PACKAGE / "__init__.py"
 FILES = sorted(path for path in [*PACKAGE.rglob("*.py"), ROOT / "app.py"] if path.exists() and path != FACE)
@@ -67,6 +69,17 @@ def test_imports_go_down_only(path: Path) -> None:
             assert target == part or PARTS[target][0] < floor, f"{part} (floor {floor}) imports {name}"
         else:
             assert top in sys.stdlib_module_names or top in packages, f"{part} may not use {top}"
+
+
+@pytest.mark.parametrize("path", sorted((PACKAGE / "data").glob("*/*.py")), ids=lambda path: path.stem)
+def test_data_flows_one_way(path: Path) -> None:
+    """Inside data, a module imports its own step and earlier ones, never a later one nor the list of public names."""
+    step = DATA_STEPS.index(path.parent.name)
+    for name in imported(path):
+        if name.startswith("bedplan.data."):
+            target = name.split(".")[2]
+            assert target in DATA_STEPS, f"{path.name} imports the top of data: {name}"
+            assert DATA_STEPS.index(target) <= step, f"{path.name} ({path.parent.name}) imports {name}"
 
 
 def _graph() -> dict[str, set[str]]:

@@ -12,7 +12,7 @@ from bedplan.charts.style import GREY, Datasets, Spec, finished, scale_of
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
-    from bedplan.data.last_year import KeptBand
+    from bedplan.data.ahead.last_year import KeptBand
 
 SIDE = 320  # square, so that the line of kept promises stands at 45 degrees
 COLOURS = {"kept": "#0072B2", "fewer": "#D55E00", "more": "#D55E00"}

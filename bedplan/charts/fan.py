@@ -13,7 +13,7 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from bedplan.data import PastYear
-    from bedplan.data.forecasting import YearAhead
+    from bedplan.data.ahead.forecasting import YearAhead
 
 RECORDED, EXPECTED = "#D55E00", "#0072B2"
 MIDYEAR = pd.Timedelta(days=182)

@@ -1,26 +1,26 @@
 """Reading, cleaning, describing and estimating: from a records file to a demand."""
 
-from bedplan.data.backtesting import Backtest, backtest
-from bedplan.data.capacity import Capacity, read_capacity
-from bedplan.data.census import Census, read_census
-from bedplan.data.choices import DateQuestion, IntakeChoices
-from bedplan.data.describing import FullTimes, LongStays, WardDescription, describe_ward
-from bedplan.data.estimating import DemandEstimate, Uncertainty, estimate_demand
-from bedplan.data.evidence import DemandMethod
-from bedplan.data.forecasting import Forecast, forecast_arrivals
-from bedplan.data.hidden_demand import DemandStep, HiddenDemand, hidden_demand
-from bedplan.data.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
-from bedplan.data.past_years import PastYear, past_years
-from bedplan.data.preview import ColumnPreview, preview_columns
-from bedplan.data.ready import ReadyDates
-from bedplan.data.ready_reading import read_ready_dates
-from bedplan.data.reconciling import CensusCheck, Check, Flows, adds_up, check_census, flows
-from bedplan.data.records import Records, read_records
-from bedplan.data.repairs import RepairEffect, what_repairs_change
-from bedplan.data.report import IntakeReport
-from bedplan.data.returns import MonthlyReturn, read_monthly_return
-from bedplan.data.stay_families import StayFamilies, stay_families
-from bedplan.data.wardlinks import WardLink
+from bedplan.data.ahead.backtesting import Backtest, backtest
+from bedplan.data.ahead.forecasting import Forecast, forecast_arrivals
+from bedplan.data.ahead.past_years import PastYear, past_years
+from bedplan.data.beside.capacity import Capacity, read_capacity
+from bedplan.data.beside.census import Census, read_census
+from bedplan.data.beside.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
+from bedplan.data.beside.returns import MonthlyReturn, read_monthly_return
+from bedplan.data.cleaning.records import Records, read_records
+from bedplan.data.cleaning.wardlinks import WardLink
+from bedplan.data.demand.estimating import DemandEstimate, Uncertainty, estimate_demand
+from bedplan.data.demand.evidence import DemandMethod
+from bedplan.data.demand.hidden_demand import DemandStep, HiddenDemand, hidden_demand
+from bedplan.data.demand.repairs import RepairEffect, what_repairs_change
+from bedplan.data.files.preview import ColumnPreview, preview_columns
+from bedplan.data.files.report import IntakeReport
+from bedplan.data.values.choices import DateQuestion, IntakeChoices
+from bedplan.data.values.ready import ReadyDates
+from bedplan.data.values.ready_reading import read_ready_dates
+from bedplan.data.wards.describing import FullTimes, LongStays, WardDescription, describe_ward
+from bedplan.data.wards.reconciling import CensusCheck, Check, Flows, adds_up, check_census, flows
+from bedplan.data.wards.stay_families import StayFamilies, stay_families
 
 __all__ = [
     "Backtest",

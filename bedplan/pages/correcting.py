@@ -11,8 +11,8 @@ import streamlit as st
 
 from bedplan import wording
 from bedplan.data import IntakeChoices
-from bedplan.data.choices import GIVEN_AWAY, HELD
-from bedplan.data.places import BED_WARD, LEAVE
+from bedplan.data.cleaning.places import BED_WARD, LEAVE
+from bedplan.data.values.choices import GIVEN_AWAY, HELD
 from bedplan.errors import BedplanError, ImpossibleFigure
 from bedplan.pages import intake, loaded
 

@@ -10,7 +10,7 @@ import streamlit as st
 
 from bedplan import wording
 from bedplan.data import preview_columns, read_records
-from bedplan.data.preview import MATCHED
+from bedplan.data.files.preview import MATCHED
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.pages import controls, loaded, saved, typed
 from bedplan.plan import Answers

@@ -34,7 +34,7 @@ from bedplan.data import (
     stay_families,
     what_repairs_change,
 )
-from bedplan.data.linking import likely_links
+from bedplan.data.beside.linking import likely_links
 from bedplan.errors import UnreadableRecords
 from bedplan.plan import Answers, Baseline, from_estimate
 

@@ -15,7 +15,7 @@ from bedplan.pages import controls, loaded
 
 if TYPE_CHECKING:
     from bedplan.data import WardDescription
-    from bedplan.data.forecasting import YearAhead
+    from bedplan.data.ahead.forecasting import YearAhead
 
 
 def headline(seen: WardDescription) -> str:

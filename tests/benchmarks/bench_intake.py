@@ -29,7 +29,7 @@ print(records.report.summary, file=sys.stderr)
 """
 HOURLY = """
 from bedplan.data import read_records
-from bedplan.data.occupancy import present_by_ward
+from bedplan.data.wards.occupancy import present_by_ward
 counts = present_by_ward(read_records(PATH), 3_600)
 """
 MEASURE = """

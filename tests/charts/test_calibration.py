@@ -5,7 +5,7 @@ from __future__ import annotations
 import pytest
 
 from bedplan.charts import CALIBRATION, calibration_data
-from bedplan.data.last_year import KeptBand
+from bedplan.data.ahead.last_year import KeptBand
 
 KEPT, FEWER, MORE = KeptBand(0.8, 0.78, 0.7, 0.85), KeptBand(0.95, 0.8, 0.7, 0.9), KeptBand(0.1, 0.2, 0.15, 0.25)
 

@@ -7,7 +7,7 @@ import pytest
 
 from bedplan.charts import fan_data
 from bedplan.data import PastYear
-from bedplan.data.forecasting import YearAhead
+from bedplan.data.ahead.forecasting import YearAhead
 
 PAST = tuple(PastYear(pd.Timestamp(f"{year}-01-01"), 1_000.0, beds) for year, beds in ((2022, 20.0), (2023, 21.0)))
 AHEAD = tuple(

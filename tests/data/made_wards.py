@@ -10,7 +10,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data import IntakeReport, Records
-from bedplan.data.capacity import Capacity
+from bedplan.data.beside.capacity import Capacity
 
 MONTHS = np.array([1.24, 1.15, 1.02, 0.95, 0.92, 0.88, 0.86, 0.84, 0.92, 1.00, 1.06, 1.16])
 WEEKDAYS = np.array([1.10, 1.04, 1.02, 1.01, 1.03, 0.91, 0.89])

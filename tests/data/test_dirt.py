@@ -8,8 +8,9 @@ from typing import TYPE_CHECKING
 import pandas as pd
 import pytest
 
-from bedplan.data import IntakeChoices, sequence
-from bedplan.data.rows import RULES
+from bedplan.data import IntakeChoices
+from bedplan.data.cleaning import sequence
+from bedplan.data.files.rules import RULES
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:

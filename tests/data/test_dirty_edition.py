@@ -10,7 +10,7 @@ import pandas as pd
 import pytest
 
 from bedplan.data import IntakeChoices, read_census, read_records
-from bedplan.data.rows import RULES
+from bedplan.data.files.rules import RULES
 
 if TYPE_CHECKING:
     from pathlib import Path

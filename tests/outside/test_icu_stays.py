@@ -18,7 +18,7 @@ import rdata
 from scipy import stats
 
 from bedplan.data import IntakeChoices, describe_ward, estimate_demand, read_records
-from bedplan.data.rhythm import fit_rhythm
+from bedplan.data.ahead.rhythm import fit_rhythm
 from bedplan.models import MODELS
 
 if TYPE_CHECKING:

@@ -1,0 +1,1 @@
+"""Looking ahead: rhythm, trend, forecasts with their bands, and the check of all that on last year."""

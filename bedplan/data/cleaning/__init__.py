@@ -1,0 +1,1 @@
+"""From rows to ward stays as they can be used: one module a family of rules, and every row accounted for."""

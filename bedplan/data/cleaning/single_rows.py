@@ -1,0 +1,92 @@
+"""Rules about one row at a time: missing and impossible dates, swapped days and months, zero stays."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from bedplan.data.files.dates import DAY_SECONDS, MISSING, UNREADABLE
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from bedplan.data.values.rows import Rows
+
+EARLIEST = 631_152_000  # 1 January 1990
+FEWEST_SWAPS = 3  # a file "shows swaps" from so many rows on
+LEAST_LONG_STAY_SECONDS = 60 * DAY_SECONDS
+
+
+def check_dates(rows: Rows, now: int) -> None:
+    """Set aside rows whose dates are missing, unreadable or impossible; an end yet to come is an unfinished stay."""
+    rows.mark(rows.ward < 0, "no ward")
+    rows.mark(rows.start == MISSING, "no start")
+    rows.mark(rows.start == UNREADABLE, "start unreadable")
+    rows.mark(rows.end == UNREADABLE, "end unreadable")
+    early = (rows.start < EARLIEST) | (~rows.is_open & (rows.end < EARLIEST))
+    rows.mark(early | (rows.start > now), "unlikely date")
+    expected = np.flatnonzero(rows.end > now)
+    rows.mark(expected, "end to come")
+    rows.end[expected] = MISSING
+
+
+def backward(rows: Rows) -> NDArray[np.int64]:
+    """Return the rows that end before they start."""
+    return np.flatnonzero((rows.end < rows.start) & ~rows.is_open & rows.live)
+
+
+def mend_clock_change(rows: Rows) -> None:
+    """Add an hour to stays that end before they start in the night the clock goes back (between midnight and 03:00)."""
+    which = backward(rows)
+    which = which[rows.start[which] - rows.end[which] <= 3_600]
+    days = (rows.start[which] // DAY_SECONDS).astype("datetime64[D]")
+    month = days.astype("datetime64[M]").astype(np.int64) % 12 + 1
+    sunday = (days.astype(np.int64) + 3) % 7 == 6  # 1 January 1970 was a Thursday
+    night = rows.start[which] % DAY_SECONDS < 3 * 3_600
+    mended = which[sunday & night & np.isin(month, (3, 4, 10, 11))]
+    rows.end[mended] += 3_600
+    rows.mark(mended, "clock change")
+
+
+def swapped(seconds: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return the times with day and month exchanged, UNREADABLE where that gives no date."""
+    days = (seconds // DAY_SECONDS).astype("datetime64[D]")
+    months = days.astype("datetime64[M]")
+    day = (days - months).astype(np.int64) + 1
+    year = months.astype("datetime64[Y]")
+    month = (months - year.astype("datetime64[M]")).astype(np.int64) + 1
+    possible = day <= 12
+    other = (year.astype("datetime64[M]") + np.where(possible, day - 1, 0)).astype("datetime64[D]") + (month - 1)
+    return np.where(possible, other.astype(np.int64) * DAY_SECONDS + seconds % DAY_SECONDS, UNREADABLE)
+
+
+def mend_negative(rows: Rows, longest: NDArray[np.int64]) -> None:
+    """Exchange day and month where that makes a stay of believable length and the file shows such swaps; else aside."""
+    negative = backward(rows)
+    start, end, limit = rows.start[negative], rows.end[negative], longest[rows.ward[negative]]
+    other_end, other_start = swapped(end), swapped(start)
+    by_end = np.where(other_end > UNREADABLE, other_end - start, -1)
+    by_start = np.where(other_start > UNREADABLE, end - other_start, -1)
+    end_fits = (by_end > 0) & (by_end <= limit)
+    start_fits = (by_start > 0) & (by_start <= limit)
+    use_end = end_fits & (~start_fits | (by_end <= by_start))
+    use_start = start_fits & ~use_end
+    if int((use_end | use_start).sum()) >= FEWEST_SWAPS:
+        rows.end[negative[use_end]] = other_end[use_end]
+        rows.start[negative[use_start]] = other_start[use_start]
+        rows.mark(negative[use_end | use_start], "swapped")
+    rows.mark(backward(rows), "negative")
+
+
+def longest_stays(rows: Rows, wards: int) -> NDArray[np.int64]:
+    """Return, for each ward, how long a stay may be and still be believed: the longest finished one, 60 days or more."""
+    longest = np.full(wards, LEAST_LONG_STAY_SECONDS, dtype=np.int64)
+    long = np.flatnonzero((rows.end > rows.start + LEAST_LONG_STAY_SECONDS) & rows.live)
+    np.maximum.at(longest, rows.ward[long], rows.end[long] - rows.start[long])
+    return longest
+
+
+def drop_zero_stays(rows: Rows, which: NDArray[np.int64]) -> None:
+    """Set aside those of ``which`` that end in the minute they start: mostly moves inside the system."""
+    rows.mark(which[~rows.is_open[which] & (rows.end[which] - rows.start[which] < 60)], "zero stay")

@@ -1,0 +1,181 @@
+"""Excel workbooks and Parquet files as the same table of text that a CSV file gives."""
+
+from __future__ import annotations
+
+import datetime as dt
+import io
+import zipfile
+from typing import TYPE_CHECKING
+
+import openpyxl
+import pyarrow as pa
+import pyarrow.compute as pc
+from openpyxl.utils.datetime import CALENDAR_MAC_1904
+from pyarrow import parquet
+
+from bedplan.data.files.columns import match_headings
+from bedplan.data.files.dates import EPOCHS_APART_DAYS
+from bedplan.data.files.texttable import MOST_TITLE_LINES, Layout, Parsed, TextTable, text_table
+from bedplan.errors import UnreadableRecords
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Mapping
+
+    from bedplan.data.files.source import SourceFile
+
+FIRST_DAY_NUMBER, LAST_DAY_NUMBER = 20_000, 70_000
+DATE_COLUMNS = ("start", "end", "start_date", "end_date", "admitted", "discharged", "ready", "date")
+MOST_ROWS = 1_048_576  # a worksheet holds no more
+LARGEST_UNPACKED_BYTES = 2 * 2**30
+MOST_SWELLING = 200  # times; honest workbooks unpack to 5–30 times their size
+
+Cells = list[tuple[object, ...]]
+
+
+def check_archive(source: SourceFile) -> None:
+    """Refuse a packed file that would fill the memory, or that is no workbook, before anything is unpacked.
+
+    Raises:
+        UnreadableRecords: damaged, far larger unpacked than packed, or a zip file of something else.
+    """
+    try:
+        with zipfile.ZipFile(io.BytesIO(source.content)) as archive:
+            parts = archive.infolist()
+    except zipfile.BadZipFile as problem:
+        raise UnreadableRecords([f"{source.name} is a damaged Excel workbook: save it again and retry."]) from problem
+    unpacked = sum(part.file_size for part in parts)
+    if unpacked > LARGEST_UNPACKED_BYTES or unpacked > MOST_SWELLING * max(len(source.content), 2**20):
+        raise UnreadableRecords(
+            [f"{source.name} would unpack to {unpacked / 2**20:,.0f} MB, which no table needs: export it as CSV."]
+        )
+    if not any(part.filename.startswith("xl/") for part in parts):
+        raise UnreadableRecords(
+            [f"{source.name} is a packed (zip) file, not a workbook: unpack it and bring the table inside."]
+        )
+
+
+def read_workbook(
+    source: SourceFile, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None = None
+) -> TextTable:
+    """What does this workbook hold? The sheet whose headings are known best, every cell as text.
+
+    Raises:
+        UnreadableRecords: not a workbook, too large, or no sheet with known headings.
+    """
+    sheets, days_apart = _sheets(source)
+    layouts = {title: _layout(cells, known, chosen) for title, cells in sheets.items()}
+    title, layout = max(layouts.items(), key=lambda item: len(item[1].found), default=("", Layout(0, 0, "", (), {})))
+    notes = [f"Read from the sheet “{title}”; {len(sheets) - 1} other sheets were left out."] if len(sheets) > 1 else []
+    return text_table(source.name, layout, lambda: _parsed(sheets[title], layout, days_apart), notes, list(known))
+
+
+def sheets_as_text(source: SourceFile) -> list[list[tuple[str, ...]]]:
+    """What stands in each sheet? Its rows but for blank ones, every cell as text.
+
+    Raises:
+        UnreadableRecords: not a workbook, or too large.
+    """
+    return [[tuple(_text(cell).strip() for cell in row) for row in cells] for cells in _sheets(source)[0].values()]
+
+
+def _sheets(source: SourceFile) -> tuple[dict[str, Cells], int]:
+    """Return the cells of every sheet by its title, and how many days after 1900's its day numbers begin."""
+    check_archive(source)
+    try:
+        book = openpyxl.load_workbook(io.BytesIO(source.content), read_only=True, data_only=True)
+        days_apart = EPOCHS_APART_DAYS if book.epoch == CALENDAR_MAC_1904 else 0
+        return {sheet.title: _cells(sheet) for sheet in book.worksheets}, days_apart
+    except UnreadableRecords:
+        raise
+    except Exception as problem:  # openpyxl raises whatever a damaged part makes it stumble over
+        raise UnreadableRecords([f"{source.name} is a damaged Excel workbook: save it again and retry."]) from problem
+
+
+def _cells(sheet: object) -> Cells:
+    """Return the cells of a sheet, or say that there are too many."""
+    rows: Cells = []
+    for row in sheet.iter_rows(values_only=True):
+        if any(cell is not None for cell in row):
+            rows.append(row)
+        if len(rows) > MOST_ROWS:
+            raise UnreadableRecords([f"The workbook has more than {MOST_ROWS:,} rows: export it as CSV."])
+    return rows
+
+
+def _layout(cells: Cells, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None) -> Layout:
+    """Find the row of headings."""
+    best = Layout(0, 0, "", (), {})
+    for number, row in enumerate(cells[:MOST_TITLE_LINES]):
+        headings = tuple(_text(cell).strip() for cell in row)
+        found = match_headings([heading for heading in headings if heading], known, chosen)
+        if len(found) > len(best.found):
+            best = Layout(number, 0, "", headings, found)
+    return best
+
+
+def _parsed(cells: Cells, layout: Layout, days_apart: int) -> Parsed:
+    """Return the matched columns as text; day numbers of workbooks that count from 1904 as those that count from 1900."""
+    below = cells[layout.line + 1 :]
+    places = {heading: layout.headings.index(heading) for heading in layout.found.values()}
+    columns = {}
+    for key, heading in layout.found.items():
+        place, later = places[heading], days_apart if key in DATE_COLUMNS else 0
+        values = [row[place] if place < len(row) else None for row in below]
+        if later:
+            values = [value + later if _is_day_number(value) else value for value in values]
+        columns[heading] = pa.chunked_array([[_text(value) or None for value in values]], pa.string())
+    return Parsed(pa.table(columns))
+
+
+def _is_day_number(cell: object) -> bool:
+    """May this number be a date that was never formatted as one?"""
+    return isinstance(cell, int | float) and FIRST_DAY_NUMBER <= cell <= LAST_DAY_NUMBER
+
+
+def _text(cell: object) -> str:
+    """Return a cell as it would stand in a CSV file."""
+    if cell is None:
+        return ""
+    if isinstance(cell, dt.datetime):
+        return cell.replace(microsecond=0).isoformat(" ")
+    if isinstance(cell, float) and cell.is_integer():
+        return str(int(cell))
+    return str(cell)
+
+
+def read_parquet(
+    source: SourceFile, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None = None
+) -> TextTable:
+    """What does this Parquet file hold? The matched columns only, as text.
+
+    Raises:
+        UnreadableRecords: damaged, or no known column.
+    """
+    try:
+        file = parquet.ParquetFile(io.BytesIO(source.content))
+        headings = tuple(file.schema_arrow.names)
+        layout = Layout(0, 0, "", headings, match_headings(headings, known, chosen))
+        return text_table(
+            source.name, layout, lambda: Parsed(_as_text(file.read(list(layout.found.values())))), [], list(known)
+        )
+    except UnreadableRecords:
+        raise
+    except (pa.ArrowException, OSError, ValueError, OverflowError, MemoryError) as problem:
+        raise UnreadableRecords([f"{source.name} is a damaged Parquet file: write it again and retry."]) from problem
+
+
+def _as_text(table: pa.Table) -> pa.Table:
+    """Return every column as text; times lose their zone and fractions of a second."""
+    table.validate(full=True)  # a damaged file may hold text that is none
+    columns = {}
+    for name in table.column_names:
+        column = table.column(name)
+        if pa.types.is_dictionary(column.type):
+            column = pc.cast(column, column.type.value_type)
+        if pa.types.is_timestamp(column.type):
+            zone = column.type.tz
+            column = pc.cast(pc.local_timestamp(column) if zone else column, pa.timestamp("s"), safe=False)
+        if pa.types.is_floating(column.type) and pc.all(pc.equal(column, pc.floor(column))).as_py():
+            column = pc.cast(column, pa.int64())
+        columns[name] = pc.cast(column, pa.string())
+    return pa.table(columns)

@@ -1,0 +1,143 @@
+"""What a ward was like, against figures worked out by hand and laws that must hold."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+import pandas as pd
+import pytest
+
+from bedplan.data import describe_ward, read_capacity
+from bedplan.data.wards.describing import block_interval, variance_over_mean
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+    from pathlib import Path
+
+    from bedplan.data import Capacity, Records
+
+
+@pytest.fixture(scope="module")
+def beds(demo_data: Path) -> Capacity:
+    """Return the demo's beds by date."""
+    return read_capacity(demo_data / "capacity.csv")
+
+
+def test_a_ward_worked_out_by_hand(read: Callable[..., Records]) -> None:
+    """Two beds, three patients in four days: every figure follows with pencil and paper."""
+    records = read(
+        "a,a,Heron,2024-01-01 00:00,2024-01-03 12:00",
+        "b,b,Heron,2024-01-01 06:00,2024-01-02 06:00",
+        "c,c,Heron,2024-01-02 12:00,2024-01-05 00:00",
+    )
+    capacity = read_capacity(
+        b"ward,from,to,staffed_beds,closed_beds\nHeron,2024-01-01,2024-01-03,2,0\nHeron,2024-01-04,,2,1\n"
+    )
+    ward = describe_ward(records, "Heron", capacity)
+
+    assert records.days == 4
+    assert ward.bed_days == pytest.approx(2.5 + 1 + 2.5)
+    assert (ward.admissions, ward.discharges) == (3, 3)
+    assert ward.midnight_mean == pytest.approx((1 + 2 + 2 + 1) / 4)
+    assert ward.daily_peak_mean == pytest.approx((2 + 2 + 2 + 1) / 4)
+    # Full: both beds from 06:00 on the 1st to 06:00 on the 2nd, from 12:00 on the 2nd to 12:00 on the 3rd; on the 4th
+    # the one open bed all day. Open bed-days: 2 + 2 + 2 + 1.
+    assert ward.full.share == pytest.approx((24 + 24 + 24) / 96)
+    assert ward.full.available_bed_days == pytest.approx(7)
+    assert ward.full.occupancy == pytest.approx(6 / 7)
+    assert ward.turnover_interval_days == pytest.approx((7 - 6) / 3)
+    assert ward.throughput == pytest.approx(3 / 7 * 365)
+    assert ward.full.by_month[0] == pytest.approx(0.75)
+    # 1 January 2024 was a Monday: full from 06:00 on; Thursday all day.
+    assert ward.full.by_weekday_and_hour[0].tolist() == [0.0] * 6 + [1.0] * 18
+    assert ward.full.by_weekday_and_hour[3].tolist() == [1.0] * 24
+    assert ward.discharge_hours[[0, 6, 12]] == pytest.approx([1 / 3] * 3)
+
+
+def test_stay_turnover_and_throughput_agree(larkmere: Records, beds: Capacity) -> None:
+    """Bed-days a discharge + turnover interval = days a patient takes of a bed, for every ward (an identity)."""
+    for ward in larkmere.wards:
+        figures = describe_ward(larkmere, ward, beds)
+
+        assert figures.bed_days / figures.discharges + figures.turnover_interval_days == pytest.approx(
+            365 / figures.throughput
+        )
+        assert figures.by_hour_of_day.mean() == pytest.approx(figures.hourly.mean())
+        assert figures.midnight_mean <= figures.daily_peak_mean
+
+
+def test_closed_beds_are_not_empty_beds(larkmere: Records, beds: Capacity) -> None:
+    """Plover lost 12 beds for nine days of February 2024: its denominator does too."""
+    figures = describe_ward(larkmere, "Plover", beds)
+
+    assert figures.full.available_bed_days == 30 * 1_096 - 12 * 9 - 6 * 8
+
+
+def test_the_demos_winter_is_seen(larkmere: Records, beds: Capacity) -> None:
+    """Kestrel is full far more of January than of August, and fuller by day than at midnight."""
+    figures = describe_ward(larkmere, "Kestrel", beds)
+
+    assert figures.full.by_month[0] > 2 * figures.full.by_month[7]
+    assert figures.by_hour_of_day[11] > figures.by_hour_of_day[0]
+
+
+def test_the_demos_long_stays(larkmere: Records) -> None:
+    """Plover's stays past 21 days: 11.4 % of patients with 40.1 % of bed-days in the trial it was planned by."""
+    long_stays = describe_ward(larkmere, "Plover").long_stays[2]
+
+    assert long_stays.days == 21
+    assert long_stays.share_of_patients == pytest.approx(0.114, abs=0.02)
+    assert long_stays.share_of_bed_days == pytest.approx(0.401, abs=0.04)
+    assert long_stays.beds_after == pytest.approx(4.6, abs=0.6)
+
+
+def test_chance_has_variance_over_mean_of_one() -> None:
+    """A Poisson count has variance ÷ mean 1, and the interval holds it."""
+    counts = np.random.default_rng(1).poisson(25.0, 2_000).astype(float)
+    low, high = block_interval(counts, seed=2)
+
+    assert low < 1.0 < high
+    assert low < variance_over_mean(counts) < high
+    assert high - low < 0.3
+
+
+def test_days_that_hang_together_widen_the_interval() -> None:
+    """Where neighbouring days are alike, blocks promise less than single days drawn anew; the truth is inside.
+
+    Patients present in a ward that never turns away are Poisson, with days correlated by exp(−1/5) for 5-day stays.
+    """
+    rng = np.random.default_rng(3)
+    came = rng.uniform(0, 1_500, rng.poisson(5 * 1_500))
+    left = came + rng.exponential(5.0, came.size)
+    counts = np.array([((came <= day) & (left > day)).sum() for day in range(50, 1_500)], dtype=float)
+    blocks, singles = block_interval(counts, seed=4), block_interval(counts, seed=4, block=1)
+
+    assert blocks[0] < 1.0 < blocks[1]
+    assert blocks[1] - blocks[0] > 1.3 * (singles[1] - singles[0])
+
+
+def test_excluded_periods_and_missing_capacity(larkmere: Records) -> None:
+    """Without a capacity file nothing is said about full hours, turnover or throughput."""
+    figures = describe_ward(larkmere, "Dunlin")
+
+    assert (figures.full, figures.turnover_interval_days, figures.throughput) == (None, None, None)
+    assert figures.hourly.index[0] == pd.Timestamp("2022-04-01")
+
+
+def test_beds_used_after_patients_were_ready(read: Callable[..., Records], larkmere: Records) -> None:
+    """Two patients ready 2 and 1 days before they left, in 10 days: 0.3 beds; wards without such dates say nothing."""
+    records = read(
+        "a,a,Heron,2024-01-01 12:00,2024-01-06 12:00,2024-01-04 12:00",
+        "b,b,Heron,2024-01-02 12:00,2024-01-10 12:00,2024-01-09 12:00",
+        "c,c,Heron,2024-01-02 12:00,2024-01-10 12:00,",
+        headings="patient_key,spell_key,ward,start,end,ready_date",
+    )
+
+    assert describe_ward(records, "Heron").delay_beds == pytest.approx((2 + 1) / 10)
+    assert describe_ward(larkmere, "Dunlin").delay_beds is None
+    # The demo's ready dates lie 60 % of the stay before its end, for the long stays of Plover.
+    late = larkmere.of_ward("Plover")
+    late = late[late["ready"].notna() & late["end"].notna()]
+    waited = ((late["end"] - late["ready"]) / (late["end"] - late["start"])).mean()
+    assert waited == pytest.approx(0.6, abs=0.01)
