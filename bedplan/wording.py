@@ -163,6 +163,14 @@ def waits_over(hours: float) -> tuple[str, str, str]:
     )
 
 
+def waits_checked(name: str, recorded: float, modelled: float, hours: float, beds: int) -> str:
+    """Set the waits in a list of requests against the model's: a check, where beds and demand are as they were."""
+    return (
+        f"{name}: {percent(recorded)} of requests waited over {hours:g} hours; the model has {percent(modelled)} with "
+        f"{beds_text(beds)}. They should be near each other where beds and demand are as they were then."
+    )
+
+
 def limit_text(share: float, verb: str, within: str) -> str:
     """Say a limit: "every month within 5.0 % (1 in 20) turned away"."""
     span = "every month" if within == "every_month" else "the year"

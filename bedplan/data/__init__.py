@@ -7,6 +7,7 @@ from bedplan.data.beside.capacity import Capacity, read_capacity
 from bedplan.data.beside.census import Census, read_census
 from bedplan.data.beside.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
 from bedplan.data.beside.returns import MonthlyReturn, read_monthly_return
+from bedplan.data.beside.waits import BedWaits, waits_for_a_bed
 from bedplan.data.cleaning.records import Records, read_records
 from bedplan.data.cleaning.wardlinks import WardLink
 from bedplan.data.demand.estimating import DemandEstimate, Uncertainty, estimate_demand
@@ -24,6 +25,7 @@ from bedplan.data.wards.stay_families import StayFamilies, stay_families
 
 __all__ = [
     "Backtest",
+    "BedWaits",
     "Capacity",
     "Census",
     "CensusCheck",
@@ -69,5 +71,6 @@ __all__ = [
     "read_records",
     "read_refusals",
     "stay_families",
+    "waits_for_a_bed",
     "what_repairs_change",
 ]

@@ -122,7 +122,7 @@ def take_beside(kind: str, reader: Callable[..., Any], content: bytes, name: str
     """Add a list or a census beside the records."""
     found = reader(content, name=name, date_order=date_order)
     loaded.use_file(content, kind, found)
-    return [*found.report.sentences, *found.cannot]
+    return [*found.report.sentences, *found.report.notes, *found.cannot]
 
 
 def take_ready(content: bytes, name: str, date_order: str | None) -> list[str]:

@@ -32,6 +32,7 @@ from bedplan.data import (
     read_records,
     read_refusals,
     stay_families,
+    waits_for_a_bed,
     what_repairs_change,
 )
 from bedplan.data.beside.linking import likely_links
@@ -43,6 +44,7 @@ if TYPE_CHECKING:
 
     from bedplan.data import (
         Backtest,
+        BedWaits,
         Check,
         Forecast,
         HiddenDemand,
@@ -261,6 +263,14 @@ def past(name: str) -> tuple[PastYear, ...]:
 def stays(name: str) -> StayFamilies:
     """Return which family of curves a ward's stays follow."""
     return _once(("stays", name), lambda: stay_families(files().records, name))
+
+
+def waits(name: str, limit_hours: float) -> BedWaits | None:
+    """Return how long patients waited for a ward's beds, None where no list of bed requests tells."""
+    log = files().bed_requests
+    if log is None or name not in log.wards or "wait_hours" not in log.table:
+        return None
+    return waits_for_a_bed(log, name, limit_hours)
 
 
 def checked(name: str) -> Backtest:

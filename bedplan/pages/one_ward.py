@@ -8,7 +8,7 @@ import pandas as pd
 import streamlit as st
 
 from bedplan import charts, wording
-from bedplan.decision import check_by_simulation
+from bedplan.decision import WaitLimit, check_by_simulation
 from bedplan.errors import BedplanError
 from bedplan.pages import controls, loaded, typed
 
@@ -154,6 +154,10 @@ def answer(case: WardCase) -> None:
         st.markdown(f"**{case.words[2]}**")
         st.table(controls.facts_table(case))
         st.caption("The thick line is the one that fits this ward; the thin ones are what other formulas would say.")
+        waited = loaded.waits(case.ward.name, case.rule.hours) if isinstance(case.rule, WaitLimit) else None
+        if waited is not None and waited.share_over is not None:
+            figures = (waited.share_over, case.share_at(case.ward.beds), case.rule.hours, case.ward.beds)
+            st.caption(wording.plain(wording.waits_checked(waited.name, *figures)))
     st.markdown(f"**{case.words[2]}, month by month**")
     months = charts.months_data(case.months(), case.rule.most)
     st.vega_lite_chart(charts.live(charts.MONTHS, months), theme=None, width="stretch", alt="Share month by month")

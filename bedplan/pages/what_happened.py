@@ -18,6 +18,9 @@ if TYPE_CHECKING:
     from bedplan.data.ahead.forecasting import YearAhead
 
 
+USUAL_HOURS = 4  # of a wait for a bed, where the planner's limit is on something else
+
+
 def headline(seen: WardDescription) -> str:
     """Say when the ward was full, or how many patients were there."""
     if seen.full is None or np.isnan(seen.full.by_month).all():
@@ -83,6 +86,9 @@ def show_full(name: str, seen: WardDescription) -> None:
     census = loaded.files().census
     if census is not None and name in census.wards:
         st.markdown(wording.plain(check_census(loaded.records(), census, name).sentence))
+    waited = loaded.waits(name, getattr(controls.rule_for("waits"), "hours", USUAL_HOURS))
+    if waited is not None:
+        st.markdown(wording.plain(waited.sentence))
 
 
 def show_stays(name: str, seen: WardDescription) -> None:

@@ -177,6 +177,24 @@ def test_bed_requests_are_told_what_they_cannot_say(app: AppTest) -> None:
     assert any("requests.csv" in one.value.to_csv().replace("\\", "") for one in app.table)
 
 
+def test_waits_in_a_list_of_requests_are_shown(app: AppTest) -> None:
+    """Three of four waited over four hours: What happened says so, and One ward sets it against the model's waits."""
+    assert "requests for a bed" not in text(go(app, "what_happened").markdown)
+    given = ("15:00", "16:00", "17:00", "10:30")
+    rows = [f"East,2024-02-0{day} 10:00,2024-02-0{day} {clock}" for day, clock in enumerate(given, 1)]
+    requests = "\n".join(["ward,requested at,placed at", *rows, "East,2024-02-09 10:00,"])
+    give(go(app, "records"), "bed_requests_file", "requests.csv", requests.encode())
+    said = text(go(app, "what_happened").markdown)
+
+    assert "75 % of 4 requests for a bed on East waited over 4 hours".replace("75 ", "75\u00a0") in said
+    assert "For 1 more no bed is written down as given" in said
+    go(app, "one_ward").radio(key="full").set_value("waits").run()
+    assert "requests waited" not in text(app.caption)
+    app.selectbox(key="measure").set_value("wait4").run()
+    assert "75\u00a0% of requests waited over 4 hours; the model has" in text(app.caption)
+    assert not app.exception
+
+
 def test_a_reason_is_said_once(open_app: Callable[..., AppTest]) -> None:
     """Where two methods fail for one reason, the second says that it is the one above."""
     table = next(one.value for one in go(open_app(), "hidden").table if "Why" in one.value)

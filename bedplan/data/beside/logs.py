@@ -5,12 +5,10 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
-import numpy as np
 import pandas as pd
 
 from bedplan.data.beside.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
 from bedplan.data.files.columns import TELLTALES, plain, without_formula
-from bedplan.data.files.dates import DAY_SECONDS, UNREADABLE
 from bedplan.data.files.headings import CANCELLATION_HEADINGS, REFUSAL_HEADINGS, REQUEST_HEADINGS
 from bedplan.data.files.reading import read_table
 from bedplan.data.files.source import FileLike, SourceFile, open_source
@@ -18,10 +16,13 @@ from bedplan.data.values.accounting import account
 from bedplan.data.values.moments import when
 from bedplan.data.values.reasons import means_no_bed, not_cancelled, plain_reason, was_given_a_bed
 from bedplan.data.values.table import as_times
+from bedplan.data.values.waited import read_waits, unknown_note
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
+
+    import numpy as np
 
     from bedplan.data.cleaning.records import Records
     from bedplan.data.files.report import IntakeReport
@@ -42,8 +43,8 @@ NOT_MEANT = {  # kind of log -> why an entry of this outcome is none of it, and 
 class EventLog:
     """When was each ward asked for a bed?
 
-    ``table`` has time, ward and whichever of reason, outcome, placed, wait_hours the file had; ``cannot`` says what
-    such a file can't answer. ``no_bed_reasons``: which of the reasons that are not understood mean that no bed was
+    ``table`` has time, ward and whichever of reason, outcome, placed, wait_hours the file had (not a number = a wait that
+    is not known; ``never_given`` beside it); ``cannot`` says what such a file can't answer. ``no_bed_reasons``: which of the reasons that are not understood mean that no bed was
     free, by the planner's word; the others mean something else then. None = nobody said. ``unknown_wards``: those
     without ward stays, once :meth:`linked_to` was asked.
 
@@ -238,6 +239,7 @@ def _read(kind: str, text: TextTable, name: str, date_order: str | None, cannot:
     repaired = int((day_only & (reason == "")).sum())
     told = "The time of day can't be read: the day alone counts"
     report = account(text, reason, name, "name a ward and write times as 2024-03-31 14:05", (told, repaired))
+    report = replace(report, notes=(*report.notes, *unknown_note(table)))
     return EventLog(kind, name, table, tuple(sorted(set(table["ward"]))), report, cannot)
 
 
@@ -258,9 +260,7 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
             frame[key] = pd.Series([without_formula(value) for value in text.strings(key)], dtype=object)
     if placed:
         frame["placed"] = as_times(placed[0])
-        known = (placed[0] > UNREADABLE) & (time > UNREADABLE)
-        frame["wait_hours"] = np.where(known, placed[0] - np.where(known, time, 0), 0) / (DAY_SECONDS / 24)
-    elif "wait_hours" in text.columns:
-        hours = pd.to_numeric(pd.Series(text.strings("wait_hours")).str.replace(",", "."), errors="coerce")
-        frame["wait_hours"] = hours.fillna(0.0).clip(lower=0.0)
+    if placed or "wait_hours" in text.columns:
+        given = was_given_a_bed(frame["outcome"], frame["ward"]).to_numpy() if "outcome" in frame else None
+        frame = frame.assign(**read_waits(text, time, placed[0] if placed else None, day_only, given))
     return frame, day_only
