@@ -14,6 +14,7 @@ import pyarrow.compute as pc
 from bedplan.data.files.columns import plain
 from bedplan.data.files.dates import DAY_SECONDS, EPOCHS_APART_DAYS, UNREADABLE, TimesRead, read_times
 from bedplan.data.values.choices import DATE_ORDERS, DateQuestion, check_date_order
+from bedplan.data.values.clocks import DAY_MINUTES, clocks_of, minutes_of
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -105,12 +106,37 @@ def _columns(text: TextTable) -> tuple[dict[str, pa.ChunkedArray], list[str]]:
 
 
 def _joined(day: pa.ChunkedArray, clock: pa.ChunkedArray) -> pa.ChunkedArray:
-    """Return days and times of day as one text; a spreadsheet's day comes with midnight, its time with a day or as 0905."""
+    """Return days and times of day as one text; a spreadsheet's day comes with midnight, its time with a day or as 0905.
+
+    A spreadsheet's day number becomes one with a part of a day; a part of a day beside a date becomes a clock.
+    """
     day = pc.replace_substring_regex(pc.cast(day, pa.string()), r"[T ]+0{1,2}:00(:00(\.0*)?)?\s*$", "")
     clock = pc.replace_substring_regex(
         pc.cast(clock, pa.string()), r"^\s*\d{1,4}[-/.]\d{1,2}[-/.]\d{2,4}[T ]+(\d)", r"\1"
     )
-    return pc.binary_join_element_wise(day, pc.fill_null(clock, ""), " ")
+    written = [cell or "" for cell in pc.unique(clock).to_pylist()]
+    clocks = clocks_of(written)
+    clock = _looked_up(pc.fill_null(clock, ""), clocks)
+    joined = pc.binary_join_element_wise(day, clock, " ")
+    numbers = pc.fill_null(pc.match_substring_regex(day, r"^\s*[2-6]\d{4}\s*$"), False)
+    if not pc.any(numbers).as_py():
+        return joined
+    minutes = {shown: minutes_of(shown) for shown in clocks.values()}
+    parts = {
+        shown: f".{min(round(many / DAY_MINUTES * 1e6), 999_999):06d}"
+        for shown, many in minutes.items()
+        if many is not None
+    }
+    part = _looked_up(clock, {shown: parts.get(shown, f" {shown}" if shown else "") for shown in minutes})
+    return pc.if_else(numbers, pc.binary_join_element_wise(pc.utf8_trim_whitespace(day), part, ""), joined)
+
+
+def _looked_up(cells: pa.ChunkedArray, meaning: Mapping[str, str]) -> pa.ChunkedArray:
+    """Return each cell's meaning."""
+    if all(cell == meant for cell, meant in meaning.items()):
+        return cells
+    place = pc.index_in(cells, value_set=pa.array(list(meaning), pa.string()))
+    return pc.take(pa.array(list(meaning.values()), pa.string()), place)
 
 
 def _question(name: str, columns: Mapping[str, pa.ChunkedArray]) -> UnreadableRecords:

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from bedplan.data.files.dates import BLANK_WORDS, DAY_SECONDS, UNREADABLE
+from bedplan.data.values.clocks import clocks_of, minutes_of
 from bedplan.data.values.dateorder import read_ordered
 
 if TYPE_CHECKING:
@@ -15,30 +16,9 @@ if TYPE_CHECKING:
 
     from bedplan.data.files.texttable import TextTable
 
-DAY_MINUTES = 1_440
-CLOCK = re.compile(
-    r"(?:\d{4}-\d{2}-\d{2}[ T])?"  # a spreadsheet may put its first day before a time
-    r"(?P<hour>\d{1,2}?)(?:[:.h]?(?P<minute>\d{2}))?(?:[:.]\d{2}(?:[.,]\d+)?)?"
-    r"\s*(?:(?P<half>[ap])\.?m?\.?|h|hrs?|hours?|uhr)?",
-    re.IGNORECASE | re.ASCII,
+DATED = re.compile(
+    r"\d{1,4}[-/.]\d{1,2}[-/.]\d|(?<![\d.,])\d{5}|\d[-/. ]+[a-z]{3,}[-/. ,]+\d", re.IGNORECASE | re.ASCII
 )
-DATED = re.compile(r"\d{1,4}[-/.]\d{1,2}[-/.]\d|\d{5}|\d[-/. ]+[a-z]{3,}[-/. ,]+\d", re.IGNORECASE | re.ASCII)
-
-
-def minutes_of(clock: str) -> int | None:
-    """How many minutes after midnight is a time such as 08:00, 0800, 8, 8.05 pm or 20:05 Uhr? None where it is no time.
-
-    Checked by: tests/data/values/test_moments.py
-    """
-    fits = CLOCK.fullmatch(clock.strip())
-    if fits is None:
-        return None
-    hour, minute, half = int(fits["hour"]), int(fits["minute"] or 0), (fits["half"] or "").lower()
-    if half:
-        if not 1 <= hour <= 12:
-            return None
-        hour = hour % 12 + (12 if half == "p" else 0)
-    return hour * 60 + minute if minute < 60 and hour * 60 + minute <= DAY_MINUTES else None
 
 
 def when(
@@ -58,8 +38,9 @@ def when(
     seconds = read_ordered(name, date_order, *columns)
     if not both:
         return seconds, np.zeros(text.rows, dtype=bool)
-    found = {clock: 0 if clock.lower() in BLANK_WORDS else minutes_of(clock) for clock in set(written["time"])}
-    minutes = np.array([-1 if found[clock] is None else found[clock] for clock in written["time"]], dtype=np.int64)
+    clocks = clocks_of(set(written["time"]))
+    found = {cell: 0 if cell.lower() in BLANK_WORDS else minutes_of(clock) for cell, clock in clocks.items()}
+    minutes = np.array([-1 if found[cell] is None else found[cell] for cell in written["time"]], dtype=np.int64)
     day_alone = (seconds[0] > UNREADABLE) & (seconds[0] % DAY_SECONDS == 0)
     seconds[0] = np.where(day_alone & (minutes > 0), seconds[0] + 60 * minutes, seconds[0])
     return seconds, day_alone & (minutes < 0)
