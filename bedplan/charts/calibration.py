@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 import altair as alt
 import pandas as pd
 
-from bedplan.charts.style import GREY, Datasets, Spec, finished, scale_of
+from bedplan.charts.style import GREY, PERCENT, Datasets, Spec, finished, scale_of
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
@@ -27,7 +27,7 @@ def _axis(title: str) -> dict[str, object]:
     return {
         "title": title,
         "scale": alt.Scale(domain=[0, 1], nice=False),
-        "axis": alt.Axis(format=".0%", values=[0, 0.2, 0.4, 0.6, 0.8, 1], grid=True, gridOpacity=0.3),
+        "axis": alt.Axis(labelExpr=PERCENT, values=[0, 0.2, 0.4, 0.6, 0.8, 1], grid=True, gridOpacity=0.3),
     }
 
 

@@ -10,7 +10,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan import wording
-from bedplan.charts.style import GREY, Datasets, Spec, finished, scale_of
+from bedplan.charts.style import GREY, PERCENT, Datasets, Spec, finished, scale_of
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -54,7 +54,7 @@ _BEDS = alt.X(
 _SHARE = alt.Y(
     "share:Q",
     title=None,
-    axis=alt.Axis(format=".0%", tickCount=5, grid=True, gridOpacity=0.3, domain=False, ticks=False),
+    axis=alt.Axis(labelExpr=PERCENT, tickCount=5, grid=True, gridOpacity=0.3, domain=False, ticks=False),
     scale=alt.Scale(zero=True, nice=False),
 )
 _LINE = alt.Color("line:N", scale=scale_of(COLOURS), legend=None)
@@ -69,7 +69,7 @@ def _model_lines() -> alt.Chart:
             y=_SHARE,
             color=_LINE,
             strokeDash=alt.StrokeDash("line:N", scale=scale_of(DASHES), legend=None),
-            strokeWidth=alt.StrokeWidth("own:N", scale=scale_of({"other": 1.75, "own": 4}), legend=None),
+            strokeWidth=alt.StrokeWidth("own:O", scale=scale_of({"other": 1.75, "own": 4}), legend=None),
             tooltip=[
                 alt.Tooltip("line:N", title="Line"),
                 alt.Tooltip("beds:Q", title="Staffed beds", format="d"),

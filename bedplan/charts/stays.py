@@ -6,7 +6,7 @@ import altair as alt
 import numpy as np
 import pandas as pd
 
-from bedplan.charts.style import Datasets, Spec, finished, scale_of
+from bedplan.charts.style import PERCENT, Datasets, Spec, finished, scale_of
 
 MEASURED = "in the records"
 COLOURS = {"measured": "#D55E00", "planned": "#0072B2"}
@@ -22,7 +22,7 @@ def _stays() -> Spec:
         "share:Q",
         title="Patients still in",
         scale=alt.Scale(domain=[0, 1]),
-        axis=alt.Axis(format=".0%", tickCount=5, grid=True, gridOpacity=0.3),
+        axis=alt.Axis(labelExpr=PERCENT, tickCount=5, grid=True, gridOpacity=0.3),
     )
     colour = alt.Color("line:N", scale=scale_of(COLOURS), legend=None)
     lines = data.mark_line(strokeWidth=2.5).encode(

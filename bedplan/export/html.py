@@ -164,7 +164,7 @@ def drawing(case: WardCase, prefix: str, kind: str) -> str:
         data = charts.curve_data(case.curves, (case.model, case.over_year), case.marked(), case.limit())
         spec, title = charts.CURVE, f"{case.ward.name}: share of patients at each number of staffed beds"
     else:
-        data = charts.months_data(case.months(), case.rule.most)
+        data = charts.months_data(case.months(), case.limit())
         spec, title = charts.MONTHS, f"{case.ward.name}: share of patients month by month"
     drawn = vl_convert.vegalite_to_svg(
         charts.printed(spec, data, width=width), vl_version=VEGA_LITE, allowed_base_urls=[]

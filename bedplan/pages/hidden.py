@@ -43,7 +43,7 @@ def show(name: str) -> None:
     """Show one ward's steps and methods, and the switch that plans on them."""
     found = loaded.hidden(name)
     st.header(wording.plain(headline(found)), anchor=False)
-    steps = charts.steps_data([(step.label, step.beds) for step in found.steps])
+    steps = charts.steps_data([(step.label, step.beds) for step in found.steps], found.beds_spread)
     st.vega_lite_chart(charts.live(charts.STEPS, steps), theme=None, width="stretch", alt=headline(found))
     low, high = found.spread
     st.markdown(

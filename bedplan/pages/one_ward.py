@@ -159,7 +159,7 @@ def answer(case: WardCase) -> None:
             figures = (waited.share_over, case.share_at(case.ward.beds), case.rule.hours, case.ward.beds)
             st.caption(wording.plain(wording.waits_checked(waited.name, *figures)))
     st.markdown(f"**{case.words[2]}, month by month**")
-    months = charts.months_data(case.months(), case.rule.most)
+    months = charts.months_data(case.months(), case.limit())
     st.vega_lite_chart(charts.live(charts.MONTHS, months), theme=None, width="stretch", alt="Share month by month")
 
 

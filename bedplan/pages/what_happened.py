@@ -114,7 +114,7 @@ def show_check(name: str) -> None:
         return
     st.markdown(f"**{wording.plain(found.verdict)}**")
     days = found.days.rename(columns={"date": "day", "present": "seen"})
-    data = charts.check_data(days[["day", "seen", "middle", "low", "high"]], None)
+    data = charts.check_data(days[["day", "seen", "middle", "low", "high"]])
     st.vega_lite_chart(charts.live(charts.CHECK, data), theme=None, width="stretch", alt=found.verdict)
     columns = ("", "Last year", "Held against")
     st.table(pd.DataFrame(found.figures, columns=columns).set_index(""))
