@@ -28,12 +28,13 @@ from bedplan.data.values.choices import DATE_ORDERS
 from bedplan.decision import TurnAwayLimit
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.export import Justification, Source, as_html, as_xlsx, case_for, with_check
-from bedplan.plan import Answers, Changes, from_estimate, from_json, planned_ward
+from bedplan.plan import Changes, FileAnswers, SavedPlan, from_estimate, from_json, planned_ward
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from bedplan.export import WardCase
+    from bedplan.plan import Answers
 
 CHANGES = ("demand", "stay", "spread", "growth")
 
@@ -45,7 +46,7 @@ def arguments() -> argparse.ArgumentParser:
     )
     parser.add_argument("stays", type=Path, help="ward stays: CSV with ward, start and end")
     parser.add_argument(
-        "--answers", type=Path, help="a saved plan, for how the stays are to be read: columns, dates, places, periods"
+        "--answers", type=Path, help="a saved plan, for how the files are to be read: columns, dates, places, periods"
     )
     parser.add_argument(
         "--ready", type=Path, help="when patients were ready to leave: CSV with stay or patient key and date"
@@ -83,34 +84,45 @@ def ward_case(records: Records, capacity: Capacity | None, name: str, asked: arg
     return with_check(case, lambda: backtest(records, name, capacity=capacity))
 
 
-def staffed_beds(path: Path | None, records: Records, date_order: str | None) -> Capacity | None:
+def staffed_beds(path: Path | None, records: Records, said: FileAnswers) -> Capacity | None:
     """Read the file of staffed beds, its wards named as the records name them; say which have no stays."""
     if path is None:
         return None
-    capacity = read_capacity(path, date_order=date_order).linked_to(records)
+    capacity = read_capacity(path, **said.to_read()).linked_to(records)
     if capacity.unknown_wards:
         print(wording.not_used(capacity.name, list(capacity.unknown_wards)), file=sys.stderr)
     return capacity
 
 
-def answers_of(asked: argparse.Namespace) -> Answers:
+def answers_of(asked: argparse.Namespace, plan: SavedPlan) -> Answers:
     """Return how the stays are to be read; say which file of ready dates a saved plan was made with, if it is not here."""
-    answers = from_json(asked.answers.read_bytes()).answers if asked.answers else Answers()
+    answers = plan.answers
     if asked.dates:
         answers = replace(answers, date_order=asked.dates)
     if asked.ready:
-        ready = read_ready_dates(asked.ready, date_order=asked.dates)
+        ready = read_ready_dates(asked.ready, **said_of(asked.ready, plan, asked.dates).to_read())
         answers = replace(answers, choices=replace(answers.choices, ready_dates=ready))
     if answers.ready_sentence:
         print(answers.ready_sentence, file=sys.stderr)
     return answers
 
 
-def beside(what: str, path: Path | None) -> tuple[tuple[str, str], ...]:
-    """Return (what, name and fingerprint) of a file beside the records, for the document."""
+def fingerprint(path: Path) -> str:
+    """Return the fingerprint of a file."""
+    return hashlib.sha256(path.read_bytes()).hexdigest()
+
+
+def said_of(path: Path | None, plan: SavedPlan, dates: str | None) -> FileAnswers:
+    """Return what a saved plan says of exactly this file; dates are read as the command line says, where it says so."""
+    said = FileAnswers() if path is None else plan.files.get(fingerprint(path), FileAnswers())
+    return replace(said, date_order=dates) if dates else said
+
+
+def beside(what: str, path: Path | None, said: FileAnswers) -> tuple[tuple[str, str], ...]:
+    """Return (what, name and fingerprint) of a file beside the records, and what was said of it, for the document."""
     if path is None:
         return ()
-    return ((what, f"{path.name}, SHA-256 {hashlib.sha256(path.read_bytes()).hexdigest()}"),)
+    return ((what, f"{path.name}, SHA-256 {fingerprint(path)}"), *said.rows(what))
 
 
 def write(asked: argparse.Namespace) -> Justification:
@@ -121,15 +133,21 @@ def write(asked: argparse.Namespace) -> Justification:
 
     Checked by: tests/test_command_line.py
     """
-    answers = answers_of(asked)
+    plan = from_json(asked.answers.read_bytes()) if asked.answers else SavedPlan("", {}, {})
+    answers = answers_of(asked, plan)
     records = read_records(asked.stays, **answers.to_read())
-    capacity = staffed_beds(asked.capacity, records, asked.dates)
+    of_beds, of_ready = (said_of(path, plan, asked.dates) for path in (asked.capacity, asked.ready))
+    capacity = staffed_beds(asked.capacity, records, of_beds)
     unknown = [name for name in (*(asked.ward or ()), *asked.leaves) if name not in records.wards]
     if unknown:
         raise UnreadableRecords([f"Ward “{unknown[0]}” is not in {records.name}; it holds {', '.join(records.wards)}."])
     names = asked.ward or records.wards
     cases = tuple(ward_case(records, capacity, name, asked) for name in names)
-    others = (*beside("Staffed beds", asked.capacity), *beside("Ready dates", asked.ready), *answers.rows())
+    others = (
+        *beside("Staffed beds", asked.capacity, of_beds),
+        *beside("Ready dates", asked.ready, of_ready),
+        *answers.rows(),
+    )
     source = Source.from_records(records, others, adds_up(records))
     paper = Justification(cases, source, dt.datetime.now().astimezone().date())
     asked.out.mkdir(parents=True, exist_ok=True)

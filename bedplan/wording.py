@@ -6,6 +6,10 @@ Shares are 0–1 everywhere else in the program; percent exists only here. Stand
 from __future__ import annotations
 
 import math
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    import datetime as dt
 
 PROGRAM = "bedplan"
 VERSION = "0.1.0"
@@ -49,6 +53,9 @@ WHEN_WARD_IS_FULL = {"leaves": "go elsewhere", "waits": "wait, or are placed els
 
 NOT_YET_CHECKED = "Not yet checked against last year."
 
+BEDS_UNKNOWN = (
+    "Today's staffed beds are not in the records: until they are typed, the beds wanted on average stand for them."
+)
 GUESTS_OUT = (
     "Planned on its own patients' demand, which is lower than its use: other wards' patients on it are taken out. Plan on "
     "this only where their own ward gets the beds for them; else too few beds come out."
@@ -65,6 +72,15 @@ PLACES = {
     "leave": "patients on leave",
 }
 
+COLUMNS = {  # of files, where our name for one doesn't say enough
+    "from": "First day",
+    "to": "Last day",
+    "funded": "Funded beds",
+    "staffed": "Staffed beds",
+    "closed": "Closed beds",
+    "placed": "Time the bed was given",
+    "wait_hours": "Wait in hours",
+}
 CAUTIONS = (
     "This is an estimate for planning, from past records and simplified mathematics. Real days will be better and worse.",
     "It does not decide who is admitted, clinical priorities or nurse staffing. Staffing law and licensed judgement come first.",
@@ -103,11 +119,11 @@ def one_in(share: float) -> str:
             ((n, d) for d in (2, 3, 4, 5, 10) for n in range(1, d)), key=lambda pair: abs(pair[0] / pair[1] - share)
         )
         common = math.gcd(*top)
-        return f"{top[0] // common} in {top[1] // common}"
+        return f"{top[0] // common}{_HARD_SPACE}in{_HARD_SPACE}{top[1] // common}"
     count = 1 / share
     if count > 1000:
         return "almost none"
-    return f"1 in {_about(count):,}"
+    return f"1{_HARD_SPACE}in{_HARD_SPACE}{_about(count):,}"
 
 
 def _about(count: float) -> int:
@@ -133,7 +149,17 @@ def patients_per_year(patients: float) -> str:
     if patients < 1:
         return "under 1"
     step = 1 if patients < 20 else 5 if patients < 100 else 10 if patients < 1000 else 50
-    return f"about {step * round(patients / step):,}"
+    return f"about{_HARD_SPACE}{step * round(patients / step):,}"
+
+
+def in_month(month: int, share: float) -> str:
+    """Write a share beside its month: "Jan 57 %"."""
+    return f"{MONTHS_SHORT[month]}{_HARD_SPACE}{percent(share)}"
+
+
+def date(day: dt.date) -> str:
+    """Write a day: "1 April 2022"."""
+    return f"{day.day} {day:%B %Y}"
 
 
 def days(value: float) -> str:
@@ -145,6 +171,11 @@ def with_range(value: float, between: tuple[float, float]) -> str:
     """Write an estimate with its range: "3.44 (3.25 to 3.64)"."""
     digits = 2 if value < 10 else 1
     return f"{value:,.{digits}f} ({between[0]:,.{digits}f} to {between[1]:,.{digits}f})"
+
+
+def column(key: str) -> str:
+    """Return what a column is called where the planner is asked about it."""
+    return COLUMNS.get(key, key.replace("_", " ").capitalize())
 
 
 def plain(text: str) -> str:
@@ -190,12 +221,13 @@ def few(count: int) -> str:
 
 
 def answer_sentence(
-    name: str, beds: tuple[int, int, int | None], limit: tuple[float, str, str], worst: tuple[int | None, float]
+    name: str, beds: tuple[int | None, int, int | None], limit: tuple[float, str, str], worst: tuple[int | None, float]
 ) -> str:
     """Say the answer in at most 30 words: today's beds, the average formula's, the limit's, the worst month.
 
-    ``beds`` = (today, average formula, by the limit or None), ``limit`` = (share, its words, within), ``worst`` =
-    (month, or None where all months are alike; share there with today's beds). A name of more than two words becomes "This ward".
+    ``beds`` = (today or None where not known, average formula, by the limit or None), ``limit`` = (share, its words,
+    within), ``worst`` = (month, or None where all months are alike; share there with today's beds). A name of more than
+    two words becomes "This ward".
     """
     today, formula, needed = beds
     share, verb, within = limit
@@ -204,7 +236,9 @@ def answer_sentence(
     takes = "more" if needed is None else str(needed)
     month, share_there = worst
     when = "All months alike" if month is None else f"{MONTHS[month]} is worst"
+    rest = f"the average formula says {formula}. Keeping {span} to {one_in(share)} {verb} takes {takes}."
+    if today is None:
+        return f"{who}'s staffed beds today are not known; {rest}"
     return (
-        f"{who} has {today} staffed {'bed' if today == 1 else 'beds'}; the average formula says {formula}. "
-        f"Keeping {span} to {one_in(share)} {verb} takes {takes}. {when}: {one_in(share_there)} today."
+        f"{who} has {today} staffed {'bed' if today == 1 else 'beds'}; {rest} {when}: {one_in(share_there)} today."
     )

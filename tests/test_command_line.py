@@ -12,7 +12,7 @@ import pytest
 from bedplan.__main__ import main
 from bedplan.data import IntakeChoices, estimate_demand, read_capacity, read_ready_dates, read_records
 from bedplan.decision import TurnAwayLimit, decide
-from bedplan.plan import Answers, Changes, SavedPlan, as_json, from_estimate, planned_ward
+from bedplan.plan import Answers, Changes, FileAnswers, SavedPlan, as_json, from_estimate, planned_ward
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -84,6 +84,29 @@ def test_staffed_beds_follow_the_wards_names(
     said = capsys.readouterr()
     assert "(today 9)" in said.out
     assert "no stays on North" in said.err
+
+
+def test_a_plan_says_how_other_files_are_read(
+    stays_csv: bytes, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """What a plan says of exactly this file of staffed beds holds, and stands in the document; of a changed file it doesn't."""
+    stays, beds, plan = (tmp_path / name for name in ("stays.csv", "beds.csv", "plan.json"))
+    stays.write_bytes(stays_csv)
+    beds.write_text("Haus,ab,Betten heute\nEast,01/02/2024,9\nEast,01/03/2024,11\n")
+    said = FileAnswers({"ward": "Haus", "from": "ab", "staffed": "Betten heute"}, "day first")
+    files = {hashlib.sha256(beds.read_bytes()).hexdigest(): said}
+    plan.write_text(as_json(SavedPlan("", {}, {}, files=files)), encoding="utf-8")
+    words = [str(stays), "--ward", "East", "--capacity", str(beds), "--out", str(tmp_path)]
+    assert main(words) == 2
+    assert "no line of headings that is understood" in capsys.readouterr().err
+
+    assert main([*words, "--answers", str(plan)]) == 0
+    assert "(today 11)" in capsys.readouterr().out
+    document = next(tmp_path.glob("*.html")).read_text(encoding="utf-8")
+    assert "staffed = Betten heute" in document
+    assert "Staffed beds: dates" in document
+    beds.write_text(beds.read_text().replace("11", "12"))
+    assert main([*words, "--answers", str(plan)]) == 2
 
 
 def test_the_order_of_dates_can_be_said(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

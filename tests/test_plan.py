@@ -22,9 +22,11 @@ from bedplan.data import (
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 from bedplan.plan import (
+    NO_COLUMN,
     Answers,
     Baseline,
     Changes,
+    FileAnswers,
     SavedPlan,
     as_json,
     as_totals,
@@ -140,7 +142,10 @@ def test_a_saved_plan_comes_back_as_it_was() -> None:
             ),
         ),
         limit={"limit": 3, "within": "year", "measure": "wait4"},
-        reasons={"ab" * 32: ["Code 7", "überbelegt"]},
+        files={
+            "ab" * 32: FileAnswers({"ward": "Häuser", "reason": NO_COLUMN}, "month first", 3, ("Code 7", "überbelegt")),
+            "cd" * 32: FileAnswers(no_bed_reasons=()),
+        },
     )
 
     assert from_json(as_json(plan)) == plan
@@ -174,6 +179,55 @@ def test_damaged_answers_are_not_a_plan(answers: dict) -> None:
     """Days that are none make the file no plan."""
     with pytest.raises(UnreadableRecords, match="not a plan saved by bedplan"):
         from_json(json.dumps({"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": answers}))
+
+
+def test_reasons_in_an_earlier_plan_are_read() -> None:
+    """A plan of this format that kept reasons only says the same of the same lists."""
+    reasons = {"ab" * 32: ["Code 7"], "cd" * 32: []}
+    held = {"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": {}, "limit": {}, "reasons": reasons}
+
+    assert from_json(json.dumps(held)).files == {
+        "ab" * 32: FileAnswers(no_bed_reasons=("Code 7",)),
+        "cd" * 32: FileAnswers(no_bed_reasons=()),
+    }
+
+
+@pytest.mark.parametrize(
+    ("said", "told"),
+    [
+        ({"date_order": "year first"}, "year first"),
+        ({"months_a_row": 0}, "0 months a row is not possible"),
+        ({"months_a_row": 13}, "13 months a row is not possible"),
+    ],
+)
+def test_impossible_answers_about_other_files_are_a_sentence(said: dict, told: str) -> None:
+    """An answer about a file beside the stays that nobody can have given is quoted."""
+    held = {"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": {}, "files": {"ab": said}}
+    with pytest.raises(ImpossibleFigure, match=told):
+        from_json(json.dumps(held))
+
+
+@pytest.mark.parametrize(
+    "said", [3, {"columns": 4}, {"columns": ["ward"]}, {"months_a_row": "3"}, {"no_bed_reasons": "C"}]
+)
+def test_damaged_answers_about_other_files_are_not_a_plan(said: object) -> None:
+    """Answers about a file that are none make the file no plan."""
+    held = {"plan": 1, "records": "", "settings": {}, "typed": {}, "answers": {}, "files": {"ab": said}}
+    with pytest.raises(UnreadableRecords, match="not a plan saved by bedplan"):
+        from_json(json.dumps(held))
+
+
+def test_every_answer_about_a_file_is_named_in_a_document() -> None:
+    """A row an answer given, beside the file's name; a column the file doesn't have and reasons of which none counts are said."""
+    said = FileAnswers({"ward": "Station", "to": NO_COLUMN}, "day first", 3, ())
+
+    assert FileAnswers().rows("Staffed beds") == ()
+    assert dict(said.rows("Staffed beds")) == {
+        "Staffed beds: columns": "ward = Station; to = no column",
+        "Staffed beds: dates": "day first",
+        "Staffed beds: months a row": "3",
+        "Staffed beds: reasons taken for lack of a bed": "none",
+    }
 
 
 @pytest.mark.parametrize("reasons", [["Code 7"], {"ab": "Code 7"}, {"ab": 7}])

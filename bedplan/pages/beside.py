@@ -19,15 +19,18 @@ from bedplan.data import (
     read_refusals,
 )
 from bedplan.errors import BedplanError, UnreadableRecords
-from bedplan.pages import controls, intake, loaded, typed
-from bedplan.plan import from_return
+from bedplan.pages import controls, intake, loaded, said, typed
+from bedplan.plan import FileAnswers, from_return
 
 if TYPE_CHECKING:
     from collections.abc import Callable
 
     from bedplan.data import DateQuestion
+    from bedplan.pages.intake import Given
+    from bedplan.plan import Baseline
 
-    Take = Callable[[bytes, str, str | None], list[str]]  # content, name and order of dates -> what to tell
+    Take = Callable[[Given], list[str]]  # a file -> what to tell
+    Ask = Callable[[FileAnswers, bool], FileAnswers]  # what was said, and whether the input starts anew -> what is said
 
 
 MONTHS_A_ROW = {None: "what the file shows", 1: "1 month"}
@@ -35,57 +38,106 @@ MONTHS_A_ROW = {None: "what the file shows", 1: "1 month"}
 
 @dataclass(frozen=True)
 class Told:
-    """What came of one more file, and the question whose answer would help, if any."""
+    """What came of one more file as it was last read, or tried, and the question whose answer would help, if any."""
 
+    mark: str
+    answers: FileAnswers
     sentences: tuple[str, ...]
     refused: bool = False
     question: DateQuestion | None = None
-    date_order: str | None = None
 
 
-def offer(kind: str, label: str, take: Take, *, ask: Callable[[str], Any] | None = None, **options: Any) -> None:
+def offer(kind: str, label: str, take: Take, *, ask: Ask | None = None, **options: Any) -> bool:
     """Offer one more file, take it in once, and tell what came of it for as long as it is in its box.
 
-    ``ask`` asks something about the file of this id; where the answer changes, the file is taken again.
+    ``ask`` asks one more thing about it; where an answer changes, the file is taken again. Return whether it is new.
     """
-    given = st.file_uploader(label, key=f"{kind}_file", **options)
-    if given is None or options.get("disabled"):
-        return
-    asked = (given.file_id, ask(given.file_id) if ask else None)
-    taken = st.session_state.get(f"{kind}_taken", (None, None))
-    if taken != asked:
-        order = st.session_state[f"{kind}_told"].date_order if taken[0] == given.file_id else None
-        take_more(kind, take, given.getvalue(), given.name, order)
-        st.session_state[f"{kind}_taken"] = asked
+    put = st.file_uploader(label, key=f"{kind}_file", **options)
+    if put is None or options.get("disabled"):
+        return False
+    content = put.getvalue()
+    is_new = st.session_state.get(f"{kind}_taken") != put.file_id
+    if is_new:
+        take_more(take, intake.Given(kind, put.name, content, said.of(said.mark_of(content))))
+        st.session_state[f"{kind}_taken"] = put.file_id
     told: Told = st.session_state[f"{kind}_told"]
-    for sentence in told.sentences:
-        (st.error if told.refused else st.caption)(wording.plain(sentence))
+    answers = replace(told.answers, no_bed_reasons=said.of(told.mark).no_bed_reasons)
+    given = intake.Given(kind, put.name, content, answers)
+    tell(given, told)
+
+    def retry(answers: FileAnswers) -> None:
+        """Take the file again with these answers."""
+        take_more(take, replace(given, answers=answers))
+        st.rerun()
+
+    ask_more(given, told, ask, retry)
+    return is_new
+
+
+def tell(given: Given, told: Told) -> None:
+    """Tell what came of a file."""
+    if not told.refused:
+        for sentence in told.sentences:
+            st.caption(wording.plain(sentence))
+        return
+    for sentence in intake.why_refused(given, told.sentences, told.question):
+        st.error(wording.plain(sentence))
+    if any(named.endswith(told.mark) for _, named in loaded.files().marks):
+        st.caption("What was read from this file before is still in use, unchanged.")
+
+
+def ask_more(given: Given, told: Told, ask: Ask | None, retry: Callable[[FileAnswers], None]) -> None:
+    """Ask what is open about a file, and let the planner correct how it was read."""
+    is_fresh = intake.is_fresh(given.kind)
     if told.question is not None:
+        intake.ask_date_order(given.kind, told.question, lambda order: retry(replace(told.answers, date_order=order)))
+    if ask is not None:
+        answers = ask(told.answers, is_fresh)
+        if answers != told.answers:
+            retry(answers)
+    if given.kind in intake.FILE_KINDS:
+        is_unsure = told.refused and told.question is None
+        # other columns may hold other reasons: those are asked about again
+        intake.confirm_columns(
+            given, lambda answers: retry(replace(answers, no_bed_reasons=None)), is_fresh=is_fresh, is_unsure=is_unsure
+        )
 
-        def retry(date_order: str) -> None:
-            """Take the file with its dates read this way."""
-            take_more(kind, take, given.getvalue(), given.name, date_order)
-            st.rerun()
 
-        intake.ask_date_order(kind, told.question, retry)
-
-
-def take_more(kind: str, take: Take, content: bytes, name: str, date_order: str | None = None) -> None:
-    """Take in a file beside the stays, and keep what came of it."""
+def take_more(take: Take, given: Given) -> None:
+    """Take in a file beside the stays, and keep what came of it; what was said of it is kept once it can be read."""
+    mark = said.mark_of(given.content)
     try:
-        told = Told(tuple(take(content, name, date_order)), date_order=date_order)
+        told = Told(mark, given.answers, tuple(take(given)))
+        said.keep(mark, given.answers)
     except BedplanError as error:
-        told = Told((str(error),), refused=True, question=getattr(error, "question", None), date_order=date_order)
-    st.session_state[f"{kind}_told"] = told
+        question = getattr(error, "question", None)
+        told = Told(mark, given.answers, (str(error),), refused=True, question=question)
+    st.session_state[f"{given.kind}_told"] = told
+    intake.start_anew(given.kind)
+
+
+def take_again() -> list[str]:
+    """Let files in their boxes be read again where a plan that was opened says otherwise; name those no longer there."""
+    gone = []
+    for kind, what in loaded.MARKED.items():
+        told: Told | None = st.session_state.get(f"{kind}_told")
+        if told is None or told.answers == replace(said.of(told.mark), no_bed_reasons=told.answers.no_bed_reasons):
+            continue
+        named = dict(loaded.files().marks).get(what, "")
+        st.session_state.pop(f"{kind}_taken", None)
+        if st.session_state.get(f"{kind}_file") is None and named.endswith(told.mark):
+            name = named.rpartition(",")[0]
+            gone.append(f"{name} was read another way than this plan says: give it again.")
+    return gone
 
 
 def load_capacity() -> None:
     """Offer the capacity file and take it in."""
 
-    def take(content: bytes, name: str, date_order: str | None) -> list[str]:
+    def take(given: Given) -> list[str]:
         """Take today's staffed beds from it."""
-        found = read_capacity(content, name=name, date_order=date_order)
-        controls.use_capacity(found, content)
+        found = read_capacity(given.content, name=given.name, **given.answers.to_read())
+        controls.use_capacity(found, given.content)
         return [*found.report.sentences, *found.notes]
 
     offer(
@@ -107,7 +159,7 @@ def load_more() -> None:
     }
     with st.expander("More files"):
         for kind, (label, reader) in kinds.items():
-            offer(kind, label, functools.partial(take_beside, kind, reader), disabled=loaded.is_demo())
+            offer(kind, label, functools.partial(take_beside, reader), disabled=loaded.is_demo())
             ask_reasons(kind)
         offer("ready", "Ready to leave: stay or patient key, date", take_ready, disabled=loaded.is_demo())
         label = (
@@ -118,17 +170,19 @@ def load_more() -> None:
         st.caption(wording.plain(sentence))
 
 
-def take_beside(kind: str, reader: Callable[..., Any], content: bytes, name: str, date_order: str | None) -> list[str]:
+def take_beside(reader: Callable[..., Any], given: Given) -> list[str]:
     """Add a list or a census beside the records."""
-    found = reader(content, name=name, date_order=date_order)
-    loaded.use_file(content, kind, found)
+    found = reader(given.content, name=given.name, **given.answers.to_read())
+    loaded.use_file(given.content, given.kind, found)
+    if given.answers.no_bed_reasons is not None:
+        loaded.use_reasons(given.kind, given.answers.no_bed_reasons)
     return [*found.report.sentences, *found.report.notes, *found.cannot]
 
 
-def take_ready(content: bytes, name: str, date_order: str | None) -> list[str]:
+def take_ready(given: Given) -> list[str]:
     """Read the ward stays again, with the dates on which patients were ready to leave."""
-    found = read_ready_dates(content, name=name, date_order=date_order)
-    here = loaded.files().marked("ready", name, content)
+    found = read_ready_dates(given.content, name=given.name, **given.answers.to_read())
+    here = loaded.files().marked("ready", given.name, given.content)
     choices = replace(here.answers.choices, ready_dates=found)
     problems = intake.read_again(replace(here.answers, choices=choices))
     if problems:
@@ -155,25 +209,27 @@ def ask_reasons(kind: str) -> None:
             st.rerun()
 
 
-def ask_months(file_id: str) -> int | None:
+def ask_months(answers: FileAnswers, is_fresh: bool) -> FileAnswers:
     """Ask how many months a row of the return holds; None = as the file shows."""
+    if is_fresh:
+        st.session_state["months_a_row"] = answers.months_a_row
     chosen = st.selectbox(
         "A row of this return holds",
         [None, *range(1, 13)],
         format_func=lambda months: MONTHS_A_ROW.get(months, f"{months} months"),
-        key=f"months_{file_id}",
+        key="months_a_row",
     )
-    st.session_state["months_a_row"] = chosen
-    return chosen
+    return replace(answers, months_a_row=chosen)
 
 
-def take_return(content: bytes, name: str, date_order: str | None) -> list[str]:
+def take_return(given: Given) -> list[str]:
     """Make a ward to plan of each ward in a monthly return that the planner's records don't hold."""
+    answers = given.answers
     returned = read_monthly_return(
-        content, name=name, date_order=date_order, months_a_row=st.session_state["months_a_row"]
+        given.content, name=given.name, months_a_row=answers.months_a_row, **answers.to_read()
     )
     if not loaded.is_demo():
-        loaded.use_file(content, "monthly_return", returned)
+        loaded.use_file(given.content, "monthly_return", returned)
         returned = loaded.files().monthly_return
     made, told = [], [*returned.report.sentences, *returned.report.notes]
     known = () if loaded.is_demo() else set(returned.wards) - set(returned.unknown_wards)
@@ -182,10 +238,21 @@ def take_return(content: bytes, name: str, date_order: str | None) -> list[str]:
             made.append(from_return(returned, ward))
         except BedplanError as error:
             told.append(f"{ward}: {error}")
-    for ward in made:
-        if st.session_state.get("typed", {}).get(ward.name) != ward:  # one taken already keeps its settings
-            typed.use_totals(ward)
+    use_made(said.mark_of(given.content), made)
     if known:
         told.append("Wards that have ward stays were left as they are: stays say more than a return.")
     ready = "1 ward is" if len(made) == 1 else f"{len(made)} wards are"
     return [f"{ready} ready on the page One ward, from averages only.", *told]
+
+
+def use_made(mark: str, made: list[Baseline]) -> None:
+    """Plan these wards of a return; those that the same file made when it was read another way are taken off."""
+    before, wards = st.session_state.get("made_of_return", ("", ()))
+    here = st.session_state.get("typed", {})
+    for ward in wards if before == mark else ():
+        if here.get(ward.name) == ward and ward.name not in {one.name for one in made}:
+            typed.remove_totals(ward.name)
+    for ward in made:
+        if here.get(ward.name) != ward:  # one taken already keeps its settings
+            typed.use_totals(ward)
+    st.session_state["made_of_return"] = (mark, tuple(made))

@@ -5,6 +5,7 @@ Nothing here computes a figure: it turns what is on screen into the value object
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
 import pandas as pd
@@ -14,7 +15,7 @@ from bedplan import wording
 from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.export import Source, WardCase, case_for
-from bedplan.pages import loaded
+from bedplan.pages import loaded, said
 from bedplan.plan import Baseline, Changes, planned_ward
 
 if TYPE_CHECKING:
@@ -210,8 +211,15 @@ def case_of(name: str) -> WardCase:
     )
     said = "what was asked for, hidden demand included" if values["hidden"] else "recorded admissions"
     settings = (*changes.rows(), ("Planned on", said))
-    ward = planned_ward(base, int(values["beds"]), values["full"], changes)
+    ward = planned_ward(_as_typed(base, int(values["beds"])), int(values["beds"]), values["full"], changes)
     return case_for(ward, rule_for(ward.when_full), base.facts, settings)
+
+
+def _as_typed(base: Baseline, beds: int) -> Baseline:
+    """Return a baseline without the word that today's beds are not known, once the planner typed them."""
+    if wording.BEDS_UNKNOWN not in base.notes or beds in (base.beds, loaded.baseline(base.name, with_hidden=False).beds):
+        return base
+    return replace(base, notes=tuple(note for note in base.notes if note != wording.BEDS_UNKNOWN))
 
 
 def limit_share() -> float:
@@ -244,6 +252,7 @@ def _how_read(wards: list[str]) -> list[tuple[str, str]]:
     written = [(name, loaded.recorded_share(name)) for name in wards if settings_of(name).get("hidden")]
     return [
         *loaded.files().answers.rows(),
+        *said.rows(loaded.files().marks),
         *((f"Written down of those not given a bed, {name}", wording.percent(share, 0)) for name, share in written),
     ]
 
@@ -276,6 +285,14 @@ def show_origin() -> None:
         )
     elif loaded.is_demo():
         st.caption("The invented Larkmere hospital. Load your own records on the page Records.")
+
+
+def warn_of_beds(cases: list[WardCase]) -> None:
+    """Say which of these wards' beds today are not known, and where to type them."""
+    names = [case.ward.name for case in cases if not case.beds_are_known]
+    if names:
+        shown = names if len(names) <= 5 else [*names[:4], f"{len(names) - 4} more wards"]
+        st.warning(f"{wording.plain(', '.join(shown))}: {wording.BEDS_UNKNOWN} Type them on the page One ward.")
 
 
 def take_in_hand(name: str) -> None:

@@ -1,36 +1,56 @@
-"""Taking ward stays in on the page Records, and the questions such a file can raise."""
+"""Taking ward stays in on the page Records, and the questions that any file can raise."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import pandas as pd
 import streamlit as st
 
 from bedplan import wording
 from bedplan.data import preview_columns, read_records
-from bedplan.data.files.preview import MATCHED
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.pages import controls, loaded, saved, typed
-from bedplan.plan import Answers
+from bedplan.plan import NO_COLUMN, Answers
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Mapping
 
-    from bedplan.data import DateQuestion
+    from bedplan.data import ColumnPreview, DateQuestion
+    from bedplan.plan import FileAnswers
 
 NONE = "(none)"
 STOPPED = "Reading {} was stopped. What was loaded before is still here, unchanged."
+
+
+FILE_KINDS = {  # box -> the kind of file whose columns are looked for
+    "stays": "ward stays",
+    "capacity": "staffed beds",
+    "refusals": "refusals",
+    "bed_requests": "bed requests",
+    "cancellations": "cancellations",
+    "census": "census",
+    "monthly_return": "monthly return",
+    "ready": "ready dates",
+}
+
+
+@dataclass(frozen=True)
+class Given:
+    """A file as it was given: for which box, its name and content, and what was said of it."""
+
+    kind: str
+    name: str
+    content: bytes
+    answers: Answers | FileAnswers
 
 
 @dataclass(frozen=True)
 class Refused:
     """A file of ward stays that could not be read: why, and the question whose answer would help."""
 
-    name: str
-    content: bytes
-    answers: Answers
+    given: Given
     problems: tuple[str, ...]
     question: DateQuestion | None
 
@@ -47,7 +67,7 @@ def read(name: str, content: bytes, answers: Answers) -> loaded.Files | Refused:
         found = read_records(content, name=name, progress=tell, **answers.to_read())
     except BedplanError as error:
         problems = error.problems if isinstance(error, UnreadableRecords) else (str(error),)
-        return Refused(name, content, answers, problems, getattr(error, "question", None))
+        return Refused(Given("stays", name, content, answers), problems, getattr(error, "question", None))
     finally:
         bar.empty()
     return loaded.Files(found, content=content, answers=answers)
@@ -56,7 +76,7 @@ def read(name: str, content: bytes, answers: Answers) -> loaded.Files | Refused:
 def take_in(name: str, content: bytes, answers: Answers) -> None:
     """Plan with a new file from now on; if it can't be read, say why and keep what was loaded before."""
     found = read(name, content, answers)
-    st.session_state["columns_fresh"] = True
+    start_anew("stays")
     if isinstance(found, Refused):
         st.session_state["refused"] = found
         return
@@ -131,17 +151,24 @@ def show_refused() -> None:
     refused: Refused | None = st.session_state.get("refused")
     if refused is None:
         return
-    st.error(as_text(refused.problems))
+    given = refused.given
+    st.error(as_text(why_refused(given, refused.problems, refused.question)))
     st.caption("The records loaded before are still here, unchanged.")
 
     def retry(answers: Answers) -> None:
         """Read the same file again with these answers."""
-        take_in(refused.name, refused.content, answers)
+        take_in(given.name, given.content, answers)
         st.rerun()
 
     if refused.question is not None:
-        ask_date_order("stays", refused.question, lambda order: retry(replace(refused.answers, date_order=order)))
-    confirm_columns(refused.name, refused.content, refused.answers, retry)
+        ask_date_order("stays", refused.question, lambda order: retry(replace(given.answers, date_order=order)))
+    confirm_columns(given, retry, is_fresh=is_fresh("stays"), is_unsure=refused.question is None)
+
+
+def why_refused(given: Given, problems: tuple[str, ...], question: DateQuestion | None) -> tuple[str, ...]:
+    """Return what is wrong with a file; where it is clearly of another kind, that alone."""
+    seen = columns_of(given) if given.kind in FILE_KINDS and question is None else None
+    return (seen.mistaken,) if seen is not None and seen.mistaken else problems
 
 
 def ask_date_order(kind: str, question: DateQuestion, use: Callable[[str], None]) -> None:
@@ -162,33 +189,64 @@ def ask_date_order(kind: str, question: DateQuestion, use: Callable[[str], None]
             use(answer)
 
 
-def confirm_columns(name: str, content: bytes, answers: Answers, use: Callable[[Answers], None]) -> None:
-    """Show which heading was taken for what, with three rows, and let the planner correct it."""
-    refused: Refused | None = st.session_state.get("refused")
-    unsure = refused is not None and refused.question is None
+def start_anew(kind: str) -> None:
+    """Put the inputs about a file where they start: what was chosen for another one is not carried over."""
+    st.session_state[f"{kind}_fresh"] = True
+
+
+def is_fresh(kind: str) -> bool:
+    """Whether the inputs about a file start anew in this run."""
+    return st.session_state.pop(f"{kind}_fresh", False)
+
+
+def columns_of(given: Given) -> ColumnPreview | None:
+    """Return which heading was taken for what; None where the file is no table. Looked for once, a workbook takes long."""
+    asked = (given.name, hash(given.content), tuple(given.answers.columns.items()))
+    kept = st.session_state.get(f"{given.kind}_seen")
+    if kept is None or kept[0] != asked:
+        kept = (asked, _look(given, given.answers.columns) or _look(given, {}))
+        st.session_state[f"{given.kind}_seen"] = kept
+    return kept[1]
+
+
+def _look(given: Given, columns: Mapping[str, str]) -> ColumnPreview | None:
+    """Look at the columns of a file; None where that can't be done."""
     try:
-        seen = preview_columns(content, name=name, columns=answers.columns)
+        return preview_columns(given.content, name=given.name, columns=columns, kind=FILE_KINDS[given.kind])
     except BedplanError:
+        return None
+
+
+def confirm_columns(given: Given, use: Callable[[Any], None], *, is_fresh: bool, is_unsure: bool = False) -> None:
+    """Show which heading was taken for what, with three rows, and let the planner correct it."""
+    seen = columns_of(given)
+    if seen is None or not seen.headings:
         return
+    can_help = not seen.mistaken and bool(seen.lacking or given.answers.columns)
     with (
-        st.expander("How the columns were read", expanded=unsure),
-        st.form("columns", border=False),
+        st.expander("How the columns were read", expanded=is_unsure and can_help),
+        st.form(f"{given.kind}_columns", border=False),
     ):
-        chosen = {}
-        fresh = st.session_state.pop("columns_fresh", False)
-        for key in MATCHED:
-            options = [NONE, *seen.headings]
-            now = seen.matched.get(key, NONE)
-            if fresh:  # what was chosen for another file is not carried over
-                st.session_state[f"column_{key}"] = now
-            left, right = st.columns([1, 2])
-            chosen[key] = left.selectbox(
-                key.replace("_", " ").capitalize(), options, options.index(now), key=f"column_{key}"
-            )
-            right.caption(wording.plain(" · ".join(seen.samples.get(key, ())) or "–"))
+        if seen.hint:
+            st.caption(wording.plain(seen.hint))
+        chosen = {key: ask_column(f"{given.kind}_column_{key}", key, seen, is_fresh=is_fresh) for key in seen.asked}
         if st.form_submit_button("Read it again with these columns"):
-            columns = {key: heading for key, heading in chosen.items() if heading != NONE}
-            use(replace(answers, columns=columns))
+            others = {key: heading for key, heading in given.answers.columns.items() if key not in seen.asked}
+            left_out = {key for key in seen.asked if key in seen.matched or key in given.answers.columns}
+            named = {key: heading for key, heading in chosen.items() if heading is not None}
+            use(replace(given.answers, columns={**others, **dict.fromkeys(left_out, NO_COLUMN), **named}))
+
+
+def ask_column(place: str, key: str, seen: ColumnPreview, *, is_fresh: bool) -> str | None:
+    """Ask which heading stands for one of our names, three of its rows beside it; None = no column."""
+    if is_fresh or place not in st.session_state:
+        st.session_state[place] = seen.matched.get(key)
+    left, right = st.columns([1, 2])
+    chosen = left.selectbox(
+        wording.column(key), [None, *seen.headings], format_func=lambda one: NONE if one is None else one, key=place
+    )
+    right.caption(wording.plain(" · ".join(seen.samples.get(key, ())) or "–"))
+    return chosen
 
 
 def confirm_links() -> None:

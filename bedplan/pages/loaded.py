@@ -6,7 +6,6 @@ nobody's, and for each tab apart otherwise.
 
 from __future__ import annotations
 
-import hashlib
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -37,6 +36,7 @@ from bedplan.data import (
 )
 from bedplan.data.beside.linking import likely_links
 from bedplan.errors import UnreadableRecords
+from bedplan.pages import said
 from bedplan.plan import Answers, Baseline, from_estimate
 
 if TYPE_CHECKING:
@@ -140,7 +140,9 @@ def records() -> Records:
 
 
 def use(given: Files | None) -> None:
-    """Plan with these files from now on; None = the demo's."""
+    """Plan with these files from now on; None = the demo's, and what was said of the others is forgotten."""
+    if given is None:
+        said.forget()
     st.session_state["files"] = given
     st.session_state["worked_out"] = {}
 
@@ -152,30 +154,20 @@ def use_file(content: bytes, kind: str, found: Capacity | EventLog | Census | Mo
         UnreadableRecords: the same file is in use already, for something else.
     """
     here = files().marked(kind, found.name, content)
-    marks = tuple(row for row in here.marks if row[0] != _reasons_row(kind))
-    use(replace(here, marks=marks, given={**here.given, kind: found}).linked())
-    said = st.session_state.get("planned_reasons", {}).get(fingerprint_of(kind))
-    if said is not None:
-        use_reasons(kind, tuple(said))
+    use(replace(here, given={**here.given, kind: found}).linked())
 
 
 def use_reasons(kind: str, reasons: tuple[str, ...]) -> None:
     """Take the planner's word for which reasons in a list mean that no bed was free."""
-    here = files()
-    said = {_reasons_row(kind): "; ".join(reasons) or "none"}
+    here, mark = files(), fingerprint_of(kind)
+    said.keep(mark, replace(said.of(mark), no_bed_reasons=reasons))
     log = replace(here.given[kind], no_bed_reasons=reasons)
-    marks = tuple({**dict(here.marks), **said}.items())
-    use(replace(here, marks=marks, given={**here.given, kind: log}).linked())
+    use(replace(here, given={**here.given, kind: log}).linked())
 
 
 def fingerprint_of(kind: str) -> str:
     """Return the fingerprint of a file beside the records."""
     return dict(files().marks)[OTHER_FILES[kind]][-64:]
-
-
-def _reasons_row(kind: str) -> str:
-    """Return what the document calls the reasons that the planner took for lack of a bed."""
-    return f"Reasons taken for lack of a bed, {OTHER_FILES[kind].lower()}"
 
 
 def without_stays() -> tuple[str, ...]:
@@ -195,7 +187,7 @@ def links() -> tuple[WardLink, ...]:
 
 def _mark(kind: str, name: str, content: bytes) -> tuple[str, str]:
     """Return (what, name and fingerprint) of a file for the document."""
-    return MARKED[kind], f"{name}, SHA-256 {hashlib.sha256(content).hexdigest()}"
+    return MARKED[kind], f"{name}, SHA-256 {said.mark_of(content)}"
 
 
 def recorded_share(name: str) -> float:

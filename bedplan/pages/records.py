@@ -118,13 +118,13 @@ def take_totals(name: str, admissions: float, beds: int, stay: float | tuple[flo
     st.success(f"{wording.plain(ward.name)} wants {wanted}. It is ready on the page One ward.")
 
 
-def open_plan(content: bytes, _name: str, _date_order: str | None) -> list[str]:
+def open_plan(given: intake.Given) -> list[str]:
     """Take up a saved plan: the file in hand is read as the plan read it, then its settings count.
 
     Raises:
         UnreadableRecords: no plan, or the file can't be read as the plan says.
     """
-    plan = from_json(content)
+    plan = from_json(given.content)
     here = loaded.files()
     if not loaded.is_demo() and saved.is_of(plan, here.content) and plan.answers != here.answers:
         problems = intake.read_again(plan.answers.with_ready_dates(here.answers))
@@ -132,7 +132,8 @@ def open_plan(content: bytes, _name: str, _date_order: str | None) -> list[str]:
             raise UnreadableRecords(problems)
     saved.use_plan(plan)
     told = "The plan is open. Settings of wards wait for the records it was made with, if those are not loaded yet."
-    return [told, *filter(None, [plan.answers.with_ready_dates(loaded.files().answers).ready_sentence])]
+    again = beside.take_again()
+    return [told, *again, *filter(None, [plan.answers.with_ready_dates(loaded.files().answers).ready_sentence])]
 
 
 def keep_plan() -> None:
@@ -144,7 +145,8 @@ def keep_plan() -> None:
         mime="application/json",
         on_click="ignore",
     )
-    beside.offer("plan", "Open a saved plan", open_plan, type="json")
+    if beside.offer("plan", "Open a saved plan", open_plan, type="json"):
+        st.rerun()  # files in their boxes are read as it says
 
 
 left_side, right_side = st.columns(2, gap="large")
@@ -175,4 +177,5 @@ if not loaded.is_demo():
     correcting.correct()
     if "refused" not in st.session_state:
         mine = loaded.files()
-        intake.confirm_columns(records.name, mine.content, mine.answers, intake.settle)
+        given = intake.Given("stays", records.name, mine.content, mine.answers)
+        intake.confirm_columns(given, intake.settle, is_fresh=intake.is_fresh("stays"))

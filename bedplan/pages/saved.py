@@ -2,30 +2,29 @@
 
 from __future__ import annotations
 
-import hashlib
 from typing import TYPE_CHECKING, Any
 
 import streamlit as st
 
-from bedplan.pages import controls, loaded
+from bedplan.pages import controls, loaded, said
 from bedplan.plan import SavedPlan, as_json, as_totals, from_saved_totals
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Mapping
 
-    from bedplan.plan import Answers
+    from bedplan.plan import Answers, FileAnswers
 
 
 def plan_as_json() -> str:
     """Return the plan of this browser tab as a file's text."""
     typed = {name: as_totals(base) for name, base in st.session_state.get("typed", {}).items()}
-    said = st.session_state.get("recorded_shares", {})
-    shares = {name: {"written": share} for name, share in said.items() if share != loaded.share_at_start(name)}
+    written = st.session_state.get("recorded_shares", {})
+    shares = {name: {"written": share} for name, share in written.items() if share != loaded.share_at_start(name)}
     inputs = st.session_state.get("settings", {})
     settings = {name: inputs.get(name, {}) | shares.get(name, {}) for name in (*inputs, *shares)}
     limit = {key: st.session_state[key] for key in ("limit", "within", "measure") if key in st.session_state}
     return as_json(
-        SavedPlan(loaded.records().fingerprint, settings, typed, loaded.files().answers, limit, _reasons_said())
+        SavedPlan(loaded.records().fingerprint, settings, typed, loaded.files().answers, limit, said.everything())
     )
 
 
@@ -37,7 +36,7 @@ def answers_for(content: bytes) -> Answers | None:
 
 def is_of(plan: SavedPlan, content: bytes) -> bool:
     """Whether a plan was made with exactly this file."""
-    return plan.records == hashlib.sha256(content).hexdigest()
+    return plan.records == said.mark_of(content)
 
 
 def use_plan(plan: SavedPlan) -> None:
@@ -52,7 +51,7 @@ def use_plan(plan: SavedPlan) -> None:
         controls.inputs_from(values)
     st.session_state["typed"] = st.session_state.get("typed", {}) | typed
     st.session_state.update(_limit(plan.limit))
-    _take_reasons(plan.reasons)
+    _take_said(plan.files)
     if plan.records == loaded.records().fingerprint:
         controls.take_settings(plan.settings)
         shown = st.session_state.get("ward")
@@ -62,18 +61,14 @@ def use_plan(plan: SavedPlan) -> None:
         st.session_state["planned"] = plan
 
 
-def _reasons_said() -> dict[str, list[str]]:
-    """Return which reasons the planner took for lack of a bed, by the fingerprint of their list."""
-    said = {kind: getattr(log, "no_bed_reasons", None) for kind, log in loaded.files().given.items()}
-    return {loaded.fingerprint_of(kind): list(reasons) for kind, reasons in said.items() if reasons is not None}
-
-
-def _take_reasons(planned: Mapping[str, Sequence[str]]) -> None:
-    """Take up what a plan says of reasons; it waits for exactly the lists that it was said of."""
-    st.session_state["planned_reasons"] = {**st.session_state.get("planned_reasons", {}), **planned}
+def _take_said(planned: Mapping[str, FileAnswers]) -> None:
+    """Take up what a plan says of files beside the stays; it waits for exactly the files that it was said of."""
+    for mark, answers in planned.items():
+        said.keep(mark, answers)
     for kind in loaded.files().given:
-        if loaded.fingerprint_of(kind) in planned:
-            loaded.use_reasons(kind, tuple(planned[loaded.fingerprint_of(kind)]))
+        reasons = said.of(loaded.fingerprint_of(kind)).no_bed_reasons
+        if reasons is not None:
+            loaded.use_reasons(kind, reasons)
 
 
 def _limit(saved: Mapping[str, Any]) -> dict[str, Any]:

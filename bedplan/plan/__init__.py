@@ -1,6 +1,6 @@
 """A plan: what the records say about each ward, what the planner changed, and both as a file. No patient rows."""
 
-from bedplan.plan.answers import Answers
+from bedplan.plan.answers import NO_COLUMN, Answers, FileAnswers
 from bedplan.plan.baseline import (
     Baseline,
     Changes,
@@ -15,9 +15,11 @@ from bedplan.plan.baseline import (
 from bedplan.plan.saving import SavedPlan, as_json, as_totals, from_json, from_saved_totals
 
 __all__ = [
+    "NO_COLUMN",
     "Answers",
     "Baseline",
     "Changes",
+    "FileAnswers",
     "SavedPlan",
     "as_json",
     "as_totals",

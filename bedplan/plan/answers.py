@@ -1,4 +1,4 @@
-"""How a file of ward stays is to be read, where a person had to say: kept in a plan, read again from it."""
+"""How files are to be read, where a person had to say: kept in a plan, read again from it."""
 
 from __future__ import annotations
 
@@ -7,14 +7,18 @@ from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
 from bedplan.data import IntakeChoices
+from bedplan.data.values.choices import check_date_order
+from bedplan.errors import ImpossibleFigure
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
+NO_COLUMN = ""  # a person's word that a file has no column for this
+
 
 @dataclass(frozen=True, slots=True)
 class Answers:
-    """What a person said about a file: ``columns`` = our name → heading, ``date_order``, and the other ``choices``.
+    """What a person said about ward stays: ``columns`` = our name → heading, ``date_order``, and the other ``choices``.
 
     ``ready_file``: the file of ready dates that a plan was made with; a plan holds its name, not the keys in it.
     """
@@ -75,9 +79,59 @@ class Answers:
         }
 
 
+@dataclass(frozen=True, slots=True)
+class FileAnswers:
+    """What a person said about a file beside the ward stays: ``columns`` = our name → heading, and ``date_order``.
+
+    ``months_a_row``: how many months a row of a return holds. ``no_bed_reasons``: which reasons in a list mean that no bed
+    was free. None = nobody said.
+
+    Raises:
+        ImpossibleFigure: an order of dates nobody knows, or months a row that are not 1 to 12.
+
+    Checked by: tests/test_plan.py
+    """
+
+    columns: Mapping[str, str] = field(default_factory=dict)
+    date_order: str | None = None
+    months_a_row: int | None = None
+    no_bed_reasons: tuple[str, ...] | None = None
+
+    def __post_init__(self) -> None:
+        """Check every answer once, here."""
+        check_date_order(self.date_order)
+        if self.months_a_row is not None and not 1 <= self.months_a_row <= 12:
+            raise ImpossibleFigure(f"{self.months_a_row} months a row is not possible: a row holds 1 to 12 months.")
+
+    def to_read(self) -> dict[str, Any]:
+        """Return the answers that every reader of such a file takes."""
+        return {"columns": self.columns, "date_order": self.date_order}
+
+    def rows(self, what: str) -> tuple[tuple[str, str], ...]:
+        """Return (what, value) for every answer given, for the document; ``what``: the file."""
+        reasons = None if self.no_bed_reasons is None else "; ".join(self.no_bed_reasons) or "none"
+        told = {
+            "columns": _pairs(self.columns),
+            "dates": self.date_order,
+            "months a row": self.months_a_row and str(self.months_a_row),
+            "reasons taken for lack of a bed": reasons,
+        }
+        return tuple((f"{what}: {how}", value) for how, value in told.items() if value)
+
+    def as_saved(self) -> dict[str, Any]:
+        """Return the answers as they stand in a plan file: those that were given."""
+        held = {
+            "columns": dict(self.columns) or None,
+            "date_order": self.date_order,
+            "months_a_row": self.months_a_row,
+            "no_bed_reasons": None if self.no_bed_reasons is None else list(self.no_bed_reasons),
+        }
+        return {what: value for what, value in held.items() if value is not None}
+
+
 def _pairs(names: Mapping[str, str]) -> str:
     """Say what stands for what."""
-    return "; ".join(f"{one} = {other}" for one, other in names.items())
+    return "; ".join(f"{one} = {'no column' if other == NO_COLUMN else other}" for one, other in names.items())
 
 
 def _span(first: dt.date, last: dt.date) -> str:
@@ -108,6 +162,26 @@ def saved_answers(held: Mapping[str, Any]) -> Answers:
             bed_on_leave=_text(held.get("bed_on_leave")),
         ),
         _text(held.get("ready_file")),
+    )
+
+
+def saved_file_answers(held: Mapping[str, Any]) -> FileAnswers:
+    """Return what a plan file holds about a file beside the stays; what it leaves out was not said.
+
+    Raises:
+        AttributeError, TypeError, ValueError: not as such a file holds it.
+        ImpossibleFigure: an answer nobody knows.
+
+    Checked by: tests/test_plan.py
+    """
+    months, reasons = held.get("months_a_row"), held.get("no_bed_reasons")
+    if not isinstance(months, int | None) or not isinstance(reasons, list | None):
+        raise TypeError("neither months nor reasons")
+    return FileAnswers(
+        _texts(held.get("columns", {})),
+        _text(held.get("date_order")),
+        months,
+        None if reasons is None else tuple(str(reason) for reason in reasons),
     )
 
 

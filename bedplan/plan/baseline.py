@@ -131,7 +131,6 @@ def from_estimate(estimate: DemandEstimate, beds: int | None, hidden: HiddenDema
     """
     start = math.ceil(estimate.demand.offered_load) if beds is None else beds
     guests = (wording.GUESTS_OUT,) if hidden is not None and hidden.takes_away else ()
-    unknown = "No capacity file gives this ward's staffed beds: type today's. Until then they start at the beds wanted."
     return Baseline(
         name=estimate.ward,
         demand=estimate.demand,
@@ -140,7 +139,7 @@ def from_estimate(estimate: DemandEstimate, beds: int | None, hidden: HiddenDema
         growth_per_year=estimate.bed_days_growth_per_year,
         admissions_growth_per_year=estimate.growth_per_year,
         facts=_facts(estimate),
-        notes=(*guests, *estimate.notes, *((unknown,) if beds is None else ())),
+        notes=(*guests, *estimate.notes, *((wording.BEDS_UNKNOWN,) if beds is None else ())),
     )
 
 

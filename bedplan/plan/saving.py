@@ -9,11 +9,11 @@ from typing import TYPE_CHECKING, Any
 
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import LengthOfStay
-from bedplan.plan.answers import Answers, saved_answers
+from bedplan.plan.answers import Answers, FileAnswers, saved_answers, saved_file_answers
 from bedplan.plan.baseline import Baseline, from_totals
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Mapping
 
 PLAN_FORMAT = 1
 TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "beds")
@@ -23,8 +23,9 @@ TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "
 class SavedPlan:
     """What a plan file holds: settings, typed totals and answers about the records; never a row or a count of rows.
 
-    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the file was to be read; ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the records it was made with;
-    ``reasons``: the fingerprint of a list of refusals or cancellations → its reasons that mean no bed was free.
+    ``settings``: ward → its inputs; ``typed``: ward → typed totals; ``answers``: how the ward stays were to be read;
+    ``limit``: its size, what it watches and when it holds; ``records``: the fingerprint of the stays it was made with;
+    ``files``: the fingerprint of a file beside them → what was said of it.
     """
 
     records: str
@@ -32,7 +33,7 @@ class SavedPlan:
     typed: Mapping[str, Mapping[str, Any]]
     answers: Answers = field(default_factory=Answers)
     limit: Mapping[str, str | float] = field(default_factory=dict)
-    reasons: Mapping[str, Sequence[str]] = field(default_factory=dict)
+    files: Mapping[str, FileAnswers] = field(default_factory=dict)
 
 
 def as_json(plan: SavedPlan) -> str:
@@ -47,7 +48,7 @@ def as_json(plan: SavedPlan) -> str:
         "typed": plan.typed,
         "answers": plan.answers.as_saved(),
         "limit": plan.limit,
-        "reasons": plan.reasons,
+        "files": {mark: said.as_saved() for mark, said in plan.files.items()},
     }
     return json.dumps(held, indent=1, ensure_ascii=False, default=dict)
 
@@ -64,12 +65,14 @@ def from_json(text: str | bytes) -> SavedPlan:
     try:
         held = json.loads(text)
         version = held.pop("plan")
+        reasons = dict(held.pop("reasons", {}))  # an earlier plan kept nothing else of these files
         plan = SavedPlan(**held)
         settings = {str(name): dict(values) for name, values in plan.settings.items()}
         typed = {str(name): _typed(row) for name, row in plan.typed.items()}
         answers = saved_answers(plan.answers)
         limit = dict(plan.limit)
-        reasons = {str(name): _texts(said) for name, said in plan.reasons.items()}
+        said = {mark: {"no_bed_reasons": one} for mark, one in reasons.items()} | dict(plan.files)
+        files = {str(mark): saved_file_answers(one) for mark, one in said.items()}
     except ImpossibleFigure:
         raise
     except (ValueError, TypeError, AttributeError, KeyError) as problem:
@@ -78,14 +81,7 @@ def from_json(text: str | bytes) -> SavedPlan:
         ) from problem
     if version != PLAN_FORMAT:
         raise UnreadableRecords([f"This plan has format {version}; this program reads format {PLAN_FORMAT}."])
-    return SavedPlan(str(plan.records), settings, typed, answers, limit, reasons)
-
-
-def _texts(held: object) -> list[str]:
-    """Return a list of texts."""
-    if not isinstance(held, list):
-        raise TypeError("not a list")
-    return [str(one) for one in held]
+    return SavedPlan(str(plan.records), settings, typed, answers, limit, files)
 
 
 def _typed(row: Mapping[str, Any]) -> dict[str, Any]:

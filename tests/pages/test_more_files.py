@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING
 import pytest
 
 from bedplan.pages import saved
-from bedplan.plan import SavedPlan, as_json, from_json
+from bedplan.plan import FileAnswers, SavedPlan, as_json, from_json
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -224,7 +224,7 @@ def test_answers_about_reasons_come_back(
     app.multiselect(key="refusals_no_bed").set_value(["code 7"])
     press(app, "Count these")
     plan = plan_of(app, monkeypatch)
-    assert dict(plan.reasons) == {hashlib.sha256(REFUSALS).hexdigest(): ["code 7"]}
+    assert dict(plan.files) == {hashlib.sha256(REFUSALS).hexdigest(): FileAnswers(no_bed_reasons=("code 7",))}
 
     again = go(open_app(), "records")
     given = app.session_state["files"].content

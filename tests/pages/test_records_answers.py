@@ -58,7 +58,7 @@ def test_columns_can_be_named(open_app: Callable[..., AppTest], stays_csv: bytes
     app = give_stays(open_app(), "stays.csv", stays_csv.replace(b"Ward,Start,End", b"Zimmer,Zugang,Abgang"))
     assert len(app.error) == 1
     for key, heading in (("ward", "Zimmer"), ("start", "Zugang"), ("end", "Abgang")):
-        app.selectbox(key=f"column_{key}").set_value(heading)
+        app.selectbox(key=f"stays_column_{key}").set_value(heading)
     next(one for one in app.button if "with these columns" in one.label).click().run()
     assert not app.exception
     assert not app.error

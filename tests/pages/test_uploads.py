@@ -152,12 +152,12 @@ def test_other_columns_are_not_carried_over(app: AppTest, stays_csv: bytes) -> N
     """How the columns of a new file were read is shown as it is, not as it was chosen for the file before."""
     rows = stays_csv.split(b"\n", 1)[1].replace(b"\n", b",2024-01-01 00:00\n")
     give(app, "stays_file", "one.csv", b"Ward,Start,End,In\n" + rows)
-    app.selectbox(key="column_start").set_value("In")
+    app.selectbox(key="stays_column_start").set_value("In")
     next(one for one in app.button if "with these columns" in one.label).click().run()
-    assert app.selectbox(key="column_start").value == "In"
+    assert app.selectbox(key="stays_column_start").value == "In"
     give(app, "stays_file", "two.csv", b"Ward,Start,End,In\n" + rows + b"\n")
 
-    assert app.selectbox(key="column_start").value == "Start"
+    assert app.selectbox(key="stays_column_start").value == "Start"
 
 
 def test_the_largest_upload_is_the_servers(open_app: Callable[..., AppTest], root: Path) -> None:

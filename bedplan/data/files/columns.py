@@ -6,6 +6,8 @@ import re
 import unicodedata
 from typing import TYPE_CHECKING
 
+from bedplan.errors import UnreadableRecords
+
 if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping
 
@@ -125,21 +127,38 @@ def match_headings(
 ) -> dict[str, str]:
     """Which of these headings means what? Canonical name -> heading as written; the user's own choice comes first.
 
-    A heading answers one name and a name takes the first heading that fits; identity headings are never matched.
+    A heading answers one name and a name takes the first heading that fits; identity headings are never matched. A name
+    for which "" is chosen has no column.
+
+    Raises:
+        UnreadableRecords: one heading was chosen for two names.
     """
-    written = list(headings)
-    found: dict[str, str] = {name: heading for name, heading in (chosen or {}).items() if heading in written}
+    written, chosen = list(headings), chosen or {}
+    found: dict[str, str] = {name: heading for name, heading in chosen.items() if heading and heading in written}
+    _refuse_twice(found)
     free = {place: plain(heading) for place, heading in enumerate(written) if heading not in found.values()}
     for name, words in known.items():
         wanted = (plain(name), *words)
         ranked = (
-            [] if name in found else [(wanted.index(word), place) for place, word in free.items() if word in wanted]
+            []
+            if name in found or chosen.get(name) == ""
+            else [(wanted.index(word), place) for place, word in free.items() if word in wanted]
         )
         if ranked:
             place = min(ranked)[1]
             found[name] = written[place]
             del free[place]
     return found
+
+
+def _refuse_twice(chosen: Mapping[str, str]) -> None:
+    """Refuse one heading for two names."""
+    names: dict[str, str] = {}
+    for name, heading in chosen.items():
+        if heading in names:
+            both = f"{names[heading]} and for {name}".replace("_", " ")
+            raise UnreadableRecords([f"“{heading}” was chosen for {both}: a column can stand for one of them only."])
+        names[heading] = name
 
 
 def without_formula(text: str) -> str:

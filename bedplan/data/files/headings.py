@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from bedplan.data.files.columns import STAY_HEADINGS, words
+from bedplan.data.files.columns import STAY_HEADINGS, match_headings, words
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Collection, Iterable, Mapping
 
 CAPACITY_HEADINGS: dict[str, tuple[str, ...]] = {
     "ward": words("ward wardcode wardname location unit"),
@@ -86,3 +86,44 @@ HEADINGS_OF: Mapping[str, Mapping[str, tuple[str, ...]]] = {  # kind of file -> 
     "monthly return": RETURN_HEADINGS,
     "ready dates": READY_HEADINGS,
 }
+
+# Kind of file -> what it is called, and the columns it can't be without: one of each row. The more telling kinds come first.
+NEEDED: Mapping[str, tuple[str, tuple[tuple[str, ...], ...]]] = {
+    "monthly return": ("a monthly return", (("month",), ("ward",), ("occupied",), ("discharges",))),
+    "census": ("a census", (("date", "time"), ("ward",), ("occupied",))),
+    "staffed beds": ("a file of staffed beds", (("ward",), ("staffed", "funded"))),
+    "ward stays": (
+        "a file of ward stays",
+        (("ward",), ("start", "start_date", "admitted"), ("end", "end_date", "discharged")),
+    ),
+    "bed requests": ("a list of bed requests", (("ward",), ("time", "date"))),
+    "ready dates": ("a file of ready dates", (("spell_key", "patient_key"), ("date", "time"))),
+    "refusals": ("a list of patients not given a bed", (("ward",), ("time", "date"))),
+    "cancellations": ("a list of cancelled bookings", (("ward",), ("date", "time"))),
+}
+# What else shows that a file is of a kind, where what it can't be without is common: one of these.
+SHOWN_BY: Mapping[str, tuple[str, ...]] = {
+    "bed requests": ("placed", "wait_hours"),
+    "refusals": ("reason",),
+    "cancellations": ("reason",),
+}
+
+
+def lacking(kind: str, matched: Iterable[str]) -> tuple[tuple[str, ...], ...]:
+    """Which columns does a file of this kind still need? One of each row would do."""
+    found = set(matched)
+    return tuple(either for either in NEEDED[kind][1] if not found & set(either))
+
+
+def mistaken_for(kind: str, headings: Collection[str]) -> str | None:
+    """Which other kind of file are these the headings of, where they don't do for this one?
+
+    Checked by: tests/data/files/test_preview.py
+    """
+    if not lacking(kind, match_headings(headings, HEADINGS_OF[kind])):
+        return None
+    for other in NEEDED:
+        found = match_headings(headings, HEADINGS_OF[other])
+        if not lacking(other, found) and (other not in SHOWN_BY or set(SHOWN_BY[other]) & set(found)):
+            return other
+    return None

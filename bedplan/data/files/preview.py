@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 from bedplan.data.files.columns import is_identity
-from bedplan.data.files.headings import HEADINGS_OF
+from bedplan.data.files.headings import HEADINGS_OF, NEEDED, lacking, mistaken_for
 from bedplan.data.files.reading import LINE, SEPARATORS, as_utf8, read_table, split_cells
 from bedplan.data.files.source import FileLike, SourceFile, open_source
+from bedplan.data.files.wide import one_row_of_headings, read_wide
+from bedplan.data.files.workbook import parquet_headings, sheets_as_text
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 
 if TYPE_CHECKING:
@@ -25,12 +27,17 @@ class ColumnPreview:
     """``headings``: every heading but those of identity columns. ``matched``: our name → heading as written.
 
     ``samples``: our name → the first three values under its heading. ``asked``: our names to ask a person about.
+    ``lacking``: columns without which it can't be read, one of each row. ``mistaken``: a sentence, where it is clearly a file
+    of another kind. ``hint``: what else to know before columns are chosen.
     """
 
     headings: tuple[str, ...]
     matched: Mapping[str, str]
     samples: Mapping[str, tuple[str, ...]]
     asked: tuple[str, ...] = MATCHED
+    lacking: tuple[tuple[str, ...], ...] = ()
+    mistaken: str = ""
+    hint: str = ""
 
 
 def preview_columns(
@@ -42,8 +49,8 @@ def preview_columns(
 ) -> ColumnPreview:
     """Which heading was taken for what, and what do three rows hold? ``columns`` as in :func:`read_records`.
 
-    Looks at the first lines only. A file without one known heading still lists its headings, so that the ward, start
-    and end columns can be chosen. ``kind``: ``"ward stays"``, ``"staffed beds"``, ``"refusals"``, ``"bed requests"``,
+    Looks at the first lines only. A file without one known heading still lists its headings, so that columns can be
+    chosen; one where what was chosen can't be is shown as without it. ``kind``: ``"ward stays"``, ``"staffed beds"``, ``"refusals"``, ``"bed requests"``,
     ``"cancellations"``, ``"census"``, ``"monthly return"`` or ``"ready dates"``.
 
     Raises:
@@ -57,16 +64,48 @@ def preview_columns(
     asked = MATCHED if kind == "ward stays" else tuple(HEADINGS_OF[kind])
     file = open_source(source, name)
     is_text = not file.begins_with(b"PK", b"PAR1")
-    top = SourceFile(file.name, _first_lines(as_utf8(file)[0].head)) if is_text else file
+    top = SourceFile(file.name, _first_lines(as_utf8(file).file.head)) if is_text else file
     try:
         table = read_table(top, HEADINGS_OF[kind], columns)
     except UnreadableRecords:
-        if not is_text:
-            raise
-        return ColumnPreview(_plain_headings(top.content), MappingProxyType({}), MappingProxyType({}), asked)
-    samples = {key: _sample(key, table.strings(key)[:SAMPLE_ROWS]) for key in table.headings}
-    headings = (*table.headings.values(), *table.unused)
-    return ColumnPreview(headings, MappingProxyType(dict(table.headings)), MappingProxyType(samples), asked)
+        if columns:  # that can't be: show how it is read without them
+            return preview_columns(source, name=name, kind=kind)
+        seen = ColumnPreview(_plain_headings(top), MappingProxyType({}), MappingProxyType({}), asked)
+    else:
+        samples = {key: _sample(key, table.strings(key)[:SAMPLE_ROWS]) for key in table.headings}
+        headings = (*table.headings.values(), *table.unused)
+        seen = ColumnPreview(headings, MappingProxyType(dict(table.headings)), MappingProxyType(samples), asked)
+    judged = _judged(seen, file.name, kind, is_said=bool(columns))
+    return _as_census(judged, top, columns) if kind == "census" and judged.lacking and not judged.mistaken else judged
+
+
+def _judged(seen: ColumnPreview, name: str, kind: str, *, is_said: bool) -> ColumnPreview:
+    """Say which columns are lacking, and whether the headings are those of another kind of file; not once a person chose."""
+    other = None if is_said else mistaken_for(kind, seen.headings)
+    told = (
+        f"{name} looks like {NEEDED[other][0]}, not like {NEEDED[kind][0]}: choose another file here." if other else ""
+    )
+    return replace(seen, lacking=lacking(kind, seen.matched), mistaken=told)
+
+
+def _as_census(seen: ColumnPreview, source: SourceFile, columns: Mapping[str, str] | None) -> ColumnPreview:
+    """Look whether a table has a column for each ward: it has only its dates to be asked about, where all hold counts."""
+    try:
+        wide = read_wide(source, HEADINGS_OF["census"], columns)
+    except UnreadableRecords:
+        wide = None
+    if wide is None:
+        return replace(seen, hint="A table with a column for each ward needs its date only.")
+    counts: dict[str, bool] = {}
+    for ward, cell in zip(wide.strings("ward"), wide.strings("occupied"), strict=True):
+        counts[ward] = counts.get(ward, False) or any(sign.isdigit() for sign in cell)
+    told = f"Read as a table with a column for each ward: {', '.join(counts)}."
+    if not all(counts.values()):
+        told = f"{told} If it has a row for each ward, name the columns of wards and patients."
+        return replace(seen, lacking=(), hint=told)
+    samples = {key: _sample(key, wide.strings(key)[:SAMPLE_ROWS]) for key in wide.headings}
+    headings = seen.headings if one_row_of_headings(source) is None else tuple(wide.headings.values())
+    return ColumnPreview(headings, wide.headings, samples, ("date", "time"), hint=told)
 
 
 def _sample(key: str, values: list[str]) -> tuple[str, ...]:
@@ -84,10 +123,21 @@ def _first_lines(text: bytes) -> bytes:
     return text
 
 
-def _plain_headings(text: bytes) -> tuple[str, ...]:
-    """Return the cells of the first line that has two or more, under the separator that gives most."""
-    for line in text.decode("utf-8", errors="replace").splitlines():
-        cells = max((split_cells(line, separator) for separator in SEPARATORS), key=len)
-        if len(cells) > 1:
-            return tuple(cell for cell in cells if cell and not is_identity(cell))
+def _plain_headings(source: SourceFile) -> tuple[str, ...]:
+    """Return the first row with two cells or more that has another such row under it; no headings of identity columns."""
+    for rows in _plain_rows(source):
+        several = [row for row in rows[:LINES_LOOKED_AT] if sum(map(bool, row)) > 1]
+        if len(several) > 1:
+            return tuple(dict.fromkeys(cell for cell in several[0] if cell and not is_identity(cell)))
     return ()
+
+
+def _plain_rows(source: SourceFile) -> list[list[tuple[str, ...]]]:
+    """Return the cells of each sheet, or of a text under the separator that gives most."""
+    if source.begins_with(b"PK"):
+        return sheets_as_text(source)
+    if source.begins_with(b"PAR1"):
+        return [[parquet_headings(source)] * 2]
+    lines = source.content.decode("utf-8", errors="replace").splitlines()
+    tables = [[split_cells(line, separator) for line in lines] for separator in SEPARATORS]
+    return [max(tables, key=lambda rows: max(map(len, rows), default=0))]

@@ -90,9 +90,9 @@ def text_table(
         UnreadableRecords: no known heading, or no row under them.
     """
     if not layout.found:
-        raise UnreadableRecords(
-            [f"{name} has no line of headings: its first row should name the columns, such as {', '.join(asked[:5])}."]
-        )
+        names = ", ".join(asked[:5])
+        told = f"{name} has no line of headings that is understood: its first row should name the columns, such as {names}."
+        raise UnreadableRecords([told])
     table, misfits, lines, told = parse()
     if all(column.null_count for column in table.columns):
         table = table.filter(functools.reduce(pc.or_, [pc.is_valid(column) for column in table.columns]))

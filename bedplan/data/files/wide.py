@@ -32,7 +32,8 @@ def read_wide(
 ) -> TextTable | None:
     """What does a table with columns for each ward say? The same as a long one, a row for each date and ward.
 
-    Two rows of headings, wards above and what is counted below, are read as one. None where it is no such table.
+    Two rows of headings, wards above and what is counted below, are read as one. None where it is no such table: where
+    a time stands in two rows or more, each is of a ward, whatever the headings.
 
     Checked by: tests/data/beside/test_census.py
     """
@@ -44,6 +45,9 @@ def read_wide(
     first = read_table(source, days, {key: heading for key, heading in (chosen or {}).items() if key in days})
     wards = [heading for heading in first.unused if plain(heading)]
     text = read_table(source, {}, first.headings | {f"ward {heading}": heading for heading in wards})
+    moments = set(zip(text.strings("date"), text.strings("time"), strict=True))
+    if 2 * len(moments) <= len(set(zip(*(text.strings(key) for key in text.headings), strict=True))):
+        return None
     groups = _groups(wards)
     columns: dict[str, list[str]] = {key: [] for key in ("date", "time", "ward", *ENDINGS)}
     for ward, headings in groups.items():
@@ -98,7 +102,7 @@ def _rows_of(source: SourceFile) -> list[Rows]:
         return sheets_as_text(source)
     if source.begins_with(b"PAR1"):
         return []
-    lines = as_utf8(source)[0].content.decode("utf-8", errors="replace").splitlines()
+    lines = as_utf8(source).file.content.decode("utf-8", errors="replace").splitlines()
     top = lines[:MOST_TITLE_LINES]
     separator = max(SEPARATORS, key=lambda sign: sum(line.count(sign) for line in top))
     return [[split_cells(line, separator) for line in lines]]

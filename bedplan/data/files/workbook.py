@@ -164,6 +164,18 @@ def read_parquet(
         raise UnreadableRecords([f"{source.name} is a damaged Parquet file: write it again and retry."]) from problem
 
 
+def parquet_headings(source: SourceFile) -> tuple[str, ...]:
+    """Which columns does this Parquet file have?
+
+    Raises:
+        UnreadableRecords: damaged.
+    """
+    try:
+        return tuple(parquet.read_schema(io.BytesIO(source.content)).names)
+    except (pa.ArrowException, OSError, ValueError, OverflowError, MemoryError) as problem:
+        raise UnreadableRecords([f"{source.name} is a damaged Parquet file: write it again and retry."]) from problem
+
+
 def _as_text(table: pa.Table) -> pa.Table:
     """Return every column as text; times lose their zone and fractions of a second."""
     table.validate(full=True)  # a damaged file may hold text that is none
