@@ -25,11 +25,14 @@ ANY_SEPARATOR = r"[,;\t|]"
 # Reasons for which a stay that took place gives no bed-days: nobody can tell how long it lasted.
 UNREAD = ("no start", "start unreadable", "end unreadable", "unlikely date", "mistyped year", "negative")
 
+# Stays that took place and give no bed-days either, though their rows hold some: these are told as recorded.
+DOUBTED = ("forgotten, aside", "whole years")
+
 
 def count_rows(
     table: StayTable, text: TextTable, until: int, notes: list[str]
 ) -> tuple[IntakeReport, Mapping[str, int]]:
-    """What became of every row? The report, and ward → its stays that could not be read.
+    """What became of every row? The report, and ward → its stays that could not be read, or whose dates are doubted.
 
     Lines with another number of cells are rows too. Stays that could not be read count with their ward's mean stay.
 
@@ -58,16 +61,22 @@ def count_rows(
         dropped_columns=table.dropped,
         notes=tuple(notes),
     )
-    return report, {ward: int(count) for ward, count in zip(table.wards, lost.sum(axis=0), strict=True) if count}
+    missing = lost.sum(axis=0) + sum(_by_ward(table, key) for key in DOUBTED)
+    return report, {ward: int(count) for ward, count in zip(table.wards, missing, strict=True) if count}
+
+
+def _by_ward(table: StayTable, key: str) -> NDArray[np.int64]:
+    """Return how many rows of each ward have this reason."""
+    ward = table.rows.ward[table.rows.reason == CODES[key]]
+    return np.bincount(ward[ward >= 0], minlength=len(table.wards))
 
 
 def _lost(table: StayTable, text: TextTable) -> NDArray[np.float64]:
     """Return how many stays of each ward could not be read, for each reason (reasons, wards)."""
-    rows, wards = table.rows, len(table.wards)
+    wards = len(table.wards)
     counts = np.zeros((len(RULES) + 1, wards))
     for key in UNREAD:
-        gone = rows.ward[rows.reason == CODES[key]]
-        counts[CODES[key]] += np.bincount(gone[gone >= 0], minlength=wards)
+        counts[CODES[key]] += _by_ward(table, key)
     if text.lines and wards:
         for ward, count in _named_in_lines(table.wards, text).items():
             counts[CODES["misfit"], ward] += count * text.misfits / len(text.lines)

@@ -24,6 +24,7 @@ from bedplan.data.cleaning.places import (
     set_places_aside,
 )
 from bedplan.data.cleaning.wardlinks import WardLink, propose_links
+from bedplan.data.cleaning.wholeyears import set_whole_years_aside
 from bedplan.data.cleaning.windows import TimesInHospital, chosen_window, find_period, seen_until, times_in_hospital
 from bedplan.data.files.blocks import order_of, side_by_side, taken
 from bedplan.data.files.columns import STAY_HEADINGS
@@ -58,7 +59,7 @@ class Records:
     complete and patients present are not; ``chosen_by``: by what the export was chosen, where that can be told;
     ``period_note`` says which patients it leaves out, if any. ``places``: every place in the file → what it was taken for.
     ``ward_names``: a ward's name in the file → the name the planner gave it. ``unread``: ward → stays set aside because
-    they could not be read.
+    they could not be read, or their dates could not be believed.
 
     Checked by: tests/data/cleaning/test_records.py
     """
@@ -199,6 +200,7 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
     if table.has_times:
         single_rows.mend_clock_change(rows)
     notes += set_mistyped_aside(rows, wards)
+    notes += set_whole_years_aside(rows, table.wards)
     single_rows.mend_negative(rows, single_rows.longest_stays(rows, wards))
     longest = single_rows.longest_stays(rows, wards)
     if table.has_times and not table.knows_patients:

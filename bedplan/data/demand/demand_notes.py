@@ -5,9 +5,10 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from bedplan.data.ahead.arrivals import FEWEST_STAYS, Arrivals, arrivals_change, is_booked
+from bedplan.data.demand.doubted import beds_doubted
 from bedplan.data.wards.silence import silence_notes
 from bedplan.data.wards.stays import stay_change
-from bedplan.wording import few, percent
+from bedplan.wording import beds_on_average, few, percent
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -17,6 +18,7 @@ if TYPE_CHECKING:
     from bedplan.data.wards.survival import StayCurve
 
 MUCH_LOST = 0.01  # of a ward's stays, and so of its bed-days
+LEAST_BEDS = 0.05  # of doubted stays: less reads as 0.0
 MUCH_BOOKED = 0.1  # share of admissions from which booked patients are mentioned
 ADMISSIONS_NOTE = (
     "Admissions are not arrivals: the records hold patients who got a bed here. Patients who were turned away, waited "
@@ -49,14 +51,17 @@ def demand_notes(
 
 
 def _lost_notes(records: Records, ward: str) -> list[str]:
-    """Say how many of the ward's stays could not be read, where that matters."""
+    """Say how many of the ward's stays could not be read, and the beds of those not believed, where that matters."""
     lost = records.unread.get(ward, 0)
     share = lost / (lost + len(records.of_ward(ward)))
-    if share <= MUCH_LOST:
-        return []
-    return [
-        f"About {percent(share)} of this ward's stays could not be read, so its demand is at least that much too low."
-    ]
+    notes, more = [], beds_doubted(records).get(ward, 0.0)
+    if share > MUCH_LOST:
+        lost = f"About {percent(share)} of this ward's stays could not be read or believed"
+        notes.append(f"{lost}, so its demand is at least that much too low.")
+    if more >= LEAST_BEDS:
+        doubted = "Stays set aside because their end seems forgotten, or a year mistyped, are not in this"
+        notes.append(f"{doubted}: if their dates are right, {beds_on_average(more)} more are wanted.")
+    return notes
 
 
 def _arrival_notes(records: Records, arrivals: Arrivals) -> list[str]:

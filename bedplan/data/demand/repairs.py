@@ -1,10 +1,11 @@
-"""How far the repaired rows carry the answer: each ward's beds wanted with them and without."""
+"""How far the repaired rows, and stays whose dates are doubted, carry the answer: beds wanted with them and without."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+from bedplan.data.demand.doubted import beds_doubted
 from bedplan.data.demand.estimating import estimate_demand
 from bedplan.errors import BedplanError
 
@@ -14,23 +15,31 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class RepairEffect:
-    """One ward's beds wanted on average, with repaired rows and without; None where too little is left without."""
+    """One ward's beds wanted on average, with repaired rows and without; None where too little is left without.
+
+    ``if_doubted_are_true``: what it would be if the stays set aside as forgotten or mistyped lasted as long as their
+    rows say.
+    """
 
     ward: str
     beds_wanted: float
     without_repairs: float | None
+    if_doubted_are_true: float
 
 
 def what_repairs_change(records: Records) -> tuple[RepairEffect, ...]:
-    """What would each ward want if no row had been repaired? A row a ward; none where no row was repaired.
+    """What would each ward want if no row had been repaired, and if no stay's dates had been doubted? A row a ward.
+
+    None where no row was repaired and none is doubted.
 
     Checked by: tests/data/demand/test_repairs.py
     """
-    if not records.report.repaired:
+    doubted = beds_doubted(records)
+    if not records.report.repaired and not doubted:
         return ()
     bare = records.without_repairs()
     return tuple(
-        RepairEffect(ward, wanted, _beds_wanted(bare, ward))
+        RepairEffect(ward, wanted, _beds_wanted(bare, ward), wanted + doubted.get(ward, 0.0))
         for ward in records.wards
         if (wanted := _beds_wanted(records, ward)) is not None
     )

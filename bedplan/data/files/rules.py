@@ -15,6 +15,7 @@ RULES: dict[str, Rule] = {
     "end unreadable": Rule(SET_ASIDE, "The end can't be read as a date"),
     "unlikely date": Rule(SET_ASIDE, "The start lies in the future, or a date before 1990"),
     "mistyped year": Rule(SET_ASIDE, "Dated far from every other stay: a mistyped year"),
+    "whole years": Rule(SET_ASIDE, "Usual on its ward but for whole years too long: a mistyped year"),
     "test patient": Rule(SET_ASIDE, "A test patient, or an age no person reaches"),
     "negative": Rule(SET_ASIDE, "The stay ends before it starts"),
     "duplicate": Rule(SET_ASIDE, "The same stay is in the file twice"),

@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
-from bedplan.data import read_records, what_repairs_change
+import pandas as pd
+import pytest
+
+from bedplan.data import estimate_demand, read_records, what_repairs_change
 
 HEAD = b"patient_key,ward,start,end\n"
 
@@ -31,3 +34,17 @@ def test_a_repair_shows_where_it_acts() -> None:
     assert records.report.repaired >= 1
     assert effect["A"].without_repairs != effect["A"].beds_wanted
     assert effect["B"].without_repairs == effect["B"].beds_wanted
+
+
+def test_a_forgotten_end_is_doubted_not_hidden() -> None:
+    """A patient in since January of a year in which nobody stays a week: aside, and one bed more if it is true."""
+    forgotten = b"P900,A,2024-01-02 10:00,\n"
+    clean, records = (read_records(HEAD + rows("A", 0) + more, name="a.csv") for more in (b"", forgotten))
+    (effect,) = what_repairs_change(records)
+    days = (records.window[1] - pd.Timestamp("2024-01-02 10:00")) / pd.Timedelta(days=1)
+
+    assert records.unread == {"A": 1}
+    assert len(records.set_aside) == records.report.set_aside == 1
+    assert effect.beds_wanted == estimate_demand(clean, "A").beds_wanted
+    assert effect.if_doubted_are_true == pytest.approx(effect.beds_wanted + days / records.days)
+    assert any("their end seems forgotten" in note for note in estimate_demand(records, "A").notes)
