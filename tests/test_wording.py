@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+import datetime as dt
 import itertools
 
 import pytest
 
 from bedplan import wording
+
+HARD_SPACE = "\u00a0"
 
 
 @pytest.mark.parametrize(
@@ -24,15 +27,18 @@ from bedplan import wording
     ],
 )
 def test_one_in(share: float, words: str) -> None:
-    """A share is said as people say it."""
-    assert wording.one_in(share) == words
+    """A share is said as people say it, and its three words never part at the end of a line."""
+    said = wording.one_in(share)
+
+    assert said.replace(HARD_SPACE, " ") == words
+    assert " in " not in said
 
 
 def test_one_in_stays_near_the_share() -> None:
     """The spoken share is within an eighth of the figure behind it, from 0.1 % to 95 %."""
     for step in range(1, 951):
         share = step / 1000
-        top, bottom = wording.one_in(share).replace(",", "").split(" in ")
+        top, bottom = wording.one_in(share).replace(",", "").split(f"{HARD_SPACE}in{HARD_SPACE}")
 
         assert int(top) / int(bottom) == pytest.approx(share, rel=0.125)
 
@@ -50,14 +56,30 @@ def test_percent_keeps_a_small_share_visible() -> None:
     "verb", [*(words[1] for words in wording.WHEN_FULL.values()), wording.OVER_FULL[1], wording.waits_over(12)[1]]
 )
 @pytest.mark.parametrize("needed", [1, 134, None])
-def test_answer_has_at_most_30_words(name: str, verb: str, needed: int | None) -> None:
+@pytest.mark.parametrize("today", [1, None])
+def test_answer_has_at_most_30_words(name: str, verb: str, needed: int | None, today: int | None) -> None:
     """The first sentence on the page is at most 30 words, whatever the ward and the answer."""
     for within, month, share in itertools.product(
         ("year", "every_month"), (0, 8, None), (0.0, 0.0004, 0.05, 0.4, 0.97, 1.0)
     ):
-        said = wording.answer_sentence(name, (1, 100, needed), (0.05, verb, within), (month, share))
+        said = wording.answer_sentence(name, (today, 100, needed), (0.05, verb, within), (month, share))
 
         assert len(said.split()) <= 30, said
+
+
+def test_beds_that_nobody_stated_are_not_claimed() -> None:
+    """Where today's beds are not known, the answer says so, and says nothing about today."""
+    said = wording.answer_sentence("Kestrel", (None, 29, 34), (0.05, "finding it full", "every_month"), (0, 0.3))
+
+    assert said.startswith("Kestrel's staffed beds today are not known; the average formula says 29. ")
+    assert "takes 34." in said
+    assert "January" not in said
+
+
+def test_days_and_months_in_words() -> None:
+    """A day is written without a leading nought; a share keeps its month beside it."""
+    assert wording.date(dt.date(2022, 4, 1)) == "1 April 2022"
+    assert wording.in_month(0, 0.57) == "Jan\u00a057\u00a0%"
 
 
 def test_waiting_wards_are_never_said_to_turn_away() -> None:
@@ -84,7 +106,7 @@ def test_names_cannot_format_the_page() -> None:
 )
 def test_patients_a_year_are_rounded_for_reading(patients: float, words: str) -> None:
     """An expected number of patients is not given more digits than it has."""
-    assert wording.patients_per_year(patients) == words
+    assert wording.patients_per_year(patients).replace(HARD_SPACE, " ") == words
 
 
 def test_no_promise_is_made() -> None:

@@ -27,7 +27,9 @@ def _axis(title: str) -> dict[str, object]:
     return {
         "title": title,
         "scale": alt.Scale(domain=[0, 1], nice=False),
-        "axis": alt.Axis(labelExpr=PERCENT, values=[0, 0.2, 0.4, 0.6, 0.8, 1], grid=True, gridOpacity=0.3),
+        "axis": alt.Axis(
+            labelExpr=PERCENT, values=[0, 0.2, 0.4, 0.6, 0.8, 1], labelFlush=False, grid=True, gridOpacity=0.3
+        ),
     }
 
 

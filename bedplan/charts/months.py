@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 
 
 MONTH_COLOURS = {"today": "#D55E00", "by the limit": "#0072B2", "limit": GREY}
+MONTH_DASHES = {"today": [6, 4], "by the limit": [1, 0], "limit": [1, 0]}
 CLOSEST_NAMES = 0.1  # of the picture's height: two names nearer than that would touch
 
 
@@ -40,7 +41,7 @@ def _months() -> Spec:
         x=month,
         y=share,
         color=colour,
-        strokeDash=alt.StrokeDash("which:N", scale=scale_of({"today": [6, 4], "by the limit": [1, 0]}), legend=None),
+        strokeDash=alt.StrokeDash("which:N", scale=scale_of(MONTH_DASHES), legend=None),
     )
     point = data.mark_point(filled=True, size=50, opacity=1).encode(
         x=month,

@@ -97,6 +97,11 @@ class WardCase:
         said = wording.patients_per_year(self.count_a_year(beds))
         return f"{said} days" if isinstance(self.rule, OverfullLimit) else said
 
+    @property
+    def beds_are_known(self) -> bool:
+        """Did the records, a file of beds or the planner say how many beds are staffed today?"""
+        return wording.BEDS_UNKNOWN not in self.ward.notes
+
     def sentence(self) -> str:
         """Say the answer in at most 30 words."""
         months = self.months_at(self.ward.beds)
@@ -105,7 +110,7 @@ class WardCase:
         needed = None if self.decision is None else self.decision.beds
         return wording.answer_sentence(
             self.ward.name,
-            (self.ward.beds, self.ward.average_formula_beds, needed),
+            (self.ward.beds if self.beds_are_known else None, self.ward.average_formula_beds, needed),
             (self.rule.most, self.words[1], self.within),
             (None if alike else worst, float(months[worst])),
         )
@@ -134,13 +139,13 @@ class WardCase:
         months, share = self.months_at(beds), self.share_at(beds)
         worst, best = int(np.argmax(months)), int(np.argmin(months))
         return {
-            "": mark.capitalize(),
+            "": mark.capitalize() if mark != "today" or self.beds_are_known else "Today, assumed",
             "Staffed beds": str(beds),
             "A year": self.a_year(beds),
             "As a share": wording.percent(share),
             "In words": wording.one_in(share),
-            "Highest month": f"{wording.MONTHS_SHORT[worst]} {wording.percent(float(months[worst]))}",
-            "Lowest month": f"{wording.MONTHS_SHORT[best]} {wording.percent(float(months[best]))}",
+            "Highest month": wording.in_month(worst, float(months[worst])),
+            "Lowest month": wording.in_month(best, float(months[best])),
             "Occupancy that results": wording.percent(self.curve.at(beds).occupancy, 0),
         }
 

@@ -26,8 +26,8 @@ _STYLE = """
 html { print-color-adjust: exact; -webkit-print-color-adjust: exact }
 body { font: 11pt/1.45 "Liberation Sans", Arial, sans-serif; color: #0f1419; max-width: 180mm; margin: 8mm auto; padding: 0 4mm }
 h1 { font-size: 20pt; margin: 0 0 2mm } h2 { font-size: 14pt; margin: 8mm 0 2mm; break-after: avoid } h3 { font-size: 11.5pt; break-after: avoid } .lead { break-after: avoid }
-.answer { font-size: 15pt; line-height: 1.35; margin: 3mm 0 }
-.box { border: 1.5pt solid #0f1419; padding: 3mm 4mm; margin: 3mm 0; break-inside: avoid } .box p { margin: 1mm 0 }
+.answer { font-size: 12pt; margin: 3mm 0 }
+.box { border: 1.5pt solid #0f1419; padding: 3mm 4mm; margin: 3mm 0; break-inside: avoid } .box p { margin: 1mm 0 } .ask { font-size: 14pt; line-height: 1.3; font-weight: bold }
 table { border-collapse: collapse; width: 100%; font-variant-numeric: tabular-nums; font-size: 9.5pt; margin: 2mm 0 }
 th, td { text-align: left; padding: 1.2mm 2mm; border-bottom: .5pt solid #b8bec4; vertical-align: top; overflow-wrap: break-word }
 td:first-child, th:first-child { min-width: 24mm } .wide td:first-child { min-width: 42mm } .wide td { overflow-wrap: anywhere }
@@ -51,7 +51,7 @@ def as_html(justification: Justification) -> bytes:
     esc = html.escape
     parts = [
         f"<h1>{esc(justification.title)}</h1>",
-        f'<div class="box" id="decision">{_paragraphs(justification.decision_lines())}</div>',
+        f'<div class="box" id="decision">{_decisions(justification)}</div>',
         *(_ward(case, number) for number, case in enumerate(justification.cases)),
         _source(justification),
         "<h2>Cautions</h2>",
@@ -135,6 +135,12 @@ def _source(justification: Justification) -> str:
     table = _table(("What was done, and why", "Rows", "Bed-days"), rows) if rows else ""
     checks = _table(("Does it add up?", "Figures", "Verdict"), source.checks, WIDE)
     return f"<h2>Where the data came from</h2>{_paragraphs(source.sentences())}{table}{checks}{withheld}"
+
+
+def _decisions(justification: Justification) -> str:
+    return "".join(
+        f'<p class="ask">{html.escape(ask)}</p><p>{html.escape(check)}</p>' for ask, check in justification.decisions()
+    )
 
 
 def _paragraphs(sentences: Iterable[str]) -> str:

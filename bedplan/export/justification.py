@@ -56,7 +56,7 @@ class Source:
         return cls(
             name=records.name,
             fingerprint=records.fingerprint,
-            window=f"{start:%d %B %Y} to {end:%d %B %Y}",
+            window=f"{wording.date(start)} to {wording.date(end)}",
             rows_in=report.rows_in,
             used=report.used,
             repaired=report.repaired,
@@ -114,27 +114,30 @@ class Justification:
         names = ", ".join(case.ward.name for case in self.cases)
         return f"Staffed beds: {names}" if len(self.cases) <= 3 else f"Staffed beds for {len(self.cases)} wards"
 
+    def decisions(self) -> tuple[tuple[str, str], ...]:
+        """Return (what is asked for, what came of its check on last year) for each ward."""
+        return tuple((self._ask(case), f"{case.ward.name}, check on last year: {case.checked}") for case in self.cases)
+
     def decision_lines(self) -> tuple[str, ...]:
-        """Return the decision box: what is asked for each ward, and what came of its check on last year."""
-        return tuple(
-            line
-            for case in self.cases
-            for line in (self._ask(case), f"{case.ward.name}, check on last year: {case.checked}")
-        )
+        """Return the decision box line by line."""
+        return tuple(line for decision in self.decisions() for line in decision)
 
     @staticmethod
     def _ask(case: WardCase) -> str:
         limit = wording.limit_text(case.rule.most, case.words[0], case.within)
-        today = case.a_year(case.ward.beds)
+        beds, known = case.ward.beds, case.beds_are_known
+        today = case.a_year(beds)
         if case.decision is None:
+            now = f"today's {beds}" if known else f"an assumed {beds}"
             return (
                 f"{case.ward.name}: no bed count looked at keeps {limit}. "
-                f"{case.words[2]}: with today's {case.ward.beds} staffed beds {today} a year."
+                f"{case.words[2]}: with {now} staffed beds {today} a year."
             )
-        then = case.a_year(case.decision.beds)
+        now = f"today {beds}" if known else f"today not known, {beds} assumed"
+        instead = f" instead of {today}" if known else ""
         return (
-            f"{case.ward.name}: approve {case.decision.beds} staffed beds (today {case.ward.beds}) to keep {limit}. "
-            f"{case.words[2]}: {then} a year instead of {today}."
+            f"{case.ward.name}: approve {case.decision.beds} staffed beds ({now}) to keep {limit}. "
+            f"{case.words[2]}: {case.a_year(case.decision.beds)} a year{instead}."
         )
 
     def reproducibility(self) -> tuple[tuple[str, str], ...]:
@@ -146,7 +149,8 @@ class Justification:
             *self.source.others,
         ]
         for case in self.cases:
-            stated = (("Staffed beds today", str(case.ward.beds)), *case.settings)
+            beds = f"{case.ward.beds}{'' if case.beds_are_known else ', assumed'}"
+            stated = (("Staffed beds today", beds), *case.settings)
             settings = "; ".join(f"{name}: {value}" for name, value in stated)
             rows.append((f"Settings, {case.ward.name}", settings))
             rows.append((f"Limit, {case.ward.name}", wording.limit_text(case.rule.most, case.words[0], case.within)))

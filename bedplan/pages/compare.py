@@ -27,7 +27,7 @@ def row(case: WardCase) -> dict[str, object]:
         "Next bed spares, a year": spared_by_next_bed(case.curve, case.ward.beds),
         "Find it full, a year": patients_per_year(case.curve, case.ward.beds),
         "Share": 100 * today.turn_away_probability,
-        "Worst month": f"{wording.MONTHS_SHORT[today.worst_month]} {wording.percent(float(today.by_month.max()))}",
+        "Worst month": wording.in_month(today.worst_month, float(today.by_month.max())),
         "Occupancy": 100 * today.occupancy,
         "Share at each bed count": controls.small_curve(case),
         "When full, patients": "go elsewhere" if case.ward.when_full == "leaves" else "wait",
@@ -70,6 +70,7 @@ if cases:
     st.header(
         f"The next bed spares most on {wording.plain(str(first['Ward']))}: {spared} patients a year.", anchor=False
     )
+    controls.warn_of_beds(cases)
     within = controls.WITHIN[st.session_state.get("within", "every_month")]
     watched = controls.MEASURES[st.session_state.get("measure", "full")][0]
     st.caption(

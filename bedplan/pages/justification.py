@@ -29,6 +29,21 @@ def checked(case: WardCase) -> WardCase:
     return case if name in st.session_state.get("typed", {}) else with_check(case, lambda: loaded.checked(name))
 
 
+def show_decisions(paper: Justification) -> None:
+    """Show what is asked for, largest where it is for one ward, and what came of the check on last year."""
+    decisions = [tuple(map(wording.plain, decision)) for decision in paper.decisions()]
+    if len(decisions) == 1:
+        (asked, came), *_ = decisions
+        st.header(asked, anchor=False)
+        st.markdown(came)
+        return
+    st.header(wording.plain(paper.title), anchor=False)
+    with st.container(border=True):
+        for asked, came in decisions:
+            st.markdown(f"**{asked}**")
+            st.markdown(came)
+
+
 controls.show_origin()
 names = controls.ward_names()
 chosen = controls.in_hand(names)
@@ -42,10 +57,8 @@ try:
         controls.source(wards),
         dt.datetime.now().astimezone().date(),
     )
-    st.header(wording.plain(paper.title), anchor=False)
-    with st.container(border=True):
-        for line in paper.decision_lines():
-            st.markdown(wording.plain(line))
+    show_decisions(paper)
+    controls.warn_of_beds(cases)
     mark = paper.fingerprint()
     take = st.container(horizontal=True)
     take.download_button(

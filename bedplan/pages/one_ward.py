@@ -144,6 +144,8 @@ def notes(case: WardCase, values: dict[str, Any]) -> None:
 def answer(case: WardCase) -> None:
     """Draw the sentence, the picture, the table and the months."""
     st.header(wording.plain(case.sentence()), anchor=False)
+    if not case.beds_are_known:
+        st.info(f"{wording.BEDS_UNKNOWN} Type them on the left.")
     side_by_side = st.container(horizontal=True, gap="medium")
     with side_by_side.container(width=520):
         st.markdown(f"**{case.words[2]}, over the year**")
@@ -160,7 +162,9 @@ def answer(case: WardCase) -> None:
             st.caption(wording.plain(wording.waits_checked(waited.name, *figures)))
     st.markdown(f"**{case.words[2]}, month by month**")
     months = charts.months_data(case.months(), case.limit())
-    st.vega_lite_chart(charts.live(charts.MONTHS, months), theme=None, width="stretch", alt="Share month by month")
+    st.vega_lite_chart(
+        charts.live(charts.MONTHS, months), theme=None, width="stretch", alt=f"{case.words[2]}, month by month"
+    )
 
 
 def simulation(case: WardCase) -> None:

@@ -73,6 +73,14 @@ def test_curve_table_is_the_curve(justification: Justification, page: str) -> No
     assert f"<td>{rows[0][0]}</td><td>{wording.percent(rows[0][1])}</td>" in page
 
 
+def test_what_is_asked_for_comes_first_and_largest(justification: Justification, page: str) -> None:
+    """The box begins with the ask of the first ward, in a class of its own, before anything else but the title."""
+    ask, check = justification.decisions()[0]
+
+    assert f'id="decision"><p class="ask">{ask}</p><p>{check}</p>' in page.replace("&#x27;", "'")
+    assert page.index('id="decision"') < page.index("<h2>")
+
+
 def test_withheld_counts_are_explained(page: str) -> None:
     """A withheld count shows as a star, and the star is explained."""
     assert "<td>*</td>" in page

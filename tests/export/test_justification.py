@@ -28,8 +28,22 @@ def test_decision_says_beds_limit_and_that_last_year_is_unchecked(justification:
     first, last, *_ = justification.decision_lines()
 
     assert f"approve {justification.cases[0].decision.beds} staffed beds (today 20)" in first
-    assert "every month within 5.0\u00a0% (1 in 20) turned away" in first
+    assert "every month within 5.0\u00a0% (1\u00a0in\u00a020) turned away" in first
     assert last == f"Curlew, check on last year: {wording.NOT_YET_CHECKED}"
+
+
+def test_beds_that_nobody_stated_are_called_assumed(justification: Justification) -> None:
+    """Where today's beds are not known, no line of the document claims them, nor what is spared against them."""
+    case = justification.cases[0]
+    unknown = replace(case, ward=replace(case.ward, notes=(wording.BEDS_UNKNOWN,)))
+    paper = replace(justification, cases=(unknown,))
+
+    assert "(today not known, 20 assumed)" in paper.decision_lines()[0]
+    assert "instead of" not in paper.decision_lines()[0]
+    assert dict(paper.reproducibility())["Settings, Curlew"].startswith("Staffed beds today: 20, assumed;")
+    assert unknown.sentence().startswith("Curlew's staffed beds today are not known;")
+    assert unknown.table()[0][""] == "Today, assumed"
+    assert wording.BEDS_UNKNOWN in unknown.notes()
 
 
 def test_wards_that_wait_are_not_said_to_turn_away(justification: Justification) -> None:
@@ -88,7 +102,7 @@ def test_demo_source_balances(demo_data: Path) -> None:
 
     assert source.rows_in == source.used + source.repaired + source.set_aside
     assert source.fingerprint == hashlib.sha256((demo_data / "stays.csv").read_bytes()).hexdigest()
-    assert source.window == "01 April 2022 to 31 March 2025"
+    assert source.window == "1 April 2022 to 31 March 2025"
 
 
 def test_figures_that_add_up_are_in_the_document(demo_data: Path) -> None:

@@ -64,7 +64,7 @@ def test_justification_repeats_the_answer(open_app: Callable[..., AppTest]) -> N
     go(app, "justification")
     assert not app.error
     assert app.multiselect(key="justified").value == ["Heron"]
-    shown = [one.value for one in app.markdown]
+    shown = [one.value for one in (*app.header, *app.markdown)]
     assert said in shown
     needed = re.search(r"takes (\d+)", said).group(1)
     assert f"approve {needed} staffed beds" in " ".join(shown)

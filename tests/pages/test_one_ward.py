@@ -139,7 +139,7 @@ def test_what_patients_do_can_be_changed(open_app: Callable[..., AppTest]) -> No
     assert "turned away" not in sentence(app)
     go(app, "justification")
     assert_calm(app)
-    decision = next(one.value for one in app.markdown if "approve" in one.value)
+    decision = next(one.value for one in app.header if "approve" in one.value)
     assert "turned away" not in decision
 
     go(app, "one_ward").radio(key="full").set_value("leaves").run()
@@ -232,3 +232,22 @@ def test_spread_of_stay_is_explained(open_app: Callable[..., AppTest]) -> None:
     app.slider(key="spread").set_value(50).run()
     assert len(app.info) == 1
     assert "only the mean counts" in app.info[0].value
+
+
+def test_beds_that_nobody_stated_are_asked_for(open_app: Callable[..., AppTest], stays_csv: bytes) -> None:
+    """Records without a file of beds: every page that speaks of today's beds says they are not known, until typed."""
+    app = go(open_app(), "records")
+    app.file_uploader(key="stays_file").upload("stays.csv", stays_csv, "text/csv").run()
+    go(app, "one_ward")
+    ward, start = app.selectbox(key="ward").value, app.number_input(key="beds").value
+    assert sentence(app).startswith(f"{ward}'s staffed beds today are not known; ")
+    assert any("Type them on the left" in one.value for one in app.info)
+    for page in ("compare", "justification"):
+        assert any(ward in one.value and "are not in the records" in one.value for one in go(app, page).warning)
+
+    go(app, "one_ward").toggle(key="hidden").set_value(True).run()
+    assert "not known" in sentence(app)
+    app.number_input(key="beds").set_value(start + 3).run()
+    assert sentence(app).startswith(f"{ward} has {start + 3} staffed beds;")
+    assert not any("are not in the records" in one.value for one in go(app, "justification").warning)
+    assert not any(ward in one.value for one in go(app, "compare").warning)

@@ -362,6 +362,6 @@ def test_a_typed_ward_can_be_removed(app: AppTest) -> None:
 
     assert not app.exception
     assert app.selectbox(key="ward").options == ["East", "West"]
-    assert app.header[0].value.startswith("East has")
+    assert app.header[0].value.startswith("East's staffed beds")
     assert app.slider(key="demand").value == 15
     assert "My ward" not in go(app, "compare").dataframe[0].value["Ward"].tolist()
