@@ -6,7 +6,7 @@ import codecs
 import csv
 import re
 from dataclasses import replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 import pyarrow as pa
@@ -28,6 +28,7 @@ SEPARATORS = (",", ";", "\t", "|")
 CLEARLY_HEADINGS = 3  # known names in one line: no title holds so many
 FEW_VALUES = ("ward", "class", "method", "specialty", "destination", "age_band")
 LAST_ASCII = 127
+PARSED_BYTES = 4 * 2**20  # at once
 
 
 def read_table(
@@ -50,50 +51,60 @@ def read_table(
         return read_workbook(source, known, chosen)
     if source.begins_with(b"PAR1"):
         return read_parquet(source, known, chosen)
-    text, encoding = as_utf8(source)
-    layout = find_layout(text.head, known, chosen)
+    text = as_utf8(source)
+    layout, encoding = find_layout(text.file.head, known, chosen), text.encoding
     notes = [] if encoding == "UTF-8" else [f"The file was written in {encoding}; check that ward names look right."]
     return text_table(source.name, layout, lambda: _parse(text, layout, times), notes, list(known))
 
 
-def as_utf8(source: SourceFile) -> tuple[SourceFile, str]:
-    """Return the file as UTF-8 text, and its encoding; tried in the order UTF-8, UTF-16, Windows-1252."""
+class Text(NamedTuple):
+    """A file in UTF-8; how it was written; whether it holds any quotation mark: where none, every line is a row."""
+
+    file: SourceFile
+    encoding: str
+    quoted: bool
+
+
+def as_utf8(source: SourceFile) -> Text:
+    """Return the file as UTF-8 text; encodings are tried in the order UTF-8, UTF-16, Windows-1252."""
     head = source.head
     if head.startswith((codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE)):
-        return _decoded(source, "utf-16"), "UTF-16"
+        return _decoded(source, "utf-16")
     if head.startswith(codecs.BOM_UTF8):
         source = SourceFile(source.name, source.content[len(codecs.BOM_UTF8) :])
     head = head[:4096]
     if head.count(b"\0") > len(head) // 4:
         guess = "utf-16-le" if head[1::2].count(b"\0") > head[0::2].count(b"\0") else "utf-16-be"
-        return _decoded(source, guess), "UTF-16"
-    ends = each(lambda first: _lowest_and_highest(source.block(first)), range(0, source.size, BLOCK_BYTES))
-    if min(low for low, _ in ends) == 0:
+        return _decoded(source, guess)
+    looks = each(lambda first: _look(source.block(first)), range(0, source.size, BLOCK_BYTES))
+    quoted = any(quoted for _, _, quoted in looks)
+    if min(low for low, _, _ in looks) == 0:
         raise UnreadableRecords(
             [f"{source.name} is not a text table (it holds bytes no text has): export it as CSV or Excel (.xlsx)."]
         )
     try:
-        if max(high for _, high in ends) > LAST_ASCII:
+        if max(high for _, high, _ in looks) > LAST_ASCII:
             check = codecs.getincrementaldecoder("utf-8")()
             for block in source.blocks():
                 check.decode(block)
             check.decode(b"", final=True)
     except UnicodeDecodeError:
         text = source.content.decode("cp1252", errors="replace").encode()
-        return SourceFile(source.name, text), "Windows-1252"
-    return source, "UTF-8"
+        return Text(SourceFile(source.name, text), "Windows-1252", quoted)
+    return Text(source, "UTF-8", quoted)
 
 
-def _lowest_and_highest(block: bytes | memoryview) -> tuple[int, int]:
-    """Return the lowest and the highest byte."""
+def _look(block: bytes | memoryview) -> tuple[int, int, bool]:
+    """Return the lowest and the highest byte, and whether there is a quotation mark."""
     signs = np.frombuffer(block, dtype=np.uint8)
-    return int(signs.min()), int(signs.max())
+    return int(signs.min()), int(signs.max()), QUOTE in bytes(block)
 
 
-def _decoded(source: SourceFile, encoding: str) -> SourceFile:
+def _decoded(source: SourceFile, encoding: str) -> Text:
     """Return the text in UTF-8, or say that it is not text."""
     try:
-        return SourceFile(source.name, source.content.decode(encoding).encode())
+        text = source.content.decode(encoding).encode()
+        return Text(SourceFile(source.name, text), "UTF-16", QUOTE in text)
     except UnicodeError as problem:
         raise UnreadableRecords(
             [f"{source.name} looks like UTF-16 text but is damaged: export it again as CSV in UTF-8."]
@@ -130,9 +141,9 @@ def _type_of(key: str, times: Iterable[str]) -> pa.DataType:
     return pa.dictionary(pa.int32(), pa.string()) if key in FEW_VALUES else pa.string()
 
 
-def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
+def _parse(whole: Text, layout: Layout, times: Iterable[str]) -> Parsed:
     """Parse the lines under the headings, stray quotation marks undone, or say why they are no table."""
-    quoted = _is_quoted(text)
+    text, quoted = whole.file, whole.quoted
     try:
         try:
             parsed = _tried(text, layout, times, quoted=quoted)
@@ -147,7 +158,7 @@ def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
             mended = mend_quotes(body, layout.separator, len(layout.headings), layout.line + 2)
             if mended is not None:
                 body = SourceFile(text.name, mended.body)
-                found = _tried(body, replace(layout, rows_start=0), times, quoted=_is_quoted(body))
+                found = _tried(body, replace(layout, rows_start=0), times, quoted=QUOTE in mended.body)
                 lines = tuple(sorted((*found.lines, *mended.left_out), key=lambda one: one.line))
                 return Parsed(found.table, found.misfits + len(mended.left_out), lines, tuple(mended.notes))
         return parsed or _tried(text, layout, times, quoted=quoted)
@@ -159,11 +170,6 @@ def _parse(text: SourceFile, layout: Layout, times: Iterable[str]) -> Parsed:
         raise UnreadableRecords(
             [f"{text.name} can't be read as a table ({said}): export it again as CSV."]
         ) from problem
-
-
-def _is_quoted(text: SourceFile) -> bool:
-    """Does the text hold any quotation mark? Where it holds none, every line is a row."""
-    return any(QUOTE in bytes(block) for block in text.blocks())
 
 
 def _tried(text: SourceFile, layout: Layout, times: Iterable[str], *, quoted: bool) -> Parsed:
@@ -208,9 +214,10 @@ def _parsed(text: SourceFile, layout: Layout, times: Iterable[str], *, quoted: b
     wanted = {heading: unique[layout.headings.index(heading)] for heading in layout.found.values()}
     table = arrow_csv.read_csv(
         text.stream(layout.rows_start),
-        read_options=arrow_csv.ReadOptions(column_names=unique, block_size=BLOCK_BYTES),
+        read_options=arrow_csv.ReadOptions(column_names=unique, block_size=PARSED_BYTES),
         parse_options=arrow_csv.ParseOptions(
             delimiter=layout.separator,
+            quote_char=QUOTE.decode() if quoted else False,
             newlines_in_values=quoted,
             invalid_row_handler=count,
         ),

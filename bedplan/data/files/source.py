@@ -19,7 +19,7 @@ FileLike: TypeAlias = str | Path | bytes | BinaryIO
 
 LARGEST_FILE_BYTES = 4 * 2**30
 HEAD_BYTES = 256 * 1024
-BLOCK_BYTES = 4 * 2**20
+BLOCK_BYTES = 2**20
 # The first bytes of files that are often given a table's name by mistake.
 OTHER_KINDS = (
     (b"\x89PNG", "a picture (PNG)"),
