@@ -30,14 +30,13 @@ MONTHS, WEEKDAYS = 12, 7
 MOST_CHANGE = 2_000
 _MOST_IN_FORCE = 20.0
 _MIXED = {
-    "leaves": "each month is the mixture of the curve at each open bed count, corrected by following the patients in the "
-    "beds, who stay until their stay ends. Against simulations of stays from half a day to 200 days up to 1 in 20 too "
-    "low over the year, and up to 1 in 8 in a closure's own month where stays are spread widely; up to a third too high "
-    "there for stays all alike, and up to twice for booked patients alone.",
-    "waits": "each month is the mixture of the curve at each open bed count, as if the ward settled at once, and the time "
-    "that queues left over take to go. Against simulations up to a half too high over the year, up to twice "
-    "in a closure's own month.",
-    "stays anyway": "each month is the mixture of the curve at each open bed count.",
+    "leaves": "each month mixes the curve at each open bed count, and whoever is in a bed stays until the stay ends. "
+    "Against simulations up to 1 in 20 too low over the year, 1 in 8 in a closure's own month with stays spread widely; "
+    "up to a third too high there for stays all alike, twice for booked patients alone.",
+    "waits": "each month mixes the curve at each open bed count, as if the ward settled at once, and adds the time that "
+    "queues left over take to go. Against simulations up to a half too high over the year, twice in a closure's own "
+    "month.",
+    "stays anyway": "each month mixes the curve at each open bed count.",
 }
 _month_of_day = np.repeat(np.arange(MONTHS), MONTH_DAYS)
 _weekday_of_day = np.arange(DAYS) % WEEKDAYS

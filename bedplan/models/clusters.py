@@ -25,6 +25,7 @@ if TYPE_CHECKING:
 
 _PART_OF_EVEN_STAYS, _PART_OF_UNEVEN_STAYS = 0.7, 0.5
 _RARE = 0.01
+TOGETHER_NOTE = "Several of these together were not checked: run the simulation under the picture."
 _SMOOTH_NOTE = (
     "Arrivals smoother than chance: Hayward's approximation, which errs towards more beds. Where 1 in 100 or more are "
     "turned away the figure is up to a fifth too high from 15 beds on, on smaller wards or with even stays by half and "

@@ -132,6 +132,10 @@ def _held_by_hour(stay: LengthOfStay, leaving: Leaving) -> tuple[Array, Array]:
     freed = _hours_of_leaving(stay, leaving, horizon)
     whole, part = divmod(leaving.turnaround_hours, 1.0)
     if leaving.turnaround_hours > 0:
+        # who left in the hour of coming was in for a third of it on average
+        later = freed[:, 0] * (1.0 - 2.0 / (2.0 + min(leaving.turnaround_hours, 1.0)))
+        freed[:, 0] -= later
+        freed[:, 1] += later
         freed = np.hstack([np.zeros((HOURS_A_WEEK, int(whole) + 1)), freed])[:, : horizon + 1]
         freed = (1.0 - part) * freed[:, 1:] + part * freed[:, :-1]
     at_end = np.cumsum(freed, axis=1)

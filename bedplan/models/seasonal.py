@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from bedplan.models.bed_curve import BedCurve, bed_counts
-from bedplan.models.clusters import clustering_notes, loss_table, swing_when_full
+from bedplan.models.clusters import TOGETHER_NOTE, clustering_notes, loss_table, swing_when_full
 from bedplan.models.load_grid import load_grid
 from bedplan.models.rhythm_correction import rhythm_correction, season_correction
 from bedplan.models.uncertain_rate import possible_rates
@@ -37,22 +37,21 @@ _MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 
 _WIDEST_LEVELS = 5.0
 _METHOD = (
-    "With seasons: a chain of the ward's beds, hour by hour through the week and day by day through the year. Exact "
-    "for exponential stays; with others at most 2 % of the figure too low and 7 % too high in trials with usual weeks, "
-    "where 1 in 50 or more are turned away; below, up to a tenth too low. Where patients come on a few weekdays only, "
-    "up to a fifth too high."
+    "With seasons, hour by hour: in trials with usual weeks at most 2 % of the figure too low and 7 % too high where 1 in "
+    "50 or more are turned away, a tenth too low where fewer are. Where patients come on a few weekdays only, up to a "
+    "fifth too high."
 )
 _LARGE_LOAD = 1_500.0
 _LARGE = "Above 1,500 beds wanted few wards were checked: up to a tenth too low or too high."
 _MONTH_OFF = "A single month may be up to 6 % of its figure too low"
 _EVEN_MONTH_OFF = ", with stays as long and even as here up to a quarter: plan with more."
 _EVEN = (
-    "Even stays and a weekly rhythm: the figure may be up to a quarter too low, where stays of one, two or three days end "
-    "together up to a fifth too high. Plan with more, or run the simulation."
+    "Even stays and a weekly rhythm: the figure may be up to a quarter too low; where stays of one, two or three days end "
+    "together, up to a fifth too high. Plan with more, or run the simulation."
 )
 _SHARP = (
-    "Patients leave within a few hours of the day: where under 1 in 50 are turned away the figure may be up to a half too "
-    "low, where more are up to twice too high, on wards of hundreds of beds many times. Run the simulation."
+    "Patients leave within a few hours of the day: the figure may be up to a half too low where under 1 in 50 are turned "
+    "away, up to twice too high where more are, many times on wards of hundreds of beds. Run the simulation."
 )
 _SHORT_BOOKED = "Booked stays shorter than the others: the figure may be up to a half too low. Plan with more, or run the simulation."
 _BOOKED = (
@@ -63,7 +62,6 @@ _GROUPS_AND_BOOKED = (
     "Patients who come together beside a booked list: the figure may be up to a half too low. Plan with more, or run the "
     "simulation."
 )
-_TOGETHER = "Several of these together were not checked: run the simulation under the picture."
 _SHORTER, _RATHER_EVEN, _LONG_DAYS = 0.75, 0.7, 14.0
 _MOST_IN_AN_HOUR, _SHORT_DAYS, _SWING_OF_WEEK = 0.25, 0.25, 0.1
 
@@ -143,7 +141,7 @@ def _kinds_of_ward_notes(demand: Demand) -> list[str]:
         notes.append(_SHORT_BOOKED if any(mean < _SHORTER * longest for mean in means) else _BOOKED)
         if demand.clustering > 1.0:
             notes.append(_GROUPS_AND_BOOKED)
-    return [*notes, _TOGETHER] if len(notes) > 1 else notes
+    return [*notes, TOGETHER_NOTE] if len(notes) > 1 else notes
 
 
 def _notes(demand: Demand) -> tuple[str, ...]:

@@ -30,6 +30,7 @@ _LONGEST_QUEUE = 1e6
 _SETTLED, _MOST_TURNS = 1e-5, 60
 _FEW = 1e-3
 _SWING = 0.9
+_CELLS_AT_ONCE = 30_000
 
 
 def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -> Array:
@@ -55,10 +56,10 @@ class Pace(NamedTuple):
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class _Columns:
-    """What x says in each column, a bed count at one rate of arrival; ``number``: its place in the sheets.
+class Wards:
+    """What x says of a steady ward at each bed count, ascending; ``number``: its column in the sheets.
 
-    Sheets ``(points, columns)`` evenly in arsinh((x − c)·scale), scale = 1/√c: patients who wait × free beds, which
+    Sheets ``(points, wards)`` evenly in arsinh((x − c)·scale), scale = 1/√c: patients who wait × free beds, which
     hardly changes once a queue is long; the logarithm of the mean wait, in mean stays, of those who wait; and ln C
     without its power law near no patients (see ``_law``).
     """
@@ -73,20 +74,24 @@ class _Columns:
     log_stays: Array
     log_wait: Array
 
-    def only(self, which: NDArray[np.int64]) -> _Columns:
-        """Return some of the columns, or one several times; the sheets are shared."""
+    def only(self, which: NDArray[np.int64]) -> Wards:
+        """Return some of the wards; the sheets are shared."""
         some = (getattr(self, name)[which] for name in ("number", "beds", "scale", "first", "steps", "power"))
-        return _Columns(*some, self.product, self.log_stays, self.log_wait)
+        return Wards(*some, self.product, self.log_stays, self.log_wait)
+
+    def largest(self, many: int) -> Wards:
+        """Return the wards of the largest bed counts, so many of them."""
+        return self.only(np.arange(self.number.size - many, self.number.size))
 
     def place(self, present: Array) -> tuple[NDArray[np.int64], Array]:
-        """Return the cell below each x and the way to the next, for x ``(..., columns)``."""
+        """Return the cell below each x and the way to the next, for x ``(..., wards)``."""
         at = (np.arcsinh((present - self.beds) * self.scale) - self.first) * self.steps
         np.minimum(at, _POINTS - 1.001, out=at)
         point = at.astype(np.int64)
         return point * self.product.shape[1] + self.number, at - point
 
     def in_use(self, present: Array) -> tuple[Array, Array]:
-        """Return b(x) and its slope, for x ``(..., columns)``."""
+        """Return b(x) and its slope, for x ``(..., wards)``."""
         cell, way = self.place(present)
         flat, over = self.product.reshape(-1), present - self.beds
         low = flat.take(cell)
@@ -98,20 +103,18 @@ class _Columns:
         return in_use, np.clip((self.beds - in_use - grows) / np.maximum(root, 1e-9), 0.0, 1.0)
 
     def waits(self, present: Array) -> tuple[Array, Array]:
-        """Return C and the mean wait in mean stays of those who wait, for x ``(..., columns)``."""
+        """Return C and the mean wait in mean stays of those who wait, for x ``(..., wards)``."""
         cell, way = self.place(present)
         logs = _read(self.log_wait, cell, way) + _law(self.power, self.beds, present)
         return np.exp(np.minimum(logs, 0.0)), np.exp(_read(self.log_stays, cell, way))
 
     def queue_at(self, loads: Array) -> Array:
-        """Return the queue of a steady ward at loads ``(..., columns)``; where they aren't below the beds, none."""
-        _, ward, place = np.unique(self.number, return_index=True, return_inverse=True)
-        over = np.sinh(self.first[ward] + np.arange(_POINTS)[:, None] / self.steps[ward]) / self.scale[ward]
-        waiting = (over + np.sqrt(over**2 + 4.0 * self.product[:, self.number[ward]])) / 2.0
-        in_use = (self.beds[ward] + over - waiting).T
-        queue = [np.interp(load, in_use[one], waiting[:, one]) for load, one in zip(loads.T, place, strict=True)]
-        queue = np.stack(queue, axis=-1)
-        return np.where(loads < 0.999 * self.beds, np.maximum(queue, 0.0), 0.0)
+        """Return each steady ward's queue at loads ``(k,)``, ``(k, wards)``; where they aren't below the beds, none."""
+        over = np.sinh(self.first + np.arange(_POINTS)[:, None] / self.steps) / self.scale
+        waiting = (over + np.sqrt(over**2 + 4.0 * self.product[:, self.number])) / 2.0
+        in_use = self.beds + over - waiting
+        queue = np.stack([np.interp(loads, *both) for both in zip(in_use.T, waiting.T, strict=True)], axis=1)
+        return np.where(loads[:, None] < 0.999 * self.beds, np.maximum(queue, 0.0), 0.0)
 
 
 def _law(power: Array, beds: Array, present: Array) -> Array:
@@ -127,7 +130,7 @@ def _read(sheet: Array, cell: NDArray[np.int64], way: Array) -> Array:
     return low + way * (flat.take(cell + width) - low)
 
 
-def _columns(spread: Spread, counts: NDArray[np.int64]) -> _Columns:
+def steady_wards(spread: Spread, counts: NDArray[np.int64]) -> Wards:
     """Work out, at every bed count, how many patients a steady ward holds at each use, and turn it round."""
     beds = counts.astype(float)
     power = beds / spread.peakedness
@@ -155,7 +158,7 @@ def _columns(spread: Spread, counts: NDArray[np.int64]) -> _Columns:
     sheets[2] = np.where(some, sheets[2] - _law(power, beds, sheet), 0.0)
     sheets[2, 0] = sheets[2, 1]
     sheets[0] = np.where(some, np.maximum(sheet - sheets[0], 0.0) * (beds - sheets[0]), 0.0)
-    return _Columns(np.arange(beds.size), beds, 1.0 / np.sqrt(beds), first, 1.0 / step, power, *sheets)
+    return Wards(np.arange(beds.size), beds, 1.0 / np.sqrt(beds), first, 1.0 / step, power, *sheets)
 
 
 def _at_least_waiting(wanted: Array, beds: Array, share: float) -> Array:
@@ -166,7 +169,7 @@ def _at_least_waiting(wanted: Array, beds: Array, share: float) -> Array:
 
 
 def _comes_back(kept: Array, added: Array) -> Array:
-    """Return what repeats with the period and follows δ(k+1) = kept(k)·δ(k) + added(k), all ``(steps, columns)``.
+    """Return what repeats with the period and follows δ(k+1) = kept(k)·δ(k) + added(k), all ``(steps, wards)``.
 
     What is added, and what is left of one unit from the start, one column after the other in one long recursion.
     """
@@ -182,80 +185,77 @@ def _comes_back(kept: Array, added: Array) -> Array:
     return (sums + shares * start[:, None]).T
 
 
-def _settled(columns: _Columns, wanted: Array, share: float) -> Array:
+def _settled(wards: Wards, wanted: Array, share: float) -> Array:
     """Return x through a period, a year or a week, that comes back to itself; beds give up ``share`` of b in a step.
 
     All steps at once by Newton's method: b(x) bends one way only, so each turn comes nearer from the same side. Where
     even the busiest step keeps few waiting, nothing is carried.
     """
-    *light, usual = columns.queue_at(np.vstack([wanted, wanted.mean(axis=0)]))
+    *light, usual = wards.queue_at(np.append(wanted, wanted.mean()))
+    busiest, wanted = wanted.argmax(), wanted[:, None]
     present = wanted + np.array(light)
-    busiest = np.take_along_axis(present, wanted.argmax(axis=0)[None], axis=0)
-    keeps_few = columns.waits(busiest)[0][0] < _FEW
-    left = np.flatnonzero((wanted.max(axis=0) >= columns.beds) | ~keeps_few)
-    some, asked = columns.only(left), wanted[:, left]
-    present[:, left] = asked + np.maximum(_at_least_waiting(asked, some.beds, share), usual[left])
+    keeps_few = wards.waits(present[busiest])[0] < _FEW
+    left = np.flatnonzero((wanted[busiest] >= wards.beds) | ~keeps_few)
+    present[:, left] = wanted + np.maximum(_at_least_waiting(wanted, wards.beds[left], share), usual[left])
     for _ in range(_MOST_TURNS):
         if not left.size:
             break
-        some, asked, here = columns.only(left), wanted[:, left], present[:, left]
+        some, here = wards.only(left), present[:, left]
         in_use, slope = some.in_use(here)
-        queue = here - asked
+        queue = here - wanted
         # stays shorter than a step: within it the queue nears what the load keeps waiting, and never swings past it
         gives = share if share <= 1.0 else -np.expm1(-share * slope) / np.maximum(slope, 1e-12)
-        missing = queue + gives * (asked - in_use) - np.roll(queue, -1, axis=0)
+        missing = queue + gives * (wanted - in_use) - np.roll(queue, -1, axis=0)
         change = np.maximum(_comes_back(1.0 - gives * slope, missing), -queue)
         present[:, left] = np.minimum(here + change, _LONGEST_QUEUE)
         left = left[np.abs(change).max(axis=0) > _SETTLED * some.beds]
     return present
 
 
-def _carried(wards: _Columns, wanted: Array, pace: Pace) -> Array:
+def _carried(wards: Wards, wanted: Array, pace: Pace) -> Array:
     """Return x in every step, carried over several at once."""
-    share = pace.steps_at_once * pace.step_days / pace.mean_days
-    if pace.steps_at_once == 1:
-        return _settled(wards, wanted, share)
-    together = wanted.reshape(-1, pace.steps_at_once, wanted.shape[1])
+    together = wanted.reshape(-1, pace.steps_at_once)
     mean = together.mean(axis=1)
-    queue = _settled(wards, mean, share) - mean
-    return (together + queue[:, None]).reshape(wanted.shape)
+    queue = _settled(wards, mean, pace.steps_at_once * pace.step_days / pace.mean_days) - mean[:, None]
+    return (together[:, :, None] + queue[:, None]).reshape(wanted.size, -1)
 
 
-def settled_queue(
-    spread: Spread, counts: NDArray[np.int64], wanted: Array, columns: NDArray[np.int64], pace: Pace
-) -> tuple[Array, Array]:
+def settled_queue(wards: Wards, wanted: Array, pace: Pace) -> tuple[Array, Array]:
     """Who waits of those who come in each step of a year, or a week, that repeats for ever, and how long on average?
 
-    ``counts`` ``(n,)`` above 0, ascending; ``columns`` ``(k,)``: the place in ``counts`` of each column; ``wanted``
-    ``(steps, k)``: beds wanted if nobody ever waited, on average less than the beds. Returns the share who wait and
-    the mean days of those who do, both ``(steps, k)``. x follows dx/dt = a'(t) + (a(t) − b(x))/m: without a queue x is
-    a(t), whatever the shape of stay; with one, the beds give up b(x)/m patients a day. Steps carried over at once share
-    one queue, on which each step's own load rides.
+    ``wanted`` ``(steps,)``: beds wanted if nobody ever waited, on average less than the beds of each ward. Returns the
+    share who wait and the mean wait in mean stays of those who do, both ``(steps, wards)``. x follows dx/dt = a'(t) + (a(t) − b(x))/m:
+    without a queue x is a(t), whatever the shape of stay; with one, the beds give up b(x)/m patients a day. Steps
+    carried over at once share one queue, on which each step's own load rides.
 
     Source: Wang, Tipper & Banerjee 1996, IEEE INFOCOM (pointwise stationary fluid flow).
     Checked by: tests/models/test_waiting.py
     """
-    wards = _columns(spread, counts).only(columns)
-    wait, stays = wards.waits(_carried(wards, wanted, pace))
-    return wait, pace.mean_days * stays
+    present = _carried(wards, wanted, pace)
+    wait, stays = np.empty((2, *present.shape))
+    # some steps at a time fit the processor's fast memory
+    at_once = max(1, _CELLS_AT_ONCE // present.shape[1])
+    for start in range(0, present.shape[0], at_once):
+        some = slice(start, start + at_once)
+        wait[some], stays[some] = wards.waits(present[some])
+    return wait, stays
 
 
 def raised_by_swing(wait: Array, wanted: Array, patients: Array, weeks: int) -> Array:
-    """Which share waits of those who come in each step, if demand swings through the week? ``(steps, rates, n)``.
+    """Which share waits of those who come in each step, if demand swings through the week? ``(steps, wards)``.
 
     A steady ward that holds x patients has emptier and fuller days behind it than one filled from Monday to Wednesday:
     at the same x fewer find all beds in use. So p, the share of a whole week, is raised by p²·(1 − p)·s²/(s² + 0.9);
     s is half the range of beds wanted in the week ÷ √beds wanted. Fitted to exact chains with exponential stays. ``wait``
-    is the share at x, ``wanted`` and ``patients`` ``(steps, rates)`` for whole weeks, so many of them.
+    is the share at x, ``wanted`` and ``patients`` ``(steps,)`` for whole weeks, so many of them.
 
     Checked by: tests/models/test_waiting.py
     """
-    by_week = (weeks, -1, wanted.shape[1])
-    wanted, patients = wanted.reshape(by_week), patients.reshape(by_week)
+    wanted, patients = wanted.reshape(weeks, -1), patients.reshape(weeks, -1)
     swing = np.ptp(wanted, axis=1) ** 2 / 4.0 / np.maximum(wanted.mean(axis=1), 1e-300)
-    part = (swing / (swing + _SWING))[:, :, None]
+    part = (swing / (swing + _SWING))[:, None]
     in_weeks = wait.reshape(*wanted.shape, -1)
-    everyone = np.maximum(patients.sum(axis=1), 1e-300)[:, :, None]
-    share = np.einsum("wsr,wsrn->wrn", patients, in_weeks) / everyone
+    everyone = np.maximum(patients.sum(axis=1), 1e-300)[:, None]
+    share = (patients[:, None] @ in_weeks)[:, 0] / everyone
     raised = in_weeks * (1.0 + part * share * (1.0 - share))[:, None]
-    return np.minimum(raised, 1.0).reshape(wait.shape)
+    return np.minimum(raised, 1.0, out=raised).reshape(wait.shape)

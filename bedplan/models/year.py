@@ -35,9 +35,9 @@ weekday_of_hour = _fixed(np.arange(HOURS_A_YEAR) // 24 % 7)
 month_of_hour = _fixed(np.repeat(np.arange(12), 24 * np.array(MONTH_DAYS)))
 
 
-def leaving_of(demand: Demand, *, turnaround: bool = True) -> Leaving:
-    """When do this ward's beds come free? Without ``turnaround``: when do its patients leave?"""
-    return Leaving(demand.discharge_hours, demand.weekend_slip, demand.turnaround_hours if turnaround else 0.0)
+def leaving_of(demand: Demand) -> Leaving:
+    """When do this ward's beds come free?"""
+    return Leaving(demand.discharge_hours, demand.weekend_slip, demand.turnaround_hours)
 
 
 def rhythm_of_week(demand: Demand) -> Array:
@@ -73,29 +73,22 @@ def arrivals_by_hour(demand: Demand) -> Array:
 
 
 @lru_cache(maxsize=256)
-def _unbooked_load(demand: Demand, *, turnaround: bool) -> Array:
-    """Return the beds unbooked patients want in each hour of the year, with or without the turnaround."""
-    held = hours_held(demand.length_of_stay, leaving_of(demand, turnaround=turnaround), HOURS_A_YEAR)
-    return _fixed(beds_held(unbooked_by_hour(demand), held))
-
-
-def _booked_load(demand: Demand, *, turnaround: bool = True, at_end: bool = False) -> Array:
-    """Return the beds booked patients want in each hour of the week, with or without the turnaround."""
-    load = np.zeros(HOURS_A_WEEK)
-    for one in demand.booked:
-        leaving = leaving_of(demand, turnaround=turnaround)
-        load += beds_held(booked_in_week(one), hours_held(one.length_of_stay, leaving, HOURS_A_WEEK, at_end=at_end))
-    return _fixed(load)
-
-
 def unbooked_load_by_hour(demand: Demand) -> Array:
     """How many beds do unbooked patients want in each hour of the year? ``(8736,)``, turnaround included."""
-    return _unbooked_load(demand, turnaround=True)
+    return _fixed(
+        beds_held(unbooked_by_hour(demand), hours_held(demand.length_of_stay, leaving_of(demand), HOURS_A_YEAR))
+    )
 
 
-def booked_load_in_week(demand: Demand) -> Array:
-    """How many beds do booked patients want in each hour of the week, on average? ``(168,)``, turnaround included."""
-    return _booked_load(demand)
+def booked_load_in_week(demand: Demand, *, at_end: bool = False) -> Array:
+    """How many beds do booked patients want in each hour of the week, on average, or at its end? ``(168,)``.
+
+    Turnaround included.
+    """
+    load, leaving = np.zeros(HOURS_A_WEEK), leaving_of(demand)
+    for one in demand.booked:
+        load += beds_held(booked_in_week(one), hours_held(one.length_of_stay, leaving, HOURS_A_WEEK, at_end=at_end))
+    return _fixed(load)
 
 
 def offered_load_by_hour(demand: Demand) -> Array:
@@ -110,19 +103,6 @@ def offered_load_by_hour(demand: Demand) -> Array:
     Checked by: tests/models/test_year.py
     """
     return _fixed(unbooked_load_by_hour(demand) + np.tile(booked_load_in_week(demand), WEEKS))
-
-
-def patients_by_hour(demand: Demand) -> Array:
-    """How many patients are present in each hour of the year, on average, if nobody is ever turned away?
-
-    ``(8736,)``: the offered load without the turnaround after each stay.
-
-    Checked by: tests/models/test_year.py
-    """
-    if demand.turnaround_hours == 0:
-        return offered_load_by_hour(demand)
-    booked = _booked_load(demand, turnaround=False)
-    return _fixed(_unbooked_load(demand, turnaround=False) + np.tile(booked, WEEKS))
 
 
 class Week(NamedTuple):
@@ -154,21 +134,25 @@ def mean_week(demand: Demand) -> Week:
         beds_held(unbooked, hours_held(stay, leaving, HOURS_A_WEEK)),
         booked_load_in_week(demand),
         beds_held(unbooked, hours_held(stay, leaving, HOURS_A_WEEK, at_end=True)),
-        _booked_load(demand, at_end=True),
+        booked_load_in_week(demand, at_end=True),
     )
-
-
-def patients_wanted(demand: Demand) -> float:
-    """How many patients would be present on average over the year, if nobody were ever turned away?
-
-    Arrivals × mean stay, where the stay may be moved by the hours patients leave at.
-    """
-    return float(patients_by_hour(demand).mean()) if leaving_of(demand).has_rhythm else demand.offered_load
 
 
 def beds_wanted(demand: Demand) -> float:
     """How many beds would be held on average over the year, turnaround included, if nobody were ever turned away?
 
-    Checked by: tests/models/test_erlang.py, tests/models/test_every_model.py
+    Arrivals × the time each holds a bed, where the stay may be moved by the hours patients leave at.
+
+    Checked by: tests/models/test_year.py, tests/models/test_erlang.py
     """
-    return patients_wanted(demand) + demand.total_arrivals_per_day * demand.turnaround_hours / 24.0
+    if leaving_of(demand).has_rhythm:
+        return float(offered_load_by_hour(demand).mean())
+    return demand.offered_load + demand.total_arrivals_per_day * demand.turnaround_hours / 24.0
+
+
+def patients_wanted(demand: Demand) -> float:
+    """How many patients would be present on average over the year? As :func:`beds_wanted`, without the turnaround.
+
+    Checked by: tests/models/test_year.py
+    """
+    return max(beds_wanted(demand) - demand.total_arrivals_per_day * demand.turnaround_hours / 24.0, 0.0)

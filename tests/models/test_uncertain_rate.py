@@ -9,17 +9,16 @@ import pytest
 from scipy import integrate, stats
 
 from bedplan.models import Demand, LengthOfStay, erlang_b, seasonal_loss
-from bedplan.models.uncertain_rate import possible_rates
+from bedplan.models.uncertain_rate import few_rates, possible_rates
 
 
 @pytest.mark.parametrize("variation", [0.0, 0.01, 0.05, 0.2, 0.5])
 def test_rates_have_the_mean_and_spread_asked_for(variation: float) -> None:
     """The weighted rates have mean 1 and the stated SD ÷ mean."""
-    rates, weights = possible_rates(variation, 30.0)
-
-    assert weights.sum() == pytest.approx(1.0)
-    assert weights @ rates == pytest.approx(1.0)
-    assert math.sqrt(max(weights @ rates**2 - 1.0, 0.0)) == pytest.approx(variation, rel=1e-4, abs=1e-7)
+    for rates, weights in (possible_rates(variation, 30.0), few_rates(variation, 31)):
+        assert weights.sum() == pytest.approx(1.0)
+        assert weights @ rates == pytest.approx(1.0)
+        assert math.sqrt(max(weights @ rates**2 - 1.0, 0.0)) == pytest.approx(variation, rel=1e-4, abs=1e-7)
 
 
 @pytest.mark.parametrize(

@@ -23,7 +23,7 @@ from bedplan.models import (
 )
 from bedplan.models.clusters import more_if_groups_differ
 from bedplan.models.waiting_spread import spread_of, wait_ratio
-from bedplan.models.waiting_year import Pace, settled_queue
+from bedplan.models.waiting_year import Pace, settled_queue, steady_wards
 from bedplan.models.year import unbooked_by_hour
 
 WINTER = (1.3, 1.2, 1.1, 1.0, 0.9, 0.9, 0.8, 0.8, 0.9, 1.0, 1.0, 1.1)
@@ -381,7 +381,7 @@ ROUNDS = {
         Demand(12.0, LengthOfStay(0.5, 0.0), hour_factors=DAY, discharge_hours=AFTERNOON),
         (12,),
         1.0 / 3.0,
-        "under a day up to a third",
+        "under a day a third",
     ),
 }
 
@@ -452,13 +452,12 @@ def test_seasons_of_no_size_change_nothing() -> None:
 @pytest.mark.parametrize("use", [0.8, 0.97, 0.999, 0.99999])
 def test_a_queue_that_takes_lifetimes_to_settle(use: float) -> None:
     """Carried through a year without seasons the queue comes to rest at Erlang's share and wait, however full the ward."""
-    beds = np.array([30])
-    wanted = np.full((364, 1), use * 30.0)
-    wait, days = settled_queue(spread_of(steady(24.0)), beds, wanted, np.array([0]), Pace(1.0, 4.0))
+    ward = steady_wards(spread_of(steady(24.0)), np.array([30]))
+    wait, stays = settled_queue(ward, np.full(364, use * 30.0), Pace(1.0, 4.0))
 
     # wait of those who wait: m/(c − a)
     assert wait[:, 0] == pytest.approx(float(erlang_c(use * 30.0, 30)), rel=5e-3)
-    assert days[:, 0] == pytest.approx(4.0 / (30.0 * (1.0 - use)), rel=1e-2)
+    assert stays[:, 0] == pytest.approx(1.0 / (30.0 * (1.0 - use)), rel=1e-2)
 
 
 def test_stays_of_seconds_and_months_without_anybody() -> None:

@@ -17,7 +17,6 @@ from bedplan.models.year import (
     booked_load_in_week,
     mean_week,
     month_of_hour,
-    patients_by_hour,
     patients_wanted,
     weekday_of_hour,
 )
@@ -163,8 +162,10 @@ def test_turnaround_holds_beds_but_not_patients() -> None:
     demand = Demand(10.0, LengthOfStay(4.0, 1.1), weekday_factors=WEEK, turnaround_hours=6.0)
 
     assert offered_load_by_hour(demand).mean() == pytest.approx(42.5, rel=1e-9)
-    assert patients_by_hour(demand).mean() == pytest.approx(40.0, rel=1e-9)
-    assert patients_by_hour(demand) == pytest.approx(offered_load_by_hour(demand.with_changes(turnaround_hours=0.0)))
+    assert patients_wanted(demand) == pytest.approx(40.0, rel=1e-9)
+    by_the_clock = demand.with_changes(discharge_hours=AFTERNOON)
+    alone = offered_load_by_hour(by_the_clock.with_changes(turnaround_hours=0.0)).mean()
+    assert patients_wanted(by_the_clock) == pytest.approx(alone, rel=1e-5)
 
 
 def followed_one_by_one(demand: Demand, hours_of_week: np.ndarray) -> tuple[np.ndarray, float]:
