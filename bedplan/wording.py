@@ -80,6 +80,8 @@ COLUMNS = {  # of files, where our name for one doesn't say enough
     "closed": "Closed beds",
     "placed": "Time the bed was given",
     "wait_hours": "Wait in hours",
+    "available_beds": "Beds available on average, not bed-days",
+    "occupied_beds": "Beds occupied on average, not bed-days",
 }
 CAUTIONS = (
     "This is an estimate for planning, from past records and simplified mathematics. Real days will be better and worse.",

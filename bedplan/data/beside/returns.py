@@ -11,10 +11,18 @@ from bedplan.data.beside.linking import is_no_ward, names_in_stays, spelled_alik
 from bedplan.data.cleaning.wardlinks import bare_name
 from bedplan.data.files.columns import TELLTALES, plain
 from bedplan.data.files.figures import read_figures
-from bedplan.data.files.headings import RETURN_HEADINGS
+from bedplan.data.files.headings import RETURN_HEADINGS, lacking
 from bedplan.data.files.reading import read_table
 from bedplan.data.files.source import FileLike, open_source
 from bedplan.data.values.accounting import account
+from bedplan.data.values.bedunits import (
+    BED_DAYS,
+    BEDS,
+    MOST_OCCUPANCY,
+    unit_beside,
+    unit_by_months,
+    unit_by_stay,
+)
 from bedplan.data.values.months import QUARTER, month_of, months_apart, order_of_dates
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
@@ -27,6 +35,8 @@ if TYPE_CHECKING:
     from bedplan.data.files.texttable import TextTable
 
 FIGURES = ("available", "occupied", "discharges")
+HOURS_ONLY = 0.25  # days of a mean stay, below which figures are hardly bed-days; common practice, no source
+LEAST_RATIO = 0.2  # of occupied to available figures, from which both are taken to be of one kind; no source
 CANNOT = (
     "A return holds averages only: how far demand and stays swing is assumed, not measured.",
     "It counts nights at midnight: day stays and daytime peaks are not in it.",
@@ -132,7 +142,7 @@ def read_monthly_return(
         raise ImpossibleFigure(f"{months_a_row} months a row is not possible: a row holds 1 to 12 months.")
     file = open_source(source, name)
     text = read_table(file, RETURN_HEADINGS, columns)
-    missing = [key for key in ("month", "ward", "occupied", "discharges") if key not in text.columns]
+    missing = [either[0] for either in lacking("monthly return", text.columns)]
     if missing:
         text.refuse_kinds(file.name, "a monthly return", *(kind for kind in TELLTALES if kind != "a monthly return"))
         wanted = "month, ward, occupied bed-days and discharges"
@@ -141,7 +151,8 @@ def read_monthly_return(
     report = account(text, reason, file.name, "write months as 2024-04 and figures as 1234.5")
     kept = frame[reason == ""]
     months, said = _months_held(kept, text.headings["month"], months_a_row)
-    report = replace(report, notes=(*report.notes, *notes, *said, *CANNOT))
+    kept, told = _in_bed_days(kept, _days_held(kept, months), text, file.name, set(columns or ()))
+    report = replace(report, notes=(*report.notes, *notes, *said, *told, *CANNOT))
     table = _by_month(_spread(kept, months))
     return MonthlyReturn(file.name, table, tuple(sorted(set(table["ward"]))), report)
 
@@ -151,7 +162,7 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
     cells = text.strings("month")
     order = order_of_dates(cells, name, date_order)
     months = [month_of(value, order) for value in cells]
-    figures, notes = read_figures({key: text.strings(key) for key in FIGURES})
+    figures, notes = read_figures({key: text.strings(_written_as(key, text)) for key in FIGURES})
     wards = spelled_alike(text.strings("ward"))
     year_and_month = [one or (1970, 1) for one in months]
     frame = pd.DataFrame(
@@ -168,8 +179,6 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
     reason[[one is None for one in months]] = "The month can't be read"
     reason[[is_no_ward(ward, text.headings["ward"]) for ward in wards]] = "No ward is named, or the row is a total"
     frame[list(FIGURES)] = frame[list(FIGURES)].fillna(0.0)
-    said = [text.headings[key] for key in FIGURES[:2] if "beds" in plain(text.headings.get(key, ""))]
-    notes += [f"“{heading}” is read as bed-days of the whole month, not as beds." for heading in said]
     doubled = int(frame[reason == ""].duplicated(["ward", "month"], keep=False).sum())
     if doubled:
         notes.append(f"{doubled:,} rows share their ward and month with another: their figures are added.")
@@ -192,6 +201,73 @@ def _months_held(kept: pd.DataFrame, heading: str, said: int | None) -> tuple[tu
         )
         return (0,), [f"{told} in use are {apart} times too many here: say how many months a row holds."]
     return (0,), []
+
+
+def _written_as(key: str, text: TextTable) -> str:
+    """Return which column holds a figure: as bed-days, or as beds on average."""
+    return key if key in text.columns or f"{key}_beds" not in text.columns else f"{key}_beds"
+
+
+def _days_held(kept: pd.DataFrame, months: tuple[int, ...]) -> pd.Series:
+    """Return how many days each row holds."""
+    return sum((kept["month"] + step).dt.days_in_month for step in months)
+
+
+def _in_bed_days(
+    kept: pd.DataFrame, days: pd.Series, text: TextTable, name: str, said: set[str]
+) -> tuple[pd.DataFrame, list[str]]:
+    """Return the figures in bed-days, and how those were read that may be beds on average.
+
+    Raises:
+        UnreadableRecords: occupied beds may be either, and nobody said which.
+    """
+    notes, figures = [], kept
+    for key in ("occupied", "available"):
+        column = _written_as(key, text)
+        is_sure = column in said or (column == key and "days" in plain(text.headings.get(key, "days")))
+        written = BEDS if column != key else BED_DAYS
+        unit = written if is_sure else _unit(key, kept, days, figures["occupied"])
+        if unit is None and column != key:
+            raise _which_unit(text.headings[column], name)
+        if (unit or written) == BEDS:
+            figures = figures.assign(**{key: kept[key] * days})
+        if not is_sure and column in text.columns:
+            meant = "beds on average" if (unit or written) == BEDS else "bed-days"
+            why = "as the figures show" if unit else "which the figures leave open"
+            notes.append(f"“{text.headings[column]}” is read as {meant}, {why}.")
+    return figures, notes + _far_too_short(figures)
+
+
+def _far_too_short(figures: pd.DataFrame) -> list[str]:
+    """Say so where patients would stay for a few hours: bed-days are counted at midnight."""
+    totals = figures.groupby("ward")[["occupied", "discharges"]].sum()
+    short = totals[(totals["occupied"] > 0) & (totals["occupied"] < HOURS_ONLY * totals["discharges"])]
+    if short.empty:
+        return []
+    ward, row = next(short.iterrows())
+    stay = row["occupied"] / row["discharges"]
+    told = f"Patients of {ward} would stay {stay:.2f} days by this return"
+    return [
+        f"{told}: if its figures are beds on average, not bed-days, name their column so, or demand is far too low."
+    ]
+
+
+def _unit(key: str, kept: pd.DataFrame, days: pd.Series, in_use: pd.Series) -> str | None:
+    """Return what the figures of a column are by themselves, None where they don't tell; ``in_use`` is in bed-days."""
+    if key == "available":
+        return unit_beside(kept["available"], in_use) or BED_DAYS
+    there = unit_by_months(kept["available"], days, kept["ward"])
+    if there is not None and kept["occupied"].sum() > 0:
+        ratio = kept["occupied"].sum() / kept["available"].sum()
+        if LEAST_RATIO <= ratio <= MOST_OCCUPANCY:
+            return there
+    return unit_by_stay(kept["occupied"], days, kept["discharges"], kept["ward"])
+
+
+def _which_unit(heading: str, name: str) -> UnreadableRecords:
+    """Ask what a column holds."""
+    told = f"“{heading}” in {name} may be beds occupied on average or bed-days of the whole month, and the figures don't tell"
+    return UnreadableRecords([f"{told} which: say so where the columns are named, or write “occupied bed-days”."])
 
 
 def _spread(kept: pd.DataFrame, months: tuple[int, ...]) -> pd.DataFrame:

@@ -63,8 +63,10 @@ CENSUS_HEADINGS: dict[str, tuple[str, ...]] = {
 RETURN_HEADINGS: dict[str, tuple[str, ...]] = {
     "month": words("month period date periodend yearmonth monthending monthend quarter quarterend quarterending"),
     "ward": (*WARD_WORDS, *words("specialty specialtygroup site sector group")),
-    "available": words("availablebeddays availablebed availablebeds beddaysavailable available staffedbeddays"),
-    "occupied": words("occupiedbeddays obd beddaysoccupied occupied occupiedbeds beddays"),
+    "available": words("availablebeddays beddaysavailable available staffedbeddays"),
+    "occupied": words("occupiedbeddays obd beddaysoccupied occupied beddays"),
+    "available_beds": words("availablebeds bedsavailable availablebed staffedbeds averageavailablebeds"),
+    "occupied_beds": words("occupiedbeds bedsoccupied bedsinuse averageoccupiedbeds averagebedsoccupied"),
     "discharges": words("discharges discharged dischargesanddeaths dischargesincldeaths separations admissions spells"),
 }
 READY_HEADINGS: dict[str, tuple[str, ...]] = {
@@ -89,7 +91,7 @@ HEADINGS_OF: Mapping[str, Mapping[str, tuple[str, ...]]] = {  # kind of file -> 
 
 # Kind of file -> what it is called, and the columns it can't be without: one of each row. The more telling kinds come first.
 NEEDED: Mapping[str, tuple[str, tuple[tuple[str, ...], ...]]] = {
-    "monthly return": ("a monthly return", (("month",), ("ward",), ("occupied",), ("discharges",))),
+    "monthly return": ("a monthly return", (("month",), ("ward",), ("occupied", "occupied_beds"), ("discharges",))),
     "census": ("a census", (("date", "time"), ("ward",), ("occupied",))),
     "staffed beds": ("a file of staffed beds", (("ward",), ("staffed", "funded"))),
     "ward stays": (

@@ -248,3 +248,75 @@ def test_a_return_whose_every_row_has_a_cell_too_many_says_so() -> None:
         UnreadableRecords, match=r"a title, total or footer, or a line with another number of cells \(2 rows\)"
     ):
         read_monthly_return(lines("2024-01;Heron;310;248;62;9", "2024-02;Heron;290;248;62;9"))
+
+
+LENGTHS = {"2024-01": 31, "2024-02": 29, "2024-03": 31, "2024-04": 30}
+
+
+def units(heads: str, occupied: float, discharges: int, available: float | None = None, *, times_days: bool) -> bytes:
+    """Return four months of a ward with so many beds occupied and available, times the month's days or not."""
+    rows = [f"month;ward;{heads};discharges"]
+    for month, days in LENGTHS.items():
+        by = days if times_days else 1
+        there = "" if available is None else f"{available * by:g};"
+        rows.append(f"{month};Heron;{there}{occupied * by:g};{discharges}")
+    return "\n".join(rows).encode()
+
+
+@pytest.mark.parametrize("times_days", [True, False])
+@pytest.mark.parametrize(
+    ("heads", "occupied", "discharges", "available"),
+    [
+        ("occupied_beds", 24.3, 190, None),  # 3.9 days a stay as beds, 0.1 as bed-days
+        ("occupied", 24.3, 190, None),
+        ("Available beds;Occupied beds", 24, 20, 28),  # stays of 1.2 or 36 days: the constant available beds tell
+        ("Beds available;Beds occupied", 5.5, 60, 8),
+        ("Average available beds;Average occupied beds", 420, 3_100, 450),
+    ],
+)
+def test_beds_and_bed_days_are_told_apart(
+    heads: str, occupied: float, discharges: int, available: float | None, *, times_days: bool
+) -> None:
+    """Whatever the heading says, the figures show whether they are of a day or of a month, and a sentence says so."""
+    figures = read_monthly_return(units(heads, occupied, discharges, available, times_days=times_days))
+
+    assert figures.mean_stay_days("Heron") == pytest.approx(occupied * 121 / (4 * discharges))
+    assert figures.occupancy("Heron") == pytest.approx(occupied / available if available else 0.0)
+    meant = "is read as bed-days" if times_days else "is read as beds on average"
+    assert any(meant in note for note in figures.report.notes)
+
+
+def test_beds_a_quarter_are_beds_on_every_day_of_it() -> None:
+    """Forty-nine beds occupied on average in each quarter are 49."""
+    rows = [f"{day};Heron;60;49;{7 * days}" for day, days in QUARTERS]
+    figures = read_monthly_return(lines(*rows).replace(b"_bed_days", b"_beds"))
+
+    assert figures.demand("Heron").offered_load == pytest.approx(49)
+    assert figures.occupancy("Heron") == pytest.approx(49 / 60)
+
+
+def test_where_figures_leave_it_open_somebody_must_say() -> None:
+    """Sixty a month beside 60 discharges: two beds for a day each, or 60 beds for a month each."""
+    content = b"month,ward,occupied_beds,discharges\n2024-01,Heron,62,60\n2024-02,Heron,58,60\n"
+
+    with pytest.raises(UnreadableRecords, match=r"“occupied_beds” in return\.csv may be beds"):
+        read_monthly_return(content, name="return.csv")
+    as_beds = read_monthly_return(content, columns={"occupied_beds": "occupied_beds"})
+    as_days = read_monthly_return(content, columns={"occupied": "occupied_beds"})
+    assert as_beds.mean_stay_days("Heron") == pytest.approx((62 * 31 + 58 * 29) / 120)
+    assert as_days.mean_stay_days("Heron") == pytest.approx(1.0)
+
+
+def test_available_beds_beside_occupied_bed_days() -> None:
+    """Each column is read by itself: 28 beds and 744 bed-days in January."""
+    content = b"month,ward,available_beds,occupied_bed_days,discharges\n2024-01,Heron,28,744,190\n"
+
+    assert read_monthly_return(content).occupancy("Heron") == pytest.approx(744 / 868)
+
+
+def test_bed_days_that_make_stays_of_hours_are_doubted() -> None:
+    """Where a column is called bed-days and holds beds, the heading counts, and a sentence says what is odd."""
+    figures = read_monthly_return(b"month,ward,occupied_bed_days,discharges\n2024-01,Heron,24,190\n")
+
+    assert figures.mean_stay_days("Heron") == pytest.approx(24 / 190)
+    assert any("would stay 0.13 days" in note for note in figures.report.notes)
