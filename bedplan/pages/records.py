@@ -44,8 +44,7 @@ def show_intake(here: Records) -> None:
         st.markdown(f"Dropped because they may identify people: {dropped}.")
     for note in report.notes:
         st.markdown(f"- {wording.plain(note)}")
-    if report.repaired:
-        show_repairs()
+    show_repairs()
     show_checks()
     if len(here.set_aside):
         rows = here.set_aside
@@ -68,7 +67,7 @@ def show_checks() -> None:
 
 
 def show_repairs() -> None:
-    """Show how far the repaired rows carry each ward's answer."""
+    """Show how far the repaired rows, and those not believed, carry each ward's answer."""
     rows = [
         {
             "Ward": wording.plain(one.ward),
@@ -76,9 +75,12 @@ def show_repairs() -> None:
             "Without repaired rows": "too little is left"
             if one.without_repairs is None
             else f"{one.without_repairs:.1f}",
+            "If forgotten and mistyped stays are true": f"{one.if_doubted_are_true:.1f}",
         }
         for one in loaded.repairs()
     ]
+    if not rows:
+        return
     with st.expander("What the repairs change"):
         st.table(pd.DataFrame(rows).set_index("Ward"))
 
