@@ -2,17 +2,16 @@
 
 from bedplan.decision.changing_beds import BedChanges, Closure
 from bedplan.decision.checking import SimulationCheck, check_by_simulation
-from bedplan.decision.comparing import WardComparison, compare_wards, patients_per_year, spared_by_next_bed
+from bedplan.decision.comparing import Refused, WardComparison, compare_wards, patients_per_year, spared_by_next_bed
 from bedplan.decision.overflowing import (
     BayEffect,
     HoldBackEffect,
     OverflowEffect,
-    Refused,
     hold_back_effect,
     overflow_bay_effect,
     overflow_effect,
 )
-from bedplan.decision.pooling import PooledShare, PoolingEffect, pool_wards, pooling_effect
+from bedplan.decision.pooling import PoolingEffect, pool_wards, pooling_effect
 from bedplan.decision.rules import Decision, OccupancyLimit, OverfullLimit, Rule, TurnAwayLimit, WaitLimit, decide
 from bedplan.decision.sharing import SharedBeds, share_beds
 from bedplan.decision.ward import Ward
@@ -26,7 +25,6 @@ __all__ = [
     "OccupancyLimit",
     "OverflowEffect",
     "OverfullLimit",
-    "PooledShare",
     "PoolingEffect",
     "Refused",
     "Rule",

@@ -12,20 +12,23 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bedplan.decision.changing_beds import MONTHS, WEEKDAYS, arrivals_by_day, arrivals_by_month
+from bedplan.decision.changing_beds import arrivals_by_day, arrivals_by_month
 from bedplan.models import Waits
 from bedplan.models.settling import (
-    DAYS,
     days_of,
     share_full_as_if_settled,
     share_full_at_random,
     share_full_by_day,
 )
 from bedplan.models.year import (
+    MONTHS,
+    YEAR_DAYS,
     beds_wanted,
+    month_of_day,
     month_of_hour,
     offered_load_by_hour,
     patients_wanted,
+    weekday_of_day,
 )
 
 if TYPE_CHECKING:
@@ -37,8 +40,6 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]
 
-_MONTH = month_of_hour[::24]
-_WEEKDAY = np.arange(DAYS) % WEEKDAYS
 _MOST_FOLLOWED = 32
 _NEARLY_ALL, _NEARLY_NONE = 0.95, 1e-6
 _TINY = 1e-12
@@ -46,10 +47,10 @@ _TINY = 1e-12
 
 def _share_by_month(days: Array, weights: Array) -> Array:
     """Average figures of each day, ``(364, n)``, over each month, ``(12, n)``; a month without weight by its days."""
-    weights = np.where(np.bincount(_MONTH, weights)[_MONTH] > 0, weights, 1.0)
+    weights = np.where(np.bincount(month_of_day, weights)[month_of_day] > 0, weights, 1.0)
     sums = np.zeros((MONTHS, days.shape[1]))
-    np.add.at(sums, _MONTH, days * weights[:, None])
-    return sums / np.bincount(_MONTH, weights)[:, None]
+    np.add.at(sums, month_of_day, days * weights[:, None])
+    return sums / np.bincount(month_of_day, weights)[:, None]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -96,10 +97,10 @@ def _mixture(demand: Demand, changes: BedChanges, beds: Counts) -> _Mixture:
     """Lay out the states of each month: what its open days have in common, times what is out of use at random."""
     arrivals, extra, is_open = arrivals_by_day(demand), changes.extra_by_day, changes.is_open_by_day
     missing, chance = changes.out_of_use()
-    weekday = _WEEKDAY if any(changes.extra_by_weekday) else np.zeros(DAYS, dtype=np.int64)
+    weekday = weekday_of_day if any(changes.extra_by_weekday) else np.zeros(YEAR_DAYS, dtype=np.int64)
     states = []
     for month in range(MONTHS):
-        days = np.flatnonzero((month == _MONTH) & is_open)
+        days = np.flatnonzero((month == month_of_day) & is_open)
         kinds, kind = np.unique(np.stack([extra[days], weekday[days]]), axis=1, return_inverse=True)
         time, patients = (np.bincount(kind.ravel(), weights) for weights in (np.ones(days.size), arrivals[days]))
         patients = patients if patients.sum() > 0 else time
@@ -199,9 +200,9 @@ def _settling_by_day(demand: Demand, changes: BedChanges, beds: Counts) -> Array
         return np.ones((MONTHS, beds.size))
     days, arrivals = days_of(demand), arrivals_by_day(demand)
     counts, place = np.unique(open_beds, return_inverse=True)
-    both = share_full_by_day(days, np.hstack([open_beds, np.tile(counts, (DAYS, 1))]))
+    both = share_full_by_day(days, np.hstack([open_beds, np.tile(counts, (YEAR_DAYS, 1))]))
     followed, alone = both[:, : beds.size], _share_by_month(both[:, beds.size :], arrivals)
-    at_once = alone[_MONTH[:, None], place.reshape(open_beds.shape)]
+    at_once = alone[month_of_day[:, None], place.reshape(open_beds.shape)]
     found, settled = (_share_by_month(one, arrivals) for one in (followed, at_once))
     return np.divide(found, settled, out=np.ones_like(found), where=settled > _TINY)
 
@@ -227,7 +228,7 @@ def _occupancy(curve: BedCurve, mixture: _Mixture, changes: BedChanges, turned_a
     else:
         present = mixture.over_hours(mixture.of_time_by_month(curve.occupancy * curve.beds))
     counts = np.arange(curve.beds.size, dtype=float)
-    is_open = _share_by_month(changes.is_open_by_day[:, None].astype(float), np.ones(DAYS))
+    is_open = _share_by_month(changes.is_open_by_day[:, None].astype(float), np.ones(YEAR_DAYS))
     open_beds = mixture.over_hours(mixture.of_time_by_month(counts) * is_open)
     share = np.divide(present, open_beds, out=np.zeros(present.size), where=open_beds > 0)
     return share if curve.when_full == "stays anyway" else np.minimum(share, 1.0)
@@ -239,11 +240,11 @@ def _queue_left_over(demand: Demand, changes: BedChanges, beds: Counts) -> Array
     A queue grows by arrivals less the patients the open beds can take, and shrinks likewise once there are more: a
     fluid, day by day for dated changes, and for those at random the time it takes to shrink again.
     """
-    load = offered_load_by_hour(demand).reshape(DAYS, 24).mean(axis=1)
+    load = offered_load_by_hour(demand).reshape(YEAR_DAYS, 24).mean(axis=1)
     open_beds = changes.beds_by_day(beds)
     queue, left_over = np.zeros(beds.size), np.zeros(open_beds.shape)
-    for day in (*range(DAYS), *range(DAYS)):
-        queue = np.minimum(np.maximum(queue + load[day] - open_beds[day], 0.0), DAYS * load.max())
+    for day in (*range(YEAR_DAYS), *range(YEAR_DAYS)):
+        queue = np.minimum(np.maximum(queue + load[day] - open_beds[day], 0.0), YEAR_DAYS * load.max())
         left_over[day] = (queue > 0) & (open_beds[day] > load[day])
     missing, chance = changes.out_of_use()
     short = sum(

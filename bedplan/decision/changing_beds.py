@@ -15,8 +15,8 @@ import numpy as np
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Closure
 from bedplan.models.figures import all_of_kind, listed, number, whole
-from bedplan.models.settling import DAYS, AtRandom, shares_in_force
-from bedplan.models.year import MONTH_DAYS, arrivals_by_hour
+from bedplan.models.settling import AtRandom, shares_in_force
+from bedplan.models.year import MONTHS, WEEKDAYS, YEAR_DAYS, arrivals_by_hour, month_of_day, weekday_of_day
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -26,7 +26,6 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]
 
-MONTHS, WEEKDAYS = 12, 7
 MOST_CHANGE = 2_000
 _MOST_IN_FORCE = 20.0
 _MIXED = {
@@ -38,8 +37,6 @@ _MIXED = {
     "month.",
     "stays anyway": "each month mixes the curve at each open bed count.",
 }
-_month_of_day = np.repeat(np.arange(MONTHS), MONTH_DAYS)
-_weekday_of_day = np.arange(DAYS) % WEEKDAYS
 
 
 def _extra_beds(values: object, count: int, said: str) -> tuple[int, ...]:
@@ -87,7 +84,7 @@ class BedChanges:
         put(self, "unassignable", number(said, self.unassignable, (0.0, MOST_CHANGE), allowed))
         put(self, "closures", all_of_kind(self.closures, Closure, "Closures are a tuple of Closure"))
         for one in self.closures:
-            if one.from_day is not None and not (one.from_day + 1 <= DAYS and one.days <= DAYS):
+            if one.from_day is not None and not (one.from_day + 1 <= YEAR_DAYS and one.days <= YEAR_DAYS):
                 raise ImpossibleFigure(f"A closure from day {one.from_day:g} for {one.days:g} days is not in a year.")
             if one.per_year * one.days / 365.0 > _MOST_IN_FORCE:
                 raise ImpossibleFigure(
@@ -104,16 +101,16 @@ class BedChanges:
     @property
     def extra_by_day(self) -> Counts:
         """How many beds more or fewer are open on each day of the 364-day year, closed weekdays aside? ``(364,)``."""
-        extra = np.array(self.extra_by_month)[_month_of_day] + np.array(self.extra_by_weekday)[_weekday_of_day]
+        extra = np.array(self.extra_by_month)[month_of_day] + np.array(self.extra_by_weekday)[weekday_of_day]
         for one in self.closures:
             if one.from_day is not None:
-                extra[(int(one.from_day) + np.arange(math.ceil(one.days))) % DAYS] -= one.beds
+                extra[(int(one.from_day) + np.arange(math.ceil(one.days))) % YEAR_DAYS] -= one.beds
         return extra
 
     @property
     def is_open_by_day(self) -> NDArray[np.bool_]:
         """On which days of the 364-day year does the ward take anybody in? ``(364,)``."""
-        return np.array(self.open_weekdays)[_weekday_of_day]
+        return np.array(self.open_weekdays)[weekday_of_day]
 
     def beds_by_day(self, beds: Counts) -> Counts:
         """How many beds are open on each day, if a ward of these beds starts from them? ``(n,)`` -> ``(364, n)``."""
@@ -167,8 +164,8 @@ def arrivals_by_day(demand: Demand) -> Array:
 
     Checked by: tests/decision/test_changing_beds.py
     """
-    arrivals = arrivals_by_hour(demand).reshape(DAYS, 24).sum(axis=1)
-    return arrivals if arrivals.sum() > 0 else np.ones(DAYS)
+    arrivals = arrivals_by_hour(demand).reshape(YEAR_DAYS, 24).sum(axis=1)
+    return arrivals if arrivals.sum() > 0 else np.ones(YEAR_DAYS)
 
 
 def arrivals_by_month(demand: Demand) -> Array:
@@ -176,5 +173,5 @@ def arrivals_by_month(demand: Demand) -> Array:
 
     Checked by: tests/decision/test_changing_beds.py
     """
-    counts = np.bincount(_month_of_day, weights=arrivals_by_day(demand), minlength=MONTHS)
+    counts = np.bincount(month_of_day, weights=arrivals_by_day(demand), minlength=MONTHS)
     return counts / counts.sum()

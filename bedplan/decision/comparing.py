@@ -1,7 +1,8 @@
-"""Wards side by side: today's beds, the average formula's, the rule's, and what the next bed would do."""
+"""Wards side by side: today's beds, the average formula's, the rule's, what the next bed or another change would do."""
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -9,7 +10,7 @@ from bedplan.decision.rules import Decision, decide
 from bedplan.errors import TargetOutOfReach
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Iterable, Sequence
 
     from bedplan.decision.rules import Rule
     from bedplan.decision.ward import Ward
@@ -32,6 +33,35 @@ def spared_by_next_bed(curve: BedCurve, beds: int) -> float:
     Checked by: tests/decision/test_comparing.py
     """
     return patients_per_year(curve, beds) - patients_per_year(curve, beds + 1)
+
+
+@dataclass(frozen=True, slots=True)
+class Refused:
+    """One group of patients: how many come a year, and the share who find no bed before and after a change."""
+
+    patients_per_year: float
+    share_before: float
+    share_after: float
+
+    @property
+    def before(self) -> float:
+        """Patients a year who find no bed before the change."""
+        return self.patients_per_year * self.share_before
+
+    @property
+    def after(self) -> float:
+        """Patients a year who find no bed after it."""
+        return self.patients_per_year * self.share_after
+
+    @classmethod
+    def together(cls, groups: Sequence[Refused]) -> Refused:
+        """What happens to all these patients taken together?"""
+        everyone = math.fsum(one.patients_per_year for one in groups)
+        shares = (
+            math.fsum(found) / max(everyone, 1e-300)
+            for found in zip(*((g.before, g.after) for g in groups), strict=True)
+        )
+        return cls(everyone, *shares)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

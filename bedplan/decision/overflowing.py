@@ -13,13 +13,13 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from bedplan.decision.changing_beds import arrivals_by_month
-from bedplan.decision.comparing import DAYS_PER_YEAR
+from bedplan.decision.comparing import DAYS_PER_YEAR, Refused
 from bedplan.decision.sharing import named_once
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import erlang_b, offered_load_by_hour
 from bedplan.models.overflow import overflow_pair, shared_overflow
 from bedplan.models.reservation import beds_held_back
-from bedplan.models.year import booked_load_in_week, month_of_hour, unbooked_by_hour, unbooked_load_by_hour
+from bedplan.models.year import MONTHS, booked_load_in_week, month_of_hour, unbooked_by_hour, unbooked_load_by_hour
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
@@ -31,7 +31,6 @@ if TYPE_CHECKING:
 
     Array = NDArray[np.float64]
 
-MONTHS = 12
 # beyond this many states a chain that tells two kinds of stay apart takes too long to solve for twelve months
 _MOST_STATES_A_MONTH = 5_000
 STEADY_MONTHS_NOTE = (
@@ -48,25 +47,6 @@ BAY_STAYS_NOTE = (
     "its patients with the shorter stays find no bed than this says, where it is five times another's 1 in 10; of all "
     "patients together up to 1 in 80 and 1 in 25 more."
 )
-
-
-@dataclass(frozen=True, slots=True)
-class Refused:
-    """One group of patients: how many come a year, and the share who find no bed before and after a change."""
-
-    patients_per_year: float
-    share_before: float
-    share_after: float
-
-    @property
-    def before(self) -> float:
-        """Patients a year who find no bed before the change."""
-        return self.patients_per_year * self.share_before
-
-    @property
-    def after(self) -> float:
-        """Patients a year who find no bed after it."""
-        return self.patients_per_year * self.share_after
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -136,9 +116,7 @@ class BayEffect:
     @property
     def patients(self) -> Refused:
         """All wards' patients together."""
-        everyone = math.fsum(one.patients_per_year for one in self.by_ward)
-        before = math.fsum(one.before for one in self.by_ward) / max(everyone, 1e-300)
-        return Refused(everyone, before, math.fsum(one.after for one in self.by_ward) / max(everyone, 1e-300))
+        return Refused.together(self.by_ward)
 
 
 def overflow_bay_effect(wards: Iterable[Ward], bay_beds: int) -> BayEffect:

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from bedplan.decision.changing_beds import BedChanges, arrivals_by_month
-from bedplan.decision.comparing import DAYS_PER_YEAR, patients_per_year
+from bedplan.decision.comparing import DAYS_PER_YEAR, Refused, patients_per_year
 from bedplan.decision.pooled_rhythm import with_rhythm_of_all
 from bedplan.decision.sharing import named_once
 from bedplan.decision.ward import Ward
@@ -25,10 +25,9 @@ if TYPE_CHECKING:
     from bedplan.models import BedCurve
 
 POOLING_NOTE = (
-    "Sharing all beds: arrivals are added, stays mixed by patients, and the year, week and day follow the beds the wards "
-    "want together: every month, and the busiest hour within 1 in 100; single hours up to 7 in 100 off where a day of "
-    "short stays meets a week of long ones. Swings from day to day are taken as independent of each other; slower drift "
-    "and the forecast's error as hitting all wards at once, so that sharing does not promise too much."
+    "Sharing all beds: year, week and day follow the beds the wards want together, every month and the busiest hour within "
+    "1 in 100, single hours up to 7 in 100 off where a day of short stays meets a week of long ones. Swings from day to day "
+    "count as independent; slower drift as hitting all wards at once, which errs towards more beds."
 )
 
 
@@ -39,8 +38,9 @@ def pool_wards(wards: Iterable[Ward]) -> Ward:
     factors are fitted to the beds the wards want together, so that a winter of few long stays isn't lost among many
     short ones; the busiest month never wants fewer. Hours of leaving are a mean by patients, and where they differ the
     mixed stay is scaled so that the beds wanted on average stay what they were. Clustering keeps the variance of the
-    beds wanted, for variances of independent streams add up. Rate variation is the mean by load, as if all wards' demand were off the same way together; independent
-    drift, √Σ(load·variation)² ÷ Σ load, would be smaller, so this errs towards more beds.
+    beds wanted, for variances of independent streams add up. Rate variation is the mean by load, as if all wards' demand
+    were off the same way together; independent drift, √Σ(load·variation)² ÷ Σ load, would be smaller, so this errs
+    towards more beds.
 
     Raises:
         ImpossibleFigure: no ward, two of one name, or wards that differ in what patients do when full or in weekdays
@@ -154,51 +154,23 @@ def _mixed_stay(demands: Sequence[Demand]) -> LengthOfStay:
     return reduce(mix, demands, (0.0, demands[0].length_of_stay))[1]
 
 
-@dataclass(frozen=True, slots=True)
-class PooledShare:
-    """One ward's patients: the share who find no free bed apart and together, and how many that is a year."""
-
-    ward: Ward
-    share_before: float
-    share_after: float
-
-    @property
-    def patients_before(self) -> float:
-        """Patients a year who find no free bed while the ward keeps its own beds."""
-        return self.ward.demand.total_arrivals_per_day * DAYS_PER_YEAR * self.share_before
-
-    @property
-    def patients_after(self) -> float:
-        """Patients a year who find no free bed when the beds are shared."""
-        return self.ward.demand.total_arrivals_per_day * DAYS_PER_YEAR * self.share_after
-
-    @property
-    def is_worse_off(self) -> bool:
-        """Whether a larger share of this ward's patients finds no free bed once the beds are shared."""
-        return self.share_after > self.share_before * (1 + 1e-6) + 1e-9
-
-
 @dataclass(frozen=True, slots=True, eq=False)
 class PoolingEffect:
-    """The shared ward, its curve, and each ward's patients before and after.
+    """The shared ward, its curve, and what becomes of the patients of each ward that shares, and of all together.
 
     ``beds_for_same_access``: the fewest shared beds that turn no more patients away than the wards do apart.
     """
 
     pooled: Ward
     curve: BedCurve
-    wards: tuple[PooledShare, ...]
+    wards: tuple[Ward, ...]
+    by_ward: tuple[Refused, ...]
     beds_for_same_access: int
 
     @property
-    def turned_away_before(self) -> float:
-        """Patients a year who find no free bed while each ward keeps its own."""
-        return math.fsum(one.patients_before for one in self.wards)
-
-    @property
-    def turned_away_after(self) -> float:
-        """Patients a year who find no free bed when the beds are shared."""
-        return math.fsum(one.patients_after for one in self.wards)
+    def patients(self) -> Refused:
+        """All wards' patients together."""
+        return Refused.together(self.by_ward)
 
 
 def pooling_effect(wards: Iterable[Ward], model: str | None = None) -> PoolingEffect:
@@ -216,11 +188,14 @@ def pooling_effect(wards: Iterable[Ward], model: str | None = None) -> PoolingEf
     pooled = pool_wards(wards)
     curve = pooled.curve(model)
     by_month = curve.at(pooled.beds).by_month
-    apart = [ward.curve(model).at(ward.beds).turn_away_probability for ward in wards]
-    shares = tuple(
-        PooledShare(ward, before, float(arrivals_by_month(ward.demand) @ by_month))
-        for ward, before in zip(wards, apart, strict=True)
+    by_ward = tuple(
+        Refused(
+            ward.demand.total_arrivals_per_day * DAYS_PER_YEAR,
+            ward.curve(model).at(ward.beds).turn_away_probability,
+            float(arrivals_by_month(ward.demand) @ by_month),
+        )
+        for ward in wards
     )
-    before = math.fsum(one.patients_before for one in shares)
+    before = math.fsum(one.before for one in by_ward)
     enough = [int(beds) for beds in curve.beds if patients_per_year(curve, int(beds)) <= before * (1 + 1e-9)]
-    return PoolingEffect(pooled, curve, shares, min(enough, default=int(curve.beds[-1])))
+    return PoolingEffect(pooled, curve, wards, by_ward, min(enough, default=int(curve.beds[-1])))

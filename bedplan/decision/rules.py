@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
+import math
+from abc import ABC, abstractmethod
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Literal, Protocol
+from typing import TYPE_CHECKING, ClassVar, Literal
 
 import numpy as np
 
 from bedplan.errors import ImpossibleFigure, TargetOutOfReach
+from bedplan.models.figures import ABOVE_ZERO, number
+from bedplan.models.year import MONTHS
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -17,40 +21,44 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
 
 Within = Literal["year", "every_month"]
-MONTHS = 12
+_BELOW_ONE = math.nextafter(1.0, 0.0)
 
 
-class Rule(Protocol):
-    """A limit: the figure it watches, for each bed count of a curve, and the most it may be."""
+class Rule(ABC):
+    """A limit: the figure it watches at each bed count of a curve, and the most it may be, where it must hold."""
+
+    __slots__ = ()
+    share: float
+    within: Within
 
     @property
     def most(self) -> float:
         """The most the figure may be."""
+        return self.share
 
+    @abstractmethod
     def over_year(self, curve: BedCurve) -> Array:
         """Return the year's figure for each bed count, ``(n,)``."""
 
+    @abstractmethod
     def by_month(self, curve: BedCurve) -> Array:
         """Return the figure for each month and bed count, ``(12, n)``."""
 
     def figures(self, curve: BedCurve) -> Array:
         """Return what must not exceed ``most``, for each bed count: the year's figure or the worst month's."""
+        return self.over_year(curve) if self.within == "year" else self.by_month(curve).max(axis=0)
 
-
-def _checked_share(share: float, name: str) -> None:
-    if not 0 < share < 1:
-        raise ImpossibleFigure(
-            f"A {name} of {share:g} is not possible: give a share above 0 and below 1, such as 0.05."
+    def _check(self, name: str) -> None:
+        """Refuse a share or a span that can't be."""
+        number(
+            f"A {name} of {{}}", self.most, (ABOVE_ZERO, _BELOW_ONE), "give a share above 0 and below 1, such as 0.05"
         )
-
-
-def _checked_within(within: str) -> None:
-    if within not in ("year", "every_month"):
-        raise ImpossibleFigure(f"{within!r} is not a span: a limit holds for the 'year' or for 'every_month'.")
+        if self.within not in ("year", "every_month"):
+            raise ImpossibleFigure(f"{self.within!r} is not a span: a limit holds for the 'year' or for 'every_month'.")
 
 
 @dataclass(frozen=True, slots=True)
-class TurnAwayLimit:
+class TurnAwayLimit(Rule):
     """At most this share of patients may find no free bed, in every month or over the year (which hides January)."""
 
     share: float
@@ -58,21 +66,11 @@ class TurnAwayLimit:
 
     def __post_init__(self) -> None:
         """Check the share and the span."""
-        _checked_share(self.share, "limit")
-        _checked_within(self.within)
-
-    @property
-    def most(self) -> float:
-        """The most the share may be."""
-        return self.share
+        self._check("limit")
 
     def over_year(self, curve: BedCurve) -> Array:
         """Return the share who find no free bed over the year."""
         return curve.turn_away_probability
-
-    def figures(self, curve: BedCurve) -> Array:
-        """Return the share who find no free bed: the year's, or the worst month's."""
-        return self.over_year(curve) if self.within == "year" else self.by_month(curve).max(axis=0)
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the share who find no free bed in each month."""
@@ -80,35 +78,27 @@ class TurnAwayLimit:
 
 
 @dataclass(frozen=True, slots=True)
-class OccupancyLimit:
+class OccupancyLimit(Rule):
     """At most this share of beds may be in use over the year. An output of chance and size, so a poor rule alone."""
 
+    within: ClassVar[Within] = "year"
     share: float
 
     def __post_init__(self) -> None:
         """Check the share."""
-        _checked_share(self.share, "occupancy limit")
-
-    @property
-    def most(self) -> float:
-        """The most the occupancy may be."""
-        return self.share
+        self._check("occupancy limit")
 
     def over_year(self, curve: BedCurve) -> Array:
-        """Return the year's occupancy."""
-        return self.figures(curve)
-
-    def figures(self, curve: BedCurve) -> Array:
         """Return the year's occupancy; a ward without beds counts as full when anyone wants one."""
         return np.where((curve.beds == 0) & (curve.demand.offered_load > 0), 1.0, curve.occupancy)
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the year's occupancy for every month: curves carry no more."""
-        return np.tile(self.figures(curve), (MONTHS, 1))
+        return np.tile(self.over_year(curve), (MONTHS, 1))
 
 
 @dataclass(frozen=True, slots=True)
-class OverfullLimit:
+class OverfullLimit(Rule):
     """At most this share of hours may see more patients than beds: for wards that never turn anyone away."""
 
     share_of_hours: float
@@ -116,8 +106,7 @@ class OverfullLimit:
 
     def __post_init__(self) -> None:
         """Check the share and the span."""
-        _checked_share(self.share_of_hours, "share of hours over-full")
-        _checked_within(self.within)
+        self._check("share of hours over-full")
 
     @property
     def most(self) -> float:
@@ -126,29 +115,23 @@ class OverfullLimit:
 
     def over_year(self, curve: BedCurve) -> Array:
         """Return the share of hours over-full over the year."""
-        if curve.overfull_share_of_hours is None:
-            raise _never_over_full()
-        return curve.overfull_share_of_hours
-
-    def figures(self, curve: BedCurve) -> Array:
-        """Return the share of hours over-full: the year's, or the worst month's."""
-        return self.over_year(curve) if self.within == "year" else self.by_month(curve).max(axis=0)
+        return self._known(curve.overfull_share_of_hours)
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the share of hours over-full in each month."""
-        if curve.overfull_by_month is None:
-            raise _never_over_full()
-        return curve.overfull_by_month
+        return self._known(curve.overfull_by_month)
 
-
-def _never_over_full() -> ImpossibleFigure:
-    return ImpossibleFigure(
-        "This model never puts more patients on a ward than it has beds: use a limit on patients instead."
-    )
+    @staticmethod
+    def _known(shares: Array | None) -> Array:
+        if shares is None:
+            raise ImpossibleFigure(
+                "This model never puts more patients on a ward than it has beds: use a limit on patients instead."
+            )
+        return shares
 
 
 @dataclass(frozen=True, slots=True)
-class WaitLimit:
+class WaitLimit(Rule):
     """At most this share of patients may wait longer than so many hours for a bed."""
 
     hours: float
@@ -157,23 +140,12 @@ class WaitLimit:
 
     def __post_init__(self) -> None:
         """Check the hours, the share and the span."""
-        _checked_share(self.share, "share waiting")
-        _checked_within(self.within)
-        if not 0 <= self.hours <= 720:
-            raise ImpossibleFigure(f"A wait of {self.hours:g} hours is not possible: give 0 to 720 hours.")
-
-    @property
-    def most(self) -> float:
-        """The most the share may be."""
-        return self.share
+        self._check("share waiting")
+        number("A wait of {} hours", self.hours, (0.0, 720.0), "give 0 to 720 hours")
 
     def over_year(self, curve: BedCurve) -> Array:
         """Return the share waiting longer over the year."""
         return self._waits(curve).share_over(self.hours)
-
-    def figures(self, curve: BedCurve) -> Array:
-        """Return the share waiting longer: the year's, or the worst month's."""
-        return self.over_year(curve) if self.within == "year" else self.by_month(curve).max(axis=0)
 
     def by_month(self, curve: BedCurve) -> Array:
         """Return the share waiting longer in each month."""

@@ -11,6 +11,7 @@ import numpy as np
 
 from bedplan.decision.comparing import DAYS_PER_YEAR
 from bedplan.errors import ImpossibleFigure
+from bedplan.models.figures import number, whole
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping, Sequence
@@ -91,10 +92,13 @@ def share_beds(
     """
     wards = named_once(wards)
     today = {ward.name: ward.beds for ward in wards}
-    total = sum(today.values()) if total is None else _whole("beds to share", total, 0)
-    floors = {name: _whole("fewest beds", beds, 0) for name, beds in _by_name(today, floors, 0).items()}
-    steps = {name: _whole("bay size", beds, 1) for name, beds in _by_name(today, steps, 1).items()}
-    weights = {name: _weight(weight) for name, weight in _by_name(today, weights, 1.0).items()}
+    total = sum(today.values()) if total is None else _beds("beds to share", total, 0)
+    floors = {name: _beds("fewest beds", beds, 0) for name, beds in _by_name(today, floors, 0).items()}
+    steps = {name: _beds("bay size", beds, 1) for name, beds in _by_name(today, steps, 1).items()}
+    weights = {
+        name: number("A weight of {}", weight, (0.0, math.inf), "a patient counts 0 or more")
+        for name, weight in _by_name(today, weights, 1.0).items()
+    }
     _enough(total, [_fewest_of(ward, floors[ward.name], steps[ward.name]) for ward in wards])
     choices = [_choices(ward, total, floors[ward.name], steps[ward.name], weights[ward.name]) for ward in wards]
     beds = dict(zip(today, _fewest(choices, total), strict=True))
@@ -130,18 +134,9 @@ def _by_name(today: Mapping[str, int], given: Mapping[str, float] | None, otherw
     return {name: given.get(name, otherwise) for name in today}
 
 
-def _whole(name: str, beds: float, least: int) -> int:
-    if not (least <= beds <= MOST_SHARED_BEDS and beds == int(beds)):
-        raise ImpossibleFigure(
-            f"{beds:g} as {name} is not possible: give a whole number from {least} to {MOST_SHARED_BEDS:,}."
-        )
-    return int(beds)
-
-
-def _weight(weight: float) -> float:
-    if not (math.isfinite(weight) and weight >= 0):
-        raise ImpossibleFigure(f"A weight of {weight:g} is not possible: a patient counts 0 or more.")
-    return float(weight)
+def _beds(name: str, beds: object, least: int) -> int:
+    allowed = f"give a whole number from {least} to {MOST_SHARED_BEDS:,}"
+    return whole(f"{{}} as {name}", beds, (least, MOST_SHARED_BEDS), allowed)
 
 
 def _fewest_of(ward: Ward, floor: int, step: int) -> int:

@@ -70,11 +70,6 @@ class BedPoint:
         """The month (0 = January) in which the largest share finds no free bed."""
         return int(np.argmax(self.by_month))
 
-    @property
-    def best_month(self) -> int:
-        """The month (0 = January) in which the smallest share finds no free bed."""
-        return int(np.argmin(self.by_month))
-
 
 def _of_hours(share_over: Callable[[float], NDArray[np.float64]]) -> Callable[[float], NDArray[np.float64]]:
     """Return the same question, refusing waits that are none."""

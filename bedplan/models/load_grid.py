@@ -6,8 +6,7 @@ in the square root of the load, 0.14 standard deviations of a ward's census apar
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
@@ -22,18 +21,11 @@ _OFFSETS = np.arange(6)
 _SCALES = np.array([1.0 / np.prod([j - i for i in range(6) if i != j]) for j in range(6)])
 
 
-@dataclass(frozen=True, slots=True)
-class LoadGrid:
+class LoadGrid(NamedTuple):
     """Loads ``(g,)`` ascending, and for each group of hours the weight of each load, ``(groups, g)``."""
 
     loads: Array
     weights: Array
-
-    def mean(self, figures: Array) -> Array:
-        """Average a figure known at each load, ``(..., g)``, within each group: ``(groups, ...)``; 0 without weight."""
-        total = self.weights.sum(axis=1).reshape(-1, *[1] * (figures.ndim - 1))
-        sums = np.tensordot(self.weights, figures, axes=(1, -1))
-        return np.divide(sums, total, out=np.zeros_like(sums), where=total > 0)
 
 
 def load_grid(loads: Array, shares: Array, groups: NDArray[np.int64], group_count: int) -> LoadGrid:

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from bedplan.models.bed_curve import BedCurve, bed_counts
 from bedplan.models.clusters import TOGETHER_NOTE, clustering_notes, loss_table, swing_when_full
+from bedplan.models.found_full import GROUPS, FoundFull, group_of_hour, month_of_group, shares_full, weekday_of_group
 from bedplan.models.load_grid import load_grid
 from bedplan.models.rhythm_correction import rhythm_correction, season_correction
 from bedplan.models.uncertain_rate import possible_rates
@@ -16,12 +17,11 @@ from bedplan.models.year import (
     all_booked_in_week,
     beds_wanted,
     booked_load_in_week,
+    leaving_of,
     mean_week,
-    month_of_hour,
     patients_wanted,
     unbooked_by_hour,
     unbooked_load_by_hour,
-    weekday_of_hour,
 )
 
 if TYPE_CHECKING:
@@ -30,10 +30,6 @@ if TYPE_CHECKING:
     from bedplan.models.demand import Demand
 
     Array = NDArray[np.float64]
-
-_GROUPS = 12 * 7
-_GROUP_OF_HOUR = month_of_hour * 7 + weekday_of_hour
-_MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 
 _WIDEST_LEVELS = 5.0
 _METHOD = (
@@ -66,32 +62,14 @@ _SHORTER, _RATHER_EVEN, _LONG_DAYS = 0.75, 0.7, 14.0
 _MOST_IN_AN_HOUR, _SHORT_DAYS, _SWING_OF_WEEK = 0.25, 0.25, 0.1
 
 
-class _TurnedAway(NamedTuple):
-    """Patients a year and those of them turned away, by month and weekday: ``(84,)`` and ``(84, n)``."""
-
-    patients: Array
-    turned_away: Array
-
-    def share(self, by: NDArray[np.int64], groups: int) -> Array:
-        """Return the share turned away in each of the larger groups that ``by`` ``(84,)`` puts them in."""
-        patients = np.zeros(groups)
-        turned_away = np.zeros((groups, self.turned_away.shape[1]))
-        np.add.at(patients, by, self.patients)
-        np.add.at(turned_away, by, self.turned_away)
-        return np.minimum(turned_away / np.maximum(patients, 1e-300)[:, None], 1.0)
-
-    def __add__(self, other: _TurnedAway) -> _TurnedAway:
-        return _TurnedAway(self.patients + other.patients, self.turned_away + other.turned_away)
-
-
 def _level_of_groups(demand: Demand) -> Array:
     """Return how much more unbooked demand than in the year's mean week each month × weekday has, ``(84,)``."""
     usual = np.tile(mean_week(demand).unbooked_load, WEEKS)
     level = np.divide(unbooked_load_by_hour(demand), usual, out=np.ones_like(usual), where=usual > 1e-9)
-    return np.bincount(_GROUP_OF_HOUR, weights=level) / np.bincount(_GROUP_OF_HOUR)
+    return np.bincount(group_of_hour, weights=level) / np.bincount(group_of_hour)
 
 
-def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[_TurnedAway, _TurnedAway]:
+def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[FoundFull, FoundFull]:
     """Return unbooked and booked patients turned away: the first cut at every rate, times what the rhythm adds."""
     unbooked, booked = unbooked_by_hour(demand), np.tile(all_booked_in_week(demand), WEEKS)
     unbooked_load, booked_load = unbooked_load_by_hour(demand), np.tile(booked_load_in_week(demand), WEEKS)
@@ -101,7 +79,7 @@ def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[_TurnedAway
     keep = weights * rates > 1e-12
     rates, weights = rates[keep], weights[keep]
     swing = 1.0 + (swing_when_full(demand) - 1.0) * drifting
-    grids = [load_grid(load, patients, _GROUP_OF_HOUR, _GROUPS) for patients in (unbooked, booked)]
+    grids = [load_grid(load, patients, group_of_hour, GROUPS) for patients in (unbooked, booked)]
     loads = np.outer(1.0 + (rates - 1.0) * drifting, grids[0].loads)
     first_cut = loss_table(loads.ravel(), counts, swing).reshape(counts.size, *loads.shape)
     levels = np.outer(rates, _level_of_groups(demand))
@@ -109,8 +87,11 @@ def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[_TurnedAway
     highest = float(levels[likely].max())
     week = rhythm_correction(demand, max(float(levels[likely].min()), highest / _WIDEST_LEVELS), highest)
     season = season_correction(demand)
-    factors = [np.ones((rates.size, _GROUPS, 1))] * 2
-    for correction, level, part in ((week, levels, _WEEKDAY), (season, np.tile(rates[:, None], _GROUPS), _MONTH)):
+    factors = [np.ones((rates.size, GROUPS, 1))] * 2
+    for correction, level, part in (
+        (week, levels, weekday_of_group),
+        (season, np.tile(rates[:, None], GROUPS), month_of_group),
+    ):
         if correction is not None:
             factors = [old * new for old, new in zip(factors, correction.factors(level, counts, part), strict=True)]
     found = []
@@ -120,7 +101,7 @@ def _turned_away(demand: Demand, counts: NDArray[np.int64]) -> tuple[_TurnedAway
         turned_away = np.clip(np.einsum("r,rgn->gn", weight, at_rates), 0.0, patients[:, None])
         turned_away[:, counts == 0] = patients[:, None]
         # More beds never turn more away: raise what interpolation left too low, never lower anything.
-        found.append(_TurnedAway(patients, np.maximum.accumulate(turned_away[:, ::-1], axis=1)[:, ::-1]))
+        found.append(FoundFull(patients, np.maximum.accumulate(turned_away[:, ::-1], axis=1)[:, ::-1]))
     return found[0], found[1]
 
 
@@ -146,7 +127,7 @@ def _kinds_of_ward_notes(demand: Demand) -> list[str]:
 
 def _notes(demand: Demand) -> tuple[str, ...]:
     """Say how the figures were found, and which way they may be off."""
-    notes = [_METHOD]
+    notes = [] if demand.is_steady and not leaving_of(demand).has_rhythm else [_METHOD]
     if np.ptp(demand.month_factors) > 1e-9:
         stay = demand.length_of_stay
         long_and_even = stay.mean_days > _LONG_DAYS and stay.variation < _RATHER_EVEN
@@ -172,21 +153,15 @@ def seasonal_loss(demand: Demand, beds: ArrayLike) -> BedCurve:
     Checked by: tests/models/test_seasonal.py
     """
     counts = bed_counts(beds)
-    groups = _turned_away(demand, counts)
-    everyone = groups[0] + groups[1]
-    year = np.zeros(_GROUPS, dtype=np.int64)
-    turned_away = everyone.share(year, 1)[0]
-    occupancy = patients_wanted(demand) * (1.0 - turned_away) / np.maximum(counts, 1)
+    unbooked, booked = _turned_away(demand, counts)
+    shares = shares_full(unbooked, booked if demand.booked else None)
+    occupancy = patients_wanted(demand) * (1.0 - shares["turn_away_probability"]) / np.maximum(counts, 1)
     return BedCurve(
-        "seasonal_loss",
-        "leaves",
-        demand,
-        counts,
-        turned_away,
-        np.where(counts > 0, np.minimum(occupancy, 1.0), 0.0),
-        everyone.share(_MONTH, 12),
-        _notes(demand),
-        by_weekday=everyone.share(_WEEKDAY, 7),
-        unbooked_turn_away=groups[0].share(year, 1)[0],
-        booked_turn_away=groups[1].share(year, 1)[0] if demand.booked else None,
+        model="seasonal_loss",
+        when_full="leaves",
+        demand=demand,
+        beds=counts,
+        occupancy=np.where(counts > 0, np.minimum(occupancy, 1.0), 0.0),
+        notes=_notes(demand),
+        **shares,
     )

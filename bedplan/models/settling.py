@@ -21,9 +21,8 @@ import numpy as np
 from scipy import linalg, special
 from scipy.linalg import lapack
 
-from bedplan.models.leaving import HOURS_A_YEAR
 from bedplan.models.periodic_chain import Rhythm, leaving_rates
-from bedplan.models.year import arrivals_by_hour, offered_load_by_hour
+from bedplan.models.year import YEAR_DAYS, arrivals_by_hour, offered_load_by_hour
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -33,7 +32,6 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]
 
-DAYS = HOURS_A_YEAR // 24
 _POLE = 2.0 + 1j * np.sqrt(2.0)
 _AT_END = (1.0 + _POLE / 3.0) * 6.0 / (2j * _POLE.imag)
 _IN_STEP = (1.0 - _POLE / 6.0) * 6.0 / (2j * _POLE.imag)
@@ -52,8 +50,8 @@ class Days(NamedTuple):
 
 def days_of(demand: Demand) -> Days:
     """How many patients come on each day of the year, and at which rate does each bed in use come free?"""
-    coming = arrivals_by_hour(demand).reshape(DAYS, 24).sum(axis=1)
-    load_at_end = offered_load_by_hour(demand).reshape(DAYS, 24)[:, -1]
+    coming = arrivals_by_hour(demand).reshape(YEAR_DAYS, 24).sum(axis=1)
+    load_at_end = offered_load_by_hour(demand).reshape(YEAR_DAYS, 24)[:, -1]
     leaving = leaving_rates(Rhythm(coming[:, None], load_at_end[:, None]))[:, 0]
     return Days(coming, leaving, load_at_end)
 
@@ -101,7 +99,7 @@ def share_full_by_day(days: Days, open_beds: Counts) -> Array:
     full = np.zeros(open_beds.shape)
     for _ in range(_MOST_YEARS):
         start = state
-        for day in range(DAYS):
+        for day in range(YEAR_DAYS):
             total = np.zeros(wards.most.size)
             for _ in range(steps[day]):
                 rates = days.coming[day] / steps[day], days.leaving[day] / steps[day]

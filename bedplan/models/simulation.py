@@ -40,7 +40,7 @@ class SimulatedWard:
     they change by day; above 1 only where patients stay anyway. ``by_month`` ``(12,)``,
     January first: the same share by month of coming. ``gave_up``: share who waited and then left.
     ``booked_turn_away_probability``: the share among booked patients, 0 without any. ``mean_wait_hours``: over all
-    patients, those who gave up included. The last five fields are what all these are counted from.
+    patients, those who gave up included. The last four fields are what all these are counted from.
     """
 
     demand: Demand
@@ -59,7 +59,6 @@ class SimulatedWard:
     found_full: Array = field(repr=False)
     came_by_month: Array = field(repr=False)
     waited_hours: Array = field(repr=False)
-    waited_month: NDArray[np.int64] = field(repr=False)
 
     @property
     def interval(self) -> tuple[float, float]:
@@ -90,13 +89,6 @@ class SimulatedWard:
         """Which share of all patients waited longer than this many hours, for a bed or until they gave up?"""
         hours = number("A wait of {} hours", hours, (0.0, 1e9), "it is 0 or more")
         return float(np.count_nonzero(self.waited_hours > hours)) / max(self.arrivals, 1)
-
-    def share_waiting_over_by_month(self, hours: float) -> Array:
-        """Which share of those who came in each month waited longer than this many hours? ``(12,)``, January first."""
-        hours = number("A wait of {} hours", hours, (0.0, 1e9), "it is 0 or more")
-        longer = np.bincount(self.waited_month[self.waited_hours > hours], minlength=12)
-        by_month = longer / np.maximum(self.came_by_month, 1.0)
-        return np.where(self.came_by_month > 0, by_month, self.share_waiting_over(hours))
 
 
 @dataclass(frozen=True, slots=True)
@@ -221,5 +213,4 @@ def _result(plan: _Plan, beds: int, extent: Extent, seed: int, counts: Counts) -
         found_full=counts.found_full,
         came_by_month=months,
         waited_hours=24.0 * counts.waited_days,
-        waited_month=counts.waited_month,
     )

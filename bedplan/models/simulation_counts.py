@@ -33,7 +33,6 @@ class Counts:
     gave_up: float
     patient_days: float
     waited_days: Array
-    waited_month: NDArray[np.int64]
 
 
 def _month_of(days: Array, extent: Extent) -> NDArray[np.int64]:
@@ -79,13 +78,12 @@ def counts_of(comers: Comers, passage: Passage, extent: Extent, *, by_month: boo
         gave_up=float(np.count_nonzero(waited & (ready > at + patience))),
         patient_days=patient_days_of(comers, passage, extent, is_patient),
         waited_days=np.minimum(ready - at, patience)[waited],
-        waited_month=month[waited],
     )
 
 
 def joined(blocks: list[Counts]) -> Counts:
     """Put the blocks of replications together."""
-    side_by_side = {"came", "found_full", "waited_days", "waited_month"}
+    side_by_side = {"came", "found_full", "waited_days"}
     return Counts(
         **{
             one.name: np.concatenate([getattr(block, one.name) for block in blocks])

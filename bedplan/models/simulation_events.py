@@ -12,8 +12,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bedplan.models.simulation_run import DAYS_A_YEAR, YEAR_DAYS
-from bedplan.models.year import HOURS_A_YEAR, unbooked_by_hour
+from bedplan.models.simulation_run import DAYS_A_YEAR
+from bedplan.models.year import HOURS_A_YEAR, YEAR_DAYS, unbooked_by_hour
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray

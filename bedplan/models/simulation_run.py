@@ -10,12 +10,11 @@ from typing import TYPE_CHECKING, Literal
 from bedplan.errors import ImpossibleFigure
 from bedplan.models.bed_curve import MOST_BEDS
 from bedplan.models.figures import ABOVE_ZERO, all_of_kind, listed, number, whole
-from bedplan.models.year import MONTH_DAYS
+from bedplan.models.year import MONTH_DAYS, YEAR_DAYS
 
 if TYPE_CHECKING:
     from bedplan.models.demand import Demand
 
-YEAR_DAYS = 364
 DAYS_A_YEAR = float(YEAR_DAYS)
 USUAL_ARRIVALS = 1_000_000
 MOST_REPLICATIONS, FEWEST_REPLICATIONS = 1_000, 20

@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
 from bedplan.models.bed_curve import BedCurve, bed_counts
 from bedplan.models.census import Watch, chance_of
+from bedplan.models.found_full import FoundFull, group_of_hour, shares_full
 from bedplan.models.group_census import more_find_full_if_groups_differ
 from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR
 from bedplan.models.year import (
@@ -19,7 +20,6 @@ from bedplan.models.year import (
     offered_load_by_hour,
     patients_wanted,
     unbooked_by_hour,
-    weekday_of_hour,
 )
 
 if TYPE_CHECKING:
@@ -30,9 +30,6 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]
 
-_GROUPS = 12 * 7
-_GROUP_OF_HOUR = month_of_hour * 7 + weekday_of_hour
-_MONTH, _WEEKDAY = np.divmod(np.arange(_GROUPS), 7)
 _BUSY = 0.05
 _SMOOTH_NOTE = (
     "Arrivals smoother than chance: the number present is taken as binomial. Where 1 in 20 or more find the ward full the "
@@ -40,13 +37,6 @@ _SMOOTH_NOTE = (
 )
 _GROUPS_IN_RHYTHM = ", and with a rhythm of the week or day the figure is at most 1 % too low and 3 % too high"
 _MOST_COUNTS = 2_000
-
-
-def _mean_over(shares: Array, weights: Array, by: Counts, groups: int) -> Array:
-    """Average shares ``(84, n)`` with weights ``(84,)`` within larger groups."""
-    of_group = (by == np.arange(groups)[:, None]) * weights
-    mean = of_group @ shares / np.maximum(of_group.sum(axis=1), 1e-300)[:, None]
-    return np.where(mean > 1.0 - 1e-14, 1.0, mean)
 
 
 def unlimited_beds(demand: Demand, beds: ArrayLike) -> BedCurve:
@@ -63,31 +53,29 @@ def unlimited_beds(demand: Demand, beds: ArrayLike) -> BedCurve:
     Checked by: tests/models/test_unlimited.py
     """
     counts = bed_counts(beds)
-    unbooked, booked = unbooked_by_hour(demand), np.tile(all_booked_in_week(demand), WEEKS)
-    patients = [np.bincount(_GROUP_OF_HOUR, weights=one) for one in (unbooked, booked)]
-    finds_full = [chance_of(demand, counts, Watch(unbooked, _GROUP_OF_HOUR, "unbooked")), np.zeros(1)]
+    unbooked = _found_full(demand, counts, unbooked_by_hour(demand), "unbooked")
+    booked = None
     if demand.booked:
-        finds_full[1] = chance_of(demand, counts, Watch(booked, _GROUP_OF_HOUR, "booked"))
-    everyone = patients[0] + patients[1]
-    found = sum(one[:, None] * shares for one, shares in zip(patients, finds_full, strict=True))
-    shares = np.where(counts > 0, found / np.maximum(everyone, 1e-300)[:, None], (everyone > 0)[:, None])
+        booked = _found_full(demand, counts, np.tile(all_booked_in_week(demand), WEEKS), "booked")
     overfull = chance_of(demand, counts + 1, Watch(np.ones(HOURS_A_YEAR), month_of_hour))
-    year = np.zeros(_GROUPS, dtype=np.int64)
     return BedCurve(
-        "unlimited_beds",
-        "stays anyway",
-        demand,
-        counts,
-        _mean_over(shares, everyone, year, 1)[0],
-        np.where(counts > 0, patients_wanted(demand) / np.maximum(counts, 1), 0.0),
-        _mean_over(shares, everyone, _MONTH, 12),
-        _notes(demand),
+        model="unlimited_beds",
+        when_full="stays anyway",
+        demand=demand,
+        beds=counts,
+        occupancy=np.where(counts > 0, patients_wanted(demand) / np.maximum(counts, 1), 0.0),
+        notes=_notes(demand),
         overfull_share_of_hours=np.bincount(month_of_hour) @ overfull / HOURS_A_YEAR,
         overfull_by_month=overfull,
-        by_weekday=_mean_over(shares, everyone, _WEEKDAY, 7),
-        unbooked_turn_away=_mean_over(finds_full[0], patients[0], year, 1)[0],
-        booked_turn_away=_mean_over(finds_full[1], patients[1], year, 1)[0] if demand.booked else None,
+        **shares_full(unbooked, booked),
     )
+
+
+def _found_full(demand: Demand, counts: Counts, comers: Array, who: Literal["unbooked", "booked"]) -> FoundFull:
+    """Return who comes and who of them finds at least as many patients as beds; without beds, everyone."""
+    patients = np.bincount(group_of_hour, weights=comers)
+    shares = np.where(counts > 0, chance_of(demand, counts, Watch(comers, group_of_hour, who)), 1.0)
+    return FoundFull(patients, patients[:, None] * shares)
 
 
 def _notes(demand: Demand) -> tuple[str, ...]:

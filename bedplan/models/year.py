@@ -21,7 +21,9 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
 
 MONTH_DAYS = (31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 30)
+MONTHS, WEEKDAYS = 12, 7
 WEEKS = HOURS_A_YEAR // HOURS_A_WEEK
+YEAR_DAYS = HOURS_A_YEAR // 24
 
 
 def _fixed(array: NDArray[np.generic]) -> NDArray[np.generic]:
@@ -31,8 +33,9 @@ def _fixed(array: NDArray[np.generic]) -> NDArray[np.generic]:
 
 
 hour_of_day = _fixed(np.arange(HOURS_A_YEAR) % 24)
-weekday_of_hour = _fixed(np.arange(HOURS_A_YEAR) // 24 % 7)
-month_of_hour = _fixed(np.repeat(np.arange(12), 24 * np.array(MONTH_DAYS)))
+weekday_of_hour = _fixed(np.arange(HOURS_A_YEAR) // 24 % WEEKDAYS)
+month_of_hour = _fixed(np.repeat(np.arange(MONTHS), 24 * np.array(MONTH_DAYS)))
+month_of_day, weekday_of_day = month_of_hour[::24], weekday_of_hour[::24]
 
 
 def leaving_of(demand: Demand) -> Leaving:

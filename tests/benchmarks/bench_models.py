@@ -89,7 +89,7 @@ def milliseconds(work: Callable[[], object], times: int = 7) -> tuple[float, flo
 def first_cut(demand: Demand) -> np.ndarray:
     """Return the modified offered load's share by month, for 0 to 200 beds."""
     grid = load_grid(offered_load_by_hour(demand), arrivals_by_hour(demand), month_of_hour, 12)
-    return grid.mean(erlang_b_table(grid.loads, BEDS))
+    return grid.weights @ erlang_b_table(grid.loads, BEDS).T / grid.weights.sum(axis=1)[:, None]
 
 
 def by_reference_library(demand: Demand) -> np.ndarray:

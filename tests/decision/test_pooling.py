@@ -52,10 +52,9 @@ def test_sharing_equal_wards_helps_as_published(count: int, share: float) -> Non
     """
     effect = pooling_effect([ward(f"ward {n}", 10, 8.0) for n in range(count)], "erlang_loss")
 
-    for one in effect.wards:
+    for one in effect.by_ward:
         assert one.share_before == pytest.approx(0.1216611, abs=5e-8)
         assert one.share_after == pytest.approx(share, abs=5e-8)
-        assert not one.is_worse_off
 
 
 @pytest.mark.parametrize(("count", "beds"), [(1, 14), (2, 24), (4, 42)])
@@ -80,20 +79,20 @@ def test_everyone_in_a_shared_ward_meets_the_same_chance(
     effect = pooling_effect(wards, "erlang_loss")
     expected = share_of_two_kinds(loads, sum(beds))
 
-    for one in effect.wards:
-        assert one.share_after == pytest.approx(expected, rel=1e-9)
-        assert one.patients_after == pytest.approx(365 * one.ward.demand.arrivals_per_day * expected, rel=1e-9)
+    for one, refused in zip(wards, effect.by_ward, strict=True):
+        assert refused.share_after == pytest.approx(expected, rel=1e-9)
+        assert refused.after == pytest.approx(365 * one.demand.arrivals_per_day * expected, rel=1e-9)
 
 
 def test_a_generously_bedded_ward_loses_by_sharing() -> None:
     """The well-off ward's patients are turned away more, the other's less, and together fewer: stays are alike."""
     effect = pooling_effect([ward("Plover", 20, 10.0), ward("Teal", 10, 12.0)])
-    plover, teal = effect.wards
+    plover, teal = effect.by_ward
 
-    assert plover.is_worse_off
-    assert not teal.is_worse_off
+    assert plover.share_after > plover.share_before
+    assert teal.share_after < teal.share_before
     assert plover.share_after == pytest.approx(teal.share_after)
-    assert effect.turned_away_after < effect.turned_away_before
+    assert effect.patients.after < effect.patients.before
 
 
 def test_sharing_with_long_stays_can_turn_more_away_in_total() -> None:
@@ -110,10 +109,10 @@ def test_sharing_with_long_stays_can_turn_more_away_in_total() -> None:
 
     before = 365 * (20 * erlang(10.0, 20) + 0.2 * erlang(10.0, 6))
     after = 365 * 20.2 * erlang(20.0, 26)
-    assert effect.turned_away_before == pytest.approx(before, rel=1e-9)
-    assert effect.turned_away_after == pytest.approx(after, rel=1e-9)
+    assert effect.patients.before == pytest.approx(before, rel=1e-9)
+    assert effect.patients.after == pytest.approx(after, rel=1e-9)
     assert after > before
-    assert [one.is_worse_off for one in effect.wards] == [True, False]
+    assert [one.share_after > one.share_before for one in effect.by_ward] == [True, False]
 
 
 @settings(derandomize=True, max_examples=15, deadline=None)
@@ -126,11 +125,11 @@ def test_sharing_never_hurts_wards_with_the_same_stays(loads: tuple[float, ...],
     ]
     effect = pooling_effect(wards, "erlang_loss")
 
-    assert effect.turned_away_after <= effect.turned_away_before * (1 + 1e-9)
+    assert effect.patients.after <= effect.patients.before * (1 + 1e-9)
     assert effect.beds_for_same_access <= sum(one.beds for one in wards)
     at_fewer = effect.curve.turn_away_probability[max(effect.beds_for_same_access - 1, 0)]
     if effect.beds_for_same_access:
-        assert at_fewer * sum(one.demand.arrivals_per_day for one in wards) * 365 > effect.turned_away_before
+        assert at_fewer * sum(one.demand.arrivals_per_day for one in wards) * 365 > effect.patients.before
 
 
 def test_unlike_seasons_share_each_others_slack() -> None:
@@ -141,12 +140,12 @@ def test_unlike_seasons_share_each_others_slack() -> None:
     unlike = pooling_effect([Ward("Kestrel", 14, cold), Ward("Teal", 14, warm)])
     alike = pooling_effect([Ward("Kestrel", 14, cold), Ward("Teal", 14, cold)])
 
-    assert unlike.turned_away_after < 0.8 * alike.turned_away_after
+    assert unlike.patients.after < 0.8 * alike.patients.after
     assert unlike.pooled.demand.month_factors == pytest.approx([1.0] * 12, abs=2e-3)
     for effect in (unlike, alike):
         together = effect.pooled.demand.total_arrivals_per_day * 365
         share = effect.curve.at(effect.pooled.beds).turn_away_probability
-        assert effect.turned_away_after == pytest.approx(together * share, rel=2e-3)
+        assert effect.patients.after == pytest.approx(together * share, rel=2e-3)
 
 
 def test_one_ward_takes_over_every_figure() -> None:
@@ -327,7 +326,7 @@ def test_equal_stays_stay_as_they_are_and_empty_wards_add_nothing() -> None:
     assert pooled.beds == 21
     assert pooled.admissions_per_year is None
     nobody = pooling_effect([Ward(name, 3, Demand(0.0, STAY)) for name in ("Plover", "Teal")])
-    assert (nobody.turned_away_before, nobody.turned_away_after) == (0.0, 0.0)
+    assert (nobody.patients.before, nobody.patients.after) == (0.0, 0.0)
     assert nobody.beds_for_same_access == 0
 
 

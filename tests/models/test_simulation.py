@@ -517,14 +517,12 @@ def test_no_beds_and_no_demand() -> None:
     assert (quiet.arrivals, quiet.turn_away_probability, quiet.occupancy) == (0, 0.0, 0.0)
 
 
-def test_months_keep_their_own_waits() -> None:
-    """A winter twice as busy is the time of the waits, and the year is the months weighed by their patients."""
+def test_months_keep_their_own_shares() -> None:
+    """A winter twice as busy is the time of the full ward, and the year is the months weighed by their patients."""
     demand = Demand(5.0, EXPONENTIAL, month_factors=(1.5, 1.4, 1.1, 1, 0.9, 0.8, 0.8, 0.8, 0.9, 0.9, 0.9, 1.0))
     ward = simulate_ward(demand, 28, seed=1, when_full="waits", run=WardRun(replications=60, days=364))
-    by_month = ward.share_waiting_over_by_month(4.0)
 
-    assert by_month[0] > 5.0 * by_month[6]
-    assert by_month @ ward.came_by_month / ward.came_by_month.sum() == pytest.approx(ward.share_waiting_over(4.0))
+    assert ward.by_month[0] > 5.0 * ward.by_month[6]
     assert ward.by_month @ ward.came_by_month / ward.arrivals == pytest.approx(ward.turn_away_probability)
 
 
@@ -587,7 +585,6 @@ A_RUN = simulate_ward(Demand(6.0, EXPONENTIAL), 20, seed=1, run=WardRun(replicat
         (lambda: A_RUN.interval_at(math.nan), "confidence of nan"),
         (lambda: A_RUN.share_waiting_over(-1), "wait of -1 hours"),
         (lambda: A_RUN.share_waiting_over(math.nan), "wait of nan hours"),
-        (lambda: A_RUN.share_waiting_over_by_month(None), "wait of None hours"),
     ],
 )
 def test_impossible_figures(build: object, words: str) -> None:

@@ -262,7 +262,7 @@ def test_the_grid_of_loads_stands_for_every_hour(load: float) -> None:
     )
 
     grid = load_grid(loads, arrivals, month_of_hour, 12)
-    found = grid.mean(erlang_b_table(grid.loads, counts))
+    found = grid.weights @ erlang_b_table(grid.loads, counts).T / grid.weights.sum(axis=1)[:, None]
 
     for column, count in enumerate(counts):
         every_hour = erlang_b(loads, count)
