@@ -15,7 +15,7 @@ from bedplan.pages import controls, loaded, saved, typed
 from bedplan.plan import NO_COLUMN, Answers
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Mapping
+    from collections.abc import Callable
 
     from bedplan.data import ColumnPreview, DateQuestion
     from bedplan.plan import FileAnswers
@@ -204,13 +204,14 @@ def columns_of(given: Given) -> ColumnPreview | None:
     asked = (given.name, hash(given.content), tuple(given.answers.columns.items()))
     kept = st.session_state.get(f"{given.kind}_seen")
     if kept is None or kept[0] != asked:
-        kept = (asked, _look(given, given.answers.columns) or _look(given, {}))
+        kept = (asked, _look(given))
         st.session_state[f"{given.kind}_seen"] = kept
     return kept[1]
 
 
-def _look(given: Given, columns: Mapping[str, str]) -> ColumnPreview | None:
+def _look(given: Given) -> ColumnPreview | None:
     """Look at the columns of a file; None where that can't be done."""
+    columns = given.answers.columns
     try:
         return preview_columns(given.content, name=given.name, columns=columns, kind=FILE_KINDS[given.kind])
     except BedplanError:
@@ -227,26 +228,38 @@ def confirm_columns(given: Given, use: Callable[[Any], None], *, is_fresh: bool,
         st.expander("How the columns were read", expanded=is_unsure and can_help),
         st.form(f"{given.kind}_columns", border=False),
     ):
+        if is_unsure and can_help:
+            st.caption("Say which column is which, and it is read again.")
         if seen.hint:
             st.caption(wording.plain(seen.hint))
+        if seen.others:
+            told = [f"- {wording.plain(heading)}: {_cells(cells)}" for heading, cells in seen.others.items()]
+            st.caption("\n".join(["Columns not used, and what their first rows hold:", *told]))
         chosen = {key: ask_column(f"{given.kind}_column_{key}", key, seen, is_fresh=is_fresh) for key in seen.asked}
         if st.form_submit_button("Read it again with these columns"):
             others = {key: heading for key, heading in given.answers.columns.items() if key not in seen.asked}
-            left_out = {key for key in seen.asked if key in seen.matched or key in given.answers.columns}
-            named = {key: heading for key, heading in chosen.items() if heading is not None}
-            use(replace(given.answers, columns={**others, **dict.fromkeys(left_out, NO_COLUMN), **named}))
+            said = {key for key in chosen if chosen[key] or key in seen.matched or key in given.answers.columns}
+            use(replace(given.answers, columns={**others, **{key: chosen[key] for key in chosen if key in said}}))
 
 
-def ask_column(place: str, key: str, seen: ColumnPreview, *, is_fresh: bool) -> str | None:
-    """Ask which heading stands for one of our names, three of its rows beside it; None = no column."""
+def ask_column(place: str, key: str, seen: ColumnPreview, *, is_fresh: bool) -> str:
+    """Ask which heading stands for one of our names, three of its rows beside it."""
     if is_fresh or place not in st.session_state:
-        st.session_state[place] = seen.matched.get(key)
-    left, right = st.columns([1, 2])
+        st.session_state[place] = seen.matched.get(key, NO_COLUMN)
+    left, right = st.columns(2, vertical_alignment="bottom")
     chosen = left.selectbox(
-        wording.column(key), [None, *seen.headings], format_func=lambda one: NONE if one is None else one, key=place
+        wording.column(key),
+        [NO_COLUMN, *seen.headings],
+        format_func=lambda heading: NONE if heading == NO_COLUMN else heading,
+        key=place,
     )
-    right.caption(wording.plain(" · ".join(seen.samples.get(key, ())) or "–"))
+    right.caption(_cells(seen.samples.get(key, ())))
     return chosen
+
+
+def _cells(cells: tuple[str, ...]) -> str:
+    """Return the first cells of a column as they are shown."""
+    return wording.plain(" · ".join(cell or "–" for cell in cells) or "–")
 
 
 def confirm_links() -> None:

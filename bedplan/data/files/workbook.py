@@ -5,7 +5,8 @@ from __future__ import annotations
 import datetime as dt
 import io
 import zipfile
-from typing import TYPE_CHECKING
+from itertools import islice
+from typing import TYPE_CHECKING, TypeVar
 
 import openpyxl
 import pyarrow as pa
@@ -19,7 +20,7 @@ from bedplan.data.files.texttable import MOST_TITLE_LINES, Layout, Parsed, TextT
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Mapping
+    from collections.abc import Callable, Iterable, Mapping
 
     from bedplan.data.files.source import SourceFile
 
@@ -30,6 +31,7 @@ LARGEST_UNPACKED_BYTES = 2 * 2**30
 MOST_SWELLING = 200  # times; honest workbooks unpack to 5–30 times their size
 
 Cells = list[tuple[object, ...]]
+Found = TypeVar("Found")
 
 
 def check_archive(source: SourceFile) -> None:
@@ -78,27 +80,44 @@ def sheets_as_text(source: SourceFile) -> list[list[tuple[str, ...]]]:
     return [[tuple(_text(cell).strip() for cell in row) for row in cells] for cells in _sheets(source)[0].values()]
 
 
-def _sheets(source: SourceFile) -> tuple[dict[str, Cells], int]:
+def first_rows(source: SourceFile, most: int) -> list[list[tuple[str, ...]]]:
+    """What stands in the first rows of each sheet, or under the headings of a Parquet file? Every cell as text.
+
+    Raises:
+        UnreadableRecords: neither, damaged or too large.
+    """
+    if source.begins_with(b"PK"):
+        sheets = _sheets(source, most)[0].values()
+        return [[tuple(_text(cell).strip() for cell in row) for row in cells] for cells in sheets]
+
+    def top(file: parquet.ParquetFile) -> pa.Table:
+        """Return the first rows as text."""
+        return _as_text(pa.Table.from_batches([*islice(file.iter_batches(most), 1)], file.schema_arrow))
+
+    table = _from_parquet(source, top)
+    columns = [[cell or "" for cell in column.to_pylist()] for column in table.columns]
+    return [[tuple(table.column_names), *zip(*columns, strict=True)]]
+
+
+def _sheets(source: SourceFile, most: int = MOST_ROWS + 1) -> tuple[dict[str, Cells], int]:
     """Return the cells of every sheet by its title, and how many days after 1900's its day numbers begin."""
     check_archive(source)
     try:
         book = openpyxl.load_workbook(io.BytesIO(source.content), read_only=True, data_only=True)
         days_apart = EPOCHS_APART_DAYS if book.epoch == CALENDAR_MAC_1904 else 0
-        return {sheet.title: _cells(sheet) for sheet in book.worksheets}, days_apart
+        return {sheet.title: _cells(sheet, most) for sheet in book.worksheets}, days_apart
     except UnreadableRecords:
         raise
     except Exception as problem:  # openpyxl raises whatever a damaged part makes it stumble over
         raise UnreadableRecords([f"{source.name} is a damaged Excel workbook: save it again and retry."]) from problem
 
 
-def _cells(sheet: object) -> Cells:
-    """Return the cells of a sheet, or say that there are too many."""
-    rows: Cells = []
-    for row in sheet.iter_rows(values_only=True):
-        if any(cell is not None for cell in row):
-            rows.append(row)
-        if len(rows) > MOST_ROWS:
-            raise UnreadableRecords([f"The workbook has more than {MOST_ROWS:,} rows: export it as CSV."])
+def _cells(sheet: object, most: int) -> Cells:
+    """Return the first cells of a sheet, or say that there are too many."""
+    filled = (row for row in sheet.iter_rows(values_only=True) if any(cell is not None for cell in row))
+    rows = list(islice(filled, most))
+    if len(rows) > MOST_ROWS:
+        raise UnreadableRecords([f"The workbook has more than {MOST_ROWS:,} rows: export it as CSV."])
     return rows
 
 
@@ -151,27 +170,24 @@ def read_parquet(
     Raises:
         UnreadableRecords: damaged, or no known column.
     """
-    try:
-        file = parquet.ParquetFile(io.BytesIO(source.content))
+
+    def read(file: parquet.ParquetFile) -> TextTable:
+        """Read the matched columns."""
         headings = tuple(file.schema_arrow.names)
         layout = Layout(0, 0, "", headings, match_headings(headings, known, chosen))
         return text_table(
             source.name, layout, lambda: Parsed(_as_text(file.read(list(layout.found.values())))), [], list(known)
         )
+
+    return _from_parquet(source, read)
+
+
+def _from_parquet(source: SourceFile, use: Callable[[parquet.ParquetFile], Found]) -> Found:
+    """Return what is found in a Parquet file, or say that it is damaged."""
+    try:
+        return use(parquet.ParquetFile(io.BytesIO(source.content)))
     except UnreadableRecords:
         raise
-    except (pa.ArrowException, OSError, ValueError, OverflowError, MemoryError) as problem:
-        raise UnreadableRecords([f"{source.name} is a damaged Parquet file: write it again and retry."]) from problem
-
-
-def parquet_headings(source: SourceFile) -> tuple[str, ...]:
-    """Which columns does this Parquet file have?
-
-    Raises:
-        UnreadableRecords: damaged.
-    """
-    try:
-        return tuple(parquet.read_schema(io.BytesIO(source.content)).names)
     except (pa.ArrowException, OSError, ValueError, OverflowError, MemoryError) as problem:
         raise UnreadableRecords([f"{source.name} is a damaged Parquet file: write it again and retry."]) from problem
 

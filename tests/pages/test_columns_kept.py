@@ -1,0 +1,205 @@
+"""Records: what was said of files comes back with the plan; a census with a column for each ward is asked for its dates only."""
+
+from __future__ import annotations
+
+import hashlib
+from typing import TYPE_CHECKING
+
+import pytest
+
+from bedplan.pages import saved
+from bedplan.plan import FileAnswers, SavedPlan, as_json, from_json
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from streamlit.testing.v1 import AppTest
+
+EXPANDER = "How the columns were read"
+MONTHS = "A row of this return holds"
+BEDS = b"Haus,ab,Betten\nEast,01/02/2024,9\nEast,01/03/2024,11\n"
+BEDS_SAID = FileAnswers({"ward": "Haus", "from": "ab", "staffed": "Betten"}, "day first")
+RETURN = b"Monat,Haus,Belegt,Gegangen\n2024-03,North,910,91\n2024-09,North,920,92\n"
+RETURN_SAID = FileAnswers(
+    {"month": "Monat", "ward": "Haus", "occupied": "Belegt", "discharges": "Gegangen"}, months_a_row=3
+)
+REFUSALS = b"Zeit,Haus,Grund\n2024-02-01 10:00,East,code 7\n2024-02-02 10:00,East,code 9\n"
+REFUSALS_SAID = FileAnswers({"time": "Zeit", "ward": "Haus", "reason": "Grund"}, no_bed_reasons=("code 7",))
+SAID = {hashlib.sha256(BEDS).hexdigest(): BEDS_SAID, hashlib.sha256(RETURN).hexdigest(): RETURN_SAID}
+SAID |= {hashlib.sha256(REFUSALS).hexdigest(): REFUSALS_SAID}
+WIDE = "Date,Heron occupied,Heron beds,Teal occupied,Teal beds\n" + "".join(
+    f"2024-03-{day:02d},{20 + day % 3},24,{5 + day % 2},8\n" for day in range(1, 29)
+)
+
+
+def go(app: AppTest, page: str) -> AppTest:
+    """Turn to a page."""
+    return app.switch_page(f"bedplan/pages/{page}.py").run()
+
+
+def give(app: AppTest, kind: str, name: str, content: bytes) -> AppTest:
+    """Put a file into the box of this kind on the page Records."""
+    return app.file_uploader(key=f"{kind}_file").upload(name, content, "text/csv").run()
+
+
+def press(app: AppTest, label: str, form: str) -> AppTest:
+    """Press a button of a form."""
+    return next(one for one in app.button if one.label == label and one.form_id == form).click().run()
+
+
+def name(app: AppTest, kind: str, columns: dict[str, str]) -> AppTest:
+    """Say which column is which, and read the file again."""
+    for key, heading in columns.items():
+        app.selectbox(key=f"{kind}_column_{key}").set_value(heading)
+    return press(app, "Read it again with these columns", f"{kind}_columns")
+
+
+def text(elements: object) -> str:
+    """Return what elements say, without the marks that keep names from being read as formatting."""
+    return "\n".join(one.value for one in elements).replace("\\", "")
+
+
+def are_open(app: AppTest) -> list[bool]:
+    """Return which questions about columns are open, in the order of the page."""
+    return [one.proto.expanded for one in app.expander if one.label == EXPANDER]
+
+
+def months(app: AppTest) -> object:
+    """Return the question how many months a row of the return holds."""
+    return next(one for one in app.selectbox if one.label == MONTHS)
+
+
+def plan_of(app: AppTest, monkeypatch: pytest.MonkeyPatch) -> SavedPlan:
+    """Return the plan that the page Records offers."""
+    plans: list[SavedPlan] = []
+    with monkeypatch.context() as here:
+        here.setattr(saved, "as_json", lambda plan: plans.append(plan) or as_json(plan))
+        go(app, "records")
+    return from_json(as_json(plans[-1]))
+
+
+@pytest.fixture
+def app(open_app: Callable[..., AppTest], stays_csv: bytes) -> AppTest:
+    """Return the page Records with ward stays loaded."""
+    return give(go(open_app(), "records"), "stays", "stays.csv", stays_csv)
+
+
+def answer_all(app: AppTest) -> AppTest:
+    """Bring a file of beds, a return and a list of refusals, and say how each is to be read."""
+    name(give(app, "capacity", "beds.csv", BEDS), "capacity", dict(BEDS_SAID.columns))
+    app.radio[0].set_value("day first")
+    press(app, "Read it this way", "capacity_date_order")
+    name(give(app, "monthly_return", "return.csv", RETURN), "monthly_return", dict(RETURN_SAID.columns))
+    months(app).set_value(3).run()
+    name(give(app, "refusals", "log.csv", REFUSALS), "refusals", dict(REFUSALS_SAID.columns))
+    app.multiselect(key="refusals_no_bed").set_value(["code 7"])
+    return press(app, "Count these", "refusals_reasons")
+
+
+def assert_as_said(app: AppTest) -> None:
+    """Every file is read as it was said, and nothing is asked."""
+    assert not app.exception
+    assert not app.error
+    assert not any(are_open(app))
+    assert not app.multiselect
+    files = app.session_state["files"]
+    assert files.capacity.table["from"].dt.month.tolist() == [2, 3]
+    assert files.capacity.beds_today("East") == 11
+    # 10 beds used each day of January to March (91 days) and of July to September (92 days)
+    assert app.session_state["typed"]["North"].demand.offered_load == pytest.approx(10.0)
+    assert months(app).value == 3
+    assert len(files.refusals.for_lack_of_beds("East")) == 1
+
+
+def test_a_plan_keeps_what_was_said_of_each_file(app: AppTest, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Columns, dates, months a row and reasons stand in the plan by the file's fingerprint, and in the document."""
+    answer_all(app)
+    assert_as_said(app)
+    plan = plan_of(app, monkeypatch)
+
+    assert dict(plan.files) == SAID
+    go(app, "one_ward").selectbox(key="ward").set_value("East").run()
+    tables = "\n".join(one.value.to_csv().replace("\\", "") for one in go(app, "justification").table)
+    assert "Staffed beds: columns,ward = Haus; from = ab; staffed = Betten" in tables
+    assert "Staffed beds: dates,day first" in tables
+    assert "Monthly return: months a row,3" in tables
+    assert "Patients not given a bed: reasons taken for lack of a bed,code 7" in tables
+
+
+@pytest.mark.parametrize("first", ["plan", "files"])
+def test_the_same_files_are_read_the_same_way(app: AppTest, first: str) -> None:
+    """A plan opened before or after its files are brought: they are read as it says, without a question."""
+    plan = as_json(SavedPlan("", {}, {}, files=SAID)).encode()
+    given = [
+        ("capacity", "beds.csv", BEDS),
+        ("monthly_return", "return.csv", RETURN),
+        ("refusals", "log.csv", REFUSALS),
+    ]
+    for step in [("plan", "plan.json", plan), *given] if first == "plan" else [*given, ("plan", "plan.json", plan)]:
+        give(app, *step)
+
+    assert_as_said(app)
+    app.run()
+    assert_as_said(app)
+
+
+def test_a_file_no_longer_in_its_box_is_asked_for(app: AppTest) -> None:
+    """Where a plan reads a file another way than it was read, and the file is gone from its box, the page says so."""
+    beds = b"ward,from,beds,Betten\nEast,2024-02-01,9,11\n"
+    said = {hashlib.sha256(beds).hexdigest(): FileAnswers({"staffed": "Betten"})}
+    give(app, "capacity", "beds.csv", beds)
+    go(go(app, "one_ward"), "records")
+    give(app, "plan", "plan.json", as_json(SavedPlan("", {}, {}, files=said)).encode())
+    assert "beds.csv was read another way than this plan says: give it again." in text(app.caption)
+    give(app, "capacity", "beds.csv", beds)
+
+    assert app.session_state["files"].capacity.beds_today("East") == 11
+
+
+def test_other_columns_ask_for_reasons_again(app: AppTest) -> None:
+    """Reasons were said of one column: where another holds them they are asked about again, not taken for something else."""
+    log = b"time,ward,reason,Grund\n2024-02-01 10:00,East,code 7,B3\n2024-02-02 10:00,East,code 9,B4\n"
+    give(app, "refusals", "log.csv", log)
+    app.multiselect(key="refusals_no_bed").set_value(["code 7"])
+    press(app, "Count these", "refusals_reasons")
+    name(app, "refusals", {"reason": "Grund"})
+
+    assert app.multiselect(key="refusals_no_bed").options == ["B3 (1)", "B4 (1)"]
+
+
+def test_a_column_for_each_ward_is_asked_for_its_dates_only(app: AppTest) -> None:
+    """Wards are named and not asked for as columns; confirmed as it stands, the table is read the same."""
+    give(app, "census", "wide.csv", WIDE.encode())
+    before = app.session_state["files"].census.table
+    keys = [one.key for one in app.selectbox if one.key.startswith("census_column_")]
+    assert keys == ["census_column_date", "census_column_time"]
+    assert "a column for each ward: Heron, Teal." in text(app.caption)
+    assert are_open(app)[0] is False
+    press(app, "Read it again with these columns", "census_columns")
+
+    assert not app.error
+    assert app.session_state["files"].census.table.equals(before)
+    assert set(before["occupied"]) == {20, 21, 22, 5, 6}
+
+
+def test_a_column_for_each_ward_needs_its_date(app: AppTest) -> None:
+    """Such a table whose column of dates nobody knows says that its date is enough, and is read once that is named."""
+    give(app, "census", "wide.csv", WIDE.replace("Date,", "Stichtag,").encode())
+    assert len(app.error) == 1
+    assert "needs its date only" in text(app.caption)
+    name(app, "census", {"date": "Stichtag"})
+
+    assert not app.error
+    assert app.session_state["files"].census.wards == ("Heron", "Teal")
+
+
+def test_a_row_for_each_ward_is_not_taken_for_a_column_for_each(app: AppTest) -> None:
+    """A census whose wards stand under a heading nobody knows is not read as if its headings were wards."""
+    rows = [f"2024-03-{day:02d},{ward},{count}" for day in range(1, 29) for ward, count in (("East", 8), ("West", 5))]
+    give(app, "census", "long.csv", "\n".join(["Date,Station,Belegt", *rows]).encode())
+    assert "long.csv lacks ward, occupied" in text(app.error)
+    assert app.session_state["files"].census is None
+    name(app, "census", {"ward": "Station", "occupied": "Belegt"})
+
+    assert not app.error
+    assert app.session_state["files"].census.occupied("West").tolist() == [5] * 28
