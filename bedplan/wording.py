@@ -139,6 +139,11 @@ def beds_text(beds: float) -> str:
     return f"{beds:,.0f} bed" if round(beds) == 1 else f"{beds:,.0f} beds"
 
 
+def wards_text(wards: int) -> str:
+    """Write a count of wards with its noun: "1 ward", "8 wards"."""
+    return f"{wards:,} ward" if wards == 1 else f"{wards:,} wards"
+
+
 def beds_on_average(beds: float) -> str:
     """Write average beds wanted or in use: one decimal and the words."""
     return f"{beds:,.1f} beds on average"
@@ -241,6 +246,4 @@ def answer_sentence(
     rest = f"the average formula says {formula}. Keeping {span} to {one_in(share)} {verb} takes {takes}."
     if today is None:
         return f"{who}'s staffed beds today are not known; {rest}"
-    return (
-        f"{who} has {today} staffed {'bed' if today == 1 else 'beds'}; {rest} {when}: {one_in(share_there)} today."
-    )
+    return f"{who} has {today} staffed {'bed' if today == 1 else 'beds'}; {rest} {when}: {one_in(share_there)} today."

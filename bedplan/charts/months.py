@@ -65,7 +65,8 @@ MONTHS: Spec = _months()
 def months_data(points: Mapping[str, tuple[int, NDArray[np.float64]]], limit: tuple[float, str]) -> Datasets:
     """Which datasets draw the months? ``points``: mark -> (beds, the figure in each month); the formula's is left out.
 
-    ``limit``: its share and its name. Names stand at the end of their lines, moved up where they would touch.
+    ``limit``: its share and its name. Names stand at the end of their lines, moved up where they would touch one another
+    or the axis.
 
     Checked by: tests/charts/test_months.py
     """
@@ -92,5 +93,5 @@ def _apart(names: pd.DataFrame, top: float) -> pd.DataFrame:
     upward = names.sort_values("share", kind="stable")
     at: list[float] = []
     for share in upward["share"]:
-        at.append(max(share, at[-1] + CLOSEST_NAMES * top) if at else share)
+        at.append(max(share, at[-1] + CLOSEST_NAMES * top if at else CLOSEST_NAMES / 2.0 * top))
     return upward.assign(at=at)

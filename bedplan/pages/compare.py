@@ -16,6 +16,11 @@ if TYPE_CHECKING:
     from bedplan.export import WardCase
 
 
+def spared(case: WardCase) -> float:
+    """Return how many patients a year the next bed spares."""
+    return spared_by_next_bed(case.curve, case.ward.beds)
+
+
 def row(case: WardCase) -> dict[str, object]:
     """Return one ward's facts."""
     today = case.curve.at(case.ward.beds)
@@ -24,8 +29,8 @@ def row(case: WardCase) -> dict[str, object]:
         "Staffed beds today": case.ward.beds,
         "Average formula": case.ward.average_formula_beds,
         "By the limit": None if case.decision is None else case.decision.beds,
-        "Next bed spares, a year": spared_by_next_bed(case.curve, case.ward.beds),
-        "Find it full, a year": patients_per_year(case.curve, case.ward.beds),
+        "Next bed spares, a year": round(spared(case)),
+        "Find it full, a year": round(patients_per_year(case.curve, case.ward.beds)),
         "Share": 100 * today.turn_away_probability,
         "Worst month": wording.in_month(today.worst_month, float(today.by_month.max())),
         "Occupancy": 100 * today.occupancy,
@@ -40,20 +45,32 @@ def total(frame: pd.DataFrame) -> str:
     needed = frame["By the limit"]
     by_limit = f"{int(needed.sum())}" if needed.notna().all() else "not reachable for every ward"
     return (
-        f"All {len(frame)} wards: {int(frame['Staffed beds today'].sum())} staffed beds today, "
+        f"{f'All {len(frame)} wards' if len(frame) > 1 else 'One ward'}: {int(frame['Staffed beds today'].sum())} staffed beds today, "
         f"{int(frame['Average formula'].sum())} by the average formula, {by_limit} by the limit. "
         f"Patients who find their ward full: {found} a year."
     )
 
 
+# headings short enough for a projector's width; the ward stays in sight where the table is wider than the screen
 COLUMNS = {
-    "Find it full, a year": st.column_config.NumberColumn(format="%.0f", help="Patients a year who find no free bed."),
-    "Share": st.column_config.NumberColumn(format="%.1f %%"),
-    "Occupancy": st.column_config.NumberColumn(format="%.0f %%"),
-    "Next bed spares, a year": st.column_config.NumberColumn(format="%.0f"),
-    "Share at each bed count": st.column_config.LineChartColumn(
-        y_min=0, y_max=0.4, width="medium", help="From 10 beds fewer than today to 10 more; top of the box is 40 %."
+    "Ward": st.column_config.TextColumn(pinned=True),
+    "Staffed beds today": st.column_config.NumberColumn("Staffed today", help="Staffed beds today."),
+    "Next bed spares, a year": st.column_config.NumberColumn(
+        "Next bed spares", format="localized", help="Patients a year who no longer find the ward full."
     ),
+    "Find it full, a year": st.column_config.NumberColumn(
+        "Find it full", format="localized", help="Patients a year who find no free bed."
+    ),
+    "Share": st.column_config.NumberColumn(format="%.1f %%", help="Of patients who come, those who find no free bed."),
+    "Occupancy": st.column_config.NumberColumn(format="%.0f %%"),
+    "Share at each bed count": st.column_config.LineChartColumn(
+        "By bed count",
+        y_min=0,
+        y_max=0.4,
+        width="small",
+        help="The share from 10 beds fewer than today to 10 more; top of the box is 40 %.",
+    ),
+    "When full, patients": st.column_config.TextColumn("When full"),
 }
 
 controls.show_origin()
@@ -64,12 +81,11 @@ for name in controls.ward_names():
     except BedplanError as error:
         st.warning(f"{wording.plain(name)}: {wording.plain(str(error))}")
 if cases:
-    table = pd.DataFrame([row(case) for case in cases]).sort_values("Next bed spares, a year", ascending=False)
-    first = table.iloc[0]
-    spared = wording.patients_per_year(float(first["Next bed spares, a year"]))
-    st.header(
-        f"The next bed spares most on {wording.plain(str(first['Ward']))}: {spared} patients a year.", anchor=False
-    )
+    cases.sort(key=spared, reverse=True)
+    most = wording.patients_per_year(spared(cases[0]))
+    st.header(f"The next bed spares most on {wording.plain(cases[0].ward.name)}: {most} patients a year.", anchor=False)
+    table = pd.DataFrame([row(case) for case in cases])
+    st.markdown(f"**{total(table)}**")
     controls.warn_of_beds(cases)
     within = controls.WITHIN[st.session_state.get("within", "every_month")]
     watched = controls.MEASURES[st.session_state.get("measure", "full")][0]
@@ -78,7 +94,6 @@ if cases:
         "Set it on the page One ward."
     )
     st.dataframe(table, column_config=COLUMNS, hide_index=True, width="stretch", height=35 * (len(table) + 1) + 3)
-    st.markdown(f"**{total(table)}**")
     st.caption(
         "Not a league table: it says nothing about how well a ward works. A critical-care bed costs several times a "
         "ward bed. Wards that wait and wards that turn away are read on different models."

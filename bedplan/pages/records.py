@@ -14,7 +14,15 @@ from bedplan.pages import beside, controls, correcting, intake, loaded, saved, t
 from bedplan.plan import from_json, from_totals
 
 if TYPE_CHECKING:
-    from bedplan.data import Records
+    from bedplan.data import IntakeReport, Records
+
+
+def headline(whose: str, report: IntakeReport) -> str:
+    """Say how many rows are used."""
+    if not report.repaired and not report.set_aside:
+        return f"{whose}: all {report.rows_in:,} rows are used."
+    used = report.used + report.repaired
+    return f"{whose}: {used:,} of {report.rows_in:,} rows used ({report.repaired:,} repaired), {report.set_aside:,} set aside."
 
 
 def show_intake(here: Records) -> None:
@@ -151,6 +159,7 @@ def keep_plan() -> None:
         st.rerun()  # files in their boxes are read as it says
 
 
+top = st.container()  # filled once it is known what is loaded
 left_side, right_side = st.columns(2, gap="large")
 with left_side:
     st.subheader("Load your records", anchor=False)
@@ -168,11 +177,12 @@ with right_side:
 records = loaded.records()
 first, last = records.window
 whose = "The Larkmere demo" if loaded.is_demo() else wording.plain(records.name)
-st.subheader(f"{whose}: what became of every row", anchor=False)
 mark = records.fingerprint[: controls.FINGERPRINT_SHOWN]
-st.caption(
-    f"{first:%d %B %Y} to {last - pd.Timedelta(seconds=1):%d %B %Y} · {len(records.wards)} wards · fingerprint {mark}"
-)
+window = f"{wording.date(first)} to {wording.date(last - pd.Timedelta(seconds=1))}"
+with top:
+    st.header(headline(whose, records.report), anchor=False)
+    st.caption(f"{window} · {wording.wards_text(len(records.wards))} · fingerprint {mark}")
+st.subheader(f"{whose}: what became of every row", anchor=False)
 show_intake(records)
 if not loaded.is_demo():
     intake.confirm_links()

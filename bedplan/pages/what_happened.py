@@ -1,4 +1,7 @@
-"""What happened: when the ward was full, how it swings, how long patients stay; and whether the model would have known."""
+"""What happened: when the ward was full, how long patients stay, whether the model would have known, and the years ahead.
+
+Each tab begins with its own answer, the largest line on the page.
+"""
 
 from __future__ import annotations
 
@@ -70,8 +73,14 @@ def staying(seen: WardDescription) -> dict[str, str]:
     }
 
 
+def answer(sentence: str) -> None:
+    """Show a tab's answer."""
+    st.header(wording.plain(sentence), anchor=False)
+
+
 def show_full(name: str, seen: WardDescription) -> None:
     """Show when a ward was full, and how many patients were there."""
+    answer(headline(seen))
     if seen.full is not None:
         st.markdown("**Hours in a hundred without a free bed** (closed beds are not counted as beds)")
         for spec, data, said in (
@@ -94,7 +103,8 @@ def show_full(name: str, seen: WardDescription) -> None:
 def show_stays(name: str, seen: WardDescription) -> None:
     """Show how long patients stay, and which curve their stays follow."""
     found = loaded.stays(name)
-    st.markdown(f"**Mean stay {wording.days(seen.mean_stay_days)}. {wording.plain(found.verdict)}**")
+    answer(f"{name}'s patients stay {wording.days(seen.mean_stay_days)} on average.")
+    st.markdown(f"**{wording.plain(found.verdict)}**")
     data = charts.stays_data(found.shares(), found.planned.shape)
     st.vega_lite_chart(charts.live(charts.STAYS, data), theme=None, width="stretch", alt=found.in_the_plan)
     st.markdown(wording.plain(found.in_the_plan))
@@ -109,19 +119,23 @@ def show_stays(name: str, seen: WardDescription) -> None:
 def show_check(name: str) -> None:
     """Show whether the earlier records would have told the last year."""
     found = loaded.checked(name)
+    answer(found.headline)
     if not found.checked:
         st.info(wording.plain(found.verdict))
         return
-    st.markdown(f"**{wording.plain(found.verdict)}**")
+    st.markdown(wording.plain(found.verdict))
     days = found.days.rename(columns={"date": "day", "present": "seen"})
     data = charts.check_data(days[["day", "seen", "middle", "low", "high"]])
     st.vega_lite_chart(charts.live(charts.CHECK, data), theme=None, width="stretch", alt=found.verdict)
     columns = ("", "Last year", "Held against")
     st.table(pd.DataFrame(found.figures, columns=columns).set_index(""))
-    st.markdown(f"**{wording.plain(found.promise)}**")
-    kept = charts.live(charts.CALIBRATION, charts.calibration_data(found.kept))
-    st.vega_lite_chart(kept, theme=None, width="content", alt=found.promise)
-    st.caption(f"Each bar allows for chance 19 times in 20: of {len(found.kept)} bands, one outside may be chance.")
+    side_by_side = st.container(horizontal=True, gap="medium")
+    with side_by_side.container(width=430):
+        kept = charts.live(charts.CALIBRATION, charts.calibration_data(found.kept))
+        st.vega_lite_chart(kept, theme=None, width="content", alt=found.promise)
+    with side_by_side.container(width=385):
+        st.markdown(f"**{wording.plain(found.promise)}**")
+        st.caption(f"Each bar allows for chance 19 times in 20: of {len(found.kept)} bands, one outside may be chance.")
     with st.expander("What the check rests on"):
         for note in found.notes:
             st.markdown(f"- {wording.plain(note)}")
@@ -132,9 +146,11 @@ def show_ahead(name: str) -> None:
     try:
         ahead = loaded.forecast(name)
     except BedplanError as error:
+        answer(f"{name}'s years ahead cannot be told.")
         st.info(wording.plain(str(error)))
         return
-    st.markdown(f"**{wording.plain(ahead.verdict)}**")
+    answer(year_ahead(name, ahead.years[0]))
+    st.markdown(wording.plain(ahead.verdict))
     data = charts.fan_data(loaded.past(name), ahead.years)
     st.vega_lite_chart(charts.live(charts.FAN, data), theme=None, width="stretch", alt=ahead.verdict)
     st.markdown(wording.plain(ahead.why))
@@ -142,6 +158,15 @@ def show_ahead(name: str) -> None:
         st.markdown(f"- {wording.plain(note)}")
     with st.expander("Year by year"):
         st.table(years_ahead(ahead.years))
+
+
+def year_ahead(name: str, year: YearAhead) -> str:
+    """Say what the first year holds."""
+    low, high = (days / 365 for days in year.bed_days_80)
+    return (
+        f"In the year from {wording.date(year.first_day)} {name}'s patients are expected to use {year.beds_in_use:,.1f} beds "
+        f"on average; 8 in 10 such years {low:,.1f} to {high:,.1f}."
+    )
 
 
 def years_ahead(years: tuple[YearAhead, ...]) -> pd.DataFrame:
@@ -169,7 +194,6 @@ controls.show_origin()
 ward_name = controls.choose_ward()
 try:
     described = loaded.description(ward_name)
-    st.header(wording.plain(headline(described)), anchor=False)
     for tab, show in zip(st.tabs(list(SHOWN), key="happened", on_change="rerun"), SHOWN.values(), strict=True):
         if tab.open:
             with tab:

@@ -12,12 +12,13 @@ LIMIT = (0.05, "limit: 1 in 20")
 
 @pytest.mark.parametrize("december", [0.038, 0.05, 0.0])
 def test_names_do_not_touch(december: float) -> None:
-    """The names at the end of the lines, the limit's too, stand a tenth of the picture apart, in the lines' order."""
+    """The names at the end of the lines, the limit's too, stand a tenth of the picture apart and clear of the axis, in the lines' order."""
     months = {"today": (28, np.full(12, 0.6)), "by the limit": (39, np.full(12, december))}
     names = months_data(months, LIMIT)["month_names"]
 
     assert sorted(names["label"]) == ["by the limit 39", "limit: 1 in 20", "today 28"]
     assert names["at"].diff().min() >= 0.1 * 0.6 - 1e-9
+    assert names["at"].min() >= 0.05 * 0.6 - 1e-9
     assert names.sort_values("at")["share"].is_monotonic_increasing
     assert (names["at"] >= names["share"]).all()
 

@@ -242,3 +242,18 @@ def test_identities_are_dropped_and_never_shown(open_app: Callable[..., AppTest]
         assert "Quagmire" not in shown
         assert "9434765919" not in shown
     assert not any("Quagmire" in value or "9434765919" in value for value in app.query_params.values())
+
+
+def test_the_largest_line_counts_the_rows(open_app: Callable[..., AppTest], stays_csv: bytes) -> None:
+    """The first heading says how many rows are used, repaired and set aside: the same figures as below it."""
+    app = go(open_app(), "records")
+    assert app.header[0].value == f"The Larkmere demo: all {counts(app)['Rows in']:,} rows are used."
+    backwards = b"\nEast,2024-03-25 10:00,2024-03-21 10:00\nWest,2024-05-25 10:00,2024-05-21 10:00"
+    give_stays(app, "ours.csv", stays_csv + backwards)
+    rows = counts(app)
+    used = rows["Used as they stand"] + rows["Used after a repair"]
+
+    assert rows["Set aside"] == 2
+    assert app.header[0].value == (
+        f"ours.csv: {used:,} of {rows['Rows in']:,} rows used ({rows['Used after a repair']:,} repaired), 2 set aside."
+    )

@@ -105,7 +105,7 @@ class Forecast:
         """How do admissions and bed-days grow, and how far may that be off? One sentence."""
         low, high = (wording.signed_percent(share) for share in self.growth_range)
         beds = f"; bed-days {wording.signed_percent(self.bed_days_growth_per_year)}" if self.stay_bands else ""
-        return f"Admissions {wording.signed_percent(self.growth_per_year)} a year ({low} to {high}){beds}."
+        return f"Expected each year: admissions {wording.signed_percent(self.growth_per_year)} ({low} to {high}){beds}."
 
     @property
     def per_year(self) -> tuple[float, float, float]:

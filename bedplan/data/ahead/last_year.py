@@ -114,6 +114,11 @@ class Backtest:
         return _promise(self.kept) if self.checked else ""
 
     @property
+    def headline(self) -> str:
+        """What came of it, in a line that can be read from afar?"""
+        return _headline(self) if self.checked else f"{self.ward} cannot be checked on last year."
+
+    @property
     def verdict(self) -> str:
         """What came of it, in one sentence?"""
         return _verdict(self) if self.checked else f"Cannot be checked on last year: {self.reason}"
@@ -197,6 +202,18 @@ def _lean(above: float, inside: float) -> str:
     return "plan this ward with more room than its curve shows"
 
 
+def _headline(result: Backtest) -> str:
+    """Say whether it passed, and by which share of days: told a year ahead where that is why it failed."""
+    low, high = result.coverage_80_range
+    ahead = not result.passed and low <= BAND <= high
+    share = wording.percent(result.year_ahead_80 if ahead else result.coverage_80)
+    days = f"told a year ahead, {share}" if ahead else share
+    return (
+        f"{result.ward} {'passed' if result.passed else 'failed'}: {days} of last year's days lay in the band meant to hold "
+        f"{wording.percent(BAND)}."
+    )
+
+
 def _verdict(result: Backtest) -> str:
     """Say what came of it, in one sentence."""
     full = (
@@ -206,7 +223,7 @@ def _verdict(result: Backtest) -> str:
         else ""
     )
     return (
-        f"{'Passed' if result.passed else 'Failed'}: trained only on earlier records, the {wording.percent(BAND)} band held "
+        f"{'Passed' if result.passed else 'Failed'}: told from earlier records only, the {wording.percent(BAND)} band held "
         f"{wording.percent(result.coverage_80)} of last year's days, {_found(result)}{_wide(result)}; it was "
         f"{_nearer(result.score, result.same_week_error)} than the same week of the year before and "
         f"{_nearer(result.score, result.average_formula_error)} than the average formula{full}."

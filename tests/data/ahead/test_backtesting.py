@@ -86,7 +86,7 @@ def made_check(**given: object) -> Backtest:
         "same_week_error": 3.4,
         "average_formula_error": 1.0,
     }
-    return Backtest("Heron", checked=True, **(figures | given))
+    return Backtest("Heron", **({"checked": True} | figures | given))
 
 
 @pytest.mark.parametrize(
@@ -161,6 +161,28 @@ def test_the_verdict(given: dict[str, object], said: str, unsaid: str) -> None:
 
     assert said in verdict
     assert unsaid not in verdict
+
+
+@pytest.mark.parametrize(
+    ("given", "said"),
+    [
+        ({"coverage_80": 0.78}, " passed: 78 % of last year's days lay in the band meant to hold 80 %."),
+        (
+            {"coverage_80": 0.67, "coverage_80_range": (0.54, 0.78)},
+            " failed: 67 % of last year's days lay in the band meant to hold 80 %.",
+        ),
+        (
+            {"coverage_80": 0.78, "year_ahead_80": 0.45},
+            " failed: told a year ahead, 45 % of last year's days lay in the band meant to hold 80 %.",
+        ),
+        ({"checked": False, "reason": "too short"}, " cannot be checked on last year."),
+    ],
+)
+def test_the_headline(given: dict[str, object], said: str) -> None:
+    """One short line says whether the check passed, by the share of days that decided it."""
+    check = made_check(**given)
+
+    assert check.headline.replace("\u00a0", " ") == check.ward + said
 
 
 def test_what_is_told_beats_plainer_ways(checked: list[Backtest]) -> None:
@@ -262,7 +284,7 @@ def test_the_demos_wards(larkmere: Records, demo_data: Path) -> None:
     assert 0.75 <= np.mean([one.coverage_80 for one in results]) <= 0.85
     for one in results:
         assert one.passed, one.verdict
-        assert one.verdict.startswith("Passed: trained only on earlier records, ")
+        assert one.verdict.startswith("Passed: told from earlier records only, ")
         assert len(one.days) == 365
         assert len(one.months) == 12
         staffed = capacity.table.loc[capacity.table["ward"] == one.ward, "staffed"].max()

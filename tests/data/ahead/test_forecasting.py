@@ -184,7 +184,7 @@ def test_a_wards_forecast_says_what_it_is() -> None:
     assert forecast.first_day == records.window[1]
     assert any("Admissions are foreseen" in note for note in forecast.notes)
     lowest, highest = (f"{100 * share:+.1f}".replace("-", "−").removesuffix(".0") for share in forecast.growth_range)
-    assert f"a year ({lowest}\u00a0% to {highest}\u00a0%); bed-days " in forecast.verdict
+    assert f" ({lowest}\u00a0% to {highest}\u00a0%); bed-days " in forecast.verdict
     assert "bed-days" not in forecast_counts(counts(MadeWard(4.0, 5.0, 1.0), 0), FIRST).verdict
     assert forecast.last_year == (came >= records.window[1] - pd.Timedelta(days=365)).sum()
     assert low < central < high
