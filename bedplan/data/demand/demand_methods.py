@@ -16,6 +16,7 @@ from bedplan.wording import beds_text, percent
 
 if TYPE_CHECKING:
     from bedplan.data.beside.logs import EventLog
+    from bedplan.data.demand.walls import Wall
 
 LIST, SPECIALTY, OPEN_TIME, CARRIED = (
     "the list of those who could not be given a bed",
@@ -219,11 +220,17 @@ def most_by_beds(evidence: Evidence) -> DemandMethod | None:
 
 def wall_text(evidence: Evidence) -> str:
     """Say that stated beds were hardly ever used though the ward was often as full as it got; nothing where they were."""
-    if not evidence.never_used:
-        return ""
-    most, ward, fewer = int(evidence.beds.max()), evidence.own.ward, evidence.never_used
+    return " ".join(_one_wall(evidence, wall) for wall in evidence.walls)
+
+
+def _one_wall(evidence: Evidence, wall: Wall) -> str:
+    """Say it of one part of the file."""
+    most, ward, fewer, calendar = wall.beds, evidence.own.ward, wall.fewer, evidence.own.records.calendar
+    first, last = calendar[wall.first], calendar[wall.end - 1]
+    is_whole = wall.end - wall.first == calendar.size
+    when = "" if is_whole else f" from {first.day} {first:%B %Y} to {last.day} {last:%B %Y}"
     return (
-        f"Hardly ever were more than {most - fewer} patients on {ward}, though {beds_text(most)} are stated as staffed and "
+        f"Hardly ever were more than {most - fewer} patients on {ward}{when}, though {beds_text(most)} are stated as staffed and "
         f"it often had {most - fewer}: {'one of them seems' if fewer == 1 else f'{fewer} of them seem'} not to be there, or to be kept free."
     )
 
@@ -234,7 +241,7 @@ def why_not_loss(evidence: Evidence) -> str:
         return "The beds of each day are not known: bring a file of beds by ward and date."
     if evidence.booked_share > MOSTLY:
         return f"{percent(evidence.booked_share)} of its patients are booked: they come by list, not by chance."
-    if evidence.never_used:
+    if evidence.walls:
         return f"{wall_text(evidence)} When the ward was full is not known until that is checked."
     own, rush, moved = evidence.own, evidence.rush, evidence.moved_in_per_day / max(evidence.had_a_bed_per_day, 1e-9)
     told, rushed = "", rush is None or rush >= RUSH

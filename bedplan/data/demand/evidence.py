@@ -10,8 +10,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from bedplan.data.ahead.arrivals import arrivals_of, is_booked
-from bedplan.data.demand.carried_load import beds_below_wall
 from bedplan.data.demand.open_time import OpenTime, WardMinutes, ward_minutes, watch_open_time
+from bedplan.data.demand.walls import BedUse, Wall
 from bedplan.data.files.dates import DAY_SECONDS
 from bedplan.data.wards.occupancy import open_beds, present
 from bedplan.data.wards.patients import OwnPatients, beds_used, counted_days, started
@@ -47,7 +47,7 @@ class Evidence:
 
     ``direct_per_day`` came from outside the hospital, ``moved_in_per_day`` from another of its wards,
     ``elsewhere_per_day`` lay on other wards only; ``beds_here`` and ``beds_elsewhere`` they used on average.
-    ``fewer_beds``: so many of the stated beds are taken not to be there.
+    ``fewer_beds``: so many of the stated beds, on each day of the window, are taken not to be there; None = all are.
     """
 
     own: OwnPatients
@@ -60,7 +60,7 @@ class Evidence:
     beds_here: float
     beds_elsewhere: float
     booked_share: float
-    fewer_beds: int = 0
+    fewer_beds: NDArray[np.int64] | None = None
 
     @property
     def had_a_bed_per_day(self) -> float:
@@ -92,28 +92,47 @@ class Evidence:
         """When was the ward full? None without beds by date, or without times of day."""
         if self.capacity is None or not self.own.records.has_times:
             return None
-        return ward_minutes(self.own.records, self.on_ward, self.own.ward, self.capacity, self.fewer_beds)
+        return ward_minutes(self.own.records, self.on_ward, self.own.ward, self.capacity, self._fewer)
 
     @cached_property
     def beds(self) -> NDArray[np.int64] | None:
         """How many beds were open on each day that counts? None without beds by date."""
         if self.capacity is None:
             return None
-        beds = open_beds(self.own.records, self.own.ward, self.capacity, 1)[self.own.records.counted_days]
-        return np.maximum(beds - self.fewer_beds, 0)
+        return np.maximum(self._stated - self._fewer, 0)[self.own.records.counted_days]
 
     @cached_property
-    def never_used(self) -> int:
-        """How many of the stated beds were hardly ever used, though the ward was often as full as it could be?"""
-        if self.beds is None or self.fewer_beds:
-            return 0
+    def _stated(self) -> NDArray[np.int64]:
+        """Return the stated open beds of each day of the window."""
+        return open_beds(self.own.records, self.own.ward, self.capacity, 1)
+
+    @property
+    def _fewer(self) -> NDArray[np.int64] | int:
+        """Return how many of them are taken not to be there."""
+        return 0 if self.fewer_beds is None else self.fewer_beds
+
+    @cached_property
+    def walls(self) -> tuple[Wall, ...]:
+        """When were some of the stated beds hardly ever used, though the ward was often as full as it got?"""
+        if self.capacity is None or self.fewer_beds is not None or self.mean_stay_days <= 0:
+            return ()
         records = self.own.records
         if self.minutes is not None:
-            share = self.minutes.free_share
+            free = self.minutes.free
         else:
-            free = self.beds - present(records, self.on_ward, DAY_SECONDS)[records.counted_days]
-            share = np.bincount(np.maximum(free, 0)) / self.days
-        return beds_below_wall(share, self.beds, beds_used(records, self.on_ward), self.days / self.mean_stay_days)
+            free = np.maximum(self._stated - present(records, self.on_ward, DAY_SECONDS), 0)[:, None]
+        month = (records.calendar.year * 12 + records.calendar.month).to_numpy()
+        return BedUse(free, self._stated, records.counted_days, month, self.mean_stay_days).walls()
+
+    @property
+    def never_used(self) -> NDArray[np.int64] | None:
+        """How many of the stated beds were hardly ever used on each day of the window? None where all were."""
+        if not self.walls:
+            return None
+        fewer = np.zeros(self._stated.size, dtype=np.int64)
+        for wall in self.walls:
+            fewer[wall.first : wall.end] = wall.fewer
+        return fewer
 
     @cached_property
     def direct(self) -> OpenTime | None:

@@ -191,7 +191,7 @@ def _steps(evidence: Evidence, followed: DemandMethod) -> tuple[DemandStep, ...]
 
 def _at_most(evidence: Evidence, followed: DemandMethod) -> DemandMethod | None:
     """Return what the range must reach up to, where the method followed sees nobody who went elsewhere."""
-    blind = followed.name == RECORDED or (followed.name == SPECIALTY and evidence.never_used)
+    blind = followed.name == RECORDED or (followed.name == SPECIALTY and evidence.walls)
     return most_by_beds(evidence) if blind else None
 
 

@@ -63,14 +63,14 @@ class OpenTime:
 class WardMinutes:
     """Every minute of the window: is the ward full, and has a bed been free for a while; who came and left when.
 
-    ``free_share[k]``: share of the hours that count, looked at half past, with k beds free (0: full, or fuller than its beds).
+    ``free`` (days, 24): beds free at half past each hour (0: full, or fuller than its beds).
     ``cell`` (minutes,): hour of the week × 12 + month, −1 on days that don't count. ``came`` and ``left``: minutes of
     the window, ascending.
     """
 
     first_second: int
     is_full: NDArray[np.bool_]
-    free_share: NDArray[np.float64]
+    free: NDArray[np.int64]
     is_open: NDArray[np.bool_]
     cell: NDArray[np.int16]
     came: NDArray[np.int64]
@@ -92,14 +92,16 @@ def _moments(times: pd.Series, first_second: int, minutes: int) -> NDArray[np.in
     return inside[(inside > 0) & (inside < minutes)]
 
 
-def ward_minutes(records: Records, on_ward: pd.DataFrame, ward: str, capacity: Capacity, fewer: int = 0) -> WardMinutes:
+def ward_minutes(
+    records: Records, on_ward: pd.DataFrame, ward: str, capacity: Capacity, fewer: NDArray[np.int64] | int = 0
+) -> WardMinutes:
     """When was this ward full, and when had it had a free bed for four hours? ``on_ward``: all stays on it.
 
-    ``fewer``: so many of its stated beds are taken not to be there.
+    ``fewer``: so many of its stated beds, on each day or on all, are taken not to be there.
     """
-    free = open_beds(records, ward, capacity, DAY_MINUTES) - fewer - present(records, on_ward, 60)
+    beds = open_beds(records, ward, capacity, 1) - fewer
+    free = np.repeat(beds, DAY_MINUTES) - present(records, on_ward, 60)
     is_full, half_hours = free <= 0, free[HOUR_MINUTES // 2 :: HOUR_MINUTES]  # beds change hands on the hour
-    free_hours = np.bincount(np.maximum(half_hours, 0)[np.repeat(records.counted_days, 24)])
     minute = np.arange(is_full.size, dtype=np.int32)
     last_full = np.maximum.accumulate(np.where(is_full, minute, np.int32(-SETTLING_MINUTES - 1)))
     counts = records.counted_days
@@ -109,7 +111,7 @@ def ward_minutes(records: Records, on_ward: pd.DataFrame, ward: str, capacity: C
     return WardMinutes(
         first_second=first,
         is_full=is_full,
-        free_share=free_hours / max(free_hours.sum(), 1),
+        free=np.maximum(half_hours, 0).reshape(-1, 24),
         is_open=np.repeat(counts, DAY_MINUTES) & (minute - last_full > SETTLING_MINUTES),
         cell=np.repeat(np.where(np.repeat(counts, 24), cell, -1).astype(np.int16), HOUR_MINUTES),
         came=_moments(on_ward["start"], first, is_full.size),
