@@ -45,6 +45,7 @@ class Told:
     sentences: tuple[str, ...]
     refused: bool = False
     question: DateQuestion | None = None
+    by_columns: bool = False  # naming its columns would help, though all that it needs are there
 
 
 def offer(kind: str, label: str, take: Take, *, ask: Ask | None = None, **options: Any) -> bool:
@@ -96,7 +97,7 @@ def ask_more(given: Given, told: Told, ask: Ask | None, retry: Callable[[FileAns
         if answers != told.answers:
             retry(answers)
     if given.kind in intake.FILE_KINDS:
-        is_unsure = told.refused and told.question is None
+        is_unsure = told.refused and (told.by_columns or intake.is_about_columns(given, told.question))
         # other columns may hold other reasons: those are asked about again
         intake.confirm_columns(
             given, lambda answers: retry(replace(answers, no_bed_reasons=None)), is_fresh=is_fresh, is_unsure=is_unsure
@@ -110,8 +111,8 @@ def take_more(take: Take, given: Given) -> None:
         told = Told(mark, given.answers, tuple(take(given)))
         said.keep(mark, given.answers)
     except BedplanError as error:
-        question = getattr(error, "question", None)
-        told = Told(mark, given.answers, (str(error),), refused=True, question=question)
+        question, by_columns = getattr(error, "question", None), getattr(error, "by_columns", False)
+        told = Told(mark, given.answers, (str(error),), refused=True, question=question, by_columns=by_columns)
     st.session_state[f"{given.kind}_told"] = told
     intake.start_anew(given.kind)
 

@@ -15,7 +15,7 @@ from bedplan.pages import controls, loaded, saved, typed
 from bedplan.plan import NO_COLUMN, Answers
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Mapping
 
     from bedplan.data import ColumnPreview, DateQuestion
     from bedplan.plan import FileAnswers
@@ -162,7 +162,8 @@ def show_refused() -> None:
 
     if refused.question is not None:
         ask_date_order("stays", refused.question, lambda order: retry(replace(given.answers, date_order=order)))
-    confirm_columns(given, retry, is_fresh=is_fresh("stays"), is_unsure=refused.question is None)
+    is_unsure = is_about_columns(given, refused.question)
+    confirm_columns(given, retry, is_fresh=is_fresh("stays"), is_unsure=is_unsure)
 
 
 def why_refused(given: Given, problems: tuple[str, ...], question: DateQuestion | None) -> tuple[str, ...]:
@@ -209,6 +210,12 @@ def columns_of(given: Given) -> ColumnPreview | None:
     return kept[1]
 
 
+def is_about_columns(given: Given, question: DateQuestion | None) -> bool:
+    """Whether a refused file may be read once it is said which column is which: one is lacking, or some were said before."""
+    seen = columns_of(given)
+    return question is None and seen is not None and bool(seen.lacking or given.answers.columns)
+
+
 def _look(given: Given) -> ColumnPreview | None:
     """Look at the columns of a file; None where that can't be done."""
     columns = given.answers.columns
@@ -219,16 +226,16 @@ def _look(given: Given) -> ColumnPreview | None:
 
 
 def confirm_columns(given: Given, use: Callable[[Any], None], *, is_fresh: bool, is_unsure: bool = False) -> None:
-    """Show which heading was taken for what, with three rows, and let the planner correct it."""
+    """Show which heading was taken for what, with three rows, and let the planner correct it; open where that would help."""
     seen = columns_of(given)
     if seen is None or not seen.headings:
         return
-    can_help = not seen.mistaken and bool(seen.lacking or given.answers.columns)
+    is_open = is_unsure and not seen.mistaken
     with (
-        st.expander("How the columns were read", expanded=is_unsure and can_help),
+        st.expander("How the columns were read", expanded=is_open),
         st.form(f"{given.kind}_columns", border=False),
     ):
-        if is_unsure and can_help:
+        if is_open:
             st.caption("Say which column is which, and it is read again.")
         if seen.hint:
             st.caption(wording.plain(seen.hint))
@@ -237,9 +244,18 @@ def confirm_columns(given: Given, use: Callable[[Any], None], *, is_fresh: bool,
             st.caption("\n".join(["Columns not used, and what their first rows hold:", *told]))
         chosen = {key: ask_column(f"{given.kind}_column_{key}", key, seen, is_fresh=is_fresh) for key in seen.asked}
         if st.form_submit_button("Read it again with these columns"):
-            others = {key: heading for key, heading in given.answers.columns.items() if key not in seen.asked}
-            said = {key for key in chosen if chosen[key] or key in seen.matched or key in given.answers.columns}
-            use(replace(given.answers, columns={**others, **{key: chosen[key] for key in chosen if key in said}}))
+            use(replace(given.answers, columns=_said(chosen, seen, given.answers.columns)))
+
+
+def _said(chosen: Mapping[str, str], seen: ColumnPreview, before: Mapping[str, str]) -> dict[str, str]:
+    """Return which column is which as the planner says; a heading that is named for something else leaves its old place."""
+    moved = {heading for key, heading in chosen.items() if heading and heading != seen.matched.get(key)}
+    stays = {
+        key: NO_COLUMN if seen.matched.get(key) == heading in moved else heading for key, heading in chosen.items()
+    }
+    others = {key: heading for key, heading in before.items() if key not in seen.asked}
+    said = {key: heading for key, heading in stays.items() if heading or key in seen.matched or key in before}
+    return {**others, **said}
 
 
 def ask_column(place: str, key: str, seen: ColumnPreview, *, is_fresh: bool) -> str:

@@ -11,7 +11,6 @@ import pytest
 
 if TYPE_CHECKING:
     from collections.abc import Callable
-    from pathlib import Path
 
     from streamlit.testing.v1 import AppTest
 
@@ -72,7 +71,7 @@ def app(open_app: Callable[..., AppTest], stays_csv: bytes) -> AppTest:
     return give(go(open_app(), "records"), "stays", "stays.csv", content.encode())
 
 
-def loads(app: AppTest) -> float:
+def load_of_north(app: AppTest) -> float:
     """Return the beds that North's patients use on average, by the return."""
     return app.session_state["typed"]["North"].demand.offered_load
 
@@ -118,7 +117,7 @@ STRANGE = {
     "monthly_return": (
         b"Monat,Haus,Tage,Belegt,Gegangen\n2024-01,North,400,310,62\n2024-02,North,400,290,58\n",
         {"month": "Monat", "ward": "Haus", "available": "Tage", "occupied": "Belegt", "discharges": "Gegangen"},
-        loads,
+        load_of_north,
         pytest.approx(600 / 60),
     ),
     "ready": (
@@ -200,7 +199,7 @@ def test_a_column_can_be_left_out(app: AppTest) -> None:
 
 WRONG = {
     "beds in words": ({"staffed": "warum"}, "“refit” in row 1 of odd.csv is no number of staffed beds"),
-    "one column for two": ({"from": "Betten"}, "“Betten” was chosen for from and for staffed"),
+    "one column for two": ({"from": "warum", "to": "warum"}, "“warum” was chosen for from and for to"),
     "no ward": ({"ward": ""}, "odd.csv lacks a column of ward"),
 }
 
@@ -253,6 +252,19 @@ def test_columns_and_dates_outlive_each_other(app: AppTest, headings: str) -> No
     assert beds_of_file(app) == beds_of(app) == 11
 
 
+def test_a_heading_named_for_something_else_leaves_its_place(app: AppTest) -> None:
+    """Whether figures are bed-days or beds: the question opens by itself, and one answer is enough."""
+    rows = b"month,ward,occupied beds,discharges\n2024-01,North,10,1\n2024-02,North,10,1\n"
+    give(app, "monthly_return", "return.csv", rows)
+    assert "may be beds occupied on average or bed-days" in text(app.error)
+    assert are_open(app).count(True) == 1
+    name(app, "monthly_return", {"occupied": "occupied beds"})
+
+    assert not app.error
+    assert app.selectbox(key="monthly_return_column_occupied_beds").value == ""
+    assert load_of_north(app) == pytest.approx(20 / 60)
+
+
 def test_another_file_is_asked_about_anew(app: AppTest) -> None:
     """What was said of a file holds for exactly that file: a changed one asks again, the same one doesn't."""
     name(give(app, "capacity", "odd.csv", BEDS), "capacity", BEDS_COLUMNS)
@@ -285,29 +297,3 @@ def test_wards_of_a_wrong_reading_are_taken_off(app: AppTest) -> None:
 
     assert not app.exception
     assert set(app.session_state["typed"]) == {"North", "South"}
-
-
-BOXES = ("stays", "capacity", "refusals", "bed_requests", "cancellations", "census", "monthly_return", "ready")
-MAY_BE_BOTH = {  # (file, box): a census names beds, refusals are requests or cancellations, and stays hold ready dates
-    ("census", "capacity"),
-    ("refusals", "bed_requests"),
-    ("refusals", "cancellations"),
-    ("stays", "ready"),
-}
-MISPLACED = [(given, box) for given in BOXES[:-1] for box in BOXES if given != box and (given, box) not in MAY_BE_BOTH]
-
-
-@pytest.mark.parametrize(("given", "box"), MISPLACED)
-def test_a_file_of_another_kind_is_told_in_one_sentence(app: AppTest, demo_data: Path, given: str, box: str) -> None:
-    """Which kind it looks like and which it should be, in one sentence; nothing changes and no column is asked for."""
-    before = app.session_state["files"]
-    give(app, box, f"{given}.csv", (demo_data / f"{given}.csv").read_bytes()[:3000].rsplit(b"\n", 1)[0])
-
-    assert not app.exception
-    assert len(app.error) == 1
-    said = text(app.error)
-    assert said.startswith(f"{given}.csv ")
-    assert "looks like" in said
-    assert said.count(".") - said.count(".csv") == 1
-    assert not any(are_open(app))
-    assert app.session_state["files"] is before

@@ -196,18 +196,6 @@ def test_a_bad_file_in_any_box_changes_nothing(app: AppTest, box: str, content: 
     assert_as_before(app, before)
 
 
-@pytest.mark.parametrize("box", BOXES)
-def test_a_file_for_another_box_is_refused(app: AppTest, box: str, demo_data: Path) -> None:
-    """A file of another kind is told by what shows it, and changes nothing."""
-    before = app.session_state["files"]
-    other = "census.csv" if box in ("refusals_file", "cancellations_file", "bed_requests_file") else "bed_requests.csv"
-    give(app, box, other, (demo_data / other).read_bytes()[:2000].rsplit(b"\n", 1)[0])
-
-    assert len(app.error) == 1
-    assert "looks like" in text(app.error)
-    assert_as_before(app, before)
-
-
 def test_one_file_counts_once(app: AppTest) -> None:
     """A list given as refusals and again as cancellations would count twice: the second is refused."""
     log = b"time,ward,reason\n2024-02-01 10:00,East,no bed\n"

@@ -267,7 +267,9 @@ def _unit(key: str, kept: pd.DataFrame, days: pd.Series, in_use: pd.Series) -> s
 def _which_unit(heading: str, name: str) -> UnreadableRecords:
     """Ask what a column holds."""
     told = f"“{heading}” in {name} may be beds occupied on average or bed-days of the whole month, and the figures don't tell"
-    return UnreadableRecords([f"{told} which: say so where the columns are named, or write “occupied bed-days”."])
+    problem = UnreadableRecords([f"{told} which: say so where the columns are named, or write “occupied bed-days”."])
+    problem.by_columns = True  # the page shows where
+    return problem
 
 
 def _spread(kept: pd.DataFrame, months: tuple[int, ...]) -> pd.DataFrame:
