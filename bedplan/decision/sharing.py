@@ -114,7 +114,10 @@ def share_beds(
 
 
 def named_once(wards: Iterable[Ward]) -> tuple[Ward, ...]:
-    """Return the wards, or say that there are none or two of one name."""
+    """Return the wards, or say that there are none or two of one name.
+
+    Checked by: tests/decision/test_sharing.py
+    """
     wards = tuple(wards)
     names = [ward.name for ward in wards]
     if not wards:

@@ -31,7 +31,7 @@ def bed_counts(beds: ArrayLike) -> NDArray[np.int64]:
     Raises:
         ImpossibleFigure: not whole, negative, not ascending, empty or above 20,000 beds.
 
-    Checked by: tests/models/test_every_model.py
+    Checked by: tests/models/test_bed_curve.py
     """
     try:
         given = np.atleast_1d(np.asarray(beds))

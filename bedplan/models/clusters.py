@@ -66,6 +66,8 @@ def group_sizes(clustering: float) -> Array:
     """Which share of patients comes in groups of 1, 2, 3 …, if variance ÷ mean of arrivals is ``clustering`` ≥ 1?
 
     Groups of the whole number below and above it, as few sizes as can be.
+
+    Checked by: tests/models/test_clusters.py
     """
     smaller = math.floor(clustering)
     shares = np.zeros(smaller + 1)

@@ -80,13 +80,19 @@ class StateGrid:
 
 
 def checked_loads(loads: object) -> tuple[float, ...]:
-    """Return the loads as floats, or say which is impossible."""
+    """Return the loads as floats, or say which is impossible.
+
+    Checked by: tests/models/test_reservation.py
+    """
     said, allowed = "An offered load of {} beds", "it is 0 or more"
     return tuple(number(said, one, (0.0, 1e6), allowed) for one in listed(loads, "Loads need one figure a kind"))
 
 
 def checked_stays(stay_days: object) -> tuple[float, ...]:
-    """Return the mean stays as floats, or say which is impossible."""
+    """Return the mean stays as floats, or say which is impossible.
+
+    Checked by: tests/models/test_reservation.py
+    """
     said, allowed = "A mean stay of {} days", "it is more than 0 days"
     given = listed(stay_days, "Mean stays need one figure a kind")
     return tuple(number(said, one, (ABOVE_ZERO, 3_650.0), allowed) for one in given)

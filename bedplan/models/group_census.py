@@ -174,7 +174,10 @@ def _likely_in_groups(reach: tuple[int, int], loads: Array, rates: Array, mixing
 
 
 def ahead_in_group(demand: Demand) -> Array:
-    """How likely is it that 0, 1, 2 … others of a patient's own group took a bed just before?"""
+    """How likely is it that 0, 1, 2 … others of a patient's own group took a bed just before?
+
+    Checked by: tests/models/test_group_census.py
+    """
     if demand.clustering <= 1.0:
         return np.ones(1)
     shares = group_sizes(demand.clustering)

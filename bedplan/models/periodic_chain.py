@@ -5,9 +5,6 @@ were ever turned away. So the chain wants exactly the beds of the hour-by-hour y
 rhythm of leaving; it is the exact chain where stays are exponential, and Erlang's loss formula where nothing changes
 with time. Many wards (levels of demand × bed counts) are carried side by side.
 
-Each hour is one step of the third-order Padé approximation of the exponential of its rates, which keeps every rate
-stable, however fast; it needs one complex solve that also gives the share of the hour the ward was full.
-
 Sources: Jagerman 1975, Bell System Technical Journal 54 (loss with a rate that changes); Massey & Whitt 1994.
 Checked by: tests/models/test_periodic_chain.py
 """
@@ -17,8 +14,8 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
-from scipy import special
-from scipy.linalg import lapack
+
+from bedplan.models.side_by_side import Wards, at_end, in_step, through_step
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -27,10 +24,6 @@ if TYPE_CHECKING:
 
     Array = NDArray[np.float64]
 
-# exp(x) ≈ (1 + x/3)/(1 − 2x/3 + x²/6) = 2·Re[end/(x − pole)]; (exp(x) − 1)/x the same with (1 − x/6) on top.
-_POLE = 2.0 + 1j * np.sqrt(2.0)
-_AT_END = (1.0 + _POLE / 3.0) * 6.0 / (2j * _POLE.imag)
-_IN_HOUR = (1.0 - _POLE / 6.0) * 6.0 / (2j * _POLE.imag)
 _COARSE_STEPS, _LESS_COARSE_STEPS, _FINE_STEPS = 7, 2, 24
 _FASTEST_LEAVING = 500.0
 _LEAVING_A_PART = 2.0
@@ -71,6 +64,8 @@ def leaving_rates(rhythm: Rhythm) -> Array:
     """At what rate an hour does each bed in use come free, so that the beds wanted come out right at every hour's end?
 
     ``(period, levels)``. Solves a₁ = a₀·e^(−μ) + λ·(1 − e^(−μ))/μ + n·e^(−μ/2) for μ by Newton's method.
+
+    Checked by: tests/models/test_periodic_chain.py
     """
     after = rhythm.load_at_end
     before, coming = np.roll(after, 1, axis=0), rhythm.unbooked
@@ -91,49 +86,26 @@ def leaving_rates(rhythm: Rhythm) -> Array:
     return np.where(before + coming + booked < 1e-9, _FASTEST_LEAVING, rate)
 
 
-class _Wards:
-    """Every ward's chain, one after the other in one long tridiagonal system; each ends with "all beds in use".
+class _Wards(Wards):
+    """A ward for each level of demand and each of its bed counts, to the last state, "all beds in use".
 
     Counts that are next to never reached, far below the quietest hour's load, are left out.
     """
 
     def __init__(self, loads: Array, beds: Sequence[NDArray[np.int64]]) -> None:
         count = np.concatenate(beds)
-        level = np.repeat(np.arange(len(beds)), [counts.size for counts in beds])
-        lowest = lowest_count(loads.min(axis=0)[level], count)
-        states = count - lowest + 1
-        self.last = np.cumsum(states) - 1
-        self.first = self.last - states + 1
-        ward = np.repeat(np.arange(count.size), states)
-        self.level = level[ward]
-        self.in_use = (np.arange(ward.size) - self.first[ward] + lowest[ward]).astype(float)
-        self.can_come = np.ones(ward.size)
+        self.level_of_ward = np.repeat(np.arange(len(beds)), [counts.size for counts in beds])
+        super().__init__(lowest_count(loads.min(axis=0)[self.level_of_ward], count), count)
+        self.level = self.level_of_ward[self.ward]
+        self.can_come = np.ones(self.ward.size)
         self.can_come[self.last] = 0.0
-        self.can_leave = self.in_use.copy()
+        self.can_leave = self.patients.copy()
         self.can_leave[self.first] = 0.0
-        self.ward = ward
-
-    def total(self, figures: Array) -> Array:
-        """Add up figures known at each state, for each ward."""
-        return np.add.reduceat(figures, self.first)
-
-    def scaled(self, state: Array) -> Array:
-        """Return the state without rounding below 0, adding up to 1 in each ward."""
-        state = np.maximum(state, 0.0)
-        return state / self.total(state)[self.ward]
-
-    def truncated_poisson(self, load: Array) -> Array:
-        """Return each ward's census if demand had always been at this load, ``(levels,)``."""
-        logs = self.in_use * np.log(np.maximum(load, 1e-9))[self.level] - special.gammaln(self.in_use + 1.0)
-        return self.scaled(np.exp(logs - np.maximum.reduceat(logs, self.first)[self.ward]))
 
     def step(self, state: Array, coming: Array, leaving: Array) -> tuple[Array, Array]:
         """Carry the wards through one step at these rates, ``(levels,)``: the state after it, and the share full."""
-        come, leave = self.can_come * coming[self.level], self.can_leave * leaving[self.level]
-        diagonal = -(come + leave) - _POLE
-        below, above = come[:-1].astype(complex), leave[1:].astype(complex)
-        solved = lapack.zgtsv(below, diagonal, above, state.astype(complex), 1, 1, 1, 1)[3]
-        return 2.0 * (_AT_END * solved).real, 2.0 * (_IN_HOUR * solved[self.last]).real
+        solved = through_step(state, self.can_come * coming[self.level], self.can_leave * leaving[self.level])
+        return at_end(solved), in_step(solved[self.last])
 
     def take_in(self, state: Array, group: Group) -> tuple[Array, Array]:
         """Let a booked group come one by one: the state after it, and how many of its slots met no free bed."""
@@ -149,13 +121,19 @@ class _Wards:
 
 
 def lowest_count(quietest_load: Array, beds: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Return the fewest beds in use worth following in each ward."""
+    """Return the fewest beds in use worth following in each ward.
+
+    Checked by: tests/models/test_periodic_chain.py
+    """
     least = np.minimum(quietest_load, beds)
     return np.maximum(0.0, np.floor(least - 5.0 * np.sqrt(least) - 3.0)).astype(np.int64)
 
 
 def merged(rhythm: Rhythm, starts: NDArray[np.int64]) -> Rhythm:
-    """What comes in longer steps, the first of which starts at 0? Booked patients come in the middle of theirs."""
+    """What comes in longer steps, the first of which starts at 0? Booked patients come in the middle of theirs.
+
+    Checked by: tests/models/test_seasonal.py
+    """
     ends = np.append(starts[1:], rhythm.unbooked.shape[0]) - 1
     step_of = np.searchsorted(starts, [group.hour for group in rhythm.booked], side="right") - 1
     return Rhythm(
@@ -176,7 +154,7 @@ def _settled_start(wards: _Wards, rhythm: Rhythm) -> Array:
     """Return the state in which the period starts: a few periods in coarse steps, and one in less coarse ones."""
     coarse = _coarser(rhythm, _COARSE_STEPS, 0)
     rates = leaving_rates(coarse)
-    states = [wards.truncated_poisson(rhythm.load_at_end[-1])]
+    states = [wards.truncated_poisson(rhythm.load_at_end[-1, wards.level_of_ward])]
     for turn in range(6):
         states.append(wards.scaled(_one_period(wards, coarse, rates, states[-1])[0]))
         if wards.total(np.abs(states[-1] - states[-2])).max() < _SETTLED_START:
@@ -198,6 +176,8 @@ def fullness(rhythm: Rhythm, beds: Sequence[NDArray[np.int64]], most_periods: in
     """How full is each ward in each hour, for each level of demand and each of its bed counts?
 
     ``beds``: for each level whole numbers of 1 or more. Followed until the end of a period looks like its start.
+
+    Checked by: tests/models/test_periodic_chain.py
     """
     wards = _Wards(rhythm.load_at_end, beds)
     state, rates = _settled_start(wards, rhythm), leaving_rates(rhythm)
@@ -241,7 +221,7 @@ def _one_hour(
             state, turned_away = wards.take_in(state, some)
             found.booked[hour] += turned_away
     found.booked[hour] /= max(patients, 1)
-    found.mean_in_use[hour] = wards.total(state * wards.in_use)
+    found.mean_in_use[hour] = wards.total(state * wards.patients)
     return state
 
 

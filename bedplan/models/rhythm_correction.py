@@ -58,7 +58,7 @@ class Correction(NamedTuple):
         booked patients.
         """
         inside = np.clip(levels, self.levels[0], self.levels[-1]) if self.levels.size > 1 else levels
-        by_level = between(np.log(self.levels), np.log(inside))
+        by_level = _between(np.log(self.levels), np.log(inside))
         load = np.maximum(inside * self.loads[0] + self.loads[1], 1e-9)[..., None]
         spare = (counts - load) / np.sqrt(load)
         # Below the fewest beds worked out, down to no beds, where both are 1.
@@ -81,7 +81,7 @@ class Correction(NamedTuple):
         return found[0], found[-1]
 
 
-def between(nodes: Array, at: Array) -> Array:
+def _between(nodes: Array, at: Array) -> Array:
     """Return the weights of a polynomial through ``nodes`` ``(m,)`` at points of any shape: ``(..., m)`` (Lagrange)."""
     weights = np.ones((*at.shape, nodes.size))
     for j, node in enumerate(nodes):
@@ -96,7 +96,7 @@ def _joined(nodes: Array, at: Array) -> Array:
     Each stretch is a cubic through the four nodes nearest to it, so that a kink disturbs its neighbours only.
     """
     if nodes.size < 4:
-        return between(nodes, at)
+        return _between(nodes, at)
     first = np.clip(np.searchsorted(nodes, at, side="right") - 2, 0, nodes.size - 4)
     column = first[:, None] + np.arange(4)
     four, shares = nodes[column], np.ones(column.shape)

@@ -5,9 +5,6 @@ too late. Here the patients in it are followed instead, as a chain over their nu
 where the dates are known, in the long run where beds come and go at random. A patient is let in while fewer are in
 than beds are open; whoever is in stays until the stay ends.
 
-Each day is one or more steps of the third-order Padé approximation of the exponential of its rates, as in the chain of
-the week.
-
 Source: Jagerman 1975, Bell System Technical Journal 54 (loss with a rate that changes); Palm 1943 (closures in force).
 Checked by: tests/models/test_settling.py
 """
@@ -19,9 +16,9 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 from scipy import linalg, special
-from scipy.linalg import lapack
 
 from bedplan.models.periodic_chain import Rhythm, leaving_rates
+from bedplan.models.side_by_side import Wards, at_end, in_step, through_step
 from bedplan.models.year import YEAR_DAYS, arrivals_by_hour, offered_load_by_hour
 
 if TYPE_CHECKING:
@@ -32,9 +29,6 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]
 
-_POLE = 2.0 + 1j * np.sqrt(2.0)
-_AT_END = (1.0 + _POLE / 3.0) * 6.0 / (2j * _POLE.imag)
-_IN_STEP = (1.0 - _POLE / 6.0) * 6.0 / (2j * _POLE.imag)
 _MOST_YEARS, _SETTLED = 8, 1e-4
 _QUICK, _QUICK_STEPS = 1.0, 3
 _NEXT_TO_NEVER = 1e-6
@@ -49,41 +43,23 @@ class Days(NamedTuple):
 
 
 def days_of(demand: Demand) -> Days:
-    """How many patients come on each day of the year, and at which rate does each bed in use come free?"""
+    """How many patients come on each day of the year, and at which rate does each bed in use come free?
+
+    Checked by: tests/models/test_settling.py
+    """
     coming = arrivals_by_hour(demand).reshape(YEAR_DAYS, 24).sum(axis=1)
     load_at_end = offered_load_by_hour(demand).reshape(YEAR_DAYS, 24)[:, -1]
     leaving = leaving_rates(Rhythm(coming[:, None], load_at_end[:, None]))[:, 0]
     return Days(coming, leaving, load_at_end)
 
 
-class _Wards:
-    """Wards side by side in one long tridiagonal system, each with 0 … its most patients."""
-
-    def __init__(self, most: Counts) -> None:
-        states = most + 1
-        self.first = np.cumsum(states) - states
-        self.ward = np.repeat(np.arange(most.size), states)
-        self.patients = (np.arange(self.ward.size) - self.first[self.ward]).astype(float)
-        self.most = most.astype(float)
-
-    def settled(self, load: float) -> Array:
-        """Return the census of each ward if demand had always been at this load."""
-        logs = special.xlogy(self.patients, max(load, 1e-9)) - special.gammaln(self.patients + 1.0)
-        state = np.exp(logs - np.maximum.reduceat(logs, self.first)[self.ward])
-        return state / np.add.reduceat(state, self.first)[self.ward]
-
-    def step(self, state: Array, coming: float, leaving: float, open_beds: Counts) -> tuple[Array, Array]:
-        """Carry the wards through one step: the state after it, and the share of it each was full."""
-        is_full = self.patients >= open_beds[self.ward]
-        come = np.where(is_full | (self.patients >= self.most[self.ward]), 0.0, coming)
-        leave = self.patients * leaving
-        solved = lapack.zgtsv(
-            come[:-1].astype(complex), -(come + leave) - _POLE, leave[1:].astype(complex), state.astype(complex)
-        )[3]
-        in_step = 2.0 * (_IN_STEP * solved).real
-        after = np.maximum(2.0 * (_AT_END * solved).real, 0.0)
-        full = np.add.reduceat(np.where(is_full, in_step, 0.0), self.first)
-        return after / np.add.reduceat(after, self.first)[self.ward], full
+def _through_part(wards: Wards, state: Array, rates: tuple[float, float], open_beds: Counts) -> tuple[Array, Array]:
+    """Carry the wards through a part of a day: the state after it, and the share of it each was full."""
+    is_full = wards.patients >= open_beds[wards.ward]
+    come = np.where(is_full, 0.0, rates[0])
+    come[wards.last] = 0.0
+    solved = through_step(state, come, wards.patients * rates[1])
+    return wards.scaled(at_end(solved)), wards.total(np.where(is_full, in_step(solved), 0.0))
 
 
 def share_full_by_day(days: Days, open_beds: Counts) -> Array:
@@ -93,20 +69,21 @@ def share_full_by_day(days: Days, open_beds: Counts) -> Array:
 
     Checked by: tests/models/test_settling.py
     """
-    wards = _Wards(open_beds.max(axis=0))
-    state = wards.settled(float(days.load_at_end[-1]))
+    most = open_beds.max(axis=0)
+    wards = Wards(np.zeros_like(most), most)
+    state = wards.truncated_poisson(np.full(most.size, days.load_at_end[-1]))
     steps = np.where(days.leaving > _QUICK, _QUICK_STEPS, 1)
     full = np.zeros(open_beds.shape)
     for _ in range(_MOST_YEARS):
         start = state
         for day in range(YEAR_DAYS):
-            total = np.zeros(wards.most.size)
+            total = np.zeros(most.size)
             for _ in range(steps[day]):
                 rates = days.coming[day] / steps[day], days.leaving[day] / steps[day]
-                state, found = wards.step(state, *rates, open_beds[day])
+                state, found = _through_part(wards, state, rates, open_beds[day])
                 total += found
             full[day] = np.clip(total / steps[day], 0.0, 1.0)
-        if np.abs(state - start).sum() < _SETTLED * wards.most.size:
+        if np.abs(state - start).sum() < _SETTLED * most.size:
             break
     return full
 
@@ -123,6 +100,8 @@ def shares_in_force(mean: float) -> Array:
     """With which chance are 0, 1, 2 … closures in force? What is left of the tail is put on the last.
 
     Closures that begin independently of each other and last any time: Poisson (Palm 1943; endless servers).
+
+    Checked by: tests/models/test_settling.py
     """
     count = np.arange(math.ceil(mean + 10.0 * math.sqrt(mean)) + 2 if mean else 2)
     shares = np.exp(special.xlogy(count, mean) - mean - special.gammaln(count + 1.0))
@@ -166,7 +145,10 @@ def _fix(band: Array, row: int, width: int) -> None:
 
 
 def share_full_as_if_settled(load: float, beds: int, closures: AtRandom) -> float:
-    """As :func:`share_full_at_random`, if the ward settled at once at each count of open beds: Erlang's loss, mixed."""
+    """As :func:`share_full_at_random`, if the ward settled at once at each count of open beds: Erlang's loss, mixed.
+
+    Checked by: tests/models/test_settling.py
+    """
     shares = shares_in_force(closures.mean_in_force)
     open_beds = np.maximum(beds - closures.beds * np.arange(shares.size), 0)
     logs = open_beds * math.log(max(load, 1e-300)) - load - special.gammaln(open_beds + 1.0)

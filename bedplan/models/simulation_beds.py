@@ -33,7 +33,10 @@ class Passage:
 
 
 def all_empty(replications: int, beds: int) -> Array:
-    """When does each bed empty? ``(replications, beds)``: at the start all have; without beds, one that never does."""
+    """When does each bed empty? ``(replications, beds)``: at the start all have; without beds, one that never does.
+
+    Checked by: tests/models/test_simulation.py
+    """
     return np.zeros((replications, beds)) if beds else np.full((replications, 1), math.inf)
 
 
@@ -53,7 +56,10 @@ def _leaving(end: Array, start: Array, demand: Demand, clock: Array | None, slip
 
 
 def settle_leaving(comers: Comers, demand: Demand) -> Comers:
-    """Work the hours of leaving into the stays at once, for a ward where every stay starts when the patient comes."""
+    """Work the hours of leaving into the stays at once, for a ward where every stay starts when the patient comes.
+
+    Checked by: tests/models/test_simulation.py
+    """
     if comers.clock is None and comers.slip is None:
         return comers
     start = comers.at if comers.ahead_days is None else comers.at + comers.ahead_days
@@ -89,7 +95,7 @@ def pass_through(empties: Array, comers: Comers, demand: Demand) -> Passage:
     return Passage(ready, left, ready > comers.at)
 
 
-def held_until(comers: Comers, demand: Demand) -> Array:
+def _held_until(comers: Comers, demand: Demand) -> Array:
     """Until when does each comer of a ward where every stay starts at once hold a bed? Turnaround and shut beds included."""
     until = comers.at + comers.stay_days + demand.turnaround_hours / 24.0
     if comers.ahead_days is not None:
@@ -105,7 +111,7 @@ def place_at_once(held: Array, comers: Comers, demand: Demand, beds: int) -> tup
 
     Checked by: tests/models/test_simulation.py
     """
-    until = held_until(comers, demand)
+    until = _held_until(comers, demand)
     everyone = np.concatenate([held, until])
     emptied = np.sort(everyone, axis=0)
     taken = np.arange(held.shape[0], everyone.shape[0])[:, None] - np.stack(

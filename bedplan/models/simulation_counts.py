@@ -41,13 +41,19 @@ def _month_of(days: Array, extent: Extent) -> NDArray[np.int64]:
 
 
 def is_patient_in(comers: Comers, end_day: float) -> NDArray[np.bool_]:
-    """Tell patients from shut beds and empty cells."""
+    """Tell patients from shut beds and empty cells.
+
+    Checked by: tests/models/test_simulation.py
+    """
     is_patient = comers.at < end_day
     return is_patient if comers.kind is None else is_patient & (comers.kind < CLOSURE)
 
 
 def patient_days_of(comers: Comers, passage: Passage, extent: Extent, is_patient: NDArray[np.bool_]) -> float:
-    """Add up the counted days that patients spent in beds."""
+    """Add up the counted days that patients spent in beds.
+
+    Checked by: tests/models/test_simulation.py
+    """
     start = passage.bed_ready if comers.ahead_days is None else passage.bed_ready + comers.ahead_days
     first, last = extent.warm_up_days, extent.end_day
     days = np.clip(passage.left, first, last) - np.clip(start, first, last)
@@ -57,7 +63,10 @@ def patient_days_of(comers: Comers, passage: Passage, extent: Extent, is_patient
 
 
 def counts_of(comers: Comers, passage: Passage, extent: Extent, *, by_month: bool) -> Counts:
-    """Count everybody who came in the counted days; by month of coming only where months differ."""
+    """Count everybody who came in the counted days; by month of coming only where months differ.
+
+    Checked by: tests/models/test_simulation.py
+    """
     is_patient = is_patient_in(comers, extent.end_day)
     full = passage.found_full & is_patient
     places = np.flatnonzero(full)
@@ -82,7 +91,10 @@ def counts_of(comers: Comers, passage: Passage, extent: Extent, *, by_month: boo
 
 
 def joined(blocks: list[Counts]) -> Counts:
-    """Put the blocks of replications together."""
+    """Put the blocks of replications together.
+
+    Checked by: tests/models/test_simulation.py
+    """
     side_by_side = {"came", "found_full", "waited_days"}
     return Counts(
         **{

@@ -189,6 +189,8 @@ def extent_of(run: WardRun, demand: Demand, beds: int, *, waits: bool) -> Extent
 
     Only the warm-up depends on the beds, and it has random numbers of its own: the patients who are counted are the
     same whatever the beds.
+
+    Checked by: tests/models/test_simulation.py
     """
     warm_up = run.warm_up_days
     if warm_up is None:

@@ -40,6 +40,7 @@ def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -
     between neighbouring states, and beyond c beds come free at one rate.
 
     Source: Erlang 1917: C = B / (1 − (a/c)·(1 − B)).
+    Checked by: tests/models/test_waiting.py
     """
     blocked = loss_table(loads, counts, peakedness)
     use = np.minimum(loads / counts[:, None], 1.0)
@@ -131,7 +132,10 @@ def _read(sheet: Array, cell: NDArray[np.int64], way: Array) -> Array:
 
 
 def steady_wards(spread: Spread, counts: NDArray[np.int64]) -> Wards:
-    """Work out, at every bed count, how many patients a steady ward holds at each use, and turn it round."""
+    """Work out, at every bed count, how many patients a steady ward holds at each use, and turn it round.
+
+    Checked by: tests/models/test_waiting.py
+    """
     beds = counts.astype(float)
     power = beds / spread.peakedness
     loads = np.concatenate([np.geomspace(1e-6, 1e-2, 40), np.arange(0.1, np.sqrt(beds[-1]) + 0.05, 0.05)[1:] ** 2])

@@ -33,6 +33,7 @@ def looks(count: int) -> tuple[Array, Array]:
     """At which parts of an hour to look, and with which weights, so that the mean over the hour is exact or nearly?
 
     Both ``(count,)``. Source: Gauss 1814 (exact for polynomials up to degree 2 × count − 1).
+    Checked by: tests/models/test_unlimited.py
     """
     places, weights = np.polynomial.legendre.leggauss(count)
     return (places + 1.0) / 2.0, weights / 2.0
@@ -80,7 +81,10 @@ def held_at(stay: LengthOfStay, leaving: Leaving, came: Counts, hours: Array) ->
 
 @lru_cache(maxsize=128)
 def parts_of_hour(demand: Demand) -> int:
-    """At how many parts of each hour to look, so that unbooked patients' load changes little between them?"""
+    """At how many parts of each hour to look, so that unbooked patients' load changes little between them?
+
+    Checked by: tests/models/test_unlimited.py
+    """
     load = unbooked_load_by_hour(demand)
     change = np.abs(load - np.roll(load, 1)) / np.sqrt(np.maximum(load, 1.0))
     most = float(change.max())

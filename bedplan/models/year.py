@@ -39,23 +39,32 @@ month_of_day, weekday_of_day = month_of_hour[::24], weekday_of_hour[::24]
 
 
 def leaving_of(demand: Demand) -> Leaving:
-    """When do this ward's beds come free?"""
+    """When do this ward's beds come free?
+
+    Checked by: tests/models/test_year.py
+    """
     return Leaving(demand.discharge_hours, demand.weekend_slip, demand.turnaround_hours)
 
 
 def rhythm_of_week(demand: Demand) -> Array:
-    """How much busier than the mean hour is each hour of the week, Monday 00:00 first? ``(168,)``, mean 1."""
+    """How much busier than the mean hour is each hour of the week, Monday 00:00 first? ``(168,)``, mean 1.
+
+    Checked by: tests/models/test_year.py
+    """
     return np.outer(demand.weekday_factors, demand.hour_factors).ravel()
 
 
 @lru_cache(maxsize=256)
 def unbooked_by_hour(demand: Demand) -> Array:
-    """How many patients come unbooked in each hour of the year? ``(8736,)``, adding up to 364 days' arrivals."""
+    """How many patients come unbooked in each hour of the year? ``(8736,)``, adding up to 364 days' arrivals.
+
+    Checked by: tests/models/test_year.py
+    """
     factors = np.tile(rhythm_of_week(demand), WEEKS) * np.array(demand.month_factors)[month_of_hour]
     return _fixed(demand.arrivals_per_day / 24.0 * factors / factors.mean())
 
 
-def booked_in_week(booked: BookedList) -> Array:
+def _booked_in_week(booked: BookedList) -> Array:
     """How many patients does a booked list bring in each hour of the week, on average? ``(168,)``."""
     week = np.zeros((7, 24))
     week[:, booked.hour] = np.array(booked.per_weekday) * booked.attends
@@ -63,8 +72,11 @@ def booked_in_week(booked: BookedList) -> Array:
 
 
 def all_booked_in_week(demand: Demand) -> Array:
-    """How many patients do all booked lists bring in each hour of the week, on average? ``(168,)``."""
-    return sum((booked_in_week(one) for one in demand.booked), np.zeros(HOURS_A_WEEK))
+    """How many patients do all booked lists bring in each hour of the week, on average? ``(168,)``.
+
+    Checked by: tests/models/test_year.py
+    """
+    return sum((_booked_in_week(one) for one in demand.booked), np.zeros(HOURS_A_WEEK))
 
 
 def arrivals_by_hour(demand: Demand) -> Array:
@@ -77,7 +89,10 @@ def arrivals_by_hour(demand: Demand) -> Array:
 
 @lru_cache(maxsize=256)
 def unbooked_load_by_hour(demand: Demand) -> Array:
-    """How many beds do unbooked patients want in each hour of the year? ``(8736,)``, turnaround included."""
+    """How many beds do unbooked patients want in each hour of the year? ``(8736,)``, turnaround included.
+
+    Checked by: tests/models/test_year.py
+    """
     return _fixed(
         beds_held(unbooked_by_hour(demand), hours_held(demand.length_of_stay, leaving_of(demand), HOURS_A_YEAR))
     )
@@ -87,10 +102,12 @@ def booked_load_in_week(demand: Demand, *, at_end: bool = False) -> Array:
     """How many beds do booked patients want in each hour of the week, on average, or at its end? ``(168,)``.
 
     Turnaround included.
+
+    Checked by: tests/models/test_year.py
     """
     load, leaving = np.zeros(HOURS_A_WEEK), leaving_of(demand)
     for one in demand.booked:
-        load += beds_held(booked_in_week(one), hours_held(one.length_of_stay, leaving, HOURS_A_WEEK, at_end=at_end))
+        load += beds_held(_booked_in_week(one), hours_held(one.length_of_stay, leaving, HOURS_A_WEEK, at_end=at_end))
     return _fixed(load)
 
 
@@ -146,7 +163,7 @@ def beds_wanted(demand: Demand) -> float:
 
     Arrivals × the time each holds a bed, where the stay may be moved by the hours patients leave at.
 
-    Checked by: tests/models/test_year.py, tests/models/test_erlang.py
+    Checked by: tests/models/test_year.py
     """
     if leaving_of(demand).has_rhythm:
         return float(offered_load_by_hour(demand).mean())

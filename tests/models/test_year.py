@@ -14,6 +14,7 @@ from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_hel
 from bedplan.models.load_grid import load_grid
 from bedplan.models.year import (
     arrivals_by_hour,
+    beds_wanted,
     booked_load_in_week,
     mean_week,
     month_of_hour,
@@ -162,7 +163,7 @@ def test_turnaround_holds_beds_but_not_patients() -> None:
     demand = Demand(10.0, LengthOfStay(4.0, 1.1), weekday_factors=WEEK, turnaround_hours=6.0)
 
     assert offered_load_by_hour(demand).mean() == pytest.approx(42.5, rel=1e-9)
-    assert patients_wanted(demand) == pytest.approx(40.0, rel=1e-9)
+    assert (beds_wanted(demand), patients_wanted(demand)) == pytest.approx((42.5, 40.0), rel=1e-9)
     by_the_clock = demand.with_changes(discharge_hours=AFTERNOON)
     alone = offered_load_by_hour(by_the_clock.with_changes(turnaround_hours=0.0)).mean()
     assert patients_wanted(by_the_clock) == pytest.approx(alone, rel=1e-5)
