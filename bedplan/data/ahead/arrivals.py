@@ -9,8 +9,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from scipy import special
 
+from bedplan.data.ahead.lately import level_change
 from bedplan.data.ahead.rhythm import Rhythm, Swing, fit_rhythm, measure_swing, shrink_factors
-from bedplan.data.ahead.trend import fit_trend
 from bedplan.data.files.columns import plain
 from bedplan.data.files.dates import DAY_SECONDS
 from bedplan.models import BookedList
@@ -19,14 +19,13 @@ if TYPE_CHECKING:
     import pandas as pd
     from numpy.typing import NDArray
 
+    from bedplan.data.ahead.lately import LevelChange
     from bedplan.data.cleaning.records import Records
     from bedplan.models import LengthOfStay
 
 YEAR_DAYS = 365
 DEFAULT_TIME_SHARE = 1 / 3  # of arrivals in one minute of the day; common practice, no source
 FEWEST_STAYS, FEWEST_DAYS = 200, 90
-LATELY_DAYS = (28, 56, 182)  # looked at for a change of level
-CLEAR_CHANGE = 2.75  # standard errors: the most that chance gives to about one steady ward in a hundred
 # Methods of admission that mean a booked patient. Codes 11 to 13 are the English elective ones.
 BOOKED_METHODS = ("11", "12", "13", "booked", "elective", "waitinglist", "planned", "electivebooked", "electiveplanned")
 
@@ -96,11 +95,24 @@ class Arrivals:
 
     @property
     def worth(self) -> float:
-        """As many independent arrivals as these are worth, given how they swing."""
-        return self.recent / max(self.swing.dispersion, 1.0)
+        """As many independent arrivals as these are worth, given how they swing and drift."""
+        if self.swing.drift is None:
+            return self.recent / max(self.swing.dispersion, 1.0)
+        drift = self.swing.drift.variance_of_mean(int(self.counted.sum()))
+        return self.recent / (max(self.swing.clustering, 1.0) + drift * self.recent)
+
+    @property
+    def growth(self) -> tuple[float, float]:
+        """By which share do they grow a year, and how far may that be off? Its standard error, drift included; 0 if too short."""
+        growth, drift = self.rhythm.growth_per_year, self.swing.drift
+        if self.rhythm.growth_error == 0.0:
+            return 0.0, 0.0
+        if drift is None:
+            return growth, self.rhythm.growth_error * math.sqrt(max(self.swing.dispersion, 1.0))
+        return growth, float(drift.effect_errors[-1]) * (1.0 + growth)
 
     def interval(self, share: float = 0.95) -> tuple[float, float]:
-        """Between which figures do arrivals a day lie? The exact Poisson interval, widened by their swing."""
+        """Between which figures do arrivals a day lie? The exact Poisson interval, widened by their swing and drift."""
         tail, worth, per_day = (1 - share) / 2, self.worth, self.per_day
         if worth <= 0:
             return 0.0, float(special.gammaincinv(1.0, 1 - tail)) / int(self.counted.sum())
@@ -126,41 +138,15 @@ def arrivals_of(records: Records, start: pd.Series | NDArray[np.datetime64]) -> 
     )
 
 
-@dataclass(frozen=True, slots=True)
-class ArrivalsChange:
-    """How many came in the last ``days`` that count, and how many the days before them would have led one to expect."""
-
-    days: int
-    came: int
-    expected: float
-
-    @property
-    def share(self) -> float:
-        """By which share did arrivals change?"""
-        return self.came / self.expected - 1.0
-
-
-def arrivals_change(arrivals: Arrivals) -> ArrivalsChange | None:
-    """Did arrivals change lately: far more or fewer in the last 4, 8 or 26 weeks than trend and season before them gave?
+def arrivals_change(arrivals: Arrivals) -> LevelChange | None:
+    """Did arrivals change lately: far more or fewer in the last 4 to 26 weeks than trend and season before them gave?
 
     None where chance explains it, or where the file is too short or too empty to tell.
 
     Checked by: tests/data/demand/test_estimating.py
     """
-    counts = arrivals.counts[arrivals.used]
-    numbers = arrivals.calendar.to_numpy().astype("datetime64[D]").astype(np.int64)[arrivals.used]
-    clearest, found = CLEAR_CHANGE, None
-    for days in LATELY_DAYS:
-        if counts.size - days < FEWEST_DAYS or counts[:-days].sum() < FEWEST_STAYS:
-            break
-        trend = fit_trend(counts[:-days], numbers[:-days])
-        expected = trend.expected(numbers[-days:])
-        total, came = float(expected.sum()), float(counts[-days:].sum())
-        level = float(trend.variance_of_rate(numbers[-days:]) @ expected) * total
-        off = abs(came - total) / math.sqrt(total * max(trend.swing.dispersion, 1.0) + level)
-        if off > clearest:
-            clearest, found = off, ArrivalsChange(days, int(came), total)
-    return found
+    numbers = arrivals.calendar.to_numpy().astype("datetime64[D]").astype(np.int64)
+    return level_change(arrivals.counts[arrivals.used], numbers[arrivals.used])
 
 
 def is_booked(stays: pd.DataFrame) -> NDArray[np.bool_]:

@@ -5,12 +5,11 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from bedplan import wording
-from bedplan.data.ahead.arrivals import arrivals_change
 from bedplan.data.ahead.outlook import FEWEST_PAST_FORECASTS, NAIVE, REGRESSION, SPECTRUM, USUAL_SEASON
 from bedplan.data.ahead.rhythm import LEAST_DAYS_FOR_GROWTH, LEAST_DAYS_FOR_SEASON
 
 if TYPE_CHECKING:
-    from bedplan.data.ahead.arrivals import Arrivals
+    from bedplan.data.ahead.lately import LevelChange
     from bedplan.data.ahead.outlook import Choice, Outlook
 
 AS_BEFORE = "It goes on as before: no new service, no new rule and no change among neighbours is foreseen."
@@ -54,23 +53,22 @@ def outlook_notes(outlook: Outlook, days: int) -> list[str]:
         notes.append(
             "The same week last year was nearer than any method: expect surprises, and take the range seriously."
         )
-    return notes
+    return [*notes, *change_notes(outlook.change)]
 
 
-def change_notes(arrivals: Arrivals) -> list[str]:
-    """Did arrivals change lately, and which way does the forecast err if that lasts? Nothing where they did not.
+def change_notes(change: LevelChange | None) -> list[str]:
+    """Did arrivals change lately, and what does the forecast make of it? Nothing where they did not.
 
     Checked by: tests/data/ahead/test_forecasting.py
     """
-    change = arrivals_change(arrivals)
     if change is None:
         return []
     word, errs = ("grew", "few") if change.share > 0 else ("fell", "many")
     return [
         (
             f"Arrivals {word} by {wording.percent(abs(change.share))} lately: in the last {change.days // 7} weeks "
-            f"{change.came:,} came, where about {change.expected:,.0f} were to be expected from the days before. The "
-            "forecast and its range rest on all days and hardly follow it, which errs towards too "
-            f"{errs} beds if the change lasts: move demand then."
+            f"{change.came:,} came, where about {change.expected:,.0f} were to be expected from the days before. Whether "
+            "that lasts the records can't tell: the forecast goes half-way, and its range holds both. If the change "
+            f"lasts, the forecast errs towards too {errs} beds: move demand then."
         )
     ]

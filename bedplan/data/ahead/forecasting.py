@@ -12,9 +12,8 @@ import pandas as pd
 from scipy import special
 
 from bedplan import wording
-from bedplan.data.ahead.arrivals import arrivals_of
 from bedplan.data.ahead.chances import at_most, count_at
-from bedplan.data.ahead.forecast_notes import change_notes, outlook_notes, why_method
+from bedplan.data.ahead.forecast_notes import outlook_notes, why_method
 from bedplan.data.ahead.outlook import DailyCounts, forecast_from, look_ahead, past_origins
 from bedplan.data.ahead.readings import take_readings
 from bedplan.data.ahead.stay_bands import StayBand, fit_stay_bands, growth_of_bed_days
@@ -169,8 +168,7 @@ def forecast_arrivals(records: Records, ward: str, *, horizon_days: int = YEAR_D
     readings = take_readings(records, ward)
     bands = fit_stay_bands(readings, readings.days, forecast.growth_per_year)
     years = tuple(_with_bed_days(year, place, bands, forecast) for place, year in enumerate(forecast.years))
-    lately = change_notes(arrivals_of(used, stays["start"]))
-    notes = (ADMISSIONS, *forecast.notes, *silence_notes(records, ward), *lately)
+    notes = (ADMISSIONS, *forecast.notes, *silence_notes(records, ward))
     return replace(forecast, ward=ward, stay_bands=bands, years=years, notes=notes)
 
 

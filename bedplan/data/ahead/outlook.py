@@ -10,6 +10,7 @@ import numpy as np
 from scipy import optimize
 
 from bedplan.data.ahead.accuracy import seasonal_naive
+from bedplan.data.ahead.lately import LevelChange, level_change
 from bedplan.data.ahead.rhythm import LEAST_DAYS_FOR_SEASON, YEAR_DAYS
 from bedplan.data.ahead.spectrum import singular_spectrum
 from bedplan.data.ahead.trend import Trend, fit_trend
@@ -77,12 +78,16 @@ class Choice:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Outlook:
-    """What is expected on each day ahead (h,), how far the rate may be off (variance ÷ its square, (h,)), and why."""
+    """What is expected on each day ahead (h,), how far the rate may be off (variance ÷ its square, (h,)), and why.
+
+    ``change``: of the latest weeks, where the level clearly changed.
+    """
 
     expected: Array
     variance_of_rate: Array
     trend: Trend
     choice: Choice
+    change: LevelChange | None
 
 
 def forecast_from(series: DailyCounts, origin: int, steps: int) -> PastForecast:
@@ -122,7 +127,22 @@ def look_ahead(series: DailyCounts, origin: int, steps: int, past: Sequence[Past
     variance = np.maximum(at_once + a_year * years, own.trend.variance_of_rate(ahead))
     if int(known.counted.sum()) < LEAST_DAYS_FOR_SEASON:
         variance = variance + USUAL_SEASON**2
-    return Outlook(own.expected[choice.method], variance, own.trend, choice)
+    change = level_change(known.counts[known.counted], known.days[known.counted], own.trend)
+    expected, unsure = _with_change(own.expected[choice.method], change, ahead)
+    return Outlook(expected, variance + unsure, own.trend, choice, change)
+
+
+def _with_change(expected: Array, change: LevelChange | None, ahead: NDArray[np.int64]) -> tuple[Array, float]:
+    """Go half-way to the latest level, and return by how much that may be off: variance ÷ square of the rate.
+
+    A change of the latest weeks lasts or it does not, and nothing in the records tells which. With even chances the
+    mean lies half-way and the standard deviation is half the gap, beside chance, so that the range holds both.
+    """
+    if change is None:
+        return expected, 0.0
+    soon = slice(0, BLOCK_DAYS)
+    half = (float(change.carried_on(ahead[soon]).sum()) / max(float(expected[soon].sum()), 1e-9) - 1.0) / 2.0
+    return expected * (1.0 + half), (half / (1.0 + half)) ** 2 + change.error**2
 
 
 def _choose(known: DailyCounts, past: Sequence[PastForecast], clustering: float) -> Choice:

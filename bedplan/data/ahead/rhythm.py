@@ -8,6 +8,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from bedplan.data.ahead.drift import BLOCK_DAYS, Blocks, Drift, find_drift
+
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
@@ -19,7 +21,8 @@ LEAST_DAYS_FOR_SEASON = 330
 LEAST_DAYS_FOR_GROWTH = 548
 MOVING_LEVEL_DAYS = 28
 FEWEST_ARRIVALS = 100  # to measure swing at all
-FEWEST_FREE_BLOCKS = 8.0
+FEWEST_FREE_BLOCKS = 8
+LEAST_CLUSTERING = 0.02  # booked patients come more evenly than chance, never without any
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,7 +30,8 @@ class Rhythm:
     """Arrivals a day as level × growth × month × weekday; every set of factors has mean 1.
 
     ``growth_per_year`` is a share (0.02 = 2 % more each year), ``growth_error`` its standard error; both 0 where the
-    file is too short to tell. ``expected`` (days,) is what the rhythm expects each day, growth included.
+    file is too short to tell. ``expected`` (days,) is what the rhythm expects each day, growth included. ``slow``
+    (days, k): the columns of level, season and growth that it was fitted by, growth last.
     """
 
     month_factors: tuple[float, ...]
@@ -36,6 +40,7 @@ class Rhythm:
     growth_error: float
     expected: NDArray[np.float64]
     has_season: bool
+    slow: NDArray[np.float64]
 
 
 def fit_rhythm(
@@ -71,6 +76,7 @@ def fit_rhythm(
         growth_error=float(errors[18]) * math.exp(effects[18]) if growing else 0.0,
         expected=expected,
         has_season=season,
+        slow=design[:, [*range(12), 18]],
     )
 
 
@@ -110,15 +116,19 @@ class Swing:
     """How far arrivals swing around their rhythm, fast and slow.
 
     ``clustering``: variance ÷ mean of daily arrivals after a 28-day moving level is taken out, and its standard
-    error. ``rate_variation``: SD ÷ mean of the 28-day level itself beyond chance; None where it can't be measured. It
-    is too low where the drift is slow: season and growth, fitted to the same days, take up a part of it.
-    ``dispersion``: variance ÷ mean of 28-day totals, what an interval for the yearly rate needs.
+    error. ``drift``: how the level itself wanders beyond chance; None where it can't be measured. ``dispersion``:
+    variance ÷ mean of 28-day totals.
     """
 
     clustering: float
     clustering_error: float
-    rate_variation: float | None
+    drift: Drift | None
     dispersion: float
+
+    @property
+    def rate_variation(self) -> float | None:
+        """How far does the level drift, SD ÷ mean? None where it can't be measured."""
+        return None if self.drift is None else self.drift.variation
 
     @property
     def clear_clustering(self) -> float:
@@ -150,21 +160,23 @@ def measure_swing(counts: NDArray[np.float64], rhythm: Rhythm, used: NDArray[np.
     freedom = int(use.sum()) * (1.0 - 1.0 / window.size) - 6.0
     clustering = float(((counts - middle)[use] ** 2).sum()) / total * int(use.sum()) / freedom
     error = clustering * math.sqrt(2.0 / freedom + 1.0 / total)
-    drift, dispersion = _slow_swing(counts, rhythm, use, clustering)
-    return Swing(clustering, error, drift, max(dispersion, clustering))
+    drift, block = _drift(counts, rhythm, use, max(clustering, LEAST_CLUSTERING))
+    slow = 0.0 if drift is None else drift.variation**2 * block
+    return Swing(clustering, error, drift, clustering + slow)
 
 
-def _slow_swing(
+def _drift(
     counts: NDArray[np.float64], rhythm: Rhythm, use: NDArray[np.bool_], clustering: float
-) -> tuple[float | None, float]:
-    """Return SD ÷ mean of the 28-day level beyond chance, and variance ÷ mean of 28-day totals."""
-    blocks = counts.size // MOVING_LEVEL_DAYS
-    last = counts.size - blocks * MOVING_LEVEL_DAYS
-    whole = use[last:].reshape(blocks, -1).all(axis=1)
-    free_blocks = int(whole.sum()) - 1.0 - 11.0 * rhythm.has_season - 1.0 * (rhythm.growth_error > 0)
-    if free_blocks < FEWEST_FREE_BLOCKS or counts.sum() < FEWEST_FOR_GROWTH:
-        return None, clustering
-    sums, wanted = (days[last:].reshape(blocks, -1).sum(axis=1)[whole] for days in (counts, rhythm.expected))
-    dispersion = float(((sums - wanted) ** 2).sum()) / float(wanted.sum()) * int(whole.sum()) / free_blocks
-    drift = max(dispersion - clustering, 0.0) / max(float(wanted.mean()), 1e-12)
-    return math.sqrt(drift), dispersion
+) -> tuple[Drift | None, float]:
+    """Return the drift of the level, None where too few whole blocks are left, and the arrivals of a block."""
+    last = counts.size % BLOCK_DAYS
+    whole = use[last:].reshape(-1, BLOCK_DAYS).all(axis=1)
+    sums, wanted = (days[last:].reshape(-1, BLOCK_DAYS).sum(axis=1) for days in (counts, rhythm.expected))
+    whole &= wanted > 0
+    taken = int((np.ptp(rhythm.slow, axis=0) > 0).sum()) + 1
+    if whole.sum() - taken < FEWEST_FREE_BLOCKS or sums[whole].sum() < FEWEST_FOR_GROWTH:
+        return None, float(wanted.mean())
+    slow = (rhythm.slow * rhythm.expected[:, None])[last:].reshape(wanted.size, BLOCK_DAYS, -1).sum(axis=1)
+    told = wanted[whole]
+    blocks = Blocks(sums[whole] / told - 1.0, clustering / told, np.flatnonzero(whole), slow[whole] / told[:, None])
+    return find_drift(blocks), float(told.mean())

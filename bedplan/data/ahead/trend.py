@@ -94,7 +94,8 @@ def fit_trend(counts: Array, days: Days, *, usual_growth: float = 0.0, growth_sp
     pull, towards = np.full(design.shape[1], HARDLY), np.zeros(design.shape[1])
     pull[LEVEL], towards[GROWTH] = 1e-9, math.log1p(usual_growth)
     effects, covariance, expected = _regression(design, counts, pull, towards)
-    swing = measure_swing(counts, Rhythm((), (), 0.0, float(growing), expected, days.size >= LEAST_DAYS_FOR_SEASON))
+    slow = np.delete(design, WEEK, axis=1)
+    swing = measure_swing(counts, Rhythm((), (), 0.0, 0.0, expected, days.size >= LEAST_DAYS_FOR_SEASON, slow))
     worth = max(swing.dispersion, LEAST_DISPERSION)  # as many counts tell as much as one of chance alone
     pull[SEASON] = worth / _between_waves(effects[SEASON], np.diag(covariance)[SEASON] * worth)
     pull[WEEK] = worth / _between_weekdays(effects[WEEK], counts, days, worth)

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from bedplan.data.ahead.arrivals import FEWEST_STAYS, Arrivals, arrivals_change, is_booked
+from bedplan.data.ahead.drift import USUAL
 from bedplan.data.demand.doubted import beds_doubted
 from bedplan.data.wards.silence import silence_notes
 from bedplan.data.wards.stays import stay_change
@@ -13,6 +14,7 @@ from bedplan.wording import beds_on_average, few, percent
 if TYPE_CHECKING:
     import pandas as pd
 
+    from bedplan.data.ahead.drift import Drift
     from bedplan.data.cleaning.records import Records
     from bedplan.data.demand.hidden_demand import HiddenDemand
     from bedplan.data.wards.survival import StayCurve
@@ -74,18 +76,27 @@ def _arrival_notes(records: Records, arrivals: Arrivals) -> list[str]:
         )
     elif not arrivals.rhythm.has_season:
         notes.append(f"Only {days:,} days of the file count: too few to tell the seasons, so none is assumed.")
-    drift = arrivals.swing.rate_variation
-    if drift:
-        notes.append(
-            f"Beyond season and growth arrivals drift by about {percent(drift)} (SD ÷ mean). If it errs, this is too low, "
-            "towards too few beds: season and growth take up a part of a slow drift: on made-up wards a tenth where it lasts "
-            "two months, up to a third where it lasts a year."
-        )
+    notes.append(_drift_note(arrivals.swing.drift))
     if records.period_note:
         notes.append(records.period_note)
     if records.excluded:
         notes.append(f"{int((~records.counted_days).sum()):,} days were left out, as chosen.")
     return notes
+
+
+def _drift_note(drift: Drift | None) -> str:
+    """Say how far arrivals drift, how sure that is, and which way it errs."""
+    if drift is None:
+        return (
+            f"Too few days to tell how far arrivals drift beyond season and growth: the usual {percent(USUAL)} (SD ÷ mean) "
+            "is taken."
+        )
+    low, high = map(percent, drift.interval)
+    return (
+        f"Beyond season and growth arrivals drift by about {percent(drift.variation)} (SD ÷ mean; {low} to {high}, 90 %). "
+        "A drift that lasts a year or longer looks like growth: in three years it is found up to a quarter too low, which "
+        "errs towards too few beds."
+    )
 
 
 def _recent_arrivals(arrivals: Arrivals) -> list[str]:
@@ -119,7 +130,7 @@ def _stay_notes(records: Records, curve: StayCurve, stays: pd.DataFrame) -> list
         )
     if booked_share >= MUCH_BOOKED:
         notes.append(
-            f"{booked_share:.0%} of admissions were booked. Booked patients come more evenly than chance; a model that "
+            f"{percent(booked_share)} of admissions were booked. Booked patients come more evenly than chance; a model that "
             "takes them for chance arrivals errs towards more beds."
         )
     if not records.has_times:

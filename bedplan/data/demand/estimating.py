@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from bedplan.data.ahead.arrivals import Arrivals, arrivals_of, booked_list, is_booked
+from bedplan.data.ahead.drift import USUAL
 from bedplan.data.ahead.readings import take_readings
 from bedplan.data.ahead.stay_bands import fit_stay_bands, growth_of_bed_days
 from bedplan.data.demand.demand_notes import demand_notes
@@ -174,8 +175,7 @@ def estimate_demand(
 
 def _growth(records: Records, ward: str, arrivals: Arrivals) -> tuple[tuple[float, float], tuple[float, float]]:
     """Return by which share admissions, then bed-days, grow a year, each with its standard error; 0 if too short."""
-    growth = arrivals.rhythm.growth_per_year
-    error = arrivals.rhythm.growth_error * math.sqrt(max(arrivals.swing.dispersion, 1.0))
+    growth, error = arrivals.growth
     if error == 0:
         return (0.0, 0.0), (0.0, 0.0)
     readings = take_readings(records, ward)
@@ -203,7 +203,7 @@ def _demand(
         weekday_factors=(1.0,) * 7 if flat else rhythm.weekday_factors,
         hour_factors=(1.0,) * 24 if flat or not records.has_times else arrivals.hour_factors,
         clustering=arrivals.swing.clear_clustering,
-        rate_variation=min(arrivals.swing.rate_variation or 0.0, 2.0),
+        rate_variation=USUAL if arrivals.swing.rate_variation is None else arrivals.swing.rate_variation,
         booked=lists,
     )
 

@@ -231,9 +231,9 @@ def test_a_ward_that_changes_fails(jump: float, said: str) -> None:
         assert not result.passed
         assert result.verdict.startswith("Failed: ")
         assert said in result.verdict
-        # The origins move on and learn: the last months are told better than those just after the change.
+        # The origins move on and learn: what could not be foreseen in its first month is, once it was seen.
         shares = [share for _, share in result.months]
-        assert np.mean(shares[-3:]) > np.mean(shares[1:4])
+        assert np.mean(shares[1:]) > shares[0] + 0.3
 
 
 def changed_after(records: Records, moment: pd.Timestamp) -> Records:

@@ -246,7 +246,7 @@ def test_a_closed_ward_is_foreseen_as_open(first: int, last: int | None, off: fl
 
 
 def test_what_changed_lately_is_said() -> None:
-    """A third more in the last four weeks is named, with the way the forecast errs; a steady ward has no such note."""
+    """Half as many again in the last four weeks are named, with the way the forecast errs; a steady ward has no such note."""
     records = made_records(MadeWard(8.0, 5.0, 1.0, growth=0.0), 3)
     lately = records.stays[records.stays["start"] >= records.window[1] - pd.Timedelta(days=28)]
     more = replace(records, stays=pd.concat([records.stays, lately.iloc[::2]]).reset_index(drop=True))
@@ -254,7 +254,8 @@ def test_what_changed_lately_is_said() -> None:
     (note,) = (note for note in forecast_arrivals(more, "Heron").notes if " lately: " in note)
     assert note.startswith("Arrivals grew by ")
     assert f"in the last 4 weeks {len(lately) + len(lately.iloc[::2])} came" in note
-    assert "too few beds if the change lasts" in note
+    assert "half-way" in note
+    assert "too few beds" in note
     assert not any(" lately: " in note for note in forecast_arrivals(records, "Heron").notes)
 
 

