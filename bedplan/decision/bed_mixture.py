@@ -14,13 +14,13 @@ import numpy as np
 
 from bedplan.decision.changing_beds import arrivals_by_day, arrivals_by_month
 from bedplan.models import Waits
-from bedplan.models.settling import (
+from bedplan.models.chains.settling import (
     days_of,
     share_full_as_if_settled,
     share_full_at_random,
     share_full_by_day,
 )
-from bedplan.models.year import (
+from bedplan.models.rhythm.year import (
     MONTHS,
     YEAR_DAYS,
     beds_wanted,
@@ -124,7 +124,7 @@ def with_changing_beds(curve: BedCurve, changes: BedChanges, beds: Counts) -> Be
     Occupancy is patients in beds ÷ open beds on average, at most 1 where nobody lies beyond the beds. Shares by weekday
     and by group are not given.
 
-    Source: the law of total probability; the chain as in ``models/settling.py``.
+    Source: the law of total probability; the chain as in ``models/chains/settling.py``.
     Checked by: tests/decision/test_changing_beds.py
     """
     if changes.is_neutral:

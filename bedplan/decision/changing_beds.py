@@ -14,9 +14,9 @@ import numpy as np
 
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Closure
-from bedplan.models.figures import all_of_kind, listed, number, whole
-from bedplan.models.settling import AtRandom, shares_in_force
-from bedplan.models.year import MONTHS, WEEKDAYS, YEAR_DAYS, arrivals_by_hour, month_of_day, weekday_of_day
+from bedplan.models.chains.settling import AtRandom, shares_in_force
+from bedplan.models.rhythm.year import MONTHS, WEEKDAYS, YEAR_DAYS, arrivals_by_hour, month_of_day, weekday_of_day
+from bedplan.models.value_objects.figures import all_of_kind, listed, number, whole
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray

@@ -17,9 +17,15 @@ from bedplan.decision.comparing import DAYS_PER_YEAR, Refused
 from bedplan.decision.sharing import named_once
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import erlang_b, offered_load_by_hour
-from bedplan.models.overflow import overflow_pair, shared_overflow
-from bedplan.models.reservation import beds_held_back
-from bedplan.models.year import MONTHS, booked_load_in_week, month_of_hour, unbooked_by_hour, unbooked_load_by_hour
+from bedplan.models.rhythm.year import (
+    MONTHS,
+    booked_load_in_week,
+    month_of_hour,
+    unbooked_by_hour,
+    unbooked_load_by_hour,
+)
+from bedplan.models.sharing.overflow import overflow_pair, shared_overflow
+from bedplan.models.sharing.reservation import beds_held_back
 
 if TYPE_CHECKING:
     from collections.abc import Iterable

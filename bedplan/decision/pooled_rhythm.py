@@ -12,8 +12,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from scipy import optimize
 
-from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_held, hours_held
-from bedplan.models.year import (
+from bedplan.models.rhythm.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_held, hours_held
+from bedplan.models.rhythm.year import (
     booked_load_in_week,
     hour_of_day,
     leaving_of,

@@ -16,8 +16,8 @@ from bedplan.decision.sharing import named_once
 from bedplan.decision.ward import Ward
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay
-from bedplan.models.clusters import peakedness
-from bedplan.models.figures import all_of_kind
+from bedplan.models.formulas.clusters import peakedness
+from bedplan.models.value_objects.figures import all_of_kind
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterable, Sequence

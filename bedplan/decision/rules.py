@@ -10,8 +10,8 @@ from typing import TYPE_CHECKING, ClassVar, Literal
 import numpy as np
 
 from bedplan.errors import ImpossibleFigure, TargetOutOfReach
-from bedplan.models.figures import ABOVE_ZERO, number
-from bedplan.models.year import MONTHS
+from bedplan.models.rhythm.year import MONTHS
+from bedplan.models.value_objects.figures import ABOVE_ZERO, number
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray

@@ -11,7 +11,7 @@ import numpy as np
 
 from bedplan.decision.comparing import DAYS_PER_YEAR
 from bedplan.errors import ImpossibleFigure
-from bedplan.models.figures import number, whole
+from bedplan.models.value_objects.figures import number, whole
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping, Sequence

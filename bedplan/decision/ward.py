@@ -13,8 +13,8 @@ from bedplan.decision.bed_mixture import with_changing_beds
 from bedplan.decision.changing_beds import NO_BED_CHANGES, BedChanges
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import MODELS, BedCurve, Demand, average_beds
-from bedplan.models.figures import all_of_kind, number, quoted, whole
-from bedplan.models.year import beds_wanted
+from bedplan.models.rhythm.year import beds_wanted
+from bedplan.models.value_objects.figures import all_of_kind, number, quoted, whole
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray

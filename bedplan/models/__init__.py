@@ -6,18 +6,19 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 from bedplan.models.average import average_beds, average_occupancy
-from bedplan.models.bed_curve import BedCurve, BedPoint, Waits, bed_counts
-from bedplan.models.demand import BookedList, Demand
-from bedplan.models.erlang import erlang_b, erlang_b_log, erlang_c, erlang_loss
-from bedplan.models.patience import Patience, erlang_a
+from bedplan.models.formulas.erlang import erlang_b, erlang_b_log, erlang_c
+from bedplan.models.formulas.patience import Patience, erlang_a
+from bedplan.models.rhythm.year import offered_load_by_hour
 from bedplan.models.seasonal import seasonal_loss
-from bedplan.models.simulation import SimulatedWard, simulate_ward
-from bedplan.models.simulation_run import Closure, WardRun
-from bedplan.models.stay import LengthOfStay
-from bedplan.models.stay_fit import SeenStays, StayFit, fit_stay
+from bedplan.models.simulation.run import Closure, WardRun
+from bedplan.models.simulation.ward import SimulatedWard, simulate_ward
+from bedplan.models.steady import erlang_loss
 from bedplan.models.unlimited import unlimited_beds
+from bedplan.models.value_objects.bed_curve import BedCurve, BedPoint, Waits, bed_counts
+from bedplan.models.value_objects.demand import BookedList, Demand
+from bedplan.models.value_objects.stay import LengthOfStay
+from bedplan.models.value_objects.stay_fit import SeenStays, StayFit, fit_stay
 from bedplan.models.waiting import waiting
-from bedplan.models.year import offered_load_by_hour
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping

@@ -7,14 +7,14 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bedplan.models.bed_curve import BedCurve, bed_counts
-from bedplan.models.figures import ABOVE_ZERO, number
-from bedplan.models.year import beds_wanted, patients_wanted
+from bedplan.models.rhythm.year import beds_wanted, patients_wanted
+from bedplan.models.value_objects.bed_curve import BedCurve, bed_counts
+from bedplan.models.value_objects.figures import ABOVE_ZERO, number
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike
 
-    from bedplan.models.demand import Demand
+    from bedplan.models.value_objects.demand import Demand
 
 
 def average_beds(admissions_per_year: float, mean_stay_days: float, occupancy: float = 0.85) -> float:

@@ -6,13 +6,19 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bedplan.models.bed_curve import BedCurve, bed_counts
-from bedplan.models.clusters import TOGETHER_NOTE, clustering_notes, loss_table, swing_when_full
-from bedplan.models.found_full import GROUPS, FoundFull, group_of_hour, month_of_group, shares_full, weekday_of_group
-from bedplan.models.load_grid import load_grid
-from bedplan.models.rhythm_correction import rhythm_correction, season_correction
-from bedplan.models.uncertain_rate import possible_rates
-from bedplan.models.year import (
+from bedplan.models.chains.rhythm_correction import rhythm_correction, season_correction
+from bedplan.models.formulas.clusters import TOGETHER_NOTE, clustering_notes, loss_table, swing_when_full
+from bedplan.models.formulas.uncertain_rate import possible_rates
+from bedplan.models.rhythm.found_full import (
+    GROUPS,
+    FoundFull,
+    group_of_hour,
+    month_of_group,
+    shares_full,
+    weekday_of_group,
+)
+from bedplan.models.rhythm.load_grid import load_grid
+from bedplan.models.rhythm.year import (
     WEEKS,
     all_booked_in_week,
     beds_wanted,
@@ -23,11 +29,12 @@ from bedplan.models.year import (
     unbooked_by_hour,
     unbooked_load_by_hour,
 )
+from bedplan.models.value_objects.bed_curve import BedCurve, bed_counts
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
 
-    from bedplan.models.demand import Demand
+    from bedplan.models.value_objects.demand import Demand
 
     Array = NDArray[np.float64]
 

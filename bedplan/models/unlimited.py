@@ -8,12 +8,11 @@ from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
-from bedplan.models.bed_curve import BedCurve, bed_counts
-from bedplan.models.census import Watch, chance_of
-from bedplan.models.found_full import FoundFull, group_of_hour, shares_full
-from bedplan.models.group_census import more_find_full_if_groups_differ
-from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR
-from bedplan.models.year import (
+from bedplan.models.census.everyone import Watch, chance_of
+from bedplan.models.census.groups import more_find_full_if_groups_differ
+from bedplan.models.rhythm.found_full import FoundFull, group_of_hour, shares_full
+from bedplan.models.rhythm.leaving import HOURS_A_WEEK, HOURS_A_YEAR
+from bedplan.models.rhythm.year import (
     WEEKS,
     all_booked_in_week,
     month_of_hour,
@@ -21,11 +20,12 @@ from bedplan.models.year import (
     patients_wanted,
     unbooked_by_hour,
 )
+from bedplan.models.value_objects.bed_curve import BedCurve, bed_counts
 
 if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
 
-    from bedplan.models.demand import Demand
+    from bedplan.models.value_objects.demand import Demand
 
     Array = NDArray[np.float64]
     Counts = NDArray[np.int64]

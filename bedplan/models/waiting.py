@@ -7,12 +7,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from bedplan.models.bed_curve import BedCurve, Waits, bed_counts
-from bedplan.models.clusters import TOGETHER_NOTE, clustering_notes
-from bedplan.models.uncertain_rate import few_rates
-from bedplan.models.waiting_spread import spread_of, wait_ratio
-from bedplan.models.waiting_year import Pace, raised_by_swing, settled_queue, share_who_wait, steady_wards
-from bedplan.models.year import (
+from bedplan.models.formulas.clusters import TOGETHER_NOTE, clustering_notes
+from bedplan.models.formulas.uncertain_rate import few_rates
+from bedplan.models.queue.spread import spread_of, wait_ratio
+from bedplan.models.queue.through_year import Pace, raised_by_swing, settled_queue, share_who_wait, steady_wards
+from bedplan.models.rhythm.year import (
     HOURS_A_WEEK,
     HOURS_A_YEAR,
     WEEKS,
@@ -25,14 +24,15 @@ from bedplan.models.year import (
     unbooked_by_hour,
     unbooked_load_by_hour,
 )
+from bedplan.models.value_objects.bed_curve import BedCurve, Waits, bed_counts
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
     from numpy.typing import ArrayLike, NDArray
 
-    from bedplan.models.demand import Demand
-    from bedplan.models.waiting_spread import Spread
+    from bedplan.models.queue.spread import Spread
+    from bedplan.models.value_objects.demand import Demand
 
     Array = NDArray[np.float64]
 
@@ -245,7 +245,7 @@ def waiting(demand: Demand, beds: ArrayLike) -> BedCurve:
     Raises:
         ImpossibleFigure: bed counts that aren't whole, ascending and 0 or more.
 
-    Source: Erlang 1917; Allen 1990 and the others named in waiting_spread; Wang, Tipper & Banerjee 1996.
+    Source: Erlang 1917; Allen 1990 and the others named in ``queue/spread.py``; Wang, Tipper & Banerjee 1996.
     Checked by: tests/models/test_waiting.py, tests/models/test_every_model.py
     """
     counts = bed_counts(beds)

@@ -25,9 +25,9 @@ import bedplan.models
 from bedplan.decision import TurnAwayLimit, decide
 from bedplan.errors import TargetOutOfReach
 from bedplan.models import MODELS, BookedList, Demand, LengthOfStay, offered_load_by_hour
-from bedplan.models.erlang import erlang_b_table
-from bedplan.models.load_grid import load_grid
-from bedplan.models.year import arrivals_by_hour, month_of_hour
+from bedplan.models.formulas.erlang import erlang_b_table
+from bedplan.models.rhythm.load_grid import load_grid
+from bedplan.models.rhythm.year import arrivals_by_hour, month_of_hour
 
 if TYPE_CHECKING:
     from collections.abc import Callable

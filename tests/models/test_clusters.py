@@ -14,7 +14,7 @@ from scipy import sparse
 from scipy.sparse import linalg
 
 from bedplan.models import BookedList, Demand, LengthOfStay, erlang_b
-from bedplan.models.clusters import (
+from bedplan.models.formulas.clusters import (
     clustering_notes,
     group_sizes,
     hayward,

@@ -13,7 +13,7 @@ from hypothesis import strategies as st
 from scipy import stats
 
 from bedplan.models import MODELS, BedCurve, BookedList, Demand, LengthOfStay
-from bedplan.models.year import offered_load_by_hour
+from bedplan.models.rhythm.year import offered_load_by_hour
 
 if TYPE_CHECKING:
     from collections.abc import Callable

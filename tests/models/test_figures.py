@@ -9,7 +9,16 @@ import numpy as np
 import pytest
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models.figures import ABOVE_ZERO, all_of_kind, array_of, days_given, listed, number, quoted, whole
+from bedplan.models.value_objects.figures import (
+    ABOVE_ZERO,
+    all_of_kind,
+    array_of,
+    days_given,
+    listed,
+    number,
+    quoted,
+    whole,
+)
 
 
 @pytest.mark.parametrize("value", [4, 4.0, np.float64(4), np.float32(4), np.int8(4), Fraction(4)])

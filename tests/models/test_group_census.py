@@ -10,14 +10,14 @@ import pytest
 from scipy import integrate, stats
 
 from bedplan.models import Demand, LengthOfStay, simulate_ward, unlimited_beds
-from bedplan.models.group_census import (
+from bedplan.models.census.groups import (
     ahead_in_group,
     at_least_in_groups,
     loads_by_number,
     loads_by_number_if_groups_differ,
     more_find_full_if_groups_differ,
 )
-from bedplan.models.simulation_run import WardRun
+from bedplan.models.simulation.run import WardRun
 
 WEEK = (1.2097, 1.4713, 1.3779, 1.0, 0.6221, 0.5287, 0.7903)
 DAY = tuple(1.0 + 0.6 * math.sin(2.0 * math.pi * (hour - 8) / 24) for hour in range(24))

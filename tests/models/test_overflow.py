@@ -13,7 +13,7 @@ from scipy.sparse import linalg
 
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import erlang_b
-from bedplan.models.overflow import overflow_pair, shared_overflow
+from bedplan.models.sharing.overflow import overflow_pair, shared_overflow
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterator, Sequence

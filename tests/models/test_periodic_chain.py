@@ -8,8 +8,8 @@ import numpy as np
 import pytest
 
 from bedplan.models import LengthOfStay, erlang_b
-from bedplan.models.leaving import HOURS_A_WEEK, Leaving, beds_held, hours_held
-from bedplan.models.periodic_chain import Group, Rhythm, fullness, leaving_rates, merged
+from bedplan.models.chains.periodic import Group, Rhythm, fullness, leaving_rates, merged
+from bedplan.models.rhythm.leaving import HOURS_A_WEEK, Leaving, beds_held, hours_held
 from tests.models.exact_week import Arrivals, exponential, turned_away
 
 WEEK = np.array([1.2097, 1.4713, 1.3779, 1.0, 0.6221, 0.5287, 0.7903])

@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models.reservation import beds_each, beds_held_back
+from bedplan.models.sharing.reservation import beds_each, beds_held_back
 
 if TYPE_CHECKING:
     from collections.abc import Callable

@@ -17,9 +17,9 @@ from bedplan.models import (
     seasonal_loss,
     simulate_ward,
 )
-from bedplan.models.leaving import HOURS_A_YEAR, Leaving, beds_held, hours_held
-from bedplan.models.periodic_chain import Rhythm, fullness
-from bedplan.models.year import mean_week, month_of_hour, offered_load_by_hour, unbooked_by_hour
+from bedplan.models.chains.periodic import Rhythm, fullness
+from bedplan.models.rhythm.leaving import HOURS_A_YEAR, Leaving, beds_held, hours_held
+from bedplan.models.rhythm.year import mean_week, month_of_hour, offered_load_by_hour, unbooked_by_hour
 from tests.models.exact_week import Arrivals, Phases, exponential, turned_away
 
 WEEK = (1.2097, 1.4713, 1.3779, 1.0, 0.6221, 0.5287, 0.7903)

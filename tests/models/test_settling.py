@@ -10,7 +10,7 @@ import pytest
 from scipy import linalg
 
 from bedplan.models import Demand, LengthOfStay
-from bedplan.models.settling import (
+from bedplan.models.chains.settling import (
     AtRandom,
     days_of,
     share_full_as_if_settled,

@@ -15,14 +15,14 @@ from scipy import integrate, stats
 
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import BookedList, Closure, Demand, LengthOfStay, WardRun, erlang_b, erlang_c, simulate_ward
-from bedplan.models.simulation_beds import all_empty, pass_through, settle_leaving
-from bedplan.models.simulation_events import BOOKED, NOBODY, Part, draw_comers
-from bedplan.models.year import offered_load_by_hour
+from bedplan.models.rhythm.year import offered_load_by_hour
+from bedplan.models.simulation.beds import all_empty, pass_through, settle_leaving
+from bedplan.models.simulation.events import BOOKED, NOBODY, Part, draw_comers
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
-    from bedplan.models.simulation_events import Comers
+    from bedplan.models.simulation.events import Comers
 
 EXPONENTIAL = LengthOfStay(4.0, 1.0, "gamma")
 # factors of a busy week, Monday first, and the hours of an ordinary day

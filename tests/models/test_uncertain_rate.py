@@ -9,7 +9,7 @@ import pytest
 from scipy import integrate, stats
 
 from bedplan.models import Demand, LengthOfStay, erlang_b, seasonal_loss
-from bedplan.models.uncertain_rate import few_rates, possible_rates
+from bedplan.models.formulas.uncertain_rate import few_rates, possible_rates
 
 
 @pytest.mark.parametrize("variation", [0.0, 0.01, 0.05, 0.2, 0.5])

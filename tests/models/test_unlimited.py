@@ -9,12 +9,12 @@ import pytest
 from scipy import stats
 
 from bedplan.models import BookedList, Demand, LengthOfStay, offered_load_by_hour, simulate_ward, unlimited_beds
-from bedplan.models.booked_census import booked_census, number_present
-from bedplan.models.census import Watch, at_least, chance_of
-from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, hours_held
+from bedplan.models.census.booked import booked_census, number_present
+from bedplan.models.census.everyone import Watch, at_least, chance_of
+from bedplan.models.rhythm.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, hours_held
+from bedplan.models.rhythm.within_hour import held_at, looks
+from bedplan.models.rhythm.year import arrivals_by_hour, leaving_of, month_of_hour, weekday_of_hour
 from bedplan.models.unlimited import busy_levels
-from bedplan.models.within_hour import held_at, looks
-from bedplan.models.year import arrivals_by_hour, leaving_of, month_of_hour, weekday_of_hour
 
 WEEK = (1.2097, 1.4713, 1.3779, 1.0, 0.6221, 0.5287, 0.7903)
 SEASON = (1.3, 1.18, 1.06, 0.97, 0.9, 0.84, 0.8, 0.8, 0.88, 1.0, 1.1, 1.24)

@@ -21,10 +21,10 @@ from bedplan.models import (
     simulate_ward,
     waiting,
 )
-from bedplan.models.clusters import more_if_groups_differ
-from bedplan.models.waiting_spread import spread_of, wait_ratio
-from bedplan.models.waiting_year import Pace, settled_queue, steady_wards
-from bedplan.models.year import unbooked_by_hour
+from bedplan.models.formulas.clusters import more_if_groups_differ
+from bedplan.models.queue.spread import spread_of, wait_ratio
+from bedplan.models.queue.through_year import Pace, settled_queue, steady_wards
+from bedplan.models.rhythm.year import unbooked_by_hour
 
 WINTER = (1.3, 1.2, 1.1, 1.0, 0.9, 0.9, 0.8, 0.8, 0.9, 1.0, 1.0, 1.1)
 EXPONENTIAL = LengthOfStay(4.0, 1.0, "gamma")

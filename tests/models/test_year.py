@@ -9,10 +9,10 @@ import pytest
 from scipy import integrate
 
 from bedplan.models import BookedList, Demand, LengthOfStay, erlang_b, offered_load_by_hour
-from bedplan.models.erlang import erlang_b_table
-from bedplan.models.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_held, hours_held
-from bedplan.models.load_grid import load_grid
-from bedplan.models.year import (
+from bedplan.models.formulas.erlang import erlang_b_table
+from bedplan.models.rhythm.leaving import HOURS_A_WEEK, HOURS_A_YEAR, Leaving, beds_held, hours_held
+from bedplan.models.rhythm.load_grid import load_grid
+from bedplan.models.rhythm.year import (
     arrivals_by_hour,
     beds_wanted,
     booked_load_in_week,
