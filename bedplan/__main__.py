@@ -69,7 +69,7 @@ def arguments() -> argparse.ArgumentParser:
             default=0.0,
             help=f"change of {name} against the records, as a share: 0.05 = 5 %% more",
         )
-    parser.add_argument("--peak", type=float, default=1.0, help="size of the winter peak against the recorded one")
+    parser.add_argument("--peak", type=float, default=1.0, help="size of the season against the recorded one")
     parser.add_argument("--out", type=Path, default=Path(), help="folder for the two documents")
     return parser
 

@@ -106,13 +106,12 @@ class WardCase:
         """Say the answer in at most 30 words."""
         months = self.months_at(self.ward.beds)
         worst = int(np.argmax(months))
-        alike = float(np.ptp(months)) <= ALIKE * float(months[worst])
         needed = None if self.decision is None else self.decision.beds
         return wording.answer_sentence(
             self.ward.name,
             (self.ward.beds if self.beds_are_known else None, self.ward.average_formula_beds, needed),
             (self.rule.most, self.words[1], self.within),
-            (None if alike else worst, float(months[worst])),
+            (None if _are_alike(months) else worst, float(months[worst])),
         )
 
     def marked(self) -> dict[str, int | None]:
@@ -137,15 +136,18 @@ class WardCase:
 
     def _row(self, mark: str, beds: int) -> dict[str, str]:
         months, share = self.months_at(beds), self.share_at(beds)
-        worst, best = int(np.argmax(months)), int(np.argmin(months))
+        worst, best = (
+            wording.percent(float(months[at])) if _are_alike(months) else wording.in_month(at, float(months[at]))
+            for at in (int(np.argmax(months)), int(np.argmin(months)))
+        )
         return {
             "": mark.capitalize() if mark != "today" or self.beds_are_known else "Today, assumed",
             "Staffed beds": str(beds),
             "A year": self.a_year(beds),
             "As a share": wording.percent(share),
             "In words": wording.one_in(share),
-            "Highest month": wording.in_month(worst, float(months[worst])),
-            "Lowest month": wording.in_month(best, float(months[best])),
+            "Highest month": worst,
+            "Lowest month": best,
             "Occupancy that results": wording.percent(self.curve.at(beds).occupancy, 0),
         }
 
@@ -158,6 +160,11 @@ class WardCase:
                 "find it full than this says: set the limit on waits to plan for that."
             )
         return tuple(dict.fromkeys(found))
+
+
+def _are_alike(months: NDArray[np.float64]) -> bool:
+    """Are the figures of these months so near one another that none is worth naming?"""
+    return float(np.ptp(months)) <= ALIKE * float(months.max())
 
 
 def with_check(case: WardCase, check: Callable[[], Backtest]) -> WardCase:

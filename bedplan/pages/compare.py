@@ -43,17 +43,17 @@ def total(frame: pd.DataFrame) -> str:
     """Say the hospital total in a sentence."""
     found = wording.patients_per_year(float(frame["Find it full, a year"].sum()))
     needed = frame["By the limit"]
-    by_limit = f"{int(needed.sum())}" if needed.notna().all() else "not reachable for every ward"
+    by_limit = f"{int(needed.sum()):,}" if needed.notna().all() else "not reachable for every ward"
     return (
-        f"{f'All {len(frame)} wards' if len(frame) > 1 else 'One ward'}: {int(frame['Staffed beds today'].sum())} staffed beds today, "
-        f"{int(frame['Average formula'].sum())} by the average formula, {by_limit} by the limit. "
+        f"{f'All {len(frame)} wards' if len(frame) > 1 else 'One ward'}: {int(frame['Staffed beds today'].sum()):,} staffed beds today, "
+        f"{int(frame['Average formula'].sum()):,} by the average formula, {by_limit} by the limit. "
         f"Patients who find their ward full: {found} a year."
     )
 
 
+WIDEST_NAME = 320  # pixels
 # headings short enough for a projector's width; the ward stays in sight where the table is wider than the screen
 COLUMNS = {
-    "Ward": st.column_config.TextColumn(pinned=True),
     "Staffed beds today": st.column_config.NumberColumn("Staffed today", help="Staffed beds today."),
     "Next bed spares, a year": st.column_config.NumberColumn(
         "Next bed spares", format="localized", help="Patients a year who no longer find the ward full."
@@ -75,11 +75,12 @@ COLUMNS = {
 
 controls.show_origin()
 cases = []
-for name in controls.ward_names():
-    try:
-        cases.append(controls.case_of(name))
-    except BedplanError as error:
-        st.warning(f"{wording.plain(name)}: {wording.plain(str(error))}")
+with st.spinner("Working out every ward…"):
+    for name in controls.ward_names():
+        try:
+            cases.append(controls.case_of(name))
+        except BedplanError as error:
+            st.warning(f"{wording.plain(name)}: {wording.plain(str(error))}")
 if cases:
     cases.sort(key=spared, reverse=True)
     most = wording.patients_per_year(spared(cases[0]))
@@ -93,7 +94,9 @@ if cases:
         f"Limit: {wording.one_in(controls.limit_share())}, {within}; where patients wait it is on {watched}. "
         "Set it on the page One ward."
     )
-    st.dataframe(table, column_config=COLUMNS, hide_index=True, width="stretch", height=35 * (len(table) + 1) + 3)
+    ward = st.column_config.TextColumn(pinned=True, width=min(24 + 8 * max(map(len, table["Ward"])), WIDEST_NAME))
+    columns = {"Ward": ward, **COLUMNS}
+    st.dataframe(table, column_config=columns, hide_index=True, width="stretch", height=35 * (len(table) + 1) + 3)
     st.caption(
         "Not a league table: it says nothing about how well a ward works. A critical-care bed costs several times a "
         "ward bed. Wards that wait and wards that turn away are read on different models."

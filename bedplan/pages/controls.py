@@ -30,7 +30,7 @@ SLIDERS: Mapping[str, tuple[str, int, int, int, int, str]] = {
     "demand": ("Demand", -50, 100, 0, 1, "%+d %%"),
     "stay": ("Mean stay", -50, 100, 0, 1, "%+d %%"),
     "spread": ("Spread of stay", -75, 150, 0, 5, "%+d %%"),
-    "peak": ("Winter peak", 0, 250, 100, 5, "%d %% of recorded"),
+    "peak": ("Season", 0, 250, 100, 5, "%d %% of recorded"),
     "growth": ("Growth of bed-days to next year", -10, 20, 0, 1, "%+d %%"),
 }
 LIMIT = ("Limit", 1, 20, 5, 1, "%d %%")
@@ -155,13 +155,18 @@ def ward_names() -> list[str]:
 
 def choose_ward() -> str:
     """Draw the choice of a ward in the sidebar, for pages about the records; the same ward as on the page One ward."""
-    names = list(loaded.records().wards)
+    names, hand = list(loaded.records().wards), st.session_state.get("in_hand")
     shown = in_hand(names)
     with st.sidebar:
         name = st.selectbox("Ward", names, names.index(shown), key="ward_looked_at")
     if name != shown:
         show_ward(name)
-    take_in_hand(name)
+    if name == shown and hand not in names and hand in st.session_state.get("typed", {}):
+        st.info(
+            f"{wording.plain(hand)} is known by totals only, with no records to look at: this is {wording.plain(name)}."
+        )
+    else:
+        take_in_hand(name)
     return name
 
 
@@ -217,7 +222,10 @@ def case_of(name: str) -> WardCase:
 
 def _as_typed(base: Baseline, beds: int) -> Baseline:
     """Return a baseline without the word that today's beds are not known, once the planner typed them."""
-    if wording.BEDS_UNKNOWN not in base.notes or beds in (base.beds, loaded.baseline(base.name, with_hidden=False).beds):
+    if wording.BEDS_UNKNOWN not in base.notes or beds in (
+        base.beds,
+        loaded.baseline(base.name, with_hidden=False).beds,
+    ):
         return base
     return replace(base, notes=tuple(note for note in base.notes if note != wording.BEDS_UNKNOWN))
 

@@ -54,7 +54,7 @@ def show(name: str) -> None:
     for note in found.notes:
         st.markdown(f"- {wording.plain(note)}")
     chosen = st.toggle(
-        f"Plan {wording.plain(name)} on this demand",
+        f"Plan {wording.plain(name)} on what was asked for",
         bool(controls.settings_of(name)["hidden"]),
         key=f"plan_hidden_{name}",
     )

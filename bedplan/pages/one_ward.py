@@ -59,6 +59,8 @@ def _growth_text(base: Baseline) -> str:
 
 
 def _peak_text(factors: tuple[float, ...], size: float) -> str:
+    if max(factors) == min(factors):
+        return "none known"
     top = max(range(12), key=lambda month: factors[month])
     return f"{wording.MONTHS_SHORT[top]} {wording.signed_percent(size * (factors[top] - 1))}"
 

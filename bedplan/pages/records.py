@@ -46,12 +46,20 @@ def show_intake(here: Records) -> None:
             }
             for one in report.findings
         ]
-        st.dataframe(pd.DataFrame(found), hide_index=True, width="stretch")
+        st.dataframe(
+            pd.DataFrame(found),
+            column_config={name: st.column_config.NumberColumn(format="localized") for name in ("Rows", "Bed-days")},
+            hide_index=True,
+            width="stretch",
+            height=35 * (len(found) + 1) + 3,  # whole, without a second scroll bar
+        )
     if report.dropped_columns:
         dropped = ", ".join(wording.plain(name) for name in report.dropped_columns)
         st.markdown(f"Dropped because they may identify people: {dropped}.")
+    asked = {link.sentence for link in loaded.links()}  # asked further down, with a button
     for note in report.notes:
-        st.markdown(f"- {wording.plain(note)}")
+        if note not in asked:
+            st.markdown(f"- {wording.plain(note)}")
     show_repairs()
     show_checks()
     if len(here.set_aside):

@@ -64,7 +64,7 @@ class Changes:
             ("Demand, against the records", wording.signed_percent(self.demand)),
             ("Mean stay, against the records", wording.signed_percent(self.stay)),
             ("Spread of stay, against the records", wording.signed_percent(self.spread)),
-            ("Size of the winter peak, against the records", wording.percent(self.peak)),
+            ("Size of the season, against the records", wording.percent(self.peak)),
             ("Growth of bed-days to the planned year", wording.signed_percent(self.growth)),
         )
 

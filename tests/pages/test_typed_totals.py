@@ -146,3 +146,24 @@ def test_the_ward_just_typed_is_shown(open_app: Callable[..., AppTest]) -> None:
     go(app, "one_ward")
     assert app.selectbox(key="ward").value == "Annex"
     assert "Annex has 21 staffed beds" in app.header[0].value
+
+
+@pytest.mark.parametrize("page", ["what_happened", "hidden"])
+def test_a_look_at_the_records_keeps_the_typed_ward_in_hand(open_app: Callable[..., AppTest], page: str) -> None:
+    """Pages about records say that a ward known by totals has none, show another, and leave it in hand until one is chosen."""
+    app = type_totals(open_app(), {"Admissions": 1200.0})
+    go(app, page)
+    assert len([one for one in app.info if "Annex is known by totals only" in one.value]) == 1
+    assert go(app, "justification").multiselect(key="justified").value == ["Annex"]
+
+    go(app, page).selectbox(key="ward_looked_at").set_value("Teal").run()
+    assert not [one for one in app.info if "Annex" in one.value]
+    assert go(app, "justification").multiselect(key="justified").value == ["Teal"]
+
+
+def test_months_that_are_alike_are_not_named(open_app: Callable[..., AppTest]) -> None:
+    """Totals know no season, so no month is called the highest or lowest, and no busiest one stands at its slider."""
+    app = type_totals(open_app(), {"Admissions": 1200.0})
+    plan(app, "Annex")
+    assert not re.search(r"\b(?:Jan|Feb|Mar|Apr|May|Jun|Jul|Aug|Sep|Oct|Nov|Dec)\b", app.table[0].value.to_csv())
+    assert app.slider(key="peak").label == "Season: none known"

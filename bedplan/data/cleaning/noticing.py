@@ -8,7 +8,7 @@ import numpy as np
 
 from bedplan.data.files.blocks import in_blocks
 from bedplan.data.files.dates import DAY_SECONDS, MISSING
-from bedplan.wording import few
+from bedplan.wording import few, percent
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -101,7 +101,7 @@ def _clock_notes(start: NDArray[np.int64], end: NDArray[np.int64]) -> list[str]:
     if stays:
         hours = inside / max(float(whole), 1.0)
         notes.append(
-            f"{stays / start.size:.0%} of stays start and end on one day ({hours:.1%} of bed-hours): no night, but a bed; "
+            f"{percent(stays / start.size)} of stays start and end on one day ({percent(hours)} of bed-hours): no night, but a bed; "
             "they are counted by the hour."
         )
     return notes
@@ -112,7 +112,7 @@ def _default_note(word: str, minutes: NDArray[np.int64]) -> list[str]:
     worst, every = int(minutes.argmax()), int(minutes.sum())
     if minutes[worst] <= DEFAULT_SHARE * every:
         return []
-    told = f"{minutes[worst] / every:.0%} of stays {word} at {worst // 60:02d}:{worst % 60:02d}"
+    told = f"{percent(minutes[worst] / every)} of stays {word} at {worst // 60:02d}:{worst % 60:02d}"
     return [f"{told}, which looks like a default and not a time: don't rely on hours of the day."]
 
 

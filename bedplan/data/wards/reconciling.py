@@ -49,8 +49,8 @@ class CensusCheck:
         """Do the two agree?"""
         word = "agree" if abs(self.difference) <= AGREES else "do not agree"
         return (
-            f"{self.ward}: stays and census {word}; rebuilt from stays, {self.difference:+.1%} patients over "
-            f"{len(self.days):,} days, and the same count on {self.days_alike:.0%} of them."
+            f"{self.ward}: stays and census {word}: patients differ by {percent(abs(self.difference))} over "
+            f"{len(self.days):,} days, and the count is the same on {percent(self.days_alike)} of them."
         )
 
 
