@@ -126,6 +126,7 @@ def test_a_saved_plan_comes_back_as_it_was() -> None:
                 "beds": 24.0,
                 "month_factors": [1.0] * 12,
                 "origin": "typed",
+                "beds_known": False,
             }
         },
         answers=Answers(
@@ -309,6 +310,18 @@ def test_a_season_survives_a_saved_plan(demo_data: Path) -> None:
     assert again.demand.month_factors == pytest.approx(ward.demand.month_factors)
     assert (again.beds, again.origin) == (ward.beds, ward.origin)
     assert again.demand.offered_load == pytest.approx(ward.demand.offered_load)
+
+
+def test_a_return_without_beds_does_not_claim_any() -> None:
+    """Beds that the return doesn't name start at the load, rounded up, and are said to be unknown, in a saved plan too."""
+    rows = b"month,ward,occupied bed days,discharges\n2024-01,North,325,50\n"  # 10.48 beds in use
+    ward = from_return(read_monthly_return(rows), "North")
+    saved = from_json(as_json(SavedPlan("", {}, {"North": as_totals(ward)})))
+    again = from_saved_totals("North", saved.typed["North"])
+
+    assert ward.beds == again.beds == 11
+    assert wording.BEDS_UNKNOWN in ward.notes
+    assert wording.BEDS_UNKNOWN in again.notes
 
 
 def test_more_beds_than_a_ward_has_is_a_sentence() -> None:

@@ -20,7 +20,7 @@ from bedplan.data import (
 )
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.pages import controls, intake, loaded, said, typed
-from bedplan.plan import FileAnswers, from_return
+from bedplan.plan import FileAnswers, as_totals, from_return
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -233,10 +233,12 @@ def take_return(given: Given) -> list[str]:
         loaded.use_file(given.content, "monthly_return", returned)
         returned = loaded.files().monthly_return
     made, told = [], [*returned.report.sentences, *returned.report.notes]
+    how_read = tuple((what, value, given.name) for what, value in answers.rows("Monthly return"))
     known = () if loaded.is_demo() else set(returned.wards) - set(returned.unknown_wards)
     for ward in sorted(set(returned.wards) - set(known)):
         try:
-            made.append(from_return(returned, ward))
+            base = from_return(returned, ward)
+            made.append(replace(base, facts=(*base.facts, *how_read)))
         except BedplanError as error:
             told.append(f"{ward}: {error}")
     use_made(said.mark_of(given.content), made)
@@ -254,6 +256,9 @@ def use_made(mark: str, made: list[Baseline]) -> None:
         if here.get(ward.name) == ward and ward.name not in {one.name for one in made}:
             typed.remove_totals(ward.name)
     for ward in made:
-        if here.get(ward.name) != ward:  # one taken already keeps its settings
+        known = here.get(ward.name)
+        if known is None or as_totals(known) != as_totals(ward):
             typed.use_totals(ward)
+        else:  # one that was here already, or in a plan, keeps its settings
+            st.session_state["typed"] |= {ward.name: ward}
     st.session_state["made_of_return"] = (mark, tuple(made))

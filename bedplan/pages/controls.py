@@ -222,10 +222,11 @@ def case_of(name: str) -> WardCase:
 
 def _as_typed(base: Baseline, beds: int) -> Baseline:
     """Return a baseline without the word that today's beds are not known, once the planner typed them."""
-    if wording.BEDS_UNKNOWN not in base.notes or beds in (
-        base.beds,
-        loaded.baseline(base.name, with_hidden=False).beds,
-    ):
+    if wording.BEDS_UNKNOWN not in base.notes:
+        return base
+    is_typed = base.name in st.session_state.get("typed", {})
+    recorded = base.beds if is_typed else loaded.baseline(base.name, with_hidden=False).beds
+    if beds in (base.beds, recorded):
         return base
     return replace(base, notes=tuple(note for note in base.notes if note != wording.BEDS_UNKNOWN))
 

@@ -183,6 +183,8 @@ def _facts(estimate: DemandEstimate) -> tuple[tuple[str, str, str], ...]:
 def from_return(returned: MonthlyReturn, ward: str) -> Baseline:
     """What does a monthly return say of a ward? Averages and months; how far stays and arrivals swing is assumed.
 
+    Where it names no available bed-days, beds start at the load, and a note says so.
+
     Raises:
         ImpossibleFigure: no bed-days or no discharges.
 
@@ -192,17 +194,20 @@ def from_return(returned: MonthlyReturn, ward: str) -> Baseline:
     rows = returned.table[returned.table["ward"] == ward]
     days = float(rows["days"].sum())
     known = f"{returned.name}, {len(rows)} months"
+    stated = round(float(rows["available"].sum()) / days)
+    unknown = () if stated else (wording.BEDS_UNKNOWN,)
+    averages = "Based on averages only: how far demand and stays swing is assumed, not measured."
     return Baseline(
         name=ward,
         demand=demand,
         admissions_per_year=float(rows["discharges"].sum()) / days * 365.0,
-        beds=round(float(rows["available"].sum()) / days),
+        beds=stated or math.ceil(demand.offered_load),
         facts=(
             ("Discharges a year", f"{float(rows['discharges'].sum()) / days * 365.0:,.0f}", known),
             ("Mean stay", wording.days(demand.length_of_stay.mean_days), f"{known}: bed-days ÷ discharges"),
             ("Spread of stay (SD ÷ mean)", f"{demand.length_of_stay.variation:.2f}", "assumed"),
         ),
-        notes=("Based on averages only: how far demand and stays swing is assumed, not measured.", *returned.cannot),
+        notes=(averages, *returned.cannot, *unknown),
         origin=f"{returned.name}, a monthly return",
     )
 

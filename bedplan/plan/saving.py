@@ -7,6 +7,7 @@ import math
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
+from bedplan import wording
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import LengthOfStay
 from bedplan.plan.answers import Answers, FileAnswers, saved_answers, saved_file_answers
@@ -86,20 +87,25 @@ def from_json(text: str | bytes) -> SavedPlan:
 
 def _typed(row: Mapping[str, Any]) -> dict[str, Any]:
     """Return one ward's totals: finite figures, its month factors and where they came from."""
-    known = {"arrivals_per_day": row["admissions_per_year"] / 365.0} | dict(row)
-    figures = {key: float(known[key]) for key in TOTALS}
+    held = {"arrivals_per_day": row["admissions_per_year"] / 365.0} | dict(row)
+    figures = {key: float(held[key]) for key in TOTALS}
     months = [float(factor) for factor in row.get("month_factors", ())]
     if not all(math.isfinite(figure) for figure in (*figures.values(), *months)):
         raise ValueError("a figure without end")
-    return {**figures, "month_factors": months, "origin": str(row.get("origin", ""))}
+    known = row.get("beds_known", True) is not False
+    return {**figures, "month_factors": months, "origin": str(row.get("origin", "")), "beds_known": known}
 
 
 def as_totals(ward: Baseline) -> dict[str, Any]:
     """Return a typed ward as the row of a plan file."""
     stay = ward.demand.length_of_stay
     figures = (ward.admissions_per_year, ward.demand.arrivals_per_day, stay.mean_days, stay.variation, ward.beds)
-    months = list(ward.demand.month_factors)
-    return {**dict(zip(TOTALS, figures, strict=True)), "month_factors": months, "origin": ward.origin}
+    others = {
+        "month_factors": list(ward.demand.month_factors),
+        "origin": ward.origin,
+        "beds_known": wording.BEDS_UNKNOWN not in ward.notes,
+    }
+    return dict(zip(TOTALS, figures, strict=True)) | others
 
 
 def from_saved_totals(name: str, row: Mapping[str, Any]) -> Baseline:
@@ -112,4 +118,5 @@ def from_saved_totals(name: str, row: Mapping[str, Any]) -> Baseline:
     ward = from_totals(name, row["admissions_per_year"], stay, round(row["beds"]))
     months = tuple(row["month_factors"]) or ward.demand.month_factors
     demand = replace(ward.demand, arrivals_per_day=row["arrivals_per_day"], month_factors=months)
-    return replace(ward, demand=demand, origin=row["origin"] or ward.origin)
+    unknown = () if row["beds_known"] else (wording.BEDS_UNKNOWN,)
+    return replace(ward, demand=demand, origin=row["origin"] or ward.origin, notes=(*ward.notes, *unknown))

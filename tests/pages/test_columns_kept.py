@@ -122,8 +122,8 @@ def test_a_plan_keeps_what_was_said_of_each_file(app: AppTest, monkeypatch: pyte
     tables = "\n".join(one.value.to_csv().replace("\\", "") for one in go(app, "justification").table)
     assert "Staffed beds: columns,ward = Haus; from = ab; staffed = Betten" in tables
     assert "Staffed beds: dates,day first" in tables
-    assert "Monthly return: months a row,3" in tables
     assert "Patients not given a bed: reasons taken for lack of a bed,code 7" in tables
+    assert ("Monthly return: months a row", "3", "return.csv") in app.session_state["typed"]["North"].facts
 
 
 @pytest.mark.parametrize("first", ["plan", "files"])
@@ -141,6 +141,20 @@ def test_the_same_files_are_read_the_same_way(app: AppTest, first: str) -> None:
     assert_as_said(app)
     app.run()
     assert_as_said(app)
+
+
+def test_a_return_brought_again_keeps_its_wards_settings(
+    app: AppTest, open_app: Callable[..., AppTest], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """A slider of a ward known by its return comes back with the plan, and stays when the return itself is brought."""
+    answer_all(app)
+    go(app, "one_ward").selectbox(key="ward").set_value("North").run().slider(key="demand").set_value(12).run()
+    again = give(go(open_app(), "records"), "plan", "plan.json", as_json(plan_of(app, monkeypatch)).encode())
+    give(again, "stays", "stays.csv", app.session_state["files"].content)
+    give(again, "monthly_return", "return.csv", RETURN)
+
+    assert not again.error
+    assert go(again, "one_ward").selectbox(key="ward").set_value("North").run().slider(key="demand").value == 12
 
 
 def test_a_file_no_longer_in_its_box_is_asked_for(app: AppTest) -> None:
@@ -203,3 +217,14 @@ def test_a_row_for_each_ward_is_not_taken_for_a_column_for_each(app: AppTest) ->
 
     assert not app.error
     assert app.session_state["files"].census.occupied("West").tolist() == [5] * 28
+
+
+def test_a_return_without_beds_waits_for_them_to_be_typed(app: AppTest) -> None:
+    """Beds that the return doesn't name are not known; typed on the page One ward, they are."""
+    give(app, "monthly_return", "return.csv", b"month,ward,obd,discharges\n2024-01,North,325,50\n")
+    go(app, "one_ward").selectbox(key="ward").set_value("North").run()
+    assert app.header[0].value.startswith("North's staffed beds today are not known")
+    app.number_input(key="beds").set_value(14).run()
+
+    assert not app.exception
+    assert app.header[0].value.startswith("North has 14 staffed beds")
