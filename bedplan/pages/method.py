@@ -19,13 +19,35 @@ METHODS = {
     "each hour elsewhere. Massey & Whitt 1994; patients in groups by a chain of the beds, smooth arrivals by Fredericks 1980; "
     "its note says how far it may err.",
     "waiting": "Patients wait for a bed instead of leaving, and the queue carries over: Erlang's delay formula (1917), "
-    "corrected for the spread of stay by Allen & Cunneen. Where the load reaches the beds the queue only grows.",
+    "corrected for the spread of stay by Allen & Cunneen, at each rate that is likely; through weeks and busy months the queue is "
+    "followed hour by hour. Where the load reaches the beds the queue only grows. Its note says how far it may err.",
+}
+
+FROM_RECORDS = {
+    "Rows": "Every row of a file is used, repaired by a rule that is named, or set aside with its reason; the page Records "
+    "shows the answer with and without the repaired ones.",
+    "Stay": "The product limit: patients still in count for as long as they were seen, those in before the file begins from "
+    "that day on. The mean is never taken from a fitted curve. Kaplan & Meier 1958; Klein & Moeschberger 2003.",
+    "Rhythm and growth": "One Poisson regression on months, weekdays and trend, drawn towards no effect by what chance "
+    "explains. Nelder & Wedderburn 1972; Efron & Morris 1975. Growth is of bed-days, by how long patients have been in.",
+    "Swing": "Patients who come together raise variance ÷ mean around a level of 28 days; what is slower is drift, found by "
+    "residual likelihood. Patterson & Thompson 1971. The two are never counted twice.",
+    "Hidden demand": "Lists of those not given a bed; arrivals while a bed was free (Wolff 1982); Erlang's loss formula solved "
+    "for its load; a specialty's patients on every ward. The page shows which of "
+    "them the files allow and how far apart they lie. Where patients queue for a ward, the second and third are refused.",
+    "Next years": "That regression, or singular spectrum analysis where it did better on the file's own past (Golyandina and "
+    "others 2001). Ranges come from how wrong such forecasts were, and widen with the years.",
+    "Check on last year": "Each month of the last year is foretold from the days before it alone, and held against what came: "
+    "days inside the bands, and the ranked probability score (Gneiting & Raftery 2007; Czado, Gneiting & Held 2009).",
 }
 
 st.header("What each line computes, and what it leaves out", anchor=False)
 for model, line in wording.LINES.items():
     if model in METHODS:
         st.markdown(f"**{line.capitalize()}.** {METHODS[model]}")
+st.subheader("From records to demand", anchor=False)
+for step, method in FROM_RECORDS.items():
+    st.markdown(f"**{step}.** {method}")
 st.subheader("Words", anchor=False)
 st.markdown(
     "- **Arrivals** need a bed; **admissions** got one. Records hold admissions only.\n"

@@ -40,6 +40,21 @@ def test_every_line_is_explained(open_app: Callable[..., AppTest]) -> None:
         assert re.search(r"\b(19|20)\d\d\b|common practice|Cunneen", mine[0]), model
 
 
+def test_every_step_from_records_to_demand_is_explained(open_app: Callable[..., AppTest]) -> None:
+    """The page names how rows, stays, rhythm, hidden demand and forecasts are found."""
+    app = open_app().switch_page("bedplan/pages/method.py").run()
+    told = " ".join(one.value for one in app.markdown)
+    for word in (
+        "product limit",
+        "residual likelihood",
+        "Wolff 1982",
+        "singular spectrum",
+        "ranked probability",
+        "set aside",
+    ):
+        assert word in told, word
+
+
 def test_figures_about_85_percent_are_right(open_app: Callable[..., AppTest]) -> None:
     """The shares quoted for wards running at, and sized at, 85 % are those of the loss formula."""
     # Source: method of de Bruin, Bekker, van Zanten & Koole 2010, Annals of Operations Research 178:23-43
