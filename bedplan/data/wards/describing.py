@@ -9,7 +9,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data.wards.occupancy import bed_days, open_beds, present
-from bedplan.data.wards.patients import beds_used
+from bedplan.data.wards.patients import beds_used, on_counted_day, started
 from bedplan.data.wards.silence import without_silences
 from bedplan.data.wards.specialty import find_home_wards
 from bedplan.data.wards.stays import stay_curve, stays_in_window
@@ -23,6 +23,7 @@ if TYPE_CHECKING:
 BLOCK_DAYS = 28  # drawn together, so that neighbouring days stay together
 DRAWS = 500
 LONG_STAYS_DAYS = (7, 14, 21)
+JUST_BEFORE = pd.Timedelta(seconds=1)  # who leaves at midnight leaves with the day that ends
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,6 +55,8 @@ class FullTimes:
 class WardDescription:
     """One ward as its records show it, over the file's window less the days in which patients present are missing.
 
+    Every count is over the days that count: not those of periods left out, nor those in which the ward was silent.
+    How long patients stay is told by all of them.
     ``hourly`` patients present, by hour; ``midnight_mean`` and ``daily_peak_mean`` averages over days;
     ``by_hour_of_day`` (24,) average patients present. ``variance_over_mean`` of the midnight count, with a 95 %
     interval from days drawn in blocks of 28. ``turnover_interval_days`` and ``throughput`` (patients a bed a year) are
@@ -97,9 +100,8 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
     counts = present(records, stays, 3_600)
     by_day = counts.reshape(records.days, 24)
     used = records.counted_days
-    finished = stays[stays["end"].notna() & (stays["end"] > records.window[0]) & (stays["end"] <= records.window[1])]
+    finished = stays[stays["end"].notna() & on_counted_day(records, stays["end"] - JUST_BEFORE)]
     curve = stay_curve(records, stays, ward)
-    starts = (stays["start"] >= records.window[0]) & (stays["start"] < records.window[1])
     days_used = float(bed_days(records, stays).sum())
     beds = capacity and capacity.linked_to(records)
     known = beds if beds and ward in beds.wards else None
@@ -118,7 +120,7 @@ def describe_ward(records: Records, ward: str, capacity: Capacity | None = None)
         by_hour_of_day=by_day[used].mean(axis=0),
         variance_over_mean=variance_over_mean(midnight),
         variance_interval=block_interval(midnight, seed=1),
-        admissions=int(starts.sum()),
+        admissions=started(records, stays["start"]),
         discharges=len(finished),
         bed_days=days_used,
         mean_stay_days=curve.mean_days,
@@ -204,15 +206,17 @@ def _median(stays: pd.DataFrame) -> float:
 
 
 def _long_stays(records: Records, stays: pd.DataFrame, days: int) -> LongStays:
-    """Return what stays beyond so many days take, within the window."""
+    """Return what stays beyond so many days take, of those there on a day that counts."""
     end = stays["end"].fillna(records.window[1])
     length = ((end - stays["start"]) / pd.Timedelta(days=1)).to_numpy()
     used = bed_days(records, stays)
+    there = (used > 0) | on_counted_day(records, stays["start"])
     is_long = length > days
     later = stays["start"] + pd.Timedelta(days=days)
     after = beds_used(records, stays.assign(start=np.maximum(later.to_numpy(), stays["start"].to_numpy())))
     total = max(float(used.sum()), 1e-9)
-    return LongStays(days, float(is_long.mean()), float(used[is_long].sum()) / total, after)
+    of_patients = float(is_long[there].mean()) if there.any() else 0.0
+    return LongStays(days, of_patients, float(used[is_long].sum()) / total, after)
 
 
 def _outlier_bed_days(records: Records, ward: str) -> float:

@@ -51,8 +51,8 @@ def present_by_ward(records: Records, step_seconds: int) -> dict[str, NDArray[np
         def places(block: slice) -> NDArray[np.int64]:
             """Return ward and step of one block as one number."""
             known = ~np.isnat(times[block])
-            late = np.where(known, times[block].astype("datetime64[s]").astype(np.int64) - first, 0)
-            step = np.where(known, np.clip(-(-late // step_seconds), 0, steps), steps)
+            late = times[block].astype("datetime64[s]").astype(np.int64) + (step_seconds - 1 - first)
+            step = np.where(known, np.clip(late // step_seconds, 0, steps), steps)
             return codes[block].astype(np.int64) * (steps + 1) + step
 
         found = np.concatenate(in_blocks(times.size, places))
@@ -68,9 +68,23 @@ def open_beds(records: Records, ward: str, capacity: Capacity, steps_a_day: int)
 
 
 def bed_days(records: Records, stays: pd.DataFrame) -> NDArray[np.float64]:
-    """How many bed-days does each stay use within the window? (n,) in days; unfinished stays run to its end."""
+    """How many bed-days does each stay use on the window's days that count? (n,); unfinished stays run to its end.
+
+    Checked by: tests/data/wards/test_occupancy.py, tests/data/wards/test_describing.py
+    """
     first, last = (int(moment.timestamp()) for moment in records.window)
     start = stays["start"].to_numpy().astype("datetime64[s]").astype(np.int64)
     end = stays["end"].to_numpy().astype("datetime64[s]").astype(np.int64)
     end = np.where(stays["end"].isna().to_numpy(), last, end)
-    return np.maximum(np.minimum(end, last) - np.maximum(start, first), 0) / DAY_SECONDS
+    begins, ends = (_counted_seconds(records, np.clip(moment - first, 0, last - first)) for moment in (start, end))
+    return np.maximum(ends - begins, 0) / DAY_SECONDS
+
+
+def _counted_seconds(records: Records, since_first: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return how much of the time from the window's start to these seconds lies on days that count."""
+    if not records.excluded:
+        return since_first
+    counts = np.append(records.counted_days, False).astype(np.int64)
+    before = np.concatenate(([0], np.cumsum(counts[:-1])))
+    day, rest = np.divmod(since_first, DAY_SECONDS)
+    return before[day] * DAY_SECONDS + counts[day] * rest

@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data.files.dates import DAY_SECONDS
+from bedplan.data.wards.occupancy import bed_days
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -170,32 +171,22 @@ def _passed_through(away: pd.DataFrame, ward: str) -> list[str]:
 
 def beds_used(records: Records, stays: pd.DataFrame) -> float:
     """How many beds did these stays use on average over the days that count? Unfinished ones run to the file's end."""
-    first, last = (_second(moment) for moment in records.window)
-    seconds = _overlap(stays, first, last)
-    for from_day, to_day in records.excluded:
-        low, high = max(_second(from_day), first), min(_second(to_day) + DAY_SECONDS, last)
-        seconds -= _overlap(stays, low, high) if high > low else 0
-    return seconds / (DAY_SECONDS * counted_days(records))
+    return float(bed_days(records, stays).sum()) / counted_days(records)
 
 
 def started(records: Records, starts: pd.Series) -> int:
     """How many of these moments fall on the days that count?"""
-    days = (starts.to_numpy().astype("datetime64[s]").astype(np.int64) - _second(records.window[0])) // DAY_SECONDS
-    inside = (days >= 0) & (days < records.days)
-    return int(records.counted_days[days[inside]].sum())
+    return int(on_counted_day(records, starts).sum())
+
+
+def on_counted_day(records: Records, moments: pd.Series) -> NDArray[np.bool_]:
+    """Which of these moments fall on a day that counts? (n,); unknown ones don't."""
+    since = moments.to_numpy().astype("datetime64[s]").astype(np.int64) - int(records.window[0].timestamp())
+    days = since // DAY_SECONDS
+    inside = moments.notna().to_numpy() & (days >= 0) & (days < records.days)
+    return inside & records.counted_days[np.where(inside, days, 0)]
 
 
 def counted_days(records: Records) -> int:
     """How many days count? At least 1."""
     return max(int(records.counted_days.sum()), 1)
-
-
-def _second(moment: pd.Timestamp) -> int:
-    return int(moment.timestamp())
-
-
-def _overlap(stays: pd.DataFrame, low: int, high: int) -> int:
-    """Return the patient-seconds of these stays between two moments."""
-    start = stays["start"].to_numpy().astype("datetime64[s]").astype(np.int64)
-    end = stays["end"].fillna(pd.Timestamp(high, unit="s")).to_numpy().astype("datetime64[s]").astype(np.int64)
-    return int(np.maximum(np.minimum(end, high) - np.maximum(start, low), 0).sum())

@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+import datetime as dt
 from typing import TYPE_CHECKING
 
 import numpy as np
 import pandas as pd
 import pytest
+from scipy import stats
 
-from bedplan.data import describe_ward, read_capacity
+from bedplan.data import IntakeChoices, describe_ward, read_capacity
 from bedplan.data.wards.describing import block_interval, variance_over_mean
 
 if TYPE_CHECKING:
@@ -117,12 +119,77 @@ def test_days_that_hang_together_widen_the_interval() -> None:
     assert blocks[1] - blocks[0] > 1.3 * (singles[1] - singles[0])
 
 
-def test_excluded_periods_and_missing_capacity(larkmere: Records) -> None:
+def test_the_interval_is_as_wide_as_chance_theory_says() -> None:
+    """(n − 1) × variance ÷ mean of Poisson counts is χ² with n − 1 degrees of freedom, 95 % of it in the interval.
+
+    Source: index of dispersion, Fisher 1925, Statistical Methods for Research Workers, § 19 (from memory).
+    """
+    days = 400
+    wanted = np.diff(stats.chi2.ppf([0.025, 0.975], days - 1))[0] / (days - 1)
+    drawn = (np.random.default_rng(seed).poisson(25.0, days).astype(float) for seed in range(25))
+    widths = [np.diff(block_interval(counts, seed=seed, block=1))[0] for seed, counts in enumerate(drawn)]
+
+    assert np.mean(widths) == pytest.approx(wanted, rel=0.05)
+
+
+def test_without_a_file_of_beds_nothing_is_said_of_beds(larkmere: Records) -> None:
     """Without a capacity file nothing is said about full hours, turnover or throughput."""
     figures = describe_ward(larkmere, "Dunlin")
 
     assert (figures.full, figures.turnover_interval_days, figures.throughput) == (None, None, None)
     assert figures.hourly.index[0] == pd.Timestamp("2022-04-01")
+
+
+def test_days_left_out_are_in_no_figure_worked_out_by_hand(read: Callable[..., Records]) -> None:
+    """One bed for eight days, the fifth and sixth left out: what happened on them is in no count."""
+    rows = (
+        "a,a,Heron,2024-01-01 00:00,2024-01-02 12:00,x",  # 1.5 days
+        "b,b,Heron,2024-01-02 12:00,2024-01-05 00:00,x",  # 2.5, gone when the fifth day begins
+        "c,c,Heron,2024-01-05 06:00,2024-01-05 18:00,x",  # none: came and left while it doesn't count
+        "d,d,Heron,2024-01-06 00:00,2024-01-08 12:00,y",  # 1.5 of 2.5, came while it doesn't count
+        "e,e,Heron,2024-01-08 12:00,2024-01-09 00:00,x",  # 0.5
+        "f,f,Teal,2024-01-01 00:00,2024-01-09 00:00,y",
+    )
+    left_out = IntakeChoices(excluded=((dt.date(2024, 1, 5), dt.date(2024, 1, 6)),))
+    records = read(*rows, headings="patient_key,spell_key,ward,start,end,specialty", choices=left_out)
+    ward = describe_ward(records, "Heron", read_capacity(b"ward,from,to,staffed_beds\nHeron,2024-01-01,,1\n"))
+
+    assert (ward.bed_days, ward.admissions, ward.discharges) == (pytest.approx(6), 3, 4)
+    # The bed is in use on all of the six days that count.
+    assert (ward.full.share, ward.full.available_bed_days, ward.full.occupancy) == (1.0, 6, pytest.approx(1))
+    assert ward.turnover_interval_days == pytest.approx(0)
+    assert ward.throughput == pytest.approx(4 / 6 * 365)
+    assert ward.discharge_hours[[0, 12]] == pytest.approx([0.5, 0.5])
+    assert ward.outlier_bed_days == pytest.approx(1.5)  # d, whose specialty is at home on Teal
+
+
+def test_long_stays_of_days_left_out_are_in_no_figure(read: Callable[..., Records]) -> None:
+    """Long stays are counted by the patients there on days that count, and by their bed-days on those days."""
+    records = read(
+        "a,a,Heron,2024-01-01 00:00,2024-01-02 00:00",
+        "b,b,Heron,2024-01-03 00:00,2024-01-13 00:00",
+        "c,c,Heron,2024-01-05 00:00,2024-01-12 12:00",
+        "d,d,Heron,2024-01-19 00:00,2024-01-20 00:00",
+        choices=IntakeChoices(excluded=((dt.date(2024, 1, 5), dt.date(2024, 1, 11)),)),
+    )
+    long_stays = describe_ward(records, "Heron").long_stays[0]
+
+    # Counted: a 1; b 2 before and 1 after; c the 12th until noon; d 1. Past day 7: b from the 10th, c from the 12th.
+    assert long_stays.days == 7
+    assert long_stays.share_of_patients == pytest.approx(2 / 4)
+    assert long_stays.share_of_bed_days == pytest.approx((3 + 0.5) / (1 + 3 + 0.5 + 1))
+    assert long_stays.beds_after == pytest.approx((1 + 0.5) / (19 - 7))
+
+
+def test_days_ready_on_another_ward_are_not_this_wards(read: Callable[..., Records]) -> None:
+    """A patient ready on the 2nd, who came to this ward on the 4th and left on the 6th, took 2 days of 10, not 4."""
+    records = read(
+        "a,a,Heron,2024-01-04 12:00,2024-01-06 12:00,2024-01-02 12:00",
+        "b,b,Heron,2024-01-01 12:00,2024-01-10 12:00,",
+        headings="patient_key,spell_key,ward,start,end,ready_date",
+    )
+
+    assert describe_ward(records, "Heron").delay_beds == pytest.approx(2 / 10)
 
 
 def test_beds_used_after_patients_were_ready(read: Callable[..., Records], larkmere: Records) -> None:
