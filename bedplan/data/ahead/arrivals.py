@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -23,7 +24,7 @@ if TYPE_CHECKING:
     from bedplan.data.cleaning.records import Records
     from bedplan.models import LengthOfStay
 
-YEAR_DAYS = 365
+YEAR_DAYS, NORMAL_95 = 365, 1.96
 DEFAULT_TIME_SHARE = 1 / 3  # of arrivals in one minute of the day; common practice, no source
 FEWEST_STAYS, FEWEST_DAYS = 200, 90
 # Methods of admission that mean a booked patient. Codes 11 to 13 are the English elective ones.
@@ -34,11 +35,12 @@ BOOKED_METHODS = ("11", "12", "13", "booked", "elective", "waitinglist", "planne
 class Arrivals:
     """A ward's admissions in the file's window, day by day, with their rhythm.
 
-    ``counts`` (days,) of all admissions; ``came`` (n,) seconds. ``used`` (days,) marks the days outside excluded
+    ``counts`` (days,) of all admissions; ``came`` (n,) seconds; ``hours`` (24,) how many in each hour of the day. ``used`` (days,) marks the days outside excluded
     periods, ``counted`` those of the latest year among them (all, where the file has less than two).
     """
 
     came: NDArray[np.int64]
+    hours: NDArray[np.float64]
     counts: NDArray[np.float64]
     calendar: pd.DatetimeIndex
     counted: NDArray[np.bool_]
@@ -59,11 +61,34 @@ class Arrivals:
     @property
     def per_day(self) -> float:
         """How many come a day in an average month and week, at the level of the days counted?"""
+        return self._per_day(self.counted)
+
+    def _per_day(self, days: NDArray[np.bool_]) -> float:
+        """Return how many come a day in an average month and week, at the level of these days."""
         if not self.enough:
-            return self.recent / int(self.counted.sum())
+            return float(self.counts[days].sum()) / int(days.sum())
         months = np.asarray(self.rhythm.month_factors)[self.calendar.month.to_numpy() - 1]
         weekdays = np.asarray(self.rhythm.weekday_factors)[self.calendar.day_of_week.to_numpy()]
-        return self.recent / float((months * weekdays)[self.counted].sum())
+        return float(self.counts[days].sum()) / float((months * weekdays)[days].sum())
+
+    @cached_property
+    def change(self) -> LevelChange | None:
+        """Did arrivals change lately: far more or fewer in the last 4 to 26 weeks than trend and season before them gave?
+
+        None where chance explains it, or where the file is too short or too empty to tell.
+        """
+        numbers = self.calendar.to_numpy().astype("datetime64[D]").astype(np.int64)
+        return level_change(self.counts[self.used], numbers[self.used])
+
+    @property
+    def lately(self) -> tuple[float, float] | None:
+        """If arrivals changed: between which figures a day does the latest level lie, 95 %? None if they did not."""
+        if self.change is None:
+            return None
+        days = np.zeros(self.counts.size, dtype=bool)
+        days[np.flatnonzero(self.used)[-self.change.days :]] = True
+        level, off = self._per_day(days), math.exp(NORMAL_95 * self.change.error)
+        return level / off, level * off
 
     @property
     def per_year(self) -> float:
@@ -89,9 +114,8 @@ class Arrivals:
         minutes = np.bincount(self.came % DAY_SECONDS // 60, minlength=1_440)
         if minutes.max() >= DEFAULT_TIME_SHARE * max(self.came.size, 1):
             return (1.0,) * 24
-        hours = np.bincount(self.came % DAY_SECONDS // 3600, minlength=24).astype(float)
-        level = np.log(np.maximum(hours, 0.5))
-        return shrink_factors(level[1:] - level[0], hours)
+        level = np.log(np.maximum(self.hours, 0.5))
+        return shrink_factors(level[1:] - level[0], self.hours)
 
     @property
     def worth(self) -> float:
@@ -134,19 +158,30 @@ def arrivals_of(records: Records, start: pd.Series | NDArray[np.datetime64]) -> 
     if not recent.any():
         recent = use if use.any() else np.ones(records.days, dtype=bool)
     return Arrivals(
-        came, counts, calendar, recent, use if use.any() else ~use, rhythm, measure_swing(counts, rhythm, use)
+        came=came,
+        hours=np.bincount(came % DAY_SECONDS // 3600, minlength=24).astype(float),
+        counts=counts,
+        calendar=calendar,
+        counted=recent,
+        used=use if use.any() else ~use,
+        rhythm=rhythm,
+        swing=measure_swing(counts, rhythm, use),
     )
 
 
-def arrivals_change(arrivals: Arrivals) -> LevelChange | None:
-    """Did arrivals change lately: far more or fewer in the last 4 to 26 weeks than trend and season before them gave?
+def arrivals_asked(arrivals: Arrivals, asked: NDArray[np.float64], by_chance: tuple[float, float]) -> Arrivals:
+    """Who wanted to come when, where admissions are known and, hour by hour, those who ``asked`` (hours,)?
 
-    None where chance explains it, or where the file is too short or too empty to tell.
-
-    Checked by: tests/data/demand/test_estimating.py
+    These end with the admissions; where they begin later, admissions before them are raised by the same share as after.
+    ``by_chance`` as for :func:`measure_swing`.
     """
-    numbers = arrivals.calendar.to_numpy().astype("datetime64[D]").astype(np.int64)
-    return level_change(arrivals.counts[arrivals.used], numbers[arrivals.used])
+    by_day = asked.reshape(-1, 24)
+    before, after = np.split(arrivals.counts, [arrivals.counts.size - by_day.shape[0]])
+    counts = np.concatenate((before * by_day.sum() / max(float(after.sum()), 1e-9), by_day.sum(axis=1)))
+    months, weekdays = arrivals.calendar.month.to_numpy() - 1, arrivals.calendar.day_of_week.to_numpy()
+    rhythm = fit_rhythm(counts, months, weekdays, arrivals.used)
+    swing = measure_swing(counts, rhythm, arrivals.used, by_chance)
+    return replace(arrivals, counts=counts, hours=by_day.sum(axis=0), rhythm=rhythm, swing=swing)
 
 
 def is_booked(stays: pd.DataFrame) -> NDArray[np.bool_]:

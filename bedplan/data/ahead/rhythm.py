@@ -140,10 +140,16 @@ class Swing:
         return min(self.clustering, 50.0) if clear else 1.0
 
 
-def measure_swing(counts: NDArray[np.float64], rhythm: Rhythm, used: NDArray[np.bool_] | None = None) -> Swing:
+def measure_swing(
+    counts: NDArray[np.float64],
+    rhythm: Rhythm,
+    used: NDArray[np.bool_] | None = None,
+    by_chance: tuple[float, float] = (1.0, 1.0),
+) -> Swing:
     """Do patients come together more, or drift more, than chance alone would have it?
 
-    Days that are not ``used`` (n,) stand in at what the rhythm expects, and count for nothing.
+    Days that are not ``used`` (n,) stand in at what the rhythm expects, and count for nothing. ``by_chance``: variance ÷
+    mean that chance alone gives these counts, from day to day and over weeks, where they are no plain counts.
 
     Source: Pearson's index of dispersion; moments of a mixed Poisson count (Greenwood & Yule 1920).
     Checked by: tests/data/ahead/test_rhythm.py
@@ -160,7 +166,8 @@ def measure_swing(counts: NDArray[np.float64], rhythm: Rhythm, used: NDArray[np.
     freedom = int(use.sum()) * (1.0 - 1.0 / window.size) - 6.0
     clustering = float(((counts - middle)[use] ** 2).sum()) / total * int(use.sum()) / freedom
     error = clustering * math.sqrt(2.0 / freedom + 1.0 / total)
-    drift, block = _drift(counts, rhythm, use, max(clustering, LEAST_CLUSTERING))
+    clustering = max(clustering - by_chance[0] + 1.0, LEAST_CLUSTERING)
+    drift, block = _drift(counts, rhythm, use, max(clustering + by_chance[1] - 1.0, LEAST_CLUSTERING))
     slow = 0.0 if drift is None else drift.variation**2 * block
     return Swing(clustering, error, drift, clustering + slow)
 

@@ -15,6 +15,9 @@ from bedplan.errors import ImpossibleFigure
 from bedplan.wording import beds_text, percent
 
 if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
+
     from bedplan.data.beside.logs import EventLog
     from bedplan.data.demand.walls import Wall
 
@@ -59,7 +62,7 @@ def by_list(evidence: Evidence, logs: tuple[EventLog, ...], share: Range) -> Dem
             "holds all who asked for a bed, most of whom had one: bring the list of those who could not be given one."
         )
         return not_used(LIST, f"{names} {told}")
-    found = [_not_given(evidence, log, share if log.kind == "refusals" else (1.0, 1.0)) for log in logs]
+    found = [_not_given(evidence, log, share_of(log, share)) for log in logs]
     not_given, variance = (sum(part) for part in zip(*found, strict=True))
     if not_given == 0:
         return not_used(LIST, _nobody_listed(ward, names, logs))
@@ -94,6 +97,11 @@ def _not_given(evidence: Evidence, log: EventLog, share: Range) -> Range:
     return not_given, by_chance + (not_given / middle * half / NINETY) ** 2
 
 
+def share_of(log: EventLog, share: Range) -> Range:
+    """Which share of such cases is written down in this list? Cancellations are taken to be complete."""
+    return share if log.kind == "refusals" else (1.0, 1.0)
+
+
 def share_text(share: Range) -> str:
     """Write a share that is written down: "all", "60 %", "50 % to 70 %"."""
     if share[0] == share[1]:
@@ -102,23 +110,28 @@ def share_text(share: Range) -> str:
 
 
 def listed_per_day(evidence: Evidence, log: EventLog) -> tuple[float, int]:
-    """How many a day are on a list for this ward, and over how many days was it kept?
+    """How many a day are on a list for this ward, and over how many days was it kept?"""
+    records = evidence.own.records
+    mine = log.for_lack_of_beds(evidence.own.ward, records.window)["time"]
+    if mine.empty:
+        return 0.0, evidence.days
+    days = max(int(days_kept(evidence, log).sum()), 1)
+    return started(records, mine) / days, days
+
+
+def days_kept(evidence: Evidence, log: EventLog) -> NDArray[np.bool_]:
+    """On which days of the window was this list kept?
 
     A list that is silent at the start or end of the file for ten usual gaps was not kept then: those days don't count.
     """
     records = evidence.own.records
     first, last = records.window
-    mine = log.for_lack_of_beds(evidence.own.ward, records.window)["time"]
-    if mine.empty:
-        return 0.0, evidence.days
     times = log.table["time"]
     times = times[(times >= first) & (times < last)]
     silence = max(SILENCE * (times.max() - times.min()) / len(times), pd.Timedelta(days=1))
     began = first if times.min() - first <= silence else times.min().normalize()
     ended = last if last - times.max() <= silence else times.max().normalize() + pd.Timedelta(days=1)
-    kept = (records.calendar >= began) & (records.calendar < ended) & records.counted_days
-    days = max(int(kept.sum()), 1)
-    return started(records, mine) / days, days
+    return (records.calendar >= began) & (records.calendar < ended) & records.counted_days
 
 
 def by_specialty(evidence: Evidence) -> DemandMethod:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from bedplan.data.ahead.arrivals import FEWEST_STAYS, Arrivals, arrivals_change, is_booked
+from bedplan.data.ahead.arrivals import FEWEST_STAYS, Arrivals, is_booked
 from bedplan.data.ahead.drift import USUAL
 from bedplan.data.demand.doubted import beds_doubted
 from bedplan.data.wards.silence import silence_notes
@@ -101,7 +101,7 @@ def _drift_note(drift: Drift | None) -> str:
 
 def _recent_arrivals(arrivals: Arrivals) -> list[str]:
     """Say whether more or fewer came lately: the rate of the last 12 months then misses the latest weeks'."""
-    change = arrivals_change(arrivals)
+    change = arrivals.change
     if change is None:
         return []
     word, errs = ("grew", "few") if change.share > 0 else ("fell", "many")
@@ -110,8 +110,8 @@ def _recent_arrivals(arrivals: Arrivals) -> list[str]:
     return [
         (
             f"Arrivals {word} by {percent(abs(change.share))} lately: in the last {change.days // 7} weeks {change.came:,} "
-            f"came, where about {change.expected:,.0f} were {usual}. The rate of {arrivals.period} is used, which errs "
-            f"towards too {errs} beds if the change lasts: move demand then.{season}"
+            f"came, where about {change.expected:,.0f} were {usual}. The rate of {arrivals.period} is used; its range reaches "
+            f"to the latest level. It errs towards too {errs} beds if the change lasts: move demand then.{season}"
         )
     ]
 

@@ -6,18 +6,21 @@ import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from bedplan.data.ahead.arrivals import Arrivals, arrivals_of, booked_list, is_booked
+import numpy as np
+
+from bedplan.data.ahead.arrivals import Arrivals, arrivals_asked, arrivals_of, booked_list, is_booked
 from bedplan.data.ahead.drift import USUAL
 from bedplan.data.ahead.readings import take_readings
 from bedplan.data.ahead.stay_bands import fit_stay_bands, growth_of_bed_days
+from bedplan.data.demand.asked import by_hour
 from bedplan.data.demand.demand_notes import demand_notes
 from bedplan.data.wards.silence import without_silences
 from bedplan.data.wards.stays import fitted_stay, stay_curve, stays_in_window
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
-    import numpy as np
     import pandas as pd
+    from numpy.typing import NDArray
 
     from bedplan.data.ahead.rhythm import Swing
     from bedplan.data.beside.capacity import Capacity
@@ -127,8 +130,8 @@ def estimate_demand(
     """What is this ward asked for: how many patients a day, for how long, in which rhythm?
 
     Arrivals are the admissions of the last 12 months (of all days, where the file covers less than two years), freed
-    from season where the period is not a whole year; with ``hidden`` demand they are raised to what the ward would
-    have admitted had there always been a bed. Stays come from every stay of the file by the product limit.
+    from season where the period is not a whole year; with ``hidden`` demand they are those who asked for a bed, hour by
+    hour, so that seasons, weekdays and growth are theirs, not those of the beds. Stays come from every stay of the file by the product limit.
     ``booked_apart`` puts booked patients into a :class:`~bedplan.models.BookedList` instead of among the arrivals.
 
     Raises:
@@ -142,20 +145,20 @@ def estimate_demand(
     every = arrivals_of(records, stays["start"])
     curve = stay_curve(records, stays, ward)
     lists = _booked_lists(records, stays, booked, ward) if booked_apart else ()
-    arrivals = arrivals_of(records, stays["start"][~booked]) if lists else every
+    wanted = every if hidden is None else arrivals_asked(every, hidden.asked.by_hour, hidden.asked.by_chance)
+    arrivals = _unbooked(records, stays["start"], booked, hidden) if lists else wanted
     own_curve = stay_curve(records, stays[~booked], ward) if lists and not booked.all() else curve
-    raised = 1.0 if hidden is None else hidden.demand_per_day / max(hidden.admitted_per_day, 1e-9)
     stay = fitted_stay(own_curve)
     if hidden is not None and hidden.mean_stay_days > 0:
         stay = LengthOfStay(hidden.mean_stay_days, stay.variation, stay.shape)
-    demand = _demand(records, arrivals, stay, lists, raised)
-    growth, bed_days = _growth(whole, ward, every)
+    demand = _demand(records, arrivals, stay, lists)
+    growth, bed_days = _growth(whole, ward, wanted)
     return DemandEstimate(
         ward=ward,
         demand=demand,
-        uncertainty=_uncertainty(every, curve, demand.offered_load, raised, hidden),
+        uncertainty=_uncertainty(wanted, curve, demand.offered_load, hidden),
         method=_method(every, demand, hidden),
-        notes=demand_notes(whole, every, curve, stays, hidden),
+        notes=demand_notes(whole, wanted, curve, stays, hidden),
         stays=len(stays),
         unfinished=int(stays["end"].isna().sum()),
         window=records.window,
@@ -182,7 +185,9 @@ def _growth(records: Records, ward: str, arrivals: Arrivals) -> tuple[tuple[floa
     return (growth, error), growth_of_bed_days(fit_stay_bands(readings, readings.days, growth), error)
 
 
-def _booked_lists(records: Records, stays: pd.DataFrame, booked: np.ndarray, ward: str) -> tuple[BookedList, ...]:
+def _booked_lists(
+    records: Records, stays: pd.DataFrame, booked: NDArray[np.bool_], ward: str
+) -> tuple[BookedList, ...]:
     """Return the weekly list that booked patients come from, where there are enough of them and they come by one."""
     if int(booked.sum()) < FEWEST_BOOKED:
         return ()
@@ -191,13 +196,20 @@ def _booked_lists(records: Records, stays: pd.DataFrame, booked: np.ndarray, war
     return () if found is None else (found,)
 
 
-def _demand(
-    records: Records, arrivals: Arrivals, stay: LengthOfStay, lists: tuple[BookedList, ...], raised: float
-) -> Demand:
+def _unbooked(records: Records, start: pd.Series, booked: NDArray[np.bool_], hidden: HiddenDemand | None) -> Arrivals:
+    """Return who came, or wanted to, without being booked."""
+    arrivals = arrivals_of(records, start[~booked])
+    if hidden is None:
+        return arrivals
+    listed = by_hour(records, start[booked])[-hidden.asked.by_hour.size :]
+    return arrivals_asked(arrivals, np.maximum(hidden.asked.by_hour - listed, 0.0), hidden.asked.by_chance)
+
+
+def _demand(records: Records, arrivals: Arrivals, stay: LengthOfStay, lists: tuple[BookedList, ...]) -> Demand:
     """Put arrivals, stay and rhythm together."""
     flat, rhythm = not arrivals.enough, arrivals.rhythm
     return Demand(
-        arrivals.per_day * raised,
+        arrivals.per_day,
         stay,
         month_factors=(1.0,) * 12 if flat else rhythm.month_factors,
         weekday_factors=(1.0,) * 7 if flat else rhythm.weekday_factors,
@@ -208,13 +220,16 @@ def _demand(
     )
 
 
-def _uncertainty(
-    arrivals: Arrivals, curve: StayCurve, beds: float, raised: float, hidden: HiddenDemand | None
-) -> Uncertainty:
-    """Return 95 % intervals; with hidden demand they reach from the lowest method's to the highest one's."""
-    per_day = arrivals.per_day * raised
-    low, high = (bound * raised for bound in arrivals.interval())
+def _uncertainty(arrivals: Arrivals, curve: StayCurve, beds: float, hidden: HiddenDemand | None) -> Uncertainty:
+    """Return 95 % intervals; with hidden demand they reach from the lowest method's to the highest one's.
+
+    Where arrivals changed lately, they reach to the latest level.
+    """
+    per_day, (low, high) = arrivals.per_day, arrivals.interval()
     arrivals_error = max(arrivals.worth, 1.0) ** -0.5
+    if arrivals.lately is not None:
+        low, high = min(low, arrivals.lately[0]), max(high, arrivals.lately[1])
+        arrivals_error = max(arrivals_error, math.log(high / per_day) / 1.96, math.log(per_day / low) / 1.96)
     if hidden is not None and hidden.demand_per_day > 0:
         # Its bounds are those of 90 %, for the whole file; taken here to 95 %, and to the level of the latest year.
         bounds = [per_day * (bound / hidden.demand_per_day) ** (1.96 / 1.645) for bound in hidden.spread]

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
+from bedplan.data.demand.asked import Asked, who_asked
 from bedplan.data.demand.demand_methods import (
     CARRIED,
     LIST,
@@ -31,7 +32,6 @@ if TYPE_CHECKING:
     from bedplan.data.beside.capacity import Capacity
     from bedplan.data.beside.logs import EventLog
     from bedplan.data.cleaning.records import Records
-    from bedplan.models import Demand
 
 BEST_FIRST = (LIST, OPEN_TIME, CARRIED, SPECIALTY)
 RECORDED = "recorded admissions alone"
@@ -53,7 +53,7 @@ class HiddenDemand:
     ``steps`` lead from what is recorded on the ward, the first, to its demand: they add up to it. ``methods``:
     every method of finding demand, used or not, and why; ``method`` names the one that the steps follow. ``interval`` and
     ``beds_interval`` are its 90 % intervals; ``spread`` (patients a day) and ``beds_spread`` reach from the lowest to
-    the highest bound of all methods used.
+    the highest bound of all methods used. ``asked``: when those of the method followed came.
     """
 
     ward: str
@@ -65,6 +65,7 @@ class HiddenDemand:
     spread: Range
     beds_spread: Range
     notes: tuple[str, ...]
+    asked: Asked = field(compare=False, repr=False)
 
     @property
     def admitted_per_day(self) -> float:
@@ -90,20 +91,6 @@ class HiddenDemand:
     def mean_stay_days(self) -> float:
         """How long do the ward's own patients use a bed, on average?"""
         return self.beds_wanted / self.demand_per_day if self.demand_per_day > 0 else 0.0
-
-    def apply(self, demand: Demand) -> Demand:
-        """What is a recorded demand, raised to what was wanted? Arrivals and mean stay change by the same shares here.
-
-        The stay changes only where other wards' patients lay here, or its own elsewhere. Booked lists stay as booked.
-        """
-        if self.admitted_per_day <= 0 or self.demand_per_day <= 0:
-            return demand
-        recorded_stay = self.steps[0].beds / self.admitted_per_day
-        stay = demand.length_of_stay
-        return demand.with_changes(
-            arrivals_per_day=demand.arrivals_per_day * self.demand_per_day / self.admitted_per_day,
-            length_of_stay=stay.scaled(self.mean_stay_days / recorded_stay) if recorded_stay > 0 else stay,
-        )
 
 
 def hidden_demand(
@@ -160,6 +147,7 @@ def hidden_demand(
             *(note for log in logs for note in log.notes_on(ward)),
             *_listed_too_few(evidence, logs, share, used),
         ),
+        asked=who_asked(evidence, followed, logs, share),
     )
 
 

@@ -26,7 +26,7 @@ from bedplan.data import (
 from bedplan.data.demand.carried_load import beds_below_wall, load_behind
 from bedplan.data.wards.patients import own_patients
 from bedplan.errors import ImpossibleFigure
-from bedplan.models import Demand, LengthOfStay, erlang_b
+from bedplan.models import erlang_b
 from demo_data.generate import DEMO_SEED, write_demo
 from tests.data.made_wards import RUN_IN_DAYS, MadeWard, made_records, with_beds
 
@@ -547,26 +547,15 @@ def test_beds_all_in_use_can_t_tell(in_use: float) -> None:
 # -- what is done with it --------------------------------------------------------------------------------------------
 
 
-def test_a_demand_is_raised_to_what_was_wanted(larkmere: Records, beds: Capacity) -> None:
-    """Arrivals and stay change so that the load grows from the ward's own use to the beds wanted."""
-    found = hidden_demand(larkmere, "Teal", capacity=beds)
-    recorded = Demand(found.admitted_per_day, LengthOfStay(found.steps[0].beds / found.admitted_per_day, 1.1))
-    raised = found.apply(recorded)
-
-    assert raised.arrivals_per_day == pytest.approx(found.demand_per_day)
-    assert raised.offered_load == pytest.approx(found.beds_wanted)
-    assert raised.length_of_stay.variation == pytest.approx(1.1)
-
-
-def test_an_estimate_can_be_raised_to_demand(larkmere: Records, beds: Capacity) -> None:
-    """The estimate crosses from admissions to arrivals by hidden demand, and says how."""
+def test_an_estimate_can_be_raised_to_demand(larkmere: Records, beds: Capacity, demo_data: Path) -> None:
+    """The estimate crosses from admissions to those who wanted the ward in the latest year, and says how."""
     found = hidden_demand(larkmere, "Teal", capacity=beds)
     plain, raised = estimate_demand(larkmere, "Teal"), estimate_demand(larkmere, "Teal", hidden=found)
     low, high = raised.arrivals_interval
+    wants = pd.read_csv(demo_data / "truth_patients.csv", parse_dates=["wanted_at"])
+    wanted = wants[(wants["wanted_ward"] == "Teal") & wants["second_choice"].isna()]
 
-    assert raised.arrivals_per_day / plain.arrivals_per_day == pytest.approx(
-        found.demand_per_day / found.admitted_per_day
-    )
+    assert raised.arrivals_per_day == pytest.approx((wanted["wanted_at"] >= "2024-04-01").sum() / 365, rel=0.03)
     assert raised.demand.length_of_stay.mean_days == pytest.approx(found.mean_stay_days)
     assert raised.admissions_per_year == plain.admissions_per_year
     assert found.method in raised.method
