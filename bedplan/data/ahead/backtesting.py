@@ -35,7 +35,7 @@ FEWEST_EARLIER_ARRIVALS = 100
 YEAR_DAYS, SAME_WEEKDAY_DAYS = 365, 364
 SILENT_DAYS = 28
 LEVELS = (0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9, 0.95, 0.99)
-TOP_OF_BAND = (1.0 + BAND) / 2.0
+TOP_OF_BAND, TOP_OF_WIDE = (1.0 + BAND) / 2.0, (1.0 + WIDE_BAND) / 2.0
 USUAL_OCCUPANCY = 0.85
 
 
@@ -147,6 +147,7 @@ class _Trial:
             year_ahead_80=float(share_within(ahead, actual, BAND)[counted].mean()),
             year_ahead_95=float(share_within(ahead, actual, WIDE_BAND)[counted].mean()),
             above_80=float(share_above(chances, actual, TOP_OF_BAND)[counted].mean()),
+            above_95=float(share_above(chances, actual, TOP_OF_WIDE)[counted].mean()),
             year_ahead_above_80=float(share_above(ahead, actual, TOP_OF_BAND)[counted].mean()),
             calibration=tuple((level, float(inside[level].mean())) for level in LEVELS),
             calibration_ranges=tuple(coverage_range(inside[level]) for level in LEVELS),
