@@ -146,7 +146,7 @@ def test_what_the_check_rests_on() -> None:
         (
             {"coverage_95_range": (0.80, 0.93)},
             "Passed in part: ",
-            "had fewer patients",
+            "more room",
         ),
         (
             {"coverage_95_range": (0.80, 0.93), "above_95": 0.05},
