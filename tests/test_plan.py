@@ -290,15 +290,17 @@ def test_a_later_format_is_named() -> None:
 
 
 def test_a_monthly_return_makes_a_ward(demo_data: Path) -> None:
-    """A ward known by its monthly return has the return's own load, beds and discharges, and says what is assumed."""
+    """A ward has the load, beds and discharges of its return's last year, and says how it grew and what is assumed."""
     returned = read_monthly_return(demo_data / "monthly_return.csv")
     ward = from_return(returned, "Merlin")
-    rows = returned.table[returned.table["ward"] == "Merlin"]
+    rows = returned.table[(returned.table["ward"] == "Merlin") & (returned.table["month"] >= "2024-04")]
 
     assert ward.beds == round(rows["available"].sum() / rows["days"].sum())
     assert ward.admissions_per_year == pytest.approx(rows["discharges"].sum() / rows["days"].sum() * 365)
     assert ward.demand.offered_load == pytest.approx(rows["occupied"].sum() / rows["days"].sum(), rel=0.02)
     assert any("averages only" in note for note in ward.notes)
+    assert any("last 12 months" in note and "bed-days change by" in note for note in ward.notes)
+    assert ward.growth_per_year == pytest.approx(returned.level("Merlin").bed_days_growth.per_year)
 
 
 def test_a_season_survives_a_saved_plan(demo_data: Path) -> None:

@@ -190,24 +190,34 @@ def from_return(returned: MonthlyReturn, ward: str) -> Baseline:
 
     Checked by: tests/test_plan.py
     """
-    demand = returned.demand(ward)
-    rows = returned.table[returned.table["ward"] == ward]
-    days = float(rows["days"].sum())
-    known = f"{returned.name}, {len(rows)} months"
-    stated = round(float(rows["available"].sum()) / days)
+    demand, level = returned.demand(ward), returned.level(ward)
+    known = (
+        f"{returned.name}, last 12 of {level.months} months"
+        if level.months > 12
+        else f"{returned.name}, {level.months} months"
+    )
+    stated = round(level.available_beds)
     unknown = () if stated else (wording.BEDS_UNKNOWN,)
     averages = "Based on averages only: how far demand and stays swing is assumed, not measured."
+    growth = (("bed-days", level.bed_days_growth), ("discharges", level.discharges_growth))
     return Baseline(
         name=ward,
         demand=demand,
-        admissions_per_year=float(rows["discharges"].sum()) / days * 365.0,
+        admissions_per_year=level.discharges_per_year,
         beds=stated or math.ceil(demand.offered_load),
+        growth_per_year=level.bed_days_growth.per_year if level.bed_days_growth else 0.0,
+        admissions_growth_per_year=level.discharges_growth.per_year if level.discharges_growth else 0.0,
         facts=(
-            ("Discharges a year", f"{float(rows['discharges'].sum()) / days * 365.0:,.0f}", known),
+            ("Discharges a year", f"{level.discharges_per_year:,.0f}", known),
             ("Mean stay", wording.days(demand.length_of_stay.mean_days), f"{known}: bed-days ÷ discharges"),
             ("Spread of stay (SD ÷ mean)", f"{demand.length_of_stay.variation:.2f}", "assumed"),
+            *(
+                (f"Growth of {what}", found.told, f"all {level.months} months, net of season")
+                for what, found in growth
+                if found
+            ),
         ),
-        notes=(averages, *returned.cannot, *unknown),
+        notes=(averages, level.note, *returned.cannot, *unknown),
         origin=f"{returned.name}, a monthly return",
     )
 

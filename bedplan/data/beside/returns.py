@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import pandas as pd
 
 from bedplan.data.beside.linking import is_no_ward, names_in_stays, spelled_alike, without_stays
+from bedplan.data.beside.return_level import level_of
 from bedplan.data.cleaning.wardlinks import bare_name
 from bedplan.data.files.columns import TELLTALES, plain
 from bedplan.data.files.figures import read_figures
@@ -30,6 +31,7 @@ from bedplan.models import Demand, LengthOfStay
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
+    from bedplan.data.beside.return_level import ReturnLevel
     from bedplan.data.cleaning.records import Records
     from bedplan.data.files.report import IntakeReport
     from bedplan.data.files.texttable import TextTable
@@ -90,20 +92,18 @@ class MonthlyReturn:
     def demand(self, ward: str, variation: float = 1.0) -> Demand:
         """What is the ward asked for, as far as averages tell? Spread of stay and chance arrivals are assumed.
 
-        Months have factors where each of the twelve is in the file.
+        The level is that of its last 12 months; months have factors where each of the twelve is in the file.
 
         Raises:
             ImpossibleFigure: no bed-days or no discharges.
         """
-        rows = self._rows(ward)
-        daily = rows.groupby("month_number")[["discharges", "days"]].sum()
-        rates = (daily["discharges"] / daily["days"]).to_numpy()
-        whole = len(rates) == 12 and rates.mean() > 0
-        return Demand(
-            float(rates.mean() if whole else rows["discharges"].sum() / rows["days"].sum()),
-            LengthOfStay(self.mean_stay_days(ward), variation),
-            month_factors=tuple(rates / rates.mean()) if whole else (1.0,) * 12,
-        )
+        level = self.level(ward)
+        stay = LengthOfStay(level.mean_stay_days, variation)
+        return Demand(level.discharges_per_day, stay, month_factors=level.month_factors)
+
+    def level(self, ward: str) -> ReturnLevel:
+        """At which level does the ward stand, which months are busy, and how did it grow?"""
+        return level_of(self._rows(ward))
 
     def linked_to(self, records: Records) -> MonthlyReturn:
         """What does this file say of the wards of these stays? Names as the stays have them, by the planner's word.

@@ -40,10 +40,10 @@ def test_stay_and_turnover_are_the_time_between_patients(demo_data: Path) -> Non
 
 
 def test_demand_from_averages_has_their_load(demo_data: Path) -> None:
-    """The demand built from a return wants as many beds as were occupied, give or take the unequal months."""
+    """The demand built from a return wants as many beds as were occupied last year, give or take the unequal months."""
     figures = read_monthly_return(demo_data / "monthly_return.csv")
     for ward in figures.wards:
-        rows = figures.table[figures.table["ward"] == ward]
+        rows = figures.table[(figures.table["ward"] == ward) & (figures.table["month"] >= "2024-04")]
         assert figures.demand(ward).offered_load == pytest.approx(
             rows["occupied"].sum() / rows["days"].sum(), rel=0.005
         )
