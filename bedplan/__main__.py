@@ -24,7 +24,7 @@ from bedplan.data import (
     read_ready_dates,
     read_records,
 )
-from bedplan.data.values.choices import DATE_ORDERS
+from bedplan.data.values.choices import DATE_ANSWERS
 from bedplan.decision import TurnAwayLimit
 from bedplan.errors import BedplanError, UnreadableRecords
 from bedplan.export import Justification, Source, as_html, as_xlsx, case_for, with_check
@@ -51,7 +51,7 @@ def arguments() -> argparse.ArgumentParser:
     parser.add_argument(
         "--ready", type=Path, help="when patients were ready to leave: CSV with stay or patient key and date"
     )
-    parser.add_argument("--dates", choices=DATE_ORDERS, help="how dates are written in the files")
+    parser.add_argument("--dates", choices=DATE_ANSWERS, help="how dates are written in the files")
     parser.add_argument("--ward", action="append", help="a ward to justify; repeat for more (default: every ward)")
     parser.add_argument("--capacity", type=Path, help="staffed beds by ward: CSV")
     parser.add_argument("--beds", type=int, help="today's staffed beds, where there is no capacity file")

@@ -174,7 +174,7 @@ def why_refused(given: Given, problems: tuple[str, ...], question: DateQuestion 
 
 def ask_date_order(kind: str, question: DateQuestion, use: Callable[[str], None]) -> None:
     """Ask whether 03/04 is in April or in March, with both readings of three rows."""
-    heading = ["As written", "Read day first", "Read month first"]
+    heading = ["As written", *(f"Read {one}" for one in question.readings)]
     st.table(pd.DataFrame(list(question.examples), columns=heading).set_index(heading[0]))
     with st.form(f"{kind}_date_order", border=False):
         counts = question.ends_before_start

@@ -15,7 +15,9 @@ if TYPE_CHECKING:
 
     from bedplan.data.values.ready import ReadyDates
 
-DATE_ORDERS = ("day first", "month first", "row by row")
+DAY_FIRST, MONTH_FIRST, ROW_BY_ROW = DATE_ORDERS = ("day first", "month first", "row by row")
+AS_THEY_STAND, EXCHANGED = "as they stand", "day and month exchanged up to day 12"
+DATE_ANSWERS = (*DATE_ORDERS, AS_THEY_STAND, EXCHANGED)
 PLACE_KINDS = tuple(PLACES)
 HELD, GIVEN_AWAY = "held", "given away"
 
@@ -26,8 +28,8 @@ def check_date_order(date_order: str | None) -> None:
     Raises:
         ImpossibleFigure: an order nobody knows.
     """
-    if date_order not in (None, *DATE_ORDERS):
-        raise ImpossibleFigure(f"The date order {date_order!r} is not known: answer {', '.join(DATE_ORDERS)}.")
+    if date_order not in (None, *DATE_ANSWERS):
+        raise ImpossibleFigure(f"The date order {date_order!r} is not known: answer {', '.join(DATE_ANSWERS)}.")
 
 
 @dataclass(frozen=True, slots=True)
@@ -123,10 +125,11 @@ def _span(first: dt.date, last: dt.date) -> str:
 class DateQuestion:
     """Is 03/04 the 3rd of April or the 4th of March? Carried by the error as ``.question``.
 
-    ``examples``: (as written, read day first, read month first); ``ends_before_start``: answer → stays that would end
-    before they start; ``answers``: what ``read_records(date_order=…)`` takes.
+    ``examples``: (as written, read one way, read the other way), the two ways in ``readings``; ``ends_before_start``:
+    answer → stays that would end before they start; ``answers``: what ``read_records(date_order=…)`` takes.
     """
 
     examples: tuple[tuple[str, str, str], ...]
     ends_before_start: Mapping[str, int]
     answers: tuple[str, ...]
+    readings: tuple[str, str] = DATE_ORDERS[:2]

@@ -13,7 +13,8 @@ from bedplan.data.files.headings import READY_HEADINGS
 from bedplan.data.files.reading import read_table
 from bedplan.data.files.source import FileLike, open_source
 from bedplan.data.values.accounting import account
-from bedplan.data.values.choices import DATE_ORDERS
+from bedplan.data.values.choices import DATE_ORDERS, EXCHANGED
+from bedplan.data.values.exchanged import exchanged
 from bedplan.data.values.moments import when
 from bedplan.data.values.ready import KEYS, ReadyDates
 from bedplan.errors import UnreadableRecords
@@ -71,13 +72,20 @@ def ready_column(column: pa.ChunkedArray, rows: Rows, date_order: str | None, ti
     """
     said = date_order in (DAY_FIRST, MONTH_FIRST)
     day_first = read_times(column, date_order if said else DAY_FIRST, time_zone)
+    if date_order == EXCHANGED:
+        return _fitting(day_first.seconds, exchanged(day_first.seconds), rows)
     if said or not (day_first.either_order or day_first.month_first_only):
         return day_first.seconds
     first, second = day_first.seconds, read_times(column, MONTH_FIRST, time_zone).seconds
-    within = [_within(one, rows) for one in (first, second)]
     if date_order == ROW_BY_ROW:
-        return np.where(within[1] & ~within[0], second, first)
+        return _fitting(first, second, rows)
+    within = [_within(one, rows) for one in (first, second)]
     return second if within[1].sum() > within[0].sum() else first
+
+
+def _fitting(first: Seconds, second: Seconds, rows: Rows) -> Seconds:
+    """Return the first reading of each date, the second where only that lies within the stay."""
+    return np.where(_within(second, rows) & ~_within(first, rows), second, first)
 
 
 def _within(ready: Seconds, rows: Rows) -> NDArray[np.bool_]:
