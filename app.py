@@ -19,6 +19,6 @@ page = st.navigation(
     position="top",
 )
 on_one_ward = page.url_path == ""
-address.take_up(on_one_ward=on_one_ward)
+address.take_up()
 page.run()
 address.keep(on_one_ward=on_one_ward)

@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING
 
 import streamlit as st
 from streamlit.errors import StreamlitAPIException
+from streamlit.runtime.scriptrunner import get_script_run_ctx
 
 from bedplan import wording
 from bedplan.pages import controls, loaded
@@ -29,9 +30,10 @@ UNBOUND = ("records", *CODES, "written", "justified")
 BOUND = ("ward", "beds", "limit", "hidden", *controls.SLIDERS)
 
 
-def take_up(*, on_one_ward: bool) -> None:
+def take_up() -> None:
     """Take up what the address says, once; what can't be is left aside."""
     if st.session_state.get("address_taken"):
+        _keep_what_is_set()
         return
     st.session_state["address_taken"] = True
     asked = st.query_params.to_dict()
@@ -45,8 +47,18 @@ def take_up(*, on_one_ward: bool) -> None:
         st.session_state["asked_ward"] = name
         return
     _take_lists(name, names, asked)
-    if not on_one_ward:
-        _take_inputs(name, asked)
+    _take_inputs(name, asked)
+
+
+def _keep_what_is_set() -> None:
+    """Leave every input as it is where the Back button leads to an address that holds none of them.
+
+    The server makes such an address as a page is left. Back on it, inputs would start anew; in a run that it did not ask
+    for they keep what they hold, and put it into the address.
+    """
+    run = get_script_run_ctx()
+    if run is not None and run.is_history_navigation and "records" not in st.query_params:
+        st.rerun()
 
 
 def _take_lists(name: str, names: list[str], asked: Mapping[str, str]) -> None:
@@ -60,7 +72,7 @@ def _take_lists(name: str, names: list[str], asked: Mapping[str, str]) -> None:
 
 
 def _take_inputs(name: str, asked: Mapping[str, str]) -> None:
-    """Take up the inputs that the page One ward would take up by itself."""
+    """Take up the inputs, before the page One ward draws them with what they mean in their labels."""
     bounds = {key: slider[1:3] for key, slider in controls.SLIDERS.items()} | {"beds": (0, 2000)}
     found = {key: _whole(asked.get(key), *span) for key, span in bounds.items()}
     values = {key: value for key, value in found.items() if value is not None}

@@ -54,6 +54,7 @@ def test_a_link_opens_the_plan(open_app: Callable[..., AppTest]) -> None:
         by_hand.slider(key=key).set_value(int(LINK[key]))
     by_hand.run()
     assert by_hand.header[0].value == app.header[0].value
+    assert [slider.label for slider in by_hand.slider] == [slider.label for slider in app.slider]
 
 
 @pytest.mark.parametrize(
