@@ -92,8 +92,8 @@ def test_a_plan_says_how_other_files_are_read(
     """What a plan says of exactly this file of staffed beds holds, and stands in the document; of a changed file it doesn't."""
     stays, beds, plan = (tmp_path / name for name in ("stays.csv", "beds.csv", "plan.json"))
     stays.write_bytes(stays_csv)
-    beds.write_text("Haus,ab,Betten heute\nEast,01/02/2024,9\nEast,01/03/2024,11\n")
-    said = FileAnswers({"ward": "Haus", "from": "ab", "staffed": "Betten heute"}, "day first")
+    beds.write_text("K1,K2,K3 today\nEast,01/02/2024,9\nEast,01/03/2024,11\n")
+    said = FileAnswers({"ward": "K1", "from": "K2", "staffed": "K3 today"}, "day first")
     files = {hashlib.sha256(beds.read_bytes()).hexdigest(): said}
     plan.write_text(as_json(SavedPlan("", {}, {}, files=files)), encoding="utf-8")
     words = [str(stays), "--ward", "East", "--capacity", str(beds), "--out", str(tmp_path)]
@@ -103,7 +103,7 @@ def test_a_plan_says_how_other_files_are_read(
     assert main([*words, "--answers", str(plan)]) == 0
     assert "(today 11)" in capsys.readouterr().out
     document = next(tmp_path.glob("*.html")).read_text(encoding="utf-8")
-    assert "staffed = Betten heute" in document
+    assert "staffed = K3 today" in document
     assert "Staffed beds: dates" in document
     beds.write_text(beds.read_text().replace("11", "12"))
     assert main([*words, "--answers", str(plan)]) == 2

@@ -15,8 +15,8 @@ if TYPE_CHECKING:
     from streamlit.testing.v1 import AppTest
 
 EXPANDER = "How the columns were read"
-BEDS = b"Haus,ab,Betten,warum\nEast,2024-01-01,9,\nWest,2024-01-01,7,refit\n"
-BEDS_COLUMNS = {"ward": "Haus", "from": "ab", "staffed": "Betten"}
+BEDS = b"K1,K2,K3,K4\nEast,2024-01-01,9,\nWest,2024-01-01,7,refit\n"
+BEDS_COLUMNS = {"ward": "K1", "from": "K2", "staffed": "K3"}
 
 
 def go(app: AppTest, page: str) -> AppTest:
@@ -91,38 +91,38 @@ STRANGE = {
         7,
     ),
     "refusals": (
-        b"Zeit,Haus,Grund\n2024-02-01 10:00,East,no bed\n2024-02-02 10:00,East,patient declined\n",
-        {"time": "Zeit", "ward": "Haus", "reason": "Grund"},
+        b"K5,K1,K6\n2024-02-01 10:00,East,no bed\n2024-02-02 10:00,East,patient declined\n",
+        {"time": "K5", "ward": "K1", "reason": "K6"},
         lambda app: len(app.session_state["files"].refusals.for_lack_of_beds("East")),
         1,
     ),
     "bed_requests": (
-        b"Haus,erbeten,bekommen\nEast,2024-02-01 10:00,2024-02-01 16:00\n",
-        {"ward": "Haus", "time": "erbeten", "placed": "bekommen"},
+        b"K1,K13,K14\nEast,2024-02-01 10:00,2024-02-01 16:00\n",
+        {"ward": "K1", "time": "K13", "placed": "K14"},
         lambda app: app.session_state["files"].bed_requests.table["wait_hours"].tolist(),
         [6.0],
     ),
     "cancellations": (
-        b"Tag,Haus,Grund\n2024-02-01,West,no bed\n2024-02-02,West,no bed\n2024-02-05,West,patient declined\n",
-        {"date": "Tag", "ward": "Haus", "reason": "Grund"},
+        b"K7,K1,K6\n2024-02-01,West,no bed\n2024-02-02,West,no bed\n2024-02-05,West,patient declined\n",
+        {"date": "K7", "ward": "K1", "reason": "K6"},
         lambda app: len(app.session_state["files"].cancellations.for_lack_of_beds("West")),
         2,
     ),
     "census": (
-        b"Tag,Uhrzeit,Haus,Belegt\n2024-03-01,00:00,East,8\n2024-03-02,00:00,East,10\n2024-03-02,00:00,West,1\n",
-        {"date": "Tag", "time": "Uhrzeit", "ward": "Haus", "occupied": "Belegt"},
+        b"K7,K8,K1,K9\n2024-03-01,00:00,East,8\n2024-03-02,00:00,East,10\n2024-03-02,00:00,West,1\n",
+        {"date": "K7", "time": "K8", "ward": "K1", "occupied": "K9"},
         lambda app: app.session_state["files"].census.occupied("East").mean(),
         9.0,
     ),
     "monthly_return": (
-        b"Monat,Haus,Tage,Belegt,Gegangen\n2024-01,North,400,310,62\n2024-02,North,400,290,58\n",
-        {"month": "Monat", "ward": "Haus", "available": "Tage", "occupied": "Belegt", "discharges": "Gegangen"},
+        b"K10,K1,K11,K9,K12\n2024-01,North,400,310,62\n2024-02,North,400,290,58\n",
+        {"month": "K10", "ward": "K1", "available": "K11", "occupied": "K9", "discharges": "K12"},
         load_of_north,
         pytest.approx(600 / 60),
     ),
     "ready": (
-        "\n".join(["Fall,bereit", *(f"s{place},{{{place}}}" for place in range(4))]).encode(),
-        {"spell_key": "Fall", "date": "bereit"},
+        "\n".join(["K15,K16", *(f"s{place},{{{place}}}" for place in range(4))]).encode(),
+        {"spell_key": "K15", "date": "K16"},
         days_ready,
         {1.0},
     ),
@@ -198,8 +198,8 @@ def test_a_column_can_be_left_out(app: AppTest) -> None:
 
 
 WRONG = {
-    "beds in words": ({"staffed": "warum"}, "“refit” in row 1 of odd.csv is no number of staffed beds"),
-    "one column for two": ({"from": "warum", "to": "warum"}, "“warum” was chosen for from and for to"),
+    "beds in words": ({"staffed": "K4"}, "“refit” in row 1 of odd.csv is no number of staffed beds"),
+    "one column for two": ({"from": "K4", "to": "K4"}, "“K4” was chosen for from and for to"),
     "no ward": ({"ward": ""}, "odd.csv lacks a column of ward"),
 }
 
@@ -231,12 +231,12 @@ def test_a_wrong_correction_loses_nothing(app: AppTest, case: str) -> None:
 DATES = "East,01/02/2024,9,5\nEast,01/03/2024,11,6\n"  # of February and March, or of two days in January
 
 
-@pytest.mark.parametrize("headings", ["Haus,ab,Betten,frei", "ward,from,Betten,beds"])
+@pytest.mark.parametrize("headings", ["K1,K2,K3,K21", "ward,from,K3,beds"])
 def test_columns_and_dates_outlive_each_other(app: AppTest, headings: str) -> None:
     """A file that needs both answers, columns first or dates first, is read with both."""
     give(app, "capacity", "both.csv", f"{headings}\n{DATES}".encode())
     place, since = headings.split(",")[:2]
-    columns = {"ward": place, "from": since, "staffed": "Betten"}
+    columns = {"ward": place, "from": since, "staffed": "K3"}
     dates_first = not are_open(app)[0]
     if not dates_first:
         name(app, "capacity", columns)
@@ -289,11 +289,11 @@ def test_forgotten_records_take_their_answers_along(app: AppTest) -> None:
 def test_wards_of_a_wrong_reading_are_taken_off(app: AppTest) -> None:
     """A return whose site stood for its ward makes the right wards once that is said, and no longer the wrong one."""
     rows = (
-        b"month,site,Haus,available,occupied,discharges\n2024-01,Main,North,400,310,62\n2024-01,Main,South,400,155,62\n"
+        b"month,site,K1,available,occupied,discharges\n2024-01,Main,North,400,310,62\n2024-01,Main,South,400,155,62\n"
     )
     give(app, "monthly_return", "return.csv", rows)
     assert set(app.session_state["typed"]) == {"Main"}
-    name(app, "monthly_return", {"ward": "Haus"})
+    name(app, "monthly_return", {"ward": "K1"})
 
     assert not app.exception
     assert set(app.session_state["typed"]) == {"North", "South"}

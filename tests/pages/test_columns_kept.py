@@ -17,14 +17,12 @@ if TYPE_CHECKING:
 
 EXPANDER = "How the columns were read"
 MONTHS = "A row of this return holds"
-BEDS = b"Haus,ab,Betten\nEast,01/02/2024,9\nEast,01/03/2024,11\n"
-BEDS_SAID = FileAnswers({"ward": "Haus", "from": "ab", "staffed": "Betten"}, "day first")
-RETURN = b"Monat,Haus,Belegt,Gegangen\n2024-03,North,910,91\n2024-09,North,920,92\n"
-RETURN_SAID = FileAnswers(
-    {"month": "Monat", "ward": "Haus", "occupied": "Belegt", "discharges": "Gegangen"}, months_a_row=3
-)
-REFUSALS = b"Zeit,Haus,Grund\n2024-02-01 10:00,East,code 7\n2024-02-02 10:00,East,code 9\n"
-REFUSALS_SAID = FileAnswers({"time": "Zeit", "ward": "Haus", "reason": "Grund"}, no_bed_reasons=("code 7",))
+BEDS = b"K1,K2,K3\nEast,01/02/2024,9\nEast,01/03/2024,11\n"
+BEDS_SAID = FileAnswers({"ward": "K1", "from": "K2", "staffed": "K3"}, "day first")
+RETURN = b"K10,K1,K9,K12\n2024-03,North,910,91\n2024-09,North,920,92\n"
+RETURN_SAID = FileAnswers({"month": "K10", "ward": "K1", "occupied": "K9", "discharges": "K12"}, months_a_row=3)
+REFUSALS = b"K5,K1,K6\n2024-02-01 10:00,East,code 7\n2024-02-02 10:00,East,code 9\n"
+REFUSALS_SAID = FileAnswers({"time": "K5", "ward": "K1", "reason": "K6"}, no_bed_reasons=("code 7",))
 SAID = {hashlib.sha256(BEDS).hexdigest(): BEDS_SAID, hashlib.sha256(RETURN).hexdigest(): RETURN_SAID}
 SAID |= {hashlib.sha256(REFUSALS).hexdigest(): REFUSALS_SAID}
 WIDE = "Date,Heron occupied,Heron beds,Teal occupied,Teal beds\n" + "".join(
@@ -120,7 +118,7 @@ def test_a_plan_keeps_what_was_said_of_each_file(app: AppTest, monkeypatch: pyte
     assert dict(plan.files) == SAID
     go(app, "one_ward").selectbox(key="ward").set_value("East").run()
     tables = "\n".join(one.value.to_csv().replace("\\", "") for one in go(app, "justification").table)
-    assert "Staffed beds: columns,ward = Haus; from = ab; staffed = Betten" in tables
+    assert "Staffed beds: columns,ward = K1; from = K2; staffed = K3" in tables
     assert "Staffed beds: dates,day first" in tables
     assert "Patients not given a bed: reasons taken for lack of a bed,code 7" in tables
     assert ("Monthly return: months a row", "3", "return.csv") in app.session_state["typed"]["North"].facts
@@ -159,8 +157,8 @@ def test_a_return_brought_again_keeps_its_wards_settings(
 
 def test_a_file_no_longer_in_its_box_is_asked_for(app: AppTest) -> None:
     """Where a plan reads a file another way than it was read, and the file is gone from its box, the page says so."""
-    beds = b"ward,from,beds,Betten\nEast,2024-02-01,9,11\n"
-    said = {hashlib.sha256(beds).hexdigest(): FileAnswers({"staffed": "Betten"})}
+    beds = b"ward,from,beds,K3\nEast,2024-02-01,9,11\n"
+    said = {hashlib.sha256(beds).hexdigest(): FileAnswers({"staffed": "K3"})}
     give(app, "capacity", "beds.csv", beds)
     go(go(app, "one_ward"), "records")
     give(app, "plan", "plan.json", as_json(SavedPlan("", {}, {}, files=said)).encode())
@@ -172,11 +170,11 @@ def test_a_file_no_longer_in_its_box_is_asked_for(app: AppTest) -> None:
 
 def test_other_columns_ask_for_reasons_again(app: AppTest) -> None:
     """Reasons were said of one column: where another holds them they are asked about again, not taken for something else."""
-    log = b"time,ward,reason,Grund\n2024-02-01 10:00,East,code 7,B3\n2024-02-02 10:00,East,code 9,B4\n"
+    log = b"time,ward,reason,K6\n2024-02-01 10:00,East,code 7,B3\n2024-02-02 10:00,East,code 9,B4\n"
     give(app, "refusals", "log.csv", log)
     app.multiselect(key="refusals_no_bed").set_value(["code 7"])
     press(app, "Count these", "refusals_reasons")
-    name(app, "refusals", {"reason": "Grund"})
+    name(app, "refusals", {"reason": "K6"})
 
     assert app.multiselect(key="refusals_no_bed").options == ["B3 (1)", "B4 (1)"]
 
@@ -198,10 +196,10 @@ def test_a_column_for_each_ward_is_asked_for_its_dates_only(app: AppTest) -> Non
 
 def test_a_column_for_each_ward_needs_its_date(app: AppTest) -> None:
     """Such a table whose column of dates nobody knows says that its date is enough, and is read once that is named."""
-    give(app, "census", "wide.csv", WIDE.replace("Date,", "Stichtag,").encode())
+    give(app, "census", "wide.csv", WIDE.replace("Date,", "K18,").encode())
     assert len(app.error) == 1
     assert "needs its date only" in text(app.caption)
-    name(app, "census", {"date": "Stichtag"})
+    name(app, "census", {"date": "K18"})
 
     assert not app.error
     assert app.session_state["files"].census.wards == ("Heron", "Teal")
@@ -210,10 +208,10 @@ def test_a_column_for_each_ward_needs_its_date(app: AppTest) -> None:
 def test_a_row_for_each_ward_is_not_taken_for_a_column_for_each(app: AppTest) -> None:
     """A census whose wards stand under a heading nobody knows is not read as if its headings were wards."""
     rows = [f"2024-03-{day:02d},{ward},{count}" for day in range(1, 29) for ward, count in (("East", 8), ("West", 5))]
-    give(app, "census", "long.csv", "\n".join(["Date,Station,Belegt", *rows]).encode())
+    give(app, "census", "long.csv", "\n".join(["Date,K17,K9", *rows]).encode())
     assert "long.csv lacks ward, occupied" in text(app.error)
     assert app.session_state["files"].census is None
-    name(app, "census", {"ward": "Station", "occupied": "Belegt"})
+    name(app, "census", {"ward": "K17", "occupied": "K9"})
 
     assert not app.error
     assert app.session_state["files"].census.occupied("West").tolist() == [5] * 28
