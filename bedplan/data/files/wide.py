@@ -86,14 +86,18 @@ def _groups(headings: list[str]) -> dict[str, dict[str, str]]:
 
 def one_row_of_headings(source: SourceFile) -> SourceFile | None:
     """Return a table with two rows of headings as one with "Heron occupied", "Heron available"; None where it has one."""
+    table: Rows = []
     for rows in _rows_of(source):
         for place in range(1, min(len(rows), MOST_TITLE_LINES)):
-            headings = _joined(rows[place - 1], rows[place])
-            if headings:
-                written = io.StringIO()
-                csv.writer(written).writerows([headings, *rows[place + 1 :]])
-                return SourceFile(source.name, written.getvalue().encode(), digest=source.digest)
-    return None
+            headings = tuple(_joined(rows[place - 1], rows[place]))
+            if headings and (not table or headings == table[0]):  # a sheet a month is one table
+                table += [*(() if table else (headings,)), *rows[place + 1 :]]
+                break
+    if not table:
+        return None
+    written = io.StringIO()
+    csv.writer(written).writerows(table)
+    return SourceFile(source.name, written.getvalue().encode(), digest=source.digest)
 
 
 def _rows_of(source: SourceFile) -> list[Rows]:

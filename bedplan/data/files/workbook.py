@@ -14,7 +14,7 @@ import pyarrow.compute as pc
 from openpyxl.utils.datetime import CALENDAR_MAC_1904
 from pyarrow import parquet
 
-from bedplan.data.files.columns import match_headings
+from bedplan.data.files.columns import match_headings, other_kind, plain
 from bedplan.data.files.dates import EPOCHS_APART_DAYS
 from bedplan.data.files.texttable import MOST_TITLE_LINES, Layout, Parsed, TextTable, text_table
 from bedplan.errors import UnreadableRecords
@@ -28,6 +28,7 @@ FIRST_DAY_NUMBER, LAST_DAY_NUMBER = 20_000, 70_000
 DATE_COLUMNS = ("start", "end", "start_date", "end_date", "admitted", "discharged", "ready", "date")
 MOST_ROWS = 1_048_576  # a worksheet holds no more
 LARGEST_UNPACKED_BYTES = 2 * 2**30
+MOST_NAMED = 12  # sheets
 MOST_SWELLING = 200  # times; honest workbooks unpack to 5–30 times their size
 
 Cells = list[tuple[object, ...]]
@@ -59,16 +60,69 @@ def check_archive(source: SourceFile) -> None:
 def read_workbook(
     source: SourceFile, known: Mapping[str, Iterable[str]], chosen: Mapping[str, str] | None = None
 ) -> TextTable:
-    """What does this workbook hold? The sheet whose headings are known best, every cell as text.
+    """What does this workbook hold? The sheet whose headings are known best, and those with the same ones, as text.
 
     Raises:
         UnreadableRecords: not a workbook, too large, or no sheet with known headings.
+
+    Checked by: tests/data/files/test_workbook.py, tests/data/files/test_reading.py
     """
     sheets, days_apart = _sheets(source)
     layouts = {title: _layout(cells, known, chosen) for title, cells in sheets.items()}
-    title, layout = max(layouts.items(), key=lambda item: len(item[1].found), default=("", Layout(0, 0, "", (), {})))
-    notes = [f"Read from the sheet “{title}”; {len(sheets) - 1} other sheets were left out."] if len(sheets) > 1 else []
-    return text_table(source.name, layout, lambda: _parsed(sheets[title], layout, days_apart), notes, list(known))
+    first, layout = max(layouts.items(), key=lambda item: len(item[1].found), default=("", Layout(0, 0, "", (), {})))
+    alike = [title for title, other in layouts.items() if _are_alike(other, layout)]
+    parts = {title: _parsed(sheets[title], layouts[title], days_apart) for title in alike}
+    repeated = _repeated(parts, first)
+    used = {title: part for title, part in parts.items() if title not in repeated}
+    rows = {
+        title: len(cells) - (layouts[title].line + 1 if layouts[title].found else 0) for title, cells in sheets.items()
+    }
+    notes = _about_sheets(rows, list(used), repeated) if layout.found else []
+    headings = list(layout.found.values())
+
+    def joined() -> Parsed:
+        """Return the rows of all sheets used, one after the other."""
+        return Parsed(pa.concat_tables([part.rename_columns(headings) for part in used.values()]))
+
+    return text_table(source.name, layout, joined, notes, list(known))
+
+
+def _are_alike(one: Layout, other: Layout) -> bool:
+    """Do two sheets have the same headings, but for those nobody knows, and are they of one kind?"""
+    known = [{key: plain(heading) for key, heading in layout.found.items()} for layout in (one, other)]
+    return known[0] == known[1] and other_kind(one.headings) == other_kind(other.headings)
+
+
+def _repeated(parts: Mapping[str, pa.Table], first: str) -> list[str]:
+    """Return the sheets all of whose rows stand in a longer one too, such as the months beside a sheet of the whole year."""
+    if len(parts) < 2:
+        return []
+    longest = max(parts, key=lambda title: (parts[title].num_rows, title == first))
+    rows = {
+        title: set(zip(*(column.to_pylist() for column in part.columns), strict=True)) for title, part in parts.items()
+    }
+    return [title for title, held in rows.items() if held and title != longest and held <= rows[longest]]
+
+
+def _about_sheets(rows: Mapping[str, int], used: list[str], repeated: list[str]) -> list[str]:
+    """Say which sheets were read and which were not, with their rows."""
+    if len(rows) == 1:
+        return []
+
+    def named(titles: list[str]) -> str:
+        """Name sheets with their rows."""
+        shown = [f"“{title}” ({rows[title]:,} {'row' if rows[title] == 1 else 'rows'})" for title in titles]
+        return ", ".join(shown[:MOST_NAMED]) + (f" and {len(shown) - MOST_NAMED:,} more" if shown[MOST_NAMED:] else "")
+
+    told = [f"Read from the sheet {named(used)}."]
+    if len(used) > 1:
+        told = [f"Read from {len(used)} sheets with the same headings, as one table: {named(used)}."]
+    if repeated:
+        told.append(f"Not read twice, because their rows stand in another sheet too: {named(repeated)}.")
+    others = [title for title in rows if title not in used and title not in repeated and rows[title]]
+    if others:
+        told.append(f"Left out, because the headings are others: {named(others)}.")
+    return told
 
 
 def sheets_as_text(source: SourceFile) -> list[list[tuple[str, ...]]]:
@@ -132,7 +186,7 @@ def _layout(cells: Cells, known: Mapping[str, Iterable[str]], chosen: Mapping[st
     return best
 
 
-def _parsed(cells: Cells, layout: Layout, days_apart: int) -> Parsed:
+def _parsed(cells: Cells, layout: Layout, days_apart: int) -> pa.Table:
     """Return the matched columns as text; day numbers of workbooks that count from 1904 as those that count from 1900."""
     below = cells[layout.line + 1 :]
     places = {heading: layout.headings.index(heading) for heading in layout.found.values()}
@@ -143,7 +197,7 @@ def _parsed(cells: Cells, layout: Layout, days_apart: int) -> Parsed:
         if later:
             values = [value + later if _is_day_number(value) else value for value in values]
         columns[heading] = pa.chunked_array([[_text(value) or None for value in values]], pa.string())
-    return Parsed(pa.table(columns))
+    return pa.table(columns)
 
 
 def _is_day_number(cell: object) -> bool:
@@ -193,7 +247,7 @@ def _from_parquet(source: SourceFile, use: Callable[[parquet.ParquetFile], Found
 
 
 def _as_text(table: pa.Table) -> pa.Table:
-    """Return every column as text; times lose their zone and fractions of a second."""
+    """Return every column as text; times lose fractions of a second and keep their offset from world time."""
     table.validate(full=True)  # a damaged file may hold text that is none
     columns = {}
     for name in table.column_names:
@@ -202,7 +256,8 @@ def _as_text(table: pa.Table) -> pa.Table:
             column = pc.cast(column, column.type.value_type)
         if pa.types.is_timestamp(column.type):
             zone = column.type.tz
-            column = pc.cast(pc.local_timestamp(column) if zone else column, pa.timestamp("s"), safe=False)
+            column = pc.cast(column, pa.timestamp("s", zone), safe=False)
+            column = pc.strftime(column, "%Y-%m-%dT%H:%M:%S%z") if zone else column
         if pa.types.is_floating(column.type) and pc.all(pc.equal(column, pc.floor(column))).as_py():
             column = pc.cast(column, pa.int64())
         columns[name] = pc.cast(column, pa.string())
