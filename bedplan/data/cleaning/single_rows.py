@@ -14,21 +14,49 @@ if TYPE_CHECKING:
     from bedplan.data.values.rows import Rows
 
 EARLIEST = 631_152_000  # 1 January 1990
+# What systems write for "no date": 1 January of the years 1, 1753, 1900 and 1970, and a spreadsheet's day 0.
+EMPTY_DATES = np.array(
+    ["0001-01-01", "1753-01-01", "1899-12-30", "1899-12-31", "1900-01-01", "1970-01-01"], dtype="datetime64[s]"
+).astype(np.int64)
+MERGED_SHARE = 0.5  # of the rows without a ward, from which merged cells are thought of
 FEWEST_SWAPS = 3  # a file "shows swaps" from so many rows on
 LEAST_LONG_STAY_SECONDS = 60 * DAY_SECONDS
 
 
 def check_dates(rows: Rows, now: int) -> None:
     """Set aside rows whose dates are missing, unreadable or impossible; an end yet to come is an unfinished stay."""
+    name_wards_from_above(rows)
     rows.mark(rows.ward < 0, "no ward")
     rows.mark(rows.start == MISSING, "no start")
     rows.mark(rows.start == UNREADABLE, "start unreadable")
     rows.mark(rows.end == UNREADABLE, "end unreadable")
-    early = (rows.start < EARLIEST) | (~rows.is_open & (rows.end < EARLIEST))
+    early_end = ~rows.is_open & (rows.end < EARLIEST)
+    none_yet = np.flatnonzero(early_end)
+    none_yet = none_yet[np.isin(rows.end[none_yet], EMPTY_DATES)]
+    early_end[none_yet] = False
+    rows.end[none_yet] = MISSING
+    rows.mark(none_yet, "empty end")
+    early = (rows.start < EARLIEST) | early_end
     rows.mark(early | (rows.start > now), "unlikely date")
     expected = np.flatnonzero(rows.end > now)
     rows.mark(expected, "end to come")
     rows.end[expected] = MISSING
+
+
+def name_wards_from_above(rows: Rows) -> None:
+    """Give rows without a ward the one named above them, where that is how the file is written: once for many rows.
+
+    That is: half of the rows with a start or more name no ward, and none that does names the same as the one before.
+    """
+    blank = np.flatnonzero((rows.ward < 0) & (rows.start > UNREADABLE))
+    if not blank.size or blank.size < MERGED_SHARE * int((rows.start > UNREADABLE).sum()):
+        return
+    named = np.flatnonzero((rows.ward >= 0) & ~rows.aside)
+    if not named.size or (np.diff(rows.ward[named]) == 0).any():
+        return
+    blank = blank[blank > named[0]]
+    rows.ward[blank] = rows.ward[named[np.searchsorted(named, blank) - 1]]
+    rows.mark(blank, "ward above")
 
 
 def backward(rows: Rows) -> NDArray[np.int64]:

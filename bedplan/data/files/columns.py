@@ -26,16 +26,21 @@ LAST_WARD = words("lastward dischargeward wardondischarge wardatdischarge discha
 STAY_HEADINGS: dict[str, tuple[str, ...]] = {
     "patient_key": words(
         "patientkey pseudoid patid patientid hospno hospitalno hospitalnumber mrn mrnhash patient patientno "
-        "patientnumber pseudonym pseudonymisedid personid personkey subjectid pid localpatientid"
+        "patientnumber pseudonym pseudonymisedid personid personkey subjectid pid localpatientid "
+        "patientennummer patientennr patientnr patientnummer npatient nopatient idpatient paciente idpaciente nhc "
+        "paziente idpaziente codicepaziente pacjent idpacjenta doente iddoente utente"
     ),
     "spell_key": words(
         "spellkey spell spellno spellid spellnumber admissionid admissionno encounter encounterid providerspellno "
-        "hospitalproviderspellno visitid visit csn accountno stayid episodeid"
+        "hospitalproviderspellno visitid visit csn accountno stayid episodeid "
+        "fallnummer fallnr fallid fall sejour nsejour idsejour episodio nosologico opnamenummer opnamenr vardtillfalle"
     ),
     "ward": (
         *words(
             "ward wardcode wardname location unit nursingunit clinicward wardid locationname bedward wardlocation "
-            "department wardunit careunit currentward"
+            "department wardunit careunit currentward "
+            "station pflegestation abteilung unite unitedesoins unidad planta reparto afdeling verpleegafdeling "
+            "avdelning vardavdelning afsnit avdeling oddzia servico enfermaria unidade osasto"
         ),
         *FIRST_WARD,
         *LAST_WARD,
@@ -44,7 +49,7 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
     "start": words(
         "start wardstart admdttm in from wardstaystart wardstaystartdatetime startdatetime starttime wardin "
         "timein datein wardstartdatetime wardstaystartdttm arrival arrived intime transferin begin startdttm indttm "
-        "entered wardadmitted episodestart epistart episodestartdatetime"
+        "entered wardadmitted episodestart epistart episodestartdatetime zugang stationszugang zugangsdatum von"
     ),
     "start_date": words(
         "startdate wardstartdate wardstaystartdate indate fromdate arrivaldate wardstaydate episodestartdate"
@@ -53,12 +58,30 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
     "end": words(
         "end wardend dischdttm out to wardstayend wardstayenddatetime enddatetime endtime wardout timeout "
         "dateout wardenddatetime wardstayenddttm departure departed outtime transferout finish enddttm outdttm left "
-        "episodeend epiend episodeenddatetime"
+        "episodeend epiend episodeenddatetime abgang stationsabgang abgangsdatum bis"
     ),
     "end_date": words("enddate wardenddate wardstayenddate outdate todate departuredate episodeenddate"),
     "end_time": words("wardendtime wardstayendtime timeend totime departuretime episodeendtime"),
-    "admitted": words("admitted admdate admissiondate admission admissiondatetime dateofadmission admissiondttm"),
-    "discharged": words("discharged disdate dischargedate discharge dischargedatetime dateofdischarge dischargedttm"),
+    "admitted": words(
+        "admitted admdate admissiondate admission admissiondatetime dateofadmission admissiondttm "
+        "aufnahme aufnahmedatum aufnahmezeitpunkt entree dateentree datedentree ingreso fechaingreso fechadeingreso "
+        "ricovero dataricovero datadiricovero dataingresso opname opnamedatum inskriven inskrivningsdatum indlagt "
+        "innlagt indlaeggelsesdato dataprzyjecia admissao dataadmissao datadeadmissao"
+    ),
+    "admitted_time": words(
+        "admissiontime admtime admittime timeofadmission aufnahmezeit aufnahmeuhrzeit heureentree heuredentree "
+        "horaingreso horadeingreso oraricovero opnametijd"
+    ),
+    "discharged": words(
+        "discharged disdate dischargedate discharge dischargedatetime dateofdischarge dischargedttm "
+        "entlassung entlassungsdatum entlassdatum entlassungszeitpunkt sortie datesortie datedesortie alta fechaalta "
+        "fechadealta dataalta datadealta dimissione datadimissione datadidimissione ontslag ontslagdatum utskriven "
+        "utskrivningsdatum udskrevet utskrevet udskrivningsdato datawypisu"
+    ),
+    "discharged_time": words(
+        "dischargetime distime timeofdischarge entlassungszeit entlassungsuhrzeit heuresortie heuredesortie horaalta "
+        "horadealta oradimissione ontslagtijd"
+    ),
     "class": words("class patclass patientclass patientclassification classpat intendedclass"),
     "method": words(
         "method admissionmethod admmeth methodofadmission electivenonelective elecnonelec urgency admissiontype admtype"
@@ -94,7 +117,11 @@ IDENTITY_WORDS = words(
     "dateofbirth birthdate birthday birth postcode postalcode zip zipcode address addressline street town phone "
     "telephone mobile tel email mail nhsnumber nhsno nhs ssn socialsecurity socialsecuritynumber nationalid "
     "nationalinsurance nationalnumber idnumber passport chi chinumber hcn healthcard medicare medicareno insuranceno "
-    "nextofkin kin gp gpname gppractice consultantname consultant religion photo name title initials ninumber"
+    "nextofkin kin gp gpname gppractice consultantname consultant religion photo name title initials ninumber "
+    "nachname familienname vorname geburtsdatum geburtstag anschrift strasse plz nom nomdefamille prenom datedenaissance "
+    "datenaissance adresse codepostal apellido apellidos nombre fechadenacimiento fechanacimiento direccion cognome nome "
+    "datadinascita datanascita codicefiscale indirizzo achternaam voornaam geboortedatum bsn personnummer fodelsedatum "
+    "cpr cprnummer fodselsnummer pesel nazwisko imie dni apelido datadenascimento"
 )
 
 

@@ -12,6 +12,7 @@ import pyarrow as pa
 import pyarrow.compute as pc
 
 from bedplan.data.files.blocks import each
+from bedplan.data.files.dateforms import STILL_IN, in_usual_form
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -159,7 +160,7 @@ def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> Ti
     text = pc.utf8_trim_whitespace(pc.fill_null(column, ""))
     size = len(text)
     seconds = np.full(size, UNREADABLE, dtype=np.int64)
-    blank = pc.is_in(pc.utf8_lower(text), value_set=pa.array(BLANK_WORDS)).to_numpy(zero_copy_only=False)
+    blank = pc.is_in(pc.utf8_lower(text), value_set=pa.array((*BLANK_WORDS, *STILL_IN))).to_numpy(zero_copy_only=False)
     seconds[blank] = MISSING
     left = ~blank
     left[_plain_iso(text, seconds)] = False
@@ -187,7 +188,31 @@ def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> Ti
             if time_zone:
                 moved = rows[offset]
                 seconds[moved] = _at_home(seconds[moved], parts.field("offset").filter(pa.array(offset)), time_zone)
-    return TimesRead(seconds, serial, had_offset, *counts)
+    unread = TimesRead(seconds, serial, had_offset, *counts)
+    return _read_again(unread, text, np.flatnonzero(left), date_order, time_zone)
+
+
+def _read_again(
+    read: TimesRead, text: pa.Array, left: NDArray[np.int64], date_order: str | None, time_zone: str | None
+) -> TimesRead:
+    """Read the times left over that are written in another form."""
+    if not left.size:
+        return read
+    asked = text.take(pa.array(left))
+    tidy = in_usual_form(asked)
+    changed = pc.not_equal(tidy, asked).to_numpy(zero_copy_only=False)
+    if not changed.any():
+        return read
+    again = _slow(tidy.filter(pa.array(changed)), date_order, time_zone)
+    read.seconds[left[changed]], read.serial[left[changed]] = again.seconds, again.serial
+    return TimesRead(
+        read.seconds,
+        read.serial,
+        read.had_offset or again.had_offset,
+        read.day_first_only + again.day_first_only,
+        read.month_first_only + again.month_first_only,
+        read.either_order + again.either_order,
+    )
 
 
 def _whole(strings: pa.Array) -> NDArray[np.int64]:
@@ -208,9 +233,10 @@ def _clock(parts: pa.StructArray) -> NDArray[np.int64]:
     return np.where(possible & (seconds <= DAY_SECONDS), seconds, -1)
 
 
-def _four_digits(year: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Return years with their century: 00–49 are 2000–2049, 50–99 are 1950–1999."""
-    return np.where(year < 50, year + 2000, np.where(year < 100, year + 1900, year))
+def _whole_year(written: pa.Array) -> NDArray[np.int64]:
+    """Return years; of those in two digits 00–49 are 2000–2049, 50–99 are 1950–1999."""
+    year, is_short = _whole(written), pc.equal(pc.utf8_length(written), 2).to_numpy(zero_copy_only=False)
+    return np.where(is_short, np.where(year < 50, year + 2000, year + 1900), year)
 
 
 def _from_iso(parts: pa.StructArray) -> NDArray[np.int64]:
@@ -224,14 +250,14 @@ def _from_names(parts: pa.StructArray) -> NDArray[np.int64]:
     found = pc.index_in(pc.utf8_slice_codeunits(name, 0, 3), value_set=pa.array(list(MONTH_NAMES)))
     numbers = np.array([*MONTH_NAMES.values(), 0])
     month = numbers[pc.fill_null(found, -1).to_numpy(zero_copy_only=False)]
-    year, day = _four_digits(_whole(parts.field("year"))), _whole(parts.field("day"))
+    year, day = _whole_year(parts.field("year")), _whole(parts.field("day"))
     return seconds_of(year, month, day, _clock(parts))
 
 
 def _from_numbers(parts: pa.StructArray, date_order: str | None) -> tuple[NDArray[np.int64], tuple[int, int, int]]:
     """Read dates of two small numbers and a year; count which orders they allow."""
     first, second = _whole(parts.field("first")), _whole(parts.field("second_part"))
-    year, clock = _four_digits(_whole(parts.field("year"))), _clock(parts)
+    year, clock = _whole_year(parts.field("year")), _clock(parts)
     day_first_only, month_first_only = (first > 12) & (second <= 12), (second > 12) & (first <= 12)
     either = (first <= 12) & (second <= 12) & (first != second)
     counts = (int(day_first_only.sum()), int(month_first_only.sum()), int(either.sum()))

@@ -41,6 +41,11 @@ RULES: dict[str, Rule] = {
     ),
     "end to come": Rule(REPAIRED, "The end lies in the future: the patient is taken to be still in"),
     "clock change": Rule(REPAIRED, "Ended in the hour that the clock shows twice in autumn: an hour was added"),
+    "empty end": Rule(
+        REPAIRED,
+        "The end is a date that systems write for none, such as 1 January 1900: the patient is taken to be still in",
+    ),
+    "ward above": Rule(REPAIRED, "The ward's cell is blank, as in merged cells: the ward named above it counts"),
     "ward spelling": Rule(REPAIRED, "The ward's name was written with other spaces or capitals"),
     "ward renamed": Rule(REPAIRED, "The ward's name was changed to the one you chose"),
     "serial date": Rule(REPAIRED, "A date stood as a spreadsheet's day number"),

@@ -6,7 +6,7 @@ import re
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Mapping
+    from collections.abc import Collection, Mapping
 
 DAY_MINUTES = 1_440
 CLOCK = re.compile(
@@ -16,7 +16,7 @@ CLOCK = re.compile(
     re.IGNORECASE | re.ASCII,
 )
 FRACTION = re.compile(r"0?[.,]\d+|\d(?:[.,]\d+)?e-\d+", re.IGNORECASE | re.ASCII)
-HOUR = re.compile(r"\d{1,2}", re.ASCII)
+HOUR, BARE = re.compile(r"\d{1,2}", re.ASCII), re.compile(r"[1-9]\d{2,3}", re.ASCII)
 NO_CLOCK = re.compile(r"0?[.,](?:\d|[6-9]\d|\d{3,})|.*e.*", re.IGNORECASE | re.ASCII)  # 0.30 may be half past midnight
 
 
@@ -36,22 +36,24 @@ def minutes_of(clock: str) -> int | None:
     return hour * 60 + minute if minute < 60 and hour * 60 + minute <= DAY_MINUTES else None
 
 
-def clocks_of(cells: Iterable[str]) -> Mapping[str, str]:
+def clocks_of(cells: Collection[str]) -> Mapping[str, str]:
     """Which time of day does each cell of one column name, with parts of a day (0.604) and hours as 14:30? Cell → clock.
 
-    0.30 is half past midnight unless another cell can only be a part of a day, or has a colon. To the minute, as spreadsheets' days are.
+    0.30 is half past midnight unless another cell can only be a part of a day, or has a colon. 8 is an
+    hour, beside 805 it is 8 minutes past midnight. To the minute, as spreadsheets' days are.
 
     Checked by: tests/data/values/test_clocks.py
     """
     parts = {cell for cell in cells if FRACTION.fullmatch(cell.strip())}
     if not any(NO_CLOCK.fullmatch(cell.strip()) for cell in parts) and not any(":" in cell for cell in cells):
         parts = set()
-    return {cell: _as_clock(cell) if cell in parts or HOUR.fullmatch(cell.strip()) else cell for cell in cells}
+    bare = any(BARE.fullmatch(cell.strip()) for cell in cells)
+    hours = {cell for cell in cells if HOUR.fullmatch(cell.strip())}
+    as_hours = {cell: f"00:{int(cell):02d}" if bare else f"{int(cell):02d}:00" for cell in hours}
+    return {cell: as_hours.get(cell) or (_as_clock(cell) if cell in parts else cell) for cell in cells}
 
 
 def _as_clock(part: str) -> str:
-    """Return an hour, or a part of a day, as a clock shows it; what rounds to the day's end is 24:00."""
-    if HOUR.fullmatch(part.strip()):
-        return f"{int(part):02d}:00"
+    """Return a part of a day as a clock shows it; what rounds to the day's end is 24:00."""
     minutes = round(float(part.strip().replace(",", ".")) * DAY_MINUTES)
     return f"{minutes // 60:02d}:{minutes % 60:02d}"

@@ -98,7 +98,8 @@ def _columns(text: TextTable) -> tuple[dict[str, pa.ChunkedArray], list[str]]:
         elif day is not None:
             columns[key] = day if clock is None else _joined(day, clock)
         else:
-            columns[key] = text.columns[other]
+            clock = text.columns.get(f"{other}_time")
+            columns[key] = text.columns[other] if clock is None else _joined(text.columns[other], clock)
             notes.append(
                 f"The hospital's “{text.headings[other]}” stands in for the {key} on the ward: moves between wards are hidden."
             )
