@@ -66,6 +66,12 @@ class WardCase:
         return self.rule.by_month(self.curve)
 
     @property
+    def compared(self) -> tuple[str, ...]:
+        """The models whose share without a free bed is shown beside the watched figure: all that say something else."""
+        same = np.array_equal(self.over_year, self.curve.turn_away_probability)
+        return tuple(name for name in self.curves if name != self.model or not same)
+
+    @property
     def within(self) -> str:
         """Whether the limit holds for the year or for every month."""
         return getattr(self.rule, "within", "year")

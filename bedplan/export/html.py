@@ -113,9 +113,9 @@ def curve_rows(case: WardCase) -> tuple[tuple[str, ...], list[tuple[float, ...]]
     """
     counts = [count for count in case.marked().values() if count is not None]
     beds = [int(count) for count in case.curve.beds if min(counts) - 3 <= count <= max(counts) + 3]
-    heading = ("Staffed beds", case.words[2], *(f"no free bed: {wording.LINES[name]}" for name in case.curves))
+    heading = ("Staffed beds", case.words[2], *(f"no free bed: {wording.LINES[name]}" for name in case.compared))
     return heading, [
-        (count, case.share_at(count), *(curve.at(count).turn_away_probability for curve in case.curves.values()))
+        (count, case.share_at(count), *(case.curves[name].at(count).turn_away_probability for name in case.compared))
         for count in beds
     ]
 

@@ -131,13 +131,14 @@ class Justification:
             now = f"today's {beds}" if known else f"an assumed {beds}"
             return (
                 f"{case.ward.name}: no bed count looked at keeps {limit}. "
-                f"{case.words[2]}: with {now} staffed beds {today} a year."
+                f"{case.words[2]}: with {now} staffed {'bed' if beds == 1 else 'beds'} {today} a year."
             )
         now = f"today {beds}" if known else f"today not known, {beds} assumed"
         instead = f" instead of {today}" if known else ""
+        asked = case.decision.beds
         return (
-            f"{case.ward.name}: approve {case.decision.beds} staffed beds ({now}) to keep {limit}. "
-            f"{case.words[2]}: {case.a_year(case.decision.beds)} a year{instead}."
+            f"{case.ward.name}: approve {asked} staffed {'bed' if asked == 1 else 'beds'} ({now}) to keep {limit}. "
+            f"{case.words[2]}: {case.a_year(asked)} a year{instead}."
         )
 
     def reproducibility(self) -> tuple[tuple[str, str], ...]:

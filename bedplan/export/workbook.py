@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from bedplan.export.justification import Justification, WardCase
 
 Cell = str | int | float
+NARROWEST, WIDEST = 10, 60  # columns, in characters
 _FORBIDDEN = str.maketrans(dict.fromkeys("[]:*?/\\'", " "))
 
 
@@ -45,11 +46,11 @@ class _Book:
         sheet.repeat_rows(0)
         sheet.set_paper(9)
         sheet.fit_to_pages(1, 0)
-        sheet.set_column(0, 0, 34)
-        sheet.set_column(1, max(1, len(heading) - 1), 22)
+        lines = list(rows)
         for column, title in enumerate(heading):
             sheet.write_string(0, column, title, self._bold)
-        for at, row in enumerate(rows, start=1):
+            sheet.set_column(column, column, _width(title, [line[column] for line in lines if len(line) > column]))
+        for at, row in enumerate(lines, start=1):
             for column, cell in enumerate(row):
                 self._write(sheet, at, column, cell, share=column in shares)
 
@@ -74,6 +75,12 @@ class _Book:
         return self._bytes.getvalue()
 
 
+def _width(title: str, cells: Iterable[Cell]) -> int:
+    """Return a column's width in characters: that of its longest text, up to where lines wrap; no word of its title is cut."""
+    texts = (len(cell) for cell in cells if isinstance(cell, str))
+    return min(max(NARROWEST, *texts, *map(len, title.split())) + 2, WIDEST)
+
+
 def as_xlsx(justification: Justification) -> bytes:
     """How does the justification read as a workbook? The same numbers as the document, as numbers.
 
@@ -83,7 +90,7 @@ def as_xlsx(justification: Justification) -> bytes:
     book.sheet("Decision", ("Decision",), [(line,) for line in justification.decision_lines()])
     book.sheet("Wards", _WARDS, [_ward_row(case) for case in justification.cases], shares=(6, 7, 8, 9))
     for case in justification.cases:
-        heading = ("Staffed beds", case.words[2], *(wording.LINES[name] for name in case.curves))
+        heading = ("Staffed beds", case.words[2], *(wording.LINES[name] for name in case.compared))
         book.sheet(f"Curve {case.ward.name}", heading, _curve_rows(case), shares=range(1, len(heading)))
         months = ("Staffed beds", *wording.MONTHS)
         rows = [(int(beds), *map(float, case.by_month[:, at])) for at, beds in enumerate(case.curve.beds)]
@@ -127,7 +134,7 @@ def _ward_row(case: WardCase) -> tuple[Cell, ...]:
 
 
 def _curve_rows(case: WardCase) -> list[tuple[Cell, ...]]:
-    columns = [case.over_year, *(curve.turn_away_probability for curve in case.curves.values())]
+    columns = [case.over_year, *(case.curves[name].turn_away_probability for name in case.compared)]
     return [(int(beds), *(float(column[at]) for column in columns)) for at, beds in enumerate(case.curve.beds)]
 
 

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import re
+from dataclasses import replace
 from html.parser import HTMLParser
 from typing import TYPE_CHECKING
 
 import pytest
 
 from bedplan import wording
+from bedplan.decision import OverfullLimit
 from bedplan.export import as_html
 from bedplan.export.html import curve_rows
 
@@ -65,12 +67,21 @@ def test_curve_table_is_the_curve(justification: Justification, page: str) -> No
     """The printed rows are each model's own share at each bed count."""
     case = justification.cases[0]
     heading, rows = curve_rows(case)
+    others = [name for name in case.curves if name != case.ward.model]  # whose own figure is the watched one here
 
-    assert heading[1:] == ("Patients turned away", *(f"no free bed: {wording.LINES[name]}" for name in case.curves))
+    assert heading[1:] == ("Patients turned away", *(f"no free bed: {wording.LINES[name]}" for name in others))
     for beds, watched, *shares in rows:
         assert watched == case.curve.at(beds).turn_away_probability
-        assert shares == [curve.at(beds).turn_away_probability for curve in case.curves.values()]
+        assert shares == [case.curves[name].at(beds).turn_away_probability for name in others]
     assert f"<td>{rows[0][0]}</td><td>{wording.percent(rows[0][1])}</td>" in page
+
+
+def test_every_line_beside_another_figure(justification: Justification) -> None:
+    """Where the limit is on hours over-full, the share who find the ward full stands beside them for every line."""
+    case = replace(justification.cases[1], rule=OverfullLimit(0.05))
+
+    assert case.compared == tuple(case.curves)
+    assert case.ward.model not in justification.cases[1].compared
 
 
 def test_what_is_asked_for_comes_first_and_largest(justification: Justification, page: str) -> None:

@@ -26,11 +26,13 @@ def test_curve_sheet_is_the_curve(justification: Justification, book: openpyxl.W
     case = justification.cases[0]
     rows = list(book["Curve Curlew"].iter_rows(values_only=True))
 
-    assert list(rows[0]) == ["Staffed beds", "Patients turned away", *(wording.LINES[name] for name in case.curves)]
+    others = [name for name in case.curves if name != case.ward.model]  # whose own figure is the watched one here
+    assert list(rows[0]) == ["Staffed beds", "Patients turned away", *(wording.LINES[name] for name in others)]
     assert [row[0] for row in rows[1:]] == case.curve.beds.tolist()
     assert [row[1] for row in rows[1:]] == pytest.approx(case.over_year.tolist(), abs=1e-12)
-    column = 2 + list(case.curves).index(case.ward.model)
-    assert [row[column] for row in rows[1:]] == pytest.approx(case.curve.turn_away_probability.tolist(), abs=1e-12)
+    for column, name in enumerate(others, start=2):
+        shares = case.curves[name].turn_away_probability.tolist()
+        assert [row[column] for row in rows[1:]] == pytest.approx(shares, abs=1e-12)
 
 
 def test_no_cell_is_a_formula(book: openpyxl.Workbook) -> None:
@@ -48,6 +50,16 @@ def test_decision_and_cautions_are_there(justification: Justification, book: ope
 
     assert decision == list(justification.decision_lines())
     assert set(wording.CAUTIONS) <= set(cautions)
+
+
+def test_columns_are_wide_enough(book: openpyxl.Workbook) -> None:
+    """No word of a heading is cut, and a text that needs no second line gets none, up to 60 characters a line."""
+    for sheet in book:
+        for column in sheet.iter_cols():
+            width = sheet.column_dimensions[column[0].column_letter].width
+            texts = [cell.value for cell in column if isinstance(cell.value, str)]
+            assert width >= max(len(word) for word in column[0].value.split())
+            assert width >= min(60, max(map(len, texts[1:]), default=0))
 
 
 def test_same_figures_same_bytes(justification: Justification) -> None:
