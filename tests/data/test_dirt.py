@@ -84,7 +84,8 @@ def test_swapped_days_and_months_are_turned_round_when_the_file_shows_several(re
         "e,e,Heron,2024-10-09 10:00,2024-10-10 12:00",
         "f,f,Heron,2024-11-01 10:00,2024-02-11 12:00",  # meant: 2 November
     )
-    records = read(*PLAIN, *swapped)
+    others = tuple(f"o{n},o{n},Teal,2024-{n % 11 + 1:02d}-{n % 28 + 1:02d} 10:00,2024-12-01 12:00" for n in range(600))
+    records = read(*PLAIN, *swapped, *others)
 
     assert reasons(records) == {"swapped": 3}
     assert ("Heron", "04-02 10:00", "04-03 12:00") in stay_times(records)

@@ -65,6 +65,21 @@ def test_columns_can_be_named(open_app: Callable[..., AppTest], stays_csv: bytes
     assert answer(app) == plain
 
 
+def test_days_and_times_of_day_can_be_named(open_app: Callable[..., AppTest], stays_csv: bytes) -> None:
+    """Where days and times stand in columns of their own, under any headings, the question offers a box for each."""
+    plain = answer(give_stays(open_app(), "stays.csv", stays_csv))
+    lines = stays_csv.decode().splitlines()
+    apart = "\n".join([lines[0].replace("Start,End", "K1,K2,K3,K4"), *(row.replace(" ", ",") for row in lines[1:])])
+    app = give_stays(open_app(), "stays.csv", apart.encode())
+    assert len(app.error) == 1
+    for key, heading in (("start_date", "K1"), ("start_time", "K2"), ("end_date", "K3"), ("end_time", "K4")):
+        app.selectbox(key=f"stays_column_{key}").set_value(heading)
+    next(one for one in app.button if "with these columns" in one.label).click().run()
+    assert not app.exception
+    assert not app.error
+    assert answer(app) == plain
+
+
 def test_a_saved_plan_is_opened(open_app: Callable[..., AppTest], demo_data: Path) -> None:
     """A saved plan brings back a ward's inputs, and those of a ward typed as totals."""
     app = open_app()

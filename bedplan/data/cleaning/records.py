@@ -33,7 +33,7 @@ from bedplan.data.files.misfits import with_lines
 from bedplan.data.files.reading import read_table
 from bedplan.data.files.rules import RULES
 from bedplan.data.files.source import FileLike, SourceFile, open_source
-from bedplan.data.values.choices import HELD, IntakeChoices
+from bedplan.data.values.choices import AS_THEY_STAND, EXCHANGED, HELD, ROW_BY_ROW, IntakeChoices
 from bedplan.data.values.table import TIMES, StayTable, as_stay_table
 from bedplan.errors import UnreadableRecords
 
@@ -151,7 +151,8 @@ def read_records(
 
     ``source`` is a path, bytes or an open binary file (CSV, other separated text, Excel, Parquet); ``columns`` says
     which heading means what where headings are unusual (``{"start": "Zugang"}``); ``date_order`` answers whether
-    03/04 is 3 April (``"day first"``), 4 March (``"month first"``) or changes within the file (``"row by row"``);
+    03/04 is 3 April (``"day first"``), 4 March (``"month first"``) or changes within the file (``"row by row"``), and
+    whether a spreadsheet exchanged day and month (``"as they stand"``, ``"day and month exchanged up to day 12"``);
     ``choices`` holds the other answers a file can ask for. ``progress`` is told a few times how far it is: the share
     done, 0 to 1, never falling, and a few words; whatever it raises ends the reading there, and nothing has changed.
     Nothing leaves the memory of this program; keys are replaced by random codes, identity columns are not read.
@@ -172,7 +173,8 @@ def read_records(
     text = replace(text, columns={})  # what was read is in the table now
     pa.default_memory_pool().release_unused()
     tell(0.7, "patients' ways through the wards")
-    seen = _clean(table, chosen)
+    is_asked = date_order not in (ROW_BY_ROW, AS_THEY_STAND, EXCHANGED)
+    seen = _clean(table, chosen, file.name, is_asked=is_asked)
     tell(0.9, "counting every row")
     records = _finished(table, text, file, chosen, seen)
     tell(1.0, "done")
@@ -192,8 +194,8 @@ class _Seen(NamedTuple):
     kinds: dict[str, str]
 
 
-def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
-    """Apply every rule in its order."""
+def _clean(table: StayTable, choices: IntakeChoices, name: str, *, is_asked: bool) -> _Seen:
+    """Apply every rule in its order; the file's ``name`` and ``is_asked`` are for the question about exchanged dates."""
     rows, notes = table.rows, []
     single_rows.check_dates(rows, int(time.time()) + DAY_SECONDS)
     wards = max(len(table.wards), 1)
@@ -201,7 +203,8 @@ def _clean(table: StayTable, choices: IntakeChoices) -> _Seen:
         single_rows.mend_clock_change(rows)
     notes += set_mistyped_aside(rows, wards)
     notes += set_whole_years_aside(rows, table.wards)
-    single_rows.mend_negative(rows, single_rows.longest_stays(rows, wards))
+    mended = single_rows.mend_negative(rows, single_rows.longest_stays(rows, wards))
+    notes += single_rows.note_of_swaps(rows, mended, name, is_asked=is_asked)
     longest = single_rows.longest_stays(rows, wards)
     if table.has_times and not table.knows_patients:
         sequence.drop_copies(rows, [values.codes for values in table.text.values()])

@@ -49,7 +49,9 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
     "start": words(
         "start wardstart admdttm in from wardstaystart wardstaystartdatetime startdatetime starttime wardin "
         "timein datein wardstartdatetime wardstaystartdttm arrival arrived intime transferin begin startdttm indttm "
-        "entered wardadmitted episodestart epistart episodestartdatetime zugang stationszugang zugangsdatum von"
+        "entered wardadmitted episodestart epistart episodestartdatetime zugang stationszugang zugangsdatum von "
+        "datefrom datestart dateentered dateonward datearrived dateofarrival wardindate wardentrydate wardentry entrydate "
+        "entry transferindate datumvon"
     ),
     "start_date": words(
         "startdate wardstartdate wardstaystartdate indate fromdate arrivaldate wardstaydate episodestartdate"
@@ -58,12 +60,14 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
     "end": words(
         "end wardend dischdttm out to wardstayend wardstayenddatetime enddatetime endtime wardout timeout "
         "dateout wardenddatetime wardstayenddttm departure departed outtime transferout finish enddttm outdttm left "
-        "episodeend epiend episodeenddatetime abgang stationsabgang abgangsdatum bis"
+        "episodeend epiend episodeenddatetime abgang stationsabgang abgangsdatum bis "
+        "dateto dateend dateleft dateoffward datedeparted dateofdeparture wardoutdate wardexitdate wardexit exitdate exit "
+        "transferoutdate datumbis"
     ),
     "end_date": words("enddate wardenddate wardstayenddate outdate todate departuredate episodeenddate"),
     "end_time": words("wardendtime wardstayendtime timeend totime departuretime episodeendtime"),
     "admitted": words(
-        "admitted admdate admissiondate admission admissiondatetime dateofadmission admissiondttm "
+        "admitted admdate admissiondate admission admissiondatetime dateofadmission admissiondttm dateadmitted admitdate "
         "aufnahme aufnahmedatum aufnahmezeitpunkt entree dateentree datedentree ingreso fechaingreso fechadeingreso "
         "ricovero dataricovero datadiricovero dataingresso opname opnamedatum inskriven inskrivningsdatum indlagt "
         "innlagt indlaeggelsesdato dataprzyjecia admissao dataadmissao datadeadmissao"
@@ -73,7 +77,7 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
         "horaingreso horadeingreso oraricovero opnametijd"
     ),
     "discharged": words(
-        "discharged disdate dischargedate discharge dischargedatetime dateofdischarge dischargedttm "
+        "discharged disdate dischargedate discharge dischargedatetime dateofdischarge dischargedttm datedischarged dischdate "
         "entlassung entlassungsdatum entlassdatum entlassungszeitpunkt sortie datesortie datedesortie alta fechaalta "
         "fechadealta dataalta datadealta dimissione datadimissione datadidimissione ontslag ontslagdatum utskriven "
         "utskrivningsdatum udskrevet utskrevet udskrivningsdato datawypisu"
@@ -100,6 +104,12 @@ STAY_HEADINGS: dict[str, tuple[str, ...]] = {
     "planned_stay": words("plannedlos intendedlos plannedstay"),
     "intended_management": words("intendedmgmt intman intendedmanagement"),
 }
+
+# How headings name the day and the time of day of one moment: "Date in" and "Time in", "Datum von" and "Zeit von".
+DAY_AND_CLOCK = (
+    *(("date", "time"), ("day", "time"), ("date", "heure"), ("date", "clock"), ("datum", "uhrzeit"), ("datum", "zeit")),
+    *(("datum", "tijd"), ("datum", "tid"), ("dato", "tid"), ("fecha", "hora"), ("data", "hora"), ("data", "ora")),
+)
 
 # What a file is -> headings that no other kind of file has.
 TELLTALES: dict[str, tuple[str, ...]] = {
@@ -175,7 +185,23 @@ def match_headings(
             place = min(ranked)[1]
             found[name] = written[place]
             del free[place]
+    for name in ("start", "end", "admitted", "discharged"):
+        if name in found and f"{name}_time" in known and not {name, f"{name}_date", f"{name}_time"} & set(chosen):
+            _part(name, found, [written[place] for place in free], known)
     return found
+
+
+def _part(name: str, found: dict[str, str], free: list[str], known: Mapping[str, Iterable[str]]) -> None:
+    """Take "Date in" and "Time in" for the day and the time of day of one moment, where both are there."""
+    whole, day_key, clock_key = found[name], f"{name}_date" if f"{name}_date" in known else name, f"{name}_time"
+    headings = {plain(one): one for one in (*free, found.get(day_key, ""), found.get(clock_key, ""))}
+    for day, clock in DAY_AND_CLOCK:
+        twins = [headings.get(plain(whole).replace(*both), "") for both in ((clock, day), (day, clock))]
+        pair = (twins[0], whole) if twins[0] != whole and twins[0] else (whole, twins[1])
+        if all(pair) and pair[0] != pair[1]:
+            del found[name]
+            found |= {day_key: pair[0], clock_key: pair[1]}
+            return
 
 
 def _refuse_twice(chosen: Mapping[str, str]) -> None:

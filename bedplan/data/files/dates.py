@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -70,14 +70,19 @@ SERIAL = r"^(?P<serial>[2-6]\d{4}(?:[.,]\d+)?)$"
 
 @dataclass(frozen=True, slots=True)
 class TimesRead:
-    """One column of times: ``seconds`` (n,) with MISSING and UNREADABLE marked, and how they were written."""
+    """One column of times: ``seconds`` (n,) with MISSING and UNREADABLE marked, and how they were written.
+
+    Marked by row: ``serial``, a spreadsheet's day number; ``offset``, from world time; ``by_numbers``, two small numbers
+    and a year. How many of those one order of day and month alone allows, and both do.
+    """
 
     seconds: NDArray[np.int64]
     serial: NDArray[np.bool_]
-    had_offset: bool
-    day_first_only: int
-    month_first_only: int
-    either_order: int
+    offset: NDArray[np.bool_]
+    by_numbers: NDArray[np.bool_]
+    day_first_only: int = 0
+    month_first_only: int = 0
+    either_order: int = 0
 
 
 def seconds_of(
@@ -105,11 +110,12 @@ def read_times(
     """
     chunks = _with_century(column.chunks if isinstance(column, pa.ChunkedArray) else [column])
     parts = each(lambda chunk: _fast_iso(chunk) or _slow(chunk, date_order, time_zone), chunks)
-    none = np.zeros(0, dtype=np.int64)
+    none, nowhere = np.zeros(0, dtype=np.int64), np.zeros(0, dtype=bool)
     return TimesRead(
         np.concatenate([none, *(part.seconds for part in parts)]),
-        np.concatenate([none.astype(bool), *(part.serial for part in parts)]),
-        any(part.had_offset for part in parts),
+        np.concatenate([nowhere, *(part.serial for part in parts)]),
+        np.concatenate([nowhere, *(part.offset for part in parts)]),
+        np.concatenate([nowhere, *(part.by_numbers for part in parts)]),
         sum(part.day_first_only for part in parts),
         sum(part.month_first_only for part in parts),
         sum(part.either_order for part in parts),
@@ -140,7 +146,7 @@ def _fast_iso(part: pa.Array) -> TimesRead | None:
     seconds = pc.cast(stamps, pa.int64()).fill_null(0).to_numpy(zero_copy_only=False)
     if stamps.null_count:
         seconds = np.where(stamps.is_null().to_numpy(zero_copy_only=False), MISSING, seconds)
-    return TimesRead(seconds, np.zeros(seconds.size, dtype=bool), False, 0, 0, 0)
+    return TimesRead(seconds, *np.zeros((3, seconds.size), dtype=bool))
 
 
 def _plain_iso(text: pa.Array, seconds: NDArray[np.int64]) -> NDArray[np.bool_]:
@@ -164,7 +170,7 @@ def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> Ti
     seconds[blank] = MISSING
     left = ~blank
     left[_plain_iso(text, seconds)] = False
-    had_offset, serial, counts = False, np.zeros(size, bool), (0, 0, 0)
+    (serial, offset, by_numbers), counts = np.zeros((3, size), bool), (0, 0, 0)
     for pattern in (ISO, DIGITS, SERIAL, NUMBERS, NAMED, NAME_FIRST):
         rows = np.flatnonzero(left)
         if not rows.size:
@@ -180,15 +186,15 @@ def _slow(column: pa.Array, date_order: str | None, time_zone: str | None) -> Ti
             continue
         if pattern is NUMBERS:
             seconds[rows], counts = _from_numbers(parts, date_order)
+            by_numbers[rows] = True
         else:
             seconds[rows] = _from_names(parts) if pattern in (NAMED, NAME_FIRST) else _from_iso(parts)
-        offset = pc.not_equal(parts.field("offset"), "").to_numpy(zero_copy_only=False)
-        if offset.any():
-            had_offset = True
-            if time_zone:
-                moved = rows[offset]
-                seconds[moved] = _at_home(seconds[moved], parts.field("offset").filter(pa.array(offset)), time_zone)
-    unread = TimesRead(seconds, serial, had_offset, *counts)
+        has = pc.not_equal(parts.field("offset"), "").to_numpy(zero_copy_only=False)
+        moved = rows[has]
+        offset[moved] = True
+        if time_zone and moved.size:
+            seconds[moved] = _at_home(seconds[moved], parts.field("offset").filter(pa.array(has)), time_zone)
+    unread = TimesRead(seconds, serial, offset, by_numbers, *counts)
     return _read_again(unread, text, np.flatnonzero(left), date_order, time_zone)
 
 
@@ -204,14 +210,14 @@ def _read_again(
     if not changed.any():
         return read
     again = _slow(tidy.filter(pa.array(changed)), date_order, time_zone)
-    read.seconds[left[changed]], read.serial[left[changed]] = again.seconds, again.serial
-    return TimesRead(
-        read.seconds,
-        read.serial,
-        read.had_offset or again.had_offset,
-        read.day_first_only + again.day_first_only,
-        read.month_first_only + again.month_first_only,
-        read.either_order + again.either_order,
+    rows = left[changed]
+    read.seconds[rows], read.serial[rows] = again.seconds, again.serial
+    read.offset[rows], read.by_numbers[rows] = again.offset, again.by_numbers
+    return replace(
+        read,
+        day_first_only=read.day_first_only + again.day_first_only,
+        month_first_only=read.month_first_only + again.month_first_only,
+        either_order=read.either_order + again.either_order,
     )
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass, field, replace
 from types import MappingProxyType
 from typing import TYPE_CHECKING
@@ -18,6 +19,13 @@ if TYPE_CHECKING:
 
 WARDS_NAMED = 12
 MATCHED = ("ward", "start", "end", "patient_key", "spell_key", "class", "method", "specialty", "ready", "destination")
+APART = (
+    "start_date",
+    "start_time",
+    "end_date",
+    "end_time",
+)  # asked for after the ward where a column holds times of day
+CLOCK = re.compile(r"\d{1,2}[:.]\d{2}([:.]\d{2})?( ?[ap]\.?m\.?)?|([01]\d|2[0-3])[0-5]\d", re.IGNORECASE | re.ASCII)
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,8 +88,17 @@ def _looked_at(top: SourceFile, kind: str, columns: Mapping[str, str] | None) ->
         samples = {key: sample(key, table.strings(key)) for key in table.headings}
         headings, others = (*table.headings.values(), *table.unused), _others(top, table.unused)
         seen = ColumnPreview(headings, MappingProxyType(dict(table.headings)), samples, asked, others)
+    if kind == "ward stays" and _may_be_apart(seen):
+        seen = replace(seen, asked=(*MATCHED[:1], *APART, *MATCHED[1:]))
     judged = _judged(seen, top.name, kind, is_said=bool(columns))
     return _as_census(judged, top, columns) if kind == "census" and judged.lacking and not judged.mistaken else judged
+
+
+def _may_be_apart(seen: ColumnPreview) -> bool:
+    """May the file have days and times of day in columns of their own? One is matched so, or holds clocks alone."""
+    shown = [*seen.samples.values(), *seen.others.values()]
+    clocks = any(any(cells) and all(CLOCK.fullmatch(cell) for cell in cells if cell) for cells in shown)
+    return clocks or any(key in seen.matched for key in APART)
 
 
 def _others(top: SourceFile, headings: tuple[str, ...]) -> dict[str, tuple[str, ...]]:

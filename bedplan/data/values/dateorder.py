@@ -13,8 +13,9 @@ import pyarrow.compute as pc
 
 from bedplan.data.files.columns import plain
 from bedplan.data.files.dates import DAY_SECONDS, EPOCHS_APART_DAYS, UNREADABLE, TimesRead, read_times
-from bedplan.data.values.choices import DATE_ORDERS, DateQuestion, check_date_order
+from bedplan.data.values.choices import AS_THEY_STAND, DATE_ORDERS, EXCHANGED, DateQuestion, check_date_order
 from bedplan.data.values.clocks import DAY_MINUTES, clocks_of, minutes_of
+from bedplan.data.values.exchanged import ask_about_cells, put_right
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -41,11 +42,36 @@ def start_and_end(
     columns, notes = _columns(text)
     row_by_row = date_order == ROW_BY_ROW
     read = _row_by_row(name, columns) if row_by_row else _read_all(name, columns, date_order, time_zone)
-    if any(times.had_offset for times in read.values()):
-        done = f"brought to the clock of {time_zone}" if time_zone else "the clock shown was kept"
-        notes.append(f"Times carried an offset from world time; {done}.")
     start, end, moved = _one_epoch(read["start"], read["end"])
-    return start, end, notes + moved
+    return start, end, [*notes, *moved, *_how_written(read, date_order, time_zone)]
+
+
+def _how_written(read: Mapping[str, TimesRead], date_order: str | None, time_zone: str | None) -> list[str]:
+    """Say how times were read that could have been read otherwise, and in how many rows they stand."""
+    told = []
+    by_numbers, offset = (
+        int(np.count_nonzero(np.logical_or.reduce([getattr(times, kind) for times in read.values()])))
+        for kind in ("by_numbers", "offset")
+    )
+    if by_numbers:
+        shown = {
+            DAY_FIRST: sum(times.day_first_only for times in read.values()),
+            MONTH_FIRST: sum(times.month_first_only for times in read.values()),
+        }
+        order = date_order if date_order in DATE_ORDERS else max(shown, key=shown.get)
+        why = "as you said" if date_order == order else f"because {shown[order]:,} dates can be read no other way"
+        told.append(f"Dates such as 03/04/2024 were read {order} in {_rows(by_numbers)}, {why}.")
+    if offset:
+        done = f"brought to the clock of {time_zone}" if time_zone else "the clock shown was kept"
+        told.append(f"Times carried an offset from world time in {_rows(offset)}; {done}.")
+    if date_order == EXCHANGED:
+        told.append("Day and month were exchanged in dates up to day 12, as you said.")
+    return told
+
+
+def _rows(count: int) -> str:
+    """Return how many rows."""
+    return "1 row" if count == 1 else f"{count:,} rows"
 
 
 def read_ordered(name: str, date_order: str | None, *columns: pa.ChunkedArray) -> list[NDArray[np.int64]]:
@@ -81,9 +107,11 @@ def _read_all(
     if date_order is None and ((day_only and month_only) or (unsure and not day_only and not month_only)):
         unsure_first = columns if are_stays else {"start": columns[max(read, key=lambda key: read[key].either_order)]}
         raise _question(name, unsure_first)
-    if date_order is None and month_only:
-        return {key: read_times(column, MONTH_FIRST, time_zone) for key, column in columns.items()}
-    return read
+    if date_order not in DATE_ORDERS and month_only > day_only:
+        read = {key: read_times(column, MONTH_FIRST, time_zone) for key, column in columns.items()}
+    if date_order not in (AS_THEY_STAND, EXCHANGED) and not (day_only and month_only):
+        ask_about_cells(name, columns, read, are_stays=are_stays)
+    return put_right(columns, read) if date_order == EXCHANGED else read
 
 
 def _columns(text: TextTable) -> tuple[dict[str, pa.ChunkedArray], list[str]]:

@@ -12,7 +12,7 @@ import pandas as pd
 import pytest
 from openpyxl.utils.datetime import CALENDAR_MAC_1904
 
-from bedplan.data import read_records
+from bedplan.data import IntakeChoices, read_records
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -120,6 +120,40 @@ def test_parquet_gives_the_same_stays(unit: str) -> None:
     records = read_records(packed.getvalue())
 
     pd.testing.assert_frame_equal(records.stays.drop(columns="patient_key"), PLAIN)
+
+
+def with_zone(zone: str, form: str) -> tuple[bytes, bytes]:
+    """Return stays through a year, once as Parquet with a time zone, once as CSV with the offset written; one is still in."""
+    starts = pd.date_range("2024-01-01 09:30", periods=400, freq="22h", tz=zone)
+    frame = pd.DataFrame({"patient_key": [f"p{row}" for row in range(400)], "ward": "Teal", "start": starts})
+    frame["end"] = (frame["start"] + pd.Timedelta(hours=51)).where(frame.index != 399)
+    packed = io.BytesIO()
+    frame.to_parquet(packed)
+    for name in ("start", "end"):
+        shown = frame[name].map(lambda moment: "" if pd.isna(moment) else f"{moment:{form}}")
+        frame[name] = shown.str.replace(r"(\d\d)$", r":\1", regex=True) if form.endswith("%z") else shown
+    return packed.getvalue(), frame.to_csv(index=False).encode()
+
+
+@pytest.mark.parametrize(
+    ("zone", "form"),
+    [("UTC", "%Y-%m-%dT%H:%M:%S%z"), ("UTC", "%Y-%m-%d %H:%MZ"), ("Europe/Berlin", "%Y-%m-%dT%H:%M:%S%z")],
+)
+@pytest.mark.parametrize("home", [None, "Europe/London"])
+def test_times_with_a_zone_read_alike_in_parquet_and_csv(zone: str, form: str, home: str | None) -> None:
+    """The same stays and the same sentence, brought to the hospital's clock where that is said (pandas' zones, independent)."""
+    packed, text = with_zone(zone, form)
+    choices = IntakeChoices(time_zone=home)
+    parquet, csv = (read_records(content, name="stays", choices=choices) for content in (packed, text))
+    wanted = (
+        pd.date_range("2024-01-01 09:30", periods=400, freq="22h", tz=zone).tz_convert(home or zone).tz_localize(None)
+    )
+    told = [[note for note in one.report.notes if "offset" in note] for one in (parquet, csv)]
+
+    assert list(parquet.stays["start"]) == list(wanted)
+    pd.testing.assert_frame_equal(*(one.stays.drop(columns="patient_key") for one in (parquet, csv)))
+    assert told[0] == told[1]
+    assert "in 400 rows" in told[0][0]
 
 
 @pytest.mark.parametrize("last", ["2024-01-05 10:00", "5 Jan 2024 10:00", '"2024-01-05 10:00"'])
