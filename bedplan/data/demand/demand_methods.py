@@ -174,15 +174,24 @@ def by_open_time(evidence: Evidence) -> DemandMethod:
 
 
 def _open_time(evidence: Evidence, opening: OpenTime) -> DemandMethod:
-    """Return what free hours tell."""
-    others = evidence.moved_in_per_day + evidence.elsewhere_per_day
-    added = f"; {others:.2f} a day who came from other wards of the hospital are added" if others else ""
-    reason = (
-        f"{evidence.own.ward} was full {percent(opening.share_full)} of the time. While a bed was free, "
-        f"{opening.per_day:.2f} patients a day came from outside{added}."
+    """Return what free hours tell; where patients come together, hours with room for all of them, if there are enough."""
+    others, room, at_a_time = (
+        evidence.moved_in_per_day + evidence.elsewhere_per_day,
+        evidence.with_room,
+        evidence.together,
     )
-    variance = evidence.swing * opening.error**2 + evidence.by_chance(others)
-    return evidence.found(OPEN_TIME, reason, max(opening.per_day - evidence.direct_per_day, 0.0), variance)
+    added = f"; {others:.2f} a day who came from other wards of the hospital are added" if others else ""
+    told, free, less = opening, "a bed was free", ""
+    if at_a_time > 1 and room.can_tell:
+        told, free = room, f"{at_a_time} beds were free"
+    elif at_a_time > 1:
+        less = " Patients come together and there was seldom room for all of them, so this is too low."
+    reason = (
+        f"{evidence.own.ward} was full {percent(opening.share_full)} of the time. While {free}, "
+        f"{told.per_day:.2f} patients a day came from outside{added}.{less}"
+    )
+    variance = evidence.swing * told.error**2 + evidence.by_chance(others)
+    return evidence.found(OPEN_TIME, reason, max(told.per_day - evidence.direct_per_day, 0.0), variance)
 
 
 def by_carried_load(evidence: Evidence) -> DemandMethod:
@@ -205,13 +214,17 @@ def _carried_load(evidence: Evidence) -> DemandMethod:
     chance = evidence.by_chance(evidence.had_a_bed_per_day + not_given)
     in_use_error = evidence.mean_stay_days * (chance * (1 + evidence.variation**2)) ** 0.5
     by_use = evidence.direct_per_day / in_use * (1.0 / slope - load / in_use) * in_use_error
-    told, misfit = f"{told}, as if {load:.1f} were wanted.", 0.0
-    if evidence.direct is not None:
-        full, expected = min(evidence.direct.share_full, 0.99), 1 - in_use / load
-        misfit = evidence.direct_per_day * full / (1.0 - full) - not_given
-        told += f" The ward was then full {percent(expected)} of the time by the formula; it was {percent(full)}."
-        told += " It misses demand, and the range allows for that." if full > expected + NOTABLE else ""
-    else:
+    full, expected = min(evidence.share_full, 0.99), 1 - in_use / load
+    misfit = evidence.direct_per_day * full / (1.0 - full) - not_given
+    told = (
+        f"{told}, as if {load:.1f} were wanted. The ward was then full {percent(expected)} of the time by the formula; it "
+        f"was {percent(full)}."
+    )
+    told += " It misses demand, and the range allows for that." if full > expected + NOTABLE else ""
+    if evidence.with_room is not None and evidence.with_room.can_tell:
+        # Those who come find it full more often than it is by the clock: in busy hours, and just behind one another.
+        misfit = max(misfit, evidence.with_room.per_day - evidence.direct_per_day - not_given, key=abs)
+    if evidence.minutes is None:
         told += " Without times of day it can't be seen whether patients queue; where they do, this is too high."
     return evidence.found(CARRIED, told, not_given, chance + by_use**2 + misfit**2)
 

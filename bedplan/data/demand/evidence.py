@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -21,8 +21,10 @@ if TYPE_CHECKING:
     import pandas as pd
     from numpy.typing import NDArray
 
+    from bedplan.data.ahead.rhythm import Swing
     from bedplan.data.beside.capacity import Capacity
 
+PARTED = 0.3  # so much less than it is may the swing of groups look, where a full ward parts them; no source
 NINETY = 1.6449  # standard errors either side that hold 90 of 100 chances
 
 Range = tuple[float, float]
@@ -80,7 +82,17 @@ class Evidence:
     @cached_property
     def swing(self) -> float:
         """How far do the ward's monthly admissions swing, variance ÷ mean? At least 1, what chance alone gives."""
-        return max(arrivals_of(self.own.records, self.own.here["start"]).swing.dispersion, 1.0)
+        return max(self._arrivals.dispersion, 1.0)
+
+    @cached_property
+    def _arrivals(self) -> Swing:
+        """Return how admissions of its own patients swing."""
+        return arrivals_of(self.own.records, self.own.here["start"]).swing
+
+    @property
+    def together(self) -> int:
+        """How many of its patients come at a time? 1 where chance alone brings some together."""
+        return max(round(self._arrivals.clear_clustering + PARTED), 1)
 
     @cached_property
     def variation(self) -> float:
@@ -138,6 +150,21 @@ class Evidence:
     def direct(self) -> OpenTime | None:
         """What do the ward's free hours tell of patients from outside?"""
         return self.minutes and watch_open_time(self.minutes, self.own.here[~self.own.moved_in])
+
+    @property
+    def share_full(self) -> float:
+        """Which share of the time was the ward full? Of midnights, where no times of day are known."""
+        if self.direct is not None:
+            return self.direct.share_full
+        records = self.own.records
+        return float((present(records, self.on_ward, DAY_SECONDS)[records.counted_days] >= self.beds).mean())
+
+    @cached_property
+    def with_room(self) -> OpenTime | None:
+        """What tell the hours with room for all who come at a time? Where only one has a bed, the others are not seen."""
+        if self.minutes is None or self.together == 1:
+            return self.direct
+        return replace(self, fewer_beds=self._fewer + np.full(self._stated.size, self.together - 1)).direct
 
     @cached_property
     def rush(self) -> float | None:
