@@ -52,6 +52,7 @@ OVER_FULL = ("hours over-full", "hours over-full", "Hours with more patients tha
 WHEN_WARD_IS_FULL = {"leaves": "go elsewhere", "waits": "wait, or are placed elsewhere"}
 
 NOT_YET_CHECKED = "Not yet checked against last year."
+NO_DAYS_TO_CHECK = "Cannot be checked on last year: only averages are known, not its days."
 
 BEDS_UNKNOWN = (
     "Today's staffed beds are not in the records: until they are typed, the beds wanted on average stand for them."
@@ -80,6 +81,7 @@ COLUMNS = {  # of files, where our name for one doesn't say enough
     "closed": "Closed beds",
     "placed": "Time the bed was given",
     "wait_hours": "Wait in hours",
+    "wait_minutes": "Wait in minutes",
     "available_beds": "Beds available on average, not bed-days",
     "occupied_beds": "Beds occupied on average, not bed-days",
 }

@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 
 VEGA_LITE = "6.1"
 PAGE_WIDTH = 640  # of a drawing that takes the whole page
+WHOLE = ' class="whole"'  # short: all on one page
 WIDE = ' class="wide"'  # the first column holds words, not figures
 _STYLE = """
 @page { size: A4; margin: 16mm 15mm 18mm; @bottom-right { content: "Page " counter(page) " of " counter(pages); font-size: 9pt }
@@ -31,7 +32,7 @@ h1 { font-size: 20pt; margin: 0 0 2mm } h2 { font-size: 14pt; margin: 8mm 0 2mm;
 table { border-collapse: collapse; width: 100%; font-variant-numeric: tabular-nums; font-size: 9.5pt; margin: 2mm 0 }
 th, td { text-align: left; padding: 1.2mm 2mm; border-bottom: .5pt solid #b8bec4; vertical-align: top; overflow-wrap: break-word }
 td:first-child, th:first-child { min-width: 24mm } .wide td:first-child { min-width: 42mm } .wide td { overflow-wrap: anywhere }
-thead { display: table-header-group } tr { break-inside: avoid } figure { margin: 3mm 0; break-inside: avoid }
+.whole { break-inside: avoid } thead { display: table-header-group } tr { break-inside: avoid } figure { margin: 3mm 0; break-inside: avoid }
 figure svg { width: 100%; height: auto } figcaption { font-size: 9.5pt }
 .side { display: flex; gap: 6mm; align-items: flex-start; break-inside: avoid } .side figure { flex: 0 0 80mm }
 """
@@ -76,13 +77,13 @@ def _ward(case: WardCase, number: int) -> str:
         f'<p class="answer">{html.escape(case.sentence())}</p>',
         f"<figure>{curve}<figcaption>{caption}</figcaption></figure>",
         f'<p class="lead">{case.words[2]}:</p>',
-        _table(tuple(table[0]), [tuple(row.values()) for row in table]),
+        _table(tuple(table[0]), [tuple(row.values()) for row in table], WHOLE),
         f"<figure>{months}<figcaption>{case.words[2]}, as a share, month by month.</figcaption></figure>",
         "<h3>Every bed count near the decision</h3>",
         _curve_table(case),
         "<h3>What this rests on</h3>",
         _table(("Assumption", "Value", "From"), case.assumptions, WIDE),
-        _table(("Changed by the planner", "Value"), case.settings),
+        _table(("Set by the planner", "Value"), case.settings, WHOLE),
         _list(case.notes()),
         *_check(case, number),
     ]

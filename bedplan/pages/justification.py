@@ -5,6 +5,7 @@ from __future__ import annotations
 import datetime as dt
 import re
 import textwrap
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import streamlit as st
@@ -24,9 +25,11 @@ def in_groups(value: str) -> str:
 
 
 def checked(case: WardCase) -> WardCase:
-    """Return a case with the check on its last year; a ward typed by the planner has no records to check it on."""
+    """Return a case with the check on its last year; a ward known by totals only has no records to check it on."""
     name = case.ward.name
-    return case if name in st.session_state.get("typed", {}) else with_check(case, lambda: loaded.checked(name))
+    if name in st.session_state.get("typed", {}):
+        return replace(case, checked=wording.NO_DAYS_TO_CHECK)
+    return with_check(case, lambda: loaded.checked(name))
 
 
 def show_decisions(paper: Justification) -> None:

@@ -52,6 +52,7 @@ def test_ten_thousand_admissions(open_app: Callable[..., AppTest]) -> None:
     assert not app.exception
     assert not app.error
     assert any("otals typed by the planner" in str(table.value) for table in app.table)
+    assert any("Cannot be checked on last year" in one.value for one in app.markdown)
 
 
 def test_two_points_of_the_stay(open_app: Callable[..., AppTest]) -> None:
