@@ -15,7 +15,6 @@ from bedplan.data import (
     estimate_demand,
     hidden_demand,
     read_capacity,
-    read_monthly_return,
     read_ready_dates,
     read_records,
 )
@@ -29,13 +28,10 @@ from bedplan.plan import (
     FileAnswers,
     SavedPlan,
     as_json,
-    as_totals,
     changed_demand,
     changed_stay,
     from_estimate,
     from_json,
-    from_return,
-    from_saved_totals,
     from_totals,
     peaked,
     planned_ward,
@@ -124,6 +120,7 @@ def test_a_saved_plan_comes_back_as_it_was() -> None:
                 "mean_days": 5.0,
                 "variation": 1.0,
                 "beds": 24.0,
+                "rate_variation": 0.04,
                 "month_factors": [1.0] * 12,
                 "origin": "typed",
                 "beds_known": False,
@@ -287,43 +284,6 @@ def test_a_later_format_is_named() -> None:
     """A plan of a later version says which format it has."""
     with pytest.raises(UnreadableRecords, match="format 99"):
         from_json('{"plan": 99, "records": "", "settings": {}, "typed": {}, "answers": {}}')
-
-
-def test_a_monthly_return_makes_a_ward(demo_data: Path) -> None:
-    """A ward has the load, beds and discharges of its return's last year, and says how it grew and what is assumed."""
-    returned = read_monthly_return(demo_data / "monthly_return.csv")
-    ward = from_return(returned, "Merlin")
-    rows = returned.table[(returned.table["ward"] == "Merlin") & (returned.table["month"] >= "2024-04")]
-
-    assert ward.beds == round(rows["available"].sum() / rows["days"].sum())
-    assert ward.admissions_per_year == pytest.approx(rows["discharges"].sum() / rows["days"].sum() * 365)
-    assert ward.demand.offered_load == pytest.approx(rows["occupied"].sum() / rows["days"].sum(), rel=0.02)
-    assert any("averages only" in note for note in ward.notes)
-    assert any("last 12 months" in note and "bed-days change by" in note for note in ward.notes)
-    assert ward.growth_per_year == pytest.approx(returned.level("Merlin").bed_days_growth.per_year)
-
-
-def test_a_season_survives_a_saved_plan(demo_data: Path) -> None:
-    """A ward from a monthly return comes back from a plan file with its months, beds and origin."""
-    ward = from_return(read_monthly_return(demo_data / "monthly_return.csv"), "Kestrel")
-    saved = SavedPlan("", {}, {"Kestrel": as_totals(ward)})
-    again = from_saved_totals("Kestrel", from_json(as_json(saved)).typed["Kestrel"])
-
-    assert again.demand.month_factors == pytest.approx(ward.demand.month_factors)
-    assert (again.beds, again.origin) == (ward.beds, ward.origin)
-    assert again.demand.offered_load == pytest.approx(ward.demand.offered_load)
-
-
-def test_a_return_without_beds_does_not_claim_any() -> None:
-    """Beds that the return doesn't name start at the load, rounded up, and are said to be unknown, in a saved plan too."""
-    rows = b"month,ward,occupied bed days,discharges\n2024-01,North,325,50\n"  # 10.48 beds in use
-    ward = from_return(read_monthly_return(rows), "North")
-    saved = from_json(as_json(SavedPlan("", {}, {"North": as_totals(ward)})))
-    again = from_saved_totals("North", saved.typed["North"])
-
-    assert ward.beds == again.beds == 11
-    assert wording.BEDS_UNKNOWN in ward.notes
-    assert wording.BEDS_UNKNOWN in again.notes
 
 
 def test_more_beds_than_a_ward_has_is_a_sentence() -> None:

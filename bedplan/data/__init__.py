@@ -5,6 +5,7 @@ from bedplan.data.ahead.forecasting import Forecast, forecast_arrivals
 from bedplan.data.ahead.past_years import PastYear, past_years
 from bedplan.data.beside.capacity import Capacity, read_capacity
 from bedplan.data.beside.census import Census, read_census
+from bedplan.data.beside.census_alone import return_of_census, swing_beyond_chance
 from bedplan.data.beside.logs import EventLog, read_bed_requests, read_cancellations, read_refusals
 from bedplan.data.beside.returns import MonthlyReturn, read_monthly_return
 from bedplan.data.beside.waits import BedWaits, waits_for_a_bed
@@ -70,7 +71,9 @@ __all__ = [
     "read_ready_dates",
     "read_records",
     "read_refusals",
+    "return_of_census",
     "stay_families",
+    "swing_beyond_chance",
     "waits_for_a_bed",
     "what_repairs_change",
 ]

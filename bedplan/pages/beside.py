@@ -14,20 +14,18 @@ from bedplan.data import (
     read_cancellations,
     read_capacity,
     read_census,
-    read_monthly_return,
     read_ready_dates,
     read_refusals,
 )
 from bedplan.errors import BedplanError, UnreadableRecords
-from bedplan.pages import controls, intake, loaded, said, typed
-from bedplan.plan import FileAnswers, as_totals, from_return
+from bedplan.pages import averages, controls, intake, loaded, said
 
 if TYPE_CHECKING:
     from collections.abc import Callable
 
     from bedplan.data import DateQuestion
     from bedplan.pages.intake import Given
-    from bedplan.plan import Baseline
+    from bedplan.plan import FileAnswers
 
     Take = Callable[[Given], list[str]]  # a file -> what to tell
     Ask = Callable[[FileAnswers, bool], FileAnswers]  # what was said, and whether the input starts anew -> what is said
@@ -156,17 +154,18 @@ def load_more() -> None:
         "refusals": ("Patients not given a bed: time, ward, reason", read_refusals),
         "bed_requests": ("Bed requests, all of them: time, ward, time the bed was given", read_bed_requests),
         "cancellations": ("Cancelled booked patients: planned date, ward, reason", read_cancellations),
-        "census": ("Census: date, time, ward, patients", read_census),
     }
     with st.expander("More files"):
         for kind, (label, reader) in kinds.items():
             offer(kind, label, functools.partial(take_beside, reader), disabled=loaded.is_demo())
             ask_reasons(kind)
+        offer("census", "Census: date, time, ward, patients", take_census)
+        averages.plan_by_census()
         offer("ready", "Ready to leave: stay or patient key, date", take_ready, disabled=loaded.is_demo())
         label = (
             "Monthly return, where there is nothing better: month, ward, available and occupied bed-days, discharges"
         )
-        offer("monthly_return", label, take_return, ask=ask_months)
+        offer("monthly_return", label, averages.take_return, ask=ask_months)
     for sentence in loaded.without_stays():
         st.caption(wording.plain(sentence))
 
@@ -177,6 +176,15 @@ def take_beside(reader: Callable[..., Any], given: Given) -> list[str]:
     loaded.use_file(given.content, given.kind, found)
     if given.answers.no_bed_reasons is not None:
         loaded.use_reasons(given.kind, given.answers.no_bed_reasons)
+    return [*found.report.sentences, *found.report.notes, *found.cannot]
+
+
+def take_census(given: Given) -> list[str]:
+    """Add a census beside the planner's records; without any, its wards can be planned by it alone."""
+    if not loaded.is_demo():
+        return take_beside(read_census, given)
+    found = read_census(given.content, name=given.name, **given.answers.to_read())
+    st.session_state["census_alone"] = found
     return [*found.report.sentences, *found.report.notes, *found.cannot]
 
 
@@ -221,44 +229,3 @@ def ask_months(answers: FileAnswers, is_fresh: bool) -> FileAnswers:
         key="months_a_row",
     )
     return replace(answers, months_a_row=chosen)
-
-
-def take_return(given: Given) -> list[str]:
-    """Make a ward to plan of each ward in a monthly return that the planner's records don't hold."""
-    answers = given.answers
-    returned = read_monthly_return(
-        given.content, name=given.name, months_a_row=answers.months_a_row, **answers.to_read()
-    )
-    if not loaded.is_demo():
-        loaded.use_file(given.content, "monthly_return", returned)
-        returned = loaded.files().monthly_return
-    made, told = [], [*returned.report.sentences, *returned.report.notes]
-    how_read = tuple((what, value, given.name) for what, value in answers.rows("Monthly return"))
-    known = () if loaded.is_demo() else set(returned.wards) - set(returned.unknown_wards)
-    for ward in sorted(set(returned.wards) - set(known)):
-        try:
-            base = from_return(returned, ward)
-            made.append(replace(base, facts=(*base.facts, *how_read)))
-        except BedplanError as error:
-            told.append(f"{ward}: {error}")
-    use_made(said.mark_of(given.content), made)
-    if known:
-        told.append("Wards that have ward stays were left as they are: stays say more than a return.")
-    ready = "1 ward is" if len(made) == 1 else f"{len(made)} wards are"
-    return [f"{ready} ready on the page One ward, from averages only.", *told]
-
-
-def use_made(mark: str, made: list[Baseline]) -> None:
-    """Plan these wards of a return; those that the same file made when it was read another way are taken off."""
-    before, wards = st.session_state.get("made_of_return", ("", ()))
-    here = st.session_state.get("typed", {})
-    for ward in wards if before == mark else ():
-        if here.get(ward.name) == ward and ward.name not in {one.name for one in made}:
-            typed.remove_totals(ward.name)
-    for ward in made:
-        known = here.get(ward.name)
-        if known is None or as_totals(known) != as_totals(ward):
-            typed.use_totals(ward)
-        else:  # one that was here already, or in a plan, keeps its settings
-            st.session_state["typed"] |= {ward.name: ward}
-    st.session_state["made_of_return"] = (mark, tuple(made))

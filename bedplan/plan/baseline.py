@@ -7,14 +7,17 @@ from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from bedplan import wording
+from bedplan.data import return_of_census, swing_beyond_chance
 from bedplan.decision import Ward
 from bedplan.decision.ward import MOST_WARD_BEDS
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay
 
 if TYPE_CHECKING:
-    from bedplan.data import DemandEstimate, HiddenDemand, MonthlyReturn
+    from bedplan.data import Census, DemandEstimate, HiddenDemand, MonthlyReturn
     from bedplan.decision.ward import WhenWardIsFull
+
+TYPED = "typed by the planner"
 
 
 @dataclass(frozen=True, slots=True)
@@ -222,6 +225,35 @@ def from_return(returned: MonthlyReturn, ward: str) -> Baseline:
     )
 
 
+def from_census(census: Census, ward: str, mean_stay_days: float) -> Baseline:
+    """What does a census say of a ward without ward stays, if patients stay so long? Its level, months and swing.
+
+    All of the swing beyond chance is taken for drift of demand.
+
+    Raises:
+        ImpossibleFigure: a mean stay of 0 or less, or nobody counted.
+        UnreadableRecords: a ward that the census doesn't count.
+
+    Checked by: tests/plan/test_averages.py
+    """
+    base = from_return(return_of_census(census, {ward: mean_stay_days}), ward)
+    swing = min(swing_beyond_chance(census, ward, mean_stay_days), 2.0)
+    kept = [fact for fact in base.facts if fact[0] not in ("Discharges a year", "Mean stay")]
+    return replace(
+        base,
+        demand=replace(base.demand, rate_variation=swing),
+        facts=(
+            ("Beds in use on average", f"{base.demand.offered_load:.1f}", f"{census.name}, last 12 months"),
+            ("Mean stay", wording.days(mean_stay_days), TYPED),
+            ("Patients a year", f"{base.admissions_per_year:,.0f}", "beds in use × 365 ÷ mean stay"),
+            *kept,
+            ("Drift of demand (SD ÷ mean)", f"{swing:.3f}", f"{census.name}: swing of the counts beyond chance"),
+        ),
+        notes=("How far stays differ is assumed, not measured.", *base.notes[1:]),
+        origin=f"{census.name}, a census, and a mean stay typed by the planner",
+    )
+
+
 def from_totals(name: str, admissions_per_year: float, stay: LengthOfStay, beds: int) -> Baseline:
     """What can be said of a ward known by totals only? Steady demand; no season, because totals hold none.
 
@@ -231,16 +263,15 @@ def from_totals(name: str, admissions_per_year: float, stay: LengthOfStay, beds:
     Checked by: tests/test_plan.py
     """
     demand = Demand(admissions_per_year / 365.0, stay)
-    typed = "typed by the planner"
     return Baseline(
         name=name,
         demand=demand,
         admissions_per_year=admissions_per_year,
         beds=beds,
         facts=(
-            ("Admissions a year", f"{admissions_per_year:,.0f}", typed),
-            ("Mean stay", wording.days(stay.mean_days), typed),
-            ("Spread of stay (SD ÷ mean)", f"{stay.variation:.2f}", typed),
+            ("Admissions a year", f"{admissions_per_year:,.0f}", TYPED),
+            ("Mean stay", wording.days(stay.mean_days), TYPED),
+            ("Spread of stay (SD ÷ mean)", f"{stay.variation:.2f}", TYPED),
         ),
         notes=(
             "Based on totals only: no season, weekday or hour is known, so busy months turn away more than shown.",

@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from collections.abc import Mapping
 
 PLAN_FORMAT = 1
-TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "beds")
+TOTALS = ("admissions_per_year", "arrivals_per_day", "mean_days", "variation", "beds", "rate_variation")
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,7 +87,7 @@ def from_json(text: str | bytes) -> SavedPlan:
 
 def _typed(row: Mapping[str, Any]) -> dict[str, Any]:
     """Return one ward's totals: finite figures, its month factors and where they came from."""
-    held = {"arrivals_per_day": row["admissions_per_year"] / 365.0} | dict(row)
+    held = {"arrivals_per_day": row["admissions_per_year"] / 365.0, "rate_variation": 0.0} | dict(row)
     figures = {key: float(held[key]) for key in TOTALS}
     months = [float(factor) for factor in row.get("month_factors", ())]
     if not all(math.isfinite(figure) for figure in (*figures.values(), *months)):
@@ -98,10 +98,17 @@ def _typed(row: Mapping[str, Any]) -> dict[str, Any]:
 
 def as_totals(ward: Baseline) -> dict[str, Any]:
     """Return a typed ward as the row of a plan file."""
-    stay = ward.demand.length_of_stay
-    figures = (ward.admissions_per_year, ward.demand.arrivals_per_day, stay.mean_days, stay.variation, ward.beds)
+    demand, stay = ward.demand, ward.demand.length_of_stay
+    figures = (
+        ward.admissions_per_year,
+        demand.arrivals_per_day,
+        stay.mean_days,
+        stay.variation,
+        ward.beds,
+        demand.rate_variation,
+    )
     others = {
-        "month_factors": list(ward.demand.month_factors),
+        "month_factors": list(demand.month_factors),
         "origin": ward.origin,
         "beds_known": wording.BEDS_UNKNOWN not in ward.notes,
     }
@@ -117,6 +124,8 @@ def from_saved_totals(name: str, row: Mapping[str, Any]) -> Baseline:
     stay = LengthOfStay(row["mean_days"], row["variation"])
     ward = from_totals(name, row["admissions_per_year"], stay, round(row["beds"]))
     months = tuple(row["month_factors"]) or ward.demand.month_factors
-    demand = replace(ward.demand, arrivals_per_day=row["arrivals_per_day"], month_factors=months)
+    demand = ward.demand.with_changes(
+        arrivals_per_day=row["arrivals_per_day"], month_factors=months, rate_variation=row["rate_variation"]
+    )
     unknown = () if row["beds_known"] else (wording.BEDS_UNKNOWN,)
     return replace(ward, demand=demand, origin=row["origin"] or ward.origin, notes=(*ward.notes, *unknown))
