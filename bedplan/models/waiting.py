@@ -51,9 +51,8 @@ _SHORT_AND_BY_THE_CLOCK = (
     "hours a quarter; with stays under a day a third, and the mean wait two thirds too short. Run the simulation."
 )
 _BOOKED = (
-    "Booked lists: the share who wait may be up to a third too low where their stays are shorter than the others or they "
-    "come on one or two weekdays; two or three times too high with stays alike, many times with lists alone. Run the "
-    "simulation."
+    "Booked lists: the share who wait may be up to a third too low where many come at once, or where their stays are even "
+    "and long; up to twice too high elsewhere, with lists alone more where few wait. Run the simulation."
 )
 _UNEVEN = (
     "Stays differ widely: the share who wait may be up to an eighth too low, with seasons and weekdays a quarter, in the "
@@ -65,14 +64,15 @@ _UNEVEN = (
 class _Load:
     """Beds wanted in each step of a period that repeats, ``(steps,)``, and who comes when, ``(12, steps)`` by month.
 
-    Booked patients apart: only the unbooked rate is uncertain. ``mean_days`` a bed is held, turnaround included. The
-    queue is carried over ``steps_at_once``.
+    Booked patients apart: only the unbooked rate is uncertain. ``rise``: of the beds wanted within each step, as lists
+    come in. ``mean_days`` a bed is held, turnaround included. The queue is carried over ``steps_at_once``.
     """
 
     wanted: Array
     booked_wanted: Array
     patients: Array
     booked_patients: Array
+    rise: Array
     step_days: float
     mean_days: float
     steps_at_once: int
@@ -116,9 +116,14 @@ def _load_of(demand: Demand) -> _Load:
     cell = month_of_hour * steps + np.arange(HOURS_A_YEAR) // hours % steps
     sheets = unbooked_load_by_hour(demand), np.tile(booked_load_in_week(demand), WEEKS)
     comers = unbooked_by_hour(demand), np.tile(all_booked_in_week(demand), WEEKS)
+    at_end = booked_load_in_week(demand, at_end=True)
+    rise = (
+        np.tile(at_end - np.roll(at_end, 1), period // HOURS_A_WEEK) if hours == _STEP_WITH_LISTS else np.zeros(steps)
+    )
     return _Load(
         *(sheet[:period].reshape(steps, hours).mean(axis=1) for sheet in sheets),
         *(np.bincount(cell, by_hour, 12 * steps).reshape(12, steps) for by_hour in comers),
+        rise=rise,
         step_days=hours / 24.0,
         mean_days=mean_days,
         steps_at_once=at_once,
@@ -171,7 +176,7 @@ def _queues(demand: Demand, load: _Load, counts: NDArray[np.int64]) -> Iterator[
         elif enough.size:
             wards = wards or steady_wards(spread, enough)
             pace = Pace(load.step_days, load.mean_days, load.steps_at_once)
-            wait, stays = settled_queue(wards.largest(enough.size), wanted, pace)
+            wait, stays = settled_queue(wards.largest(enough.size), wanted, pace, load.rise)
             wait = raised_by_swing(wait, wanted, patients.sum(axis=0), load.weeks)
         yield _Queue(patients, chance * np.minimum(wanted.mean(), counts), wait, load.mean_days * stays)
 

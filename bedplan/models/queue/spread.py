@@ -23,13 +23,15 @@ import numpy as np
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from bedplan.models.value_objects.demand import Demand
+    from bedplan.models.value_objects.demand import BookedList, Demand
 
     Array = NDArray[np.float64]
 
 _STEPS, _LONGEST = 64, 64
 _TIMES = np.arange(_STEPS * _LONGEST + 1) / _STEPS
 _NEAR_ONE = 0.05
+# nobody's census is quite without chance: Hayward's formula divides by its swing
+_SMOOTHEST = 0.1
 # every step for three mean stays, then ever fewer
 _LIGHT = np.unique(np.concatenate([np.arange(3 * _STEPS), np.geomspace(3 * _STEPS, _STEPS * _LONGEST, 40).astype(int)]))
 
@@ -72,30 +74,42 @@ def _variance_of_ends(beyond: Array) -> Array:
     return np.concatenate([[1.0], np.maximum(variance[1:], 0.0) / _TIMES[1:]])
 
 
+def _swing_within_hour(booked: BookedList) -> float:
+    """Return the variance of how many of a list have come by a moment of its hour: n·u·(1 − u), for all u alike."""
+    listed = sum(booked.per_weekday)
+    return booked.attends * sum(many * many for many in booked.per_weekday) / max(listed, 1) / 6.0
+
+
 @lru_cache(maxsize=128)
 def spread_of(demand: Demand) -> Spread:
-    """How widely do the stays of everyone who comes differ, turnaround included?
+    """How widely do the stays of everyone who comes differ, turnaround included, and how much do arrivals swing?
+
+    How many a list brings on a day is known but for who stays away: variance ÷ mean is 1 − the chance to attend.
 
     Checked by: tests/models/test_waiting.py
     """
     turnaround = demand.turnaround_hours / 24.0
-    streams = [(demand.arrivals_per_day, demand.length_of_stay)]
-    streams += [(one.arrivals_per_day, one.length_of_stay) for one in demand.booked]
-    streams = [(rate, stay) for rate, stay in streams if rate > 0]
-    rate = math.fsum(rate for rate, _ in streams)
-    mean = math.fsum(rate * stay.mean_days for rate, stay in streams) / rate + turnaround
+    streams = [(demand.arrivals_per_day, demand.length_of_stay, demand.clustering)]
+    streams += [(one.arrivals_per_day, one.length_of_stay, 1.0 - one.attends) for one in demand.booked]
+    streams = [stream for stream in streams if stream[0] > 0]
+    rate = math.fsum(rate for rate, _, _ in streams)
+    mean = math.fsum(rate * stay.mean_days for rate, stay, _ in streams) / rate + turnaround
     square = math.fsum(
-        rate * ((stay.mean_days + turnaround) ** 2 + (stay.variation * stay.mean_days) ** 2) for rate, stay in streams
+        rate * ((stay.mean_days + turnaround) ** 2 + (stay.variation * stay.mean_days) ** 2)
+        for rate, stay, _ in streams
     )
     days = _TIMES * mean
     rest, ahead = np.maximum(days - turnaround, 0.0), np.maximum(turnaround - days, 0.0)
-    beyond = sum(rate * (stay.days_beyond(rest) + ahead) for rate, stay in streams) / (rate * mean)
-    shorter = demand.arrivals_per_day * (demand.length_of_stay.mean_of_shorter_of_two() + turnaround)
+    beyond = sum(rate * (stay.days_beyond(rest) + ahead) for rate, stay, _ in streams) / (rate * mean)
+    swing = math.fsum(
+        (clustering - 1.0) * rate * (stay.mean_of_shorter_of_two() + turnaround) for rate, stay, clustering in streams
+    )
+    swing += math.fsum(one.arrivals_per_day * _swing_within_hour(one) for one in demand.booked) / rate
     return Spread(
         mean_days=mean,
         squared_variation=square / rate / mean**2 - 1.0,
-        grouping=1.0 + (demand.clustering - 1.0) * demand.arrivals_per_day / rate,
-        peakedness=1.0 + (demand.clustering - 1.0) * shorter / (rate * mean),
+        grouping=1.0 + math.fsum((clustering - 1.0) * one for one, _, clustering in streams) / rate,
+        peakedness=max(1.0 + swing / (rate * mean), _SMOOTHEST),
         beyond=beyond,
         ended=_variance_of_ends(beyond),
     )

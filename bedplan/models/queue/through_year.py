@@ -16,6 +16,7 @@ from scipy.linalg import blas
 
 from bedplan.models.formulas.clusters import loss_table
 from bedplan.models.queue.spread import wait_ratio
+from bedplan.models.rhythm.within_hour import looks
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -31,6 +32,7 @@ _SETTLED, _MOST_TURNS = 1e-5, 60
 _FEW = 1e-3
 _SWING = 0.9
 _CELLS_AT_ONCE = 30_000
+_STEEP, _LOOKS = 0.15, 4
 
 
 def share_who_wait(loads: Array, counts: NDArray[np.int64], peakedness: float) -> Array:
@@ -224,13 +226,14 @@ def _carried(wards: Wards, wanted: Array, pace: Pace) -> Array:
     return (together[:, :, None] + queue[:, None]).reshape(wanted.size, -1)
 
 
-def settled_queue(wards: Wards, wanted: Array, pace: Pace) -> tuple[Array, Array]:
+def settled_queue(wards: Wards, wanted: Array, pace: Pace, rise: Array) -> tuple[Array, Array]:
     """Who waits of those who come in each step of a year, or a week, that repeats for ever, and how long on average?
 
     ``wanted`` ``(steps,)``: beds wanted if nobody ever waited, on average less than the beds of each ward. Returns the
     share who wait and the mean wait in mean stays of those who do, both ``(steps, wards)``. x follows dx/dt = a'(t) + (a(t) − b(x))/m:
     without a queue x is a(t), whatever the shape of stay; with one, the beds give up b(x)/m patients a day. Steps
-    carried over at once share one queue, on which each step's own load rides.
+    carried over at once share one queue, on which each step's own load rides. ``rise`` ``(steps,)``: by how much the
+    beds wanted rise within each step as a list comes in; who comes late in it finds its earlier patients there.
 
     Source: Wang, Tipper & Banerjee 1996, IEEE INFOCOM (pointwise stationary fluid flow).
     Checked by: tests/models/test_waiting.py
@@ -242,6 +245,13 @@ def settled_queue(wards: Wards, wanted: Array, pace: Pace) -> tuple[Array, Array
     for start in range(0, present.shape[0], at_once):
         some = slice(start, start + at_once)
         wait[some], stays[some] = wards.waits(present[some])
+    steep = np.flatnonzero(np.abs(rise) > _STEEP * np.sqrt(np.maximum(wanted, 1.0)))
+    if steep.size:
+        places, weights = looks(_LOOKS)
+        within = present[steep, None] + (rise[steep, None] * (places - 0.5))[:, :, None]
+        shares, longer = wards.waits(np.maximum(within, 0.0))
+        wait[steep] = weights @ shares
+        stays[steep] = weights @ (shares * longer) / np.maximum(wait[steep], 1e-300)
     return wait, stays
 
 
