@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -28,7 +28,7 @@ from bedplan.models.sharing.overflow import overflow_pair, shared_overflow
 from bedplan.models.sharing.reservation import beds_held_back
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Callable, Iterable
 
     from numpy.typing import NDArray
 
@@ -88,9 +88,7 @@ def overflow_effect(home: Ward, host: Ward) -> OverflowEffect:
     is_alike = math.isclose(*stays, rel_tol=0.01)
     told_apart = stays if states <= _MOST_STATES_A_MONTH and not is_alike else (1.0, 1.0)
     loads = np.stack([_load_by_month(offered_load_by_hour(ward.demand)) for ward in (home, host)], axis=1)
-    different, month_is = np.unique(loads, axis=0, return_inverse=True)
-    pairs = [overflow_pair((float(a), float(b)), (home.beds, host.beds), told_apart) for a, b in different]
-    months = [pairs[place] for place in month_is.ravel()]
+    months = _each_month(loads, lambda both: overflow_pair(tuple(both), (home.beds, host.beds), told_apart))
     at_home, at_host = arrivals_by_month(home.demand), arrivals_by_month(host.demand)
     return OverflowEffect(
         home=home,
@@ -140,8 +138,7 @@ def overflow_bay_effect(wards: Iterable[Ward], bay_beds: int) -> BayEffect:
     wards = named_once(wards)
     beds = [ward.beds for ward in wards]
     loads = np.stack([_load_by_month(offered_load_by_hour(ward.demand)) for ward in wards], axis=1)
-    different, month_is = np.unique(loads, axis=0, return_inverse=True)
-    after = np.array([shared_overflow(month.tolist(), beds, bay_beds) for month in different])[month_is.ravel()]
+    after = np.array(_each_month(loads, lambda month: shared_overflow(month, beds, bay_beds)))
     before = erlang_b(loads, np.array(beds))
     by_ward = tuple(
         Refused(_patients(ward.demand), float(months @ before[:, place]), float(months @ after[:, place]))
@@ -185,15 +182,16 @@ def hold_back_effect(ward: Ward, held_back: int) -> HoldBackEffect:
     booked_load = float(booked_load_in_week(demand).mean())
     stays = (demand.length_of_stay.mean_days + demand.turnaround_hours / 24.0, booked_load / booked_a_day)
     told_apart = stays if (ward.beds + 1) * (ward.beds + 2) / 2 <= _MOST_STATES_A_MONTH else (1.0, 1.0)
-    levels, month_is = np.unique(_load_by_month(unbooked_load_by_hour(demand)), return_inverse=True)
+    loads = _load_by_month(unbooked_load_by_hour(demand))[:, None]
     arrivals = np.bincount(month_of_hour, weights=unbooked_by_hour(demand), minlength=MONTHS)
     emergency_months = arrivals / max(arrivals.sum(), 1e-300)
     booked_months = np.bincount(month_of_hour) / month_of_hour.size
 
     def refused(kept: int) -> tuple[float, float]:
         """Return the share of emergencies and of booked patients who find no bed."""
-        each = np.array([beds_held_back((load, booked_load), ward.beds, kept, told_apart) for load in levels])
-        first, others = each[month_is].T
+        first, others = np.transpose(
+            _each_month(loads, lambda load: beds_held_back((*load, booked_load), ward.beds, kept, told_apart))
+        )
         return float(emergency_months @ first), float(booked_months @ others)
 
     (first_before, booked_before), (first_after, booked_after) = refused(0), refused(held_back)
@@ -210,6 +208,13 @@ def _load_by_month(load_by_hour: Array) -> Array:
     """Return the mean beds wanted in each month ``(12,)``, to 9 digits so that equal months are solved once."""
     sums = np.bincount(month_of_hour, weights=np.broadcast_to(load_by_hour, month_of_hour.shape), minlength=MONTHS)
     return np.round(sums / np.bincount(month_of_hour), 9)
+
+
+def _each_month(loads: Array, solve: Callable[[list[float]], Any]) -> list[Any]:
+    """Return the answer to each month's loads, ``(12, wards)``; equal months are solved once."""
+    different, month_is = np.unique(loads, axis=0, return_inverse=True)
+    found = [solve(month) for month in different.tolist()]
+    return [found[place] for place in month_is.ravel()]
 
 
 def _patients(demand: Demand) -> float:
