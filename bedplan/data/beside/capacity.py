@@ -21,6 +21,7 @@ from bedplan.data.files.report import IntakeReport
 from bedplan.data.files.source import FileLike, open_source
 from bedplan.data.values.accounting import account
 from bedplan.data.values.dateorder import read_ordered
+from bedplan.data.values.merged import filled_from_above
 from bedplan.data.values.table import as_times
 from bedplan.errors import UnreadableRecords
 
@@ -32,6 +33,7 @@ if TYPE_CHECKING:
     from bedplan.data.cleaning.records import Records
     from bedplan.data.files.texttable import TextTable
 
+BEDS_WORD = re.compile(r"(?<=\d)\s*(?:beds?|betten|bett|lits?|camas?|letti|bedden)$")
 MOST_NAMED = 10  # cells nobody can read that are named one by one
 OPEN_ENDS = ("1990-01-01", "2100-12-31")  # of a period without a first or a last day
 
@@ -108,7 +110,7 @@ def beds_in_text(text: str | None) -> tuple[int, int] | None:
 
     Checked by: tests/data/beside/test_capacity.py
     """
-    cell = (text or "").strip().lower()
+    cell = BEDS_WORD.sub("", (text or "").strip().lower())
     if cell in ("closed", "shut"):
         return 0, 0
     fits = re.fullmatch(r"(\d{1,5})(?:[.,]0+)?(?:\s*([(/+]+\s*\+?)(\d{1,4})\)?)?", cell, re.ASCII)
@@ -148,7 +150,7 @@ def read_capacity(
         raise UnreadableRecords(
             [f"{file.name} lacks a column of {lacks}: it should have a row for each ward and period, with both."]
         )
-    return _capacity(text, file.name, date_order)
+    return _capacity(filled_from_above(text, "ward"), file.name, date_order)
 
 
 def _capacity(text: TextTable, name: str, date_order: str | None) -> Capacity:

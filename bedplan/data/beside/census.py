@@ -19,6 +19,7 @@ from bedplan.data.files.reading import read_table
 from bedplan.data.files.source import FileLike, open_source
 from bedplan.data.files.wide import read_wide
 from bedplan.data.values.accounting import account
+from bedplan.data.values.merged import filled_from_above
 from bedplan.data.values.moments import when
 from bedplan.data.values.table import as_times
 from bedplan.errors import UnreadableRecords
@@ -138,7 +139,7 @@ def read_census(
         text.refuse_kinds(file.name, "a census", *(kind for kind in TELLTALES if kind != "a census"))
         wanted = "date, ward and occupied, or date and one for each ward"
         raise UnreadableRecords([f"{file.name} lacks {', '.join(missing)}: a census has columns {wanted}."])
-    return _census(text, file.name, date_order, zeros_are_real)
+    return _census(filled_from_above(text, "date", "ward"), file.name, date_order, zeros_are_real)
 
 
 def _lacks(text: TextTable) -> list[str]:

@@ -13,10 +13,11 @@ from bedplan.data.files.headings import CANCELLATION_HEADINGS, REFUSAL_HEADINGS,
 from bedplan.data.files.reading import read_table
 from bedplan.data.files.source import FileLike, SourceFile, open_source
 from bedplan.data.values.accounting import account
+from bedplan.data.values.merged import filled_from_above
 from bedplan.data.values.moments import when
 from bedplan.data.values.reasons import means_no_bed, not_cancelled, plain_reason, was_given_a_bed
 from bedplan.data.values.table import as_times
-from bedplan.data.values.waited import read_waits, unknown_note
+from bedplan.data.values.waited import WAITS, read_waits, unknown_note
 from bedplan.errors import UnreadableRecords
 
 if TYPE_CHECKING:
@@ -208,7 +209,9 @@ def _table(
 ) -> TextTable:
     """Return the columns of one log, or say which it lacks."""
     text = read_table(file, known, columns)
-    waits = {*REQUEST_HEADINGS["placed"], *REQUEST_HEADINGS["wait_hours"]} & {plain(heading) for heading in text.unused}
+    waits = {word for key in ("placed", *WAITS) for word in REQUEST_HEADINGS[key]} & {
+        plain(heading) for heading in text.unused
+    }
     fine = {MEANT[kind], MEANT["bed requests"] if "outcome" in text.columns and not waits else ""}
     text.refuse_kinds(file.name, MEANT[kind], *(other for other in TELLTALES if other not in fine))
     lacks = {"ward": "ward" not in text.columns, "time": not {"time", "date"} & set(text.columns)}
@@ -219,7 +222,7 @@ def _table(
                 f"{file.name} lacks {' and '.join(missing)}, so it can't be read as {MEANT[kind]}: add it, or choose another file."
             ]
         )
-    return text
+    return filled_from_above(text, "date", "ward")
 
 
 def _read(kind: str, text: TextTable, name: str, date_order: str | None, cannot: tuple[str, ...]) -> EventLog:
@@ -260,7 +263,7 @@ def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataF
             frame[key] = pd.Series([without_formula(value) for value in text.strings(key)], dtype=object)
     if placed:
         frame["placed"] = as_times(placed[0])
-    if placed or "wait_hours" in text.columns:
+    if placed or set(WAITS) & set(text.columns):
         given = was_given_a_bed(frame["outcome"], frame["ward"]).to_numpy() if "outcome" in frame else None
         frame = frame.assign(**read_waits(text, time, placed[0] if placed else None, day_only, given))
     return frame, day_only

@@ -24,7 +24,8 @@ from bedplan.data.values.bedunits import (
     unit_by_months,
     unit_by_stay,
 )
-from bedplan.data.values.months import QUARTER, month_of, months_apart, order_of_dates
+from bedplan.data.values.merged import filled_from_above
+from bedplan.data.values.months import QUARTER, month_of, months_apart, order_of_dates, with_year
 from bedplan.errors import ImpossibleFigure, UnreadableRecords
 from bedplan.models import Demand, LengthOfStay
 
@@ -142,6 +143,7 @@ def read_monthly_return(
         raise ImpossibleFigure(f"{months_a_row} months a row is not possible: a row holds 1 to 12 months.")
     file = open_source(source, name)
     text = read_table(file, RETURN_HEADINGS, columns)
+    text = filled_from_above(text, "year", "month", "ward")
     missing = [either[0] for either in lacking("monthly return", text.columns)]
     if missing:
         text.refuse_kinds(file.name, "a monthly return", *(kind for kind in TELLTALES if kind != "a monthly return"))
@@ -159,7 +161,7 @@ def read_monthly_return(
 
 def _frame(text: TextTable, name: str, date_order: str | None) -> tuple[pd.DataFrame, pd.Series, list[str]]:
     """Return every row, why it can't be used ("" = it can), and what was decided about figures."""
-    cells = text.strings("month")
+    cells = [with_year(*pair) for pair in zip(text.strings("month"), text.strings("year"), strict=True)]
     order = order_of_dates(cells, name, date_order)
     months = [month_of(value, order) for value in cells]
     figures, notes = read_figures({key: text.strings(_written_as(key, text)) for key in FIGURES})

@@ -39,7 +39,8 @@ REQUEST_HEADINGS: dict[str, tuple[str, ...]] = {
     ),
     "date": (*DAY_WORDS, *words("requestdate requesteddate daterequested")),
     "placed": words("placedat placed given bedgiven allocated admittedat placedtime arrived"),
-    "wait_hours": words("waithours wait waitinhours hourswaited"),
+    "wait_hours": words("waithours wait waitinhours hourswaited waithrs waitedhours"),
+    "wait_minutes": words("waitminutes waitmins waitmin waitinminutes minuteswaited minswaited"),
     "outcome": words("outcome result"),
 }
 CANCELLATION_HEADINGS: dict[str, tuple[str, ...]] = {
@@ -61,6 +62,7 @@ CENSUS_HEADINGS: dict[str, tuple[str, ...]] = {
     "closed": words("bedsclosed closed closedbeds"),
 }
 RETURN_HEADINGS: dict[str, tuple[str, ...]] = {
+    "year": words("year calendaryear"),
     "month": words("month period date periodend yearmonth monthending monthend quarter quarterend quarterending"),
     "ward": (*WARD_WORDS, *words("specialty specialtygroup site sector group")),
     "available": words("availablebeddays beddaysavailable available staffedbeddays"),
@@ -105,7 +107,7 @@ NEEDED: Mapping[str, tuple[str, tuple[tuple[str, ...], ...]]] = {
 }
 # What else shows that a file is of a kind, where what it can't be without is common: one of these.
 SHOWN_BY: Mapping[str, tuple[str, ...]] = {
-    "bed requests": ("placed", "wait_hours"),
+    "bed requests": ("placed", "wait_hours", "wait_minutes"),
     "refusals": ("reason",),
     "cancellations": ("reason",),
 }

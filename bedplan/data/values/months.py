@@ -69,6 +69,15 @@ def month_of(text: str, date_order: str | None = None) -> tuple[int, int] | None
     return found if found and FIRST_YEAR <= found[0] <= LAST_YEAR else None
 
 
+def with_year(month: str, year: str) -> str:
+    """What does a month name together with the year in a column of its own? As it stands where it names a year itself."""
+    if not re.fullmatch(r"(?:19|20)\d\d", year, re.ASCII):
+        return month
+    if re.fullmatch(r"\d\d?", month, re.ASCII):
+        return f"{year}-{month}"
+    return f"{month} {year}" if re.fullmatch(r"[^\W\d_]+\.?", month) else month
+
+
 def _of_words(word: str) -> tuple[int, int] | None:
     """Return year and month of 2024-04, Apr 2024, April-24 or 04/2024."""
     for pattern in MONTH_PATTERNS:

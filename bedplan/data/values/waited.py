@@ -15,6 +15,7 @@ if TYPE_CHECKING:
 
     from bedplan.data.files.texttable import TextTable
 
+WAITS = ("wait_hours", "wait_minutes")
 HOUR_SECONDS = 3_600
 MINUTES_WORD = r"m|mins?|minutes?|minuten"
 DECIMAL = re.compile(
@@ -54,6 +55,9 @@ def read_waits(
     or where the time is blank and there is no outcome.
     """
     hours = np.array([_nan(hours_of(cell)) for cell in text.strings("wait_hours")])
+    if "wait_minutes" in text.columns:
+        minutes = np.array([_nan(hours_of(cell)) for cell in text.strings("wait_minutes")]) / 60
+        hours = np.where(np.isnan(hours), minutes, hours)
     told = np.array([cell.lower() not in BLANK_WORDS for cell in text.strings("outcome")])
     if placed is not None:
         hours = np.where((asked > UNREADABLE) & (placed > UNREADABLE), _apart(asked, placed, day_only), hours)
