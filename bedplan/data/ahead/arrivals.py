@@ -78,7 +78,8 @@ class Arrivals:
         None where chance explains it, or where the file is too short or too empty to tell.
         """
         numbers = self.calendar.to_numpy().astype("datetime64[D]").astype(np.int64)
-        return level_change(self.counts[self.used], numbers[self.used])
+        found = level_change(self.counts[self.used], numbers[self.used])
+        return found if found is not None and found.is_clear else None
 
     @property
     def lately(self) -> tuple[float, float] | None:

@@ -61,7 +61,7 @@ def change_notes(change: LevelChange | None) -> list[str]:
 
     Checked by: tests/data/ahead/test_forecasting.py
     """
-    if change is None:
+    if change is None or not change.is_clear:
         return []
     word, errs = ("grew", "few") if change.share > 0 else ("fell", "many")
     return [

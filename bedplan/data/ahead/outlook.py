@@ -80,7 +80,7 @@ class Choice:
 class Outlook:
     """What is expected on each day ahead (h,), how far the rate may be off (variance ÷ its square, (h,)), and why.
 
-    ``change``: of the latest weeks, where the level clearly changed.
+    ``change``: of the latest weeks, where the level may have changed.
     """
 
     expected: Array
@@ -133,16 +133,18 @@ def look_ahead(series: DailyCounts, origin: int, steps: int, past: Sequence[Past
 
 
 def _with_change(expected: Array, change: LevelChange | None, ahead: NDArray[np.int64]) -> tuple[Array, float]:
-    """Go half-way to the latest level, and return by how much that may be off: variance ÷ square of the rate.
+    """Go part of the way to the latest level, and return by how much that may be off: variance ÷ square of the rate.
 
-    A change of the latest weeks lasts or it does not, and nothing in the records tells which. With even chances the
-    mean lies half-way and the standard deviation is half the gap, beside chance, so that the range holds both.
+    A change of the latest weeks may be chance; if not, it lasts or it does not, and nothing in the records tells which.
+    With even chances a clear change moves the mean half-way, with a standard deviation of half the gap, beside chance,
+    so that the range holds both; one that may be chance moves it less and widens the range.
     """
     if change is None:
         return expected, 0.0
-    soon = slice(0, BLOCK_DAYS)
-    half = (float(change.carried_on(ahead[soon]).sum()) / max(float(expected[soon].sum()), 1e-9) - 1.0) / 2.0
-    return expected * (1.0 + half), (half / (1.0 + half)) ** 2 + change.error**2
+    soon, lasts = slice(0, BLOCK_DAYS), change.chance / 2.0
+    gap = float(change.carried_on(ahead[soon]).sum()) / max(float(expected[soon].sum()), 1e-9) - 1.0
+    moved = 1.0 + lasts * gap
+    return expected * moved, lasts * (1.0 - lasts) * (gap / moved) ** 2 + 2.0 * lasts * change.error**2
 
 
 def _choose(known: DailyCounts, past: Sequence[PastForecast], clustering: float) -> Choice:

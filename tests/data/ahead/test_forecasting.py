@@ -41,7 +41,7 @@ def test_the_year_to_come_lies_in_its_range() -> None:
     assert inside[0.8] >= 26
     assert inside[0.95] >= 34
     assert abs(np.mean(off)) < 0.02  # neither too high nor too low on the whole
-    assert np.mean(half) < 1.7 * np.std(off)  # and the ranges are not idle
+    assert np.mean(half) < 1.8 * np.std(off)  # and the ranges, which allow for changes too, are not idle
 
 
 def births(state: str) -> np.ndarray:

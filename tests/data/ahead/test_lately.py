@@ -5,9 +5,10 @@ from __future__ import annotations
 import numpy as np
 import pandas as pd
 import pytest
+from scipy import stats
 
 from bedplan.data.ahead.forecasting import forecast_counts
-from bedplan.data.ahead.lately import level_change
+from bedplan.data.ahead.lately import CHANGING, USUAL_CHANGE, LevelChange, level_change
 from bedplan.data.ahead.trend import fit_trend
 
 FIRST, KNOWN = pd.Timestamp("2022-04-01"), 1_096
@@ -49,19 +50,41 @@ def test_the_forecast_goes_half_way_and_reaches_both_ways_on() -> None:
     low, high = forecast.range_of(slice(0, 28), 0.80)
 
     assert 49 <= change.days <= 63
-    assert forecast.expected[:28].sum() == pytest.approx(middle, rel=1e-6)
+    assert forecast.expected[:28].sum() == pytest.approx(middle, rel=0.01)
     assert low < fit_trend(ward, DAYS).expected(ahead).sum()
     assert high > change.carried_on(ahead).sum()
 
 
 def test_the_trend_of_all_days_only_saves_looking() -> None:
-    """What is found is the same with it and without it, in wards with a change and in steady ones."""
+    """A change is found the same with it and without it; in a steady ward nothing clear is found either way."""
     for seed in range(4):
-        for share in (0.0, 0.3):
-            ward = counts(seed, share, 8)[:KNOWN]
-            with_it, without = level_change(ward, DAYS, fit_trend(ward, DAYS)), level_change(ward, DAYS)
-            assert (with_it is None) == (without is None)
-            assert with_it is None or (with_it.days, with_it.came) == (without.days, without.came)
+        ward, steady = counts(seed, 0.3, 8)[:KNOWN], counts(seed, 0.0, 8)[:KNOWN]
+        with_it, without = level_change(ward, DAYS, fit_trend(ward, DAYS)), level_change(ward, DAYS)
+        assert (with_it.days, with_it.came) == (without.days, without.came)
+        for found in (level_change(steady, DAYS, fit_trend(steady, DAYS)), level_change(steady, DAYS)):
+            assert found is None or not found.is_clear
+
+
+def test_a_change_that_may_be_chance_widens_the_range() -> None:
+    """A fifth more for eight weeks at 3 patients a day is mostly not clear; still 95 of 100 ranges hold most years after it."""
+    held = 0
+    for seed in range(12):
+        ward = counts(seed, 0.2, 8, per_day=3.0)
+        low, high = forecast_counts(ward[:KNOWN], FIRST).range_of(slice(0, 365), 0.95)
+        held += low <= ward[KNOWN:].sum() <= high
+
+    assert held >= 9
+
+
+@pytest.mark.parametrize("standard_errors", [0.5, 2.0, 3.5])
+def test_the_chance_of_a_change_is_bayes_rule(standard_errors: float) -> None:
+    """The odds are those of before times the ratio of two normal densities of what was seen, with a change and without."""
+    trend = fit_trend(counts(1, 0.0, 8)[:KNOWN], DAYS)
+    change = LevelChange(56, 480, 400.0, trend, standard_errors)
+    own = 0.2 / standard_errors
+    ratio = stats.norm.pdf(0.2, 0.0, np.hypot(own, USUAL_CHANGE)) / stats.norm.pdf(0.2, 0.0, own)
+
+    assert change.chance / (1.0 - change.chance) == pytest.approx(CHANGING / (1.0 - CHANGING) * ratio, rel=1e-9)
 
 
 def test_too_little_before_it_tells_nothing() -> None:
