@@ -38,7 +38,7 @@ def count_rows(
 
     Checked by: tests/data/cleaning/test_records.py, tests/data/cleaning/test_counting.py
     """
-    rows, size = table.rows, table.rows.file_rows
+    rows, counts = table.rows, table.rows.counts(text.misfits)
     lost = _lost(table, text)
     recorded = rows.recorded_bed_days(until)
     if lost.any():
@@ -48,10 +48,10 @@ def count_rows(
     is_aside = np.array([False, *(rule.outcome == SET_ASIDE for rule in RULES.values())])
     aside = float(recorded[is_aside].sum())
     report = IntakeReport(
-        rows_in=size + text.misfits,
-        used=int((rows.reason[:size] == 0).sum()),
-        repaired=int(((rows.reason[:size] > 0) & ~rows.aside[:size]).sum()),
-        set_aside=int(rows.aside[:size].sum()) + text.misfits,
+        rows_in=int(counts.sum()),
+        used=int(counts[0]),
+        repaired=int(counts[1:][~is_aside[1:]].sum()),
+        set_aside=int(counts[is_aside].sum()),
         findings=rows.findings(recorded, misfits=text.misfits),
         bed_days_in=total,
         bed_days_added=kept + aside - total,
@@ -112,8 +112,8 @@ def _mean_days(rows: Rows, wards: int) -> NDArray[np.float64]:
     return np.where(count > 0, total / np.maximum(count, 1), overall) / DAY_SECONDS
 
 
-def why_no_row(rows: Rows, name: str) -> list[str]:
+def why_no_row(rows: Rows, misfits: int, name: str) -> list[str]:
     """Why could no row of the file be used?"""
     unreadable = (rows.start == UNREADABLE).sum() > rows.start.size // 2
     advice = "write dates as 2024-03-31 14:05" if unreadable else "check the export and try again"
-    return [why_none(name, rows.findings(np.zeros(len(RULES) + 1)), advice)]
+    return [why_none(name, rows.findings(np.zeros(len(RULES) + 1), misfits), advice)]

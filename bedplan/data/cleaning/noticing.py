@@ -14,7 +14,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from bedplan.data.cleaning.windows import Period
-    from bedplan.data.values.rows import Rows
+    from bedplan.data.values.rows import Way
     from bedplan.data.values.table import StayTable
 
 HOUR_SECONDS = 3_600
@@ -22,7 +22,7 @@ DEFAULT_SHARE = 0.05  # of stays in one minute of the day: a default, not a time
 FEWEST_STAYS = 200
 
 
-def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overlaps: int) -> list[str]:
+def sequences(way: Way, table: StayTable, long_overlaps: int) -> list[str]:
     """Say what the patients' ways through the wards show: transfers, gaps, long overlaps."""
     notes = []
     if long_overlaps:
@@ -31,14 +31,14 @@ def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overl
         )
     if not table.knows_spells:
         return notes
-    moves, place = _moves(rows, order)
+    moves, place = _moves(way)
     if moves:
         notes.append(
-            f"{order.size:,} arrivals on wards are {order.size - moves:,} arrivals in hospital and {moves:,} moves "
+            f"{way.start.size:,} arrivals on wards are {way.start.size - moves:,} arrivals in hospital and {moves:,} moves "
             "between wards; both are counted, apart."
         )
     if place.size:
-        pair = rows.ward[order[place]].astype(np.int64) * len(table.wards) + rows.ward[order[place + 1]]
+        pair = way.ward[place].astype(np.int64) * len(table.wards) + way.ward[place + 1]
         common = int(np.bincount(pair).argmax())
         first, second = (table.wards[code] for code in divmod(common, len(table.wards)))
         notes.append(
@@ -48,18 +48,17 @@ def sequences(rows: Rows, order: NDArray[np.int64], table: StayTable, long_overl
     return notes
 
 
-def _moves(rows: Rows, order: NDArray[np.int64]) -> tuple[int, NDArray[np.int64]]:
-    """Count moves inside a hospital stay; return the places in ``order`` after which more than an hour is missing."""
+def _moves(way: Way) -> tuple[int, NDArray[np.int64]]:
+    """Count moves inside a hospital stay; return the places after which more than an hour is missing."""
 
     def look(block: slice) -> tuple[int, NDArray[np.int64]]:
         """Look at one block, and from it to the next."""
-        which = order[block.start : block.stop + 1]
-        spell, patient, start, end = (every[which] for every in (rows.spell, rows.patient, rows.start, rows.end))
+        _, patient, spell, _, start, end = (every[block.start : block.stop + 1] for every in way)
         same = (spell[1:] == spell[:-1]) & (patient[1:] == patient[:-1])
         gap = same & (end[:-1] != MISSING) & (start[1:] - end[:-1] > HOUR_SECONDS)
         return int(same.sum()), block.start + np.flatnonzero(gap)
 
-    found = in_blocks(order.size, look)
+    found = in_blocks(way.start.size, look)
     places = [np.zeros(0, dtype=np.int64), *(places for _, places in found)]
     return sum(moves for moves, _ in found), np.concatenate(places)
 

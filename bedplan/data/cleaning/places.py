@@ -111,10 +111,12 @@ def _by_length(rows: Rows, wards: int) -> NDArray[np.int64]:
         ward, start, end = rows.ward[block], rows.start[block], rows.end[block]
         known = (end >= start) & (start > UNREADABLE) & ~rows.aside[block] & (ward >= 0)
         stay = np.where(known, end, 0) - np.where(known, start, 0)
-        which = (known, known & (stay < SHORT_SECONDS), known & (stay > DAY_SECONDS))
-        return np.array([np.bincount(ward[one], minlength=wards) for one in which])
+        length = (stay >= SHORT_SECONDS).astype(np.int64) + (stay > DAY_SECONDS)  # 0 short, 1 between, 2 long
+        return np.bincount(3 * np.where(known, ward, wards) + length, minlength=3 * wards + 3)
 
-    return np.sum([np.zeros((3, wards), dtype=np.int64), *in_blocks(rows.start.size, count)], axis=0)
+    counts = np.sum([np.zeros(3 * wards + 3, dtype=np.int64), *in_blocks(rows.start.size, count)], axis=0)
+    short, between, long = counts.reshape(-1, 3)[:wards].T
+    return np.array([short + between + long, short, long])
 
 
 def _on_the_way(rows: Rows, order: NDArray[np.int64], code: int) -> bool:
@@ -147,7 +149,7 @@ def place_notes(rows: Rows, kinds: Mapping[str, str]) -> list[str]:
 
 def leave_note(rows: Rows, is_leave: NDArray[np.bool_], bed_on_leave: str | None) -> list[str]:
     """Ask whether beds are held during leave, where there is leave and nobody said."""
-    if bed_on_leave is not None or not is_leave[rows.ward[rows.live]].any():
+    if bed_on_leave is not None or not is_leave.any() or not is_leave[rows.ward[rows.live]].any():
         return []
     said = "nobody said whether their bed is held or given away: it is counted as given away"
     return [f"Patients go on leave, and {said}. If it is held, more beds are in use than counted here."]

@@ -208,10 +208,11 @@ def _clean(table: StayTable, choices: IntakeChoices, name: str, *, is_asked: boo
     longest = single_rows.longest_stays(rows, wards)
     if table.has_times and not table.knows_patients:
         sequence.drop_copies(rows, [values.codes for values in table.text.values()])
-    everyone = sequence.in_order(rows)
-    kinds = kinds_of_places(rows, everyone, table.wards, choices.places, has_times=table.has_times)
+    way = sequence.in_order(rows)
+    kinds = kinds_of_places(rows, way.row, table.wards, choices.places, has_times=table.has_times)
     is_leave = np.array([kind == LEAVE for kind in kinds.values()])
-    order = sequence.to_look_at(rows, everyone, is_leave)
+    looked_at = sequence.to_look_at(way, is_leave)
+    order = way.row[looked_at]
     if table.knows_patients:
         order = sequence.drop_repeats(rows, order)
     until = seen_until(rows, table.has_times)
@@ -230,12 +231,16 @@ def _clean(table: StayTable, choices: IntakeChoices, name: str, *, is_asked: boo
         order, long_nested = part_nested(rows, order, has_bed, held=choices.bed_on_leave == HELD)
         long_overlaps = sequence.part_overlaps(rows, order) + long_nested
         table.follow_parts()
-        everyone = sequence.in_order(rows) if rows.parts.size else everyone
-    order = everyone[taken(rows.live, everyone)]
+    if rows.parts.size:
+        way = sequence.in_order(rows)
+    else:
+        way.renew(rows, looked_at)
+    way = way.only(taken(rows.live, way.row))
     if table.knows_patients:
-        notes += noticing.sequences(rows, order, table, long_overlaps)
+        notes += noticing.sequences(way, table, long_overlaps)
     set_places_aside(rows, kinds, table.text.get("class"), choices.bed_on_leave)
-    times = times_in_hospital(rows, order, knows_patients=table.knows_patients, knows_spells=table.knows_spells)
+    way = way.only(taken(rows.live, way.row))
+    times = times_in_hospital(way, knows_patients=table.knows_patients, knows_spells=table.knows_spells)
     return _Seen(until, times, notes + place_notes(rows, kinds), kinds)
 
 
@@ -244,21 +249,20 @@ def _finished(table: StayTable, text: TextTable, file: SourceFile, choices: Inta
     rows = table.rows
     live = np.flatnonzero(rows.live)
     if not live.size:
-        raise UnreadableRecords(why_no_row(rows, file.name))
-    live = live[order_of(taken(rows.start, live))]
-    start, end = taken(rows.start, live), taken(rows.end, live)
-    choices.check_days(file.name, _day(start.min()), _day(seen.until - 1))
+        raise UnreadableRecords(why_no_row(rows, text.misfits, file.name))
+    kept = rows.along(taken(live, order_of(taken(rows.start, live))))
+    choices.check_days(file.name, _day(kept.start.min()), _day(seen.until - 1))
     period = find_period(seen.times, seen.until).narrowed(chosen_window(choices.window))
     about, links, changed, stays = side_by_side(
-        lambda: noticing.whole_file(start, end, table, period),
-        lambda: propose_links(table.wards, taken(rows.ward, live), start, period.window),
-        lambda: taken(rows.changed, live),
-        lambda: table.frame(live, start, end),
+        lambda: noticing.whole_file(kept.start, kept.end, table, period),
+        lambda: propose_links(table.wards, kept.ward, kept.start, period.window),
+        lambda: taken(rows.changed, kept.row),
+        lambda: table.frame(kept),
     )
     notes = [*choices.said(), *text.notes, *table.notes, *seen.notes, *about]
     stays["repaired"] = changed
     gone = np.flatnonzero(rows.aside[: rows.file_rows])
-    removed = table.frame(gone)
+    removed = table.frame(rows.as_recorded(gone))
     sentences = np.array(["", *(rule.sentence for rule in RULES.values())], dtype=object)
     removed.insert(0, "reason", pd.Categorical(sentences[rows.reason[gone]]))
     report, unread = count_rows(table, text, seen.until, notes + [link.sentence for link in links])

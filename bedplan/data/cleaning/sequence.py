@@ -15,54 +15,62 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
-    from bedplan.data.values.rows import Rows
+    from bedplan.data.values.rows import Rows, Way
 
 SAME_WARD_GAP_SECONDS = 5 * 60
 BRIDGED_GAP_SECONDS = 60 * 60
 PASS_THROUGH_SECONDS = 30 * 60
 
 
-def in_order(rows: Rows) -> NDArray[np.int64]:
+def in_order(rows: Rows) -> Way:
     """Return the live rows by patient, then start; of two that start together the one with the later end first."""
-    order = np.flatnonzero(rows.live)
-    if any(in_blocks(order.size, lambda block: bool((_steps(rows, order, block) < 0).any()))):
-        order = taken(order, order_of(taken(rows.start, order)))
-        order = taken(order, order_of(taken(rows.patient, order)))
-    tied = np.zeros(order.size + 1, dtype=bool)
-    tied[1:-1] = np.concatenate([tied[:0], *in_blocks(order.size, lambda block: _steps(rows, order, block) == 0)])
+    way = rows.along(np.flatnonzero(rows.live))
+    steps = _steps(way)
+    if steps.min(initial=0) < 0:
+        order = taken(way.row, order_of(way.start))
+        way = rows.along(taken(order, order_of(taken(rows.patient, order))))
+        steps = _steps(way)
+    tied = np.zeros(way.row.size + 1, dtype=bool)
+    tied[1:-1] = steps == 0
     tied[:-1] |= tied[1:]
     which = np.flatnonzero(tied[:-1])
-    together = order[which]
+    if not which.size:
+        return way
+    order, together = way.row.copy(), way.row[which]
     order[which] = together[np.lexsort((-_ends(rows, together), rows.start[together], rows.patient[together]))]
-    return order
+    return rows.along(order)
 
 
-def _steps(rows: Rows, order: NDArray[np.int64], block: slice) -> NDArray[np.int64]:
-    """Return how far it is from each row of a block to the next one: above 0 where patients, or their starts, go up."""
-    which = order[block.start : block.stop + 1]
-    return np.diff(rows.patient[which] * SPAN + rows.start[which])
+def _steps(way: Way) -> NDArray[np.int8]:
+    """Return 1 where the patient, or their start, goes up from one row to the next, −1 where it goes down."""
+
+    def step(block: slice) -> NDArray[np.int8]:
+        """Compare the rows of one block, and the last of it with the next."""
+        moment = way.patient[block.start : block.stop + 1] * SPAN + way.start[block.start : block.stop + 1]
+        return (moment[1:] > moment[:-1]).astype(np.int8) - (moment[1:] < moment[:-1])
+
+    return np.concatenate([np.zeros(0, dtype=np.int8), *in_blocks(way.row.size, step)])
 
 
-def to_look_at(rows: Rows, order: NDArray[np.int64], always: NDArray[np.bool_]) -> NDArray[np.int64]:
-    """Return the stays of patients to whom a rule about stays in a row may apply: in most files few.
+def to_look_at(way: Way, always: NDArray[np.bool_]) -> NDArray[np.int64]:
+    """Return the places of the stays of patients to whom a rule about stays in a row may apply: in most files few.
 
     The rules leave a patient alone whose stays all end, last long enough to be no pass-through, and either begin more
     than an hour after the one before or just when it ends, on another ward. ``always``: wards whose patients are looked
     at whatever their times are.
     """
-    asked = np.zeros(int(rows.patient.max(initial=0)) + 1, dtype=bool)
+    asked = np.zeros(int(way.patient.max(initial=0)) + 1, dtype=bool)
 
     def ask(block: slice) -> None:
         """Note the patients of one block."""
-        which = order[block.start : block.stop + 1]
-        patient, ward, start, end = (every[which] for every in (rows.patient, rows.ward, rows.start, rows.end))
+        _, patient, _, ward, start, end = (every[block.start : block.stop + 1] for every in way)
         asked[patient[(end < start + PASS_THROUGH_SECONDS) | always[ward]]] = True  # a missing end is early, too
         moves = (start[1:] == end[:-1]) & (ward[1:] != ward[:-1])
         near = (start[1:] <= end[:-1] + BRIDGED_GAP_SECONDS) & ~moves
         asked[patient[1:][near & (patient[1:] == patient[:-1])]] = True
 
-    in_blocks(order.size, ask)
-    return order[taken(asked, taken(rows.patient, order))]
+    in_blocks(way.row.size, ask)
+    return np.flatnonzero(taken(asked, way.patient))
 
 
 def _still(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:

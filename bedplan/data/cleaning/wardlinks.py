@@ -82,11 +82,12 @@ def _lives(
     wards: tuple[str, ...], ward: NDArray[np.int64], start: NDArray[np.int64], window: tuple[int, int]
 ) -> list[_Life]:
     """Return the life of every ward with enough stays, in days from the window's start; ``start`` goes up."""
-    inside = (start >= window[0]) & (start < window[1])
-    ward, days = ward[inside], (start[inside] - window[0]) / DAY_SECONDS
+    inside = slice(*np.searchsorted(start, window))
+    ward, start = ward[inside], start[inside]
     stays = np.bincount(ward, minlength=len(wards))
     first, last = np.zeros(len(wards)), np.zeros(len(wards))
-    last[ward], first[ward[::-1]] = days, days[::-1]  # the last one written stays
+    last[ward], first[ward[::-1]] = start, start[::-1]  # the last one written stays
+    first, last = ((moment - window[0]) / DAY_SECONDS for moment in (first, last))
     return [
         _Life(name, float(first[code]), float(last[code]), float(stays[code] / max(last[code] - first[code], 1.0)))
         for code, name in enumerate(wards)

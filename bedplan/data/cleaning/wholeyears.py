@@ -55,13 +55,20 @@ def set_whole_years_aside(rows: Rows, wards: tuple[str, ...]) -> list[str]:
 
 
 def _with_long_stays(rows: Rows, wards: int) -> list[int]:
-    """Return the wards on which a few of many stays last a year or longer."""
+    """Return the wards on which a few of many stays last a year or longer, one of them far longer than any other stay."""
 
     def long_stays(block: slice) -> NDArray[np.int64]:
-        """Return the wards of one block's long stays."""
-        return rows.ward[block][_finished(rows, block) & (rows.end[block] - rows.start[block] >= LEAST_SECONDS)]
+        """Return one block's stays that are longer than most, each with its ward, (2, stays)."""
+        stay = rows.end[block] - rows.start[block]
+        which = np.flatnonzero(stay >= LEAST_LONG_STAY_SECONDS)
+        which = which[_finished(rows, block.start + which)]
+        return np.array([rows.ward[block][which], stay[which]])
 
-    long = np.bincount(np.concatenate([np.zeros(0, int), *in_blocks(rows.start.size, long_stays)]), minlength=wards)
+    ward, stay = np.concatenate([np.zeros((2, 0), int), *in_blocks(rows.start.size, long_stays)], axis=1)
+    is_long, others, longest = stay >= LEAST_SECONDS, np.full(wards, LEAST_LONG_STAY_SECONDS), np.zeros(wards, int)
+    np.maximum.at(others, ward[~is_long], stay[~is_long])
+    np.maximum.at(longest, ward, stay)
+    long = np.bincount(ward[is_long], minlength=wards) * (longest > FAR_LONGER * others)
     if not long.any():
         return []
     counts = in_blocks(

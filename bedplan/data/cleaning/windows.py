@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
-    from bedplan.data.values.rows import Rows
+    from bedplan.data.values.rows import Rows, Way
 
 FEWEST_TIMES = 50  # to know how an export was chosen
 FEWEST_IN = 3.0  # patients in on average; below, nobody in on one day is nothing odd
@@ -108,32 +108,27 @@ def chosen_window(window: tuple[dt.date, dt.date] | None) -> tuple[int, int] | N
     return first, last + DAY_SECONDS
 
 
-def times_in_hospital(
-    rows: Rows, order: NDArray[np.int64], *, knows_patients: bool, knows_spells: bool
-) -> TimesInHospital:
-    """When did each patient come to hospital and leave it? ``order``: rows by patient, then start.
+def times_in_hospital(way: Way, *, knows_patients: bool, knows_spells: bool) -> TimesInHospital:
+    """When did each patient come to hospital and leave it? ``way``: stays by patient, then start.
 
     Exports are mostly chosen by these two, not by when a patient came to a ward.
     """
-    order = order[taken(rows.live, order)]
-    goes_on = np.zeros(order.size, dtype=bool)
+    goes_on = np.zeros(way.start.size, dtype=bool)
 
     def look(block: slice) -> None:
         """Find the moves from one ward to the next within one block, and from it to the next."""
-        which = order[block.start : block.stop + 1]
-        start, end, patient, spell = (every[which] for every in (rows.start, rows.end, rows.patient, rows.spell))
+        _, patient, spell, _, start, end = (every[block.start : block.stop + 1] for every in way)
         together = (end[:-1] != MISSING) & (start[1:] - end[:-1] <= MOVE_GAP_SECONDS)
         if knows_spells:
             together |= spell[1:] == spell[:-1]
         goes_on[block.start + 1 : block.stop + 1] = (patient[1:] == patient[:-1]) & together
 
     if knows_patients:
-        in_blocks(order.size, look)
+        in_blocks(goes_on.size, look)
     heads = np.flatnonzero(~goes_on)
-    tails = np.append(heads[1:], order.size)[: heads.size] - 1
-    moves = float(goes_on.mean()) if order.size else 0.0
-    heads, tails = order[heads], order[tails]
-    return TimesInHospital(taken(rows.start, heads), taken(rows.end, tails), taken(rows.ward, tails), moves)
+    tails = np.append(heads[1:], goes_on.size)[: heads.size] - 1
+    moves = float(goes_on.mean()) if goes_on.size else 0.0
+    return TimesInHospital(taken(way.start, heads), taken(way.end, tails), taken(way.ward, tails), moves)
 
 
 def find_period(times: TimesInHospital, until: int) -> Period:
@@ -150,18 +145,18 @@ def find_period(times: TimesInHospital, until: int) -> Period:
     """
     start, end = times.start, times.end
     finished = end != MISSING
-    first_start = int(start.min())
-    if not finished.any():
+    first_start, stay = int(start.min()), (end - start)[finished]
+    if not stay.size:
         return Period(_midnight(first_start), max(until, _midnight(first_start) + DAY_SECONDS))
-    mean = float((end[finished] - start[finished]).mean())
-    first_end = int(end[finished].min())
-    early, later = int((start < first_end).sum()), int((start >= first_end).sum())
-    thin = early * (until - first_end) < THIN * later * (first_end - first_start)
+    mean = float(stay.mean())
+    first_end = int(end.min(where=finished, initial=np.iinfo(np.int64).max))
+    early = int((start < first_end).sum())
+    thin = early * (until - first_end) < THIN * (start.size - early) * (first_end - first_start)
     held_before = first_end - first_start > mean and thin
     first = _midnight(first_end if held_before else first_start)
     last, held_after = _end(times, first, until, mean)
     last = max(last, first + DAY_SECONDS)
-    return _told(Period(first, last), times, held_before=held_before, held_after=held_after)
+    return _told(Period(first, last), times, stay, held_before=held_before, held_after=held_after)
 
 
 def _midnight(moment: int) -> int:
@@ -189,15 +184,19 @@ def _end(times: TimesInHospital, first: int, until: int, mean: float) -> tuple[i
 def _usually_in(times: TimesInHospital, first: int, last: int) -> float:
     """Return how many were in at midnight in the middle half of this time: the median of a few days."""
     every = max(times.start.size // MOST_LOOKED_AT, 1)  # one patient in so many is enough of a large file
-    start, end = times.start[::every], times.end[::every]
+    start, end = times.start[::every].copy(), times.end[::every].copy()
     nights = np.linspace(first + (last - first) / 4, last - (last - first) / 4, NIGHTS) // DAY_SECONDS * DAY_SECONDS
     present = [((start <= night) & ((end > night) | (end == MISSING))).sum() for night in nights]
     return every * float(np.median(present))
 
 
-def _told(period: Period, times: TimesInHospital, *, held_before: bool, held_after: bool) -> Period:
-    """Leave out what shows too few, and say so; where too few patients are in to tell, change nothing."""
-    stay = (times.end - times.start)[times.end != MISSING]
+def _told(
+    period: Period, times: TimesInHospital, stay: NDArray[np.int64], *, held_before: bool, held_after: bool
+) -> Period:
+    """Leave out what shows too few, and say so; where too few patients are in to tell, change nothing.
+
+    ``stay``: the lengths of those times that are over, in seconds.
+    """
     if times.start.size < FEWEST_TIMES or stay.mean() < DAY_SECONDS:
         return period
     if _usually_in(times, period.first, period.last) < FEWEST_IN:
@@ -205,7 +204,7 @@ def _told(period: Period, times: TimesInHospital, *, held_before: bool, held_aft
     if held_before and held_after:
         return replace(period, chosen_by=ALL_STAYS, note="This file holds all stays that touch its period.")
     span = (period.last - period.first) // DAY_SECONDS
-    days = min(_longest_days(times), int(span * MOST_LEFT_OUT)) if span >= FEWEST_DAYS else 0
+    days = min(_longest_days(times, stay), int(span * MOST_LEFT_OUT)) if span >= FEWEST_DAYS else 0
     moved = times.moves >= MANY_MOVES
     first = period.first + (days * DAY_SECONDS if moved and not held_before else 0)
     last = period.last - (0 if held_after else days * DAY_SECONDS)
@@ -237,11 +236,9 @@ def _note(chosen_by: str, days: int, *, moved: bool) -> str:
     return " ".join([*told, "Ask for all stays that touch the period."])
 
 
-def _longest_days(times: TimesInHospital) -> int:
+def _longest_days(times: TimesInHospital, stay: NDArray[np.int64]) -> int:
     """Within how many days do 99 % of stays end, on the ward where that takes longest? Whole days."""
-    finished = times.end != MISSING
-    ward, stay = times.ward[finished], (times.end - times.start)[finished] / DAY_SECONDS
-    counts = np.bincount(ward)
-    groups = np.split(stay[order_of(ward)], np.cumsum(counts)[:-1])
+    ward = times.ward[times.end != MISSING]
+    groups = np.split(taken(stay, order_of(ward)), np.cumsum(np.bincount(ward))[:-1])
     groups = [group for group in groups if group.size >= FEWEST_TIMES] or [stay]
-    return math.ceil(max(float(np.quantile(group, ALMOST_ALL)) for group in groups))
+    return math.ceil(max(float(np.quantile(group / DAY_SECONDS, ALMOST_ALL)) for group in groups))

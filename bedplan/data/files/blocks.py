@@ -39,28 +39,58 @@ def in_blocks(rows: int, work: Callable[[slice], Done]) -> list[Done]:
     return each(work, [slice(first, min(first + BLOCK_ROWS, rows)) for first in range(0, rows, BLOCK_ROWS)])
 
 
-def taken(values: NDArray, which: NDArray[np.int64]) -> NDArray:
-    """Return ``values[which]``."""
+def taken(values: NDArray, which: NDArray) -> NDArray:
+    """Return ``values[which]``: a view where these rows follow each other, as in a file that is in order already."""
+    if which.size > 1 and 0 <= which[0] == which[-1] - (which.size - 1) and rises(which, np.greater):
+        return values[int(which[0]) : int(which[-1]) + 1]
     found = np.empty(which.size, dtype=values.dtype)
 
     def take(block: slice) -> None:
-        """Fetch one block."""
-        found[block] = values[which[block]]
+        """Fetch one block; of the ways to fetch, wrapping (no row lies outside) is the fastest."""
+        values.take(which[block], out=found[block], mode="wrap")
 
     in_blocks(which.size, take)
     return found
 
 
-def order_of(values: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Return the rows by value, equal ones in their present order, as ``argsort(kind="stable")`` does, ten times as fast.
+def counted(codes: NDArray, many: int) -> NDArray[np.int64]:
+    """Return how many rows have each code from 0 to below ``many``; those with −1 are left out."""
 
-    Value and row number are packed into one number where both fit, because plain numbers sort so much faster.
+    def count(block: slice) -> NDArray[np.int64]:
+        """Count one block."""
+        return np.bincount(codes[block].astype(np.int64) + 1, minlength=many + 1)
+
+    return np.sum([np.zeros(many + 1, dtype=np.int64), *in_blocks(codes.size, count)], axis=0)[1:]
+
+
+def rises(values: NDArray, how: np.ufunc = np.greater_equal) -> bool:
+    """Does every value lie at or above the one before, or, with ``np.greater``, above it? Where none does, the first block shows it."""
+
+    def goes_up(first: int) -> bool:
+        """Whether one block does, and from it to the next."""
+        some = values[first : first + BLOCK_ROWS + 1]
+        return bool(how(some[1:], some[:-1]).all())
+
+    return all(map(goes_up, range(0, values.size, BLOCK_ROWS)))
+
+
+def order_of(values: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Return the rows by value, equal ones in their present order, as ``argsort(kind="stable")`` does."""
+    return ranked(values)[0]
+
+
+def ranked(values: NDArray[np.int64]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Return the rows by value, equal ones in their present order, and the values so; ten times as fast as ``argsort``.
+
+    Value and row number are packed into one number where both fit, because plain numbers sort so much faster. Values
+    that are in order already are not sorted.
     """
-    if not values.size:
-        return np.zeros(0, dtype=np.int64)
+    if rises(values):
+        return np.arange(values.size), values
     bits, lowest = values.size.bit_length(), int(values.min())
     if int(values.max()) - lowest >= 2 ** (63 - bits):
-        return np.argsort(values, kind="stable")
+        order = np.argsort(values, kind="stable")
+        return order, taken(values, order)
     packed = np.empty(values.size, dtype=np.int64)
 
     def pack(block: slice) -> None:
@@ -69,5 +99,4 @@ def order_of(values: NDArray[np.int64]) -> NDArray[np.int64]:
 
     in_blocks(values.size, pack)
     packed.sort()
-    packed &= 2**bits - 1
-    return packed
+    return packed & (2**bits - 1), (packed >> bits) + lowest

@@ -12,7 +12,7 @@ import pandas as pd
 import pyarrow as pa
 import pyarrow.compute as pc
 
-from bedplan.data.files.blocks import taken
+from bedplan.data.files.blocks import counted, taken
 from bedplan.data.files.columns import without_formula
 
 if TYPE_CHECKING:
@@ -61,7 +61,9 @@ def translated(column: Coded, meaning: list[str], width: np.dtype | type[np.int3
 
 def categorical(codes: NDArray[np.int32], names: tuple[str, ...]) -> pd.Categorical:
     """Return codes as categories, those left out that no row has."""
-    used = np.flatnonzero(np.bincount(codes + 1, minlength=len(names) + 1)[1:])
+    is_used = np.zeros(len(names) + 1, dtype=bool)
+    is_used[codes] = True
+    used = np.flatnonzero(is_used[:-1])
     if used.size < len(names):
         table = np.full(len(names) + 1, -1, dtype=np.int32)
         table[used] = np.arange(used.size)
@@ -89,7 +91,7 @@ class Wards:
 def read_wards(column: pa.ChunkedArray, chosen: Mapping[str, str]) -> Wards:
     """Which ward is each row's? Spellings that differ in spaces and capitals only become the commonest of them."""
     raw = coded(column)
-    rows = np.bincount(raw.codes[raw.codes >= 0], minlength=len(raw.meanings))
+    rows = counted(raw.codes, len(raw.meanings))
     spelled = one_spelling(raw.meanings, rows.tolist())
     final = chosen_names(spelled, chosen)
     respelled = rows_of(raw, [a != b for a, b in zip(raw.meanings, spelled, strict=True)])

@@ -12,7 +12,7 @@ import numpy as np
 import pyarrow as pa
 import pyarrow.compute as pc
 
-from bedplan.data.files.blocks import each, in_blocks, order_of
+from bedplan.data.files.blocks import each, ranked
 from bedplan.data.values.codes import coded
 
 if TYPE_CHECKING:
@@ -124,24 +124,11 @@ def _signs(part: pa.Array, width: int) -> NDArray[np.uint8]:
 
 def _dense(numbers: NDArray[np.int64]) -> NDArray[np.int32]:
     """Return numbers counted from 0 without gaps, equal where ``numbers`` are equal."""
-    new = np.zeros(numbers.size, dtype=bool)
-
-    def rises(block: slice) -> bool:
-        """Find where the number goes up within one block, and from it to the next; does it never go down?"""
-        before, after = numbers[block.start : block.stop], numbers[block.start + 1 : block.stop + 1]
-        np.greater(after, before[: after.size], out=new[block.start + 1 : block.stop + 1])
-        return not (after < before[: after.size]).any()
-
-    if all(in_blocks(numbers.size, rises)):  # most exports come by patient: nothing to sort
+    order, values = ranked(numbers)
+    new = np.zeros(order.size, dtype=bool)
+    np.not_equal(values[1:], values[:-1], out=new[1:])
+    if values is numbers:  # in order already, as most exports are by patient
         return np.cumsum(new, dtype=np.int32)
-    order = order_of(numbers)
-
-    def compare(block: slice) -> None:
-        """Find where the sorted number goes up within one block, and from it to the next."""
-        ranked = numbers[order[block.start : block.stop + 1]]
-        new[block.start + 1 : block.stop + 1] = ranked[1:] != ranked[:-1]
-
-    in_blocks(order.size, compare)
     codes = np.empty(order.size, dtype=np.int32)
     codes[order] = np.cumsum(new, dtype=np.int32)
     return codes

@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from bedplan.data.files.blocks import in_blocks
+from bedplan.data.files.blocks import counted, in_blocks, taken
 from bedplan.data.files.dates import DAY_SECONDS, MISSING
 from bedplan.data.files.report import SET_ASIDE, Finding
 from bedplan.data.files.rules import CODES, RULES
@@ -17,6 +17,29 @@ if TYPE_CHECKING:
 
 OPEN_END = np.int64(2**33)  # the year 2242: stands for "still in" while sorting
 SPAN = np.int64(2**34)  # more seconds than any date read here: keeps patients apart in one sorted number
+
+
+class Way(NamedTuple):
+    """Rows fetched in one order, so that each stands beside the next; ``row``: their numbers.
+
+    The columns may be views of the rows' own: they are written by :meth:`renew` only.
+    """
+
+    row: NDArray[np.int64]
+    patient: NDArray[np.int32]
+    spell: NDArray[np.int32]
+    ward: NDArray[np.int32]
+    start: NDArray[np.int64]
+    end: NDArray[np.int64]
+
+    def only(self, which: NDArray[np.bool_]) -> Way:
+        """Return some of the rows, in the same order."""
+        return self if which.all() else Way(*(every[which] for every in self))
+
+    def renew(self, rows: Rows, which: NDArray[np.int64]) -> None:
+        """Take over what was changed since in the rows at these places."""
+        for every, now in zip(self[1:], (rows.patient, rows.spell, rows.ward, rows.start, rows.end), strict=True):
+            every[which] = now[self.row[which]]
 
 
 @dataclass(slots=True)
@@ -62,6 +85,16 @@ class Rows:
             values = getattr(self, name)
             setattr(self, name, np.concatenate((values, values[row])))
         self.parts = np.concatenate((self.parts, row))
+
+    def along(self, order: NDArray[np.int64]) -> Way:
+        """Return some rows in their order."""
+        return Way(
+            order, *(taken(every, order) for every in (self.patient, self.spell, self.ward, self.start, self.end))
+        )
+
+    def as_recorded(self, order: NDArray[np.int64]) -> Way:
+        """Return some rows in their order, with the times that stand in the file."""
+        return self.along(order)._replace(start=taken(self.first_start, order), end=taken(self.first_end, order))
 
     @property
     def live(self) -> NDArray[np.bool_]:
@@ -119,10 +152,15 @@ class Rows:
 
         return np.sum(in_blocks(self.start.size, recorded), axis=0) / DAY_SECONDS
 
-    def findings(self, bed_days: NDArray[np.float64], misfits: int = 0) -> tuple[Finding, ...]:
-        """Return how many rows met each rule, and their bed-days by reason; ``misfits`` were never parsed."""
-        counts = np.bincount(self.reason[: self.file_rows], minlength=len(RULES) + 1)
+    def counts(self, misfits: int) -> NDArray[np.int64]:
+        """Return how many of the file's rows have each reason (0 = none); ``misfits`` were never parsed."""
+        counts = counted(self.reason[: self.file_rows], len(RULES) + 1)
         counts[CODES["misfit"]] += misfits
+        return counts
+
+    def findings(self, bed_days: NDArray[np.float64], misfits: int = 0) -> tuple[Finding, ...]:
+        """Return how many rows met each rule, and their bed-days by reason."""
+        counts = self.counts(misfits)
         return tuple(
             Finding(rule.outcome, rule.sentence, int(counts[CODES[key]]), float(bed_days[CODES[key]]))
             for key, rule in RULES.items()

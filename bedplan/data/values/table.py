@@ -28,6 +28,7 @@ if TYPE_CHECKING:
     from bedplan.data.files.texttable import TextTable
     from bedplan.data.values.choices import IntakeChoices
     from bedplan.data.values.keys import Keys
+    from bedplan.data.values.rows import Way
 
 TIMES = ("start", "end", "admitted", "discharged", "ready")
 FEWEST_DATES = 20  # without a time of day, to say that none has one
@@ -54,24 +55,17 @@ class StayTable:
     dropped: tuple[str, ...]
     notes: tuple[str, ...]
 
-    def frame(
-        self,
-        which: NDArray[np.int64],
-        start: NDArray[np.int64] | None = None,
-        end: NDArray[np.int64] | None = None,
-    ) -> pd.DataFrame:
-        """Return some rows as a table for people; times as recorded unless given."""
-        rows = self.rows
-        columns: dict[str, object] = {"patient_key": self._keys("patient_key", rows.patient, which)}
+    def frame(self, way: Way) -> pd.DataFrame:
+        """Return some rows as a table for people."""
+        columns: dict[str, object] = {"patient_key": self._keys("patient_key", way.patient)}
         if self.knows_spells:
-            columns["spell_key"] = self._keys("spell_key", rows.spell, which)
-        columns["ward"] = codes.categorical(taken(rows.ward, which), self.wards)
-        columns["start"] = as_times(taken(rows.first_start, which) if start is None else start)
-        columns["end"] = as_times(taken(rows.first_end, which) if end is None else end)
+            columns["spell_key"] = self._keys("spell_key", way.spell)
+        columns["ward"] = codes.categorical(way.ward, self.wards)
+        columns["start"], columns["end"] = as_times(way.start), as_times(way.end)
         for name, values in self.text.items():
-            columns[name] = pd.Categorical.from_codes(taken(values.codes, which), dtype=values.dtype)
+            columns[name] = pd.Categorical.from_codes(taken(values.codes, way.row), dtype=values.dtype)
         if self.ready is not None:
-            columns["ready"] = as_times(taken(self.ready, which))
+            columns["ready"] = as_times(taken(self.ready, way.row))
         return pd.DataFrame(columns, copy=False)
 
     def follow_parts(self) -> None:
@@ -84,15 +78,15 @@ class StayTable:
             }
             self.ready = None if self.ready is None else np.concatenate((self.ready, self.ready[parts]))
 
-    def _keys(self, name: str, numbers: NDArray[np.int32], which: NDArray[np.int64]) -> NDArray[np.int64]:
+    def _keys(self, name: str, numbers: NDArray[np.int32]) -> NDArray[np.int64]:
         """Return the random codes of some rows' keys; without keys, the rows' own numbers."""
-        found = taken(numbers, which)
-        return taken(self.random_keys[name], found) if name in self.random_keys else found.astype(np.int64)
+        return taken(self.random_keys[name], numbers) if name in self.random_keys else numbers.astype(np.int64)
 
 
 def as_times(seconds: NDArray[np.int64]) -> NDArray[np.datetime64]:
     """Return seconds as times, missing and unreadable ones as "not a time"."""
-    return np.where(seconds > UNREADABLE, seconds, MISSING).view("datetime64[s]")
+    unreadable = seconds == UNREADABLE
+    return (np.where(unreadable, MISSING, seconds) if unreadable.any() else seconds).view("datetime64[s]")
 
 
 def as_stay_table(text: TextTable, name: str, date_order: str | None, choices: IntakeChoices) -> StayTable:

@@ -55,6 +55,17 @@ def test_order_is_that_of_a_stable_sort(values: list[int]) -> None:
     assert order_of(np.array(values, dtype=np.int64)).tolist() == sorted(range(len(values)), key=values.__getitem__)
 
 
+@given(
+    st.lists(st.integers(-3, 9), max_size=12)
+    | st.tuples(st.integers(-3, 4), st.integers(4, 10)).map(lambda to: list(range(*to)))
+)
+def test_rows_are_fetched_as_numpy_does(which: list[int]) -> None:
+    """Rows in any order, repeated, counted from the end, or one after the other, come out as indexing gives them."""
+    values = np.arange(10) * 7
+
+    assert taken(values, np.array(which, dtype=np.int64)).tolist() == [int(values[place]) for place in which]
+
+
 def test_blocks_cover_every_row_once_and_in_order() -> None:
     """Rows are neither lost nor repeated where blocks meet."""
     rows = 2 * BLOCK_ROWS + 7
