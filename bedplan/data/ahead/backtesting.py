@@ -13,9 +13,11 @@ import pandas as pd
 from bedplan.data.ahead.accuracy import coverage_range
 from bedplan.data.ahead.census_ahead import CensusOutlook, look_at_census
 from bedplan.data.ahead.chances import count_at, ranked_score, share_above, share_within
-from bedplan.data.ahead.last_year import BAND, WIDE_BAND, Backtest
+from bedplan.data.ahead.last_year import BAND, WIDE_BAND
 from bedplan.data.ahead.outlook import forecast_from, past_origins
+from bedplan.data.ahead.plain_ways import SAME_WEEKDAY_DAYS, average_chances, ended_at, same_week_chances
 from bedplan.data.ahead.readings import take_readings
+from bedplan.data.ahead.verdicts import Backtest
 from bedplan.data.wards.silence import silence_notes, without_silences
 from bedplan.models import average_beds
 
@@ -32,7 +34,7 @@ if TYPE_CHECKING:
 MONTHS = 12
 LEAST_DAYS = 730
 FEWEST_EARLIER_ARRIVALS = 100
-YEAR_DAYS, SAME_WEEKDAY_DAYS = 365, 364
+YEAR_DAYS = 365
 SILENT_DAYS = 28
 LEVELS = (0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9, 0.95, 0.99)
 TOP_OF_BAND, TOP_OF_WIDE = (1.0 + BAND) / 2.0, (1.0 + WIDE_BAND) / 2.0
@@ -134,7 +136,6 @@ class _Trial:
         counted = self.readings.arrivals.counted[start:]
         actual, days = self.census[start:], self._picture(chances)
         inside = {level: share_within(chances, actual, level)[counted] for level in LEVELS}
-        average, formula_beds = self._average_formula()
         happened = days[counted]
         return Backtest(
             ward=self.readings.ward,
@@ -142,6 +143,7 @@ class _Trial:
             reading_hour=self.readings.hour,
             coverage_80=float(inside[BAND].mean()),
             coverage_95=float(inside[WIDE_BAND].mean()),
+            drawn_80=float(happened["present"].between(happened["low"], happened["high"]).mean()),
             coverage_80_range=coverage_range(inside[BAND]),
             coverage_95_range=coverage_range(inside[WIDE_BAND]),
             year_ahead_80=float(share_within(ahead, actual, BAND)[counted].mean()),
@@ -151,12 +153,7 @@ class _Trial:
             year_ahead_above_80=float(share_above(ahead, actual, TOP_OF_BAND)[counted].mean()),
             calibration=tuple((level, float(inside[level].mean())) for level in LEVELS),
             calibration_ranges=tuple(coverage_range(inside[level]) for level in LEVELS),
-            score=ranked_score(chances[counted], actual[counted]),
-            middle_error=float((happened["present"] - happened["middle"]).abs().mean()),
-            same_week_error=self._same_week_error(days),
-            average_formula_error=float((happened["present"] - average).abs().mean()),
-            average_formula_beds=formula_beds,
-            days_above_average_formula=int((happened["present"] > formula_beds).sum()),
+            **self._beside_plainer_ways(chances, days),
             days_left_out=int((~counted).sum()),
             full_share=None
             if self.open is None
@@ -181,13 +178,26 @@ class _Trial:
             }
         )
 
-    def _same_week_error(self, days: pd.DataFrame) -> float:
-        """Return how far the same week of the year before was off, where both days count; 0 where none do."""
-        counted = self.readings.arrivals.counted
-        start = self.origins[0]
+    def _beside_plainer_ways(self, chances: Array, days: pd.DataFrame) -> dict[str, float]:
+        """Return how near the band and its middle were, and how near plainer ways were with bands of their own."""
+        start, counted = self.origins[0], self.readings.arrivals.counted
+        beds = None if self.beds is None else self.beds[start:]
+        average, formula_beds = self._average_formula()
         both = counted[start:] & counted[start - SAME_WEEKDAY_DAYS : -SAME_WEEKDAY_DAYS]
-        wrong = (days["present"] - days["same_week_last_year"])[both].abs()
-        return float(wrong.mean()) if both.any() else 0.0
+        which = both if both.any() else counted[start:]
+        told = {
+            "": chances,
+            "same_week_": ended_at(same_week_chances(self.census, counted, self.origins), beds),
+            "average_formula_": ended_at(average_chances(average, len(days), int(self.census.max())), beds),
+        }
+        numbers = {"middle": days["middle"], "same_week": days["same_week_last_year"], "average_formula": average}
+        happened = self.census[start:][which]
+        return {
+            **{f"{name}score": ranked_score(one[which], happened) for name, one in told.items()},
+            **{f"{name}_error": float((days["present"] - one)[which].abs().mean()) for name, one in numbers.items()},
+            "average_formula_beds": formula_beds,
+            "days_above_average_formula": int((days["present"] > formula_beds)[days["counted"]].sum()),
+        }
 
     def _by_month(self, inside: Array) -> tuple[tuple[pd.Timestamp, float], ...]:
         """Return the share of days that count inside the band, month by month; months without such days are left out."""
