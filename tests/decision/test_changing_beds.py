@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from datetime import date
-from fractions import Fraction
 
 import numpy as np
 import pytest
@@ -25,6 +24,7 @@ from bedplan.models import (
     erlang_b,
     simulate_ward,
 )
+from tests.erlang_sum import exact_share
 
 STAY = LengthOfStay(4.0)
 STEADY = Demand(2.0, STAY)
@@ -38,12 +38,8 @@ JULY = Closure.between(10, date(2025, 7, 1), date(2025, 7, 30))
 
 
 def share(beds: int, load: int = 8) -> float:
-    """Return Erlang's share from its defining sum, in exact fractions (Erlang 1917)."""
-    term, total = Fraction(1), Fraction(1)
-    for bed in range(1, beds + 1):
-        term = term * load / bed
-        total += term
-    return float(term / total)
+    """Return Erlang's share in a ward of so many beds."""
+    return float(exact_share(load, beds))
 
 
 def curve_with(changes: BedChanges, demand: Demand = STEADY, model: str = "erlang_loss") -> BedCurve:

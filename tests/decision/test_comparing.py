@@ -10,18 +10,10 @@ import pytest
 from bedplan.decision import TurnAwayLimit, Ward, compare_wards, patients_per_year, spared_by_next_bed
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay, erlang_loss
+from tests.erlang_sum import exact_share
 
 # name: (beds, arrivals a day, mean stay in days)
 WARDS = {"Merlin": (8, 1.25, 4), "Curlew": (20, 3.75, 4), "Dunlin": (12, 2.5, 3), "Heron": (60, 2.0, 2)}
-
-
-def exact_share(load: Fraction, beds: int) -> Fraction:
-    """Return Erlang's share from its defining sum, in exact fractions."""
-    term, total = Fraction(1), Fraction(1)
-    for bed in range(1, beds + 1):
-        term = term * load / bed
-        total += term
-    return term / total
 
 
 def exact_patients(name: str, more: int = 0) -> float:

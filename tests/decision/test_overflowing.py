@@ -2,9 +2,6 @@
 
 from __future__ import annotations
 
-import itertools
-import math
-
 import numpy as np
 import pytest
 
@@ -12,6 +9,7 @@ from bedplan.decision import Ward, hold_back_effect, overflow_bay_effect, overfl
 from bedplan.decision.overflowing import BAY_STAYS_NOTE, STAYS_ALIKE_NOTE, STEADY_MONTHS_NOTE
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import BookedList, Demand, LengthOfStay
+from tests.erlang_sum import share
 
 WINTER = np.array([1.4, 1.3, 1.1, 1.0, 0.9, 0.7, 0.7, 0.7, 0.9, 1.0, 1.1, 1.2])
 # a 365-day year without 31 December
@@ -20,12 +18,6 @@ MONTH_DAYS = np.array([31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 30])
 SHORT = LengthOfStay(0.02)
 FACTORS = WINTER / (WINTER @ MONTH_DAYS / 364)
 WEIGHTS = MONTH_DAYS * FACTORS / 364
-
-
-def erlang(load: float, beds: int) -> float:
-    """Return Erlang's share from its defining sum (Erlang 1917)."""
-    terms = list(itertools.accumulate(range(1, beds + 1), lambda term, bed: term * load / bed, initial=1.0))
-    return terms[-1] / math.fsum(terms)
 
 
 def ward(name: str, beds: int, load: float, stay_days: float = 4.0, **rhythm: object) -> Ward:
@@ -37,10 +29,10 @@ def test_a_host_without_patients_is_more_beds() -> None:
     """Overflow into a ward nobody else uses is a ward of all the beds: B(a, both), and Little's outliers."""
     effect = overflow_effect(ward("Plover", 8, 9.0), ward("Teal", 5, 0.0))
 
-    assert effect.home_patients.share_before == pytest.approx(erlang(9.0, 8), rel=1e-7)
-    assert effect.home_patients.share_after == pytest.approx(erlang(9.0, 13), rel=1e-7)
-    assert effect.home_patients.before == pytest.approx(365 * 9 / 4 * erlang(9.0, 8), rel=1e-7)
-    assert effect.outliers == pytest.approx(9.0 * (erlang(9.0, 8) - erlang(9.0, 13)), rel=1e-7)
+    assert effect.home_patients.share_before == pytest.approx(share(9.0, 8), rel=1e-7)
+    assert effect.home_patients.share_after == pytest.approx(share(9.0, 13), rel=1e-7)
+    assert effect.home_patients.before == pytest.approx(365 * 9 / 4 * share(9.0, 8), rel=1e-7)
+    assert effect.outliers == pytest.approx(9.0 * (share(9.0, 8) - share(9.0, 13)), rel=1e-7)
     assert effect.host_patients.after == 0.0
 
 
@@ -50,17 +42,17 @@ def test_months_are_read_one_by_one_and_weighed_by_patients() -> None:
     host = Ward("Teal", 5, Demand(0.0, SHORT))
     effect = overflow_effect(home, host)
 
-    expected = [sum(w * erlang(8.0 * f, beds) for w, f in zip(WEIGHTS, FACTORS, strict=True)) for beds in (8, 13)]
+    expected = [sum(w * share(8.0 * f, beds) for w, f in zip(WEIGHTS, FACTORS, strict=True)) for beds in (8, 13)]
     assert effect.home_patients.share_before == pytest.approx(expected[0], rel=1e-3)
     assert effect.home_patients.share_after == pytest.approx(expected[1], rel=1e-3)
     # a year read at its mean load would hide the winter
-    assert expected[1] > 1.5 * erlang(8.0, 13)
+    assert expected[1] > 1.5 * share(8.0, 13)
 
 
 def test_the_hosts_patients_keep_their_own_months() -> None:
     """A seasonal host is weighed by its own patients: with nobody sent, it fares after as before."""
     effect = overflow_effect(Ward("Plover", 8, Demand(0.0, SHORT)), Ward("Teal", 9, Demand(400.0, SHORT, WINTER)))
-    expected = sum(w * erlang(8.0 * f, 9) for w, f in zip(WEIGHTS, FACTORS, strict=True))
+    expected = sum(w * share(8.0 * f, 9) for w, f in zip(WEIGHTS, FACTORS, strict=True))
 
     assert effect.host_patients.share_before == pytest.approx(expected, rel=1e-3)
     assert effect.host_patients.share_after == pytest.approx(effect.host_patients.share_before, rel=1e-7)
@@ -82,8 +74,8 @@ def test_overflow_helps_the_home_and_costs_the_host() -> None:
 
     assert effect.home_patients.after < effect.home_patients.before
     assert effect.host_patients.after > effect.host_patients.before
-    assert effect.host_patients.share_before == pytest.approx(erlang(9.0, 12), rel=1e-7)
-    assert both >= 365 * 19 / 4 * erlang(19.0, 22)
+    assert effect.host_patients.share_before == pytest.approx(share(9.0, 12), rel=1e-7)
+    assert both >= 365 * 19 / 4 * share(19.0, 22)
     assert effect.notes == (STEADY_MONTHS_NOTE,)
 
 
@@ -94,16 +86,16 @@ def test_large_wards_with_unlike_stays_say_what_they_leave_out() -> None:
 
     assert STAYS_ALIKE_NOTE not in small.notes
     assert STAYS_ALIKE_NOTE in large.notes
-    assert large.home_patients.share_before == pytest.approx(erlang(38.0, 40), rel=1e-7)
+    assert large.home_patients.share_before == pytest.approx(share(38.0, 40), rel=1e-7)
 
 
 def test_one_ward_with_a_bay_is_a_larger_ward() -> None:
     """A bay that one ward has to itself makes it the same ward with more beds."""
     effect = overflow_bay_effect([ward("Plover", 10, 11.0)], 4)
 
-    assert effect.patients.share_before == pytest.approx(erlang(11.0, 10), rel=1e-7)
-    assert effect.patients.share_after == pytest.approx(erlang(11.0, 14), rel=1e-4)
-    assert effect.patients.after == pytest.approx(365 * 11 / 4 * erlang(11.0, 14), rel=1e-4)
+    assert effect.patients.share_before == pytest.approx(share(11.0, 10), rel=1e-7)
+    assert effect.patients.share_after == pytest.approx(share(11.0, 14), rel=1e-4)
+    assert effect.patients.after == pytest.approx(365 * 11 / 4 * share(11.0, 14), rel=1e-4)
     assert effect.notes == (STEADY_MONTHS_NOTE,)
 
 
@@ -117,7 +109,7 @@ def test_a_bay_refuses_what_is_known_of_it() -> None:
     assert effect.patients.after == pytest.approx(sum(one.after for one in effect.by_ward))
     assert all(one.after < one.before for one in effect.by_ward)
     assert none.patients.share_after == pytest.approx(none.patients.share_before, rel=1e-6)
-    assert effect.patients.share_before == pytest.approx((8 * erlang(8.0, 10) + 10 * erlang(10.0, 10)) / 18, rel=1e-7)
+    assert effect.patients.share_before == pytest.approx((8 * share(8.0, 10) + 10 * share(10.0, 10)) / 18, rel=1e-7)
 
 
 def test_patients_count_once_however_long_they_stay() -> None:
@@ -126,7 +118,7 @@ def test_patients_count_once_however_long_they_stay() -> None:
     effect = overflow_bay_effect([quick, slow], 0)
 
     # 8 patients a day and 2
-    assert effect.patients.share_before == pytest.approx(0.8 * erlang(8.0, 10) + 0.2 * erlang(10.0, 10), rel=1e-7)
+    assert effect.patients.share_before == pytest.approx(0.8 * share(8.0, 10) + 0.2 * share(10.0, 10), rel=1e-7)
     assert effect.patients.share_after == pytest.approx(effect.patients.share_before, rel=1e-6)
     assert effect.notes == (STEADY_MONTHS_NOTE, BAY_STAYS_NOTE)
 
@@ -136,9 +128,9 @@ def test_a_bay_follows_each_wards_own_season() -> None:
     winter, steady = Ward("Plover", 6, Demand(6.0 / 0.02, SHORT, month_factors=WINTER)), ward("Teal", 6, 5.0, 0.02)
     effect = overflow_bay_effect([winter, steady], 0)
 
-    expected = sum(w * erlang(6.0 * f, 6) for w, f in zip(WEIGHTS, FACTORS, strict=True))
+    expected = sum(w * share(6.0 * f, 6) for w, f in zip(WEIGHTS, FACTORS, strict=True))
     assert effect.by_ward[0].share_after == pytest.approx(expected, rel=1e-3)
-    assert effect.by_ward[1].share_after == pytest.approx(erlang(5.0, 6), rel=1e-6)
+    assert effect.by_ward[1].share_after == pytest.approx(share(5.0, 6), rel=1e-6)
 
 
 def held_back_by_hand(loads: tuple[float, float], beds: int, held_back: int) -> tuple[float, float]:

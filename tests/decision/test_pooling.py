@@ -16,6 +16,7 @@ from hypothesis import strategies as st
 from bedplan.decision import BedChanges, Closure, TurnAwayLimit, Ward, decide, pool_wards, pooling_effect
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import BookedList, Demand, LengthOfStay, offered_load_by_hour
+from tests.erlang_sum import share
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -104,11 +105,8 @@ def test_sharing_with_long_stays_can_turn_more_away_in_total() -> None:
     wards = [ward("Heron", 20, 10.0, 0.5), ward("Plover", 6, 10.0, 50.0)]
     effect = pooling_effect(wards, "erlang_loss")
 
-    def erlang(load: float, beds: int) -> float:
-        return load**beds / math.factorial(beds) / sum(load**n / math.factorial(n) for n in range(beds + 1))
-
-    before = 365 * (20 * erlang(10.0, 20) + 0.2 * erlang(10.0, 6))
-    after = 365 * 20.2 * erlang(20.0, 26)
+    before = 365 * (20 * share(10.0, 20) + 0.2 * share(10.0, 6))
+    after = 365 * 20.2 * share(20.0, 26)
     assert effect.patients.before == pytest.approx(before, rel=1e-9)
     assert effect.patients.after == pytest.approx(after, rel=1e-9)
     assert after > before

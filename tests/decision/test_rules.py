@@ -12,6 +12,7 @@ from scipy import optimize
 from bedplan.decision import OccupancyLimit, OverfullLimit, TurnAwayLimit, WaitLimit, decide
 from bedplan.errors import ImpossibleFigure, TargetOutOfReach
 from bedplan.models import BedCurve, Demand, LengthOfStay, Waits, erlang_loss
+from tests.erlang_sum import exact_share
 
 # Beds that keep the share turned away to a limit, and the occupancy in percent that results, for steady demand.
 # Erlang B worked by hand (Erlang 1917, insensitive to the spread of stay); re-computed below from its defining sum.
@@ -34,15 +35,6 @@ LIMITS = (0.05, 0.02, 0.01)
 # Beds, and the share in percent turned away when they really run with 85 % in use. Erlang B re-computed; the finding
 # itself is de Bruin et al. 2010, Annals of Operations Research 178:23-43.
 RUNNING_AT_85_PERCENT = {8: 38.6, 10: 32.7, 20: 17.3, 28: 11.8, 30: 10.8, 40: 7.4, 60: 4.0, 100: 1.52, 200: 0.25}
-
-
-def exact_share(load: Fraction, beds: int) -> Fraction:
-    """Return Erlang's share from its defining sum, in exact fractions."""
-    term, total = Fraction(1), Fraction(1)
-    for bed in range(1, beds + 1):
-        term = term * load / bed
-        total += term
-    return term / total
 
 
 def share_by_sum(load: float, beds: int) -> float:

@@ -13,6 +13,7 @@ from hypothesis import strategies as st
 from bedplan.decision import BedChanges, Closure, Ward, share_beds
 from bedplan.errors import ImpossibleFigure
 from bedplan.models import Demand, LengthOfStay
+from tests.erlang_sum import share
 
 NAMES = ("Plover", "Teal", "Curlew")
 
@@ -20,12 +21,6 @@ NAMES = ("Plover", "Teal", "Curlew")
 def ward(name: str, beds: int, load: float, stay_days: float = 4.0, **figures: object) -> Ward:
     """Return a ward of steady demand."""
     return Ward(name, beds, Demand(load / stay_days, LengthOfStay(stay_days)), **figures)
-
-
-def share(load: float, beds: int) -> float:
-    """Return Erlang's share from its defining sum (Erlang 1917)."""
-    terms = list(itertools.accumulate(range(1, beds + 1), lambda term, bed: term * load / bed, initial=1.0))
-    return terms[-1] / math.fsum(terms)
 
 
 def patients(one: Ward, beds: int) -> float:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-from fractions import Fraction
 
 import numpy as np
 import pytest
@@ -18,15 +17,7 @@ from bedplan.models.chains.settling import (
     share_full_by_day,
     shares_in_force,
 )
-
-
-def loss(load: int, beds: int) -> float:
-    """Return Erlang's share from its defining sum, in exact fractions (Erlang 1917)."""
-    term, total = Fraction(1), Fraction(1)
-    for bed in range(1, beds + 1):
-        term = term * load / bed
-        total += term
-    return float(term / total)
+from tests.erlang_sum import share
 
 
 def test_beds_that_never_change_are_erlangs() -> None:
@@ -34,7 +25,7 @@ def test_beds_that_never_change_are_erlangs() -> None:
     counts = np.array([0, 1, 5, 8, 12, 30])
     found = share_full_by_day(days_of(Demand(2.0, LengthOfStay(4.0))), np.tile(counts, (364, 1)))
 
-    assert found == pytest.approx(np.tile([loss(8, int(beds)) for beds in counts], (364, 1)), rel=1e-6)
+    assert found == pytest.approx(np.tile([share(8, int(beds)) for beds in counts], (364, 1)), rel=1e-6)
 
 
 @pytest.mark.parametrize("stay_days", [0.5, 4.0, 60.0])
@@ -76,7 +67,7 @@ def test_closures_in_force_are_a_poisson_count() -> None:
 def test_settled_at_once_is_the_mixture_of_erlangs_shares() -> None:
     """Erlang's share at each count of open beds, by its chance; never fewer than no beds."""
     closures = AtRandom(5, 0.6, 20.0)
-    expected = sum(math.exp(-0.6) * 0.6**k / math.factorial(k) * loss(8, max(12 - 5 * k, 0)) for k in range(12))
+    expected = sum(math.exp(-0.6) * 0.6**k / math.factorial(k) * share(8, max(12 - 5 * k, 0)) for k in range(12))
 
     assert share_full_as_if_settled(8.0, 12, closures) == pytest.approx(expected, rel=1e-5)
 
