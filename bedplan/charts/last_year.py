@@ -9,13 +9,12 @@ import numpy as np
 import pandas as pd
 
 from bedplan import wording
-from bedplan.charts.style import Datasets, Spec, finished
+from bedplan.charts.style import APART, Datasets, Spec, finished
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
 
-APART = {"labelOverlap": "parity", "labelSeparation": 4}
 LIGHTEST, DARKEST = "#FFFFFF", "#08306B"  # of a cell: never full, always full
 INK = (("#000000", 0.655), ("#FFFFFF", 1.0))  # of the digits in it, up to which share: 4.5:1 on every colour between
 ROOM_FOR_DAYS = 82  # pixels left of the cells, alike in both pictures, so that they line up

@@ -8,7 +8,7 @@ import altair as alt
 import pandas as pd
 
 from bedplan import wording
-from bedplan.charts.style import GREY, PERCENT, Datasets, Spec, finished, scale_of
+from bedplan.charts.style import APART, GREY, PERCENT, Datasets, Spec, finished, scale_of
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -28,7 +28,7 @@ def _months() -> Spec:
         "month:O",
         scale=alt.Scale(domain=list(wording.MONTHS_SHORT)),
         title=None,
-        axis=alt.Axis(labelAngle=0, labelAlign="center", labelBaseline="top"),
+        axis=alt.Axis(labelAngle=0, labelAlign="center", labelBaseline="top", **APART),
     )
     share = alt.Y(
         "share:Q",

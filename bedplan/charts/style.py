@@ -14,6 +14,7 @@ Spec = dict[str, Any]
 Datasets = dict[str, pd.DataFrame]
 
 PERCENT = "format(100 * datum.value, '.3~r') + '\u00a0%'"  # how an axis writes a share: as wording.percent does
+APART = {"labelOverlap": "parity", "labelSeparation": 4}  # names on an axis: every other one where they would touch
 GREY = "#787878"  # near 4.3:1 on white and on near-black alike
 CONFIG: Spec = {
     "view": {"stroke": None},

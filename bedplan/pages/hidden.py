@@ -66,20 +66,26 @@ def show(name: str) -> None:
     )
 
 
-controls.show_origin()
-ward_name = controls.choose_ward()
-with st.sidebar:
+def ask_share(name: str) -> None:
+    """Ask which share of those who could not be given a bed is written down in the lists of them."""
     share = st.slider(
         "Patients not given a bed: share written down",
         10,
         100,
-        round(100 * loaded.recorded_share(ward_name)),
+        round(100 * loaded.recorded_share(name)),
         5,
         format="%d %%",
-        key=f"recorded_{ward_name}",
+        key=f"recorded_{name}",
         help="How many of a hundred patients who could not be given a bed here are written down in the file?",
     )
-    loaded.use_recorded_share(ward_name, share / 100)
+    loaded.use_recorded_share(name, share / 100)
+
+
+controls.show_origin()
+ward_name = controls.choose_ward()
+if loaded.files().refusals is not None or loaded.files().cancellations is not None:
+    with st.sidebar:
+        ask_share(ward_name)
 try:
     show(ward_name)
 except BedplanError as error:

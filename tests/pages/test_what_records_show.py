@@ -159,6 +159,7 @@ def test_records_alone_tell_little(open_app: Callable[..., AppTest], stays_csv: 
     go(app, "hidden")
     assert not app.exception
     assert "can't tell" in app.table[0].value.to_csv()
+    assert not app.slider  # nothing is asked about a list that nobody brought
 
 
 def test_last_year_is_checked_on_paper(open_app: Callable[..., AppTest], stays_csv: bytes) -> None:

@@ -26,10 +26,8 @@ NAMES = {
 AS_GOOD, RULED_OUT = 2.0, 10.0
 CLEARLY_LONGER, FEWEST_IN_GROUP = 1.5, 0.05  # two groups worth telling apart; common practice, no source
 EXPLAINED = (
-    "The records' line is the product limit: patients still in count for what was seen of them. "
-    "AIC weighs how likely a curve makes the recorded stays against how many figures it needs; 10 behind is as good as "
-    "ruled out. Beds hang on the mean stay, which is the records' own; the curve's shape acts on waiting, on how late a "
-    "busy season is felt, and on patients who come together."
+    "The records' line is the product limit: patients still in count for what was seen of them. 10 behind by AIC is as good "
+    "as ruled out. Beds hang on the mean stay; the shape acts on waiting, on how late a busy season is felt, and on groups."
 )
 SHOWN_UNTIL = 0.01  # the picture ends where so few are still in
 PICTURE_POINTS = 240
