@@ -237,8 +237,9 @@ def _uncertainty(arrivals: Arrivals, curve: StayCurve, beds: float, hidden: Hidd
         # A range that reaches far up must not look narrow because it hardly reaches down.
         width = max(math.log(max(high / max(low, 1e-9), 1.0)) / 2, math.log(max(bounds[1] / per_day, 1.0)))
         arrivals_error = max(arrivals_error, width / 1.96)
-    stay_error = curve.mean_standard_error / max(curve.mean_days, 1e-9)
-    spread, both = math.exp(1.96 * stay_error), math.exp(1.96 * math.hypot(arrivals_error, stay_error))
+    spread = curve.mean_spread
+    stay_error = math.log(spread) / 1.96
+    both = math.exp(1.96 * math.hypot(arrivals_error, stay_error))
     return Uncertainty(
         arrivals_per_day=(low, high),
         mean_stay_days=(curve.mean_days / spread, curve.mean_days * spread),

@@ -12,7 +12,7 @@ from bedplan.data.wards.stay_families import StayFamilies, stay_families
 from bedplan.data.wards.stays import stay_curve
 from bedplan.data.wards.survival import product_limit
 from bedplan.errors import UnreadableRecords
-from bedplan.models import LengthOfStay, SeenStays, StayFit, fit_stay
+from bedplan.models import MODELS, Demand, LengthOfStay, SeenStays, StayFit, fit_stay
 from tests.data.made_wards import as_records
 
 if TYPE_CHECKING:
@@ -179,3 +179,36 @@ def test_no_stays_are_refused() -> None:
     """A ward where nobody has left yet can't be judged, and the message says why."""
     with pytest.raises(UnreadableRecords, match="has ended"):
         stay_families(as_records(np.array([1.0, 2.0]), np.array([2_000.0, 2_000.0]), 10), "Heron")
+
+
+@pytest.mark.parametrize(
+    "groups",
+    [
+        LengthOfStay.two_streams(0.12, LengthOfStay(7.8, 0.75), LengthOfStay(37.0, 0.6)),
+        LengthOfStay.two_streams(0.4, LengthOfStay(0.5, 0.5), LengthOfStay(6.0, 0.5)),
+        LengthOfStay.two_streams(0.3, LengthOfStay(1.0, 0.6), LengthOfStay(12.0, 0.7)),
+    ],
+)
+@pytest.mark.parametrize("line", ["seasonal_loss", "waiting", "unlimited_beds"])
+def test_one_curve_stands_for_two_groups(groups: LengthOfStay, line: str) -> None:
+    """A curve with the mean and spread of two groups gives the worst month within 5 % of theirs, less than a bed: why the plan keeps one.
+
+    Seasons, a busy start of the week and patients who come in twos: all that a stay's shape can act on.
+    """
+    winter = np.array([1.24, 1.15, 1.02, 0.95, 0.92, 0.88, 0.86, 0.84, 0.92, 1.0, 1.06, 1.16])
+    week, beds, worst = (1.2, 1.1, 1.05, 1.0, 1.0, 0.85, 0.8), np.array([35, 36, 37]), []
+    until = np.linspace(0.0, 200.0, 800)
+    curves = [LengthOfStay(groups.mean_days, groups.variation, shape) for shape in ("lognormal", "gamma")]
+    one = min(curves, key=lambda curve: float(np.abs(curve.survival(until) - groups.survival(until)).sum()))
+    for stay in (groups, one):
+        demand = Demand(
+            24.0 / stay.mean_days,
+            stay,
+            month_factors=tuple(winter / winter.mean()),
+            weekday_factors=week,
+            clustering=2.0,
+        )
+        worst.append(MODELS[line](demand, beds).by_month.max(axis=0))
+
+    assert worst[1] == pytest.approx(worst[0], rel=0.05)
+    assert worst[0][2] < worst[1][1] < worst[0][0]
