@@ -214,13 +214,36 @@ def _notes(text: TextTable, table: pd.DataFrame) -> list[str]:
             f"{_rows_say(shut)} more closed beds than staffed ones: no bed counts as open there. If the staffed beds are "
             "already without the closed ones, leave that column out."
         )
-    same = table["ward"].to_numpy()[1:] == table["ward"].to_numpy()[:-1]
-    reach = table.groupby("ward")["to"].cummax().to_numpy()
-    overlapping = sorted(set(table["ward"].to_numpy()[1:][same & (table["from"].to_numpy()[1:] <= reach[:-1])]))
+    overlapping = [ward for ward, rows in table.groupby("ward", sort=True) if _overlap(rows)]
     if overlapping:
         told = ", ".join(overlapping[:5]) + (" and others" if len(overlapping) > 5 else "")
         notes.append(f"Periods overlap on {told}: on such days the row that starts later counts.")
+    gaps = [(ward, *gap) for ward, rows in table.groupby("ward", sort=True) for gap in _gaps(rows)]
+    if gaps:
+        told = ", ".join(f"{ward} from {first:%Y-%m-%d} to {last:%Y-%m-%d}" for ward, first, last in gaps[:5])
+        notes.append(
+            f"No row names the beds of {told}{' and others' if len(gaps) > 5 else ''}: those of the row before are taken. "
+            "If a ward was closed then, add a row with 0 beds."
+        )
     return notes
+
+
+def _overlap(rows: pd.DataFrame) -> bool:
+    """Do periods of one ward, oldest first, overlap? One without a last day runs to the next that has none either."""
+    last_day = pd.Timestamp(OPEN_ENDS[1])
+    since, is_open = rows["from"].to_numpy(), (rows["to"] == last_day).to_numpy()
+    ended = rows["to"].where(~is_open, pd.Timestamp(OPEN_ENDS[0]) - pd.Timedelta(days=1)).cummax().to_numpy()
+    after_open = np.logical_or.accumulate(is_open)[:-1]
+    return bool(((since[1:] <= ended[:-1]) | (after_open & (~is_open[1:] | (since[1:] == since[:-1])))).any())
+
+
+def _gaps(rows: pd.DataFrame) -> list[tuple[pd.Timestamp, pd.Timestamp]]:
+    """Return first and last day of each time between periods of one ward, oldest first, that none of them covers."""
+    day = pd.Timedelta(days=1)
+    reach = rows["to"].cummax().shift()
+    return [
+        (last + day, first - day) for last, first in zip(reach[1:], rows["from"][1:], strict=True) if first > last + day
+    ]
 
 
 def _rows_say(rows: int) -> str:

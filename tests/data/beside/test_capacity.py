@@ -242,3 +242,37 @@ def test_an_end_far_away_is_open(end: str) -> None:
     capacity = read_capacity(f"ward,from,to,staffed_beds\nTeal,2024-01-01,{end},12\n".encode())
 
     assert capacity.table["to"].tolist() == [pd.Timestamp("2100-12-31")]
+
+
+@pytest.mark.parametrize(
+    ("rows", "overlap"),
+    [
+        (["Alder,2022-01-01,,24", "Alder,2023-07-01,,26"], False),  # a list of changes
+        (["Alder,2022-01-01,2023-07-01,24", "Alder,2023-07-01,,26"], True),  # both name 1 July
+        (["Alder,2022-01-01,,24", "Alder,2023-07-01,2023-07-31,20"], True),  # a month's change within the usual
+        (["Alder,2022-01-01,,24", "Alder,2022-01-01,,26"], True),  # which?
+        (["Alder,2022-01-01,2022-12-31,24", "Birch,2022-06-01,,26"], False),
+    ],
+)
+def test_only_periods_that_overlap_are_said_to(rows: list[str], overlap: bool) -> None:
+    """A row without a last day runs to the next row's first day, unless that one ends and gives the beds back."""
+    beds = read_capacity("\n".join(["ward,from,to,staffed", *rows]).encode())
+
+    assert any("overlap" in note for note in beds.notes) == overlap
+
+
+def test_a_gap_between_periods_is_said() -> None:
+    """June is in no row: the beds of May are taken, and the note names ward and days; no gap, no note."""
+    rows = (
+        b"ward,from,to,staffed\nAlder,2022-01-01,2023-05-31,24\nAlder,2023-07-01,2024-12-31,20\nBirch,2022-01-01,,9\n"
+    )
+    beds = read_capacity(rows)
+
+    assert beds.open_beds_by_day("Alder", pd.DatetimeIndex(["2023-06-15"])).tolist() == [24]
+    assert [note for note in beds.notes if "No row names" in note] == [
+        (
+            "No row names the beds of Alder from 2023-06-01 to 2023-06-30: those of the row before are taken. "
+            "If a ward was closed then, add a row with 0 beds."
+        )
+    ]
+    assert not any("No row" in note for note in read_capacity(rows.replace(b"2023-05-31", b"2023-06-30")).notes)
