@@ -179,6 +179,17 @@ def test_overlapping_stays_are_cut_where_the_next_one_starts(read: Read) -> None
     assert any("longer than 12 hours" in note for note in records.report.notes)
 
 
+@pytest.mark.parametrize(("until", "is_long"), [("16:00", False), ("21:59", False), ("22:01", True)])
+def test_overlaps_of_more_than_twelve_hours_are_told(read: Read, until: str, is_long: bool) -> None:
+    """Six hours or nearly twelve on two wards may be a late entry; more is told, for somebody to look at."""
+    records = read(
+        *PLAIN, f"b,b,Heron,2024-01-05 10:00,2024-01-07 {until}", "b,b,Teal,2024-01-07 10:00,2024-01-09 12:00"
+    )
+
+    assert reasons(records) == {"overlap": 1}
+    assert any("1 overlaps" in note for note in records.report.notes) == is_long
+
+
 def test_a_stay_is_parted_round_one_inside_it(read: Read) -> None:
     """Where one stay covers another whole, the patient is in one bed at a time and comes back."""
     records = read(*PLAIN, "b,b,Heron,2024-01-05 10:00,2024-01-09 10:00", "b,b,Teal,2024-01-06 12:00,2024-01-07 12:00")
@@ -195,6 +206,29 @@ def test_a_gap_of_up_to_an_hour_is_bridged(read: Read) -> None:
 
     assert reasons(records) == {"bridged": 1}
     assert ("Heron", "01-05 10:00", "01-07 10:40") in stay_times(records)
+
+
+@pytest.mark.parametrize(("back", "admissions"), [("10:20", 1), ("10:59", 1), ("11:00", 1), ("11:01", 2)])
+def test_back_on_the_same_ward_within_an_hour_is_one_admission(read: Read, back: str, admissions: int) -> None:
+    """Two beds of one ward with a gap between them are one stay, no move from the ward to itself."""
+    records = read(*PLAIN, "b,b,Teal,2024-01-05 10:00,2024-01-07 10:00", f"b,b,Teal,2024-01-07 {back},2024-01-09 12:00")
+
+    assert len(records.of_ward("Teal")) == admissions
+    assert reasons(records) == ({"joined": 1} if admissions == 1 else {})
+    if admissions == 1:
+        assert ("Teal", "01-05 10:00", "01-09 12:00") in stay_times(records)
+
+
+def test_a_short_way_out_and_back_is_one_admission(read: Read) -> None:
+    """Twenty minutes in theatre and back to the same ward: one stay, from the first start to the last end."""
+    records = read(
+        *PLAIN,
+        "b,b,Teal,2024-01-05 10:00,2024-01-07 10:00",
+        "b,b,Discharge Lounge,2024-01-07 10:00,2024-01-07 10:20",
+        "b,b,Teal,2024-01-07 10:20,2024-01-09 12:00",
+    )
+
+    assert [stay for stay in stay_times(records) if stay[0] == "Teal"] == [("Teal", "01-05 10:00", "01-09 12:00")]
 
 
 def test_a_longer_gap_inside_a_hospital_stay_is_told(read: Read) -> None:

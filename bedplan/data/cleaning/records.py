@@ -226,7 +226,7 @@ def _clean(table: StayTable, choices: IntakeChoices, name: str, *, is_asked: boo
             sequence.hold_beds(rows, order, is_leave)
         order = sequence.join_same_ward(rows, order)
         if table.has_times:
-            order = sequence.merge_pass_throughs(rows, order)
+            order = sequence.join_same_ward(rows, sequence.merge_pass_throughs(rows, order))
         has_bed = np.array([kind not in PASSED_THROUGH for kind in kinds.values()])
         order, long_nested = part_nested(rows, order, has_bed, held=choices.bed_on_leave == HELD)
         long_overlaps = sequence.part_overlaps(rows, order) + long_nested

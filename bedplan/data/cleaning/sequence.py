@@ -17,7 +17,6 @@ if TYPE_CHECKING:
 
     from bedplan.data.values.rows import Rows, Way
 
-SAME_WARD_GAP_SECONDS = 5 * 60
 BRIDGED_GAP_SECONDS = 60 * 60
 PASS_THROUGH_SECONDS = 30 * 60
 
@@ -191,7 +190,7 @@ def hold_beds(rows: Rows, order: NDArray[np.int64], is_leave: NDArray[np.bool_])
 
 
 def join_same_ward(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Join stays that go on in the same ward within five minutes, or overlap there, to one ward stay."""
+    """Join stays that go on in the same ward within an hour, or overlap there, to one ward stay: one admission."""
     patient, ward, end = rows.patient[order], rows.ward[order], _ends(rows, order)
     same = (patient[1:] == patient[:-1]) & (ward[1:] == ward[:-1])
     if not same.any():
@@ -199,7 +198,7 @@ def join_same_ward(rows: Rows, order: NDArray[np.int64]) -> NDArray[np.int64]:
     goes_on = np.zeros(order.size, dtype=bool)
     run = np.concatenate(([0], np.cumsum(~same)))
     reach = np.maximum.accumulate(end + run * SPAN) - run * SPAN
-    goes_on[1:] = same & (rows.start[order[1:]] - reach[:-1] <= SAME_WARD_GAP_SECONDS)
+    goes_on[1:] = same & (rows.start[order[1:]] - reach[:-1] <= BRIDGED_GAP_SECONDS)
     heads = np.flatnonzero(~goes_on)
     furthest = np.maximum.reduceat(end, heads)
     grown = np.diff(np.append(heads, order.size)) > 1
