@@ -16,9 +16,10 @@ if TYPE_CHECKING:
 
 EARLIEST = 631_152_000  # 1 January 1990
 # What systems write for "no date": 1 January of the years 1, 1753, 1900 and 1970, and a spreadsheet's day 0.
-EMPTY_DATES = np.array(
-    ["0001-01-01", "1753-01-01", "1899-12-30", "1899-12-31", "1900-01-01", "1970-01-01"], dtype="datetime64[s]"
+EMPTY_DAYS = np.array(
+    ["0001-01-01", "1753-01-01", "1899-12-30", "1899-12-31", "1900-01-01", "1970-01-01"], dtype="datetime64[D]"
 ).astype(np.int64)
+FEWEST_ALIKE = 3  # ends on one day before 1990: no such day comes so often by a slip
 MERGED_SHARE = 0.5  # of the rows without a ward, from which merged cells are thought of
 FEWEST_SWAPS = 3  # a file "shows swaps" from so many rows on
 # Of stays that end before they start by a slip, 1 in 8 makes a believable one by chance once day and month are exchanged:
@@ -37,7 +38,8 @@ def check_dates(rows: Rows, now: int) -> None:
     rows.mark(rows.end == UNREADABLE, "end unreadable")
     early_end = ~rows.is_open & (rows.end < EARLIEST)
     none_yet = np.flatnonzero(early_end)
-    none_yet = none_yet[np.isin(rows.end[none_yet], EMPTY_DATES)]
+    days, found, often = np.unique(rows.end[none_yet] // DAY_SECONDS, return_inverse=True, return_counts=True)
+    none_yet = none_yet[(np.isin(days, EMPTY_DAYS) | (often >= FEWEST_ALIKE))[found]]
     early_end[none_yet] = False
     rows.end[none_yet] = MISSING
     rows.mark(none_yet, "empty end")

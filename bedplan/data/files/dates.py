@@ -265,7 +265,7 @@ def _from_numbers(parts: pa.StructArray, date_order: str | None) -> tuple[NDArra
     first, second = _whole(parts.field("first")), _whole(parts.field("second_part"))
     year, clock = _whole_year(parts.field("year")), _clock(parts)
     day_first_only, month_first_only = (first > 12) & (second <= 12), (second > 12) & (first <= 12)
-    either = (first <= 12) & (second <= 12) & (first != second)
+    either = (first <= 12) & (second <= 12) & (first != second) & (np.minimum(first, second) > 0)
     counts = (int(day_first_only.sum()), int(month_first_only.sum()), int(either.sum()))
     day, month = (second, first) if date_order == "month first" else (first, second)
     return seconds_of(year, month, day, clock), counts

@@ -6,6 +6,7 @@ import codecs
 import csv
 import re
 from dataclasses import replace
+from itertools import islice
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
@@ -54,6 +55,9 @@ def read_table(
     text = as_utf8(source)
     layout, encoding = find_layout(text.file.head, known, chosen), text.encoding
     notes = [] if encoding == "UTF-8" else [f"The file was written in {encoding}; check that ward names look right."]
+    line = next(islice(LINE.finditer(text.file.head), layout.line, None), None)
+    if layout.found and line is not None and line[0].count(QUOTE) % 2:
+        notes.append(f"A quotation mark that nothing closes was taken out of the headings, line {layout.line + 1:,}.")
     return text_table(source.name, layout, lambda: _parse(text, layout, times), notes, list(known))
 
 
@@ -118,6 +122,8 @@ def find_layout(text: bytes, known: Mapping[str, Iterable[str]], chosen: Mapping
         if number == MOST_TITLE_LINES or len(best.found) >= CLEARLY_HEADINGS:
             break
         words = line[0].decode("utf-8", errors="replace").strip("\r\n")
+        if words.count('"') % 2:  # one that nothing closes would make one heading of several
+            words = words.replace('"', "")
         for separator in SEPARATORS:
             headings = split_cells(words, separator)
             found = match_headings([heading for heading in headings if heading], known, chosen)

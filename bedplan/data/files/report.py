@@ -36,7 +36,7 @@ def why_none(name: str, findings: Iterable[Finding], advice: str) -> str:
         f"{one.sentence[0].lower()}{one.sentence[1:]} ({'1 row' if one.rows == 1 else f'{one.rows:,} rows'})"
         for one in sorted(findings, key=lambda one: -one.rows)[:3]
     )
-    return f"No row of {name} can be used: {told}; {advice}."
+    return f"No row of {name} can be used: {told or 'it holds none under its headings'}; {advice}."
 
 
 @dataclass(frozen=True, slots=True)

@@ -13,7 +13,7 @@ RULES: dict[str, Rule] = {
     "no start": Rule(SET_ASIDE, "The start is missing"),
     "start unreadable": Rule(SET_ASIDE, "The start can't be read as a date"),
     "end unreadable": Rule(SET_ASIDE, "The end can't be read as a date"),
-    "unlikely date": Rule(SET_ASIDE, "The start lies in the future, or a date before 1990"),
+    "unlikely date": Rule(SET_ASIDE, "The start lies in the future or before 1990, or the end before 1990"),
     "mistyped year": Rule(SET_ASIDE, "Dated far from every other stay: a mistyped year"),
     "whole years": Rule(SET_ASIDE, "Usual on its ward but for whole years too long: a mistyped year"),
     "test patient": Rule(SET_ASIDE, "A test patient, or an age no person reaches"),

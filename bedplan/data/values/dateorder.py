@@ -27,6 +27,9 @@ if TYPE_CHECKING:
 
 DAY_FIRST, MONTH_FIRST, ROW_BY_ROW = DATE_ORDERS
 CLOCK_HEADING = re.compile("(?<!date)time$")  # beside a column of dates
+# A date of noughts: 0, 0.0, 00/00/0000, 0000-00-00 00:00:00, 1900-01-00, or the midnight that a workbook has for day 0.
+NOUGHT = r"^\s*(?:0+(?:[.,]0+)?|0+[-/.]0+[-/.]0+|1900-0?1-0?0|0?1/0?0/1900|0?0/0?1/1900|00:00(?::00)?)(?:[T ]+0{1,2}:00(?::00)?)?\s*$"
+SPREADSHEETS_DAY_0 = -25_569 * DAY_SECONDS  # 30 December 1899
 IN_ORDER = 0.99  # rank correlation of row number and time, from which a file counts as sorted by time
 
 
@@ -42,8 +45,18 @@ def start_and_end(
     columns, notes = _columns(text)
     row_by_row = date_order == ROW_BY_ROW
     read = _row_by_row(name, columns) if row_by_row else _read_all(name, columns, date_order, time_zone)
+    for key, column in columns.items():
+        _read_zeros(read[key].seconds, column)
     start, end, moved = _one_epoch(read["start"], read["end"])
     return start, end, [*notes, *moved, *_how_written(read, date_order, time_zone)]
+
+
+def _read_zeros(seconds: NDArray[np.int64], column: pa.ChunkedArray) -> None:
+    """Read a nought, or a date of noughts, as the day before all days of a spreadsheet: no date at all."""
+    unread = np.flatnonzero(seconds == UNREADABLE)
+    if unread.size:
+        zeros = pc.match_substring_regex(pc.cast(column.take(pa.array(unread)), pa.string()), NOUGHT)
+        seconds[unread[zeros.to_numpy()]] = SPREADSHEETS_DAY_0
 
 
 def _how_written(read: Mapping[str, TimesRead], date_order: str | None, time_zone: str | None) -> list[str]:

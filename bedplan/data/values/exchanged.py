@@ -29,6 +29,7 @@ FEWEST_CELLS = 8
 MOSTLY = 0.9  # a few cells were typed in afterwards
 CELL = r"^\s*(?:\d{4}-\d{2}-\d{2}|[2-6]\d{4}(?:[.,]\d+)?\s*$)"  # as date cells come, and as exports write them
 SHOWN = 3
+LIKELY = (631_152_000, 2_524_608_000)  # from 1990 to 2049
 
 
 class Signs(NamedTuple):
@@ -77,7 +78,7 @@ def ask_about_cells(
     if known - typed < FEWEST_CELLS:
         return
     cells = {key: are_cells(column) for key, column in columns.items()}
-    of_cells = np.concatenate([times.seconds[cells[key] & (times.seconds > UNREADABLE)] for key, times in read.items()])
+    of_cells = np.concatenate([times.seconds[cells[key] & _is_likely(times.seconds)] for key, times in read.items()])
     decided = sum(times.day_first_only + times.month_first_only for times in read.values())
     signs = Signs(of_cells.size, int((exchanged(of_cells) > UNREADABLE).sum()), typed, typed - decided)
     if not signs.are_there:
@@ -89,6 +90,11 @@ def ask_about_cells(
     stand = {key: times.seconds for key, times in read.items()}
     other = {key: np.where(cells[key], exchanged_early(times.seconds), times.seconds) for key, times in read.items()}
     raise question(told, stand, other, are_stays=are_stays)
+
+
+def _is_likely(seconds: NDArray[np.int64]) -> NDArray[np.bool_]:
+    """Which of these are dates of patients, and not what a system writes for none, such as 1 January 1900 or 31 December 2099?"""
+    return (seconds > LIKELY[0]) & (seconds < LIKELY[1])
 
 
 def question(

@@ -7,6 +7,7 @@ import pytest
 
 from bedplan.data import read_records
 from bedplan.data.files.rules import RULES
+from bedplan.errors import UnreadableRecords
 
 HEADINGS = "patient_key,ward,destination,start,end"
 
@@ -53,6 +54,31 @@ def test_a_line_nobody_can_mend_is_set_aside_with_its_number() -> None:
     assert dict(records.report.reasons) == {RULES["misfit"].sentence: 1}
     assert list(records.set_aside["line"]) == [121]
     assert any("line 121" in note.lower() for note in records.report.notes)
+
+
+@pytest.mark.parametrize("heading", [0, 1, 2, 4])
+@pytest.mark.parametrize("separator", [",", "\t"])
+def test_a_stray_mark_in_the_headings_loses_nothing(heading: int, separator: str) -> None:
+    """Before whichever heading it stands, the file reads as without it, and the report says so."""
+    text = lines(300)
+    clean = read_records(written(text), name="stays.csv")
+    headings = HEADINGS.split(",")
+    headings[heading] = f'"{headings[heading]}'
+    spoilt = [",".join(headings), *text[1:]]
+    records = read_records(written([line.replace(",", separator) for line in spoilt]), name="stays.csv")
+
+    assert records.report.rows_in == 300
+    assert records.stays[["ward", "start", "end"]].equals(clean.stays[["ward", "start", "end"]])
+    assert any("quotation mark" in note and "headings, line 1" in note for note in records.report.notes)
+
+
+@pytest.mark.parametrize("rows", ["p0,Hero", 'p0,"Heron', "p0,Heron,home,2024-01-01 10:00,2024-01-02 10:00,x,y"])
+def test_a_refusal_always_has_its_reason(rows: str) -> None:
+    """A file cut inside its first row, or with cells too many, says what is wrong with its row."""
+    with pytest.raises(UnreadableRecords, match=r"can be used: [^;]+ \(1 row\); check") as problem:
+        read_records(written([HEADINGS, rows]), name="stays.csv")
+
+    assert "another number of cells" in str(problem.value)
 
 
 def test_cells_over_several_lines_still_work() -> None:
