@@ -20,8 +20,9 @@ from bedplan.data.files.report import IntakeReport
 from bedplan.data.values.choices import DateQuestion, IntakeChoices
 from bedplan.data.values.ready import ReadyDates
 from bedplan.data.values.ready_reading import read_ready_dates
+from bedplan.data.wards.census_check import CensusCheck, check_census
 from bedplan.data.wards.describing import FullTimes, LongStays, WardDescription, describe_ward
-from bedplan.data.wards.reconciling import CensusCheck, Check, Flows, adds_up, check_census, flows
+from bedplan.data.wards.reconciling import Check, Flows, adds_up, flows
 from bedplan.data.wards.stay_families import StayFamilies, stay_families
 
 __all__ = [

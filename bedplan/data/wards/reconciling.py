@@ -9,8 +9,8 @@ import numpy as np
 import pandas as pd
 
 from bedplan.data.files.dates import DAY_SECONDS
-from bedplan.data.wards.occupancy import present, present_by_ward
-from bedplan.data.wards.stays import stays_in_window
+from bedplan.data.wards.census_check import AGREES, check_census
+from bedplan.data.wards.occupancy import present_by_ward
 from bedplan.wording import percent
 
 if TYPE_CHECKING:
@@ -20,55 +20,9 @@ if TYPE_CHECKING:
     from bedplan.data.beside.returns import MonthlyReturn
     from bedplan.data.cleaning.records import Records
 
-AGREES = 0.02  # of patients on average; common practice, no source
 SMALLEST_GAP_DAYS = 0.001
 FEWEST_TOLD = 8  # counts of 1 to 7 are withheld in documents: common disclosure practice for health statistics
 OUTSIDE = "outside"
-
-
-@dataclass(frozen=True)
-class CensusCheck:
-    """The count rebuilt from stays against a census file. ``days``: date, rebuilt, official, one row a day both have."""
-
-    ward: str
-    days: pd.DataFrame
-
-    @property
-    def difference(self) -> float:
-        """By which share does the rebuilt count differ on average? Above 0: the stays show more patients."""
-        official = float(self.days["official"].sum())
-        return float(self.days["rebuilt"].sum() - official) / official if official > 0 else 0.0
-
-    @property
-    def days_alike(self) -> float:
-        """On which share of days do the two agree to the patient?"""
-        return float((self.days["rebuilt"] == self.days["official"]).mean())
-
-    @property
-    def sentence(self) -> str:
-        """Do the two agree?"""
-        word = "agree" if abs(self.difference) <= AGREES else "do not agree"
-        return (
-            f"{self.ward}: stays and census {word}: patients differ by {percent(abs(self.difference))} over "
-            f"{len(self.days):,} days, and the count is the same on {percent(self.days_alike)} of them."
-        )
-
-
-def check_census(records: Records, census: Census, ward: str, clock: str = "00:00") -> CensusCheck:
-    """Does the count rebuilt from stays agree with the official one at this time of day?
-
-    Raises:
-        UnreadableRecords: the ward is not in both files.
-
-    Checked by: tests/data/wards/test_reconciling.py
-    """
-    official, records = census.linked_to(records).occupied(ward, clock), records.settled
-    hour, minute = (int(part) for part in clock.split(":"))
-    steps = present(records, stays_in_window(records, ward), 60)
-    rebuilt = steps.reshape(records.days, 1_440)[:, hour * 60 + minute]
-    both = pd.DataFrame({"rebuilt": pd.Series(rebuilt, index=records.calendar), "official": official}).dropna()
-    both = both.astype({"rebuilt": int, "official": int})
-    return CensusCheck(ward, both.rename_axis("date").reset_index())
 
 
 @dataclass(frozen=True)
@@ -226,7 +180,12 @@ def _against_census(records: Records, census: Census) -> Check:
     wards = [ward for ward in records.wards if (kept["ward"] == ward).any()]
     checks = [check_census(records, replace(census, table=kept), ward, clock) for ward in wards]
     sums = {one.ward: (one.days["rebuilt"].sum(), one.days["official"].sum()) for one in checks if len(one.days)}
-    return _compared(f"Patients at {clock}, all days: from stays, against {census.name}", sums)
+    found = _compared(f"Patients at {clock}, all days: from stays, against {census.name}", sums)
+    shifted = [one for one in checks if one.apart]
+    if not shifted:
+        return found
+    named = ", ".join(one.ward for one in shifted[:5])
+    return replace(found, verdict=f"{found.verdict}; day by day they do not on {named}: {shifted[0].apart}")
 
 
 def _against_return(records: Records, returned: MonthlyReturn) -> Check:
