@@ -25,7 +25,7 @@ def _fan() -> Spec:
     year = alt.X("year:T", title=None, axis=alt.Axis(format="%Y", tickCount=8))
     beds = alt.Y(
         "beds:Q",
-        title="Beds in use on average",
+        title="Beds in use; ahead, wanted at this growth",
         scale=alt.Scale(zero=False),
         axis=alt.Axis(grid=True, gridOpacity=0.3, tickCount=5),
     )

@@ -164,19 +164,19 @@ def year_ahead(name: str, year: YearAhead) -> str:
     """Say what the first year holds."""
     low, high = (days / 365 for days in year.bed_days_80)
     return (
-        f"In the year from {wording.date(year.first_day)} {name}'s patients are expected to use {year.beds_in_use:,.1f} beds "
-        f"on average; 8 in 10 such years {low:,.1f} to {high:,.1f}."
+        f"In the year from {wording.date(year.first_day)} {name}'s patients would want {year.beds_in_use:,.1f} beds on "
+        f"average, at this growth; 8 in 10 such years {low:,.1f} to {high:,.1f}."
     )
 
 
 def years_ahead(years: tuple[YearAhead, ...]) -> pd.DataFrame:
-    """Return a row a year: admissions and beds in use, each with the range that holds 8 in 10."""
+    """Return a row a year: admissions and beds wanted, each with the range that holds 8 in 10."""
     rows = [
         {
             "Year from": f"{year.first_day.day} {year.first_day:%b %Y}",
             "Admissions": f"{year.admissions:,.0f}",
             "8 in 10 between": f"{year.admissions_80[0]:,.0f} and {year.admissions_80[1]:,.0f}",
-            "Beds in use": f"{year.beds_in_use:,.1f}",
+            "Beds wanted at this growth": f"{year.beds_in_use:,.1f}",
             "8 in 10 between ": f"{year.bed_days_80[0] / 365:,.1f} and {year.bed_days_80[1] / 365:,.1f}",
         }
         for year in years

@@ -99,7 +99,7 @@ def test_years_ahead(open_app: Callable[..., AppTest]) -> None:
     assert len(drawn(app, "past")) == 3
     assert len(drawn(app, "ahead")) == 11
     assert len(table) == 10
-    assert f"{drawn(app, 'ahead')['beds'].iloc[1]:,.1f}" == table["Beds in use"].iloc[0]
+    assert f"{drawn(app, 'ahead')['beds'].iloc[1]:,.1f}" == table["Beds wanted at this growth"].iloc[0]
     assert any("less than the same week last year" in one.value for one in app.markdown)
     assert any("Admissions are foreseen" in one.value for one in app.markdown)
 
