@@ -94,7 +94,7 @@ def _drift_note(drift: Drift | None) -> str:
     low, high = map(percent, drift.interval)
     return (
         f"Beyond season and growth arrivals drift by about {percent(drift.variation)} (SD ÷ mean; {low} to {high}, 90 %). "
-        "A drift that lasts a year or longer looks like growth: in three years it is found up to a quarter too low, which "
+        "A drift that lasts a year or longer looks like growth: in three years it is found up to a third too low, which "
         "errs towards too few beds."
     )
 

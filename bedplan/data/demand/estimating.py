@@ -151,7 +151,7 @@ def estimate_demand(
     stay = fitted_stay(own_curve)
     if hidden is not None and hidden.mean_stay_days > 0:
         stay = LengthOfStay(hidden.mean_stay_days, stay.variation, stay.shape)
-    demand = _demand(records, arrivals, stay, lists)
+    demand = _demand(records, arrivals, stay, lists).with_changes(rate_variation=_drift(arrivals, wanted))
     growth, bed_days = _growth(whole, ward, wanted)
     return DemandEstimate(
         ward=ward,
@@ -215,9 +215,14 @@ def _demand(records: Records, arrivals: Arrivals, stay: LengthOfStay, lists: tup
         weekday_factors=(1.0,) * 7 if flat else rhythm.weekday_factors,
         hour_factors=(1.0,) * 24 if flat or not records.has_times else arrivals.hour_factors,
         clustering=arrivals.swing.clear_clustering,
-        rate_variation=USUAL if arrivals.swing.rate_variation is None else arrivals.swing.rate_variation,
         booked=lists,
     )
+
+
+def _drift(*best_first: Arrivals) -> float:
+    """Return the drift of the first of these that can tell it, or what is usual: none at all would ask for too few beds."""
+    told = (arrivals.swing.rate_variation for arrivals in best_first)
+    return next((drift for drift in told if drift is not None), USUAL)
 
 
 def _uncertainty(arrivals: Arrivals, curve: StayCurve, beds: float, hidden: HiddenDemand | None) -> Uncertainty:

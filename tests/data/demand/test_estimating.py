@@ -158,6 +158,8 @@ def test_booked_patients_can_be_put_into_their_list(larkmere: Records) -> None:
     assert estimate.beds_wanted == pytest.approx(estimate_demand(larkmere, "Sandpiper").beds_wanted, rel=0.01)
     assert estimate.booked_share == 1.0
     assert booked.hour == 13
+    # Nobody is left who was not booked; the drift is then that of all who came, which the note names.
+    assert estimate.demand.rate_variation == estimate_demand(larkmere, "Sandpiper").demand.rate_variation
 
 
 def test_emergency_wards_have_no_list(larkmere: Records) -> None:
@@ -264,3 +266,5 @@ def test_a_drift_says_which_way_it_errs() -> None:
     assert "too few beds" in note
     assert 12 <= int(re.search(r"about (\d+)", note)[1]) <= 26
     assert not any("drift by about" in note for note in short.notes)
+    assert any("Too few days to tell how far arrivals drift" in note for note in short.notes)
+    assert short.demand.rate_variation > 0.0  # none at all would ask for too few beds
