@@ -29,6 +29,16 @@ def spoiled_bytes(text: str, chance: random.Random) -> bytes:
     if chance.random() < 0.3:
         place = chance.randrange(len(content))
         content = content[:place] + chance.choice(BYTES) + content[place:]
+    if chance.random() < 0.2:
+        content = flipped(content, chance)
     if chance.random() < 0.1:
         content = content[: chance.randrange(len(content))]
     return content
+
+
+def flipped(content: bytes, chance: random.Random) -> bytes:
+    """Return the content with a few bits the other way round, as a bad disk or line leaves them."""
+    spoiled = bytearray(content)
+    for _ in range(chance.randrange(1, 6)):
+        spoiled[chance.randrange(len(spoiled))] ^= 1 << chance.randrange(8)
+    return bytes(spoiled)

@@ -1,17 +1,23 @@
-"""Two thousand damaged copies of a small file: never a traceback, and the counts always add up."""
+"""Two thousand damaged copies of files of every form: never a traceback, and the counts always add up."""
 
 from __future__ import annotations
 
 import contextlib
 import datetime as dt
+import io
 import random
+import zipfile
 from typing import TYPE_CHECKING
 
+import openpyxl
+import pyarrow as pa
 import pytest
+from openpyxl.cell.cell import ILLEGAL_CHARACTERS_RE
+from pyarrow import parquet
 
 from bedplan.data import estimate_demand, read_records
 from bedplan.errors import BedplanError
-from tests.data.spoiling import spoiled_bytes
+from tests.data.spoiling import flipped, spoiled_bytes
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -22,6 +28,7 @@ ROWS = [
     f"2024-0{n % 6 + 1}-{n % 28 + 1:02d} 23:45,ordinary,70-79,home"
     for n in range(40)
 ]
+MANY = [f"q{n}{row}" for n in range(30) for row in ROWS]  # a larger file: 1,200 rows
 CELLS = (
     "",
     " ",
@@ -107,12 +114,50 @@ DAMAGE: tuple[Callable[[list[str], random.Random], list[str]], ...] = (
 )
 
 
+def as_workbook(rows: list[str], chance: random.Random) -> bytes:
+    """Return the rows as a workbook, some dates as date cells, now and then with bits flipped in its sheet or its bytes."""
+    book = openpyxl.Workbook(write_only=True)
+    sheet = book.create_sheet()
+    for row in rows:
+        cells: list[object] = [ILLEGAL_CHARACTERS_RE.sub("", cell) for cell in row.split(",")]
+        for place in (3, 4):
+            if len(cells) > place and chance.random() < 0.7:
+                with contextlib.suppress(ValueError):
+                    cells[place] = dt.datetime.fromisoformat(str(cells[place])).replace(tzinfo=None)
+        sheet.append(cells)
+    packed = io.BytesIO()
+    book.save(packed)
+    content = packed.getvalue()
+    if chance.random() < 0.3:
+        with zipfile.ZipFile(packed) as parts, zipfile.ZipFile(again := io.BytesIO(), "w") as copy:
+            for part in parts.namelist():
+                inside = parts.read(part)
+                copy.writestr(part, flipped(inside, chance) if "sheet1" in part else inside)
+        content = again.getvalue()
+    return flipped(content, chance) if chance.random() < 0.1 else content
+
+
+def as_parquet(rows: list[str], chance: random.Random) -> bytes:
+    """Return the rows as a Parquet file of text, now and then with bits flipped."""
+    headings = rows[0].split(",")
+    table = [[*row.split(","), *[""] * len(headings)][: len(headings)] for row in rows[1:]]
+    columns = {f"{heading}": [cells[place] for cells in table] for place, heading in enumerate(headings)}
+    packed = pa.BufferOutputStream()
+    parquet.write_table(pa.table(columns), packed)
+    content = packed.getvalue().to_pybytes()
+    return flipped(content, chance) if chance.random() < 0.3 else content
+
+
 def damaged(seed: int) -> bytes:
-    """Return one damaged copy: rows spoiled one to six times, then encoded, then perhaps bytes spoiled."""
+    """Return one damaged copy: rows spoiled one to six times, then written in some form, then perhaps bytes spoiled."""
     chance = random.Random(seed)  # noqa: S311  not for secrets
-    rows = [HEADINGS, *ROWS]
+    rows = [HEADINGS, *(MANY if seed % 40 == 7 else ROWS)]
     for _ in range(chance.randrange(1, 7)):
         rows = chance.choice(DAMAGE)(rows, chance)
+    if seed % 20 in (4, 11):
+        return as_workbook(rows, chance)
+    if seed % 20 in (8, 15):
+        return as_parquet(rows, chance)
     text = "\n".join(rows).replace(",", chance.choice((",", ",", ";", "\t")))
     return spoiled_bytes(text, chance)
 
@@ -124,7 +169,8 @@ def outcome(seed: int) -> str:
         if seed % 10 == 0:
             assert all(estimate_demand(records, ward).beds_wanted > 0 for ward in records.wards), seed
     except BedplanError as problem:
-        return "refused" if str(problem).strip().endswith(".") else f"{seed}: {problem}"
+        told = str(problem).strip()
+        return "refused" if told.endswith(".") and ": ;" not in told else f"{seed}: {problem}"
     report = records.report
     assert report.rows_in == report.used + report.repaired + report.set_aside, seed
     assert sum(report.reasons.values()) == report.repaired + report.set_aside, seed

@@ -231,6 +231,17 @@ def test_a_short_way_out_and_back_is_one_admission(read: Read) -> None:
     assert [stay for stay in stay_times(records) if stay[0] == "Teal"] == [("Teal", "01-05 10:00", "01-09 12:00")]
 
 
+@pytest.mark.parametrize(("minutes", "bridged"), [(1, True), (55, True), (60, True), (61, False), (70, False)])
+def test_gaps_are_bridged_up_to_an_hour_and_no_further(read: Read, minutes: int, bridged: bool) -> None:
+    """An hour between two wards is a move, a minute more is a gap; so the sentence of the report says."""
+    left = pd.Timestamp("2024-01-07 10:00")
+    onward = left + pd.Timedelta(minutes=minutes)
+    records = read(*PLAIN, f"b,b,Heron,2024-01-05 10:00,{left}", f"b,b,Teal,{onward},2024-01-09 12:00")
+
+    assert reasons(records) == ({"bridged": 1} if bridged else {})
+    assert ("Heron", "01-05 10:00", f"{onward if bridged else left:%m-%d %H:%M}") in stay_times(records)
+
+
 def test_a_longer_gap_inside_a_hospital_stay_is_told(read: Read) -> None:
     """Three hours between two wards are theatre or a missing ward; nothing is filled in."""
     records = read(*PLAIN, "b,b,Heron,2024-01-05 10:00,2024-01-07 10:00", "b,b,Teal,2024-01-07 13:00,2024-01-09 12:00")
@@ -437,6 +448,23 @@ def test_a_time_shared_by_many_stays_is_called_a_default(read: Read) -> None:
     assert any("12:00" in note and "default" in note for note in read(*rows).report.notes)
 
 
+@pytest.mark.parametrize(("in_twenty", "is_told"), [(0, False), (1, False), (2, True), (3, True)])
+@pytest.mark.parametrize("which", ["start", "end"])
+def test_one_minute_of_the_day_for_more_than_one_stay_in_twenty_is_a_default(
+    read: Read, which: str, in_twenty: int, is_told: bool
+) -> None:
+    """A tenth of all stays at 00:01 are a default; one in twenty may be a busy minute (common practice, no source)."""
+    rows = []
+    for n in range(400):
+        start = pd.Timestamp("2024-01-01 02:00") + pd.Timedelta(minutes=332 * n)  # even minutes only
+        both = {"start": start, "end": start + pd.Timedelta(days=3, minutes=2 * n)}
+        if n % 20 < in_twenty:
+            both[which] = both[which].replace(hour=0, minute=1)
+        rows.append(f"p{n},s{n},Heron,{both['start']},{both['end']}")
+
+    assert any(f"{which} at 00:01" in note and "default" in note for note in read(*rows).report.notes) == is_told
+
+
 def test_ambiguous_dates_stop_and_ask(read: Read) -> None:
     """Where every date could be read both ways, three rows are shown both ways and nothing is guessed."""
     rows = ("a,a,Heron,03/04/2024 10:00,05/04/2024 10:00", "b,b,Heron,01/02/2024 10:00,03/02/2024 10:00")
@@ -467,6 +495,25 @@ def test_a_file_in_two_orders_asks_and_can_be_read_row_by_row(read: Read) -> Non
     assert list(records.stays["start"].dt.month) == [1] * 28 + [2] * 28
     assert list(records.stays["start"].dt.day) == [*range(1, 29), *range(1, 29)]
     assert (records.stays["end"] - records.stays["start"]).max() <= pd.Timedelta(days=2)
+
+
+@pytest.mark.parametrize(("loose", "is_read"), [(0, True), (5, False), (12, False)])
+def test_only_a_file_sorted_by_time_is_read_row_by_row(read: Read, loose: int, is_read: bool) -> None:
+    """Rows out of their place leave the rank correlation of row and time at 0.5 to 0.99: too loose to lean on, so refused."""
+    every = pd.date_range("2024-01-13 10:00", periods=120)
+    days = [day for _, day in sorted((n + loose * (n % 4), day) for n, day in enumerate(every))]
+    days = [day for day in days if day.day > 12]  # each can be read one way only
+    agreed = np.corrcoef(np.argsort(np.argsort(days)), np.arange(len(days)))[0, 1]
+    forms = ("%d/%m/%Y %H:%M", "%m/%d/%Y %H:%M")
+    both = [[f"{one:{forms[n % 2]}}" for one in (day, day + pd.Timedelta(hours=3))] for n, day in enumerate(days)]
+    rows = [f"p{n},s{n},Heron,{start},{end}" for n, (start, end) in enumerate(both)]
+
+    assert agreed > 0.99 if is_read else 0.5 < agreed < 0.99
+    if is_read:
+        assert list(read(*rows, date_order="row by row").stays["start"]) == days
+    else:
+        with pytest.raises(UnreadableRecords, match="not sorted by start"):
+            read(*rows, date_order="row by row")
 
 
 def test_offsets_are_told_and_can_be_brought_to_the_hospitals_clock(read: Read) -> None:

@@ -98,6 +98,17 @@ def test_one_moment_in_many_spellings(text: str) -> None:
     assert read_one(text, "day first") == FOURTH_OF_MARCH
 
 
+@pytest.mark.parametrize(
+    ("written", "year"), [("00", 2000), ("24", 2024), ("49", 2049), ("50", 1950), ("89", 1989), ("99", 1999)]
+)
+def test_years_of_two_digits_have_their_century(written: str, year: int) -> None:
+    """Up to 49 they are of this century, from 50 on of the last, in numbers and beside a month's name."""
+    wanted = seconds(dt.datetime(year, 3, 4, 14, 5))  # noqa: DTZ001  the ward's clock has no zone
+
+    assert read_one(f"04/03/{written} 14:05", "day first") == wanted
+    assert read_one(f"4-Mar-{written} 14:05") == wanted
+
+
 def test_month_first_is_the_other_reading() -> None:
     """04/03 is 3 April when the month comes first."""
     assert read_one("04/03/2023 14:05", "month first") == seconds(at("2023-04-03 14:05"))
