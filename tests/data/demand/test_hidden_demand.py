@@ -124,6 +124,33 @@ def test_the_stroke_wards_patients_are_found_where_they_lay(years: Years) -> Non
     assert any("Heron" in note and "pass through" in note for note in found.notes)
 
 
+def test_a_list_kept_in_part_widens_the_interval_as_thinning_does() -> None:
+    """Where each of those sent away is noted with chance p, N noted stand for N/p, off by (1 − p)/p of it on top of chance.
+
+    Source: variance of a thinned count, N/p given Poisson's law: N/p · (1 + (1 − p)/p) (any text on sampling); the
+    interval is 1.645 standard errors of the logarithm.
+    """
+    records, rng = made_records(MadeWard(6.0, 4.0, 1.0, growth=0.0), 5), np.random.default_rng(6)
+    days = records.days
+    noted = np.append(rng.uniform(0, days, 2_000), [0.1, days - 0.1])
+    times = (records.window[0] + pd.to_timedelta(np.sort(noted), unit="D")).strftime("%Y-%m-%d %H:%M")
+    listed = read_refusals("\n".join(["time,ward,reason", *(f"{time},Heron,no bed" for time in times)]).encode())
+
+    def variance(share: float) -> float:
+        """Return the variance of patients a day that the interval of the list tells."""
+        found = hidden_demand(records, "Heron", refusals=listed, share_recorded=share).methods[BY_LIST]
+        return (
+            found.patients_per_day * math.log(found.interval[1] / found.patients_per_day) / stats.norm.ppf(0.95)
+        ) ** 2
+
+    had = ((records.stays["start"] >= records.window[0]) & (records.stays["start"] < records.window[1])).sum() / days
+    sent_away = noted.size / days
+    swing = variance(1.0) * days / (had + sent_away)
+    for share in (0.5, 0.25):
+        wanted = swing * had / days + (swing + (1 - share) / share) * sent_away / share / days
+        assert variance(share) == pytest.approx(wanted, rel=1e-3)
+
+
 def test_open_time_is_refused_where_patients_queue(years: Years) -> None:
     """Freed beds of the stroke ward go to patients who were waiting: the two methods for other wards say why not."""
     found = years.of("Teal")
