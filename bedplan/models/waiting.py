@@ -51,8 +51,8 @@ _SHORT_AND_BY_THE_CLOCK = (
     "hours a quarter; with stays under a day a third, and the mean wait two thirds too short. Run the simulation."
 )
 _BOOKED = (
-    "Booked lists: the share who wait may be up to two fifths too low where many come at once, or where their stays are even "
-    "and long; up to twice too high elsewhere, with lists alone more where few wait. Run the simulation."
+    "Booked lists: the share who wait may be up to half too low where many come at once, or where their stays are even or "
+    "long; up to twice too high elsewhere, more where few wait. Run the simulation."
 )
 _UNEVEN = (
     "Stays differ widely: the share who wait may be up to an eighth too low, with seasons and weekdays a quarter, in the "
