@@ -151,6 +151,19 @@ def test_an_unfinished_tail_is_closed_at_the_last_departures_rate() -> None:
     assert curve.restricted_mean(10.0) == pytest.approx(5.0 * (1 - math.exp(-2)), rel=0.03)
 
 
+def test_the_tail_leaves_as_fast_as_the_last_ten_did() -> None:
+    """One patient leaves on each of 30 days and five stay past day 40: the last ten left at 10 ÷ 155 patient-days.
+
+    After day 20, the ten were watched 1 + 2 + … + 10 = 55 days and the five 5 × 20; with 8 who left, the last four count.
+    """
+    curve = product_limit([*range(1, 31), *[40.0] * 5], [*[True] * 30, *[False] * 5])
+    assert curve.tail_per_day == pytest.approx(10 / (55 + 100))
+    assert curve.tail_days == pytest.approx(5 / 35 * 155 / 10)
+
+    few = product_limit([*range(1, 9), 12.0], [*[True] * 8, False])
+    assert few.tail_per_day == pytest.approx(4 / (1 + 2 + 3 + 4 + 8))
+
+
 @pytest.mark.parametrize("text", [SIX_MP, PLACEBO, MAINTAINED])
 def test_a_curve_of_few_points_keeps_the_mean(text: str) -> None:
     """Thinned to 58 points, the curve that models use has the mean of the whole one."""
