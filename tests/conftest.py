@@ -8,9 +8,14 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 import pytest
+from hypothesis import settings
 
 if TYPE_CHECKING:
     from collections.abc import Generator
+
+# a busy machine is slow, not wrong: no example is timed; and every run tries the same ones
+settings.register_profile("bedplan", deadline=None, derandomize=True)
+settings.load_profile("bedplan")
 
 ROOT = Path(__file__).resolve().parent.parent
 NO_SKIPS = bool(os.environ.get("BEDPLAN_NO_SKIPS"))

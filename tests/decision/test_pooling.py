@@ -66,7 +66,7 @@ def test_shared_beds_for_the_same_limit_do_not_multiply(count: int, beds: int) -
     assert decide(pooled.curve("erlang_loss"), TurnAwayLimit(0.02)).beds == beds
 
 
-@settings(derandomize=True, max_examples=30, deadline=None)
+@settings(max_examples=30)
 @given(
     loads=st.tuples(st.floats(0.2, 9.0), st.floats(0.2, 9.0)),
     stays=st.tuples(st.floats(0.5, 20.0), st.floats(0.5, 20.0)),
@@ -113,7 +113,7 @@ def test_sharing_with_long_stays_can_turn_more_away_in_total() -> None:
     assert [one.share_after > one.share_before for one in effect.by_ward] == [True, False]
 
 
-@settings(derandomize=True, max_examples=15, deadline=None)
+@settings(max_examples=15)
 @given(loads=st.tuples(*[st.floats(0.5, 20.0)] * 3), spare=st.tuples(*[st.integers(-3, 6)] * 3))
 def test_sharing_never_hurts_wards_with_the_same_stays(loads: tuple[float, ...], spare: tuple[int, ...]) -> None:
     """With stays alike the total never rises, and the beds for the same access are at most today's."""

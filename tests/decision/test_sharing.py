@@ -28,7 +28,7 @@ def patients(one: Ward, beds: int) -> float:
     return 365 * one.demand.arrivals_per_day * share(one.demand.offered_load, beds)
 
 
-@settings(derandomize=True, max_examples=40, deadline=None)
+@settings(max_examples=40)
 @given(data=st.data())
 def test_no_split_at_all_does_better(data: st.DataObject) -> None:
     """Whatever the floors, bay sizes and weights, no allowed split of the total turns fewer weighted patients away."""
@@ -60,7 +60,7 @@ def test_no_split_at_all_does_better(data: st.DataObject) -> None:
     assert sum(cost[name][shared.beds[name]] for name in NAMES) == pytest.approx(best, rel=1e-5, abs=1e-6)
 
 
-@settings(derandomize=True, max_examples=20, deadline=None)
+@settings(max_examples=20)
 @given(loads=st.tuples(*[st.floats(0.1, 30.0)] * 3), beds=st.tuples(*[st.integers(0, 30)] * 3))
 def test_without_steps_the_largest_gain_first_is_as_good(loads: tuple[float, ...], beds: tuple[int, ...]) -> None:
     """For loss wards each next bed to the largest gain reaches the same total: what is lost is convex in beds.

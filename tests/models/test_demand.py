@@ -40,7 +40,7 @@ def test_booked_patients_who_come_count_in_the_load() -> None:
     assert not demand.is_steady
 
 
-@settings(derandomize=True, max_examples=50, deadline=None)
+@settings(max_examples=50)
 @given(data=st.data())
 def test_factors_near_mean_one_are_brought_to_it(data: st.DataObject) -> None:
     """Factors up to 5 % off keep their ratios and average exactly 1."""

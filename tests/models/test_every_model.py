@@ -22,7 +22,7 @@ if TYPE_CHECKING:
 MONTH_DAYS = (31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 30)
 HOURS = 52 * 7 * 24
 ORDER = ("average_occupancy", "erlang_loss", "unlimited_beds", "seasonal_loss", "waiting")
-lawful = settings(derandomize=True, max_examples=4, deadline=None, suppress_health_check=list(HealthCheck))
+lawful = settings(max_examples=4, suppress_health_check=list(HealthCheck))
 
 
 def _months(swing: float) -> tuple[float, ...]:
