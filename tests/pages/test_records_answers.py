@@ -9,6 +9,7 @@ import pytest
 
 from bedplan.pages import saved
 from bedplan.plan import SavedPlan, as_json
+from tests.data.values.test_exchanged import spoilt_workbook
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -78,6 +79,18 @@ def test_days_and_times_of_day_can_be_named(open_app: Callable[..., AppTest], st
     assert not app.exception
     assert not app.error
     assert answer(app) == plain
+
+
+def test_exchanged_days_and_months_are_asked_about(open_app: Callable[..., AppTest]) -> None:
+    """A workbook whose date cells a spreadsheet exchanged shows both readings, and is read as the planner says."""
+    app = give_stays(open_app(), "spoilt.xlsx", spoilt_workbook())
+    assert list(app.table[0].value.columns) == ["Read as it stands", "Read with day and month exchanged"]
+    (asked,) = (one for one in app.radio if "How are dates written" in one.label)
+    asked.set_value("day and month exchanged up to day 12")
+    next(one for one in app.button if one.label == "Read it this way").click().run()
+    assert not app.exception
+    assert not app.error
+    assert any("spoilt.xlsx" in heading.value for heading in app.subheader)
 
 
 def test_a_saved_plan_is_opened(open_app: Callable[..., AppTest], demo_data: Path) -> None:
