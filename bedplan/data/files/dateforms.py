@@ -6,6 +6,7 @@ import pyarrow as pa
 import pyarrow.compute as pc
 
 EPOCH, EPOCH_DIGITS = r"^1\d{9}(?:\d{3})?$", 10  # seconds or milliseconds since 1970, from 2001 to 2033
+WORLD_TIME = r"(?:Z|[+-]00:?00)\s*$"
 # What else stands around date and clock -> how it is read then.
 REWRITTEN = (
     (r"^'\s*", ""),  # a spreadsheet's sign for text
@@ -29,6 +30,21 @@ STILL_IN = (
     *("hospitalisé", "non sorti", "ingresado", "en curso", "sin alta", "in corso", "ricoverato", "non dimesso"),
     *("opgenomen", "nog opgenomen", "lopend", "inneliggande", "pågående", "indlagt", "innlagt", "internado", "w toku"),
 )
+
+
+def from_world_time(part: pa.Array, time_zone: str | None) -> pa.Array | None:
+    """What does the clock of ``time_zone`` show at times that all carry an offset? Without a zone, theirs where it is none.
+
+    All at once; None where they have to be looked at one by one.
+
+    Checked by: tests/data/files/test_reading.py
+    """
+    try:
+        stamps = pc.cast(part, pa.timestamp("s", time_zone or "UTC"))
+    except pa.ArrowInvalid:
+        return None
+    is_kept = time_zone or pc.all(pc.match_substring_regex(part, WORLD_TIME)).as_py()
+    return pc.local_timestamp(stamps) if is_kept else None
 
 
 def in_usual_form(text: pa.Array) -> pa.Array:

@@ -12,7 +12,7 @@ import pyarrow as pa
 import pyarrow.compute as pc
 
 from bedplan.data.files.blocks import each
-from bedplan.data.files.dateforms import STILL_IN, in_usual_form
+from bedplan.data.files.dateforms import STILL_IN, from_world_time, in_usual_form
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -109,7 +109,7 @@ def read_times(
     Checked by: tests/data/files/test_dates.py
     """
     chunks = _with_century(column.chunks if isinstance(column, pa.ChunkedArray) else [column])
-    parts = each(lambda chunk: _fast_iso(chunk) or _slow(chunk, date_order, time_zone), chunks)
+    parts = each(lambda chunk: _fast_iso(chunk, time_zone) or _slow(chunk, date_order, time_zone), chunks)
     none, nowhere = np.zeros(0, dtype=np.int64), np.zeros(0, dtype=bool)
     return TimesRead(
         np.concatenate([none, *(part.seconds for part in parts)]),
@@ -137,16 +137,19 @@ def _with_century(chunks: list[pa.Array]) -> list[pa.Array]:
     ]
 
 
-def _fast_iso(part: pa.Array) -> TimesRead | None:
-    """Read times that are ISO throughout, blanks allowed, in one pass, or return None."""
+def _fast_iso(part: pa.Array, time_zone: str | None) -> TimesRead | None:
+    """Read times that are ISO throughout, all with an offset or none, blanks allowed, in one pass, or return None."""
     try:
-        stamps = pc.cast(part, pa.timestamp("s"))
+        stamps, is_world = pc.cast(part, pa.timestamp("s")), False
     except pa.ArrowInvalid:
+        stamps, is_world = from_world_time(part, time_zone), True
+    if stamps is None:
         return None
     seconds = pc.cast(stamps, pa.int64()).fill_null(0).to_numpy(zero_copy_only=False)
     if stamps.null_count:
         seconds = np.where(stamps.is_null().to_numpy(zero_copy_only=False), MISSING, seconds)
-    return TimesRead(seconds, *np.zeros((3, seconds.size), dtype=bool))
+    serial, offset, by_numbers = np.zeros((3, seconds.size), dtype=bool)
+    return TimesRead(seconds, serial, offset | (is_world & (seconds != MISSING)), by_numbers)
 
 
 def _plain_iso(text: pa.Array, seconds: NDArray[np.int64]) -> NDArray[np.bool_]:
