@@ -149,18 +149,20 @@ def _headline(result: LastYear) -> str:
 
 
 def _verdict(result: LastYear) -> str:
-    """Say what came of it, in one sentence."""
+    """Say what came of it, against what, and what it can't tell."""
     full = (
-        f"; its beds were full at {wording.percent(result.full_share or 0.0)} of earlier readings, so this checks what "
-        "beds allowed, not what was wanted"
+        f" Its beds were full at {wording.percent(result.full_share or 0.0)} of earlier readings, so this checks what "
+        "beds allowed, not what was wanted."
         if result.is_often_full
         else ""
     )
-    nearer = ", and ".join(f"{_nearer(result.score, score)} {name}" for name, score, _ in _others(result))
+    nearer = " and ".join(
+        f"{_nearer(result.score, score)} {name.split(', with')[0]}" for name, score, _ in _others(result)
+    )
     return (
         f"{result.outcome.capitalize()}: told from earlier records only, the {wording.percent(BAND)} band held "
         f"{wording.percent(result.coverage_80)} of last year's days ({wording.percent(result.drawn_80)} as drawn, in whole "
-        f"patients), {_found(result)}{_wide(result)}; band against band (ranked score) it was {nearer}{full}."
+        f"patients), {_found(result)}{_wide(result)}. Band against band it was {nearer}.{full}"
     )
 
 

@@ -145,8 +145,8 @@ def test_what_the_check_rests_on() -> None:
 def test_the_verdict_compares_band_with_band() -> None:
     """Whole bands are compared by their scores, whatever one number of each would miss; hardly apart is as near."""
     assert (
-        "band against band (ranked score) it was 50\u00a0% nearer than the same week of the year before, with the band of "
-        "its past errors, and 70\u00a0% further off than the average formula, with the band of chance."
+        "Band against band it was 50\u00a0% nearer than the same week of the year before and 70\u00a0% further off than "
+        "the average formula."
     ) in made_check().verdict
     alike = made_check(average_formula_score=1.706, average_formula_error=99.0)
     assert "as near as the average formula" in alike.verdict
