@@ -16,6 +16,13 @@ if TYPE_CHECKING:
     from bedplan.export import WardCase
 
 
+def small_curve(case: WardCase) -> list[float]:
+    """Return the curve from 10 beds below today's to 10 above, for a small picture on a common scale."""
+    beds = case.curve.beds
+    shown = (beds >= case.ward.beds - 10) & (beds <= case.ward.beds + 10)
+    return [float(share) for share in case.curve.turn_away_probability[shown]]
+
+
 def spared(case: WardCase) -> float:
     """Return how many patients a year the next bed spares."""
     return spared_by_next_bed(case.curve, case.ward.beds)
@@ -34,7 +41,7 @@ def row(case: WardCase) -> dict[str, object]:
         "Share": 100 * today.turn_away_probability,
         "Worst month": wording.in_month(today.worst_month, float(today.by_month.max())),
         "Occupancy": 100 * today.occupancy,
-        "Share at each bed count": controls.small_curve(case),
+        "Share at each bed count": small_curve(case),
         "When full, patients": "go elsewhere" if case.ward.when_full == "leaves" else "wait",
     }
 

@@ -14,8 +14,8 @@ import streamlit as st
 from bedplan import wording
 from bedplan.decision import OverfullLimit, TurnAwayLimit, WaitLimit
 from bedplan.errors import BedplanError, UnreadableRecords
-from bedplan.export import Source, WardCase, case_for
-from bedplan.pages import loaded, said
+from bedplan.export import WardCase, case_for
+from bedplan.pages import loaded
 from bedplan.plan import Baseline, Changes, planned_ward
 
 if TYPE_CHECKING:
@@ -243,39 +243,9 @@ def rule_for(when_full: str) -> Rule:
     return MEASURES[measure][1](limit_share(), within)
 
 
-def source(wards: list[str]) -> Source:
-    """Return where the figures of these wards come from, in counts only."""
-    typed = st.session_state.get("typed", {})
-    origins = list(dict.fromkeys(typed[name].origin for name in wards if name in typed))
-    if wards and all(name in typed for name in wards):
-        return Source("; ".join(origins))
-    return Source.from_records(
-        loaded.records(),
-        (*loaded.files().marks, *_how_read(wards), *(("Also from", one) for one in origins)),
-        loaded.checks(),
-    )
-
-
-def _how_read(wards: list[str]) -> list[tuple[str, str]]:
-    """Return how the file was read, where the planner had to say, and the shares of refusals written down."""
-    written = [(name, loaded.recorded_share(name)) for name in wards if settings_of(name).get("hidden")]
-    return [
-        *loaded.files().answers.rows(),
-        *said.rows(loaded.files().marks),
-        *((f"Written down of those not given a bed, {name}", wording.percent(share, 0)) for name, share in written),
-    ]
-
-
 def facts_table(case: WardCase) -> pd.DataFrame:
     """Return a ward's three bed counts side by side, a fact a row."""
     return pd.DataFrame(case.table()).set_index("").T
-
-
-def small_curve(case: WardCase) -> list[float]:
-    """Return the curve from 10 beds below today's to 10 above, for a small picture on a common scale."""
-    beds = case.curve.beds
-    shown = (beds >= case.ward.beds - 10) & (beds <= case.ward.beds + 10)
-    return [float(share) for share in case.curve.turn_away_probability[shown]]
 
 
 def show_origin() -> None:

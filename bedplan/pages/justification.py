@@ -12,11 +12,34 @@ import streamlit as st
 
 from bedplan import wording
 from bedplan.errors import BedplanError
-from bedplan.export import Justification, as_html, as_xlsx, with_check
-from bedplan.pages import controls, loaded
+from bedplan.export import Justification, Source, as_html, as_xlsx, with_check
+from bedplan.pages import controls, loaded, said
 
 if TYPE_CHECKING:
     from bedplan.export import WardCase
+
+
+def source(wards: list[str]) -> Source:
+    """Return where the figures of these wards come from, in counts only."""
+    typed = st.session_state.get("typed", {})
+    origins = list(dict.fromkeys(typed[name].origin for name in wards if name in typed))
+    if wards and all(name in typed for name in wards):
+        return Source("; ".join(origins))
+    return Source.from_records(
+        loaded.records(),
+        (*loaded.files().marks, *_how_read(wards), *(("Also from", one) for one in origins)),
+        loaded.checks(),
+    )
+
+
+def _how_read(wards: list[str]) -> list[tuple[str, str]]:
+    """Return how the file was read, where the planner had to say, and the shares of refusals written down."""
+    written = [(name, loaded.recorded_share(name)) for name in wards if controls.settings_of(name).get("hidden")]
+    return [
+        *loaded.files().answers.rows(),
+        *said.rows(loaded.files().marks),
+        *((f"Written down of those not given a bed, {name}", wording.percent(share, 0)) for name, share in written),
+    ]
 
 
 def in_groups(value: str) -> str:
@@ -57,7 +80,7 @@ try:
     cases = [checked(controls.case_of(name)) for name in wards]
     paper = Justification(
         tuple(cases),
-        controls.source(wards),
+        source(wards),
         dt.datetime.now().astimezone().date(),
     )
     show_decisions(paper)

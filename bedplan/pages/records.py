@@ -37,22 +37,7 @@ def show_intake(here: Records) -> None:
     for column, (label, rows) in zip(st.columns(4), counts.items(), strict=True):
         column.metric(label, f"{rows:,}")
     if report.findings:
-        found = [
-            {
-                "What was done, and why": one.sentence,
-                "Outcome": one.outcome,
-                "Rows": one.rows,
-                "Bed-days": round(one.bed_days),
-            }
-            for one in report.findings
-        ]
-        st.dataframe(
-            pd.DataFrame(found),
-            column_config={name: st.column_config.NumberColumn(format="localized") for name in ("Rows", "Bed-days")},
-            hide_index=True,
-            width="stretch",
-            height=35 * (len(found) + 1) + 3,  # whole, without a second scroll bar
-        )
+        show_findings(report)
     if report.dropped_columns:
         dropped = ", ".join(wording.plain(name) for name in report.dropped_columns)
         st.markdown(f"Dropped because they may identify people: {dropped}.")
@@ -71,6 +56,26 @@ def show_intake(here: Records) -> None:
             mime="text/csv",
             on_click="ignore",
         )
+
+
+def show_findings(report: IntakeReport) -> None:
+    """Show every rule that was met, its rows and their bed-days."""
+    found = [
+        {
+            "What was done, and why": one.sentence,
+            "Outcome": one.outcome,
+            "Rows": one.rows,
+            "Bed-days": round(one.bed_days),
+        }
+        for one in report.findings
+    ]
+    st.dataframe(
+        pd.DataFrame(found),
+        column_config={name: st.column_config.NumberColumn(format="localized") for name in ("Rows", "Bed-days")},
+        hide_index=True,
+        width="stretch",
+        height=35 * (len(found) + 1) + 3,  # whole, without a second scroll bar
+    )
 
 
 def show_checks() -> None:

@@ -9,13 +9,13 @@ import pytest
 
 from bedplan.pages import saved
 from bedplan.plan import FileAnswers, SavedPlan, as_json, from_json
+from tests.pages.giving_files import are_open, give, go, name, press, text
 
 if TYPE_CHECKING:
     from collections.abc import Callable
 
     from streamlit.testing.v1 import AppTest
 
-EXPANDER = "How the columns were read"
 MONTHS = "A row of this return holds"
 BEDS = b"K1,K2,K3\nEast,01/02/2024,9\nEast,01/03/2024,11\n"
 BEDS_SAID = FileAnswers({"ward": "K1", "from": "K2", "staffed": "K3"}, "day first")
@@ -28,38 +28,6 @@ SAID |= {hashlib.sha256(REFUSALS).hexdigest(): REFUSALS_SAID}
 WIDE = "Date,Heron occupied,Heron beds,Teal occupied,Teal beds\n" + "".join(
     f"2024-03-{day:02d},{20 + day % 3},24,{5 + day % 2},8\n" for day in range(1, 29)
 )
-
-
-def go(app: AppTest, page: str) -> AppTest:
-    """Turn to a page."""
-    return app.switch_page(f"bedplan/pages/{page}.py").run()
-
-
-def give(app: AppTest, kind: str, name: str, content: bytes) -> AppTest:
-    """Put a file into the box of this kind on the page Records."""
-    return app.file_uploader(key=f"{kind}_file").upload(name, content, "text/csv").run()
-
-
-def press(app: AppTest, label: str, form: str) -> AppTest:
-    """Press a button of a form."""
-    return next(one for one in app.button if one.label == label and one.form_id == form).click().run()
-
-
-def name(app: AppTest, kind: str, columns: dict[str, str]) -> AppTest:
-    """Say which column is which, and read the file again."""
-    for key, heading in columns.items():
-        app.selectbox(key=f"{kind}_column_{key}").set_value(heading)
-    return press(app, "Read it again with these columns", f"{kind}_columns")
-
-
-def text(elements: object) -> str:
-    """Return what elements say, without the marks that keep names from being read as formatting."""
-    return "\n".join(one.value for one in elements).replace("\\", "")
-
-
-def are_open(app: AppTest) -> list[bool]:
-    """Return which questions about columns are open, in the order of the page."""
-    return [one.proto.expanded for one in app.expander if one.label == EXPANDER]
 
 
 def months(app: AppTest) -> object:

@@ -194,18 +194,23 @@ class _Seen(NamedTuple):
     kinds: dict[str, str]
 
 
-def _clean(table: StayTable, choices: IntakeChoices, name: str, *, is_asked: bool) -> _Seen:
-    """Apply every rule in its order; the file's ``name`` and ``is_asked`` are for the question about exchanged dates."""
-    rows, notes = table.rows, []
+def _clean_dates(table: StayTable, name: str, *, is_asked: bool) -> tuple[list[str], NDArray[np.int64]]:
+    """Apply the rules about one row's dates; return notes, and the longest believable stay of each ward."""
+    rows, notes, wards = table.rows, [], max(len(table.wards), 1)
     single_rows.check_dates(rows, int(time.time()) + DAY_SECONDS)
-    wards = max(len(table.wards), 1)
     if table.has_times:
         single_rows.mend_clock_change(rows)
     notes += set_mistyped_aside(rows, wards)
     notes += set_whole_years_aside(rows, table.wards)
     mended = single_rows.mend_negative(rows, single_rows.longest_stays(rows, wards))
     notes += single_rows.note_of_swaps(rows, mended, name, is_asked=is_asked)
-    longest = single_rows.longest_stays(rows, wards)
+    return notes, single_rows.longest_stays(rows, wards)
+
+
+def _clean(table: StayTable, choices: IntakeChoices, name: str, *, is_asked: bool) -> _Seen:
+    """Apply every rule in its order; the file's ``name`` and ``is_asked`` are for the question about exchanged dates."""
+    rows = table.rows
+    notes, longest = _clean_dates(table, name, is_asked=is_asked)
     if table.has_times and not table.knows_patients:
         sequence.drop_copies(rows, [values.codes for values in table.text.values()])
     way = sequence.in_order(rows)
