@@ -65,6 +65,7 @@ NAMED = (
 NAME_FIRST = r"^(?P<name>[^\s\d.,/-]{3,})[-/ .]*(?P<day>\d{1,2})(?:st|nd|rd|th)?,? +(?P<year>\d{4})" + CLOCK + "$"
 YEAR_FIRST = r"^\d{2}[-/.]\d{1,2}[-/.]\d{2}([T ]|$)"
 PLAIN_ISO = r"^\d{4}-\d{2}-\d{2}[ T]\d{2}:\d{2}(:\d{2})?$"
+OFFSET_LAST = r"(Z|[+-]\d{2}:?\d{2})\s*$"
 SERIAL = r"^(?P<serial>[2-6]\d{4}(?:[.,]\d+)?)$"
 
 
@@ -142,6 +143,9 @@ def _fast_iso(part: pa.Array, time_zone: str | None) -> TimesRead | None:
     try:
         stamps, is_world = pc.cast(part, pa.timestamp("s")), False
     except pa.ArrowInvalid:
+        first = next((value for value in part[:100].to_pylist() if value), "")
+        if re.search(OFFSET_LAST, first) is None:  # to try the whole column in vain takes long
+            return None
         stamps, is_world = from_world_time(part, time_zone), True
     if stamps is None:
         return None
