@@ -174,7 +174,14 @@ def without_stays() -> tuple[str, ...]:
     """Say which wards of the other files have no stays in the records, so that nothing is left out silently."""
     here = files()
     kinds = [kind for kind in here.given if kind != "monthly_return"]  # its wards are planned by its averages
-    unused = [(here.given[kind].name, list(getattr(here, kind).unknown_wards)) for kind in kinds]
+    planned = st.session_state.get("typed", {})  # by a census and a mean stay, so that its rows are used
+    unused = [
+        (
+            here.given[kind].name,
+            [one for one in getattr(here, kind).unknown_wards if kind != "census" or one not in planned],
+        )
+        for kind in kinds
+    ]
     return tuple(wording.not_used(name, wards) for name, wards in unused if wards)
 
 

@@ -54,6 +54,9 @@ def test_wards_with_stays_are_not_asked_about(open_app: Callable[..., AppTest], 
     asked = {one.key for one in app.number_input if str(one.key).startswith("census_stay_")}
 
     assert asked == {"census_stay_Alder"}
+    assert "no stays on Alder, so their rows are not used" in text(app.caption)
+    app.number_input(key="census_stay_Alder").set_value(5.0)
+    assert "not used" not in text(press(app, "Plan these wards").caption)
 
 
 def test_nothing_is_planned_without_a_stay(open_app: Callable[..., AppTest]) -> None:

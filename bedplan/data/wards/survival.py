@@ -14,7 +14,6 @@ if TYPE_CHECKING:
     from numpy.typing import ArrayLike, NDArray
 
 TAIL_EVENTS = 10  # the last so many departures say how fast the rest leave
-MOST_CURVE_POINTS = 58
 NORMAL_95 = 1.96
 
 
